@@ -1,0 +1,638 @@
+"""From lines to a document: what all readers share.
+
+A reader goes three steps.  `Build.tokens` turns lines into few, large tokens: headings, and runs
+of numeric rows that stay unsplit.  `parse` puts them through the layout's LALR grammar, whose tree
+states the layout (and its common slips) on a page.  The reader walks the tree and hands what it
+finds to `Build.open_block`, `Build.shell` and their kin; `Build.document` then converts all numbers
+of the file in one go and makes the model.  Positions of single numbers are worked out only for
+faults.
+"""
+
+from collections.abc import Callable, Iterable, Iterator
+from dataclasses import dataclass, field
+from difflib import get_close_matches
+from functools import cache
+from importlib.resources import files
+from typing import Any, Literal, NamedTuple
+
+import numpy as np
+from lark import Lark, Token, Tree
+from lark.exceptions import UnexpectedToken
+from lark.lexer import Lexer
+
+from overlapse.grammar.elements import number_of, symbol_of
+from overlapse.grammar.model import (
+    BasisSet,
+    Block,
+    Cells,
+    Channel,
+    Document,
+    Fault,
+    Grid,
+    Potential,
+    Remark,
+    Severity,
+    Shell,
+    Span,
+)
+from overlapse.grammar.numbers import CHARACTERS, FORTRAN, looks_numeric, read_number
+from overlapse.grammar.source import Source
+
+Role = Literal["orbital", "fitting", "unstated"]
+FunctionType = Literal["spherical", "cartesian"]
+Node = Tree[Token]
+
+_ROW_START = frozenset("0123456789+-.")
+# With a j shell present the letters run on without a gap; else j is left out, as in spectroscopy.
+_WITHOUT_J = "spdfghiklmnoqrtuv"
+_WITH_J = "spdfghijklmnoqrtuv"
+
+
+class _OurTokens(Lexer):
+    """Stands in for lark's lexer: the tokens are fed by `parse`."""
+
+    def __init__(self, _configuration: object) -> None:
+        pass
+
+    def lex(self, _text: Any) -> Iterator[Token]:  # type: ignore[override]
+        return iter(())
+
+
+@cache
+def parser_of(name: str) -> Lark:
+    """The LALR parser for ``layouts/<name>.lark``, compiled once per process."""
+    grammar = files("overlapse.grammar.layouts").joinpath(f"{name}.lark").read_text("utf-8")
+    return Lark(grammar, parser="lalr", lexer=_OurTokens, maybe_placeholders=False)
+
+
+class Run(NamedTuple):
+    """Numeric rows that follow one another: their words, and the 0-based line of each."""
+
+    rows: list[list[str]]
+    lines: list[int]
+
+
+@dataclass
+class ShellDraft:
+    """A shell whose numbers still are words, ``start`` being the first one's place in the file."""
+
+    name: str
+    letters: str
+    angular: tuple[int, ...]
+    heading: int
+    run: Run
+    width: int
+    start: int
+    scale: float
+
+
+@dataclass
+class BlockDraft:
+    """What has been read of one element so far."""
+
+    symbol: str
+    number: int | None
+    line: int
+    section: str
+    label: str | None = None
+    functions: FunctionType | None = None
+    role: Role = "unstated"
+    shells: list[ShellDraft] = field(default_factory=list)
+    potential: Potential | None = None
+    complete: bool = True
+    end: int = 0
+    _names: dict[str, int] = field(default_factory=dict)
+
+    def next_name(self, letters: str) -> str:
+        self._names[letters] = self._names.get(letters, 0) + 1
+        return f"{letters}-{self._names[letters]}"
+
+
+class Build:
+    """Collects what a reader finds and makes the document of it."""
+
+    def __init__(self, source: Source, layout: str, comment: str = "") -> None:
+        self.source = source
+        self.layout = layout
+        self.comment = comment
+        self.faults: list[Fault] = []
+        self.remarks: list[Remark] = []
+        self.blocks: list[BlockDraft] = []
+        self.bodies = self._without_comments()
+        self._words: list[str] = []
+        self._j_is_used = False
+
+    # ---- lines and tokens
+
+    def _without_comments(self) -> list[str]:
+        lines = self.source.lines
+        if not any(sign in self.source.text for sign in self.comment):
+            return [line.strip() for line in lines]
+        bodies = []
+        for index, line in enumerate(lines):
+            for sign in self.comment:
+                if sign in line:
+                    line, remark = line.split(sign, 1)
+                    self.remarks.append(Remark(remark.strip(), index + 1))
+            bodies.append(line.strip())
+        return bodies
+
+    def tokens(
+        self,
+        classify: Callable[[str, int], str],
+        heading: Callable[[str], str | None] = lambda body: None,
+    ) -> Iterator[Token]:
+        """Few, large tokens: one for each heading, one ROWS for each run of numeric rows.
+
+        ``classify(body, index)`` names the token of a line that does not begin like a number;
+        "TEXT" means it knows none, and the line is then taken for a damaged row if its first word
+        was most likely meant as a number.  ``heading(body)`` names the token of a line that begins
+        with a number and yet is a heading, else None.  Token lines are 0-based.
+        """
+        first: int | None = None
+        last = 0
+        for index, body in enumerate(self.bodies):
+            if not body:
+                continue
+            if body[0] in _ROW_START and (kind := heading(body)) is None:
+                if first is None:
+                    first = index
+                last = index
+                continue
+            if body[0] not in _ROW_START:
+                kind = classify(body, index)
+                if kind == "TEXT" and self._is_damaged_row(body, first is not None):
+                    first = index if first is None else first
+                    last = index
+                    continue
+            if first is not None:
+                yield Token("ROWS", "", line=first, end_line=last + 1)
+                first = None
+            yield Token(str(kind), body, line=index, end_line=index + 1)
+        if first is not None:
+            yield Token("ROWS", "", line=first, end_line=last + 1)
+
+    @staticmethod
+    def _is_damaged_row(body: str, in_run: bool) -> bool:
+        words = body.split()
+        numeric = [looks_numeric(word) for word in words]
+        return numeric[0] if not in_run else numeric[0] or (len(words) > 1 and all(numeric[1:]))
+
+    def parse(self, tokens: Iterable[Token]) -> Node:
+        """Put tokens through the layout's grammar.
+
+        The grammars take every sequence of their tokens, so that one fault never hides the next;
+        should one refuse a token all the same, that is a finding and the token is passed over.
+        """
+        parser = parser_of(self.layout.replace("-", "_")).parse_interactive()
+        for token in tokens:
+            try:
+                parser.feed_token(token)
+            except UnexpectedToken as refusal:
+                expected = ", ".join(sorted(refusal.accepts or refusal.expected)).lower()
+                self.fault_line(
+                    "form.syntax",
+                    index_of(token),
+                    f"{str(token)!r} does not belong here; expected: {expected}",
+                )
+        return parser.feed_eof()  # type: ignore[no-any-return]
+
+    def rows(self, token: Token | None) -> Run:
+        """The words of a run of rows, line by line; blank lines and comments are left out."""
+        if token is None:
+            return Run([], [])
+        first, last = index_of(token), token.end_line or 0
+        rows, lines = [], []
+        for index in range(first, last):
+            if words := self.bodies[index].split():
+                rows.append(words)
+                lines.append(index)
+        return Run(rows, lines)
+
+    # ---- faults
+
+    def fault(self, rule: str, span: Span, message: str, **details: Any) -> None:
+        """Note a fault at a span of the text; ``details`` are the other fields of `Fault`."""
+        self.faults.append(Fault(rule, message, span, **details))
+
+    def fault_line(self, rule: str, index: int, message: str, **details: Any) -> None:
+        """Note a fault that concerns a whole line (0-based)."""
+        self.fault(rule, self.source.span_of_line(index), message, **details)
+
+    def fault_word(self, rule: str, index: int, ordinal: int, message: str, **details: Any) -> None:
+        """Note a fault in one word of a line (both 0-based)."""
+        self.fault(rule, self.source.span_of_word(index, ordinal), message, **details)
+
+    # ---- blocks
+
+    def open_block(
+        self,
+        symbol: str,
+        index: int,
+        *,
+        section: str = "",
+        label: str | None = None,
+        functions: FunctionType | None = None,
+        role: Role = "unstated",
+        word: int = 0,
+    ) -> BlockDraft:
+        """Begin the block of an element whose heading is line ``index`` (0-based).
+
+        ``section`` keeps sets of one file apart: blocks of one section belong to one set.
+        """
+        number = number_of(symbol)
+        if number is None:
+            near = get_close_matches(symbol.capitalize(), [symbol_of(z) for z in range(1, 119)], 1, 0.4)
+            self.fault_word(
+                "form.element",
+                index,
+                word,
+                f"{symbol!r} is no element's symbol",
+                measured=symbol,
+                expected=near[0] if near else None,
+                remedy="write the symbol of the element that this block describes",
+            )
+        block = BlockDraft(symbol, number, index, section, label, functions, role, end=index)
+        self.blocks.append(block)
+        return block
+
+    def angular_of(self, letters: str, index: int, word: int = 0) -> tuple[int, ...] | None:
+        """Angular momenta for the letters of a shell heading, or None with a fault.
+
+        "sp" gives (0, 1); a shell "l" stays (8,) here and becomes s+p where its rows say so.
+        """
+        low = letters.lower()
+        if low == "sp":
+            return (0, 1)
+        if low.startswith("l=") and low[2:].isdigit() and int(low[2:]) < len(_WITHOUT_J):
+            return (int(low[2:]),)
+        alphabet = _WITH_J if self._j_is_used else _WITHOUT_J
+        if len(low) == 1 and low in alphabet:
+            return (alphabet.index(low),)
+        self.fault_word(
+            "form.letter",
+            index,
+            word,
+            f"{letters!r} is no letter of an angular momentum",
+            measured=letters,
+            expected="one of S P D F G H I, or SP",
+            remedy="write the letter of the shell's angular momentum",
+        )
+        return None
+
+    def note_letters(self, headings: Iterable[tuple[str, int]]) -> None:
+        """Look at all shell letters of a file first: whether j is used, and where k begins."""
+        above = [(letters, index) for letters, index in headings if letters.lower() in ("j", "k")]
+        self._j_is_used = any(letters.lower() == "j" for letters, _ in above)
+        if above:
+            letters, index = above[0]
+            alphabet = _WITH_J if self._j_is_used else _WITHOUT_J
+            order = "with" if self._j_is_used else "without"
+            self.fault_line(
+                "form.letter",
+                index,
+                f"letters above i are counted in two ways; read here {order} j, "
+                f"so {letters.upper()} is l = {alphabet.index(letters.lower())}",
+                severity="note",
+                measured=letters,
+                expected=f"L={alphabet.index(letters.lower())}",
+                remedy="write the number (L=7) where the layout allows it",
+            )
+
+    def shell(
+        self,
+        block: BlockDraft,
+        letters: str,
+        heading: int,
+        run: Run,
+        *,
+        announced: str | None = None,
+        announced_word: int = 1,
+        letters_word: int = 0,
+        scale: float = 1.0,
+        general: bool = False,
+    ) -> None:
+        """Add a shell whose heading is line ``heading`` (0-based) to a block.
+
+        ``announced`` is the count of rows as the heading spells it; ``general`` allows more than
+        one coefficient column for a single letter.
+        """
+        angular = self.angular_of(letters, heading, letters_word)
+        width = self._width(run)
+        if angular == (8,) and width == 3 and letters.lower() == "l" and not general:
+            letters, angular = "sp", (0, 1)
+        name = block.next_name("".join(_WITHOUT_J[l] for l in angular) if angular else letters)
+        block.end = max(block.end, heading, *run.lines[-1:])
+        self._check_count(block, name, announced, announced_word, heading, run)
+        if not run.rows or angular is None:
+            block.complete = False
+            self._check_words(block, name, run)
+            return
+        if not self._check_widths(block, name, angular, width, run, general):
+            block.complete = False
+            self._check_words(block, name, run)
+            return
+        block.shells.append(
+            ShellDraft(name, letters, angular, heading, run, width, len(self._words), scale)
+        )
+        for row in run.rows:
+            self._words += row
+
+    @staticmethod
+    def _width(run: Run) -> int:
+        """The number of words that most rows have."""
+        widths = [len(row) for row in run.rows]
+        return max(set(widths), key=widths.count, default=0)
+
+    def _check_count(
+        self, block: BlockDraft, name: str, announced: str | None, word: int, heading: int, run: Run
+    ) -> None:
+        found = len(run.rows)
+        if announced is not None and found and int(announced) != found:
+            self.fault_word(
+                "form.count",
+                heading,
+                word,
+                f"the heading announces {announced} rows, {found} follow",
+                element=block.symbol,
+                shell=name,
+                measured=found,
+                expected=int(announced) if len(announced) < 16 else announced,
+                remedy="a row was lost or added, or the count is wrong: compare with the source",
+            )
+        elif not found:
+            self.fault_line(
+                "form.count",
+                heading,
+                "no rows of numbers follow this heading"
+                + (f", which announces {announced}" if announced else ""),
+                element=block.symbol,
+                shell=name,
+                measured=0,
+                expected=int(announced) if announced and len(announced) < 16 else None,
+                remedy="restore the shell's rows or take its heading out",
+            )
+
+    def _check_widths(
+        self,
+        block: BlockDraft,
+        name: str,
+        angular: tuple[int, ...],
+        width: int,
+        run: Run,
+        general: bool,
+    ) -> bool:
+        """Whether all rows have one exponent and the same, fitting number of coefficients."""
+        needed = 1 + len(angular)
+        fits = width > 1 and (width - 1) % len(angular) == 0 if general else width == needed
+        wanted = width if fits else needed
+        wrong = [at for at, row in enumerate(run.rows) if len(row) != wanted]
+        if len(wrong) == len(run.rows):
+            wrong = wrong[:1]
+        for at in wrong:
+            count = len(run.rows[at])
+            what = "sp shell" if len(angular) == 2 else "shell"
+            hint = "; perhaps an SP shell was meant" if (count, wanted) == (3, 2) else ""
+            self.fault_word(
+                "form.count",
+                run.lines[at],
+                min(count, wanted) - (count < wanted),
+                f"{count} number{'s' * (count != 1)} in this row where the {what} has "
+                f"{wanted} (an exponent and {wanted - 1} coefficient{'s' * (wanted != 2)}){hint}",
+                element=block.symbol,
+                shell=name,
+                measured=count,
+                expected=wanted,
+                remedy="a number was lost, added or run together with its neighbour",
+            )
+        return not wrong
+
+    def _check_words(self, block: BlockDraft, name: str, run: Run) -> None:
+        """Find misspelt numbers in rows that make no shell."""
+        for row, index in zip(run.rows, run.lines, strict=True):
+            for ordinal, word in enumerate(row):
+                self._number(word, index, ordinal, block.symbol, name)
+
+    def _number(
+        self, word: str, index: int, ordinal: int, element: str | None, shell: str | None
+    ) -> float | None:
+        value, slip, spelling = read_number(word)
+        if slip:
+            self.fault_word(
+                "form.number",
+                index,
+                ordinal,
+                f"{shorten(word)!r} {slip}" + (f"; {spelling} was probably meant" if spelling else ""),
+                element=element,
+                shell=shell,
+                measured=shorten(word),
+                expected=value,
+                remedy=f"write {spelling}" if spelling else "restore the number from the source",
+            )
+        return value
+
+    # ---- potentials
+
+    def channel(
+        self,
+        block: BlockDraft,
+        l: int,  # noqa: E741
+        local: bool,
+        heading: int,
+        run: Run,
+        *,
+        order: str = "power exponent coefficient",
+        title: str = "",
+        spin_orbit: bool = False,
+    ) -> Channel | None:
+        """One channel of a core potential, or None where its numbers cannot be read."""
+        columns = order.split()
+        terms: dict[str, list[float]] = {column: [] for column in columns}
+        for row, index in zip(run.rows, run.lines, strict=True):
+            values = [
+                self._number(word, index, ordinal, block.symbol, None)
+                for ordinal, word in enumerate(row)
+            ]
+            if len(values) < 3:
+                self.fault_line(
+                    "form.count",
+                    index,
+                    f"{len(values)} numbers in a row of a core potential; "
+                    f"it has three: {', '.join(columns)}",
+                    element=block.symbol,
+                    measured=len(values),
+                    expected=3,
+                    remedy="restore the missing number from the source",
+                )
+            for column, value in zip(columns, values, strict=False):
+                terms[column].append(float("nan") if value is None else value)
+        table = [terms[column] for column in ("power", "exponent", "coefficient")]
+        block.end = max(block.end, heading, *run.lines[-1:])
+        if len({len(column) for column in table}) > 1 or not np.isfinite(table).all():
+            return None
+        powers = tuple(int(power) for power in table[0])
+        kind: Literal["scalar", "spin-orbit"] = "spin-orbit" if spin_orbit else "scalar"
+        return Channel(
+            l, local, powers, np.array(table[1]), np.array(table[2]), heading + 1, title, kind
+        )
+
+    # ---- the document
+
+    def document(self, reason: str = "", raw_primitives: bool = False) -> Document:
+        """Convert all numbers and make the model of what was collected."""
+        values = self._convert()
+        blocks = [block for block in self.blocks if block.number is not None]
+        made = [self._block(block, values) for block in blocks]
+        return Document(
+            self.source,
+            self.layout,
+            tuple(self._sets(blocks, made)),
+            tuple(self.remarks),
+            tuple(sorted(self.faults, key=lambda fault: fault.span)),
+            reason,
+            raw_primitives,
+        )
+
+    def _convert(self) -> "np.ndarray[Any, np.dtype[np.float64]]":
+        """All numbers of all shells as one read-only array; NaN where one cannot be read."""
+        text = " ".join(self._words)
+        if "D" in text or "d" in text:
+            text = text.translate(FORTRAN)
+        if set(text) <= CHARACTERS:
+            try:
+                values = np.array(list(map(float, text.split())))
+            except ValueError:
+                values = self._convert_one_by_one()
+            if not np.isfinite(values).all():
+                values = self._convert_one_by_one()
+        else:
+            values = self._convert_one_by_one()
+        values.flags.writeable = False
+        return values
+
+    def _convert_one_by_one(self) -> "np.ndarray[Any, np.dtype[np.float64]]":
+        found = len(self.faults)
+        values = np.full(len(self._words), np.nan)
+        for block in self.blocks:
+            for shell in block.shells:
+                at = shell.start
+                for row, index in zip(shell.run.rows, shell.run.lines, strict=True):
+                    for ordinal, word in enumerate(row):
+                        value = self._number(word, index, ordinal, block.symbol, shell.name)
+                        values[at] = np.nan if value is None else value
+                        at += 1
+        if len(self.faults) == found and not np.isfinite(values).all():
+            raise AssertionError("a number that is not finite was read without a fault")
+        return values
+
+    def _block(
+        self, block: BlockDraft, values: "np.ndarray[Any, np.dtype[np.float64]]"
+    ) -> Block:
+        shells = []
+        complete = block.complete
+        for draft in block.shells:
+            count, width = len(draft.run.rows), draft.width
+            table = values[draft.start : draft.start + count * width].reshape(count, width)
+            if np.isnan(table).any():
+                complete = False
+                continue
+            cells = Cells(
+                self.source,
+                draft.run.lines[0],
+                draft.run.lines[-1] + 1,
+                Grid(0, width, 1, width, 1),
+                self.comment,
+            )
+            exponents = table[:, 0]
+            if draft.scale != 1.0:
+                exponents = exponents * draft.scale**2
+            shells.append(Shell(draft.angular, exponents, table[:, 1:], draft.heading + 1, cells))
+        if block.number is None:
+            raise AssertionError("only blocks of known elements are made")
+        return Block(
+            block.number,
+            tuple(shells),
+            block.potential,
+            block.label,
+            block.functions,
+            complete,
+            block.line + 1,
+            block.end + 1,
+        )
+
+    def _sets(self, drafts: list[BlockDraft], made: list[Block]) -> Iterator[BasisSet]:
+        """Group blocks into sets: by section, and anew where the list of elements starts again."""
+        sections: dict[str, list[int]] = {}
+        for at, draft in enumerate(drafts):
+            sections.setdefault(draft.section, []).append(at)
+        for members in sections.values():
+            for group in self._restarts(members, made):
+                first = drafts[group[0]]
+                yield BasisSet(
+                    tuple(made[at] for at in group), first.label, first.role, first.line + 1
+                )
+
+    def _restarts(self, members: list[int], made: list[Block]) -> Iterator[list[int]]:
+        """Split the blocks of a section where several elements in a row come a second time."""
+        group: list[int] = []
+        seen: dict[int, Block] = {}
+        for position, at in enumerate(members):
+            block = made[at]
+            if block.atomic_number in seen:
+                following = [made[other].atomic_number for other in members[position : position + 3]]
+                if len(set(following)) > 1 and all(z in seen for z in following):
+                    self._say_restart(block, seen[block.atomic_number])
+                    yield group
+                    group, seen = [], {}
+                else:
+                    self._say_repeat(block, seen[block.atomic_number])
+            seen.setdefault(block.atomic_number, block)
+            group.append(at)
+        if group:
+            yield group
+
+    def _say_restart(self, block: Block, before: Block) -> None:
+        self.fault_line(
+            "form.repeat",
+            block.line - 1,
+            f"the list of elements starts again here ({block.symbol} was on line {before.line}): "
+            "judged as a second set",
+            severity="note",
+            element=block.symbol,
+            remedy="keep one set per file, or name the sets",
+        )
+
+    def _say_repeat(self, block: Block, before: Block) -> None:
+        equal = len(block.shells) == len(before.shells) and all(
+            a.angular == b.angular
+            and np.array_equal(a.exponents, b.exponents)
+            and np.array_equal(a.coefficients, b.coefficients)
+            for a, b in zip(block.shells, before.shells, strict=False)
+        )
+        how = "with the same numbers" if equal else "with other numbers"
+        self.fault_line(
+            "form.repeat",
+            block.line - 1,
+            f"{block.symbol} was already given on line {before.line}, {how}",
+            element=block.symbol,
+            measured=2,
+            expected=1,
+            remedy="keep one of the two: a reader may add them up, or take either",
+        )
+
+
+def index_of(token: Token) -> int:
+    """0-based line of a token."""
+    return token.line or 0
+
+
+def shorten(word: str, limit: int = 40) -> str:
+    """A word short enough to print."""
+    return word if len(word) <= limit else word[: limit - 3] + "..."
+
+
+def integer(word: str) -> int | None:
+    """Value of a word that is an unsigned whole number in ASCII digits of sensible length."""
+    return int(word) if word.isascii() and word.isdigit() and len(word) < 16 else None
+
+

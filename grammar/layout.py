@@ -1,0 +1,37 @@
+"""What a layout is: a name, how to recognise it, how to read it."""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import NamedTuple
+
+from overlapse.grammar.model import Document
+from overlapse.grammar.source import Source
+
+
+class Evidence(NamedTuple):
+    """Why a text looks like a layout.
+
+    strength: 1 to 100.  Marks that no other layout has (a keyword of its own) come above 80, a
+    heading pattern followed by numbers 50 to 80, a mere resemblance below.
+    reason: the marks in words, for the reader of a report.
+    """
+
+    strength: int
+    reason: str
+
+
+@dataclass(frozen=True)
+class Layout:
+    """One text layout.
+
+    name: by structure.  summary: one line.  picture: a few lines of the layout with invented
+    numbers.  comment: the signs that start a comment.  recognise: the evidence in a text, or None.
+    read: text to document; never raises on bad text, but says what is wrong in the faults.
+    """
+
+    name: str
+    summary: str
+    picture: str
+    comment: str
+    recognise: Callable[[Source], Evidence | None]
+    read: Callable[[Source], Document]

@@ -1,0 +1,348 @@
+"""Reader for the layout in which a line of four stars closes each element."""
+
+import re
+
+from lark import Token, Tree
+
+from overlapse.grammar.building import BlockDraft, Build, FunctionType, Node, index_of, integer
+from overlapse.grammar.elements import number_of
+from overlapse.grammar.layout import Evidence, Layout
+from overlapse.grammar.model import Document, Potential, letter_of
+from overlapse.grammar.numbers import read_number
+from overlapse.grammar.source import Source
+
+PICTURE = """\
+C     0
+S   2   1.00
+      4.0      0.6
+****"""
+
+_SHELL_THEN_ROW = re.compile(
+    r"^[ \t]*(?:[A-Za-z]{1,2}|[Ll]=\d+)[ \t]+[1-9]\d*(?:[ \t]+\d*\.\d*)?[ \t]*(?:!.*)?\r?\n"
+    r"(?:[ \t]*(?:!.*)?\r?\n)*[ \t]*[-+.\d]",
+    re.MULTILINE,
+)
+_FENCE = re.compile(r"^[ \t]*\*{4}[ \t]*\r?$", re.MULTILINE)
+_ELEMENT = re.compile(r"^[ \t]*-?[A-Za-z]{1,3}[ \t]+0[ \t]*(?:!.*)?\r?$", re.MULTILINE)
+_POTENTIAL = re.compile(r"^[ \t]*[A-Za-z]{1,3}-ECP[ \t]+\d+[ \t]+\d+", re.MULTILINE | re.IGNORECASE)
+
+
+def recognise(source: Source) -> Evidence | None:
+    text = source.text
+    shell = _SHELL_THEN_ROW.search(text)
+    element = _ELEMENT.search(text)
+    if shell and element:
+        stars = "`****` lines and " if _FENCE.search(text) else f"`{element[0].strip()}` and "
+        heading = shell[0].strip().split("\n", 1)[0].split("!")[0].strip()
+        return Evidence(75, f"{stars}`{heading}` headings")
+    if element and (_POTENTIAL.search(text)):
+        return Evidence(75, f"`{element[0].strip()}` and core-potential headings")
+    if shell and _FENCE.search(text):
+        return Evidence(60, "`****` lines and counted shell headings, but no element heading")
+    return None
+
+
+def read(source: Source) -> Document:
+    return _Reader(source).document()
+
+
+class _Reader:
+    """Walks the tree of one text."""
+
+    def __init__(self, source: Source) -> None:
+        self.build = Build(source, "stars", "!")
+        self.functions: FunctionType | None = None
+
+    def document(self) -> Document:
+        tokens = list(self.build.tokens(self.classify))
+        self.build.note_letters(
+            (token.split()[0], index_of(token)) for token in tokens if token.type == "SHELL"
+        )
+        tree = self.build.parse(tokens)
+        for piece in tree.children:
+            if isinstance(piece, Tree):
+                if piece.data == "element":
+                    self.element(piece)
+                else:
+                    self.stray(piece)
+            elif piece.type == "FLAG":
+                self.functions = _flag(piece)
+        self.check_fences(tree)
+        return self.build.document()
+
+    # ---- which token a line is
+
+    def classify(self, body: str, index: int) -> str:
+        words = body.split()
+        if len(body) >= 3 and set(body) == {"*"}:
+            return "FENCE"
+        if len(words) == 1:
+            if words[0].lower() in ("spherical", "cartesian"):
+                return "FLAG"
+            return "ELEMENT" if self.is_bare_symbol(words[0], index) else "TEXT"
+        if words[-1] in ("0", "O", "o") and all(_is_symbol_like(word) for word in words[:-1]):
+            return "ELEMENT"
+        if words[0].upper().endswith("-ECP"):
+            return "POTENTIAL"
+        if _is_shell_heading(words):
+            return "SHELL"
+        return "TEXT"
+
+    def is_bare_symbol(self, word: str, index: int) -> bool:
+        """A lone symbol opens an element where a shell heading is the next thing that follows."""
+        if number_of(word) is None:
+            return False
+        following = next((body for body in self.build.bodies[index + 1 :] if body), "")
+        return _is_shell_heading(following.split())
+
+    # ---- the tree
+
+    def element(self, node: Node) -> None:
+        heading, *pieces = node.children
+        assert isinstance(heading, Token)
+        blocks = self.headed(heading, pieces)
+        for piece in pieces:
+            if isinstance(piece, Token):
+                if piece.type == "FLAG":
+                    self.functions = _flag(piece)
+                continue
+            for block in blocks:
+                getattr(self, str(piece.data))(block, piece)
+
+    def headed(self, heading: Token, pieces: list[Token | Node]) -> list[BlockDraft]:
+        """The blocks that a heading opens: one for each symbol on the line."""
+        index = index_of(heading)
+        words = heading.split()
+        if words[-1] in ("O", "o"):
+            self.build.fault_word(
+                "form.number",
+                index,
+                len(words) - 1,
+                f"{words[-1]!r} is the letter O where the heading has the digit 0",
+                element=words[0],
+                measured=words[-1],
+                expected=0,
+                remedy="write 0",
+            )
+        elif words[-1] != "0":
+            self.build.fault_line(
+                "form.syntax",
+                index,
+                f"the heading of {words[0]} lacks its 0",
+                severity="warning",
+                element=words[0],
+                expected=f"{words[0]} 0",
+                remedy=f"write `{words[0]}     0`",
+            )
+        symbols = words[:-1] if words[-1] in ("0", "O", "o") else words
+        has_potential = any(isinstance(p, Tree) and p.data == "potential" for p in pieces)
+        has_shells = any(isinstance(p, Tree) and p.data in ("shell", "bare") for p in pieces)
+        blocks = []
+        for ordinal, symbol in enumerate(symbols):
+            bare = symbol.lstrip("-")
+            if has_potential and not has_shells and (known := self.earlier(bare)) is not None:
+                blocks.append(known)  # a potential joins the element's orbital block
+            else:
+                blocks.append(
+                    self.build.open_block(bare, index, functions=self.functions, word=ordinal)
+                )
+        return blocks
+
+    def earlier(self, symbol: str) -> BlockDraft | None:
+        number = number_of(symbol)
+        return next(
+            (block for block in reversed(self.build.blocks) if number and block.number == number),
+            None,
+        )
+
+    def shell(self, block: BlockDraft, node: Node) -> None:
+        heading, rows = node.children
+        assert isinstance(heading, Token) and isinstance(rows, Token)
+        words = heading.split()
+        scale = read_number(words[2]).value if len(words) > 2 else None
+        self.build.shell(
+            block,
+            words[0],
+            index_of(heading),
+            self.build.rows(rows),
+            announced=words[1],
+            scale=scale or 1.0,
+        )
+
+    def bare(self, block: BlockDraft, node: Node) -> None:
+        heading = node.children[0]
+        assert isinstance(heading, Token)
+        words = heading.split()
+        self.build.shell(
+            block, words[0], index_of(heading), self.build.rows(None), announced=words[1]
+        )
+
+    def unheaded(self, block: BlockDraft, node: Node) -> None:
+        first = node.children[0]
+        assert isinstance(first, Token)
+        block.complete = False
+        if first.type == "TEXT":
+            message = (
+                f"{str(first)!r} stands where a shell heading belongs: "
+                "a letter, the number of rows and a scale factor, such as `S   3   1.00`"
+            )
+        else:
+            message = "rows of numbers without a shell heading above them"
+        self.build.fault_line(
+            "form.syntax",
+            index_of(first),
+            message,
+            element=block.symbol,
+            expected="a shell heading such as `S   3   1.00`",
+            remedy="write the heading of the shell that these rows belong to",
+        )
+
+    def remark(self, block: BlockDraft, node: Node) -> None:
+        line = node.children[0]
+        assert isinstance(line, Token)
+        block.complete = False
+        self.build.fault_line(
+            "form.syntax",
+            index_of(line),
+            f"{str(line)!r} is no shell heading, no row of numbers and no `****`",
+            element=block.symbol,
+            expected="`S   3   1.00`, a row of numbers, or `****`",
+            remedy="make it a comment with `!`, or mend the heading",
+        )
+
+    def potential(self, block: BlockDraft, node: Node) -> None:
+        heading, *channels = node.children
+        assert isinstance(heading, Token)
+        words = heading.split()
+        highest = integer(words[1]) if len(words) > 1 else None
+        electrons = integer(words[2]) if len(words) > 2 else None
+        if highest is None or electrons is None:
+            self.build.fault_line(
+                "form.syntax",
+                index_of(heading),
+                f"{str(heading)!r} should give the highest angular momentum of the potential and "
+                "the number of electrons it replaces",
+                element=block.symbol,
+                expected=f"{words[0]}   2   10",
+                remedy="write both whole numbers",
+            )
+            block.complete = False
+            return
+        if len(channels) != highest + 1:
+            self.build.fault_word(
+                "form.count",
+                index_of(heading),
+                1,
+                f"highest angular momentum {highest} ({letter_of(highest)}) makes {highest + 1} "
+                f"channels, {len(channels)} follow",
+                element=block.symbol,
+                measured=len(channels),
+                expected=highest + 1,
+                remedy="a channel was lost or added, or the heading is wrong",
+            )
+        # The local part, of the highest l, comes first; then s, p, d ...
+        made = [
+            self.channel(block, channel, highest if at == 0 else at - 1, at == 0)
+            for at, channel in enumerate(channels)
+        ]
+        block.potential = Potential(
+            electrons, tuple(channel for channel in made if channel), index_of(heading) + 1
+        )
+
+    def channel(self, block: BlockDraft, node: Token | Node, l: int, local: bool):  # type: ignore[no-untyped-def]  # noqa: E741
+        assert isinstance(node, Tree)
+        title, token = node.children
+        assert isinstance(title, Token) and isinstance(token, Token)
+        run = self.build.rows(token)
+        announced = integer(run.rows[0][0]) if len(run.rows[0]) == 1 else None
+        if announced is None:
+            self.build.fault_line(
+                "form.count",
+                run.lines[0],
+                "the number of rows of this channel is missing",
+                element=block.symbol,
+                expected=len(run.rows),
+                remedy="write the number of rows on a line of its own below the title",
+            )
+        else:
+            run = run._replace(rows=run.rows[1:], lines=run.lines[1:])
+            if announced != len(run.rows):
+                self.build.fault_line(
+                    "form.count",
+                    index_of(token),
+                    f"this channel announces {announced} rows, {len(run.rows)} follow",
+                    element=block.symbol,
+                    measured=len(run.rows),
+                    expected=announced,
+                    remedy="a row was lost or added, or the count is wrong",
+                )
+        return self.build.channel(block, l, local, index_of(title), run, title=str(title))
+
+    def stray(self, node: Node) -> None:
+        first = node.children[0]
+        assert isinstance(first, Token)
+        self.build.fault_line(
+            "form.syntax",
+            index_of(first),
+            "this stands outside any element; a line with the element's symbol and 0 is missing "
+            "above it",
+            expected="an element heading such as `C     0`",
+            remedy="write the heading of the element that this belongs to",
+        )
+
+    def check_fences(self, tree: Node) -> None:
+        """A lost `****` between two elements, where the file closes its other elements."""
+        elements = [piece for piece in tree.children if isinstance(piece, Tree)]
+        elements = [piece for piece in elements if piece.data == "element"]
+        orbital = [p for p in elements if not any(_is(c, "potential") for c in p.children)]
+        open_ended = [p for p in orbital if not _is(p.children[-1], "FENCE")]
+        if not open_ended or len(open_ended) > max(1, len(orbital) // 3):
+            return
+        for piece in open_ended:
+            heading = piece.children[0]
+            assert isinstance(heading, Token)
+            last = piece is elements[-1]
+            self.build.fault_line(
+                "form.syntax",
+                index_of(heading),
+                f"the block of {heading.split()[0]} is not closed by `****`"
+                + (" at the end of the file" if last else ""),
+                severity="note" if last else "warning",
+                element=heading.split()[0],
+                expected="****",
+                remedy="put a line `****` after the last row of the block",
+            )
+
+
+def _is(piece: Token | Node, name: str) -> bool:
+    return (piece.data if isinstance(piece, Tree) else piece.type) == name
+
+
+def _flag(token: Token) -> FunctionType:
+    return "spherical" if token.lower() == "spherical" else "cartesian"
+
+
+def _is_symbol_like(word: str) -> bool:
+    bare = word.lstrip("-")
+    return len(bare) <= 3 and bare.isalpha() and bare.isascii()
+
+
+def _is_shell_heading(words: list[str]) -> bool:
+    return (
+        len(words) > 1
+        and (
+            (len(words[0]) <= 2 and words[0].isalpha()) or words[0].lower().startswith("l=")
+        )
+        and words[1].isascii()
+        and words[1].isdigit()
+    )
+
+
+LAYOUT = Layout(
+    name="stars",
+    summary="shells headed `S 3 1.00` below `C 0`; a line of four stars closes each element",
+    picture=PICTURE,
+    comment="!",
+    recognise=recognise,
+    read=read,
+)
