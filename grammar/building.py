@@ -9,6 +9,7 @@ faults.
 """
 
 from collections.abc import Callable, Iterable, Iterator
+from contextlib import suppress
 from dataclasses import dataclass, field
 from difflib import get_close_matches
 from functools import cache
@@ -28,12 +29,13 @@ from overlapse.grammar.model import (
     Channel,
     Document,
     Fault,
+    Floats,
     Grid,
     Potential,
     Remark,
-    Severity,
     Shell,
     Span,
+    letter_of,
 )
 from overlapse.grammar.numbers import CHARACTERS, FORTRAN, looks_numeric, read_number
 from overlapse.grammar.source import Source
@@ -74,16 +76,22 @@ class Run(NamedTuple):
 
 @dataclass
 class ShellDraft:
-    """A shell whose numbers still are words, ``start`` being the first one's place in the file."""
+    """A shell whose numbers still are words.
+
+    ``start`` is the place of its first word among all words of the file; ``shape`` is (nprim,
+    ncontr); ``grid`` tells exponents from coefficients; ``unit`` marks a shell whose coefficients
+    are not written at all because every exponent is a function of its own.
+    """
 
     name: str
-    letters: str
     angular: tuple[int, ...]
     heading: int
     run: Run
-    width: int
     start: int
-    scale: float
+    shape: tuple[int, int]
+    grid: Grid
+    scale: float = 1.0
+    unit: bool = False
 
 
 @dataclass
@@ -111,10 +119,14 @@ class BlockDraft:
 class Build:
     """Collects what a reader finds and makes the document of it."""
 
-    def __init__(self, source: Source, layout: str, comment: str = "") -> None:
+    def __init__(
+        self, source: Source, layout: str, comment: str = "", word_pattern: str = r"\S+"
+    ) -> None:
+        """``comment`` holds the signs that begin a comment, ``word_pattern`` matches a number."""
         self.source = source
         self.layout = layout
         self.comment = comment
+        self.word_pattern = word_pattern
         self.faults: list[Fault] = []
         self.remarks: list[Remark] = []
         self.blocks: list[BlockDraft] = []
@@ -195,7 +207,7 @@ class Build:
                     index_of(token),
                     f"{str(token)!r} does not belong here; expected: {expected}",
                 )
-        return parser.feed_eof()  # type: ignore[no-any-return]
+        return parser.feed_eof()  # type: ignore[no-any-return, no-untyped-call]
 
     def rows(self, token: Token | None) -> Run:
         """The words of a run of rows, line by line; blank lines and comments are left out."""
@@ -242,7 +254,9 @@ class Build:
         """
         number = number_of(symbol)
         if number is None:
-            near = get_close_matches(symbol.capitalize(), [symbol_of(z) for z in range(1, 119)], 1, 0.4)
+            near = get_close_matches(
+                symbol.capitalize(), [symbol_of(z) for z in range(1, 119)], 1, 0.4
+            )
             self.fault_word(
                 "form.element",
                 index,
@@ -332,10 +346,37 @@ class Build:
             block.complete = False
             self._check_words(block, name, run)
             return
-        block.shells.append(
-            ShellDraft(name, letters, angular, heading, run, width, len(self._words), scale)
+        shape, grid = (len(run.rows), width - 1), Grid(0, width, 1, width, 1)
+        self._keep(
+            block, ShellDraft(name, angular, heading, run, len(self._words), shape, grid, scale)
         )
-        for row in run.rows:
+
+    def matrix(
+        self,
+        block: BlockDraft,
+        l: int,
+        heading: int,
+        run: Run,
+        shape: tuple[int, int],
+        grid: Grid,
+        *,
+        unit: bool = False,
+    ) -> None:
+        """Add a shell of one l whose numbers are not laid out as one row for each primitive.
+
+        The words of ``run``, in the order of the text, hold nprim exponents and nprim x ncontr
+        coefficients as ``grid`` says (``unit``: the exponents alone, each one a function).  The
+        caller has checked that there are enough of them.
+        """
+        name = block.next_name(letter_of(l))
+        block.end = max(block.end, heading, *run.lines[-1:])
+        self._keep(
+            block, ShellDraft(name, (l,), heading, run, len(self._words), shape, grid, unit=unit)
+        )
+
+    def _keep(self, block: BlockDraft, draft: ShellDraft) -> None:
+        block.shells.append(draft)
+        for row in draft.run.rows:
             self._words += row
 
     @staticmethod
@@ -422,7 +463,8 @@ class Build:
                 "form.number",
                 index,
                 ordinal,
-                f"{shorten(word)!r} {slip}" + (f"; {spelling} was probably meant" if spelling else ""),
+                f"{shorten(word)!r} {slip}"
+                + (f"; {spelling} was probably meant" if spelling else ""),
                 element=element,
                 shell=shell,
                 measured=shorten(word),
@@ -436,7 +478,7 @@ class Build:
     def channel(
         self,
         block: BlockDraft,
-        l: int,  # noqa: E741
+        l: int,
         local: bool,
         heading: int,
         run: Run,
@@ -481,6 +523,14 @@ class Build:
     def document(self, reason: str = "", raw_primitives: bool = False) -> Document:
         """Convert all numbers and make the model of what was collected."""
         values = self._convert()
+        if not self.blocks and not self.faults:
+            self.fault(
+                "form.syntax",
+                (0, 0),
+                "nothing was found here that describes an element",
+                severity="warning",
+                remedy="check that this is the file you meant, and that it is whole",
+            )
         blocks = [block for block in self.blocks if block.number is not None]
         made = [self._block(block, values) for block in blocks]
         return Document(
@@ -493,25 +543,21 @@ class Build:
             raw_primitives,
         )
 
-    def _convert(self) -> "np.ndarray[Any, np.dtype[np.float64]]":
+    def _convert(self) -> Floats:
         """All numbers of all shells as one read-only array; NaN where one cannot be read."""
         text = " ".join(self._words)
         if "D" in text or "d" in text:
             text = text.translate(FORTRAN)
+        values = np.array([np.nan])
         if set(text) <= CHARACTERS:
-            try:
+            with suppress(ValueError):  # a slip among the numbers; found below
                 values = np.array(list(map(float, text.split())))
-            except ValueError:
-                values = self._convert_one_by_one()
-            if not np.isfinite(values).all():
-                values = self._convert_one_by_one()
-        else:
+        if not np.isfinite(values).all():
             values = self._convert_one_by_one()
         values.flags.writeable = False
         return values
 
-    def _convert_one_by_one(self) -> "np.ndarray[Any, np.dtype[np.float64]]":
-        found = len(self.faults)
+    def _convert_one_by_one(self) -> Floats:
         values = np.full(len(self._words), np.nan)
         for block in self.blocks:
             for shell in block.shells:
@@ -521,32 +567,21 @@ class Build:
                         value = self._number(word, index, ordinal, block.symbol, shell.name)
                         values[at] = np.nan if value is None else value
                         at += 1
-        if len(self.faults) == found and not np.isfinite(values).all():
-            raise AssertionError("a number that is not finite was read without a fault")
         return values
 
-    def _block(
-        self, block: BlockDraft, values: "np.ndarray[Any, np.dtype[np.float64]]"
-    ) -> Block:
+    def _block(self, block: BlockDraft, values: Floats) -> Block:
         shells = []
         complete = block.complete
         for draft in block.shells:
-            count, width = len(draft.run.rows), draft.width
-            table = values[draft.start : draft.start + count * width].reshape(count, width)
-            if np.isnan(table).any():
+            exponents, coefficients = self._table(draft, values)
+            if np.isnan(exponents).any() or np.isnan(coefficients).any():
                 complete = False
                 continue
-            cells = Cells(
-                self.source,
-                draft.run.lines[0],
-                draft.run.lines[-1] + 1,
-                Grid(0, width, 1, width, 1),
-                self.comment,
-            )
-            exponents = table[:, 0]
+            first, last = draft.run.lines[0], draft.run.lines[-1] + 1
+            cells = Cells(self.source, first, last, draft.grid, self.comment, self.word_pattern)
             if draft.scale != 1.0:
                 exponents = exponents * draft.scale**2
-            shells.append(Shell(draft.angular, exponents, table[:, 1:], draft.heading + 1, cells))
+            shells.append(Shell(draft.angular, exponents, coefficients, draft.heading + 1, cells))
         if block.number is None:
             raise AssertionError("only blocks of known elements are made")
         return Block(
@@ -559,6 +594,20 @@ class Build:
             block.line + 1,
             block.end + 1,
         )
+
+    @staticmethod
+    def _table(draft: ShellDraft, values: Floats) -> tuple[Floats, Floats]:
+        """Exponents (nprim,) and coefficients (nprim, ncontr) of a draft, views where possible."""
+        (count, columns), grid, start = draft.shape, draft.grid, draft.start
+        if grid == (0, columns + 1, 1, columns + 1, 1):
+            table = values[start : start + count * (columns + 1)].reshape(count, columns + 1)
+            return table[:, 0], table[:, 1:]
+        rows = np.arange(count)
+        exponents = values[start + grid.e0 + grid.es * rows]
+        if draft.unit:
+            return exponents, np.eye(count)
+        cells = start + grid.c0 + grid.ci * rows[:, None] + grid.cj * np.arange(columns)
+        return exponents, values[cells]
 
     def _sets(self, drafts: list[BlockDraft], made: list[Block]) -> Iterator[BasisSet]:
         """Group blocks into sets: by section, and anew where the list of elements starts again."""
@@ -579,8 +628,11 @@ class Build:
         for position, at in enumerate(members):
             block = made[at]
             if block.atomic_number in seen:
-                following = [made[other].atomic_number for other in members[position : position + 3]]
-                if len(set(following)) > 1 and all(z in seen for z in following):
+                following = [
+                    made[other].atomic_number for other in members[position : position + 3]
+                ]
+                from_the_start = block.atomic_number == made[group[0]].atomic_number
+                if from_the_start and len(set(following)) > 1 and all(z in seen for z in following):
                     self._say_restart(block, seen[block.atomic_number])
                     yield group
                     group, seen = [], {}
@@ -634,5 +686,3 @@ def shorten(word: str, limit: int = 40) -> str:
 def integer(word: str) -> int | None:
     """Value of a word that is an unsigned whole number in ASCII digits of sensible length."""
     return int(word) if word.isascii() and word.isdigit() and len(word) < 16 else None
-
-

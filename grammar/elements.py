@@ -12,26 +12,8 @@ _SYMBOLS = (
 _NUMBERS = {symbol.lower(): z for z, symbol in enumerate(_SYMBOLS, 1)}
 # Systematic names that files made before the permanent ones still carry (IUPAC 1979).
 _NUMBERS |= {
-    symbol: z
-    for z, symbol in enumerate("uun uuu uub uut uuq uup uuh uus uuo".split(), 110)
+    symbol: z for z, symbol in enumerate("uun uuu uub uut uuq uup uuh uus uuo".split(), 110)
 }
-
-_NAMES = (
-    "hydrogen helium lithium beryllium boron carbon nitrogen oxygen fluorine neon sodium magnesium "
-    "aluminum silicon phosphorus sulfur chlorine argon potassium calcium scandium titanium vanadium "
-    "chromium manganese iron cobalt nickel copper zinc gallium germanium arsenic selenium bromine "
-    "krypton rubidium strontium yttrium zirconium niobium molybdenum technetium ruthenium rhodium "
-    "palladium silver cadmium indium tin antimony tellurium iodine xenon cesium barium lanthanum "
-    "cerium praseodymium neodymium promethium samarium europium gadolinium terbium dysprosium "
-    "holmium erbium thulium ytterbium lutetium hafnium tantalum tungsten rhenium osmium iridium "
-    "platinum gold mercury thallium lead bismuth polonium astatine radon francium radium actinium "
-    "thorium protactinium uranium neptunium plutonium americium curium berkelium californium "
-    "einsteinium fermium mendelevium nobelium lawrencium rutherfordium dubnium seaborgium bohrium "
-    "hassium meitnerium darmstadtium roentgenium copernicium nihonium flerovium moscovium "
-    "livermorium tennessine oganesson"
-).split()
-_BY_NAME = {name: z for z, name in enumerate(_NAMES, 1)}
-_BY_NAME |= {"aluminium": 13, "sulphur": 16, "caesium": 55}
 
 _NOBLE = (2, 10, 18, 36, 54, 86, 118)
 
@@ -44,11 +26,6 @@ def symbol_of(z: int) -> str:
 def number_of(symbol: str) -> int | None:
     """Atomic number of a symbol in any letter case, or None."""
     return _NUMBERS.get(symbol.lower())
-
-
-def number_of_name(name: str) -> int | None:
-    """Atomic number of an English element name in any letter case, or None."""
-    return _BY_NAME.get(name.lower())
 
 
 def period_of(z: int) -> int:
@@ -64,8 +41,24 @@ def row_of(z: int) -> tuple[int, int]:
     block of each period (common practice, no source).
     """
     for first, last in (
-        (1, 2), (3, 4), (5, 10), (11, 12), (13, 18), (19, 20), (21, 30), (31, 36), (37, 38),
-        (39, 48), (49, 54), (55, 56), (57, 71), (72, 80), (81, 86), (87, 88), (89, 103), (104, 118),
+        (1, 2),
+        (3, 4),
+        (5, 10),
+        (11, 12),
+        (13, 18),
+        (19, 20),
+        (21, 30),
+        (31, 36),
+        (37, 38),
+        (39, 48),
+        (49, 54),
+        (55, 56),
+        (57, 71),
+        (72, 80),
+        (81, 86),
+        (87, 88),
+        (89, 103),
+        (104, 118),
     ):
         if first <= z <= last:
             return first, last
@@ -75,8 +68,25 @@ def row_of(z: int) -> tuple[int, int]:
 # Order in which the subshells of neutral atoms fill (Madelung), with the ground states that depart
 # from it in a way that changes which subshells are occupied at all (NIST atomic ground states).
 _ORDER = (
-    (1, 0), (2, 0), (2, 1), (3, 0), (3, 1), (4, 0), (3, 2), (4, 1), (5, 0), (4, 2), (5, 1), (6, 0),
-    (4, 3), (5, 2), (6, 1), (7, 0), (5, 3), (6, 2), (7, 1),
+    (1, 0),
+    (2, 0),
+    (2, 1),
+    (3, 0),
+    (3, 1),
+    (4, 0),
+    (3, 2),
+    (4, 1),
+    (5, 0),
+    (4, 2),
+    (5, 1),
+    (6, 0),
+    (4, 3),
+    (5, 2),
+    (6, 1),
+    (7, 0),
+    (5, 3),
+    (6, 2),
+    (7, 1),
 )
 _DEPARTURES: dict[int, tuple[tuple[int, int], tuple[int, int] | None]] = {
     # atomic number: (subshell left empty, subshell occupied instead)
@@ -94,7 +104,7 @@ def subshells(z: int) -> tuple[tuple[int, int], ...]:
     """Subshells (n, l) that hold electrons in the neutral atom's ground state, in filling order."""
     filled: list[tuple[int, int]] = []
     left = z
-    for n, l in _ORDER:  # noqa: E741
+    for n, l in _ORDER:
         if left <= 0:
             break
         filled.append((n, l))
@@ -113,7 +123,7 @@ def subshells(z: int) -> tuple[tuple[int, int], ...]:
 def occupied(z: int) -> dict[int, int]:
     """Number of occupied subshells for each l of the neutral atom: carbon {0: 2, 1: 1}."""
     counts: dict[int, int] = {}
-    for _, l in subshells(z):  # noqa: E741
+    for _, l in subshells(z):
         counts[l] = counts.get(l, 0) + 1
     return counts
 

@@ -20,6 +20,13 @@ class Evidence(NamedTuple):
     reason: str
 
 
+class Written(NamedTuple):
+    """A document in another layout: the text, and what the layout could not express."""
+
+    text: str
+    losses: tuple[str, ...]
+
+
 @dataclass(frozen=True)
 class Layout:
     """One text layout.
@@ -27,6 +34,7 @@ class Layout:
     name: by structure.  summary: one line.  picture: a few lines of the layout with invented
     numbers.  comment: the signs that start a comment.  recognise: the evidence in a text, or None.
     read: text to document; never raises on bad text, but says what is wrong in the faults.
+    write: document to text in this layout, with the digits as they were spelled.
     """
 
     name: str
@@ -35,3 +43,4 @@ class Layout:
     comment: str
     recognise: Callable[[Source], Evidence | None]
     read: Callable[[Source], Document]
+    write: Callable[[Document], Written]

@@ -15,6 +15,7 @@ import numpy as np
 import numpy.typing as npt
 
 from overlapse.grammar.elements import symbol_of
+from overlapse.grammar.numbers import FORTRAN, NUMBER
 from overlapse.grammar.source import Place, Source
 
 Floats = npt.NDArray[np.float64]
@@ -24,7 +25,7 @@ Severity = Literal["error", "warning", "note"]
 LETTERS = "spdfghiklmnoqrtuvwxyz"  # spectroscopic order: no j, and p and s not twice
 
 
-def letter_of(l: int) -> str:  # noqa: E741  (l is the field's own name for it)
+def letter_of(l: int) -> str:
     """Spectroscopic letter of an angular momentum: s, p, d, f, g, h, i, k, l ..."""
     return LETTERS[l] if l < len(LETTERS) else f"l={l}"
 
@@ -70,11 +71,27 @@ class Cells:
             found += ((start + m.start(), start + m.end()) for m in re.finditer(self.pattern, line))
         return found[self.skip :]
 
+    def spellings(self, shape: tuple[int, int]) -> tuple[list[str], list[list[str]]]:
+        """All numbers as typed: exponents, and coefficients row by row; 1.0 where none is written.
+
+        ``shape`` is (nprim, ncontr).
+        """
+        text, grid = self.source.text, self.grid
+        words = [text[start:end] for start, end in self._spans()]
+        exponents = [words[grid.e0 + row * grid.es] for row in range(shape[0])]
+        coefficients = []
+        for row in range(shape[0]):
+            at = [grid.c0 + row * grid.ci + column * grid.cj for column in range(shape[1])]
+            coefficients.append([words[k] if k < len(words) else "1.0" for k in at])
+        return exponents, coefficients
+
     def span(self, row: int, column: int | None = None) -> Span:
         """Offsets of exponent ``row``, or of its coefficient in ``column`` (all 0-based)."""
         grid = self.grid
         ordinal = (
-            grid.e0 + row * grid.es if column is None else grid.c0 + row * grid.ci + column * grid.cj
+            grid.e0 + row * grid.es
+            if column is None
+            else grid.c0 + row * grid.ci + column * grid.cj
         )
         spans = self._spans()
         if 0 <= ordinal < len(spans):
@@ -104,7 +121,7 @@ class Function(NamedTuple):
     than zero.  ``rows`` are their rows in the shell, ``column`` the coefficient column.
     """
 
-    l: int  # noqa: E741
+    l: int
     exponents: Floats
     coefficients: Floats
     rows: npt.NDArray[np.intp]
@@ -187,12 +204,40 @@ class Shell:
             return Place(self.line, 1)
         return self.cells.source.place(self.cells.span(row, column)[0])
 
+    def spellings(self) -> tuple[list[str], list[list[str]]]:
+        """Exponents (nprim) and coefficients (nprim x ncontr) as they were typed.
+
+        A number whose typed form does not give the model's value (a scale factor was applied, a
+        slip was read as the likely number, a lone 1.0 was left out) comes as its shortest exact
+        decimal form instead.
+        """
+        shape = (int(self.coefficients.shape[0]), int(self.coefficients.shape[1]))
+        if self.cells is None:
+            return list(map(repr, self.exponents.tolist())), [
+                list(map(repr, row)) for row in self.coefficients.tolist()
+            ]
+        exponents, coefficients = self.cells.spellings(shape)
+        return (
+            list(map(_exact, exponents, self.exponents.tolist())),
+            [
+                list(map(_exact, words, row))
+                for words, row in zip(coefficients, self.coefficients.tolist(), strict=True)
+            ],
+        )
+
     def spelling(self, row: int, column: int | None = None) -> str:
         """An exponent, or a coefficient, as it was typed."""
         if self.cells is not None:
             return self.cells.spelling(row, column)
         value = self.exponents[row] if column is None else self.coefficients[row, column]
         return repr(float(value))
+
+
+def _exact(word: str, value: float) -> str:
+    """The word if it is a spelling of the value, else the value's shortest exact spelling."""
+    return (
+        word if NUMBER.fullmatch(word) and float(word.translate(FORTRAN)) == value else repr(value)
+    )
 
 
 @dataclass(frozen=True, slots=True)
@@ -204,7 +249,7 @@ class Channel:
     counts r**n / r**2, so 0, 1 and 2 stand for r**-2, r**-1 and r**0.
     """
 
-    l: int  # noqa: E741
+    l: int
     local: bool
     powers: tuple[int, ...]
     exponents: Floats
@@ -270,7 +315,7 @@ class Block:
             names.append(f"{shell.letters}-{seen[shell.letters]}")
         return tuple(names)
 
-    def functions_of(self, l: int) -> list[tuple[int, Function]]:  # noqa: E741
+    def functions_of(self, l: int) -> list[tuple[int, Function]]:
         """Contracted functions of one angular momentum, each with the index of its shell."""
         return [found for found in self.contracted if found[1].l == l]
 

@@ -47,7 +47,7 @@ def read_source(source: Source, *, layout: str | None = None) -> Document:
         if len(line) > LONGEST_LINE:
             return _unread(
                 source,
-                f"line {index + 1} has {len(line):,} characters; no row of a basis set is that long",
+                f"line {index + 1} has {len(line):,} characters: no row of a basis set is so long",
             )
     if layout is not None:
         return known[layout].read(source)

@@ -49,6 +49,11 @@ class Source:
         return tuple(self.text.split("\n"))
 
     @cached_property
+    def flat(self) -> str:
+        """The text with every line end as LF, for patterns that look at whole lines."""
+        return "\n".join(self.lines) if "\r" in self.text else self.text
+
+    @cached_property
     def starts(self) -> list[int]:
         """Offset in ``text`` at which each of ``lines`` begins."""
         if "\r" in self.text:
@@ -67,7 +72,7 @@ class Source:
         return start, max(start, self.starts[line] + len(text.rstrip()))
 
     def span_of_word(self, line: int, ordinal: int) -> tuple[int, int]:
-        """Offsets of a blank-separated word of a line, both 0-based; of the line if there is none."""
+        """Offsets of a blank-separated word of a line (both 0-based), else of the whole line."""
         for seen, word in enumerate(re.finditer(r"\S+", self.lines[line])):
             if seen == ordinal:
                 return self.starts[line] + word.start(), self.starts[line] + word.end()

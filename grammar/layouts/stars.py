@@ -1,15 +1,17 @@
 """Reader for the layout in which a line of four stars closes each element."""
 
 import re
+from collections.abc import Iterator
 
 from lark import Token, Tree
 
 from overlapse.grammar.building import BlockDraft, Build, FunctionType, Node, index_of, integer
 from overlapse.grammar.elements import number_of
-from overlapse.grammar.layout import Evidence, Layout
-from overlapse.grammar.model import Document, Potential, letter_of
+from overlapse.grammar.layout import Evidence, Layout, Written
+from overlapse.grammar.model import Block, Channel, Document, Potential, Shell, letter_of
 from overlapse.grammar.numbers import read_number
 from overlapse.grammar.source import Source
+from overlapse.grammar.writing import Losses, columns, is_general, segments, terms
 
 PICTURE = """\
 C     0
@@ -18,17 +20,17 @@ S   2   1.00
 ****"""
 
 _SHELL_THEN_ROW = re.compile(
-    r"^[ \t]*(?:[A-Za-z]{1,2}|[Ll]=\d+)[ \t]+[1-9]\d*(?:[ \t]+\d*\.\d*)?[ \t]*(?:!.*)?\r?\n"
-    r"(?:[ \t]*(?:!.*)?\r?\n)*[ \t]*[-+.\d]",
+    r"^[ \t]*(?:[A-Za-z]{1,2}|[Ll]=\d+)[ \t]+[1-9]\d*(?:[ \t]+\d*\.\d*)?[ \t]*(?:!.*)?\n"
+    r"(?:[ \t]*(?:!.*)?\n)*[ \t]*[-+.\d]",
     re.MULTILINE,
 )
-_FENCE = re.compile(r"^[ \t]*\*{4}[ \t]*\r?$", re.MULTILINE)
-_ELEMENT = re.compile(r"^[ \t]*-?[A-Za-z]{1,3}[ \t]+0[ \t]*(?:!.*)?\r?$", re.MULTILINE)
+_FENCE = re.compile(r"^[ \t]*\*{4}[ \t]*$", re.MULTILINE)
+_ELEMENT = re.compile(r"^[ \t]*-?[A-Za-z]{1,3}[ \t]+0[ \t]*(?:!.*)?$", re.MULTILINE)
 _POTENTIAL = re.compile(r"^[ \t]*[A-Za-z]{1,3}-ECP[ \t]+\d+[ \t]+\d+", re.MULTILINE | re.IGNORECASE)
 
 
 def recognise(source: Source) -> Evidence | None:
-    text = source.text
+    text = source.flat
     shell = _SHELL_THEN_ROW.search(text)
     element = _ELEMENT.search(text)
     if shell and element:
@@ -249,7 +251,7 @@ class _Reader:
             electrons, tuple(channel for channel in made if channel), index_of(heading) + 1
         )
 
-    def channel(self, block: BlockDraft, node: Token | Node, l: int, local: bool):  # type: ignore[no-untyped-def]  # noqa: E741
+    def channel(self, block: BlockDraft, node: Token | Node, l: int, local: bool) -> Channel | None:
         assert isinstance(node, Tree)
         title, token = node.children
         assert isinstance(title, Token) and isinstance(token, Token)
@@ -330,12 +332,70 @@ def _is_symbol_like(word: str) -> bool:
 def _is_shell_heading(words: list[str]) -> bool:
     return (
         len(words) > 1
-        and (
-            (len(words[0]) <= 2 and words[0].isalpha()) or words[0].lower().startswith("l=")
-        )
+        and ((len(words[0]) <= 2 and words[0].isalpha()) or words[0].lower().startswith("l="))
         and words[1].isascii()
         and words[1].isdigit()
     )
+
+
+def write(document: Document) -> Written:
+    """Every shell by itself: general contractions become shells that repeat their exponents."""
+    losses = Losses()
+    lines: list[str] = []
+    kinds = {block.functions for block in document.blocks}
+    if len(kinds) == 1 and (kind := kinds.pop()):
+        lines.append(kind)
+    elif len(kinds) > 1:
+        losses.say(
+            "the file has one flag for spherical or Cartesian functions, the set has several"
+        )
+    if len(document.sets) > 1:
+        losses.say("names that keep several sets of one file apart are not written")
+    lines.append("****")
+    for block in document.blocks:
+        if block.shells:
+            lines.append(f"{block.symbol:<2}    0")
+            for shell in block.shells:
+                lines += _shell_lines(shell, block.symbol, losses)
+            lines.append("****")
+    for block in document.blocks:
+        if block.potential is not None:
+            lines += _potential_lines(block, block.potential, losses)
+    return Written("\n".join(lines) + "\n", losses.lines())
+
+
+def _shell_lines(shell: Shell, element: str, losses: Losses) -> Iterator[str]:
+    if is_general(shell):
+        losses.say("general contractions are written as separate shells", element)
+    for angular, rows in segments(shell):
+        letters = "SP" if len(angular) > 1 else _letter(angular[0])
+        yield f"{letters:<3} {len(rows):3}   1.00"
+        yield from columns(rows, 6)
+
+
+def _letter(l: int) -> str:
+    # Above i the letters are ambiguous, the number is not.
+    return letter_of(l).upper() if l <= 6 else f"L={l}"
+
+
+def _potential_lines(block: Block, potential: Potential, losses: Losses) -> Iterator[str]:
+    scalar = [channel for channel in potential.channels if channel.kind == "scalar"]
+    if len(scalar) < len(potential.channels):
+        losses.say("spin-orbit terms of core potentials are left out", block.symbol)
+    scalar.sort(key=lambda channel: (not channel.local, channel.l))
+    highest = max((channel.l for channel in scalar), default=0)
+    yield f"{block.symbol.upper():<2}    0"
+    yield f"{block.symbol.upper()}-ECP   {highest:3}   {potential.electrons:3}"
+    for channel in scalar:
+        local = letter_of(highest)
+        yield (
+            f"{local}-ul potential"
+            if channel.local
+            else f"{letter_of(channel.l)}-{local} potential"
+        )
+        rows = terms(channel)
+        yield f"  {len(rows)}"
+        yield from columns(rows, 0)
 
 
 LAYOUT = Layout(
@@ -345,4 +405,5 @@ LAYOUT = Layout(
     comment="!",
     recognise=recognise,
     read=read,
+    write=write,
 )

@@ -1,0 +1,303 @@
+"""Reader for the layout of `$basis` sections whose elements are fenced by lone `*` lines."""
+
+import re
+from collections.abc import Iterator
+
+from lark import Token, Tree
+
+from overlapse.grammar.building import BlockDraft, Build, Node, Role, index_of
+from overlapse.grammar.elements import number_of
+from overlapse.grammar.layout import Evidence, Layout, Written
+from overlapse.grammar.model import Block, Document, Potential, Shell, letter_of
+from overlapse.grammar.source import Source
+from overlapse.grammar.writing import Losses, columns, is_general, segments, terms, title_of
+
+PICTURE = """\
+$basis
+*
+c invented
+*
+   2  s"""
+
+_SECTIONS: dict[str, Role] = {
+    "$basis": "orbital",
+    "$jbas": "fitting",
+    "$cbas": "fitting",
+    "$jkbas": "fitting",
+    "$cabs": "fitting",
+    "$ecp": "unstated",
+}
+_OPENING = re.compile(
+    r"^[ \t]*(\$(?:basis|jbas|cbas|jkbas|cabs|ecp))[ \t]*(?:#.*)?$", re.MULTILINE | re.IGNORECASE
+)
+_STAR = re.compile(r"^[ \t]*\*[ \t]*$", re.MULTILINE)
+_CORE = re.compile(r"ncore\s*=\s*(\d+)(?:\s+lmax\s*=\s*(\d+))?", re.IGNORECASE)
+_CHANNEL = re.compile(r"([a-z])(?:-([a-z]))?", re.IGNORECASE)
+
+
+def recognise(source: Source) -> Evidence | None:
+    opening = _OPENING.search(source.flat)
+    if opening is None:
+        return None
+    if _STAR.search(source.flat, opening.end()):
+        return Evidence(90, f"a `{opening[1]}` section and `*` lines")
+    return Evidence(60, f"a `{opening[1]}` line, but no `*` lines")
+
+
+def read(source: Source) -> Document:
+    return _Reader(source).document()
+
+
+class _Reader:
+    """Walks the tree of one text."""
+
+    def __init__(self, source: Source) -> None:
+        self.build = Build(source, "dollar", "#")
+        self.title = ""
+
+    def document(self) -> Document:
+        tokens = list(self.build.tokens(self.classify, self.numeric_heading))
+        self.build.note_letters(
+            (token.split()[1], index_of(token)) for token in tokens if token.type == "SHELL"
+        )
+        # What stands outside the sections belongs to somebody else's input and is left alone.
+        for piece in self.build.parse(tokens).children:
+            if isinstance(piece, Tree) and piece.data == "section":
+                self.section(piece)
+        return self.build.document()
+
+    def classify(self, body: str, index: int) -> str:
+        low = body.lower()
+        if low.split()[0] in _SECTIONS:
+            return "SECTION"
+        if body[0] == "$":
+            return "END"  # `$end`, or another data group, which closes ours as well
+        if body == "*":
+            return "STAR"
+        if low.startswith("ncore"):
+            return "CORE"
+        if _CHANNEL.fullmatch(body):
+            return "CHANNEL" if self.is_in_potential(index) else "TEXT"
+        return "TEXT"
+
+    def is_in_potential(self, index: int) -> bool:
+        """A lone letter heads a channel if a core line stands above it within its `*` fence."""
+        for body in reversed(self.build.bodies[:index]):
+            if body.lower().startswith("ncore"):
+                return True
+            if body[:1] in ("*", "$"):
+                return False
+        return False
+
+    @staticmethod
+    def numeric_heading(body: str) -> str | None:
+        words = body.split()
+        if len(words) == 2 and words[0].isdigit() and words[1].isalpha() and len(words[1]) <= 2:
+            return "SHELL"
+        return None
+
+    # ---- the tree
+
+    def section(self, node: Node) -> None:
+        heading, *pieces = node.children
+        assert isinstance(heading, Token)
+        self.title = heading.split()[0].lower()
+        for piece in pieces:
+            if not isinstance(piece, Tree):
+                continue
+            if piece.data == "element":
+                self.element(piece)
+            else:
+                self.loose(piece)
+        last = node.children[-1]
+        if pieces and not (isinstance(last, Token) and last.type == "END"):
+            self.build.fault_line(
+                "form.syntax",
+                index_of(heading),
+                f"this `{self.title}` section is not closed by `$end`",
+                severity="warning",
+                expected="$end",
+                remedy="put a line `$end` after the last `*`",
+            )
+
+    def element(self, node: Node) -> None:
+        heading, *pieces = node.children
+        assert isinstance(heading, Token)
+        words = heading.split(None, 1)
+        label = words[1].strip() if len(words) > 1 else None
+        block = self.owner(words[0]) or self.build.open_block(
+            words[0],
+            index_of(heading),
+            section=f"{self.title} {(label or '').lower()}",
+            label=label,
+            role=_SECTIONS[self.title],
+        )
+        if not any(isinstance(piece, Token) for piece in pieces):
+            self.build.fault_line(
+                "form.syntax",
+                index_of(heading),
+                f"no `*` line follows the heading of {words[0]}",
+                severity="warning",
+                element=words[0],
+                expected="*",
+                remedy="put a line `*` between the heading and the first shell",
+            )
+        for piece in pieces:
+            if isinstance(piece, Tree):
+                getattr(self, str(piece.data))(block, piece)
+
+    def owner(self, symbol: str) -> BlockDraft | None:
+        """In `$ecp` the potential joins the element's orbital block, where there is one."""
+        number = number_of(symbol)
+        if self.title != "$ecp" or number is None:
+            return None
+        return next((block for block in self.build.blocks if block.number == number), None)
+
+    def shell(self, block: BlockDraft, node: Node) -> None:
+        heading = node.children[0]
+        rows = node.children[1] if len(node.children) > 1 else None
+        assert isinstance(heading, Token) and (rows is None or isinstance(rows, Token))
+        count, letters = heading.split()
+        self.build.shell(
+            block,
+            letters,
+            index_of(heading),
+            self.build.rows(rows),
+            announced=count,
+            announced_word=0,
+            letters_word=1,
+        )
+
+    bare = shell
+
+    def unheaded(self, block: BlockDraft, node: Node) -> None:
+        block.complete = False
+        self.loose(node, block.symbol)
+
+    def loose(self, node: Node, element: str | None = None) -> None:
+        first = node.children[0]
+        assert isinstance(first, Token)
+        wanted = (
+            "a shell heading such as `3  s`" if element else "an element's heading between two `*`"
+        )
+        self.build.fault_line(
+            "form.syntax",
+            index_of(first),
+            f"{wanted} is missing above this line",
+            element=element,
+            expected=wanted,
+            remedy="write the heading that this line belongs to",
+        )
+
+    def potential(self, block: BlockDraft, node: Node) -> None:
+        heading, *channels = node.children
+        assert isinstance(heading, Token)
+        match = _CORE.match(heading)
+        if match is None:
+            self.build.fault_line(
+                "form.syntax",
+                index_of(heading),
+                f"{str(heading)!r} should give the electrons and the highest angular momentum",
+                element=block.symbol,
+                expected="ncore = 60   lmax = 3",
+                remedy="write both whole numbers",
+            )
+            block.complete = False
+            return
+        made = []
+        for channel in channels:
+            assert isinstance(channel, Tree)
+            title = channel.children[0]
+            rows = channel.children[1] if len(channel.children) > 1 else None
+            assert isinstance(title, Token) and (rows is None or isinstance(rows, Token))
+            angular = self.build.angular_of(title[0], index_of(title))
+            if angular is None:
+                continue
+            made.append(
+                self.build.channel(
+                    block,
+                    angular[0],
+                    "-" not in title,
+                    index_of(title),
+                    self.build.rows(rows),
+                    order="coefficient power exponent",
+                    title=str(title),
+                )
+            )
+        if match[2] is not None and len(channels) != int(match[2]) + 1:
+            highest = int(match[2])
+            self.build.fault_line(
+                "form.count",
+                index_of(heading),
+                f"lmax = {highest} ({letter_of(highest)}) makes {highest + 1} channels, "
+                f"{len(channels)} follow",
+                element=block.symbol,
+                measured=len(channels),
+                expected=highest + 1,
+                remedy="a channel was lost or added, or lmax is wrong",
+            )
+        block.potential = Potential(
+            int(match[1]), tuple(channel for channel in made if channel), index_of(heading) + 1
+        )
+
+
+def write(document: Document) -> Written:
+    """A section for each role; every shell by itself, s+p shells as an s and a p shell."""
+    losses = Losses()
+    lines: list[str] = []
+    if any(block.functions for block in document.blocks):
+        losses.say("the layout has no flag for spherical or Cartesian functions")
+    for members in document.sets:
+        blocks = [block for block in members.blocks if block.shells]
+        if not blocks:
+            continue
+        lines += ["$jbas" if members.role == "fitting" else "$basis", "*"]
+        for block in blocks:
+            lines += [f"{block.symbol.lower()} {title_of(document, block)}", "*"]
+            for shell in block.shells:
+                lines += _shell_lines(shell, block.symbol, losses)
+            lines.append("*")
+        lines.append("$end")
+    owners = [block for block in document.blocks if block.potential is not None]
+    if owners:
+        lines += ["$ecp", "*"]
+        for block in owners:
+            lines += [f"{block.symbol.lower()} {title_of(document, block)}", "*"]
+            lines += [*_potential_lines(block, losses), "*"]
+        lines.append("$end")
+    return Written("\n".join(lines) + "\n", losses.lines())
+
+
+def _shell_lines(shell: Shell, element: str, losses: Losses) -> Iterator[str]:
+    if is_general(shell):
+        losses.say("general contractions are written as separate shells", element)
+    if len(shell.angular) > 1:
+        losses.say("shared s and p exponents are written as an s and a p shell", element)
+    for angular, rows in segments(shell):
+        for place, l in enumerate(angular):
+            yield f"{len(rows):4}  {letter_of(l)}"
+            yield from columns([[row[0], row[1 + place]] for row in rows], 4)
+
+
+def _potential_lines(block: Block, losses: Losses) -> Iterator[str]:
+    assert block.potential is not None
+    scalar = [c for c in block.potential.channels if c.kind == "scalar"]
+    if len(scalar) < len(block.potential.channels):
+        losses.say("spin-orbit terms of core potentials are left out", block.symbol)
+    highest = max((channel.l for channel in scalar), default=0)
+    yield f"  ncore = {block.potential.electrons}   lmax = {highest}"
+    for channel in scalar:
+        letter = letter_of(channel.l)
+        yield letter if channel.local else f"{letter}-{letter_of(highest)}"
+        yield from columns([[c, n, e] for n, e, c in terms(channel)], 2)
+
+
+LAYOUT = Layout(
+    name="dollar",
+    summary="`$basis` sections; a lone `*` before and after each element's heading; `3 s` shells",
+    picture=PICTURE,
+    comment="#",
+    recognise=recognise,
+    read=read,
+    write=write,
+)
