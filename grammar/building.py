@@ -14,6 +14,7 @@ from dataclasses import dataclass, field
 from difflib import get_close_matches
 from functools import cache
 from importlib.resources import files
+from itertools import groupby
 from typing import Any, Literal, NamedTuple
 
 import numpy as np
@@ -92,6 +93,16 @@ class ShellDraft:
     grid: Grid
     scale: float = 1.0
     unit: bool = False
+
+    def holds(self, ordinal: int) -> bool:
+        """Whether a number of the run (0-based) is an exponent or a coefficient of this shell."""
+        (count, columns), grid = self.shape, self.grid
+        row, rest = divmod(ordinal - grid.e0, grid.es)
+        if rest == 0 and 0 <= row < count:
+            return True
+        row, rest = divmod(ordinal - grid.c0, grid.ci)
+        column, rest = divmod(rest, grid.cj)
+        return rest == 0 and 0 <= row < count and column < columns
 
 
 @dataclass
@@ -337,14 +348,14 @@ class Build:
             letters, angular = "sp", (0, 1)
         name = block.next_name("".join(_WITHOUT_J[l] for l in angular) if angular else letters)
         block.end = max(block.end, heading, *run.lines[-1:])
-        self._check_count(block, name, announced, announced_word, heading, run)
+        self.check_count(block, name, announced, announced_word, heading, run)
         if not run.rows or angular is None:
             block.complete = False
-            self._check_words(block, name, run)
+            self.check_words(block, name, run)
             return
         if not self._check_widths(block, name, angular, width, run, general):
             block.complete = False
-            self._check_words(block, name, run)
+            self.check_words(block, name, run)
             return
         shape, grid = (len(run.rows), width - 1), Grid(0, width, 1, width, 1)
         self._keep(
@@ -361,21 +372,27 @@ class Build:
         grid: Grid,
         *,
         unit: bool = False,
+        name: str | None = None,
     ) -> None:
         """Add a shell of one l whose numbers are not laid out as one row for each primitive.
 
         The words of ``run``, in the order of the text, hold nprim exponents and nprim x ncontr
         coefficients as ``grid`` says (``unit``: the exponents alone, each one a function).  The
-        caller has checked that there are enough of them.
+        caller has checked that there are enough of them.  Several shells in a row may share one
+        run.  ``name``: as `BlockDraft.next_name` gave it, if the caller has asked already.
         """
-        name = block.next_name(letter_of(l))
+        name = name or block.next_name(letter_of(l))
         block.end = max(block.end, heading, *run.lines[-1:])
         self._keep(
             block, ShellDraft(name, (l,), heading, run, len(self._words), shape, grid, unit=unit)
         )
 
     def _keep(self, block: BlockDraft, draft: ShellDraft) -> None:
+        before = block.shells[-1] if block.shells else None
         block.shells.append(draft)
+        if before is not None and before.run is draft.run:
+            draft.start = before.start
+            return
         for row in draft.run.rows:
             self._words += row
 
@@ -385,7 +402,7 @@ class Build:
         widths = [len(row) for row in run.rows]
         return max(set(widths), key=widths.count, default=0)
 
-    def _check_count(
+    def check_count(
         self, block: BlockDraft, name: str, announced: str | None, word: int, heading: int, run: Run
     ) -> None:
         found = len(run.rows)
@@ -427,19 +444,31 @@ class Build:
         needed = 1 + len(angular)
         fits = width > 1 and (width - 1) % len(angular) == 0 if general else width == needed
         wanted = width if fits else needed
+        what = "sp shell" if len(angular) == 2 else "shell"
+        holds = f"the {what} has {wanted} (an exponent and {wanted - 1} coefficient" + (
+            "s)" if wanted != 2 else ")"
+        )
+        hint = "; perhaps an SP shell was meant" if wanted == 2 else ""
+        return self.check_rows(block, name, run, wanted, holds, hint)
+
+    def check_rows(
+        self, block: BlockDraft, name: str, run: Run, wanted: int, holds: str, hint: str = ""
+    ) -> bool:
+        """Whether all rows have ``wanted`` numbers.
+
+        ``holds`` says who wants them and why, ``hint`` what a row with one more might be.
+        """
         wrong = [at for at, row in enumerate(run.rows) if len(row) != wanted]
         if len(wrong) == len(run.rows):
             wrong = wrong[:1]
         for at in wrong:
             count = len(run.rows[at])
-            what = "sp shell" if len(angular) == 2 else "shell"
-            hint = "; perhaps an SP shell was meant" if (count, wanted) == (3, 2) else ""
             self.fault_word(
                 "form.count",
                 run.lines[at],
                 min(count, wanted) - (count < wanted),
-                f"{count} number{'s' * (count != 1)} in this row where the {what} has "
-                f"{wanted} (an exponent and {wanted - 1} coefficient{'s' * (wanted != 2)}){hint}",
+                f"{count} number{'s' * (count != 1)} in this row where {holds}"
+                + (hint if count == wanted + 1 else ""),
                 element=block.symbol,
                 shell=name,
                 measured=count,
@@ -448,13 +477,13 @@ class Build:
             )
         return not wrong
 
-    def _check_words(self, block: BlockDraft, name: str, run: Run) -> None:
+    def check_words(self, block: BlockDraft, name: str, run: Run) -> None:
         """Find misspelt numbers in rows that make no shell."""
         for row, index in zip(run.rows, run.lines, strict=True):
             for ordinal, word in enumerate(row):
-                self._number(word, index, ordinal, block.symbol, name)
+                self.number(word, index, ordinal, block.symbol, name)
 
-    def _number(
+    def number(
         self, word: str, index: int, ordinal: int, element: str | None, shell: str | None
     ) -> float | None:
         value, slip, spelling = read_number(word)
@@ -492,7 +521,7 @@ class Build:
         terms: dict[str, list[float]] = {column: [] for column in columns}
         for row, index in zip(run.rows, run.lines, strict=True):
             values = [
-                self._number(word, index, ordinal, block.symbol, None)
+                self.number(word, index, ordinal, block.symbol, None)
                 for ordinal, word in enumerate(row)
             ]
             if len(values) < 3:
@@ -560,11 +589,13 @@ class Build:
     def _convert_one_by_one(self) -> Floats:
         values = np.full(len(self._words), np.nan)
         for block in self.blocks:
-            for shell in block.shells:
-                at = shell.start
-                for row, index in zip(shell.run.rows, shell.run.lines, strict=True):
+            for start, sharing in groupby(block.shells, key=lambda shell: shell.start):
+                shells, at = list(sharing), start
+                for row, index in zip(shells[0].run.rows, shells[0].run.lines, strict=True):
                     for ordinal, word in enumerate(row):
-                        value = self._number(word, index, ordinal, block.symbol, shell.name)
+                        held = (s.name for s in shells[:-1] if s.holds(at - start))
+                        name = next(held, shells[-1].name)
+                        value = self.number(word, index, ordinal, block.symbol, name)
                         values[at] = np.nan if value is None else value
                         at += 1
         return values
@@ -599,9 +630,14 @@ class Build:
     def _table(draft: ShellDraft, values: Floats) -> tuple[Floats, Floats]:
         """Exponents (nprim,) and coefficients (nprim, ncontr) of a draft, views where possible."""
         (count, columns), grid, start = draft.shape, draft.grid, draft.start
-        if grid == (0, columns + 1, 1, columns + 1, 1):
-            table = values[start : start + count * (columns + 1)].reshape(count, columns + 1)
-            return table[:, 0], table[:, 1:]
+        plain = grid.cj == 1 and not draft.unit
+        if plain and grid.e0 == 0 and grid.ci == grid.es >= grid.c0 + columns:
+            table = values[start : start + count * grid.es].reshape(count, grid.es)
+            return table[:, 0], table[:, grid.c0 : grid.c0 + columns]
+        if plain and grid.es == 1 and grid.ci == columns:
+            first, matrix = start + grid.e0, start + grid.c0
+            table = values[matrix : matrix + count * columns].reshape(count, columns)
+            return values[first : first + count], table
         rows = np.arange(count)
         exponents = values[start + grid.e0 + grid.es * rows]
         if draft.unit:
