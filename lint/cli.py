@@ -1,0 +1,242 @@
+"""The command line.  Commands import what they need when they run, so that starting stays quick."""
+
+import sys
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
+from pathlib import Path
+from typing import TYPE_CHECKING, TextIO
+
+import click
+
+if TYPE_CHECKING:
+    from overlapse.lint.engine import FileAudit, Target
+
+CLEAN, FOUND, MISUSED, UNREADABLE, BROKEN = 0, 1, 2, 3, 70
+_LEVELS = click.Choice(["error", "warning", "note"])
+# Below this much text an audit is over before a progress bar would be seen.
+_QUIET_BYTES = 1_500_000
+
+
+@click.group(context_settings={"help_option_names": ["-h", "--help"]})
+@click.version_option(package_name="overlapse", prog_name="overlapse")
+def cli() -> None:
+    """Judge Gaussian basis-set files before cluster time is spent on them."""
+
+
+class _Reports(click.ParamType[str]):
+    """Name of a report; which there are is found by presence, and only when needed."""
+
+    name = "report"
+
+    def convert(
+        self, value: str, param: click.Parameter | None, context: click.Context | None
+    ) -> str:
+        from overlapse.lint.reports import names
+
+        if value not in names():
+            self.fail(f"{value!r} is not one of {', '.join(names())}", param, context)
+        return value
+
+
+class _Layouts(click.ParamType[str]):
+    """Name of a layout."""
+
+    name = "layout"
+
+    def convert(
+        self, value: str, param: click.Parameter | None, context: click.Context | None
+    ) -> str:
+        from overlapse.grammar.layouts import layouts
+
+        if value not in layouts():
+            self.fail(f"{value!r} is not one of {', '.join(layouts())}", param, context)
+        return value
+
+
+@cli.command()
+@click.argument("paths", nargs=-1, required=True, type=click.Path(allow_dash=True, path_type=Path))
+@click.option("--report", type=_Reports(), default="text", help="text, lines, json or sarif.")
+@click.option("--out", type=click.Path(path_type=Path), help="Write the report to this file.")
+@click.option("--layout", type=_Layouts(), help="Read all files as this layout.")
+@click.option("--label", help="What the sets are called, over what the files say.")
+@click.option("--named", default="<stdin>", help="File name to report for standard input (-).")
+@click.option("--fail-at", type=_LEVELS, help="Level from which the audit fails [warning].")
+@click.option("--least", type=_LEVELS, default="note", help="Least level to show [note].")
+@click.option("--recognised-only", is_flag=True, help="Pass over files that show no layout.")
+def audit(
+    paths: tuple[Path, ...],
+    report: str,
+    out: Path | None,
+    layout: str | None,
+    label: str | None,
+    named: str,
+    fail_at: str | None,
+    least: str,
+    recognised_only: bool,
+) -> None:
+    """Judge files, folders (searched by content) and standard input (-).
+
+    Exit status: 0 nothing found at the failing level, 1 something found, 2 wrong use or settings,
+    3 a file could not be read.
+    """
+    from overlapse.lint.engine import LEVELS, FileAudit, Target, audit_file, targets
+    from overlapse.lint.reports import writer
+
+    troubles: list[FileAudit] = []
+
+    def trouble(message: str) -> None:
+        troubles.append(FileAudit(message.partition(":")[0], problem=message))
+
+    found: list[Target] = []
+    for path in paths:
+        found += [Target(path, False)] if path == Path("-") else targets([path], trouble)
+    if recognised_only:
+        found = [Target(target.path, True) for target in found]
+    audits: list[FileAudit] = []
+    with _progress(found) as steps:
+        for target in steps:
+            if target.path == Path("-"):
+                audits.append(_standard_input(named, label, layout))
+            else:
+                audits.append(audit_file(target, label=label, layout=layout))
+    audits += troubles
+    if fail_at is not None:
+        audits = [_failing_at(item, fail_at) for item in audits]
+    status = UNREADABLE if any(item.problem for item in audits) else CLEAN
+    if status == CLEAN and any(item.fails for item in audits):
+        status = FOUND
+    shown = [_at_least(item, LEVELS[LEVELS.index(least) :]) for item in audits]
+    with _output(out) as stream:
+        writer(report)(shown, stream, out is None and stream.isatty())
+    sys.exit(status)
+
+
+def _failing_at(item: "FileAudit", level: str) -> "FileAudit":
+    from dataclasses import replace
+
+    return replace(item, settings=replace(item.settings, fail_at=level))
+
+
+def _at_least(item: "FileAudit", levels: Sequence[str]) -> "FileAudit":
+    from dataclasses import replace
+
+    return replace(item, findings=tuple(f for f in item.findings if f.severity in levels))
+
+
+def _standard_input(named: str, label: str | None, layout: str | None) -> "FileAudit":
+    from overlapse.grammar.reading import read_bytes
+    from overlapse.lint.engine import judge
+    from overlapse.lint.settings import settings_for
+
+    document = read_bytes(sys.stdin.buffer.read(), named, layout=layout)
+    return judge(document, label=label, settings=settings_for(Path(named).absolute()))
+
+
+@contextmanager
+def _progress(found: "Sequence[Target]") -> "Iterator[Iterator[Target]]":
+    """A bar on the terminal where more than a moment's work is ahead."""
+    sizes = [t.path.stat().st_size if t.path.is_file() else 0 for t in found]
+    if sum(sizes) < _QUIET_BYTES or not sys.stderr.isatty():
+        yield iter(found)
+        return
+
+    def steps() -> "Iterator[Target]":
+        for target, size in zip(found, sizes, strict=True):
+            yield target
+            bar.update(size)
+
+    with click.progressbar(length=sum(sizes), label="auditing", file=sys.stderr) as bar:
+        yield steps()
+
+
+@contextmanager
+def _output(path: Path | None) -> Iterator[TextIO]:
+    """Standard output, or a file that appears only when it is complete."""
+    if path is None:
+        yield sys.stdout
+        return
+    with click.open_file(str(path), "w", encoding="utf-8", atomic=True) as stream:
+        yield stream  # type: ignore[misc]
+
+
+@cli.command()
+@click.argument("name", required=False)
+def rules(name: str | None) -> None:
+    """List all rules, or explain one."""
+    from difflib import get_close_matches
+
+    from overlapse.lint.pages import page
+    from overlapse.rules.registry import rules as known
+
+    if name is None:
+        for each in known().values():
+            click.echo(f"{each.name:<22} {each.explanation.what}")
+        return
+    if name not in known():
+        near = get_close_matches(name, known(), 1)
+        hint = f"; did you mean {near[0]}?" if near else ""
+        raise click.UsageError(f"no rule is called {name!r}{hint}")
+    click.echo(page(known()[name]))
+
+
+@cli.command()
+@click.argument("path", type=click.Path(exists=True, dir_okay=False, path_type=Path))
+@click.option("--layout", "target", type=_Layouts(), required=True, help="Layout to write.")
+@click.option("--from-layout", "origin", type=_Layouts(), help="Read the file as this layout.")
+@click.option("--out", type=click.Path(path_type=Path), help="Write to this file.")
+def recast(path: Path, target: str, origin: str | None, out: Path | None) -> None:
+    """Write a file in another layout, its numbers with the digits they have.
+
+    What the new layout cannot express is said on standard error.
+    """
+    from overlapse.grammar.layouts import layouts
+    from overlapse.grammar.reading import read
+
+    document = read(path, layout=origin)
+    broken = [fault for fault in document.faults if fault.severity == "error"]
+    if broken:
+        place = document.source.place(broken[0].span[0])
+        raise _Refused(
+            f"{path}:{place.line}:{place.column}: {broken[0].message}; "
+            f"mend the file first ({len(broken)} such faults)",
+        )
+    written = layouts()[target].write(document)
+    with _output(out) as stream:
+        stream.write(written.text)
+    for loss in written.losses:
+        click.echo(f"not expressed in {target}: {loss}", err=True)
+
+
+class _Refused(click.ClickException):
+    exit_code = FOUND
+
+
+@cli.command()
+@click.argument("folder", required=False, type=click.Path(path_type=Path))
+def demo(folder: Path | None) -> None:
+    """Copy the built-in scenario into FOLDER (or a temporary one) and audit it."""
+    from overlapse.lint.demonstration import demonstrate
+
+    demonstrate(folder, sys.stdout, sys.stdout.isatty())
+
+
+def main() -> None:
+    """Entry point: errors that are nobody's finding get their own exit status."""
+    from overlapse.lint.settings import SettingsError
+
+    try:
+        cli()
+    except SettingsError as problem:
+        click.echo(f"error: {problem}", err=True)
+        sys.exit(MISUSED)
+    except BrokenPipeError:
+        # The reader of our output has gone, which is its right.
+        sys.stderr.close()
+        sys.exit(CLEAN)
+    except Exception as failure:
+        click.echo(
+            f"internal failure: {type(failure).__name__}: {failure}\n"
+            "This is a fault of the program, not of your file; please report it with the file.",
+            err=True,
+        )
+        sys.exit(BROKEN)

@@ -1,0 +1,30 @@
+"""Reports: one module each, with ``write(audits, out, colour)``; found by presence."""
+
+from collections.abc import Callable, Sequence
+from functools import cache
+from importlib import import_module
+from importlib.resources import files
+from typing import TextIO
+
+from overlapse.lint.engine import FileAudit
+
+Writer = Callable[[Sequence[FileAudit], TextIO, bool], None]
+
+
+@cache
+def names() -> tuple[str, ...]:
+    """Names of all reports, in alphabetical order."""
+    entries = (entry.name for entry in files(__name__).iterdir())
+    return tuple(
+        sorted(
+            name.removesuffix(".py")
+            for name in entries
+            if name.endswith(".py") and name != "__init__.py"
+        )
+    )
+
+
+def writer(name: str) -> Writer:
+    """The writer of a report; only its own module is imported."""
+    write: Writer = import_module(f"{__name__}.{name}").write
+    return write

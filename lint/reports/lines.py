@@ -1,0 +1,19 @@
+"""One line for each finding: path, line, column, level, rule, where, message."""
+
+from collections.abc import Sequence
+from typing import TextIO
+
+from overlapse.lint.engine import FileAudit
+
+
+def write(audits: Sequence[FileAudit], out: TextIO, colour: bool) -> None:
+    for audit in audits:
+        for f in audit.findings:
+            where = " ".join(filter(None, (f.element, f.shell)))
+            prefix = f"{f.path}:{f.line}:{f.column}: {f.severity}: {f.rule}: "
+            out.write(prefix + (f"{where}: " if where else "") + one_line(f.message) + "\n")
+
+
+def one_line(text: str) -> str:
+    """Text without line ends and control characters, so that a hostile file stays on its line."""
+    return "".join(c if c.isprintable() else "\N{REPLACEMENT CHARACTER}" for c in text)

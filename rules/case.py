@@ -1,0 +1,150 @@
+"""One document under judgement, with the results that several rules share."""
+
+from collections.abc import Iterator
+from dataclasses import replace
+from functools import cached_property
+from typing import Any
+
+from overlapse.grammar.elements import occupied, replaced_by
+from overlapse.grammar.model import BasisSet, Block, Document, Function, Severity, Span
+from overlapse.rules.claims import Claim, claims_of
+from overlapse.rules.finding import Finding
+from overlapse.rules.norms import Norm, norms_of
+from overlapse.rules.registry import Rule
+from overlapse.rules.rows import Row, Suspect, rows_of, suspects_of
+
+
+class Case:
+    """A document, the label it was given from outside (if any), and helpers to make findings."""
+
+    def __init__(self, document: Document, label: str | None = None) -> None:
+        self.document = document
+        self.given_label = label
+        self._rule = ""
+
+    # ---- running a rule
+
+    def judge(self, rule: Rule, limits: dict[str, float] | None = None) -> list[Finding]:
+        """Findings of one rule, each carrying its name; ``limits`` override the rule's own."""
+        self._rule = rule.name
+        return [
+            replace(finding, rule=rule.name) for finding in rule.function(self, **(limits or {}))
+        ]
+
+    # ---- shared results
+
+    @cached_property
+    def claims(self) -> dict[int, list[Claim]]:
+        """What the label of each set (by its index) is claimed to be, and where."""
+        return claims_of(self.document, self.given_label)
+
+    @cached_property
+    def rows(self) -> list[list[Row]]:
+        """For each set, its functions compared along the rows of the periodic table."""
+        return [rows_of(members) for members in self.sets]
+
+    @cached_property
+    def norms(self) -> list[list[Norm]]:
+        """For each set, the self-overlaps of its contractions of several primitives."""
+        return [norms_of(members) for members in self.sets]
+
+    @cached_property
+    def suspect_exponents(self) -> list[Suspect]:
+        """Exponents that depart from their row, in all sets."""
+        return [
+            suspect
+            for members, rows in zip(self.sets, self.rows, strict=True)
+            for suspect in suspects_of(members, rows)
+        ]
+
+    @property
+    def sets(self) -> tuple[BasisSet, ...]:
+        return self.document.sets
+
+    # ---- making findings
+
+    def faults(self, rule: str) -> Iterator[Finding]:
+        """Findings for what the reader noted under a rule's name."""
+        for fault in self.document.faults:
+            if fault.rule == rule:
+                yield self.at_span(
+                    fault.span,
+                    fault.severity,
+                    fault.message,
+                    element=fault.element,
+                    shell=fault.shell,
+                    measured=fault.measured,
+                    limit=fault.limit,
+                    expected=fault.expected,
+                    remedy=fault.remedy,
+                )
+
+    def at_span(self, span: Span, severity: Severity, message: str, **details: Any) -> Finding:
+        """A finding at a span of the text; ``details`` are the other fields of `Finding`."""
+        place = self.document.source.place(span[0])
+        return Finding(
+            self._rule,
+            severity,
+            message,
+            self.document.path,
+            place.line,
+            place.column,
+            max(1, span[1] - span[0]),
+            **details,
+        )
+
+    def at_line(self, line: int, severity: Severity, message: str, **details: Any) -> Finding:
+        """A finding about a whole line, counted from 1."""
+        span = self.document.source.span_of_line(line - 1)
+        return self.at_span(span, severity, message, **details)
+
+    def at_shell(
+        self,
+        block: Block,
+        index: int,
+        severity: Severity,
+        message: str,
+        *,
+        function: Function | None = None,
+        row: int | None = None,
+        column: int | None = None,
+        **details: Any,
+    ) -> Finding:
+        """A finding about a shell of a block, or about one of its numbers.
+
+        ``row`` and ``column`` (0-based, of the shell) choose the number pointed at; ``function``
+        names the column in the shell's name where the contraction is general.
+        """
+        shell = block.shells[index]
+        name = block.names[index]
+        if function is not None and shell.columns_per_l > 1:
+            name += f"/{function.column % shell.columns_per_l + 1}"
+        details = {"element": block.symbol, "shell": name, **details}
+        if row is not None and shell.cells is not None:
+            return self.at_span(shell.cells.span(row, column), severity, message, **details)
+        return self.at_line(shell.line, severity, message, **details)
+
+
+def is_orbital(members: BasisSet) -> bool:
+    """Whether a set is meant to describe whole atoms (beside their potentials) by itself.
+
+    A set whose layout calls it a fitting set is not; nor is one of which most elements lack
+    occupied shells.  One or two elements alone prove nothing, unless they have no s function.
+    """
+    if members.role == "fitting":
+        return False
+    blocks = [block for block in members.blocks if block.shells]
+    if not any(0 in block.counts for block in blocks):
+        return False
+    whole = sum(_is_whole(block) for block in blocks)
+    return whole * 2 >= len(blocks) or len(blocks) < 3
+
+
+def _is_whole(block: Block) -> bool:
+    replaced = replaced_by(block.potential.electrons) if block.potential else {}
+    if replaced is None:
+        return True
+    return all(
+        block.counts.get(l, 0) >= count - replaced.get(l, 0)
+        for l, count in occupied(block.atomic_number).items()
+    )

@@ -1,0 +1,341 @@
+"""Contractions: is each normalised, is every primitive used, is none there twice?"""
+
+from collections.abc import Iterator
+
+import numpy as np
+
+from overlapse.grammar.model import Block, Function, letter_of
+from overlapse.rules.case import Case
+from overlapse.rules.families.expected import unnormalised_as_published
+from overlapse.rules.finding import Finding
+from overlapse.rules.norms import NORMALISED, Culprit, Norm, culprit, look_alike, rounding
+from overlapse.rules.physics.onecentre import contracted_overlap
+from overlapse.rules.registry import rule
+from overlapse.rules.rows import Row
+
+
+@rule("contraction.norm")
+def norm(case: Case, *, share: float = 0.9, floor: float = 3e-6) -> Iterator[Finding]:
+    """A contraction is not normalised although its neighbours, or nearly all of the set, are.
+
+    A wrong digit in an exponent or a coefficient, or a lost row, moves the self-overlap away from
+    one.  Programs rescale the contraction when they read it, so nothing shows but a wrong shape of
+    the function and an energy that is a little too high.  A plain test would cry wolf, since half
+    of all published contractions are printed unnormalised: so a self-overlap other than one counts
+    where the same contraction of the neighbours in the row is normalised, or nearly all
+    contractions of the set are.  A set that is printed unnormalised throughout gets one note.
+
+    Formula: <f|f> = sum_ij c_i c_j (2 sqrt(a_i a_j) / (a_i + a_j)) ** (l + 3/2) for coefficients
+    over normalised primitives; the factor that mends it is 1 / sqrt(<f|f>).
+
+    Source: T. Helgaker, P. Jorgensen, J. Olsen, Molecular Electronic-Structure Theory, Wiley 2000.
+    The two self-overlaps that differ in published files are told in R. C. Raffenetti, J. Chem.
+    Phys. 58, 4452 (1973) (general contraction) and its segmented forms.
+
+    Limits: share: the part of the set that must be normalised before one that is not is evidence.
+    floor: departures below it never count; above it, ten times what the printed digits explain and
+    what the neighbours show.
+
+    Remedy: compare the number pointed at with the original publication.  To rescale the
+    contraction instead would hide the slip.
+
+    Bad::
+
+        C 0
+        S 2 1.00
+          2.0 0.48
+          0.4 0.68
+        S 3 1.00
+          9.0 0.15
+          2.5 0.55
+          0.7 0.45
+        S 3 1.00
+          5.0 0.1540
+          1.0 0.5344
+          0.2 0.6357
+        ****
+
+    Good::
+
+        C 0
+        S 2 1.00
+          5.0 1.0
+          1.0 1.0
+        S 2 1.00
+          4.0 0.5
+          0.2 0.5
+        ****
+    """
+    for rows, found in zip(case.rows, case.norms, strict=True):
+        broken = [n for n in found if not (np.isfinite(n.overlap) and n.overlap > 0.0)]
+        for off in broken:
+            yield case.at_shell(
+                off.block,
+                off.shell,
+                "error",
+                f"self-overlap {off.overlap:g} is not positive and finite",
+                function=off.function,
+                measured=off.overlap,
+                limit=0.0,
+                remedy="the coefficients cancel one another or are far out of range",
+            )
+        judged = [n for n in found if n not in broken] if broken else found
+        sound = [n for n in judged if n.deviation < NORMALISED]
+        scale = _Scale(judged, sound, share, floor)
+        evident = [n for n in judged if n.deviation > floor and scale.is_evident(n)]
+        yield from _odd_ones(case, evident, sound, rows)
+        plain = [n for n in judged if n.deviation >= NORMALISED and n not in evident]
+        if plain and len(sound) < share * len(judged):
+            yield _throughout(case, plain, len(judged))
+
+
+class _Scale:
+    """How far from one a self-overlap must be before it is evidence in this set."""
+
+    def __init__(self, judged: list[Norm], sound: list[Norm], share: float, floor: float) -> None:
+        self.floor = floor
+        # How far the contractions that are meant to be normalised usually are from one.
+        self.usual = float(np.quantile([n.deviation for n in sound], 0.9)) if sound else 0.0
+        others, alike = len(judged) - 1, len(sound)
+        self.all_but_one = others >= 2 and alike >= share * others
+        self.places: dict[tuple[int, str, int], list[Norm]] = {}
+        for n in judged:
+            self.places.setdefault(self._place(n), []).append(n)
+
+    @staticmethod
+    def _place(n: Norm) -> tuple[int, str, int]:
+        return n.function.l, n.block.names[n.shell], n.function.column
+
+    def is_evident(self, off: Norm) -> bool:
+        """Ask the same contraction of the neighbours in the row first, then the whole set."""
+        z = off.block.atomic_number
+        near = [
+            n.deviation
+            for n in self.places[self._place(off)]
+            if n.block is not off.block and abs(n.block.atomic_number - z) <= 3
+        ]
+        if len(near) >= 2 and max(near) < NORMALISED:
+            limit = 10.0 * max(near)
+        elif self.all_but_one:
+            limit = max(20.0 * self.usual, 1e-4)
+        else:
+            return False
+        return off.deviation > max(limit, self.floor) and off.deviation > 10.0 * rounding(off)
+
+
+def _odd_ones(
+    case: Case, evident: list[Norm], sound: list[Norm], rows: list[Row]
+) -> Iterator[Finding]:
+    """One finding for each shell that has contractions off their norm."""
+    shells: dict[tuple[int, int], list[Norm]] = {}
+    for off in evident:
+        shells.setdefault((id(off.block), off.shell), []).append(off)
+    for group in shells.values():
+        yield _odd_one(case, group, sound, rows)
+
+
+def _odd_one(case: Case, group: list[Norm], sound: list[Norm], rows: list[Row]) -> Finding:
+    off = max(group, key=lambda n: n.deviation)
+    shell = off.block.shells[off.shell]
+    parts = ", ".join(
+        f"{letter_of(n.function.l)} part {_short(n.overlap)}" if len(shell.angular) > 1
+        else _short(n.overlap)
+        for n in group
+    )  # fmt: skip
+    told, row, value = look_alike(off, sound)
+    guess: Culprit | None = None
+    if row is not None and value is not None:
+        guess = Culprit(row, False, value, told)
+    elif not told:
+        guess = culprit(off, rows)
+    published = unnormalised_as_published(
+        off.block.atomic_number, len(off.function.exponents), off.overlap
+    )
+    factor = 1.0 / np.sqrt(off.overlap)
+    witnesses = [f"{len(sound)} contractions of this set are normalised"]
+    message = f"self-overlap {parts} where 1 is expected"
+    expected: float | None = 1.0
+    place: dict[str, int | None] = {}
+    if published:
+        message += f"; {published}"
+    elif guess is not None:
+        what = "exponent" if guess.exponent else "coefficient"
+        column = None if guess.exponent else off.function.column
+        place = {"row": guess.row, "column": column}
+        expected = float(f"{guess.value:.8g}")
+        message += (
+            f"; {what} {shell.spelling(guess.row, column)} should probably be {guess.value:.6g}"
+        )
+        witnesses.append(guess.why)
+    elif told:
+        message += f"; {told}"
+    return case.at_shell(
+        off.block,
+        off.shell,
+        "note" if published or (off.deviation < 2e-5 and guess is None) else "warning",
+        message,
+        function=off.function,
+        **place,
+        measured=off.overlap,
+        limit=1.0,
+        expected=expected,
+        witnesses=tuple(witnesses),
+        remedy=(
+            "nothing to do: programs rescale it"
+            if published
+            else "compare with the original publication; the factor "
+            f"{factor:.8g} on its coefficients would restore the norm but hide a slip"
+        ),
+    )
+
+
+def _short(value: float) -> str:
+    return f"{value:.7f}" if abs(value - 1.0) < 1e-3 else f"{value:.5g}"
+
+
+def _throughout(case: Case, plain: list[Norm], count: int) -> Finding:
+    low, high = min(n.overlap for n in plain), max(n.overlap for n in plain)
+    first = plain[0]
+    return case.at_shell(
+        first.block,
+        first.shell,
+        "note",
+        f"{len(plain)} of {count} contractions of this set are printed unnormalised "
+        f"(self-overlap {low:.3g} to {high:.3g}), so norms say nothing about its numbers; "
+        "this is the first",
+        function=first.function,
+        measured=first.overlap,
+        expected=1.0,
+        remedy="nothing to do: programs rescale contractions when they read them",
+    )
+
+
+@rule("contraction.idle")
+def idle(case: Case) -> Iterator[Finding]:
+    """A column of coefficients is zero throughout, or a primitive is used by no column.
+
+    A contraction of nothing is no function and makes the overlap matrix singular; a primitive
+    without any coefficient costs time and does nothing, and often marks a number that was lost.
+
+    Formula: all c_ij = 0 for one j, or for one i.
+
+    Source: common practice, no source.
+
+    Remedy: restore the lost coefficient, or take the column or the primitive out.
+
+    Bad::
+
+        C 0
+        S 2 1.00
+          4.0 1.0
+          0.5 0.0
+        ****
+
+    Good::
+
+        C 0
+        S 2 1.00
+          4.0 0.6
+          0.5 0.5
+        ****
+    """
+    for block in case.document.blocks:
+        for index, shell in enumerate(block.shells):
+            zero = shell.coefficients == 0.0
+            for column in np.flatnonzero(zero.all(axis=0)):
+                letter = letter_of(shell.angular[int(column) // shell.columns_per_l])
+                yield case.at_shell(
+                    block,
+                    index,
+                    "error",
+                    f"all coefficients of column {column + 1} ({letter}) are zero: "
+                    "this is no function",
+                    row=0,
+                    column=int(column),
+                    measured=0.0,
+                    remedy="restore the coefficients, or take the column out",
+                )
+            if zero.all(axis=0).any():
+                continue
+            for row in np.flatnonzero(zero.all(axis=1)):
+                yield case.at_shell(
+                    block,
+                    index,
+                    "warning",
+                    f"the primitive of exponent {shell.spelling(int(row))} has no coefficient "
+                    "other than zero",
+                    row=int(row),
+                    measured=0.0,
+                    remedy="restore its coefficient, or take the row out",
+                )
+
+
+@rule("contraction.repeat")
+def repeat(case: Case, *, likeness: float = 1e-10) -> Iterator[Finding]:
+    """Two contracted functions of one l are the same function.
+
+    The overlap matrix is exactly singular: a program stops, drops one of them, or runs away.  The
+    two may differ by a factor and still be the same.
+
+    Formula: 1 - |<f|g>| / sqrt(<f|f><g|g>) below the limit.
+
+    Source: common practice, no source.
+
+    Limits: likeness: how close to one the overlap of the normalised functions must be.
+
+    Remedy: take one of the two out; if one of them was meant to be another function, restore it.
+
+    Bad::
+
+        C 0
+        S 2 1.00
+          4.0 0.6
+          0.5 0.5
+        S 2 1.00
+          4.0 0.6
+          0.5 0.5
+        ****
+
+    Good::
+
+        C 0
+        S 2 1.00
+          4.0 0.6
+          0.5 0.5
+        S 1 1.00
+          0.5 1.0
+        ****
+    """
+    for block in case.document.blocks:
+        pairs = [pair for l in block.counts for pair in _equal_functions(block, l, likeness)]
+        shells = {second[0]: first for first, second in pairs}
+        for first, second in pairs:
+            index, function = second
+            if shells.pop(index, None) is None:
+                continue
+            yield case.at_shell(
+                block,
+                index,
+                "error",
+                f"{block.names[index]} repeats a function of {block.names[first[0]]} on line "
+                f"{block.shells[first[0]].line}",
+                function=function,
+                measured=1.0,
+                limit=1.0 - likeness,
+                remedy="take one of the two out, or restore the function that was meant",
+            )
+
+
+def _equal_functions(
+    block: Block, l: int, likeness: float
+) -> Iterator[tuple[tuple[int, Function], tuple[int, Function]]]:
+    functions = [
+        (index, f)
+        for index, f in block.functions_of(l)
+        if len(f.exponents) > 1 and (f.exponents > 0.0).all()
+    ]
+    if len(functions) < 2:
+        return
+    overlap = np.abs(contracted_overlap([f for _, f in functions]))
+    for first, second in zip(*np.nonzero(np.triu(overlap > 1.0 - likeness, 1)), strict=True):
+        yield functions[first], functions[second]

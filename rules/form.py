@@ -1,0 +1,195 @@
+"""Form: is the text what its layout says it is?  The readers find these faults while they read."""
+
+from collections.abc import Iterator
+
+from overlapse.rules.case import Case
+from overlapse.rules.finding import Finding
+from overlapse.rules.registry import rule
+
+
+@rule("form.syntax")
+def syntax(case: Case) -> Iterator[Finding]:
+    """A line does not fit the layout.
+
+    A program that reads the file may stop, or may pass over the line and everything that depends
+    on it: a lost heading gives its rows to the shell before, a lost closing line gives the next
+    element's shells to this one.  Reading goes on at the next shell or element, so that one fault
+    does not hide the others.
+
+    Source: the layout's own rules; what readers of such files do with the line differs (common
+    practice, no source).
+
+    Remedy: mend the line as the message says, or make it a comment.
+
+    Bad::
+
+        C 0
+        S
+          4.0 0.6
+          0.5 0.5
+        ****
+
+    Good::
+
+        C 0
+        S 2 1.00
+          4.0 0.6
+          0.5 0.5
+        ****
+    """
+    yield from case.faults("form.syntax")
+
+
+@rule("form.count")
+def count(case: Case) -> Iterator[Finding]:
+    """An announced number of rows, columns or shells is not what follows.
+
+    Either a row was lost or added, or the count is wrong.  Programs trust the count: one row too
+    few and the next heading is read as numbers, one too many and the last row is never used.
+
+    Source: the layout's own rules.
+
+    Remedy: compare with the original publication, then mend the rows or the count.
+
+    Bad::
+
+        C 0
+        S 3 1.00
+          4.0 0.6
+          0.5 0.5
+        ****
+
+    Good::
+
+        C 0
+        S 2 1.00
+          4.0 0.6
+          0.5 0.5
+        ****
+    """
+    yield from case.faults("form.count")
+
+
+@rule("form.number")
+def number(case: Case) -> Iterator[Finding]:
+    """A word that should be a number is not one.
+
+    Letters that look like digits, a decimal comma, a typographic minus sign, an exponent letter
+    that was lost (1.5-03), a field of asterisks: some readers stop, others take the part they
+    understand and go on with a wrong number.  Where one reading is likely the shell is judged with
+    it, so that the slip does not look like a missing shell as well.
+
+    Source: number spelling of Fortran and C (ISO/IEC 1539-1, ISO/IEC 9899).
+
+    Remedy: write the number that was meant; compare with the original publication.
+
+    Bad::
+
+        C 0
+        S 2 1.00
+          4.0 0.6
+          O.5 0.5
+        ****
+
+    Good::
+
+        C 0
+        S 2 1.00
+          4.0 0.6
+          0.5 0.5
+        ****
+    """
+    yield from case.faults("form.number")
+
+
+@rule("form.element")
+def element(case: Case) -> Iterator[Finding]:
+    """A heading names no element.
+
+    The block cannot be judged, and no program will find it.
+
+    Source: symbols of the elements, IUPAC; the systematic three-letter names of 1979 are accepted.
+
+    Remedy: write the element's symbol.
+
+    Bad::
+
+        Cx 0
+        S 1 1.00
+          4.0 1.0
+        ****
+
+    Good::
+
+        Cu 0
+        S 1 1.00
+          4.0 1.0
+        ****
+    """
+    yield from case.faults("form.element")
+
+
+@rule("form.letter")
+def letter(case: Case) -> Iterator[Finding]:
+    """A shell's letter is unknown, or is read in two ways.
+
+    Spectroscopy leaves out j, so k follows i; some files count j in.  From l = 7 on one letter
+    therefore stands for two angular momenta, and two programs read one file differently.
+
+    Source: letters of angular momentum in atomic spectroscopy; both habits occur (common practice,
+    no source).
+
+    Remedy: write the number (L=7) where the layout allows it.
+
+    Bad::
+
+        C 0
+        X 1 1.00
+          4.0 1.0
+        ****
+
+    Good::
+
+        C 0
+        D 1 1.00
+          4.0 1.0
+        ****
+    """
+    yield from case.faults("form.letter")
+
+
+@rule("form.repeat")
+def repeat(case: Case) -> Iterator[Finding]:
+    """An element, or one of its shells, is given twice in one set.
+
+    Depending on the program the two are added up, which makes the set linearly dependent, or one
+    of them is silently taken.  A list of elements that starts again from its beginning is judged
+    as a second set instead.
+
+    Source: common practice, no source.
+
+    Remedy: keep one of the two.
+
+    Bad::
+
+        C 0
+        S 1 1.00
+          4.0 1.0
+        ****
+        C 0
+        S 1 1.00
+          4.0 1.0
+        ****
+
+    Good::
+
+        C 0
+        S 1 1.00
+          4.0 1.0
+        ****
+        N 0
+        S 1 1.00
+          5.0 1.0
+        ****
+    """
+    yield from case.faults("form.repeat")

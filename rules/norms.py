@@ -1,0 +1,253 @@
+"""Self-overlaps of the contractions of a set, and what its own numbers say about one that is off.
+
+Half of all published contractions are printed unnormalised, so a self-overlap other than one proves
+nothing by itself.  It is evidence where the same contraction of the neighbours in the row, or
+nearly all of the set, is normalised and one is not.
+"""
+
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
+from typing import NamedTuple
+
+import numpy as np
+
+from overlapse.grammar.model import BasisSet, Block, Floats, Function, Shell
+from overlapse.grammar.numbers import NUMBER
+from overlapse.rules.physics.onecentre import primitive_overlap, self_overlap
+from overlapse.rules.rows import Row
+
+NORMALISED = 1e-3  # closer to one than this counts as meant to be normalised
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Norm:
+    """A contraction of two or more primitives and its self-overlap."""
+
+    block: Block
+    shell: int
+    function: Function
+    overlap: float
+
+    @property
+    def deviation(self) -> float:
+        return abs(self.overlap - 1.0)
+
+
+class Culprit(NamedTuple):
+    """The one number whose change would explain a self-overlap that is off.
+
+    row: of the shell.  exponent: whether the exponent is meant, else the coefficient.  value: the
+    number with which the self-overlap is one.  why: what points at it.
+    """
+
+    row: int
+    exponent: bool
+    value: float
+    why: str
+
+
+def norms_of(members: BasisSet) -> list[Norm]:
+    """Self-overlaps of all contractions of a set that have several primitives."""
+    found = []
+    for block in members.blocks:
+        for index, function in block.contracted:
+            if len(function.exponents) > 1 and (function.exponents > 0.0).all():
+                value = self_overlap(function.exponents, function.coefficients, function.l)
+                found.append(Norm(block, index, function, value))
+    return found
+
+
+def rounding(norm: Norm) -> float:
+    """How far the printed digits alone can move the self-overlap of a contraction.
+
+    First-order propagation of half a unit in the last place of each coefficient and exponent, as
+    if all errors added up.
+    """
+    shell = norm.block.shells[norm.shell]
+    exponents, coefficients = shell.spellings()
+    function = norm.function
+    a, c = function.exponents, function.coefficients
+    overlap = primitive_overlap(a, a, function.l)
+    half_c = np.array([_half_unit(coefficients[row][function.column]) for row in function.rows])
+    half_a = np.array([_half_unit(exponents[row]) for row in function.rows])
+    by_c = 2.0 * np.abs(overlap @ c) * half_c
+    # d S_ij / d ln a_i = -(l + 3/2)/2 * (a_i - a_j)/(a_i + a_j) * S_ij
+    tilt = (a[:, None] - a[None, :]) / (a[:, None] + a[None, :])
+    by_a = (function.l + 1.5) * np.abs(c * ((tilt * overlap) @ c)) * half_a / a
+    return float(by_c.sum() + by_a.sum())
+
+
+def _half_unit(word: str) -> float:
+    """Half a unit in the last printed place of a number."""
+    if not NUMBER.fullmatch(word):
+        return 0.0
+    mantissa, _, power = word.upper().replace("D", "E").partition("E")
+    decimals = len(mantissa.partition(".")[2])
+    return float(0.5 * 10.0 ** (int(power or 0) - decimals))
+
+
+def root_coefficient(norm: Norm, at: int, near: float) -> float | None:
+    """The coefficient ``at`` (in the function) that makes the self-overlap one, closest to near."""
+    a, c = norm.function.exponents, norm.function.coefficients
+    overlap = primitive_overlap(a, a, norm.function.l)
+    others = c.copy()
+    others[at] = 0.0
+    half, rest = float(overlap[at] @ others), float(others @ overlap @ others) - 1.0
+    inside = half * half - rest
+    if inside < 0.0:
+        return None
+    roots = (-half + inside**0.5, -half - inside**0.5)
+    return min(roots, key=lambda root: abs(root - near))
+
+
+def culprit(norm: Norm, rows: Sequence[Row], finest: float = 2e-3) -> Culprit | None:
+    """Find the number that put a contraction off its norm.
+
+    First a coefficient whose sign alone explains it; then the number that departs most from the
+    row of the periodic table, provided that it departs clearly.
+    """
+    function = norm.function
+    for at, coefficient in enumerate(function.coefficients.tolist()):
+        value = root_coefficient(norm, at, -coefficient)
+        if value is not None and abs(value + coefficient) < 1e-3 * abs(coefficient):
+            return Culprit(
+                int(function.rows[at]), False, -coefficient, "with the other sign it would be one"
+            )
+    for row in rows:
+        for place, member in enumerate(row.members):
+            if member.function is function or (
+                member.function.column == function.column
+                and member.function.exponents is function.exponents
+            ):
+                return _by_row(norm, row, place, finest)
+    return None
+
+
+def _by_row(norm: Norm, row: Row, place: int, finest: float) -> Culprit | None:
+    function = norm.function
+    departure, scatter, reach = (part[place] for part in row.coefficients)
+    size = np.maximum(np.abs(function.coefficients), np.abs(function.coefficients - departure))
+    by_c = np.abs(departure) / reach / np.maximum(scatter, finest * size)
+    departure_a, scatter_a, reach_a = (part[place] for part in row.exponents)
+    shift = np.median(departure_a)
+    by_a = np.abs(departure_a - shift) / reach_a / np.maximum(scatter_a, finest)
+    at_c, at_a = int(np.argmax(by_c)), int(np.argmax(by_a))
+    others = len(row.members) - 1
+    if max(by_c[at_c], by_a[at_a]) < 4.0:
+        return None
+    if by_c[at_c] >= by_a[at_a]:
+        near = float(function.coefficients[at_c] - departure[at_c])
+        value = root_coefficient(norm, at_c, near)
+        if value is None or abs(value - near) > 0.5 * abs(departure[at_c]):
+            value = near
+        return Culprit(
+            int(function.rows[at_c]),
+            False,
+            value,
+            f"this coefficient departs from those of {others} neighbours",
+        )
+    near = float(function.exponents[at_a] * np.exp(shift - departure_a[at_a]))
+    guess = Culprit(
+        int(function.rows[at_a]),
+        True,
+        _root_exponent(norm, at_a, near),
+        f"this exponent departs from those of {others} neighbours",
+    )
+    return guess if explains(guess, norm.block.shells[norm.shell]) else None
+
+
+def explains(guess: Culprit, shell: Shell) -> bool:
+    """Whether the guessed exponent brings all contractions of the shell to norm."""
+    exponents = shell.exponents.copy()
+    exponents[guess.row] = guess.value
+    for function in shell.functions():
+        if len(function.exponents) > 1 and guess.row in function.rows:
+            changed = exponents[function.rows]
+            if abs(self_overlap(changed, function.coefficients, function.l) - 1.0) > NORMALISED:
+                return False
+    return True
+
+
+def _root_exponent(norm: Norm, at: int, near: float) -> float:
+    """The exponent that makes the self-overlap one, by bisection around ``near``; else near."""
+    function = norm.function
+
+    def excess(value: float) -> float:
+        exponents = function.exponents.copy()
+        exponents[at] = value
+        return self_overlap(exponents, function.coefficients, function.l) - 1.0
+
+    low, high = near / 1.3, near * 1.3
+    if excess(low) * excess(high) > 0.0:
+        return near
+    for _ in range(60):
+        middle = (low * high) ** 0.5
+        if excess(low) * excess(middle) <= 0.0:
+            high = middle
+        else:
+            low = middle
+    return low
+
+
+def look_alike(norm: Norm, sound: Sequence[Norm]) -> tuple[str, int | None, float | None]:
+    """What the sound contractions of the set say about one that is off.
+
+    Returns a sentence ("" for none), and the row and the value of the coefficient that is wrong,
+    where it is one coefficient.  Expansions of one Slater function differ by a scale factor only,
+    so a sound contraction with the same ratios of exponents should have the same coefficients.
+    """
+    function = norm.function
+    ratios = np.log(function.exponents / function.exponents[0])
+    others = [
+        other
+        for other in sound
+        if other.function.l == function.l and len(other.function.exponents) == len(ratios)
+    ]
+    for other in others:
+        if not _same_ratios(other.function, ratios):
+            continue
+        differ = np.flatnonzero(
+            np.abs(other.function.coefficients - function.coefficients)
+            > 1e-5 * np.abs(other.function.coefficients) + 1e-7
+        )
+        if len(differ) == 1:
+            at = int(differ[0])
+            names = _elements(o for o in others if _same(o.function, other.function))
+            return (
+                f"{names} have the same ratios of exponents and the same other coefficients, "
+                f"but {other.function.coefficients[at]:.10g} in this place",
+                int(function.rows[at]),
+                float(other.function.coefficients[at]),
+            )
+    same = [o for o in others if np.allclose(o.function.coefficients, function.coefficients, 1e-5)]
+    if not same:
+        return "", None, None
+    told = (
+        f"{_elements(same)} have the same coefficients with exponents in the ratios "
+        f"{_ratios(same[0].function)}, here they are {_ratios(function)}"
+    )
+    strangers = [o for o in others if _same_ratios(o.function, ratios)]
+    if strangers:
+        told += (
+            f"; these are the ratios of {strangers[0].block.names[strangers[0].shell]} of "
+            f"{_elements(strangers)}: exponents of two shells exchanged?"
+        )
+    return told, None, None
+
+
+def _same_ratios(function: Function, ratios: Floats) -> bool:
+    own = np.log(function.exponents / function.exponents[0])
+    return bool(np.abs(own - ratios).max() < 2e-3)
+
+
+def _same(left: Function, right: Function) -> bool:
+    return bool(np.allclose(left.coefficients, right.coefficients, 1e-5))
+
+
+def _ratios(function: Function) -> str:
+    return " : ".join(f"{r:.4g}" for r in function.exponents / function.exponents[0])
+
+
+def _elements(norms: Iterable[Norm]) -> str:
+    symbols = list(dict.fromkeys(norm.block.symbol for norm in norms))
+    return ", ".join(symbols[:4]) + (f" and {len(symbols) - 4} more" if len(symbols) > 4 else "")

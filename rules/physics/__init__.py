@@ -1,0 +1,1 @@
+"""The formulas that rules rest on; nothing here knows of findings."""

@@ -1,0 +1,72 @@
+"""Overlap of Gaussian functions that share a centre.
+
+For normalised primitives of one angular momentum l with exponents a and b
+
+    <a|b> = (2 sqrt(a b) / (a + b)) ** (l + 3/2),
+
+and different l, or different components of one l, do not overlap at all.  A contraction
+f = sum_i c_i g_i has the self-overlap sum_ij c_i c_j <a_i|a_j>.
+
+Source: T. Helgaker, P. Jorgensen, J. Olsen, Molecular Electronic-Structure Theory, Wiley 2000,
+chapters 6 and 8.
+"""
+
+import numpy as np
+
+from overlapse.grammar.model import Floats, Function
+
+
+def primitive_overlap(left: Floats, right: Floats, l: int) -> Floats:
+    """Overlap of normalised primitives, shape (len(left), len(right)); exponents in bohr**-2.
+
+    Exponents must be positive; others give NaN.
+    """
+    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+        root = np.sqrt(left[:, None] / right[None, :])
+        # Written with the ratio, so that neither product nor sum can overflow.
+        overlap: Floats = (2.0 / (root + 1.0 / root)) ** (l + 1.5)
+    return overlap
+
+
+def self_overlap(exponents: Floats, coefficients: Floats, l: int) -> float:
+    """Self-overlap of one contraction over normalised primitives; dimensionless."""
+    return float(coefficients @ primitive_overlap(exponents, exponents, l) @ coefficients)
+
+
+def contracted_overlap(functions: list[Function]) -> Floats:
+    """Overlap of contracted functions of one l on one centre, each normalised first.
+
+    Shape (n, n), ones on the diagonal.  A function that cannot be normalised (its self-overlap is
+    not positive and finite) gives NaN in its row and column.
+    """
+    l = functions[0].l
+    exponents = np.concatenate([function.exponents for function in functions])
+    owner = np.repeat(np.arange(len(functions)), [len(f.exponents) for f in functions])
+    weights = np.zeros((len(functions), len(exponents)))
+    weights[owner, np.arange(len(exponents))] = np.concatenate([f.coefficients for f in functions])
+    with np.errstate(invalid="ignore", divide="ignore"):
+        overlap = weights @ primitive_overlap(exponents, exponents, l) @ weights.T
+        scale = 1.0 / np.sqrt(np.diagonal(overlap))
+    result: Floats = overlap * scale[:, None] * scale[None, :]
+    return result
+
+
+def eigenvalues(overlap: Floats) -> Floats:
+    """Eigenvalues of a symmetric matrix, rising, shape (n,)."""
+    values: Floats = np.linalg.eigvalsh(overlap)
+    return values
+
+
+def two_centre_s(
+    left: tuple[Floats, Floats], right: tuple[Floats, Floats], distance: float
+) -> float:
+    """Overlap of two contracted s functions, each (exponents, coefficients), ``distance`` in bohr.
+
+    For normalised primitives (4 a b / (a + b)**2)**(3/4) exp(-a b R**2 / (a + b)).
+    Source: A. Szabo, N. S. Ostlund, Modern Quantum Chemistry, appendix A.
+    """
+    (a, c), (b, d) = left, right
+    total = a[:, None] + b[None, :]
+    product = a[:, None] * b[None, :]
+    primitive = (4.0 * product / total**2) ** 0.75 * np.exp(-product / total * distance**2)
+    return float(c @ primitive @ d)

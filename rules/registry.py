@@ -1,0 +1,107 @@
+"""Rules by name, and the explanation that each carries in its docstring.
+
+A rule is a function decorated with ``@rule("group.name")`` in a module of this folder; nothing
+else registers it.  It gets a `Case` and yields findings.  Its keyword arguments are its limits:
+their defaults hold unless the settings say otherwise.
+
+The docstring is the rule's page.  Its first line says what is found; then follow paragraphs, of
+which those that begin with "Formula:", "Source:", "Limits:" and "Remedy:" have that meaning and the
+rest says why it matters; and two literal samples, "Bad::" and "Good::", which the tests run.
+"""
+
+import inspect
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass
+from functools import cache, cached_property
+from importlib import import_module
+from importlib.resources import files
+from textwrap import dedent
+from typing import Any, NamedTuple
+
+from overlapse.rules.finding import Finding
+
+RuleFunction = Callable[..., Iterator[Finding]]
+
+
+class Explanation(NamedTuple):
+    """A rule's own text, taken apart."""
+
+    what: str
+    why: str
+    formula: str
+    source: str
+    limits: str
+    remedy: str
+    bad: str
+    good: str
+
+
+@dataclass(frozen=True)
+class Rule:
+    """A rule: its name, "group.rule", and its function."""
+
+    name: str
+    function: RuleFunction
+
+    @cached_property
+    def limits(self) -> dict[str, float]:
+        """Names and default values of the rule's limits."""
+        parameters = inspect.signature(self.function).parameters.values()
+        return {p.name: p.default for p in parameters if p.kind is p.KEYWORD_ONLY}
+
+    @cached_property
+    def explanation(self) -> Explanation:
+        """The docstring, taken apart."""
+        return _explain(inspect.getdoc(self.function) or "")
+
+
+_RULES: dict[str, Rule] = {}
+
+
+def rule(name: str) -> Callable[[RuleFunction], RuleFunction]:
+    """Register the decorated function as the rule ``name``."""
+
+    def register(function: RuleFunction) -> RuleFunction:
+        _RULES[name] = Rule(name, function)
+        return function
+
+    return register
+
+
+@cache
+def rules() -> dict[str, Rule]:
+    """All rules by name, in alphabetical order."""
+    for entry in files("overlapse.rules").iterdir():
+        if entry.name.endswith(".py") and entry.name != "__init__.py":
+            import_module(f"overlapse.rules.{entry.name.removesuffix('.py')}")
+    return dict(sorted(_RULES.items()))
+
+
+_MARKED = ("Formula", "Source", "Limits", "Remedy")
+
+
+def _explain(text: str) -> Explanation:
+    prose, samples = text, {"Bad": "", "Good": ""}
+    for name in ("Good", "Bad"):
+        before, mark, sample = prose.partition(f"\n{name}::\n")
+        if mark:
+            prose, samples[name] = before, dedent(sample).strip("\n") + "\n"
+    what, _, rest = prose.strip().partition("\n\n")
+    parts: dict[str, Any] = dict.fromkeys(_MARKED, "")
+    why = []
+    for paragraph in rest.split("\n\n"):
+        name, colon, words = paragraph.strip().partition(":")
+        if colon and name in _MARKED:
+            parts[name] = dedent(words).strip()
+        elif paragraph.strip():
+            why.append(paragraph.strip())
+    return Explanation(
+        " ".join(what.split()),
+        "\n\n".join(why),
+        parts["Formula"],
+        parts["Source"],
+        parts["Limits"],
+        parts["Remedy"],
+        samples["Bad"],
+        samples["Good"],
+    )

@@ -1,0 +1,162 @@
+"""Corresponding functions of neighbouring elements: what a row of the periodic table shows.
+
+Functions correspond when they have the same l and the same place in blocks of one set and one
+stretch of the periodic table whose functions of that l have the same contraction lengths.
+"""
+
+from typing import NamedTuple
+
+import numpy as np
+
+from overlapse.grammar.model import BasisSet, Block, Floats, Function
+from overlapse.rules.physics.trends import FEWEST, Deviations, leave_one_out
+
+# Stretches over which a family keeps its pattern and its numbers run smoothly.  The s block is
+# left out: two elements show no trend, and their valence does not run on into the p block.
+_STRETCHES = (
+    (5, 10), (13, 18), (21, 30), (31, 36), (39, 48), (49, 54), (58, 71), (72, 80), (81, 86),
+    (90, 103), (104, 112), (113, 118),
+)  # fmt: skip
+
+
+class Member(NamedTuple):
+    """A contracted function of a block: indices of block, shell, and the function itself."""
+
+    block: int
+    shell: int
+    function: Function
+
+
+class Row(NamedTuple):
+    """Corresponding functions of several elements, by rising atomic number.
+
+    exponents: deviations of ln(exponent), shape (elements, primitives).  spacings: the same for
+    ln(exponent) less the mean of its two neighbours in the shell, in which the scaling with the
+    nuclear charge cancels; NaN at the ends of a shell.  coefficients: deviations of coefficients.
+    """
+
+    numbers: tuple[int, ...]
+    members: tuple[Member, ...]
+    exponents: Deviations
+    spacings: Floats
+    coefficients: Deviations
+
+
+def _stretch(z: int) -> int:
+    return next((at for at, (low, high) in enumerate(_STRETCHES) if low <= z <= high), -1)
+
+
+def rows_of(members: BasisSet) -> list[Row]:
+    """All rows of a set that have enough elements for a trend."""
+    groups: dict[tuple[int, int, tuple[int, ...], int], dict[int, Member]] = {}
+    for at, block in enumerate(members.blocks):
+        stretch = _stretch(block.atomic_number)
+        ordered = _in_order(block)
+        lengths: dict[int, tuple[int, ...]] = {}
+        for _, function in ordered:
+            lengths[function.l] = (*lengths.get(function.l, ()), len(function.exponents))
+        seen: dict[int, int] = {}
+        for shell, function in ordered:
+            l = function.l
+            seen[l] = seen.get(l, -1) + 1
+            if (function.exponents > 0).all():
+                key = (stretch, l, lengths[l], seen[l])
+                groups.setdefault(key, {}).setdefault(
+                    block.atomic_number, Member(at, shell, function)
+                )
+    return [_row(group) for key, group in groups.items() if len(group) >= FEWEST and key[0] >= 0]
+
+
+def _in_order(block: Block) -> list[tuple[int, Function]]:
+    """Contracted functions as they stand, those of one primitive by falling exponent.
+
+    Files list lone primitives in either order.
+    """
+    used = [(shell, function) for shell, function in block.contracted if len(function.exponents)]
+    several = [pair for pair in used if len(pair[1].exponents) > 1]
+    lone = [pair for pair in used if len(pair[1].exponents) == 1]
+    return several + sorted(lone, key=lambda pair: -float(pair[1].exponents[0]))
+
+
+def _row(group: dict[int, Member]) -> Row:
+    numbers = tuple(sorted(group))
+    members = tuple(group[z] for z in numbers)
+    logs = np.log([member.function.exponents for member in members])
+    spacing = np.full(logs.shape, np.nan)
+    if logs.shape[1] > 2:
+        inner = logs[:, 1:-1] - 0.5 * (logs[:, :-2] + logs[:, 2:])
+        spacing[:, 1:-1] = leave_one_out(numbers, inner).departure
+    coefficients = np.array([_signed(member.function) for member in members])
+    return Row(
+        numbers,
+        members,
+        leave_one_out(numbers, logs),
+        spacing,
+        leave_one_out(numbers, coefficients),
+    )
+
+
+def _signed(function: Function) -> Floats:
+    """Coefficients with the overall sign that makes the loosest large one positive.
+
+    The sign of a whole function is free; a printed set may turn it from element to element.
+    """
+    weights = np.abs(function.coefficients)
+    large = np.flatnonzero(weights > 0.3 * weights.max())[-1]
+    return np.sign(function.coefficients[large]) * function.coefficients
+
+
+class Suspect(NamedTuple):
+    """A primitive that departs from its row while its companions do not.
+
+    departure: of ln(exponent).  reached: its size over the reach of the fit.  times: this over the
+    scatter and once more over the reach.  expected: the exponent
+    that the others suggest, bohr**-2.  row: of the shell, 0-based.  others: elements in the fit.
+    """
+
+    block: Block
+    shell: int
+    row: int
+    departure: float
+    reached: float
+    times: float
+    expected: float
+    others: int
+
+
+# Published exponents follow their row to a few per cent at best.
+_FINEST = 0.02
+
+
+def suspects_of(members: BasisSet, rows: list[Row], least: float = 0.05) -> list[Suspect]:
+    """Primitives whose exponent departs from its row by more than ``least`` in ln(exponent).
+
+    A contraction that departs as a whole is another matter and gives no suspect here.
+    """
+    found = []
+    for row in rows:
+        departure, scatter, reach = row.exponents
+        # An end of the row is extrapolated: both limits widen by as much as the fit has to reach.
+        times = np.abs(departure) / np.maximum(scatter, _FINEST) / reach**2
+        for at, member in enumerate(row.members):
+            size = np.abs(departure[at])
+            worst = int(np.argmax(times[at]))
+            companions = np.delete(size, worst)
+            if size[worst] < least or (
+                len(companions) and np.median(companions) > 0.3 * size[worst]
+            ):
+                continue
+            function = member.function
+            found.append(
+                Suspect(
+                    members.blocks[member.block],
+                    member.shell,
+                    int(function.rows[worst]),
+                    float(departure[at, worst]),
+                    float(abs(departure[at, worst]) / reach[at, worst]),
+                    float(times[at, worst]),
+                    float(function.exponents[worst] * np.exp(-departure[at, worst])),
+                    len(row.members) - 1,
+                )
+            )
+    return found
