@@ -23,41 +23,29 @@ def cli() -> None:
     """Judge Gaussian basis-set files before cluster time is spent on them."""
 
 
-class _Reports(click.ParamType[str]):
-    """Name of a report; which there are is found by presence, and only when needed."""
+def _a_report(context: click.Context, parameter: click.Parameter, value: str) -> str:
+    """Check the name of a report; which there are is found by presence, when it is needed."""
+    from overlapse.lint.reports import names
 
-    name = "report"
-
-    def convert(
-        self, value: str, param: click.Parameter | None, context: click.Context | None
-    ) -> str:
-        from overlapse.lint.reports import names
-
-        if value not in names():
-            self.fail(f"{value!r} is not one of {', '.join(names())}", param, context)
-        return value
+    if value not in names():
+        raise click.BadParameter(f"{value!r} is not one of {', '.join(names())}")
+    return value
 
 
-class _Layouts(click.ParamType[str]):
-    """Name of a layout."""
+def _a_layout(context: click.Context, parameter: click.Parameter, value: str | None) -> str | None:
+    """Check the name of a layout."""
+    from overlapse.grammar.layouts import layouts
 
-    name = "layout"
-
-    def convert(
-        self, value: str, param: click.Parameter | None, context: click.Context | None
-    ) -> str:
-        from overlapse.grammar.layouts import layouts
-
-        if value not in layouts():
-            self.fail(f"{value!r} is not one of {', '.join(layouts())}", param, context)
-        return value
+    if value is not None and value not in layouts():
+        raise click.BadParameter(f"{value!r} is not one of {', '.join(layouts())}")
+    return value
 
 
 @cli.command()
 @click.argument("paths", nargs=-1, required=True, type=click.Path(allow_dash=True, path_type=Path))
-@click.option("--report", type=_Reports(), default="text", help="text, lines, json or sarif.")
+@click.option("--report", callback=_a_report, default="text", help="text, lines, json or sarif.")
 @click.option("--out", type=click.Path(path_type=Path), help="Write the report to this file.")
-@click.option("--layout", type=_Layouts(), help="Read all files as this layout.")
+@click.option("--layout", callback=_a_layout, help="Read all files as this layout.")
 @click.option("--label", help="What the sets are called, over what the files say.")
 @click.option("--named", default="<stdin>", help="File name to report for standard input (-).")
 @click.option("--fail-at", type=_LEVELS, help="Level from which the audit fails [warning].")
@@ -181,8 +169,8 @@ def rules(name: str | None) -> None:
 
 @cli.command()
 @click.argument("path", type=click.Path(exists=True, dir_okay=False, path_type=Path))
-@click.option("--layout", "target", type=_Layouts(), required=True, help="Layout to write.")
-@click.option("--from-layout", "origin", type=_Layouts(), help="Read the file as this layout.")
+@click.option("--layout", "target", callback=_a_layout, required=True, help="Layout to write.")
+@click.option("--from-layout", "origin", callback=_a_layout, help="Read the file as this layout.")
 @click.option("--out", type=click.Path(path_type=Path), help="Write to this file.")
 def recast(path: Path, target: str, origin: str | None, out: Path | None) -> None:
     """Write a file in another layout, its numbers with the digits they have.

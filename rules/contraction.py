@@ -11,7 +11,7 @@ from overlapse.rules.finding import Finding
 from overlapse.rules.norms import NORMALISED, Culprit, Norm, culprit, look_alike, rounding
 from overlapse.rules.physics.onecentre import contracted_overlap
 from overlapse.rules.registry import rule
-from overlapse.rules.rows import Row
+from overlapse.rules.rows import Row, rows_of
 
 
 @rule("contraction.norm")
@@ -66,7 +66,7 @@ def norm(case: Case, *, share: float = 0.9, floor: float = 3e-6) -> Iterator[Fin
           0.2 0.5
         ****
     """
-    for rows, found in zip(case.rows, case.norms, strict=True):
+    for members, rows, found in zip(case.sets, case.rows, case.norms, strict=True):
         broken = [n for n in found if not (np.isfinite(n.overlap) and n.overlap > 0.0)]
         for off in broken:
             yield case.at_shell(
@@ -83,7 +83,10 @@ def norm(case: Case, *, share: float = 0.9, floor: float = 3e-6) -> Iterator[Fin
         sound = [n for n in judged if n.deviation < NORMALISED]
         scale = _Scale(judged, sound, share, floor)
         evident = [n for n in judged if n.deviation > floor and scale.is_evident(n)]
-        yield from _odd_ones(case, evident, sound, rows)
+        if evident:
+            sound = [n for n in sound if n not in evident]
+            # The narrow rows first: where both hold a contraction they are the smoother ones.
+            yield from _odd_ones(case, evident, sound, [*rows, *rows_of(members, True)])
         plain = [n for n in judged if n.deviation >= NORMALISED and n not in evident]
         if plain and len(sound) < share * len(judged):
             yield _throughout(case, plain, len(judged))
@@ -154,7 +157,7 @@ def _odd_one(case: Case, group: list[Norm], sound: list[Norm], rows: list[Row]) 
     factor = 1.0 / np.sqrt(off.overlap)
     witnesses = [f"{len(sound)} contractions of this set are normalised"]
     message = f"self-overlap {parts} where 1 is expected"
-    expected: float | None = 1.0
+    expected: float | str | None = 1.0
     place: dict[str, int | None] = {}
     if published:
         message += f"; {published}"
@@ -162,10 +165,9 @@ def _odd_one(case: Case, group: list[Norm], sound: list[Norm], rows: list[Row]) 
         what = "exponent" if guess.exponent else "coefficient"
         column = None if guess.exponent else off.function.column
         place = {"row": guess.row, "column": column}
-        expected = float(f"{guess.value:.8g}")
-        message += (
-            f"; {what} {shell.spelling(guess.row, column)} should probably be {guess.value:.6g}"
-        )
+        expected = float(f"{guess.value:.10g}")
+        told = "should probably be" if guess.clear else "is the likeliest culprit; it might be"
+        message += f"; {what} {shell.spelling(guess.row, column)} {told} {guess.value:.8g}"
         witnesses.append(guess.why)
     elif told:
         message += f"; {told}"

@@ -7,6 +7,7 @@ nearly all of the set, is normalised and one is not.
 
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
+from math import sqrt
 from typing import NamedTuple
 
 import numpy as np
@@ -37,13 +38,15 @@ class Culprit(NamedTuple):
     """The one number whose change would explain a self-overlap that is off.
 
     row: of the shell.  exponent: whether the exponent is meant, else the coefficient.  value: the
-    number with which the self-overlap is one.  why: what points at it.
+    number with which the self-overlap is one.  why: what points at it.  clear: whether no other
+    number comes near it as an explanation.
     """
 
     row: int
     exponent: bool
     value: float
     why: str
+    clear: bool = True
 
 
 def norms_of(members: BasisSet) -> list[Norm]:
@@ -93,67 +96,94 @@ def root_coefficient(norm: Norm, at: int, near: float) -> float | None:
     others = c.copy()
     others[at] = 0.0
     half, rest = float(overlap[at] @ others), float(others @ overlap @ others) - 1.0
-    inside = half * half - rest
+    inside = float(half * half - rest)
     if inside < 0.0:
         return None
-    roots = (-half + inside**0.5, -half - inside**0.5)
+    reach = sqrt(inside)
+    roots = (-half + reach, -half - reach)
     return min(roots, key=lambda root: abs(root - near))
 
 
 def culprit(norm: Norm, rows: Sequence[Row], finest: float = 2e-3) -> Culprit | None:
     """Find the number that put a contraction off its norm.
 
-    First a coefficient whose sign alone explains it; then the number that departs most from the
-    row of the periodic table, provided that it departs clearly.
+    First a number that one simple slip explains (a sign, the decimal point); then the one that
+    departs most from the row of the periodic table, provided that it departs clearly.
     """
     function = norm.function
-    for at, coefficient in enumerate(function.coefficients.tolist()):
-        value = root_coefficient(norm, at, -coefficient)
-        if value is not None and abs(value + coefficient) < 1e-3 * abs(coefficient):
-            return Culprit(
-                int(function.rows[at]), False, -coefficient, "with the other sign it would be one"
-            )
+    if (slip := _simple_slip(norm)) is not None:
+        return slip
     for row in rows:
         for place, member in enumerate(row.members):
-            if member.function is function or (
-                member.function.column == function.column
-                and member.function.exponents is function.exponents
-            ):
+            if member.function is function:
                 return _by_row(norm, row, place, finest)
     return None
 
 
-def _by_row(norm: Norm, row: Row, place: int, finest: float) -> Culprit | None:
+# Sign, decimal point: the slips that leave all digits as they are.
+_SLIPS = ((-1.0, "sign"), (0.1, "decimal point"), (10.0, "decimal point"))
+
+
+def _simple_slip(norm: Norm) -> Culprit | None:
+    """The one number that a simple slip explains, or None if none or several could."""
     function = norm.function
-    departure, scatter, reach = (part[place] for part in row.coefficients)
-    size = np.maximum(np.abs(function.coefficients), np.abs(function.coefficients - departure))
-    by_c = np.abs(departure) / reach / np.maximum(scatter, finest * size)
-    departure_a, scatter_a, reach_a = (part[place] for part in row.exponents)
-    shift = np.median(departure_a)
-    by_a = np.abs(departure_a - shift) / reach_a / np.maximum(scatter_a, finest)
-    at_c, at_a = int(np.argmax(by_c)), int(np.argmax(by_a))
+    a, c = function.exponents, function.coefficients
+    tolerance = max(3.0 * rounding(norm), 3e-7)
+    found = []
+    for at in range(len(a)):
+        row = int(function.rows[at])
+        for factor, what in _SLIPS:
+            changed = c.copy()
+            changed[at] *= factor
+            if abs(self_overlap(a, changed, function.l) - 1.0) < tolerance:
+                why = f"with the {what} changed the self-overlap is one"
+                found.append(Culprit(row, False, float(changed[at]), why))
+            if factor > 0.0:
+                changed = a.copy()
+                changed[at] *= factor
+                if abs(self_overlap(changed, c, function.l) - 1.0) < tolerance:
+                    why = f"with the {what} moved the self-overlap is one"
+                    found.append(Culprit(row, True, float(changed[at]), why))
+    return found[0] if len(found) == 1 else None
+
+
+def _by_row(norm: Norm, row: Row, place: int, finest: float) -> Culprit | None:
+    """The number whose change restores the norm and most improves the agreement with the row.
+
+    For each number, ``root`` restores the norm and ``near`` is what the row suggests, give or take
+    ``blur``.  If that number is the wrong one, chi squared falls by
+    ((value - near)**2 - (root - near)**2) / blur**2; for a sound number the root is one that
+    nobody suggests, and it rises.
+    """
+    function = norm.function
     others = len(row.members) - 1
-    if max(by_c[at_c], by_a[at_a]) < 4.0:
+    found: list[tuple[float, Culprit]] = []
+    departure, scatter, reach = (part[place] for part in row.coefficients)
+    for at, value in enumerate(function.coefficients.tolist()):
+        near = float(value - departure[at])
+        root = root_coefficient(norm, at, near)
+        if root is not None:
+            blur = max(float(scatter[at] * reach[at]), finest * max(abs(value), abs(near)))
+            gain = ((value - near) ** 2 - (root - near) ** 2) / blur**2
+            why = f"the coefficients of {others} neighbours suggest about {near:.3g} in this place"
+            found.append((gain, Culprit(int(function.rows[at]), False, root, why)))
+    departure, scatter, reach = (part[place] for part in row.exponents)
+    shift = float(np.median(departure))
+    for at, value in enumerate(function.exponents.tolist()):
+        near = float(value * np.exp(shift - departure[at]))
+        root = _root_exponent(norm, at, near)
+        if root is not None:
+            blur = max(float(scatter[at] * reach[at]), finest)
+            gain = float(np.log(value / near) ** 2 - np.log(root / near) ** 2) / blur**2
+            why = f"the exponents of {others} neighbours suggest about {near:.3g} in this place"
+            guess = Culprit(int(function.rows[at]), True, root, why)
+            if explains(guess, norm.block.shells[norm.shell]):
+                found.append((gain, guess))
+    found.sort(key=lambda pair: -pair[0])
+    if not found or found[0][0] <= 0.0:
         return None
-    if by_c[at_c] >= by_a[at_a]:
-        near = float(function.coefficients[at_c] - departure[at_c])
-        value = root_coefficient(norm, at_c, near)
-        if value is None or abs(value - near) > 0.5 * abs(departure[at_c]):
-            value = near
-        return Culprit(
-            int(function.rows[at_c]),
-            False,
-            value,
-            f"this coefficient departs from those of {others} neighbours",
-        )
-    near = float(function.exponents[at_a] * np.exp(shift - departure_a[at_a]))
-    guess = Culprit(
-        int(function.rows[at_a]),
-        True,
-        _root_exponent(norm, at_a, near),
-        f"this exponent departs from those of {others} neighbours",
-    )
-    return guess if explains(guess, norm.block.shells[norm.shell]) else None
+    clear = found[0][0] > 4.0 and (len(found) < 2 or found[0][0] > 1.5 * found[1][0])
+    return found[0][1]._replace(clear=clear)
 
 
 def explains(guess: Culprit, shell: Shell) -> bool:
@@ -168,8 +198,8 @@ def explains(guess: Culprit, shell: Shell) -> bool:
     return True
 
 
-def _root_exponent(norm: Norm, at: int, near: float) -> float:
-    """The exponent that makes the self-overlap one, by bisection around ``near``; else near."""
+def _root_exponent(norm: Norm, at: int, near: float) -> float | None:
+    """The exponent around ``near`` that makes the self-overlap one, by bisection; None if none."""
     function = norm.function
 
     def excess(value: float) -> float:
@@ -179,7 +209,7 @@ def _root_exponent(norm: Norm, at: int, near: float) -> float:
 
     low, high = near / 1.3, near * 1.3
     if excess(low) * excess(high) > 0.0:
-        return near
+        return None
     for _ in range(60):
         middle = (low * high) ** 0.5
         if excess(low) * excess(middle) <= 0.0:

@@ -42,15 +42,24 @@ class Row(NamedTuple):
     coefficients: Deviations
 
 
-def _stretch(z: int) -> int:
-    return next((at for at, (low, high) in enumerate(_STRETCHES) if low <= z <= high), -1)
+# Whole periods, to find the number that departs most where something is known to be wrong.
+_PERIODS = ((1, 2), (3, 10), (11, 18), (19, 36), (37, 54), (55, 86), (87, 118))
 
 
-def rows_of(members: BasisSet) -> list[Row]:
-    """All rows of a set that have enough elements for a trend."""
+def _stretch(z: int, stretches: tuple[tuple[int, int], ...]) -> int:
+    return next((at for at, (low, high) in enumerate(stretches) if low <= z <= high), -1)
+
+
+def rows_of(members: BasisSet, whole_periods: bool = False) -> list[Row]:
+    """All rows of a set that have enough elements for a trend.
+
+    ``whole_periods`` joins the s and d blocks to the p block; their numbers run on less smoothly,
+    so such a row is good for comparing the numbers of one shell, not for a suspicion.
+    """
+    stretches = _PERIODS if whole_periods else _STRETCHES
     groups: dict[tuple[int, int, tuple[int, ...], int], dict[int, Member]] = {}
     for at, block in enumerate(members.blocks):
-        stretch = _stretch(block.atomic_number)
+        stretch = _stretch(block.atomic_number, stretches)
         ordered = _in_order(block)
         lengths: dict[int, tuple[int, ...]] = {}
         for _, function in ordered:
@@ -103,7 +112,7 @@ def _signed(function: Function) -> Floats:
     """
     weights = np.abs(function.coefficients)
     large = np.flatnonzero(weights > 0.3 * weights.max())[-1]
-    return np.sign(function.coefficients[large]) * function.coefficients
+    return np.asarray(np.sign(function.coefficients[large]) * function.coefficients)
 
 
 class Suspect(NamedTuple):

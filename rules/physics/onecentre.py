@@ -53,8 +53,7 @@ def contracted_overlap(functions: list[Function]) -> Floats:
 
 def eigenvalues(overlap: Floats) -> Floats:
     """Eigenvalues of a symmetric matrix, rising, shape (n,)."""
-    values: Floats = np.linalg.eigvalsh(overlap)
-    return values
+    return np.asarray(np.linalg.eigvalsh(overlap), dtype=np.float64)
 
 
 def two_centre_s(
