@@ -5,7 +5,7 @@ from dataclasses import replace
 from functools import cached_property
 from typing import Any
 
-from overlapse.grammar.elements import occupied, replaced_by
+from overlapse.grammar.elements import number_of, occupied, replaced_by, symbol_of
 from overlapse.grammar.model import BasisSet, Block, Document, Function, Severity, Span
 from overlapse.rules.claims import Claim, claims_of
 from overlapse.rules.finding import Finding
@@ -71,7 +71,7 @@ class Case:
                     fault.span,
                     fault.severity,
                     fault.message,
-                    element=fault.element,
+                    element=_symbol(fault.element),
                     shell=fault.shell,
                     measured=fault.measured,
                     limit=fault.limit,
@@ -123,6 +123,24 @@ class Case:
         if row is not None and shell.cells is not None:
             return self.at_span(shell.cells.span(row, column), severity, message, **details)
         return self.at_line(shell.line, severity, message, **details)
+
+
+def gathered(findings: list[Finding], most: int = 4) -> list[Finding]:
+    """The findings, or where there are more than ``most`` the first, which names the others.
+
+    One cause that shows at many elements is one finding, not a flood.
+    """
+    if len(findings) <= most:
+        return findings
+    first, *others = findings
+    elements = ", ".join(dict.fromkeys(f.element for f in others if f.element))
+    return [replace(first, message=f"{first.message}; the same holds for {elements}")]
+
+
+def _symbol(word: str | None) -> str | None:
+    """A symbol in its usual letter case; a word that is none stays as it was typed."""
+    number = number_of(word) if word else None
+    return symbol_of(number) if number is not None else word
 
 
 def is_orbital(members: BasisSet) -> bool:

@@ -97,10 +97,12 @@ class _Scale:
 
     def __init__(self, judged: list[Norm], sound: list[Norm], share: float, floor: float) -> None:
         self.floor = floor
+        self.sound = sound
         # How far the contractions that are meant to be normalised usually are from one.
         self.usual = float(np.quantile([n.deviation for n in sound], 0.9)) if sound else 0.0
         others, alike = len(judged) - 1, len(sound)
         self.all_but_one = others >= 2 and alike >= share * others
+        self.often = alike * 2 >= others
         self.places: dict[tuple[int, str, int], list[Norm]] = {}
         for n in judged:
             self.places.setdefault(self._place(n), []).append(n)
@@ -117,9 +119,17 @@ class _Scale:
             for n in self.places[self._place(off)]
             if n.block is not off.block and abs(n.block.atomic_number - z) <= 3
         ]
-        if len(near) >= 2 and max(near) < NORMALISED:
+        if len(near) >= 2 and max(near) < NORMALISED and self.often:
             limit = 10.0 * max(near)
         elif self.all_but_one:
+            # Where the neighbours are printed unnormalised too, this is how the row was printed,
+            # unless the set's other expansions tell which number is wrong.
+            if (
+                len(near) >= 2
+                and np.median(near) >= NORMALISED
+                and not look_alike(off, self.sound)[0]
+            ):
+                return False
             limit = max(20.0 * self.usual, 1e-4)
         else:
             return False

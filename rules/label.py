@@ -5,7 +5,7 @@ from typing import NamedTuple
 
 from overlapse.grammar.designation import Designation
 from overlapse.grammar.model import BasisSet, Block, letter_of
-from overlapse.rules.case import Case, is_orbital
+from overlapse.rules.case import Case, gathered, is_orbital
 from overlapse.rules.claims import Claim, CompositionClaim, composition_claim
 from overlapse.rules.families.expected import Lengths, Promise, candidates, promise
 from overlapse.rules.finding import Finding
@@ -298,7 +298,7 @@ def composition(case: Case) -> Iterator[Finding]:
             if claim is not None and block.complete and block.shells:
                 claimed.append((block, claim))
         wrong = [(block, claim) for block, claim in claimed if not _agrees(block, claim)]
-        if len(wrong) * 2 > len(claimed) > 2:
+        if len(wrong) * 2 > len(claimed) > 1:
             block, claim = wrong[0]
             yield case.at_line(
                 claim.line,
@@ -312,16 +312,20 @@ def composition(case: Case) -> Iterator[Finding]:
                 remedy="correct the comments, or use the file with the set it belongs to",
             )
             continue
-        for block, claim in wrong:
-            yield case.at_line(
-                claim.line,
-                "warning",
-                f"the comment says {claim.text}, but {block.symbol} has {_notation(block)}",
-                element=block.symbol,
-                measured=_notation(block),
-                limit=claim.text,
-                remedy="restore the row or shell that was lost, or correct the comment",
-            )
+        yield from gathered(
+            [
+                case.at_line(
+                    claim.line,
+                    "warning",
+                    f"the comment says {claim.text}, but {block.symbol} has {_notation(block)}",
+                    element=block.symbol,
+                    measured=_notation(block),
+                    limit=claim.text,
+                    remedy="restore the row or shell that was lost, or correct the comment",
+                )
+                for block, claim in wrong
+            ]
+        )
 
 
 def _agrees(block: Block, claim: CompositionClaim) -> bool:

@@ -3,8 +3,8 @@
 from collections.abc import Iterator
 
 from overlapse.grammar.elements import core, occupied, replaced_by, usual_cores
-from overlapse.grammar.model import Block, letter_of
-from overlapse.rules.case import Case, is_orbital
+from overlapse.grammar.model import BasisSet, Block, letter_of
+from overlapse.rules.case import Case, gathered, is_orbital
 from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rule
 
@@ -44,11 +44,26 @@ def fitting_core(block: Block) -> int | None:
     return None
 
 
-def _judged(case: Case) -> Iterator[Block]:
-    """Blocks for which a missing shell means something."""
+def _judged(case: Case) -> Iterator[list[Block]]:
+    """For each set, the blocks for which a missing shell means something.
+
+    Where several elements lack just the shells of a usual core, they are valence blocks whose
+    potentials live elsewhere; `shell.fragment` says so once.
+    """
     for members in case.sets:
         if is_orbital(members):
-            yield from (block for block in members.blocks if block.complete and block.shells)
+            valence = {id(block) for block in valence_blocks(members)}
+            yield [b for b in members.blocks if b.complete and b.shells and id(b) not in valence]
+
+
+def valence_blocks(members: BasisSet) -> list[Block]:
+    """Blocks without a potential that lack just the shells of a core, if there are several."""
+    found = [
+        block
+        for block in members.blocks
+        if block.complete and block.shells and not block.potential and fitting_core(block)
+    ]
+    return found if len(found) > 2 else []
 
 
 def _shells(counts: dict[int, int]) -> str:
@@ -83,6 +98,12 @@ def _missing(case: Case, block: Block, l: int, short: int, what: str) -> Finding
             else "restore the lost shell from the source"
         ),
     )
+
+
+def _lacks_core(block: Block, l: int) -> bool:
+    """Whether even the core of an all-electron block is not covered for this l."""
+    kernel = core(block.atomic_number)
+    return block.potential is None and block.counts.get(l, 0) < kernel.get(l, 0)
 
 
 @rule("shell.core")
@@ -132,12 +153,15 @@ def core_shells(case: Case) -> Iterator[Finding]:
           3.0 1.0
         ****
     """
-    for block in _judged(case):
-        kernel = core(block.atomic_number)
-        for l, short in lacking(block).items():
-            floor = kernel.get(l, 0)
-            if block.potential is None and block.counts.get(l, 0) < floor:
-                yield _missing(case, block, l, short, "core")
+    for blocks in _judged(case):
+        yield from gathered(
+            [
+                _missing(case, block, l, short, "core")
+                for block in blocks
+                for l, short in lacking(block).items()
+                if _lacks_core(block, l)
+            ]
+        )
 
 
 @rule("shell.valence")
@@ -175,12 +199,15 @@ def valence_shells(case: Case) -> Iterator[Finding]:
           0.5 1.0
         ****
     """
-    for block in _judged(case):
-        kernel = core(block.atomic_number)
-        for l, short in lacking(block).items():
-            floor = kernel.get(l, 0)
-            if block.potential is not None or block.counts.get(l, 0) >= floor:
-                yield _missing(case, block, l, short, "valence")
+    for blocks in _judged(case):
+        yield from gathered(
+            [
+                _missing(case, block, l, short, "valence")
+                for block in blocks
+                for l, short in lacking(block).items()
+                if not _lacks_core(block, l)
+            ]
+        )
 
 
 @rule("shell.ladder")
@@ -218,13 +245,10 @@ def ladder(case: Case) -> Iterator[Finding]:
           0.4 1.0
         ****
     """
-    for block in _judged(case):
-        counts = block.counts
-        told = lacking(block)
-        for l in range(max(counts, default=0)):
-            if counts.get(l, 0) == 0 and l not in told and (needed(block) is not None):
-                above = min(k for k in counts if k > l)
-                yield case.at_line(
+    for blocks in _judged(case):
+        yield from gathered(
+            [
+                case.at_line(
                     block.line,
                     "warning",
                     f"{block.symbol} has {letter_of(above)} functions but no {letter_of(l)} "
@@ -235,11 +259,26 @@ def ladder(case: Case) -> Iterator[Finding]:
                     limit=1,
                     remedy=f"restore the {letter_of(l)} functions",
                 )
+                for block in blocks
+                for l, above in _gaps(block)
+            ]
+        )
+
+
+def _gaps(block: Block) -> Iterator[tuple[int, int]]:
+    """l that are missing though a higher one is present, with the next one that is present.
+
+    What the occupied shells already demand is left to the rules that say so.
+    """
+    counts, told = block.counts, lacking(block)
+    for l in range(max(counts, default=0)):
+        if not counts.get(l, 0) and l not in told and needed(block) is not None:
+            yield l, min(k for k in counts if k > l)
 
 
 @rule("shell.fragment")
 def fragment(case: Case) -> Iterator[Finding]:
-    """Most elements of the set lack occupied shells: a fragment or a valence set.
+    """Many elements of the set lack occupied shells: a fragment or a valence set.
 
     Files that only add polarization or diffuse functions, valence sets whose core potentials live
     in another file, and fitting sets look like this.  Used alone as an orbital set such a file
@@ -269,18 +308,19 @@ def fragment(case: Case) -> Iterator[Finding]:
     """
     for members in case.sets:
         blocks = [block for block in members.blocks if block.complete and block.shells]
-        if is_orbital(members) or members.role == "fitting" or not blocks:
-            continue
         short = [block for block in blocks if lacking(block)]
-        if not short:
+        valence = valence_blocks(members)
+        if is_orbital(members):
+            short = valence
+        if not short or members.role == "fitting":
             continue
-        cores = [electrons for block in short if (electrons := fitting_core(block)) is not None]
-        meant = (
-            "it looks like a valence set whose core potentials are not in this file "
-            f"({short[0].symbol}: {fitting_core(short[0])} electrons)"
-            if len(cores) * 2 > len(short) and fitting_core(short[0]) is not None
-            else "it adds functions to another set, or is no orbital set"
-        )
+        meant = "it adds functions to another set, or is no orbital set"
+        if len(valence) * 2 > len(short):
+            sizes = ", ".join(f"{block.symbol} {fitting_core(block)}" for block in valence[:4])
+            meant = (
+                "they look like valence sets whose core potentials are not in this file "
+                f"(electrons replaced: {sizes}{' ...' if len(valence) > 4 else ''})"
+            )
         yield case.at_line(
             short[0].line,
             "note",

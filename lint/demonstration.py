@@ -1,0 +1,78 @@
+"""The built-in scenario: an invented group inherits basis files, each with a fault of its own."""
+
+import json
+import shutil
+import tempfile
+from importlib.resources import as_file, files
+from pathlib import Path
+from textwrap import fill
+from typing import Any, TextIO
+
+import click
+
+from overlapse.lint.engine import FileAudit, audit_file, targets
+from overlapse.lint.reports import text
+from overlapse.lint.settings import Settings
+
+_STORY = (
+    "The Tarn lab takes over the basis files of three finished projects, Fell, Beck and Moss: one "
+    "set in each text layout, every number invented. One file is clean; each of the others carries "
+    "one slip of the kind that people really make. This is what an audit of the folder says."
+)
+
+
+def demonstrate(folder: Path | None, out: TextIO, colour: bool) -> None:
+    """Copy the scenario into ``folder`` (or a new temporary one), audit it, and explain.
+
+    Raises click.UsageError if the folder exists and is not empty.
+    """
+    if folder is None:
+        folder = Path(tempfile.mkdtemp(prefix="tarn-"))
+    elif folder.exists() and (not folder.is_dir() or any(folder.iterdir())):
+        raise click.UsageError(f"{folder} exists and is not an empty folder")
+    copy_to(folder)
+    audits = [audit_file(target, settings=Settings()) for target in targets([folder])]
+    out.write(fill(_STORY, 96) + "\n\n")
+    out.write(_table(folder, audits) + "\n")
+    shown = [audit for audit in audits if audit.findings][:2]
+    out.write("Two of these files in full:\n\n")
+    text.write(shown, out, colour)
+    out.write(
+        f"\nThe files are in {folder}. To go on:\n"
+        f"  overlapse audit {folder}            the whole report\n"
+        "  overlapse rules contraction.norm      what a rule looks for, and why\n"
+        "  overlapse audit YOUR-FILES            the same for your own files\n"
+    )
+
+
+def copy_to(folder: Path) -> None:
+    """Write the scenario's files into a folder."""
+    with as_file(files("overlapse.lint").joinpath("demo")) as source:
+        for entry in scenario():
+            target = folder / entry["path"]
+            target.parent.mkdir(parents=True, exist_ok=True)
+            shutil.copyfile(source / entry["path"], target)
+
+
+def scenario() -> list[dict[str, Any]]:
+    """The files of the scenario: path, layout, what is planted, and the rule that finds it."""
+    found: list[dict[str, Any]] = json.loads(
+        files("overlapse.lint").joinpath("demo", "scenario.json").read_text("utf-8")
+    )
+    return found
+
+
+def _table(folder: Path, audits: list[FileAudit]) -> str:
+    by_path = {Path(audit.path): audit for audit in audits}
+    rows = [("file", "layout", "planted", "found")]
+    for entry in scenario():
+        audit = by_path[folder / entry["path"]]
+        first = next((f for f in audit.findings if f.severity != "note"), None)
+        found = f"{first.rule}, line {first.line}" if first else "nothing"
+        rows.append((entry["path"], entry["layout"], entry["planted"] or "nothing", found))
+    widths = [max(len(row[k]) for row in rows) for k in range(3)]
+    return "".join(
+        "  ".join([*(cell.ljust(width) for cell, width in zip(row, widths, strict=False)), row[3]])
+        + "\n"
+        for row in rows
+    )
