@@ -106,7 +106,7 @@ def number(case: Case) -> Iterator[Finding]:
 def element(case: Case) -> Iterator[Finding]:
     """A heading names no element.
 
-    The block cannot be judged, and no program will find it.
+    The block cannot be judged, and no program will find the element when it asks for it.
 
     Source: symbols of the elements, IUPAC; the systematic three-letter names of 1979 are accepted.
 

@@ -26,6 +26,11 @@ class Verdict(NamedTuple):
     added: tuple[int, ...]
 
     @property
+    def is_decorated(self) -> bool:
+        """Whether the label adds functions to this element, or the block has some of its own."""
+        return self.promise.full != self.promise.plain or bool(self.added)
+
+    @property
     def fits(self) -> bool:
         return not self.split and not self.added
 
@@ -94,11 +99,16 @@ def _compare(
     case: Case,
     differ: Callable[[Verdict], tuple[int, ...]],
     say: Callable[[Verdict, Claim, Designation], str],
+    concerns: Callable[[Verdict], bool] = lambda v: True,
 ) -> Iterator[Finding]:
-    """Findings for all claims; where most elements differ the label is wrong, not they."""
+    """Findings for all claims; where most elements differ the label is wrong, not they.
+
+    ``concerns`` chooses the elements that the comparison says anything about.
+    """
     for members, claim, label in _judged(case):
         blocks = [block for block in members.blocks if block.complete and block.shells]
         verdicts = [v for block in blocks if (v := verdict(block, label)) is not None]
+        verdicts = [v for v in verdicts if concerns(v)]
         wrong = [v for v in verdicts if differ(v)]
         if not wrong:
             continue
@@ -251,7 +261,7 @@ def decoration(case: Case) -> Iterator[Finding]:
             f"{v.block.symbol}; found {_show(v.found, v.added)}: {', '.join(words)}{why}"
         )
 
-    yield from _compare(case, lambda v: () if v.split else v.added, say)
+    yield from _compare(case, lambda v: () if v.split else v.added, say, lambda v: v.is_decorated)
 
 
 @rule("label.composition")

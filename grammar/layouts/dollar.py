@@ -61,9 +61,15 @@ class _Reader:
             (token.split()[1], index_of(token)) for token in tokens if token.type == "SHELL"
         )
         # What stands outside the sections belongs to somebody else's input and is left alone.
-        for piece in self.build.parse(tokens).children:
-            if isinstance(piece, Tree) and piece.data == "section":
-                self.section(piece)
+        sections = [
+            piece
+            for piece in self.build.parse(tokens).children
+            if isinstance(piece, Tree) and piece.data == "section"
+        ]
+        for section in sections:
+            self.section(section)
+        if sections:
+            self.check_end(sections[-1])
         return self.build.document()
 
     def classify(self, body: str, index: int) -> str:
@@ -109,8 +115,12 @@ class _Reader:
                 self.element(piece)
             else:
                 self.loose(piece)
-        last = node.children[-1]
-        if pieces and not (isinstance(last, Token) and last.type == "END"):
+
+    def check_end(self, node: Node) -> None:
+        """The last section must be closed; an earlier one may end where the next begins."""
+        heading, last = node.children[0], node.children[-1]
+        assert isinstance(heading, Token)
+        if len(node.children) > 1 and not (isinstance(last, Token) and last.type == "END"):
             self.build.fault_line(
                 "form.syntax",
                 index_of(heading),
