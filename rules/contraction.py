@@ -10,6 +10,7 @@ from overlapse.rules.families.expected import unnormalised_as_published
 from overlapse.rules.finding import Finding
 from overlapse.rules.norms import NORMALISED, Culprit, Norm, culprit, look_alike, rounding
 from overlapse.rules.physics.onecentre import contracted_overlap
+from overlapse.rules.physics.trends import quantile
 from overlapse.rules.registry import rule
 from overlapse.rules.rows import Row, rows_of
 
@@ -99,7 +100,7 @@ class _Scale:
         self.floor = floor
         self.sound = sound
         # How far the contractions that are meant to be normalised usually are from one.
-        self.usual = float(np.quantile([n.deviation for n in sound], 0.9)) if sound else 0.0
+        self.usual = quantile([n.deviation for n in sound], 0.9) if sound else 0.0
         others, alike = len(judged) - 1, len(sound)
         self.all_but_one = others >= 2 and alike >= share * others
         self.often = alike * 2 >= others
@@ -126,7 +127,7 @@ class _Scale:
             # unless the set's other expansions tell which number is wrong.
             if (
                 len(near) >= 2
-                and np.median(near) >= NORMALISED
+                and quantile(near, 0.5) >= NORMALISED
                 and not look_alike(off, self.sound)[0]
             ):
                 return False

@@ -15,6 +15,7 @@ import numpy as np
 from overlapse.grammar.model import BasisSet, Block, Floats, Function, Shell
 from overlapse.grammar.numbers import NUMBER
 from overlapse.rules.physics.onecentre import primitive_overlap, self_overlap
+from overlapse.rules.physics.trends import quantile
 from overlapse.rules.rows import Row
 
 NORMALISED = 1e-3  # closer to one than this counts as meant to be normalised
@@ -168,7 +169,7 @@ def _by_row(norm: Norm, row: Row, place: int, finest: float) -> Culprit | None:
             why = f"the coefficients of {others} neighbours suggest about {near:.3g} in this place"
             found.append((gain, Culprit(int(function.rows[at]), False, root, why)))
     departure, scatter, reach = (part[place] for part in row.exponents)
-    shift = float(np.median(departure))
+    shift = quantile(departure.tolist(), 0.5)
     for at, value in enumerate(function.exponents.tolist()):
         near = float(value * np.exp(shift - departure[at]))
         root = _root_exponent(norm, at, near)

@@ -9,7 +9,7 @@ from typing import NamedTuple
 import numpy as np
 
 from overlapse.grammar.model import BasisSet, Block, Floats, Function
-from overlapse.rules.physics.trends import FEWEST, Deviations, leave_one_out
+from overlapse.rules.physics.trends import FEWEST, Deviations, leave_one_out, quantile
 
 # Stretches over which a family keeps its pattern and its numbers run smoothly.  The s block is
 # left out: two elements show no trend, and their valence does not run on into the p block.
@@ -152,7 +152,7 @@ def suspects_of(members: BasisSet, rows: list[Row], least: float = 0.05) -> list
             worst = int(np.argmax(times[at]))
             companions = np.delete(size, worst)
             if size[worst] < least or (
-                len(companions) and np.median(companions) > 0.3 * size[worst]
+                len(companions) and quantile(companions, 0.5) > 0.3 * size[worst]
             ):
                 continue
             function = member.function

@@ -75,3 +75,11 @@ def test_the_public_face() -> None:
         assert getattr(overlapse, name) is not None
     with pytest.raises(AttributeError):
         overlapse.nothing  # noqa: B018
+
+
+def test_the_tables_of_the_readme_are_fresh() -> None:
+    sys.path.insert(0, str(ROOT / "tests" / "bench"))
+    from tables import README, rewritten
+
+    text = README.read_text("utf-8")
+    assert rewritten(text) == text, "run python tests/bench/tables.py"

@@ -10,7 +10,7 @@ def write(audits: Sequence[FileAudit], out: TextIO, colour: bool) -> None:
     for audit in audits:
         for f in audit.findings:
             where = " ".join(filter(None, (f.element, f.shell)))
-            prefix = f"{f.path}:{f.line}:{f.column}: {f.severity}: {f.rule}: "
+            prefix = f"{one_line(f.path)}:{f.line}:{f.column}: {f.severity}: {f.rule}: "
             out.write(prefix + (f"{where}: " if where else "") + one_line(f.message) + "\n")
 
 

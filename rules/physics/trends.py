@@ -10,12 +10,22 @@ the others is e_k / (1 - H_kk), and the sum of squares without it is SSE - e_k**
 Source: R. D. Cook, S. Weisberg, Residuals and Influence in Regression, Chapman and Hall 1982.
 """
 
+from collections.abc import Iterable
 from functools import lru_cache
 from typing import NamedTuple
 
 import numpy as np
 
 from overlapse.grammar.model import Floats
+
+
+def quantile(values: Iterable[float], share: float) -> float:
+    """The value below which ``share`` of the values lie, without interpolation; 0.5: the median.
+
+    numpy's own function imports a good deal more of numpy than an audit needs.
+    """
+    ordered = sorted(values)
+    return float(ordered[min(int(share * len(ordered)), len(ordered) - 1)])
 
 
 class Deviations(NamedTuple):
