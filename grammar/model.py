@@ -9,6 +9,7 @@ import re
 from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import cached_property
+from math import isfinite
 from typing import Literal, NamedTuple
 
 import numpy as np
@@ -114,6 +115,13 @@ def read_only(values: object) -> Floats:
     return array
 
 
+def _all_finite(array: Floats) -> bool:
+    # Most shells are small, and then numpy's start-up costs more than the work.
+    if array.size < 32:
+        return all(map(isfinite, array.ravel().tolist()))
+    return bool(np.isfinite(array).all())
+
+
 class Function(NamedTuple):
     """One contracted function of a shell.
 
@@ -152,7 +160,7 @@ class Shell:
         e, c = self.exponents, self.coefficients
         if e.ndim != 1 or c.ndim != 2 or e.shape[0] != c.shape[0] or not e.size:
             raise ValueError(f"exponents of shape {e.shape} do not fit coefficients {c.shape}")
-        if not (np.isfinite(e).all() and np.isfinite(c).all()):
+        if not (_all_finite(e) and _all_finite(c)):
             raise ValueError("exponents and coefficients must be finite")
         if not self.angular or min(self.angular) < 0 or c.shape[1] % len(self.angular):
             raise ValueError(f"angular momenta {self.angular} do not fit {c.shape[1]} columns")
