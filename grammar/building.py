@@ -131,9 +131,17 @@ class Build:
     """Collects what a reader finds and makes the document of it."""
 
     def __init__(
-        self, source: Source, layout: str, comment: str = "", word_pattern: str = r"\S+"
+        self,
+        source: Source,
+        layout: str,
+        comment: str = "",
+        word_pattern: str = r"\S+",
+        windows: Iterable[range] | None = None,
     ) -> None:
-        """``comment`` holds the signs that begin a comment, ``word_pattern`` matches a number."""
+        """``comment`` holds the signs that begin a comment, ``word_pattern`` matches a number.
+
+        ``windows``: the only lines (0-based) to look at, for a layout that is a part of its file.
+        """
         self.source = source
         self.layout = layout
         self.comment = comment
@@ -141,7 +149,7 @@ class Build:
         self.faults: list[Fault] = []
         self.remarks: list[Remark] = []
         self.blocks: list[BlockDraft] = []
-        self.bodies = self._without_comments()
+        self.bodies = self._without_comments() if windows is None else self._within(windows)
         self._words: list[str] = []
         self._j_is_used = False
 
@@ -158,6 +166,15 @@ class Build:
                     line, remark = line.split(sign, 1)
                     self.remarks.append(Remark(remark.strip(), index + 1))
             bodies.append(line.strip())
+        return bodies
+
+    def _within(self, windows: Iterable[range]) -> list[str]:
+        lines = self.source.lines
+        bodies = [""] * len(lines)
+        for window in windows:
+            bodies[window.start : window.stop] = [
+                line.strip() for line in lines[window.start : window.stop]
+            ]
         return bodies
 
     def tokens(

@@ -387,7 +387,8 @@ class Document:
     """A text and what it says.
 
     layout: name of the layout it was read as, "" if none was recognised; reason: why that one.
-    raw_primitives: True where the coefficients multiply primitives that are not normalised.
+    raw_primitives: True where the coefficients multiply primitives that are not normalised; they
+        stay as written, and `overlapse.grammar.convention.over_normalised` converts them.
     """
 
     source: Source
