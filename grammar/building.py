@@ -38,7 +38,13 @@ from overlapse.grammar.model import (
     Span,
     letter_of,
 )
-from overlapse.grammar.numbers import CHARACTERS, FORTRAN, looks_numeric, read_number
+from overlapse.grammar.numbers import (
+    CHARACTERS,
+    FORTRAN,
+    Reading,
+    looks_numeric,
+    read_number,
+)
 from overlapse.grammar.source import Source
 
 Role = Literal["orbital", "fitting", "unstated"]
@@ -120,6 +126,7 @@ class BlockDraft:
     potential: Potential | None = None
     complete: bool = True
     end: int = 0
+    ready: list[Shell] = field(default_factory=list)  # made by the reader itself
     _names: dict[str, int] = field(default_factory=dict)
 
     def next_name(self, letters: str) -> str:
@@ -503,21 +510,27 @@ class Build:
     def number(
         self, word: str, index: int, ordinal: int, element: str | None, shell: str | None
     ) -> float | None:
-        value, slip, spelling = read_number(word)
-        if slip:
-            self.fault_word(
-                "form.number",
-                index,
-                ordinal,
-                f"{shorten(word)!r} {slip}"
-                + (f"; {spelling} was probably meant" if spelling else ""),
-                element=element,
-                shell=shell,
-                measured=shorten(word),
-                expected=value,
-                remedy=f"write {spelling}" if spelling else "restore the number from the source",
-            )
-        return value
+        reading = read_number(word)
+        if reading.slip:
+            span = self.source.span_of_word(index, ordinal)
+            self.slip(reading, word, span, element, shell)
+        return reading.value
+
+    def slip(
+        self, reading: Reading, word: str, span: Span, element: str | None, shell: str | None
+    ) -> None:
+        """Note a misspelt number that stands at a span of the text."""
+        value, slip, spelling = reading
+        self.fault(
+            "form.number",
+            span,
+            f"{shorten(word)!r} {slip}" + (f"; {spelling} was probably meant" if spelling else ""),
+            element=element,
+            shell=shell,
+            measured=shorten(word),
+            expected=value,
+            remedy=f"write {spelling}" if spelling else "restore the number from the source",
+        )
 
     # ---- potentials
 
@@ -618,7 +631,7 @@ class Build:
         return values
 
     def _block(self, block: BlockDraft, values: Floats) -> Block:
-        shells = []
+        shells = list(block.ready)
         complete = block.complete
         for draft in block.shells:
             exponents, coefficients = self._table(draft, values)
