@@ -3,10 +3,10 @@
 import re
 from collections.abc import Iterator
 from dataclasses import replace
-from typing import NamedTuple
 
 from lark import Token, Tree
 
+from overlapse.grammar.brackets import Repeat, Section, repeats_in, sections
 from overlapse.grammar.building import BlockDraft, Build, FunctionType, Node, index_of, integer
 from overlapse.grammar.centres import gather
 from overlapse.grammar.convention import Count, count_normalised
@@ -23,36 +23,12 @@ PICTURE = """\
  s   2 1.00
       4.0   0.6"""
 
-_HEADING = re.compile(r"\n[ \t]*\[([^\[\]\n]*)\]")
 _BRACKET = re.compile(r"\[([^\[\]\n]*)\]")
-_ATOM = re.compile(r"\s*\d+\s+0\s*")
 _FLAG = re.compile(r"(\d+)([dfgh])")
 _FLAGS = re.compile(r"(?:\d+[dfgh])+")
 _ROUND = str.maketrans("[]", "()")
 _NAME = re.compile(r"([A-Za-z]+)\d*")
 _LETTERS = re.compile(r"[A-Za-z]{1,2}|[Ll]=\d+")
-
-
-class Section(NamedTuple):
-    """A bracket section: its name in small letters, and its lines (0-based), heading included."""
-
-    name: str
-    lines: range
-
-
-def sections(source: Source) -> list[Section]:
-    """All bracket sections of a text; the lines in between are not looked at one by one."""
-    text = "\n" + source.flat  # the first line begins like any other
-    heads = []
-    line = last = 0
-    for match in _HEADING.finditer(text):
-        line += text.count("\n", last, match.start())
-        last = match.start()
-        heads.append((match[1].strip().lower(), line))
-    ends = [line for _, line in heads] + [len(source.lines)]
-    return [
-        Section(name, range(line, end)) for (name, line), end in zip(heads, ends[1:], strict=True)
-    ]
 
 
 def recognise(source: Source) -> Evidence | None:
@@ -67,35 +43,12 @@ def recognise(source: Source) -> Evidence | None:
 def read(source: Source) -> Document:
     """Atoms that repeat another one's lines are passed over, unless there is something to say."""
     found = sections(source)
-    repeats = _repeats(source, found)
+    repeats = repeats_in(source, found)
     reader = _Reader(source, found, repeats)
     document = reader.document()
     if repeats and (reader.differs or any(f.severity != "note" for f in document.faults)):
         document = _Reader(source, found, {}).document()
     return document
-
-
-class Repeat(NamedTuple):
-    """An atom whose text is that of an earlier one: that one's heading, and its own lines below."""
-
-    first: int
-    lines: range
-
-
-def _repeats(source: Source, found: list[Section]) -> dict[int, Repeat]:
-    """Atoms whose text below the heading came before, by the line (0-based) of their heading."""
-    first: dict[tuple[str, ...], int] = {}
-    repeats = {}
-    text = source.lines
-    for lines in (lines for name, lines in found if name == "gto"):
-        heads = [at for at in lines if "." not in text[at] and _ATOM.fullmatch(text[at])]
-        for head, end in zip(heads, [*heads, lines.stop][1:], strict=True):
-            while not text[end - 1].strip():
-                end -= 1
-            below = text[head + 1 : end]
-            if below and first.setdefault(below, head) != head:
-                repeats[head] = Repeat(first[below], range(head + 1, end))
-    return repeats
 
 
 class _Reader:

@@ -102,6 +102,21 @@ def test_atoms_with_one_basis_make_one_block() -> None:
     assert [[block.symbol for block in members.blocks] for members in document.sets] == [["C", "H"]]
 
 
+def test_many_atoms_with_one_text_are_read_once() -> None:
+    # The shortcut for repeated atoms sees the same as the long way, which a fault forces.
+    centres = "".join(f" {'CNO'[k % 3]} {k} {6 + k % 3} 0 0 {k}\n" for k in range(1, 31))
+    basis = {6: FIRST, 7: SECOND, 8: FIRST.replace("0.5", "0.75")}
+    atoms = "".join(f" {k} 0\n{basis[6 + k % 3]}\n" for k in range(1, 31))
+    document = read_text(f"[Atoms] AU\n{centres}[GTO]\n{atoms}")
+    assert not document.faults
+    assert [block.symbol for block in document.blocks] == ["N", "O", "C"]
+    again = read_text(f"[Atoms] AU\n{centres}[GTO]\n{atoms} 31 0\n{FIRST}\n")
+    assert [fault.rule for fault in again.faults] == ["form.element"]
+    assert [(b.symbol, b.line) for b in again.blocks] == [
+        (b.symbol, b.line) for b in document.blocks
+    ]
+
+
 def test_atoms_of_one_element_may_differ() -> None:
     document = read_text(f"{ATOMS} 1 0\n{FIRST}\n 2 0\n{SECOND}\n 3 0\n{FIRST}\n 4 0\n{SECOND}\n")
     assert [[(b.symbol, b.line) for b in members.blocks] for members in document.sets] == [

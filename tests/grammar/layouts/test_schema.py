@@ -6,8 +6,8 @@ import re
 import broken
 import pytest
 
+from overlapse.grammar.apart import as_json
 from overlapse.grammar.layouts import layouts
-from overlapse.grammar.layouts.schema import as_json
 from overlapse.grammar.numbers import plain
 from overlapse.grammar.reading import read_text
 
