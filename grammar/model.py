@@ -51,7 +51,8 @@ class Cells:
     """The numbers of a shell where they stand in the text; found only when somebody asks.
 
     ``first`` and ``last`` are 0-based line indices, ``last`` past the end; ``comment`` is the sign
-    that ends the readable part of a line ("" for none).
+    that ends the readable part of a line ("" for none), ``leading`` holds signs that make a whole
+    line a comment where they lead it.
     """
 
     source: Source
@@ -61,11 +62,14 @@ class Cells:
     comment: str = ""
     pattern: str = r"\S+"
     skip: int = 0
+    leading: str = ""
 
     def _spans(self) -> list[Span]:
         found: list[Span] = []
         for index in range(self.first, self.last):
             line = self.source.lines[index]
+            if self.leading and line.lstrip()[:1] in self.leading:
+                continue
             for sign in self.comment:
                 line = line.split(sign, 1)[0]
             start = self.source.starts[index]
