@@ -8,13 +8,14 @@ of the file in one go and makes the model.  Positions of single numbers are work
 faults.
 """
 
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from contextlib import suppress
 from dataclasses import dataclass, field
 from difflib import get_close_matches
 from functools import cache
 from importlib.resources import files
 from itertools import groupby
+from math import isfinite
 from typing import Any, Literal, NamedTuple
 
 import numpy as np
@@ -38,7 +39,13 @@ from overlapse.grammar.model import (
     Span,
     letter_of,
 )
-from overlapse.grammar.numbers import CHARACTERS, FORTRAN, looks_numeric, read_number
+from overlapse.grammar.numbers import (
+    CHARACTERS,
+    FORTRAN,
+    Reading,
+    looks_numeric,
+    read_number,
+)
 from overlapse.grammar.source import Source
 
 Role = Literal["orbital", "fitting", "unstated"]
@@ -69,10 +76,20 @@ def parser_of(name: str) -> Lark:
 
 
 class Run(NamedTuple):
-    """Numeric rows that follow one another: their words, and the 0-based line of each."""
+    """Numeric rows that follow one another: their words, and the 0-based line of each.
+
+    ``before`` says how many words stand left of each row on its line, where that is not 0.
+    """
 
     rows: list[list[str]]
     lines: list[int]
+    before: Sequence[int] = ()
+
+    def words(self) -> Iterator[tuple[str, int, int]]:
+        """Each word with its line and its place on that line (both 0-based)."""
+        for at, (row, index) in enumerate(zip(self.rows, self.lines, strict=True)):
+            for ordinal, word in enumerate(row, self.before[at] if self.before else 0):
+                yield word, index, ordinal
 
 
 @dataclass
@@ -94,15 +111,13 @@ class ShellDraft:
     scale: float = 1.0
     unit: bool = False
 
-    def holds(self, ordinal: int) -> bool:
-        """Whether a number of the run (0-based) is an exponent or a coefficient of this shell."""
+    def places(self) -> Iterator[int]:
+        """Which numbers of the run (0-based) are this shell's exponents and coefficients."""
         (count, columns), grid = self.shape, self.grid
-        row, rest = divmod(ordinal - grid.e0, grid.es)
-        if rest == 0 and 0 <= row < count:
-            return True
-        row, rest = divmod(ordinal - grid.c0, grid.ci)
-        column, rest = divmod(rest, grid.cj)
-        return rest == 0 and 0 <= row < count and column < columns
+        for row in range(count):
+            yield grid.e0 + row * grid.es
+            for column in () if self.unit else range(columns):
+                yield grid.c0 + row * grid.ci + column * grid.cj
 
 
 @dataclass
@@ -120,6 +135,7 @@ class BlockDraft:
     potential: Potential | None = None
     complete: bool = True
     end: int = 0
+    ready: list[Shell] = field(default_factory=list)  # made by the reader itself
     _names: dict[str, int] = field(default_factory=dict)
 
     def next_name(self, letters: str) -> str:
@@ -131,9 +147,17 @@ class Build:
     """Collects what a reader finds and makes the document of it."""
 
     def __init__(
-        self, source: Source, layout: str, comment: str = "", word_pattern: str = r"\S+"
+        self,
+        source: Source,
+        layout: str,
+        comment: str = "",
+        word_pattern: str = r"\S+",
+        windows: Iterable[range] | None = None,
     ) -> None:
-        """``comment`` holds the signs that begin a comment, ``word_pattern`` matches a number."""
+        """``comment`` holds the signs that begin a comment, ``word_pattern`` matches a number.
+
+        ``windows``: the only lines (0-based) to look at, for a layout that is a part of its file.
+        """
         self.source = source
         self.layout = layout
         self.comment = comment
@@ -141,8 +165,10 @@ class Build:
         self.faults: list[Fault] = []
         self.remarks: list[Remark] = []
         self.blocks: list[BlockDraft] = []
-        self.bodies = self._without_comments()
+        self.bodies = self._without_comments() if windows is None else self._within(windows)
+        self.leading = ""  # signs that make a line a comment where they lead it
         self._words: list[str] = []
+        self._has_holes = False  # whether a number of a shell cannot be read
         self._j_is_used = False
 
     # ---- lines and tokens
@@ -158,6 +184,15 @@ class Build:
                     line, remark = line.split(sign, 1)
                     self.remarks.append(Remark(remark.strip(), index + 1))
             bodies.append(line.strip())
+        return bodies
+
+    def _within(self, windows: Iterable[range]) -> list[str]:
+        lines = self.source.lines
+        bodies = [""] * len(lines)
+        for window in windows:
+            bodies[window.start : window.stop] = [
+                line.strip() for line in lines[window.start : window.stop]
+            ]
         return bodies
 
     def tokens(
@@ -184,7 +219,7 @@ class Build:
                 continue
             if body[0] not in _ROW_START:
                 kind = classify(body, index)
-                if kind == "TEXT" and self._is_damaged_row(body, first is not None):
+                if kind == "TEXT" and self.is_damaged_row(body, first is not None):
                     first = index if first is None else first
                     last = index
                     continue
@@ -196,7 +231,8 @@ class Build:
             yield Token("ROWS", "", line=first, end_line=last + 1)
 
     @staticmethod
-    def _is_damaged_row(body: str, in_run: bool) -> bool:
+    def is_damaged_row(body: str, in_run: bool) -> bool:
+        """Whether a line was most likely meant as numbers; ``in_run``: rows stand above it."""
         words = body.split()
         numeric = [looks_numeric(word) for word in words]
         return numeric[0] if not in_run else numeric[0] or (len(words) > 1 and all(numeric[1:]))
@@ -244,7 +280,8 @@ class Build:
 
     def fault_word(self, rule: str, index: int, ordinal: int, message: str, **details: Any) -> None:
         """Note a fault in one word of a line (both 0-based)."""
-        self.fault(rule, self.source.span_of_word(index, ordinal), message, **details)
+        span = self.source.span_of_word(index, ordinal, self.word_pattern)
+        self.fault(rule, span, message, **details)
 
     # ---- blocks
 
@@ -336,14 +373,18 @@ class Build:
         letters_word: int = 0,
         scale: float = 1.0,
         general: bool = False,
+        columns: int | None = None,
     ) -> None:
         """Add a shell whose heading is line ``heading`` (0-based) to a block.
 
         ``announced`` is the count of rows as the heading spells it; ``general`` allows more than
-        one coefficient column for a single letter.
+        one coefficient column for a single letter, ``columns`` says how many to expect if the
+        rows differ.
         """
         angular = self.angular_of(letters, heading, letters_word)
         width = self._width(run)
+        if columns is not None and any(len(row) == columns + 1 for row in run.rows):
+            width = columns + 1
         if angular == (8,) and width == 3 and letters.lower() == "l" and not general:
             letters, angular = "sp", (0, 1)
         name = block.next_name("".join(_WITHOUT_J[l] for l in angular) if angular else letters)
@@ -358,7 +399,7 @@ class Build:
             self.check_words(block, name, run)
             return
         shape, grid = (len(run.rows), width - 1), Grid(0, width, 1, width, 1)
-        self._keep(
+        self.keep(
             block, ShellDraft(name, angular, heading, run, len(self._words), shape, grid, scale)
         )
 
@@ -383,16 +424,18 @@ class Build:
         """
         name = name or block.next_name(letter_of(l))
         block.end = max(block.end, heading, *run.lines[-1:])
-        self._keep(
+        self.keep(
             block, ShellDraft(name, (l,), heading, run, len(self._words), shape, grid, unit=unit)
         )
 
-    def _keep(self, block: BlockDraft, draft: ShellDraft) -> None:
+    def keep(self, block: BlockDraft, draft: ShellDraft) -> None:
+        """Add a shell whose numbers the caller has counted; `ShellDraft.start` is set here."""
         before = block.shells[-1] if block.shells else None
         block.shells.append(draft)
         if before is not None and before.run is draft.run:
             draft.start = before.start
             return
+        draft.start = len(self._words)
         for row in draft.run.rows:
             self._words += row
 
@@ -406,7 +449,7 @@ class Build:
         self, block: BlockDraft, name: str, announced: str | None, word: int, heading: int, run: Run
     ) -> None:
         found = len(run.rows)
-        if announced is not None and found and int(announced) != found:
+        if announced is not None and found and integer(announced) != found:
             self.fault_word(
                 "form.count",
                 heading,
@@ -477,30 +520,35 @@ class Build:
             )
         return not wrong
 
-    def check_words(self, block: BlockDraft, name: str, run: Run) -> None:
+    def check_words(self, block: BlockDraft, name: str | None, run: Run) -> None:
         """Find misspelt numbers in rows that make no shell."""
-        for row, index in zip(run.rows, run.lines, strict=True):
-            for ordinal, word in enumerate(row):
-                self.number(word, index, ordinal, block.symbol, name)
+        for word, index, ordinal in run.words():
+            self.number(word, index, ordinal, block.symbol, name)
 
     def number(
         self, word: str, index: int, ordinal: int, element: str | None, shell: str | None
     ) -> float | None:
-        value, slip, spelling = read_number(word)
-        if slip:
-            self.fault_word(
-                "form.number",
-                index,
-                ordinal,
-                f"{shorten(word)!r} {slip}"
-                + (f"; {spelling} was probably meant" if spelling else ""),
-                element=element,
-                shell=shell,
-                measured=shorten(word),
-                expected=value,
-                remedy=f"write {spelling}" if spelling else "restore the number from the source",
-            )
-        return value
+        reading = read_number(word)
+        if reading.slip:
+            span = self.source.span_of_word(index, ordinal, self.word_pattern)
+            self.slip(reading, word, span, element, shell)
+        return reading.value
+
+    def slip(
+        self, reading: Reading, word: str, span: Span, element: str | None, shell: str | None
+    ) -> None:
+        """Note a misspelt number that stands at a span of the text."""
+        value, slip, spelling = reading
+        self.fault(
+            "form.number",
+            span,
+            f"{shorten(word)!r} {slip}" + (f"; {spelling} was probably meant" if spelling else ""),
+            element=element,
+            shell=shell,
+            measured=shorten(word),
+            expected=value,
+            remedy=f"write {spelling}" if spelling else "restore the number from the source",
+        )
 
     # ---- potentials
 
@@ -519,10 +567,15 @@ class Build:
         """One channel of a core potential, or None where its numbers cannot be read."""
         columns = order.split()
         terms: dict[str, list[float]] = {column: [] for column in columns}
-        for row, index in zip(run.rows, run.lines, strict=True):
+        plain = self._plain_columns(run, len(columns))
+        if plain is not None:
+            terms = dict(zip(columns, plain, strict=True))
+        for at, (row, index) in enumerate(
+            zip(run.rows, run.lines, strict=True) if plain is None else ()
+        ):
             values = [
                 self.number(word, index, ordinal, block.symbol, None)
-                for ordinal, word in enumerate(row)
+                for ordinal, word in enumerate(row, run.before[at] if run.before else 0)
             ]
             if len(values) < 3:
                 self.fault_line(
@@ -546,6 +599,18 @@ class Build:
         return Channel(
             l, local, powers, np.array(table[1]), np.array(table[2]), heading + 1, title, kind
         )
+
+    @staticmethod
+    def _plain_columns(run: Run, width: int) -> list[list[float]] | None:
+        """The columns of rows of one width whose numbers are all sound; None where one is not."""
+        words = [word for row in run.rows for word in row]
+        if not set("".join(words)) <= CHARACTERS or any(len(row) != width for row in run.rows):
+            return None
+        with suppress(ValueError):
+            values = [float(word.translate(FORTRAN)) for word in words]
+            if all(map(isfinite, values)):
+                return [values[column::width] for column in range(width)]
+        return None
 
     # ---- the document
 
@@ -583,6 +648,7 @@ class Build:
                 values = np.array(list(map(float, text.split())))
         if not np.isfinite(values).all():
             values = self._convert_one_by_one()
+        self._has_holes = bool(np.isnan(values).any())
         values.flags.writeable = False
         return values
 
@@ -590,28 +656,35 @@ class Build:
         values = np.full(len(self._words), np.nan)
         for block in self.blocks:
             for start, sharing in groupby(block.shells, key=lambda shell: shell.start):
-                shells, at = list(sharing), start
-                for row, index in zip(shells[0].run.rows, shells[0].run.lines, strict=True):
-                    for ordinal, word in enumerate(row):
-                        held = (s.name for s in shells[:-1] if s.holds(at - start))
-                        name = next(held, shells[-1].name)
-                        value = self.number(word, index, ordinal, block.symbol, name)
-                        values[at] = np.nan if value is None else value
-                        at += 1
+                shells = list(sharing)
+                names = {place: shell.name for shell in shells[::-1] for place in shell.places()}
+                for at, (word, index, ordinal) in enumerate(shells[0].run.words()):
+                    name = names.get(at, shells[-1].name)
+                    value = self.number(word, index, ordinal, block.symbol, name)
+                    values[start + at] = np.nan if value is None else value
         return values
 
     def _block(self, block: BlockDraft, values: Floats) -> Block:
-        shells = []
+        shells = list(block.ready)
         complete = block.complete
         for draft in block.shells:
             exponents, coefficients = self._table(draft, values)
-            if np.isnan(exponents).any() or np.isnan(coefficients).any():
+            if self._has_holes and np.isnan(np.append(exponents, coefficients)).any():
                 complete = False
                 continue
             first, last = draft.run.lines[0], draft.run.lines[-1] + 1
-            cells = Cells(self.source, first, last, draft.grid, self.comment, self.word_pattern)
+            skip = draft.run.before[0] if draft.run.before else 0
+            pattern, leading = self.word_pattern, self.leading
+            cells = Cells(
+                self.source, first, last, draft.grid, self.comment, pattern, skip, leading
+            )
             if draft.scale != 1.0:
-                exponents = exponents * draft.scale**2
+                with np.errstate(over="ignore"):
+                    exponents = exponents * np.square(draft.scale)
+                if not np.isfinite(exponents).all():
+                    complete = False
+                    self._say_overflow(block, draft)
+                    continue
             shells.append(Shell(draft.angular, exponents, coefficients, draft.heading + 1, cells))
         if block.number is None:
             raise AssertionError("only blocks of known elements are made")
@@ -626,14 +699,27 @@ class Build:
             block.end + 1,
         )
 
+    def _say_overflow(self, block: BlockDraft, draft: ShellDraft) -> None:
+        self.fault_line(
+            "form.number",
+            draft.heading,
+            f"the scale factor {draft.scale:g} makes an exponent too large for a double-precision "
+            "number",
+            element=block.symbol,
+            shell=draft.name,
+            measured=draft.scale,
+            expected=1.0,
+            remedy="mend the scale factor: exponents are multiplied by its square",
+        )
+
     @staticmethod
     def _table(draft: ShellDraft, values: Floats) -> tuple[Floats, Floats]:
         """Exponents (nprim,) and coefficients (nprim, ncontr) of a draft, views where possible."""
         (count, columns), grid, start = draft.shape, draft.grid, draft.start
         plain = grid.cj == 1 and not draft.unit
-        if plain and grid.e0 == 0 and grid.ci == grid.es >= grid.c0 + columns:
+        if plain and grid.e0 < grid.ci == grid.es >= grid.c0 + columns:
             table = values[start : start + count * grid.es].reshape(count, grid.es)
-            return table[:, 0], table[:, grid.c0 : grid.c0 + columns]
+            return table[:, grid.e0], table[:, grid.c0 : grid.c0 + columns]
         if plain and grid.es == 1 and grid.ci == columns:
             first, matrix = start + grid.e0, start + grid.c0
             table = values[matrix : matrix + count * columns].reshape(count, columns)

@@ -4,6 +4,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from typing import NamedTuple
 
+from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.model import Document
 from overlapse.grammar.source import Source
 
@@ -35,6 +36,9 @@ class Layout:
     numbers.  comment: the signs that start a comment.  recognise: the evidence in a text, or None.
     read: text to document; never raises on bad text, but says what is wrong in the faults.
     write: document to text in this layout, with the digits as they were spelled.
+    raw_primitives: whether texts of this layout may have coefficients over raw primitives; to all
+        others a document is written with its coefficients over normalised ones.
+    any_line: whether line ends mean nothing here, so that a line may be as long as it likes.
     """
 
     name: str
@@ -44,3 +48,21 @@ class Layout:
     recognise: Callable[[Source], Evidence | None]
     read: Callable[[Source], Document]
     write: Callable[[Document], Written]
+    raw_primitives: bool = False
+    any_line: bool = False
+
+    def __post_init__(self) -> None:
+        if not self.raw_primitives:
+            object.__setattr__(self, "write", _over_normalised(self.write))
+
+
+def _over_normalised(write: Callable[[Document], Written]) -> Callable[[Document], Written]:
+    """A writer that is never handed coefficients over raw primitives."""
+
+    def written(document: Document) -> Written:
+        text, losses = write(over_normalised(document))
+        if document.raw_primitives:
+            losses += ("coefficients over raw primitives became ones over normalised primitives",)
+        return Written(text, losses)
+
+    return written

@@ -9,6 +9,7 @@ import re
 from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import cached_property
+from math import isfinite
 from typing import Literal, NamedTuple
 
 import numpy as np
@@ -50,7 +51,8 @@ class Cells:
     """The numbers of a shell where they stand in the text; found only when somebody asks.
 
     ``first`` and ``last`` are 0-based line indices, ``last`` past the end; ``comment`` is the sign
-    that ends the readable part of a line ("" for none).
+    that ends the readable part of a line ("" for none), ``leading`` holds signs that make a whole
+    line a comment where they lead it.
     """
 
     source: Source
@@ -60,11 +62,14 @@ class Cells:
     comment: str = ""
     pattern: str = r"\S+"
     skip: int = 0
+    leading: str = ""
 
     def _spans(self) -> list[Span]:
         found: list[Span] = []
         for index in range(self.first, self.last):
             line = self.source.lines[index]
+            if self.leading and line.lstrip()[:1] in self.leading:
+                continue
             for sign in self.comment:
                 line = line.split(sign, 1)[0]
             start = self.source.starts[index]
@@ -114,6 +119,13 @@ def read_only(values: object) -> Floats:
     return array
 
 
+def _all_finite(array: Floats) -> bool:
+    # Most shells are small, and then numpy's start-up costs more than the work.
+    if array.size < 32:
+        return all(map(isfinite, array.ravel().tolist()))
+    return bool(np.isfinite(array).all())
+
+
 class Function(NamedTuple):
     """One contracted function of a shell.
 
@@ -152,7 +164,7 @@ class Shell:
         e, c = self.exponents, self.coefficients
         if e.ndim != 1 or c.ndim != 2 or e.shape[0] != c.shape[0] or not e.size:
             raise ValueError(f"exponents of shape {e.shape} do not fit coefficients {c.shape}")
-        if not (np.isfinite(e).all() and np.isfinite(c).all()):
+        if not (_all_finite(e) and _all_finite(c)):
             raise ValueError("exponents and coefficients must be finite")
         if not self.angular or min(self.angular) < 0 or c.shape[1] % len(self.angular):
             raise ValueError(f"angular momenta {self.angular} do not fit {c.shape[1]} columns")
@@ -379,7 +391,8 @@ class Document:
     """A text and what it says.
 
     layout: name of the layout it was read as, "" if none was recognised; reason: why that one.
-    raw_primitives: True where the coefficients multiply primitives that are not normalised.
+    raw_primitives: True where the coefficients multiply primitives that are not normalised; they
+        stay as written, and `overlapse.grammar.convention.over_normalised` converts them.
     """
 
     source: Source

@@ -81,7 +81,8 @@ def _slip(word: str) -> Reading:
 
 
 def _guess(slip: str, spelling: str) -> Reading:
-    return Reading(float(spelling.translate(FORTRAN)), slip, spelling)
+    value = float(spelling.translate(FORTRAN))
+    return Reading(value, slip, spelling) if isfinite(value) else Reading(None, slip)
 
 
 def _name(character: str) -> str:

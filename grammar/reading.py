@@ -1,6 +1,7 @@
 """From a file to a document: find the layout, then let it read."""
 
 import os
+from collections.abc import Iterable
 from pathlib import Path
 
 from overlapse.grammar.layout import Evidence, Layout
@@ -8,7 +9,8 @@ from overlapse.grammar.layouts import layouts
 from overlapse.grammar.model import Document, Fault
 from overlapse.grammar.source import Source
 
-# No row of a basis set comes near this; a longer line is some other kind of file.
+# No row of a basis set comes near this; a longer line is some other kind of file, unless its
+# layout knows no lines.
 LONGEST_LINE = 100_000
 # Two layouts whose evidence is this close are both possible.
 CLOSE_CALL = 5
@@ -43,31 +45,34 @@ def read_source(source: Source, *, layout: str | None = None) -> Document:
         raise ValueError(f"no layout is called {layout!r}; known: {', '.join(known)}")
     if not source.text.strip():
         return _unread(source, "the file is empty")
-    for index, line in enumerate(source.lines):
-        if len(line) > LONGEST_LINE:
-            return _unread(
-                source,
-                f"line {index + 1} has {len(line):,} characters: no row of a basis set is so long",
-            )
-    if layout is not None:
+    long = next((at for at, line in enumerate(source.lines) if len(line) > LONGEST_LINE), None)
+    if long is not None:
+        known = {name: each for name, each in known.items() if each.any_line}
+    if layout is None and (found := candidates(source, known.values())):
+        return _read_by_content(source, found)
+    if layout in known:
         return known[layout].read(source)
-    return _read_by_content(source)
+    if long is None:
+        return _unread(source, "no known layout of basis sets is recognised in this text")
+    length = len(source.lines[long])
+    return _unread(
+        source, f"line {long + 1} has {length:,} characters: no row of a basis set is so long"
+    )
 
 
-def candidates(source: Source) -> list[tuple[Evidence, Layout]]:
-    """Layouts whose marks a text carries, the likeliest first."""
+def candidates(
+    source: Source, among: Iterable[Layout] | None = None
+) -> list[tuple[Evidence, Layout]]:
+    """Layouts whose marks a text carries, the likeliest first; all layouts, or those given."""
     found = [
         (evidence, layout)
-        for layout in layouts().values()
+        for layout in (layouts().values() if among is None else among)
         if (evidence := layout.recognise(source)) is not None
     ]
     return sorted(found, key=lambda pair: -pair[0].strength)
 
 
-def _read_by_content(source: Source) -> Document:
-    found = candidates(source)
-    if not found:
-        return _unread(source, "no known layout of basis sets is recognised in this text")
+def _read_by_content(source: Source, found: list[tuple[Evidence, Layout]]) -> Document:
     (evidence, layout), *others = found
     document = layout.read(source)
     rivals = [pair for pair in others if evidence.strength - pair[0].strength < CLOSE_CALL]

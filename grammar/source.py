@@ -3,7 +3,7 @@
 import re
 from bisect import bisect_right
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cached_property, lru_cache
 from itertools import accumulate
 from typing import NamedTuple
 
@@ -71,9 +71,19 @@ class Source:
         start = self.starts[line] + len(text) - len(text.lstrip())
         return start, max(start, self.starts[line] + len(text.rstrip()))
 
-    def span_of_word(self, line: int, ordinal: int) -> tuple[int, int]:
-        """Offsets of a blank-separated word of a line (both 0-based), else of the whole line."""
-        for seen, word in enumerate(re.finditer(r"\S+", self.lines[line])):
-            if seen == ordinal:
-                return self.starts[line] + word.start(), self.starts[line] + word.end()
+    def span_of_word(self, line: int, ordinal: int, pattern: str = r"\S+") -> tuple[int, int]:
+        """Offsets of a word of a line (both 0-based), else of the whole line.
+
+        ``pattern`` matches a word; plain words stand between blanks.
+        """
+        words = _words(self.lines[line], pattern)
+        if 0 <= ordinal < len(words):
+            start = self.starts[line]
+            return start + words[ordinal][0], start + words[ordinal][1]
         return self.span_of_line(line)
+
+
+@lru_cache(maxsize=8)  # faults tend to come from one line one after the other
+def _words(line: str, pattern: str) -> list[tuple[int, int]]:
+    """Where the words of a line begin and end."""
+    return [word.span() for word in re.finditer(pattern, line)]

@@ -107,8 +107,20 @@ def title_of(document: Document, block: Block) -> str:
     """The name under which a block is written: its label, its set's label, or "unnamed"."""
     if block.label:
         return block.label
-    named = next((s.label for s in document.sets if s.label and block in s.blocks), None)
-    return named or "unnamed"
+    for members in document.sets:
+        if members.label and any(block is member for member in members.blocks):
+            return members.label
+    return "unnamed"
+
+
+def say_shared_names(document: Document, losses: Losses) -> None:
+    """For layouts that keep the sets of a file apart by the names of their blocks."""
+    seen: set[tuple[int, str]] = set()
+    for block in document.blocks:
+        key = block.atomic_number, title_of(document, block)
+        if key in seen:
+            losses.say(f"several sets have the name {key[1]!r} and become one", block.symbol)
+        seen.add(key)
 
 
 def terms(channel: Channel) -> list[tuple[str, str, str]]:

@@ -6,11 +6,12 @@ from collections.abc import Iterator
 from lark import Token, Tree
 
 from overlapse.grammar.building import BlockDraft, Build, Node, Role, index_of
+from overlapse.grammar.cores import CHANNEL, core_lines, read_core
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
-from overlapse.grammar.model import Block, Document, Potential, Shell, letter_of
+from overlapse.grammar.model import Document, Fault, Shell, letter_of
 from overlapse.grammar.source import Source
-from overlapse.grammar.writing import Losses, columns, is_general, segments, terms, title_of
+from overlapse.grammar.writing import Losses, columns, is_general, segments, title_of
 
 PICTURE = """\
 $basis
@@ -31,21 +32,38 @@ _OPENING = re.compile(
     r"^[ \t]*(\$(?:basis|jbas|cbas|jkbas|cabs|ecp))[ \t]*(?:#.*)?$", re.MULTILINE | re.IGNORECASE
 )
 _STAR = re.compile(r"^[ \t]*\*[ \t]*$", re.MULTILINE)
-_CORE = re.compile(r"ncore\s*=\s*(\d+)(?:\s+lmax\s*=\s*(\d+))?", re.IGNORECASE)
-_CHANNEL = re.compile(r"([a-z])(?:-([a-z]))?", re.IGNORECASE)
+# Sets whose contractions depend on the charge have the same fences and shells, but no section; Z
+# and the parameters of the charge head each element, and a row has two coefficients.
+_CHARGED = re.compile(
+    r"^[ \t]*\*[ \t]*\n[ \t]*(\d{1,3}(?:[ \t]+[-+]?\d*\.\d+)+)[ \t]*\n"
+    r"[ \t]*\d+[ \t]+[A-Za-z][ \t]*\n[ \t]*[-+.\d]\S*[ \t]+\S+[ \t]+[-+.\d]",
+    re.MULTILINE,
+)
 
 
 def recognise(source: Source) -> Evidence | None:
     opening = _OPENING.search(source.flat)
     if opening is None:
-        return None
+        charged = _CHARGED.search(source.flat)
+        return Evidence(85, f"`*` lines and headings such as `{charged[1]}`") if charged else None
     if _STAR.search(source.flat, opening.end()):
         return Evidence(90, f"a `{opening[1]}` section and `*` lines")
     return Evidence(60, f"a `{opening[1]}` line, but no `*` lines")
 
 
 def read(source: Source) -> Document:
-    return _Reader(source).document()
+    charged = None if _OPENING.search(source.flat) else _CHARGED.search(source.flat)
+    if charged is None:
+        return _Reader(source).document()
+    fault = Fault(
+        "form.syntax",
+        "elements headed by Z and numbers, rows with two coefficients: the contractions of this "
+        "set depend on the charge of the atom, and it is no basis set of fixed functions",
+        source.span_of_line(source.flat.count("\n", 0, charged.start(1))),
+        expected="a section such as `$basis`, elements headed by symbol and name",
+        remedy="take a basis set with fixed contractions; nothing here was judged",
+    )
+    return Document(source, "dollar", faults=(fault,))
 
 
 class _Reader:
@@ -82,7 +100,7 @@ class _Reader:
             return "STAR"
         if low.startswith("ncore"):
             return "CORE"
-        if _CHANNEL.fullmatch(body):
+        if CHANNEL.fullmatch(body):
             return "CHANNEL" if self.is_in_potential(index) else "TEXT"
         return "TEXT"
 
@@ -200,55 +218,7 @@ class _Reader:
         )
 
     def potential(self, block: BlockDraft, node: Node) -> None:
-        heading, *channels = node.children
-        assert isinstance(heading, Token)
-        match = _CORE.match(heading)
-        if match is None:
-            self.build.fault_line(
-                "form.syntax",
-                index_of(heading),
-                f"{str(heading)!r} should give the electrons and the highest angular momentum",
-                element=block.symbol,
-                expected="ncore = 60   lmax = 3",
-                remedy="write both whole numbers",
-            )
-            block.complete = False
-            return
-        made = []
-        for channel in channels:
-            assert isinstance(channel, Tree)
-            title = channel.children[0]
-            rows = channel.children[1] if len(channel.children) > 1 else None
-            assert isinstance(title, Token) and (rows is None or isinstance(rows, Token))
-            angular = self.build.angular_of(title[0], index_of(title))
-            if angular is None:
-                continue
-            made.append(
-                self.build.channel(
-                    block,
-                    angular[0],
-                    "-" not in title,
-                    index_of(title),
-                    self.build.rows(rows),
-                    order="coefficient power exponent",
-                    title=str(title),
-                )
-            )
-        if match[2] is not None and len(channels) != int(match[2]) + 1:
-            highest = int(match[2])
-            self.build.fault_line(
-                "form.count",
-                index_of(heading),
-                f"lmax = {highest} ({letter_of(highest)}) makes {highest + 1} channels, "
-                f"{len(channels)} follow",
-                element=block.symbol,
-                measured=len(channels),
-                expected=highest + 1,
-                remedy="a channel was lost or added, or lmax is wrong",
-            )
-        block.potential = Potential(
-            int(match[1]), tuple(channel for channel in made if channel), index_of(heading) + 1
-        )
+        read_core(self.build, block, node)
 
 
 def write(document: Document) -> Written:
@@ -273,7 +243,8 @@ def write(document: Document) -> Written:
         lines += ["$ecp", "*"]
         for block in owners:
             lines += [f"{block.symbol.lower()} {title_of(document, block)}", "*"]
-            lines += [*_potential_lines(block, losses), "*"]
+            assert block.potential is not None
+            lines += [*core_lines(block.potential, block.symbol, losses), "*"]
         lines.append("$end")
     return Written("\n".join(lines) + "\n", losses.lines())
 
@@ -287,19 +258,6 @@ def _shell_lines(shell: Shell, element: str, losses: Losses) -> Iterator[str]:
         for place, l in enumerate(angular):
             yield f"{len(rows):4}  {letter_of(l)}"
             yield from columns([[row[0], row[1 + place]] for row in rows], 4)
-
-
-def _potential_lines(block: Block, losses: Losses) -> Iterator[str]:
-    assert block.potential is not None
-    scalar = [c for c in block.potential.channels if c.kind == "scalar"]
-    if len(scalar) < len(block.potential.channels):
-        losses.say("spin-orbit terms of core potentials are left out", block.symbol)
-    highest = max((channel.l for channel in scalar), default=0)
-    yield f"  ncore = {block.potential.electrons}   lmax = {highest}"
-    for channel in scalar:
-        letter = letter_of(channel.l)
-        yield letter if channel.local else f"{letter}-{letter_of(highest)}"
-        yield from columns([[c, n, e] for n, e, c in terms(channel)], 2)
 
 
 LAYOUT = Layout(

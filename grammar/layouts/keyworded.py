@@ -422,7 +422,7 @@ def write(document: Document) -> Written:
     if owners:
         lines.append("ecp")
         for block in owners:
-            lines += _potential_lines(block)
+            lines += _potential_lines(block, losses)
         lines.append("end")
     return Written("\n".join(lines) + "\n", losses.lines())
 
@@ -437,19 +437,25 @@ def _shell_lines(symbol: str, shell: Shell) -> Iterator[str]:
         yield from columns([[e, *row] for e, row in zip(exponents, coefficients, strict=True)], 6)
 
 
-def _potential_lines(block: Block) -> Iterator[str]:
+def _potential_lines(block: Block, losses: Losses) -> Iterator[str]:
     assert block.potential is not None
     yield f"{block.symbol} nelec {block.potential.electrons}"
-    coupling = {c.line: c for c in block.potential.channels if c.kind == "spin-orbit"}
+    coupling = {_key(c): c for c in block.potential.channels if c.kind == "spin-orbit"}
     for channel in block.potential.channels:
         if channel.kind == "spin-orbit":
             continue
         yield f"{block.symbol} {'ul' if channel.local else letter_of(channel.l).upper()}"
         rows: list[list[str]] = [list(term) for term in terms(channel)]
-        if channel.line in coupling:
-            pairs = zip(rows, terms(coupling[channel.line]), strict=True)
-            rows = [[*row, other[2]] for row, other in pairs]
+        if (coupled := coupling.pop(_key(channel), None)) is not None:
+            rows = [[*row, other[2]] for row, other in zip(rows, terms(coupled), strict=True)]
         yield from columns(rows, 2)
+    if coupling:
+        losses.say("spin-orbit terms with exponents of their own are left out", block.symbol)
+
+
+def _key(channel: Channel) -> tuple[object, ...]:
+    """Equal for a channel and its spin-orbit terms, which are one more column of its rows."""
+    return (channel.l, channel.local, channel.powers, channel.exponents.tobytes())
 
 
 LAYOUT = Layout(

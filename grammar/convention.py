@@ -1,0 +1,126 @@
+"""Whether coefficients multiply normalised primitives, and how to make them do so.
+
+Nearly every layout means normalised primitives.  Some texts fold the norms into the coefficients
+instead: then a coefficient multiplies the bare x**i y**j z**k exp(-a r**2), i + j + k = l, and
+holds the factor (2a/pi)**(3/4) (4a)**(l/2) / sqrt((2i-1)!! (2j-1)!! (2k-1)!!) that normalises it.
+Which component's factorials were folded in differs from text to text and from l to l, so all are
+tried; they scale a whole contraction and leave its shape alone.
+
+Source: T. Helgaker, P. Jorgensen, J. Olsen, Molecular Electronic-Structure Theory, Wiley 2000,
+chapters 6 and 8.
+"""
+
+from collections.abc import Iterable
+from dataclasses import replace
+from functools import cache
+from math import pi
+from typing import NamedTuple
+
+import numpy as np
+
+from overlapse.grammar.model import Block, Document, Floats, Shell, read_only
+
+TOLERANCE = 1e-3
+
+
+class Count(NamedTuple):
+    """How many contracted functions have self-overlap one under each convention.
+
+    normalised, raw: those that have it over normalised, and over raw primitives; of: all.
+    """
+
+    normalised: int
+    raw: int
+    of: int
+
+
+def raw_norms(exponents: Floats, l: int | Floats) -> Floats:
+    """Factors that normalise bare primitives, but for the double factorials.
+
+    Shapes of the two must broadcast; exponents that are not positive give NaN.
+    """
+    with np.errstate(all="ignore"):
+        norms: Floats = (2.0 * exponents / pi) ** 0.75 * (4.0 * exponents) ** (0.5 * l)
+    return norms
+
+
+@cache
+def factorials(l: int) -> tuple[float, ...]:
+    """The products (2i-1)!! (2j-1)!! (2k-1)!! that occur for i + j + k = l, the smallest first."""
+    odd = [1.0]
+    for n in range(1, l + 1):
+        odd.append(odd[-1] * (2 * n - 1))
+    products = {
+        odd[i] * odd[j] * odd[l - i - j] for i in range(l + 1) for j in range(i, (l - i) // 2 + 1)
+    }
+    return tuple(sorted(products))
+
+
+def count_normalised(shells: Iterable[Shell]) -> Count:
+    """Count the contracted functions that are normalised under each convention."""
+    groups: dict[int, list[tuple[int, Floats, Floats]]] = {}
+    for shell in shells:
+        each = shell.columns_per_l
+        for column in range(each * len(shell.angular)):
+            groups.setdefault(len(shell.exponents), []).append(
+                (shell.angular[column // each], shell.exponents, shell.coefficients[:, column])
+            )
+    normalised = raw = 0
+    for members in groups.values():
+        ls = [l for l, _, _ in members]
+        plain, folded = _self_overlaps(
+            np.array(ls), np.array([e for _, e, _ in members]), np.array([c for _, _, c in members])
+        )
+        normalised += sum(abs(value - 1.0) < TOLERANCE for value in plain)
+        raw += sum(_factor(l, value) is not None for l, value in zip(ls, folded, strict=True))
+    return Count(normalised, raw, sum(map(len, groups.values())))
+
+
+def _self_overlaps(
+    l: Floats, exponents: Floats, coefficients: Floats
+) -> tuple[list[float], list[float]]:
+    """Self-overlaps of many contractions, over normalised and over raw primitives.
+
+    l: shape (k,); exponents, coefficients: shape (k, n).
+    """
+    with np.errstate(all="ignore"):
+        root = np.sqrt(exponents[:, :, None] / exponents[:, None, :])
+        overlap = (2.0 / (root + 1.0 / root)) ** (l[:, None, None] + 1.5)
+        both = np.stack([coefficients, coefficients / raw_norms(exponents, l[:, None])], axis=1)
+        plain, folded = ((both @ overlap) * both).sum(axis=2).T
+    return plain.tolist(), folded.tolist()
+
+
+def _factor(l: int, overlap: float) -> float | None:
+    """The product of double factorials that makes a self-overlap over raw primitives one."""
+    return next((f for f in factorials(l) if abs(overlap * f - 1.0) < TOLERANCE), None)
+
+
+def over_normalised(document: Document) -> Document:
+    """The document with coefficients that multiply normalised primitives.
+
+    A document that has them already comes back as it is.  Exponents keep their spelling.
+    """
+    if not document.raw_primitives:
+        return document
+    sets = tuple(
+        replace(members, blocks=tuple(map(_converted_block, members.blocks)))
+        for members in document.sets
+    )
+    return replace(document, sets=sets, raw_primitives=False)
+
+
+def _converted_block(block: Block) -> Block:
+    return replace(block, shells=tuple(map(_converted_shell, block.shells)))
+
+
+def _converted_shell(shell: Shell) -> Shell:
+    table = np.array(shell.coefficients)
+    for at, l in enumerate(shell.angular):
+        columns = slice(at * shell.columns_per_l, (at + 1) * shell.columns_per_l)
+        table[:, columns] /= raw_norms(shell.exponents, l)[:, None]
+        for column in range(columns.start, columns.stop):
+            one = (np.array([l]), shell.exponents[None, :], shell.coefficients[None, :, column])
+            table[:, column] *= (_factor(l, _self_overlaps(*one)[1][0]) or 1.0) ** 0.5
+    table[~np.isfinite(table)] = 0.0
+    return replace(shell, coefficients=read_only(table))

@@ -1,0 +1,371 @@
+"""JSON with positions: what the layout of the open schema reads its text through.
+
+Sound innermost objects, and lists of them, go through the standard library's parser whole, so that
+a number costs next to nothing; the grammar sees what holds them together.  Only where something is
+wrong, or somebody asks, an object or a list is taken apart into single tokens, each with its place.
+
+JSON is strict, and so are programs that read it: a missing comma makes a text unreadable to them.
+Here each slip is a finding, and what follows it is read all the same.
+"""
+
+import json
+import re
+from collections.abc import Iterator
+from contextlib import suppress
+from dataclasses import dataclass, field
+from typing import Any
+
+from lark import Token, Tree
+
+from overlapse.grammar.building import Build, Node, shorten
+from overlapse.grammar.model import Span
+from overlapse.grammar.numbers import read_number
+
+Value = Token | Node
+
+# A quote that is not closed on its line makes a word that ends before the next sign.
+_QUOTED = r'"[^"\\\x00-\x1f]*(?:\\["\\/bfnrtu][^"\\\x00-\x1f]*)*"'
+_BLANKS = r"[ \t\r\n]*"  # JSON knows no others
+_SIGNS = r"(?P<OPEN>\{)|(?P<CLOSE>\})|(?P<BEGIN>\[)|(?P<END>\])|(?P<COMMA>,)|(?P<COLON>:)"
+_SINGLE = (
+    rf"(?P<NOTE>//[^\n]*|/\*[^\n]*|\#[^\n]*)"
+    rf"|(?P<KEY>(?:{_QUOTED}|'[^'\n]*'|[A-Za-z_]\w*){_BLANKS}:)|(?P<STRING>{_QUOTED})|{_SIGNS}"
+    rf'|(?P<WORD>"[^"\n,:{{}}\[\]]*|[^ \t\r\n{{}}\[\],:"]+)'
+)
+_FINE = re.compile(rf"{_BLANKS}(?:{_SINGLE})")
+_LEAF = r"\{[^{}\\]*\}"
+_COARSE = re.compile(
+    rf"{_BLANKS}(?:(?P<LEAF>{_LEAF})"
+    rf"|(?P<LEAVES>\[{_BLANKS}{_LEAF}(?:{_BLANKS},{_BLANKS}{_LEAF})*{_BLANKS}\])"
+    r'|(?P<FLAT>\[[^\[\]{}"\\]*(?:"[^"\\\n]*"[^\[\]{}"\\]*)*\])'
+    rf"|{_SINGLE})"
+)
+_LEAVES = re.compile(_LEAF)
+LISTS = ("array", "FLAT", "LEAVES")
+_CLOSES = {"CLOSE": "OPEN", "END": "BEGIN"}
+
+
+class _Refused(ValueError):
+    """Something that the standard library's parser takes and JSON does not."""
+
+
+def _once(pairs: list[tuple[str, Any]]) -> dict[str, Any]:
+    members = dict(pairs)
+    if len(members) < len(pairs):
+        raise _Refused
+    return members
+
+
+def _refuse(_constant: str) -> None:
+    raise _Refused
+
+
+_DECODER = json.JSONDecoder(object_pairs_hook=_once, parse_constant=_refuse)
+
+
+@dataclass
+class Members:
+    """What an object holds.
+
+    entries: key token and value (None where it is missing) by name.  whole: False where a part of
+    the object could not be made out, so that what seems missing may have been there.
+    """
+
+    opener: Span
+    entries: dict[str, tuple[Token, Value | None]] = field(default_factory=dict)
+    whole: bool = True
+
+    def get(self, name: str) -> Value | None:
+        """The value of a member, None if there is none or it is null."""
+        value = self.entries[name][1] if name in self.entries else None
+        return None if isinstance(value, Token) and value == "null" else value
+
+
+class JsonText:
+    """The tokens of one text, and views of its tree that report slips as they meet them."""
+
+    def __init__(self, build: Build) -> None:
+        self.build = build
+        self.text = build.source.text
+        self.leaves: dict[int, dict[str, Any]] = {}  # contents of the LEAF tokens, by offset
+        self.said: set[Span] = set()  # where slips have been reported
+        self.damage: list[int] = []  # offsets where brackets do not fit
+
+    def tree(self) -> Node:
+        return self.build.parse(self._matched(self._scan(_COARSE, 0, len(self.text))))
+
+    def expand(self, token: Token) -> Node:
+        """The tree of a LEAF or FLAT token."""
+        start, end = span_of(token)
+        node = self.build.parse(self._scan(_FINE, start, end)).children[0]
+        assert isinstance(node, Tree)
+        return node
+
+    # ---- tokens
+
+    def _scan(self, pattern: re.Pattern[str], at: int, end: int) -> Iterator[Token]:
+        while match := pattern.match(self.text, at, end):
+            kind = match.lastgroup or ""
+            start, at = match.span(kind)
+            if kind in ("LEAF", "LEAVES") and not self._is_sound(start, at):
+                kind, at = "OPEN" if kind == "LEAF" else "BEGIN", start + 1
+            yield Token(kind, self.text[start:at], start_pos=start, end_pos=at)
+
+    def _is_sound(self, start: int, end: int) -> bool:
+        with suppress(ValueError, RecursionError):
+            found = _DECODER.decode(self.text[start:end])
+            if isinstance(found, dict):
+                self.leaves[start] = found
+                return True
+            # A brace in a text makes the objects seem to be others than they are.
+            places = [leaf.start() for leaf in _LEAVES.finditer(self.text, start, end)]
+            self.leaves.update(zip(places, found, strict=True))
+            return True
+        return False
+
+    def _matched(self, tokens: Iterator[Token]) -> Iterator[Token]:
+        """The tokens without closing brackets that close nothing; says which do not fit.
+
+        A bracket that fits the last but one opening bracket closes both.  Where the last one was
+        closed too often in truth, a later bracket is left over: that is the same slip.
+        """
+        opened: list[Token] = []
+        left_over = 0
+        for token in tokens:
+            if token.type in ("OPEN", "BEGIN"):
+                opened.append(token)
+            elif wanted := _CLOSES.get(token.type):
+                if opened and opened[-1].type == wanted:
+                    opened.pop()
+                elif len(opened) > 1 and opened[-2].type == wanted:
+                    self._say_mismatch(token, opened[-1])
+                    left_over += 2  # one of either kind
+                    del opened[-2:]
+                else:
+                    if left_over:
+                        left_over -= 1
+                    else:
+                        self._say_mismatch(token, opened[-1] if opened else None)
+                    continue
+            yield token
+        if opened and not self.damage:
+            self._say_unclosed(opened[-1])
+
+    # ---- faults
+
+    def fault(self, where: Value | Span, message: str, **details: Any) -> None:
+        """A slip in the form of the JSON; the first at a place stands for all."""
+        span = where if isinstance(where, tuple) else span_of(where)
+        if span not in self.said:
+            self.said.add(span)
+            self.build.fault("form.syntax", span, message, **details)
+
+    def _say_mismatch(self, token: Token, opener: Token | None) -> None:
+        self.damage.append(token.start_pos or 0)
+        if opener is None:
+            message, closer = f"this `{token}` closes nothing", None
+        else:
+            closer = "}" if opener == "{" else "]"
+            line = self.build.source.place(opener.start_pos or 0).line
+            message = f"`{token}` stands here, but `{opener}` of line {line} is still open"
+        self.fault(
+            token,
+            message,
+            measured=str(token),
+            expected=closer,
+            remedy="a bracket was lost or added before this place",
+        )
+
+    def _say_unclosed(self, opener: Token) -> None:
+        self.damage.append(opener.start_pos or 0)
+        self.fault(
+            opener,
+            f"this `{opener}` is not closed before the text ends",
+            expected="}" if opener == "{" else "]",
+            remedy="the file was cut off, or a bracket was lost",
+        )
+
+    def is_damaged(self, value: Value) -> bool:
+        """Whether a bracket that does not fit stands inside."""
+        start, end = extent_of(value) if self.damage else (0, 0)
+        return any(start <= offset < end for offset in self.damage)
+
+    # ---- views of the tree
+
+    def holders(self, tree: Node, name: str) -> Iterator[tuple[Token | None, Node]]:
+        """The objects that have a member of some name, in the order of the text.
+
+        Each comes with the key that it is the value of, None if it is in a list or by itself.
+        """
+        waiting: list[tuple[Token | None, Value]] = [(None, tree)]
+        while waiting:
+            key, node = waiting.pop()
+            if isinstance(node, Token):
+                if node.type != "LEAF" or name not in self.leaves[span_of(node)[0]]:
+                    continue
+                node = self.expand(node)
+            if node.data == "object" and any(name_of(k) == name for k, _ in pairs_in(node)):
+                yield key, node
+            first = node.children[0] if node.data == "pair" else None
+            key = first if isinstance(first, Token) else None
+            waiting += [(key, child) for child in reversed(node.children)]
+
+    def members(self, value: Value) -> Members:
+        """The members of an object; to be called once, because it says what is wrong."""
+        node = self.expand(value) if isinstance(value, Token) else value
+        found = Members(span_of(node))
+        for pair in self._items(node, found):
+            assert isinstance(pair, Tree)
+            key, *rest = pair.children
+            assert isinstance(key, Token)
+            if key[0] != '"':
+                self.fault(key, "names stand in double quotes", expected=f'"{name_of(key)}":',
+                           remedy=f'write "{name_of(key)}":')  # fmt: skip
+            if not rest:
+                found.whole = False
+                self.fault(key, f"no value follows the name {name_of(key)!r}",
+                           remedy="restore the value from the source")  # fmt: skip
+            elif not _is_closed(rest[0]):
+                found.whole = False  # what it swallowed may belong here
+            elif _is_unquoted(rest[0]):
+                found.whole = False
+                word = shorten(str(rest[0]))
+                self.fault(rest[0], f"{word!r} is no value: texts stand in double quotes",
+                           measured=word, expected='"', remedy="mend the quotes")  # fmt: skip
+            if name_of(key) in found.entries:
+                before = self.build.source.place(found.entries[name_of(key)][0].start_pos or 0)
+                self.build.fault(
+                    "form.repeat",
+                    span_of(key),
+                    f"{name_of(key)!r} was already given on line {before.line}: "
+                    "most programs take the last and drop the others without a word",
+                    measured=2,
+                    expected=1,
+                    remedy="keep one of them, or mend the name",
+                )
+                continue
+            found.entries[name_of(key)] = (key, rest[0] if rest else None)
+        return found
+
+    def items(self, value: Value) -> tuple[list[Value], bool]:
+        """The items of a list, and whether it is whole; to be called once, like `members`."""
+        if isinstance(value, Token) and value.type == "LEAVES":
+            found = _LEAVES.finditer(self.text, *span_of(value))
+            return [Token("LEAF", m[0], start_pos=m.start(), end_pos=m.end()) for m in found], True
+        node = self.expand(value) if isinstance(value, Token) else value
+        members = Members(span_of(node))
+        return list(self._items(node, members)), members.whole
+
+    def _items(self, node: Node, found: Members) -> Iterator[Value]:
+        """What stands between the commas of an object or a list."""
+        closed = _is_closed(node)
+        found.whole = closed
+        # Where a bracket does not fit, that has been reported: the rest follows from it.
+        quiet = not closed or self.is_damaged(node)
+        said, lacking = quiet, False
+        comma: Token | None = None
+        filled = False
+        for child in node.children[1 : -1 if closed else None]:
+            kind = kind_of(child)
+            if kind == "NOTE":
+                self.fault(child, "JSON has no comments", remedy="take the comment out")
+            elif isinstance(child, Token) and kind == "COMMA":
+                if not filled and not said:
+                    self._say_comma(child)
+                said, filled, comma = quiet, False, child
+            elif (kind == "pair") != (node.data == "object") or kind == "COLON":
+                if not said:
+                    self._say_misfit(child, node)
+                found.whole, said, filled = False, True, True
+            else:
+                if filled and not said and not lacking:
+                    self.fault(span_of(child), "a comma is missing before this",
+                               expected=",", remedy="put commas between all items")  # fmt: skip
+                    lacking = True
+                filled, said = True, quiet
+                yield child
+        if comma is not None and not filled and not said:
+            self._say_comma(comma)
+
+    def _say_comma(self, comma: Token) -> None:
+        self.fault(
+            comma,
+            "a comma too many: it stands between two items and nowhere else",
+            measured=",",
+            remedy="take the comma out, or restore what is missing beside it",
+        )
+
+    def _say_misfit(self, child: Value, node: Node) -> None:
+        start, end = span_of(child)
+        word = shorten(self.text[start:end])
+        in_object = node.data == "object"
+        wanted = 'a name and a colon, such as `"exponents":`,' if in_object else "a value"
+        hint = "; a quote is missing" if word[0] == '"' and word[-1] != '"' else ""
+        self.fault(
+            child,
+            f"{word!r} stands where {wanted} belongs{hint}",
+            measured=word,
+            remedy="mend the quotes, or take this out",
+        )
+
+
+def kind_of(value: Value) -> str:
+    return value.type if isinstance(value, Token) else str(value.data)
+
+
+def span_of(value: Value) -> Span:
+    """Where a token stands, or the first token of a tree."""
+    while isinstance(value, Tree):
+        value = value.children[0]
+    return value.start_pos or 0, value.end_pos or 0
+
+
+def extent_of(value: Value) -> Span:
+    """From the first to past the last character of a token or a tree."""
+    start, end = span_of(value)
+    while isinstance(value, Tree):
+        value = value.children[-1]
+        end = value.end_pos or 0 if isinstance(value, Token) else end
+    return start, end
+
+
+def _is_unquoted(value: Value) -> bool:
+    """Whether a value is neither a number nor likely meant as one."""
+    return (
+        isinstance(value, Token)
+        and value.type == "WORD"
+        and value not in ("true", "false", "null")
+        and read_number(value).value is None
+    )
+
+
+def _is_closed(value: Value) -> bool:
+    last = value.children[-1] if isinstance(value, Tree) else None
+    return last is None or (isinstance(last, Token) and last.type in _CLOSES)
+
+
+def name_of(key: Token) -> str:
+    """The name that a KEY token spells."""
+    word = key[:-1].rstrip()
+    if "\\" in word:
+        with suppress(ValueError):
+            return str(json.loads(word))
+    return word.strip("\"'")
+
+
+def string_of(value: Value | None) -> str | None:
+    """The text of a STRING token, None for anything else."""
+    if not isinstance(value, Token) or value.type != "STRING":
+        return None
+    with suppress(ValueError):
+        return str(json.loads(value))
+    return value.strip('"')
+
+
+def pairs_in(node: Node) -> Iterator[tuple[Token, Value | None]]:
+    """Keys and values of a node, without a word on what is wrong."""
+    for child in node.children:
+        if isinstance(child, Tree) and child.data == "pair":
+            key = child.children[0]
+            assert isinstance(key, Token)
+            yield key, child.children[1] if len(child.children) > 1 else None

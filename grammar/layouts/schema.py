@@ -1,0 +1,391 @@
+"""Reader and writer for the open JSON schema of basis sets in quantum chemistry."""
+
+import re
+from collections.abc import Iterator
+from functools import cached_property
+from typing import NamedTuple
+
+from lark import Token
+
+from overlapse.grammar.apart import POTENTIAL_KINDS, SHELL_KINDS, Apart
+from overlapse.grammar.building import BlockDraft, Build, FunctionType, Node, integer
+from overlapse.grammar.centres import gather
+from overlapse.grammar.elements import number_of
+from overlapse.grammar.jsontext import (
+    LISTS,
+    Members,
+    Value,
+    extent_of,
+    kind_of,
+    name_of,
+    pairs_in,
+    span_of,
+    string_of,
+)
+from overlapse.grammar.jsonwriting import write
+from overlapse.grammar.layout import Evidence, Layout
+from overlapse.grammar.leaves import Terms, cells_of, table_of, terms_of
+from overlapse.grammar.model import Channel, Document, Potential, Remark, Shell
+from overlapse.grammar.source import Source
+
+PICTURE = """\
+{"name": "invented", "center_data": {"C": {"electron_shells": [
+  {"harmonic_type": "spherical", "angular_momentum": [0],
+   "exponents": [4.0, 0.5], "coefficients": [[0.6, 0.5]]}
+]}}, "atom_map": ["C"]}"""
+
+_OBJECTS = ("object", "LEAF")
+_NAME = re.compile(r"([A-Za-z]{1,3})\d*")
+_QUOTED = re.compile(r'"([^"\\\n]*)"')
+
+
+def recognise(source: Source) -> Evidence | None:
+    text = source.text
+    found = [name for name in ('"center_data"', '"electron_shells"') if name in text]
+    if len(found) == 2:
+        return Evidence(97, f"`{found[0]}` and `{found[1]}`")
+    if found and text.lstrip()[:1] == "{":
+        return Evidence(85, f"JSON with `{found[0]}`")
+    return None
+
+
+def read(source: Source) -> Document:
+    return _Reader(source).document()
+
+
+class _Size(NamedTuple):
+    """A shell's angular momenta, its kind of functions, and its number of columns."""
+
+    angular: tuple[int, ...]
+    kind: FunctionType | None
+    columns: int
+
+    @property
+    def functions(self) -> int:
+        """Number of components, of one contraction for each l."""
+        if self.kind == "spherical":
+            return sum(2 * l + 1 for l in self.angular)
+        return sum((l + 1) * (l + 2) // 2 for l in self.angular)
+
+
+class _Reader:
+    """Walks the tree of one text."""
+
+    def __init__(self, source: Source) -> None:
+        self.build = Build(source, "schema", windows=())
+        self.json = Apart(self.build)
+        self.tree = self.json.tree()
+        self.label: str | None = None
+        self.starts: dict[int, BlockDraft] = {}  # by the offset of their names
+        self.sizes: dict[str, list[_Size]] = {}  # of the centres of one basis
+
+    def document(self) -> Document:
+        self.check_outside()
+        bases = [node for _, node in self.json.holders(self.tree, "center_data")]
+        for node in bases:
+            self.basis(node)
+        if not bases or self.json.damage:
+            self.strays(bool(bases))
+        self.mark_damage()
+        return gather(self.build.document())
+
+    def check_outside(self) -> None:
+        """In a file that is one JSON text, nothing stands beside it."""
+        beside = [c for c in self.tree.children if kind_of(c) not in (*_OBJECTS, *LISTS)]
+        is_json = self.json.text.lstrip()[:1] in tuple("{[,}]")
+        if beside and is_json and not self.json.damage:
+            message = "this stands outside the brackets of the JSON text"
+            self.json.fault(beside[0], message, remedy="take it out, or mend the brackets")
+
+    # ---- a basis and its centres
+
+    def basis(self, node: Node) -> None:
+        members = self.json.members(node)
+        self.label = string_of(members.get("name")) or None
+        self.sizes = {}
+        described = members.get("description")
+        if described is not None and (text := string_of(described)):
+            self.build.remarks.append(Remark(text, self.line_of(described) + 1))
+        centres = members.get("center_data")
+        if centres is None or kind_of(centres) not in _OBJECTS:
+            where = members.opener if centres is None else centres
+            remedy = "restore the centres from the source"
+            self.json.fault(where, "`center_data` is no object", expected="{", remedy=remedy)
+            return
+        damaged = self.json.is_damaged(centres)
+        for key, value in self.json.members(centres).entries.values():
+            # Behind a bracket that does not fit, names of other things may have come here.
+            if value is not None and not (damaged and kind_of(value) not in _OBJECTS):
+                self.centre(key, value)
+        if members.whole and not self.json.damage:
+            self.check_map(members)
+
+    def centre(self, key: Token, value: Value) -> None:
+        block = self.opened(key)
+        name = name_of(key)
+        if kind_of(value) not in _OBJECTS:
+            block.complete = False
+            message = f"{name!r} should be an object with `electron_shells`"
+            self.json.fault(
+                value, message, element=block.symbol, expected="{", remedy="restore the object"
+            )
+            return
+        self.sizes[name] = []
+        members = self.json.members(value)
+        block.complete &= members.whole
+        for shell in self.objects(members, "electron_shells", block):
+            self.shell(block, shell, self.sizes[name])
+        self.potential(block, members)
+        block.functions = self.functions(block, self.sizes[name])
+        block.end = max(block.end, self.build.source.place(extent_of(value)[1]).line - 1)
+
+    def opened(self, key: Token) -> BlockDraft:
+        """The block of a centre, whose element its name has to tell."""
+        name, start = name_of(key), span_of(key)[0]
+        symbol = _symbol_in(name) or self.elements.get(name)
+        if symbol is None:
+            self.build.fault(
+                "form.element",
+                span_of(key),
+                f"no element can be told from the name {name!r} of this centre",
+                measured=name,
+                remedy="name the centre by its element, such as C, C1 or name_C",
+            )
+            self.starts[start] = BlockDraft(name, None, self.line_of(key), "")
+            self.build.blocks.append(self.starts[start])
+            return self.starts[start]
+        # Each centre by itself: which of them make a set is found out at the end.
+        self.starts[start] = self.build.open_block(
+            symbol, self.line_of(key), section=str(start), label=self.label
+        )
+        return self.starts[start]
+
+    def objects(self, members: Members, name: str, block: BlockDraft) -> list[Value]:
+        """The objects of a list; a list that is not there is an empty one."""
+        value = members.get(name)
+        if value is None:
+            return []
+        items, whole = [value], False
+        if kind_of(value) in LISTS:
+            items, whole = self.json.items(value)
+        wrong = [item for item in items if kind_of(item) not in _OBJECTS or item is value]
+        if wrong and not self.json.is_damaged(value):
+            self.json.fault(
+                wrong[0],
+                f"`{name}` is a list of objects",
+                element=block.symbol,
+                expected="[{",
+                remedy="restore the list from the source",
+            )
+        block.complete &= whole and not wrong
+        return [item for item in items if kind_of(item) in _OBJECTS]
+
+    def shell(self, block: BlockDraft, value: Value, sizes: list[_Size]) -> None:
+        start, end = extent_of(value)
+        table = None
+        if isinstance(value, Token):
+            table = table_of(self.json.leaves[start])
+        if table is None or table.kind not in SHELL_KINDS:
+            table = self.json.table(value, block)
+        if table is None:
+            block.complete = False
+            return
+        sizes.append(_Size(table.angular, _function_type(table.kind), table.coefficients.shape[1]))
+        line, source = self.line_of(value) + 1, self.build.source
+        if table.angular == (0, 1) or len(table.angular) == 1:
+            cells = cells_of(source, start, end, len(table.exponents), 0)
+            shell = Shell(table.angular, table.exponents, table.coefficients, line, cells)
+            block.ready.append(shell)
+            return
+        # The model shares exponents between s and p only: one shell for each l.
+        for at, l in enumerate(table.angular):
+            cells = cells_of(source, start, end, len(table.exponents), at)
+            column = table.coefficients[:, at : at + 1]
+            block.ready.append(Shell((l,), table.exponents, column, line, cells))
+
+    def functions(self, block: BlockDraft, sizes: list[_Size]) -> FunctionType | None:
+        """Spherical or Cartesian; s and p functions, which are both, decide if alone."""
+        above = {size.kind for size in sizes if max(size.angular) > 1}
+        kinds = above or {size.kind for size in sizes}
+        if len(kinds) > 1 and above:
+            self.build.fault_line(
+                "form.syntax",
+                block.line,
+                "some shells of this centre are spherical, others Cartesian",
+                severity="note",
+                element=block.symbol,
+                remedy="nothing, if this is meant: few programs can use such a set",
+            )
+        return kinds.pop() if len(kinds) == 1 else None
+
+    # ---- potentials
+
+    def potential(self, block: BlockDraft, members: Members) -> None:
+        parts = self.objects(members, "ecp_potentials", block)
+        value = members.get("ecp_electrons")
+        electrons = integer(str(value)) if isinstance(value, Token) else None
+        if value is not None and electrons is None:
+            self.build.fault(
+                "form.number",
+                span_of(value),
+                "`ecp_electrons` is a whole number",
+                element=block.symbol,
+                measured=str(value),
+                expected=28,
+                remedy="write the number of electrons replaced",
+            )
+        elif value is None and parts:
+            self.json.fault(
+                parts[0],
+                "`ecp_electrons` is missing beside `ecp_potentials`",
+                element=block.symbol,
+                expected="ecp_electrons",
+                remedy="write the number of electrons replaced",
+            )
+        found = [(self.line_of(part) + 1, self.terms(block, part)) for part in parts]
+        if parts or electrons:
+            channels = _channels([(line, part) for line, part in found if part is not None])
+            line = self.line_of(parts[0] if value is None else value) + 1
+            block.potential = Potential(electrons or 0, tuple(channels), line)
+
+    def terms(self, block: BlockDraft, value: Value) -> Terms | None:
+        found = None
+        if isinstance(value, Token):
+            found = terms_of(self.json.leaves[span_of(value)[0]])
+        if found is None or found.kind not in POTENTIAL_KINDS:
+            found = self.json.terms(value, block)
+        block.complete &= found is not None
+        return found
+
+    # ---- what the basis says of itself
+
+    def check_map(self, members: Members) -> None:
+        """`atom_map` names centres that are there; `nbf` counts the functions of its atoms."""
+        value = members.get("atom_map")
+        if value is None or kind_of(value) not in LISTS:
+            message = "`atom_map`, a list of the atoms' centres, is missing"
+            self.json.fault(
+                members.opener if value is None else value,
+                message,
+                severity="warning",
+                expected="atom_map",
+                remedy="list the centre of each atom",
+            )
+            return
+        items = self.json.items(value)[0]
+        for item in items:
+            name = string_of(item)
+            if name not in self.sizes:
+                self.build.fault(
+                    "form.element",
+                    span_of(item),
+                    f"`center_data` holds no centre {name or str(item)!r}",
+                    measured=name,
+                    remedy="mend the name, or add the centre",
+                )
+                return
+        self.check_size(members.get("nbf"), [self.sizes[string_of(item) or ""] for item in items])
+
+    def check_size(self, value: Value | None, atoms: list[list[_Size]]) -> None:
+        sizes = [size for atom in atoms for size in atom]
+        whole = all(block.complete for block in self.starts.values())
+        announced = integer(str(value)) if isinstance(value, Token) else None
+        if value is None or announced is None or not whole or not all(s.kind for s in sizes):
+            return
+        found = sum(size.functions * size.columns // len(size.angular) for size in sizes)
+        # Some programs count a general contraction as one function.
+        if announced not in (found, sum(size.functions for size in sizes)):
+            self.build.fault(
+                "form.count",
+                span_of(value),
+                f"`nbf` announces {announced} functions; the centres of `atom_map` have {found}",
+                measured=found,
+                expected=announced,
+                remedy="a shell or an atom was lost or added, or the number is wrong",
+            )
+
+    # ---- what damage leaves behind
+
+    def strays(self, has_basis: bool) -> None:
+        """Centres that stand outside `center_data`, because it or a bracket was lost."""
+        for key, node in self.json.holders(self.tree, "electron_shells"):
+            if key is None or span_of(key)[0] in self.starts:
+                continue
+            if not has_basis and not self.json.damage:
+                message = "this centre does not stand in `center_data`"
+                remedy = "restore the name that was lost above it"
+                self.json.fault(key, message, expected='"center_data": {', remedy=remedy)
+                has_basis = True
+            self.centre(key, node)
+
+    def mark_damage(self) -> None:
+        """Where brackets do not fit, the centre before them may have lost shells."""
+        for offset in self.json.damage:
+            before = [start for start in self.starts if start <= offset]
+            if before:
+                self.starts[max(before)].complete = False
+
+    @cached_property
+    def elements(self) -> dict[str, str]:
+        """Elements of centres, where a molecule stands beside its basis."""
+        lists: dict[str, list[str]] = {}
+        for name in ("symbols", "atom_map"):
+            for _, node in self.json.holders(self.tree, name):
+                found = next(value for key, value in pairs_in(node) if name_of(key) == name)
+                if found is not None:
+                    text = self.json.text[slice(*extent_of(found))]
+                    lists.setdefault(name, _QUOTED.findall(text))
+        symbols, centres = lists.get("symbols", []), lists.get("atom_map", [])
+        if len(symbols) != len(centres):
+            return {}
+        pairs = zip(centres, symbols, strict=True)
+        return {centre: symbol for centre, symbol in pairs if number_of(symbol)}
+
+    def line_of(self, value: Value) -> int:
+        """0-based line of the first character."""
+        return self.build.source.place(span_of(value)[0]).line - 1
+
+
+def _symbol_in(name: str) -> str | None:
+    """The element's symbol in a centre's name: C, C1, bs_c, C-1, or None."""
+    parts = re.split(r"[^A-Za-z0-9]+", name)
+    for part in (name, parts[-1], parts[0]):
+        match = _NAME.fullmatch(part)
+        if match and number_of(match[1]):
+            return match[1]
+    return None
+
+
+def _function_type(kind: str) -> FunctionType | None:
+    if kind.endswith("spherical"):
+        return "spherical"
+    return "cartesian" if kind.endswith("cartesian") else None
+
+
+def _channels(parts: list[tuple[int, Terms]]) -> Iterator[Channel]:
+    """Channels of a potential; the local one is that of the highest l."""
+    scalar = [part.l for _, part in parts if part.kind.startswith("scalar")]
+    for line, part in parts:
+        spin_orbit = part.kind.startswith("spinorbit")
+        for column in part.coefficients.T:
+            yield Channel(
+                part.l,
+                not spin_orbit and part.l == max(scalar),
+                part.powers,
+                part.exponents,
+                column,
+                line,
+                kind="spin-orbit" if spin_orbit else "scalar",
+            )
+
+
+LAYOUT = Layout(
+    name="schema",
+    summary="the open JSON schema: `center_data`, with `electron_shells` for each centre",
+    picture=PICTURE,
+    comment="",
+    recognise=recognise,
+    read=read,
+    write=write,
+    any_line=True,
+)

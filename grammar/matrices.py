@@ -1,0 +1,277 @@
+"""Lists of counts, and the numbers that they announce, cut into exponents and matrices.
+
+Layouts that announce all shells of an element first give their numbers afterwards as one stream:
+exponents, then a row of coefficients for each exponent, shell by shell.  The counts say where each
+piece ends; lines and blank lines say where a number was lost or added.
+"""
+
+import re
+from bisect import bisect_right
+from itertools import accumulate, pairwise
+from typing import NamedTuple
+
+from overlapse.grammar.building import BlockDraft, Build, Run, integer
+from overlapse.grammar.model import LETTERS, Grid, letter_of
+
+WHOLE = re.compile(r"[0-9]{1,15}(?:[ \t]+[0-9]{1,15})*")
+
+_REMEDY = "a number was lost or added, or the lists are wrong: compare with the source"
+
+
+class Entry(NamedTuple):
+    """What is announced for one shell, and which numbers of the lists say so (0-based)."""
+
+    l: int
+    primitives: int
+    contractions: int
+    at_primitives: int
+    at_contractions: int
+
+    @property
+    def numbers(self) -> int:
+        return self.primitives * (1 + self.contractions)
+
+
+class Lists:
+    """The lists of one element: a number of shells, then l, contractions and primitives of each.
+
+    ``run`` holds their lines.
+    """
+
+    def __init__(self, build: Build, block: BlockDraft, run: Run) -> None:
+        self.build = build
+        self.block = block
+        self.run = run
+
+    def entries(self) -> list[Entry] | None:
+        """What is announced, or None, with faults, where that is not clear."""
+        whole = self._whole_numbers()
+        found = None if whole is None else self._three(whole)
+        if found is None:
+            self.block.complete = False
+            return None
+        three, start = found
+        count = len(three[0])
+        made = [
+            Entry(*announced, start + 2 * count + at, start + count + at)
+            for at, announced in enumerate(zip(three[0], three[2], three[1], strict=True))
+        ]
+        sound = [self._is_sensible(entry, start + at) for at, entry in enumerate(made)]
+        return [entry for entry in made if entry.primitives] if all(sound) else None
+
+    def _whole_numbers(self) -> list[list[int]] | None:
+        table: list[list[int]] = []
+        for row, index in zip(self.run.rows, self.run.lines, strict=True):
+            if WHOLE.fullmatch(" ".join(row)):
+                table.append(list(map(int, row)))
+                continue
+            table.append([])
+            for ordinal, word in enumerate(row):
+                value: float | None = integer(word)
+                if value is None:
+                    value = self.build.number(word, index, ordinal, self.block.symbol, None)
+                if value is None or value < 0 or value != int(value):
+                    return None
+                table[-1].append(int(value))
+        return table
+
+    def _three(self, table: list[list[int]]) -> tuple[list[list[int]], int] | None:
+        """The three lists, and which number the first one begins with; or None, with faults."""
+        numbers = [number for row in table for number in row]
+        count, found = numbers[0], len(numbers) - 1
+        if count and found == 3 * count:
+            return [numbers[1 + k * count : 1 + (k + 1) * count] for k in range(3)], 1
+        lengths = {len(row) for row in table[-3:]}
+        if len(table) == 3 and len(lengths) == 1:
+            message = "the number of matrices is missing above this line"
+            self.say(0, message, expected=len(table[0]))
+            return table, 0
+        if len(table) != 4 or len(table[0]) > 1:
+            message = (
+                f"{count} matrices are announced, which want three lists of {count} numbers; "
+                f"{found} numbers follow"
+            )
+            self.say(0, message, found, 3 * count)
+            return None
+        if len(lengths) == 1:
+            length = max(lengths)
+            message = f"{count} matrices are announced, the lists have {length} numbers each"
+            self.say(0, message, length, count)
+            return table[1:], 1
+        at = 1
+        for row, what in zip(table[1:], ("l", "contractions", "primitives"), strict=True):
+            if len(row) != count:
+                message = f"the list of {what} has {len(row)} of {count} numbers"
+                self.say(at, message, len(row), count)
+            at += len(row)
+        return None
+
+    def _is_sensible(self, entry: Entry, at: int) -> bool:
+        l, primitives, contractions = entry[:3]
+        if l >= len(LETTERS):
+            self.say(
+                at, f"l = {l} is no angular momentum of a basis function", l, rule="form.letter"
+            )
+        elif bool(primitives) != bool(contractions):
+            message = f"{contractions} contractions of {primitives} primitives are announced"
+            self.say(entry.at_contractions, message, contractions)
+        else:
+            return True
+        self.block.complete = False
+        return False
+
+    def say(
+        self,
+        ordinal: int,
+        message: str,
+        found: int | None = None,
+        expected: int | None = None,
+        rule: str = "form.count",
+    ) -> None:
+        """Note a fault in one number of the lists."""
+        self.block.complete = False
+        row = 0
+        while ordinal >= len(self.run.rows[row]):
+            ordinal -= len(self.run.rows[row])
+            row += 1
+        self.build.fault_word(
+            rule,
+            self.run.lines[row],
+            ordinal,
+            message,
+            element=self.block.symbol,
+            measured=found,
+            expected=expected,
+            remedy=_REMEDY,
+        )
+
+
+class Cutting:
+    """The numbers of one element, in the rows of ``run``, and the shells announced for it."""
+
+    def __init__(self, lists: Lists, entries: list[Entry], run: Run) -> None:
+        self.build = lists.build
+        self.block = lists.block
+        self.lists = lists
+        self.entries = entries
+        self.run = run
+        # How many numbers stand above each line, and in all.
+        self.above = list(accumulate(map(len, run.rows), initial=0))
+
+    def cut(self) -> None:
+        """Hand the shells to the build, or say what is wrong with them."""
+        bounds = list(accumulate(self._sizes(), initial=0))
+        fits = bounds[-1] == self.above[-1]
+        paragraphs = [] if fits and set(self.above).issuperset(bounds) else self._paragraphs()
+        if not self.run.rows:
+            self._say_line(self.lists.run.lines[-1], "no numbers follow these lists", 0, bounds[-1])
+        elif len(paragraphs) == 2 * len(self.entries):
+            for entry, top, matrix in zip(
+                self.entries, paragraphs[::2], paragraphs[1::2], strict=True
+            ):
+                self._pair(entry, top, matrix)
+        elif fits:
+            for entry, (first, second) in zip(
+                self.entries, zip(bounds[::2], bounds[1::2], strict=False), strict=True
+            ):
+                self._add(entry, first, second)
+        else:
+            self._by_lines(bounds)
+        if not any(shell.run is self.run for shell in self.block.shells):
+            self.build.check_words(self.block, "", self.run)
+
+    def _sizes(self) -> list[int]:
+        return [
+            size
+            for entry in self.entries
+            for size in (entry.primitives, entry.primitives * entry.contractions)
+        ]
+
+    def _paragraphs(self) -> list[range]:
+        """Rows that follow one another without a blank line between them."""
+        lines = self.run.lines
+        starts = [at for at in range(len(lines)) if at == 0 or lines[at] > lines[at - 1] + 1]
+        return [range(first, last) for first, last in pairwise([*starts, len(lines)])]
+
+    def _add(self, entry: Entry, first: int, second: int, rows: int = 0, columns: int = 0) -> None:
+        """A shell whose exponents and coefficients begin at the given numbers of the stream."""
+        shape = rows or entry.primitives, columns or entry.contractions
+        line = self.run.lines[bisect_right(self.above, first) - 1]
+        grid = Grid(first, 1, second, shape[1], 1)
+        self.build.matrix(self.block, entry.l, line, self.run, shape, grid)
+
+    # ---- what does not fit
+
+    def _pair(self, entry: Entry, top: range, matrix: range) -> None:
+        """A shell whose exponents and matrix are paragraphs of their own."""
+        first, second = self.above[top.start], self.above[matrix.start]
+        exponents, coefficients = self.above[top.stop] - first, self.above[matrix.stop] - second
+        wanted, columns = entry.primitives, entry.contractions
+        letter, line = letter_of(entry.l), self.run.lines[matrix.start]
+        rows = Run(self.run.rows[matrix.start : matrix.stop],
+                   self.run.lines[matrix.start : matrix.stop])  # fmt: skip
+        widths = {len(row) for row in rows.rows}
+        if (exponents, coefficients) == (wanted, wanted * columns):
+            self._add(entry, first, second)
+        elif exponents != wanted and coefficients == exponents * columns:
+            message = f"{wanted} primitives of {letter} are announced, {exponents} follow"
+            self.lists.say(entry.at_primitives, message, exponents, wanted)
+            self._add(entry, first, second, rows=exponents)
+        elif exponents != wanted:
+            message = f"{exponents} exponents of {letter} where {wanted} are announced"
+            self._say_line(self.run.lines[top.start], message, exponents, wanted)
+        elif len(matrix) != wanted:
+            message = (
+                f"{coefficients} coefficients of {letter} in {len(matrix)} rows where {wanted} "
+                f"rows of {columns} are announced"
+            )
+            self._say_line(line, message, coefficients, wanted * columns)
+        elif len(widths) == 1 and wanted > 1:
+            found = max(widths)
+            message = f"{columns} contractions of {letter} are announced, rows have {found} numbers"
+            self.lists.say(entry.at_contractions, message, found, columns)
+            self._add(entry, first, second, columns=found)
+        else:
+            self.block.complete = False
+            name = self.block.next_name(letter)
+            self.build.check_rows(
+                self.block, name, rows, columns, f"the matrix of {letter} has {columns}"
+            )
+
+    def _by_lines(self, bounds: list[int]) -> None:
+        """Shells up to the first one that does not end with a line; then what is wrong."""
+        ends = set(self.above)
+        for entry, first, second, last in zip(
+            self.entries, bounds[::2], bounds[1::2], bounds[2::2], strict=False
+        ):
+            for what, bound in ("exponents", second), ("coefficients", last):
+                if bound not in ends:
+                    self._say_break(f"{what} of {letter_of(entry.l)}", bound, bounds[-1])
+                    return
+            self._add(entry, first, second)
+        left = self.above[-1] - bounds[-1]
+        line = self.run.lines[bisect_right(self.above, bounds[-1]) - 1]
+        message = f"{left} number{'s' * (left > 1)} too many from here on: all matrices are full"
+        self._say_line(line, message, self.above[-1], bounds[-1])
+
+    def _say_break(self, what: str, bound: int, wanted: int) -> None:
+        total = self.above[-1]
+        if bound > total:
+            line = self.run.lines[-1]
+            message = f"the numbers end among the {what}: {wanted} are announced, {total} follow"
+        else:
+            line = self.run.lines[bisect_right(self.above, bound) - 1]
+            message = f"this line begins among the {what} and runs on behind them"
+        self._say_line(line, message, total, wanted)
+
+    def _say_line(self, index: int, message: str, found: int, wanted: int) -> None:
+        self.block.complete = False
+        self.build.fault_line(
+            "form.count",
+            index,
+            message,
+            element=self.block.symbol,
+            measured=found,
+            expected=wanted,
+            remedy=_REMEDY,
+        )

@@ -1,0 +1,323 @@
+"""Counted tables: what the layouts share that give all functions of one l as one matrix.
+
+A heading `nprim ncontr` is followed by nprim exponents and nprim x ncontr coefficients, either as
+rows (each exponent with its coefficients behind it) or as a list (all exponents, then the matrix
+row by row).  A row may run over several lines.  Uncontracted tables may hold the exponents alone.
+
+Headings are bare whole numbers, but so may rows be (`1 0`): `Tables.joined` settles which is which
+by the counts, before the tokens go to the grammar.
+"""
+
+import re
+from dataclasses import dataclass, field
+from itertools import accumulate, pairwise
+from typing import Literal
+
+from lark import Token
+
+from overlapse.grammar.building import BlockDraft, Build, Run, index_of
+from overlapse.grammar.headings import DIGITS, Heading, heading_of, sensible, spanning
+from overlapse.grammar.miscounts import Miscount
+from overlapse.grammar.model import Grid, letter_of
+from overlapse.grammar.numbers import FORTRAN, read_number
+
+Way = Literal["rows", "list"]
+
+# A number.  Where a sign and a decimal point follow, the next one begins: columns filled up.
+ABUTTING = r"[^\s](?:[^\s+\-]|[+\-](?![0-9]*\.)|(?<=[EeDd])[+\-])*"
+_ABUTTING = re.compile(ABUTTING)
+# From this many on, numbers without a blank between them are a habit of the file and no slip.
+_HABIT = 3
+
+_TYPE = re.compile(r"\W*([SPDFGHIKLspdfghikl])[- ]?[Tt][Yy][Pp][Ee]\b")
+_TABLE_TOKENS = ("HEAD", "COUNT", "ROWS")
+# Beyond this a matrix of ones and zeros would take more room than its table does.
+_MANY = 200
+# How far to look for the end of a table whose counts do not come out with its first rows.
+_FAR = 400
+
+
+@dataclass
+class Tables:
+    """The tables of one text: tells headings from rows, checks counts, hands shells to the build.
+
+    ``way`` is how the tables of the layout are laid out, None where their numbers have to tell;
+    ``last`` then serves for tables that leave it open.  ``alone``: whether exponents may stand
+    alone under a heading that announces as many contractions.
+    """
+
+    build: Build
+    way: Way | None
+    alone: bool = False
+    last: Way = "rows"
+    abutting: list[tuple[int, int, str]] = field(default_factory=list)
+    stated: dict[int, int] = field(default_factory=dict)
+    _runs: dict[tuple[int, int], tuple[Run, int]] = field(default_factory=dict)
+
+    def __post_init__(self) -> None:
+        # The l that comments such as "p-type functions" speak of, by their 0-based line.
+        for remark in self.build.remarks:
+            if match := _TYPE.match(remark.text):
+                self.stated[remark.line - 1] = "spdfghikl".index(match[1].lower())
+
+    # ---- which numeric lines are headings
+
+    def run(self, token: Token | None) -> Run:
+        """As `Build.rows`, split once only."""
+        return self._counted(token)[0]
+
+    def size(self, token: Token | None) -> int:
+        """How many numbers stand in the lines of a token."""
+        return self._counted(token)[1]
+
+    def _counted(self, token: Token | None) -> tuple[Run, int]:
+        if token is None:
+            return Run([], []), 0
+        key = (token.line or 0, token.end_line or 0)
+        if key not in self._runs:
+            run = self.build.rows(token)
+            self._runs[key] = run, sum(map(len, run.rows))
+        return self._runs[key]
+
+    def joined(self, tokens: list[Token]) -> list[Token]:
+        """The tokens, with whole-number lines inside tables made part of their rows.
+
+        A TEXT that interrupts the rows of a table becomes an INTRUDER and takes the rows with it.
+        Where a comment says that rows belong to the next l, a LOST token stands for the heading
+        they have lost.
+        """
+        tokens = sensible(tokens)
+        done: list[Token] = []
+        at = 0
+        while at < len(tokens):
+            done.append(tokens[at])
+            at += 1
+            if done[-1].type == "HEAD":
+                end = self._table_end(tokens, at - 1)
+                done += self._table(tokens[at - 1], tokens[at:end])
+                at = end
+        return done
+
+    def _table_end(self, tokens: list[Token], at: int) -> int:
+        """Index past the last token of the table whose heading is ``tokens[at]``."""
+        wanted, end = heading_of(tokens[at]).numbers, at + 1
+        first = end + (end < len(tokens) and tokens[end].type == "ROWS")
+        found = others = 0
+        while end < min(len(tokens), at + _FAR) and found < wanted:
+            token = tokens[end]
+            following = tokens[end + 1] if end + 1 < len(tokens) else None
+            rows_follow = following is not None and following.type == "ROWS"
+            if token.type == "TEXT" and found and rows_follow:
+                others += len(token.split())  # perhaps a row that nobody would take for one
+            elif token.type not in _TABLE_TOKENS or self._heads(token, following):
+                break
+            else:
+                found += self.size(token)
+            end += 1
+        complete = wanted in (found, found + others)
+        goes_on = end < len(tokens) and tokens[end].type == "ROWS"
+        return end if complete and not goes_on else first
+
+    def _heads(self, token: Token, following: Token | None) -> bool:
+        """Whether just as many numbers follow as a token announces."""
+        if following is None or (token.type, following.type) != ("HEAD", "ROWS"):
+            return False
+        return heading_of(token).numbers == self.size(following)
+
+    def _table(self, heading: Token, pieces: list[Token]) -> list[Token]:
+        """The rows of a table as one token, or what stands for them where something is wrong."""
+        if intruders := [piece for piece in pieces if piece.type == "TEXT"]:
+            return [
+                Token("INTRUDER", str(text), line=text.line, end_line=text.end_line)
+                for text in intruders
+            ]
+        if not pieces:
+            return []
+        rows = spanning(pieces[0], pieces[-1])
+        if self.size(rows) > heading_of(heading).numbers:
+            return self._cut(rows)
+        return [rows]
+
+    def _cut(self, rows: Token) -> list[Token]:
+        """Rows that are too many, cut where a comment among them speaks of the next l."""
+        first, end = index_of(rows), rows.end_line or 0
+        cut = next((k for k in range(first + 1, end) if k in self.stated), None)
+        if cut is None:
+            return [rows]
+        start = next(k for k in range(cut, end) if self.build.bodies[k])
+        return [
+            Token("ROWS", "", line=first, end_line=cut),
+            Token("LOST", "", line=start, end_line=start + 1),
+            Token("ROWS", "", line=start, end_line=end),
+        ]
+
+    def cut_after(self, rows: Token, numbers: int) -> Token:
+        """The first lines of a run, up to so many numbers."""
+        run, seen = self.run(rows), 0
+        for row, index in zip(run.rows, run.lines, strict=True):
+            if seen >= numbers:
+                return Token("ROWS", "", line=rows.line, end_line=index)
+            seen += len(row)
+        return rows
+
+    def stated_above(self, index: int) -> int | None:
+        """The l that the comments right above a line speak of, if any."""
+        for above in range(index - 1, -1, -1):
+            if above in self.stated:
+                return self.stated[above]
+            if self.build.bodies[above]:
+                return None
+        return None
+
+    # ---- one table
+
+    def add(self, block: BlockDraft, l: int, token: Token, rows: Token | None) -> None:
+        """Add the table headed by ``token`` to a block, or say what is wrong with it."""
+        heading = heading_of(token)
+        self._check_spelling(block, token)
+        run, size = self._counted(rows)
+        if not size:
+            if heading.primitives:
+                self._say_empty(block, l, token, heading)
+            return
+        if size < heading.numbers:
+            run = self._parted(run)
+            size = sum(map(len, run.rows))
+        count, columns = heading.primitives, heading.contractions
+        if self._is_uncontracted(heading, run, size):
+            self._add_uncontracted(block, l, index_of(token), run, count, size // count)
+        elif size == heading.numbers and columns:
+            by_rows = (self.way or self._way(heading, run)) == "rows"
+            width = columns + 1
+            grid = Grid(0, width, 1, width, 1) if by_rows else Grid(0, 1, count, columns, 1)
+            self.build.matrix(block, l, index_of(token), run, (count, columns), grid)
+        else:
+            self._miscounted(block, l, token, heading, run)
+
+    def _add_uncontracted(
+        self, block: BlockDraft, l: int, heading: int, run: Run, count: int, step: int
+    ) -> None:
+        """Exponents that each are a function; ``step`` numbers are written for each."""
+        size = count * step  # no coefficient has a place among them
+        if count <= _MANY:
+            grid = Grid(0, step, size, 0, 0)
+            self.build.matrix(block, l, heading, run, (count, count), grid, unit=True)
+            return
+        for at in range(0, size, step):
+            self.build.matrix(block, l, heading, run, (1, 1), Grid(at, 1, size, 0, 0), unit=True)
+
+    def _is_uncontracted(self, heading: Heading, run: Run, size: int) -> bool:
+        count = heading.primitives
+        if count and heading.contractions == 0:
+            # Some files write the 1.0 behind each exponent all the same.
+            return size == count or (
+                size == 2 * count
+                and all(len(row) == 2 and read_number(row[1]).value == 1.0 for row in run.rows)
+            )
+        return self.alone and size == count == heading.contractions
+
+    def _way(self, heading: Heading, run: Run) -> Way:
+        """Whether a table is rows or a list: as a rule only one has sensible exponents.
+
+        Three numbers in the heading speak for rows.
+        """
+        if heading.flagged or heading.primitives == 1:
+            return "rows"
+        count, columns = heading.primitives, heading.contractions
+        words = [word for row in run.rows for word in row]
+        ends = set(accumulate(map(len, run.rows)))
+        width = columns + 1
+        rows = *_likeness(words[::width]), ends.issuperset(range(width, len(words), width))
+        listed = *_likeness(words[:count]), count in ends
+        if rows != listed:
+            self.last = "rows" if rows > listed else "list"
+        return self.last
+
+    def _parted(self, run: Run) -> Run:
+        """The run with abutting numbers parted at the sign of the second."""
+        rows = []
+        for row, index in zip(run.rows, run.lines, strict=True):
+            parted: list[str] = []
+            for word in row:
+                pieces = _ABUTTING.findall(word)
+                if len(pieces) > 1:
+                    self.abutting.append((index, len(parted), word))
+                parted += pieces
+            rows.append(parted)
+        return Run(rows, run.lines)
+
+    def close(self) -> None:
+        """Say what concerns the whole text."""
+        habit = len(self.abutting) >= _HABIT
+        for index, ordinal, word in self.abutting[: 1 if habit else None]:
+            pieces = _ABUTTING.findall(word)
+            self.build.fault_word(
+                "form.number",
+                index,
+                ordinal,
+                f"{word!r} is numbers run together, read as {' and '.join(pieces)}"
+                + (f"; so are {len(self.abutting) - 1} more words in this text" if habit else ""),
+                severity="note" if habit else "warning",
+                measured=word,
+                expected=" ".join(pieces),
+                remedy="put a blank between the numbers",
+            )
+
+    # ---- what is wrong with a table
+
+    def _check_spelling(self, block: BlockDraft, token: Token) -> None:
+        if token.translate(DIGITS) == token:
+            return
+        for ordinal, word in enumerate(token.split()[:3]):
+            likely = word.translate(DIGITS)
+            if likely != word and likely.isdigit():
+                self.build.fault_word(
+                    "form.number",
+                    index_of(token),
+                    ordinal,
+                    f"{word!r} in this heading has a letter for a digit",
+                    element=block.symbol,
+                    measured=word,
+                    expected=int(likely),
+                    remedy=f"write {likely}",
+                )
+
+    def _say_empty(self, block: BlockDraft, l: int, token: Token, heading: Heading) -> None:
+        block.complete = False
+        self.build.fault_line(
+            "form.count",
+            index_of(token),
+            f"no numbers follow this heading, which announces {heading.primitives} primitives",
+            element=block.symbol,
+            shell=f"{letter_of(l)}-1",
+            measured=0,
+            expected=heading.primitives,
+            remedy="restore the table, or write `0 0` where there is no function of this l",
+        )
+
+    def _miscounted(
+        self, block: BlockDraft, l: int, token: Token, heading: Heading, run: Run
+    ) -> None:
+        """Say what a table has too many or too few of; keep it where its rows are clear."""
+        table = Miscount(self.build, block, l, index_of(token), heading[:2], run)
+        listed = self.way == "list" or (not heading.flagged and self.last == "list")
+        if listed and not table.is_misspelt():
+            table.say_list()
+        elif not table.is_misspelt() and (found := table.say_rows()) is not None:
+            shape, grid = found
+            self.build.matrix(block, l, index_of(token), run, shape, grid)
+            return
+        block.complete = False
+        self.build.check_words(block, table.name, run)
+
+
+def _likeness(words: list[str]) -> tuple[bool, bool, bool]:
+    """How much words are like a list of exponents: positive, falling, and never twice the same."""
+    try:
+        values = [float(word.translate(FORTRAN)) for word in words]
+    except ValueError:
+        return False, False, False
+    if not all(value > 0.0 for value in values):
+        return False, False, False
+    falling = all(a >= b for a, b in pairwise(values))
+    return True, falling, falling and len(set(values)) == len(values)
