@@ -62,7 +62,7 @@ def _terms(terms: tuple[tuple[int, int], ...]) -> str:
 @cache
 def _parser() -> Lark:
     grammar = files("overlapse.grammar").joinpath("designation.lark").read_text("utf-8")
-    return Lark(grammar, parser="earley", ambiguity="resolve", maybe_placeholders=False)
+    return Lark(grammar, parser="lalr", maybe_placeholders=False)
 
 
 @cache
