@@ -82,7 +82,7 @@ class Run(NamedTuple):
     """
 
     rows: list[list[str]]
-    lines: list[int]
+    lines: Sequence[int]
     before: Sequence[int] = ()
 
     def words(self) -> Iterator[tuple[str, int, int]]:
@@ -168,6 +168,8 @@ class Build:
         self.bodies = self._without_comments() if windows is None else self._within(windows)
         self.leading = ""  # signs that make a line a comment where they lead it
         self._words: list[str] = []
+        self._letters: dict[str, tuple[int, ...]] = {}
+        self._grids: dict[int, Grid] = {}
         self._has_holes = False  # whether a number of a shell cannot be read
         self._j_is_used = False
 
@@ -198,7 +200,7 @@ class Build:
     def tokens(
         self,
         classify: Callable[[str, int], str],
-        heading: Callable[[str], str | None] = lambda body: None,
+        heading: Callable[[str], str | None] | None = None,
     ) -> Iterator[Token]:
         """Few, large tokens: one for each heading, one ROWS for each run of numeric rows.
 
@@ -212,12 +214,15 @@ class Build:
         for index, body in enumerate(self.bodies):
             if not body:
                 continue
-            if body[0] in _ROW_START and (kind := heading(body)) is None:
-                if first is None:
-                    first = index
-                last = index
-                continue
-            if body[0] not in _ROW_START:
+            kind: str | None = None
+            if body[0] in _ROW_START:
+                kind = heading(body) if heading is not None else None
+                if kind is None:
+                    if first is None:
+                        first = index
+                    last = index
+                    continue
+            else:
                 kind = classify(body, index)
                 if kind == "TEXT" and self.is_damaged_row(body, first is not None):
                     first = index if first is None else first
@@ -226,7 +231,7 @@ class Build:
             if first is not None:
                 yield Token("ROWS", "", line=first, end_line=last + 1)
                 first = None
-            yield Token(str(kind), body, line=index, end_line=index + 1)
+            yield Token(kind, body, line=index, end_line=index + 1)
         if first is not None:
             yield Token("ROWS", "", line=first, end_line=last + 1)
 
@@ -260,12 +265,11 @@ class Build:
         """The words of a run of rows, line by line; blank lines and comments are left out."""
         if token is None:
             return Run([], [])
-        first, last = index_of(token), token.end_line or 0
-        rows, lines = [], []
-        for index in range(first, last):
-            if words := self.bodies[index].split():
-                rows.append(words)
-                lines.append(index)
+        lines: Sequence[int] = range(token.line or 0, token.end_line or 0)
+        rows = [body.split() for body in self.bodies[lines[0] : lines[-1] + 1]]
+        if [] in rows:
+            lines = [index for index, row in zip(lines, rows, strict=True) if row]
+            rows = [row for row in rows if row]
         return Run(rows, lines)
 
     # ---- faults
@@ -323,6 +327,14 @@ class Build:
 
         "sp" gives (0, 1); a shell "l" stays (8,) here and becomes s+p where its rows say so.
         """
+        if (known := self._letters.get(letters)) is not None:
+            return known
+        angular = self._angular_of(letters, index, word)
+        if angular is not None:
+            self._letters[letters] = angular
+        return angular
+
+    def _angular_of(self, letters: str, index: int, word: int) -> tuple[int, ...] | None:
         low = letters.lower()
         if low == "sp":
             return (0, 1)
@@ -382,6 +394,12 @@ class Build:
         rows differ.
         """
         angular = self.angular_of(letters, heading, letters_word)
+        if angular is not None and self._is_sound(angular, run, announced, general, columns):
+            width = len(run.rows[0])
+            name = block.next_name("sp" if len(angular) > 1 else _WITHOUT_J[angular[0]])
+            block.end = run.lines[-1]
+            self._keep_rows(block, name, angular, heading, run, width, scale)
+            return
         width = self._width(run)
         if columns is not None and any(len(row) == columns + 1 for row in run.rows):
             width = columns + 1
@@ -398,10 +416,43 @@ class Build:
             block.complete = False
             self.check_words(block, name, run)
             return
-        shape, grid = (len(run.rows), width - 1), Grid(0, width, 1, width, 1)
-        self.keep(
-            block, ShellDraft(name, angular, heading, run, len(self._words), shape, grid, scale)
+        self._keep_rows(block, name, angular, heading, run, width, scale)
+
+    @staticmethod
+    def _is_sound(
+        angular: tuple[int, ...],
+        run: Run,
+        announced: str | None,
+        general: bool,
+        columns: int | None,
+    ) -> bool:
+        """Whether a shell is just what its heading announces, so that nothing need be looked at."""
+        rows = run.rows
+        if not rows or columns is not None or angular == (8,):
+            return False
+        width = len(rows[0])
+        fits = width > 1 and len(angular) == 1 if general else width == 1 + len(angular)
+        return (
+            (fits or width == 1 + len(angular))
+            and all([len(row) == width for row in rows])
+            and (announced is None or announced == str(len(rows)))
         )
+
+    def _keep_rows(
+        self,
+        block: BlockDraft,
+        name: str,
+        angular: tuple[int, ...],
+        heading: int,
+        run: Run,
+        width: int,
+        scale: float,
+    ) -> None:
+        grid = self._grids.get(width)
+        if grid is None:
+            grid = self._grids[width] = Grid(0, width, 1, width, 1)
+        shape = (len(run.rows), width - 1)
+        self.keep(block, ShellDraft(name, angular, heading, run, 0, shape, grid, scale))
 
     def matrix(
         self,
@@ -667,6 +718,7 @@ class Build:
     def _block(self, block: BlockDraft, values: Floats) -> Block:
         shells = list(block.ready)
         complete = block.complete
+        pattern, leading = self.word_pattern, self.leading
         for draft in block.shells:
             exponents, coefficients = self._table(draft, values)
             if self._has_holes and np.isnan(np.append(exponents, coefficients)).any():
@@ -674,7 +726,6 @@ class Build:
                 continue
             first, last = draft.run.lines[0], draft.run.lines[-1] + 1
             skip = draft.run.before[0] if draft.run.before else 0
-            pattern, leading = self.word_pattern, self.leading
             cells = Cells(
                 self.source, first, last, draft.grid, self.comment, pattern, skip, leading
             )
@@ -685,7 +736,10 @@ class Build:
                     complete = False
                     self._say_overflow(block, draft)
                     continue
-            shells.append(Shell(draft.angular, exponents, coefficients, draft.heading + 1, cells))
+            # Shapes are right by the way the tables were cut, and all numbers are finite.
+            shells.append(
+                Shell.checked(draft.angular, exponents, coefficients, draft.heading + 1, cells)
+            )
         if block.number is None:
             raise AssertionError("only blocks of known elements are made")
         return Block(
@@ -716,6 +770,9 @@ class Build:
     def _table(draft: ShellDraft, values: Floats) -> tuple[Floats, Floats]:
         """Exponents (nprim,) and coefficients (nprim, ncontr) of a draft, views where possible."""
         (count, columns), grid, start = draft.shape, draft.grid, draft.start
+        if grid.e0 == 0 and grid.c0 == 1 and grid.es == columns + 1 and not draft.unit:
+            table = values[start : start + count * grid.es].reshape(count, grid.es)
+            return table[:, 0], table[:, 1:]
         plain = grid.cj == 1 and not draft.unit
         if plain and grid.e0 < grid.ci == grid.es >= grid.c0 + columns:
             table = values[start : start + count * grid.es].reshape(count, grid.es)

@@ -169,6 +169,29 @@ class Shell:
         if not self.angular or min(self.angular) < 0 or c.shape[1] % len(self.angular):
             raise ValueError(f"angular momenta {self.angular} do not fit {c.shape[1]} columns")
 
+    @classmethod
+    def checked(
+        cls,
+        angular: tuple[int, ...],
+        exponents: Floats,
+        coefficients: Floats,
+        line: int,
+        cells: Cells | None,
+    ) -> "Shell":
+        """A shell of parts that are known to be sound and read-only, made without checking again.
+
+        A file holds thousands of shells; their numbers are checked together before they are cut
+        into arrays.
+        """
+        shell = cls.__new__(cls)
+        put = object.__setattr__
+        put(shell, "angular", angular)
+        put(shell, "exponents", exponents)
+        put(shell, "coefficients", coefficients)
+        put(shell, "line", line)
+        put(shell, "cells", cells)
+        return shell
+
     @property
     def letters(self) -> str:
         """The shell's letter or letters: "s", "d", "sp"."""

@@ -229,7 +229,7 @@ class _Reader:
             assert isinstance(token, Token)
             if piece.data == "numbers":
                 more = self.build.rows(token)
-                run = Run(run.rows + more.rows, run.lines + more.lines) if found else more
+                run = Run(run.rows + more.rows, [*run.lines, *more.lines]) if found else more
                 found += sum(map(len, more.rows))
             elif piece.data == "remark" and at < last:
                 message = f"{str(token)!r} stands among the numbers of {block.symbol}"
