@@ -11,9 +11,7 @@ faults.
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from contextlib import suppress
 from dataclasses import dataclass, field
-from difflib import get_close_matches
 from functools import cache
-from importlib.resources import files
 from itertools import groupby
 from math import isfinite
 from typing import Any, Literal, NamedTuple
@@ -23,6 +21,7 @@ from lark import Lark, Token, Tree
 from lark.exceptions import UnexpectedToken
 from lark.lexer import Lexer
 
+from overlapse.grammar.compiled import grammar
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.model import (
     BasisSet,
@@ -56,6 +55,7 @@ _ROW_START = frozenset("0123456789+-.")
 # With a j shell present the letters run on without a gap; else j is left out, as in spectroscopy.
 _WITHOUT_J = "spdfghiklmnoqrtuv"
 _WITH_J = "spdfghijklmnoqrtuv"
+_ABOVE_I = frozenset("jJkK")
 
 
 class _OurTokens(Lexer):
@@ -71,8 +71,7 @@ class _OurTokens(Lexer):
 @cache
 def parser_of(name: str) -> Lark:
     """The LALR parser for ``layouts/<name>.lark``, compiled once per process."""
-    grammar = files("overlapse.grammar.layouts").joinpath(f"{name}.lark").read_text("utf-8")
-    return Lark(grammar, parser="lalr", lexer=_OurTokens, maybe_placeholders=False)
+    return grammar(f"layouts/{name}", lexer=_OurTokens)
 
 
 class Run(NamedTuple):
@@ -92,7 +91,7 @@ class Run(NamedTuple):
                 yield word, index, ordinal
 
 
-@dataclass
+@dataclass(slots=True)
 class ShellDraft:
     """A shell whose numbers still are words.
 
@@ -170,6 +169,7 @@ class Build:
         self._words: list[str] = []
         self._letters: dict[str, tuple[int, ...]] = {}
         self._grids: dict[int, Grid] = {}
+        self._runs_of_shells: dict[int, list[tuple[int, int, int]]] = {}
         self._has_holes = False  # whether a number of a shell cannot be read
         self._j_is_used = False
 
@@ -201,6 +201,8 @@ class Build:
         self,
         classify: Callable[[str, int], str],
         heading: Callable[[str], str | None] | None = None,
+        *,
+        joined: bool = False,
     ) -> Iterator[Token]:
         """Few, large tokens: one for each heading, one ROWS for each run of numeric rows.
 
@@ -208,7 +210,61 @@ class Build:
         "TEXT" means it knows none, and the line is then taken for a damaged row if its first word
         was most likely meant as a number.  ``heading(body)`` names the token of a line that begins
         with a number and yet is a heading, else None.  Token lines are 0-based.
+
+        ``joined``: headings of the kind "SHELL" and the rows right below them are passed on
+        unsplit as well, a whole run of such shells as one token SHELLS (see `shells_in`); a SHELL
+        is then a heading without rows, and ROWS are rows without a shell heading.
         """
+        lines = self._lines(classify, heading)
+        if not joined:
+            for kind, first, last in lines:
+                yield self._token(kind, first, last)
+            return
+        waiting: int | None = None  # a shell heading whose rows may follow
+        shells: list[tuple[int, int, int]] = []
+        for kind, first, last in lines:
+            if kind == "ROWS" and waiting is not None:
+                shells.append((waiting, first, last))
+                waiting = None
+                continue
+            if waiting is not None or kind != "SHELL":
+                if shells:
+                    yield self._joined(shells)
+                    shells = []
+                if waiting is not None:
+                    yield self._token("SHELL", waiting, waiting + 1)
+                    waiting = None
+            if kind == "SHELL":
+                waiting = first
+            else:
+                yield self._token(kind, first, last)
+        if shells:
+            yield self._joined(shells)
+        if waiting is not None:
+            yield self._token("SHELL", waiting, waiting + 1)
+
+    def _token(self, kind: str, first: int, last: int) -> Token:
+        text = "" if kind == "ROWS" else self.bodies[first]
+        return Token(kind, text, line=first, end_line=last)
+
+    def _joined(self, shells: list[tuple[int, int, int]]) -> Token:
+        first, last = shells[0][0], shells[-1][2]
+        self._runs_of_shells[first] = shells
+        return Token("SHELLS", "", line=first, end_line=last)
+
+    def shells_in(self, token: Token) -> list[tuple[int, int, int]]:
+        """The shells of a token SHELLS: heading line, first row line, and past the last (0-based).
+
+        Rows may have blank lines between them.
+        """
+        return self._runs_of_shells[index_of(token)]
+
+    def _lines(
+        self,
+        classify: Callable[[str, int], str],
+        heading: Callable[[str], str | None] | None,
+    ) -> Iterator[tuple[str, int, int]]:
+        """Kind, first line and past the last line of each heading and of each run of rows."""
         first: int | None = None
         last = 0
         for index, body in enumerate(self.bodies):
@@ -229,11 +285,11 @@ class Build:
                     last = index
                     continue
             if first is not None:
-                yield Token("ROWS", "", line=first, end_line=last + 1)
+                yield "ROWS", first, last + 1
                 first = None
-            yield Token(kind, body, line=index, end_line=index + 1)
+            yield kind, index, index + 1
         if first is not None:
-            yield Token("ROWS", "", line=first, end_line=last + 1)
+            yield "ROWS", first, last + 1
 
     @staticmethod
     def is_damaged_row(body: str, in_run: bool) -> bool:
@@ -265,8 +321,12 @@ class Build:
         """The words of a run of rows, line by line; blank lines and comments are left out."""
         if token is None:
             return Run([], [])
-        lines: Sequence[int] = range(token.line or 0, token.end_line or 0)
-        rows = [body.split() for body in self.bodies[lines[0] : lines[-1] + 1]]
+        return self.rows_between(token.line or 0, token.end_line or 0)
+
+    def rows_between(self, first: int, last: int) -> Run:
+        """As `rows`, for lines ``first`` up to ``last`` (0-based, past the end)."""
+        lines: Sequence[int] = range(first, last)
+        rows = [body.split() for body in self.bodies[first:last]]
         if [] in rows:
             lines = [index for index, row in zip(lines, rows, strict=True) if row]
             rows = [row for row in rows if row]
@@ -306,6 +366,8 @@ class Build:
         """
         number = number_of(symbol)
         if number is None:
+            from difflib import get_close_matches
+
             near = get_close_matches(
                 symbol.capitalize(), [symbol_of(z) for z in range(1, 119)], 1, 0.4
             )
@@ -354,9 +416,21 @@ class Build:
         )
         return None
 
+    def shell_letters(self, tokens: Iterable[Token], word: int = 0) -> Iterator[tuple[str, int]]:
+        """Letters and line (0-based) of all shell headings, for `note_letters`.
+
+        ``word`` is the letters' place in a heading (0-based).
+        """
+        for token in tokens:
+            if token.type == "SHELLS":
+                for heading, _, _ in self.shells_in(token):
+                    yield self.bodies[heading].split(None, word + 1)[word], heading
+            elif token.type == "SHELL":
+                yield token.split()[word], index_of(token)
+
     def note_letters(self, headings: Iterable[tuple[str, int]]) -> None:
         """Look at all shell letters of a file first: whether j is used, and where k begins."""
-        above = [(letters, index) for letters, index in headings if letters.lower() in ("j", "k")]
+        above = [(letters, index) for letters, index in headings if letters in _ABOVE_I]
         self._j_is_used = any(letters.lower() == "j" for letters, _ in above)
         if above:
             letters, index = above[0]
@@ -372,6 +446,52 @@ class Build:
                 expected=f"L={alphabet.index(letters.lower())}",
                 remedy="write the number (L=7) where the layout allows it",
             )
+
+    def sound_shell(
+        self,
+        block: BlockDraft,
+        letters: str,
+        heading: int,
+        first: int,
+        last: int,
+        announced: str | None,
+        general: bool = False,
+    ) -> bool:
+        """Add a shell that is just what its heading announces, and say whether it was one.
+
+        The quick way past `shell` for what nearly all shells are: known letters, rows of one
+        fitting width, and as many as announced.  Rows are lines ``first`` up to ``last``.
+        """
+        angular = self._letters.get(letters)
+        if angular is None or angular == (8,):
+            return False
+        rows = [body.split() for body in self.bodies[first:last]]
+        width = len(rows[0])
+        if general and len(angular) == 1:
+            if width < 2:
+                return False
+        elif width != 1 + len(angular):
+            return False
+        for row in rows:
+            if len(row) != width:
+                return False
+        count = len(rows)
+        if announced is not None and announced != str(count):
+            return False
+        grid = self._grids.get(width)
+        if grid is None:
+            grid = self._grids[width] = Grid(0, width, 1, width, 1)
+        name = block.next_name("sp" if len(angular) > 1 else _WITHOUT_J[angular[0]])
+        words = self._words
+        run = Run(rows, range(first, last))
+        shape = (count, width - 1)
+        block.shells.append(
+            ShellDraft(name, angular, heading, run, len(words), shape, grid, 1.0, False)
+        )
+        block.end = last - 1
+        for row in rows:
+            words += row
+        return True
 
     def shell(
         self,
@@ -394,12 +514,6 @@ class Build:
         rows differ.
         """
         angular = self.angular_of(letters, heading, letters_word)
-        if angular is not None and self._is_sound(angular, run, announced, general, columns):
-            width = len(run.rows[0])
-            name = block.next_name("sp" if len(angular) > 1 else _WITHOUT_J[angular[0]])
-            block.end = run.lines[-1]
-            self._keep_rows(block, name, angular, heading, run, width, scale)
-            return
         width = self._width(run)
         if columns is not None and any(len(row) == columns + 1 for row in run.rows):
             width = columns + 1
@@ -416,42 +530,7 @@ class Build:
             block.complete = False
             self.check_words(block, name, run)
             return
-        self._keep_rows(block, name, angular, heading, run, width, scale)
-
-    @staticmethod
-    def _is_sound(
-        angular: tuple[int, ...],
-        run: Run,
-        announced: str | None,
-        general: bool,
-        columns: int | None,
-    ) -> bool:
-        """Whether a shell is just what its heading announces, so that nothing need be looked at."""
-        rows = run.rows
-        if not rows or columns is not None or angular == (8,):
-            return False
-        width = len(rows[0])
-        fits = width > 1 and len(angular) == 1 if general else width == 1 + len(angular)
-        return (
-            (fits or width == 1 + len(angular))
-            and all([len(row) == width for row in rows])
-            and (announced is None or announced == str(len(rows)))
-        )
-
-    def _keep_rows(
-        self,
-        block: BlockDraft,
-        name: str,
-        angular: tuple[int, ...],
-        heading: int,
-        run: Run,
-        width: int,
-        scale: float,
-    ) -> None:
-        grid = self._grids.get(width)
-        if grid is None:
-            grid = self._grids[width] = Grid(0, width, 1, width, 1)
-        shape = (len(run.rows), width - 1)
+        shape, grid = (len(run.rows), width - 1), Grid(0, width, 1, width, 1)
         self.keep(block, ShellDraft(name, angular, heading, run, 0, shape, grid, scale))
 
     def matrix(
@@ -724,7 +803,8 @@ class Build:
             if self._has_holes and np.isnan(np.append(exponents, coefficients)).any():
                 complete = False
                 continue
-            first, last = draft.run.lines[0], draft.run.lines[-1] + 1
+            lines = draft.run.lines
+            first, last = lines[0], lines[-1] + 1
             skip = draft.run.before[0] if draft.run.before else 0
             cells = Cells(
                 self.source, first, last, draft.grid, self.comment, pattern, skip, leading

@@ -3,11 +3,12 @@
 import re
 from dataclasses import dataclass
 from functools import cache
-from importlib.resources import files
 from typing import Literal
 
 from lark import Lark, Token, Tree
 from lark.exceptions import UnexpectedInput
+
+from overlapse.grammar.compiled import grammar
 
 _LETTERS = "spdfghi"
 # Cheap test that spares most words of a comment the parser.
@@ -61,8 +62,7 @@ def _terms(terms: tuple[tuple[int, int], ...]) -> str:
 
 @cache
 def _parser() -> Lark:
-    grammar = files("overlapse.grammar").joinpath("designation.lark").read_text("utf-8")
-    return Lark(grammar, parser="lalr", maybe_placeholders=False)
+    return grammar("designation")
 
 
 @cache

@@ -102,7 +102,7 @@ def _is_plain(text: str) -> bool:
     return set(text) <= CHARACTERS
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(slots=True)
 class ListCells(Cells):
     """The numbers of an object: its list of exponents, then its lists of coefficients.
 

@@ -46,7 +46,7 @@ class Grid(NamedTuple):
     cj: int
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(slots=True)  # not frozen, which would double the cost of the thousands that are made
 class Cells:
     """The numbers of a shell where they stand in the text; found only when somebody asks.
 

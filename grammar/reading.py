@@ -1,17 +1,18 @@
 """From a file to a document: find the layout, then let it read."""
 
 import os
-from collections.abc import Iterable
 from pathlib import Path
 
 from overlapse.grammar.layout import Evidence, Layout
-from overlapse.grammar.layouts import layouts
+from overlapse.grammar.layouts import layout_of, spotted
 from overlapse.grammar.model import Document, Fault
 from overlapse.grammar.source import Source
 
 # No row of a basis set comes near this; a longer line is some other kind of file, unless its
 # layout knows no lines.
 LONGEST_LINE = 100_000
+# The marks of a layout stand near the beginning of nearly all files.
+HEAD = 20_000
 # Two layouts whose evidence is this close are both possible.
 CLOSE_CALL = 5
 
@@ -40,33 +41,42 @@ def read_bytes(data: bytes, path: str, *, layout: str | None = None) -> Document
 
 def read_source(source: Source, *, layout: str | None = None) -> Document:
     """As `read`, for a decoded text."""
-    known = layouts()
-    if layout is not None and layout not in known:
-        raise ValueError(f"no layout is called {layout!r}; known: {', '.join(known)}")
+    wanted = layout_of(layout) if layout is not None else None
     if not source.text.strip():
         return _unread(source, "the file is empty")
-    long = next((at for at, line in enumerate(source.lines) if len(line) > LONGEST_LINE), None)
-    if long is not None:
-        known = {name: each for name, each in known.items() if each.any_line}
-    if layout is None and (found := candidates(source, known.values())):
+    lengths = list(map(len, source.lines))
+    is_long = max(lengths) > LONGEST_LINE
+    if wanted is not None and (wanted.any_line or not is_long):
+        return wanted.read(source)
+    found = candidates(source) if wanted is None else []
+    if is_long:
+        found = [pair for pair in found if pair[1].any_line]
+    if found:
         return _read_by_content(source, found)
-    if layout in known:
-        return known[layout].read(source)
-    if long is None:
+    if not is_long:
         return _unread(source, "no known layout of basis sets is recognised in this text")
-    length = len(source.lines[long])
+    line = lengths.index(max(lengths)) + 1
     return _unread(
-        source, f"line {long + 1} has {length:,} characters: no row of a basis set is so long"
+        source, f"line {line} has {max(lengths):,} characters: no row of a basis set is so long"
     )
 
 
-def candidates(
-    source: Source, among: Iterable[Layout] | None = None
-) -> list[tuple[Evidence, Layout]]:
-    """Layouts whose marks a text carries, the likeliest first; all layouts, or those given."""
+def candidates(source: Source) -> list[tuple[Evidence, Layout]]:
+    """Layouts whose marks a text carries, the likeliest first.
+
+    A long text is judged by its beginning, unless that shows no layout.
+    """
+    head = source
+    if len(source.text) > HEAD:
+        head = Source(source.text[: source.text.rfind("\n", 0, HEAD) + 1] or source.text)
+    found = _candidates(head)
+    return found if found or head is source else _candidates(source)
+
+
+def _candidates(source: Source) -> list[tuple[Evidence, Layout]]:
     found = [
         (evidence, layout)
-        for layout in (layouts().values() if among is None else among)
+        for layout in spotted(source.flat)
         if (evidence := layout.recognise(source)) is not None
     ]
     return sorted(found, key=lambda pair: -pair[0].strength)

@@ -6,17 +6,11 @@ They are looked for from each checked file upwards: the nearest ``overlapse.toml
 
 import sys
 from dataclasses import dataclass, field
-from difflib import get_close_matches
 from functools import cache
 from pathlib import Path
 from typing import Any
 
 from overlapse.rules.registry import rules
-
-if sys.version_info >= (3, 11):
-    import tomllib
-else:
-    import tomli as tomllib
 
 LEVELS = ("error", "warning", "note")
 
@@ -62,6 +56,11 @@ def _read(path: Path, keys: list[str]) -> Settings:
 
 
 def _table(path: Path, keys: list[str]) -> dict[str, Any] | None:
+    # Imported here because most audits find no settings file.
+    if sys.version_info >= (3, 11):
+        import tomllib
+    else:
+        import tomli as tomllib
     try:
         table: Any = tomllib.loads(path.read_text("utf-8"))
     except (tomllib.TOMLDecodeError, UnicodeDecodeError, OSError) as problem:
@@ -104,6 +103,8 @@ def _check_rule(path: Path, name: str) -> None:
 
 
 def _unknown(what: str, name: str, known: tuple[str, ...]) -> str:
+    from difflib import get_close_matches
+
     near = get_close_matches(name, known, 1)
     hint = f"; did you mean {near[0]}?" if near else f"; known: {', '.join(known) or 'none'}"
     return f"no {what} is called {name!r}{hint}"

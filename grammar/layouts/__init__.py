@@ -1,22 +1,51 @@
 """The text layouts, one grammar and one module each.
 
-A module of this folder that defines ``LAYOUT`` is a layout; nothing else registers it.
+A module of this folder that defines ``LAYOUT``, beside a grammar of its name, is a layout; nothing
+else registers it.  The first lines of the grammar hold ``// spotted by: PATTERN``, a regular
+expression (any letter case, ^ at each line) that every text of the layout matches somewhere.  It
+spares most texts the import of most modules: only a layout that is spotted is asked for evidence.
 """
 
+import re
 from functools import cache
 from importlib import import_module
-from importlib.resources import files
+from pathlib import Path
 
 from overlapse.grammar.layout import Layout
+
+_FOLDER = Path(__file__).parent
+_SPOTTED_BY = "// spotted by: "
+
+
+@cache
+def names() -> tuple[str, ...]:
+    """Names of all layouts, in alphabetical order."""
+    return tuple(sorted(path.stem.replace("_", "-") for path in _FOLDER.glob("*.lark")))
+
+
+@cache
+def layout_of(name: str) -> Layout:
+    """The layout of a name; raises ValueError for an unknown one."""
+    if name not in names():
+        raise ValueError(f"no layout is called {name!r}; known: {', '.join(names())}")
+    found = import_module(f"{__name__}.{name.replace('-', '_')}").LAYOUT
+    assert isinstance(found, Layout)
+    return found
 
 
 @cache
 def layouts() -> dict[str, Layout]:
     """All layouts by name, in alphabetical order."""
-    found: dict[str, Layout] = {}
-    for entry in sorted(files(__name__).iterdir(), key=lambda entry: entry.name):
-        if entry.name.endswith(".py") and entry.name != "__init__.py":
-            module = import_module(f"{__name__}.{entry.name.removesuffix('.py')}")
-            if isinstance(layout := getattr(module, "LAYOUT", None), Layout):
-                found[layout.name] = layout
-    return found
+    return {name: layout_of(name) for name in names()}
+
+
+@cache
+def _pattern(name: str) -> re.Pattern[str]:
+    with open(_FOLDER / f"{name.replace('-', '_')}.lark", encoding="utf-8") as grammar:
+        line = next((line for line in grammar if line.startswith(_SPOTTED_BY)), _SPOTTED_BY)
+    return re.compile(line[len(_SPOTTED_BY) :].rstrip("\n"), re.MULTILINE | re.IGNORECASE)
+
+
+def spotted(text: str) -> list[Layout]:
+    """Layouts whose pattern a text matches."""
+    return [layout_of(name) for name in names() if _pattern(name).search(text)]

@@ -5,7 +5,7 @@ from collections.abc import Iterator
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, Role, index_of
+from overlapse.grammar.building import BlockDraft, Build, Node, Role, Run, index_of
 from overlapse.grammar.cores import CHANNEL, core_lines, read_core
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
@@ -74,10 +74,8 @@ class _Reader:
         self.title = ""
 
     def document(self) -> Document:
-        tokens = list(self.build.tokens(self.classify, self.numeric_heading))
-        self.build.note_letters(
-            (token.split()[1], index_of(token)) for token in tokens if token.type == "SHELL"
-        )
+        tokens = list(self.build.tokens(self.classify, self.numeric_heading, joined=True))
+        self.build.note_letters(self.build.shell_letters(tokens, 1))
         # What stands outside the sections belongs to somebody else's input and is left alone.
         sections = [
             piece
@@ -181,22 +179,25 @@ class _Reader:
             return None
         return next((block for block in self.build.blocks if block.number == number), None)
 
-    def shell(self, block: BlockDraft, node: Node) -> None:
-        heading = node.children[0]
-        rows = node.children[1] if len(node.children) > 1 else None
-        assert isinstance(heading, Token) and (rows is None or isinstance(rows, Token))
-        count, letters = heading.split()
-        self.build.shell(
-            block,
-            letters,
-            index_of(heading),
-            self.build.rows(rows),
-            announced=count,
-            announced_word=0,
-            letters_word=1,
-        )
+    def shells(self, block: BlockDraft, node: Node) -> None:
+        token = node.children[0]
+        assert isinstance(token, Token)
+        build = self.build
+        for heading, first, last in build.shells_in(token):
+            count, letters = build.bodies[heading].split()
+            if not build.sound_shell(block, letters, heading, first, last, count):
+                self.shell(block, heading, build.rows_between(first, last))
 
-    bare = shell
+    def bare(self, block: BlockDraft, node: Node) -> None:
+        heading = node.children[0]
+        assert isinstance(heading, Token)
+        self.shell(block, index_of(heading), self.build.rows(None))
+
+    def shell(self, block: BlockDraft, heading: int, run: Run) -> None:
+        count, letters = self.build.bodies[heading].split()
+        self.build.shell(
+            block, letters, heading, run, announced=count, announced_word=0, letters_word=1
+        )
 
     def unheaded(self, block: BlockDraft, node: Node) -> None:
         block.complete = False

@@ -12,6 +12,7 @@ from overlapse.grammar.building import (
     FunctionType,
     Node,
     Role,
+    Run,
     index_of,
     integer,
 )
@@ -63,6 +64,48 @@ def read(source: Source) -> Document:
     return _Reader(source).document()
 
 
+class _PotentialDraft:
+    """A potential whose channels are still coming in."""
+
+    def __init__(self, block: BlockDraft, index: int) -> None:
+        self.block = block
+        self.index = index
+        self.electrons: int | None = None
+        self.channels: list[Channel] = []
+
+    def close(self, build: Build) -> None:
+        if self.electrons is None:
+            build.fault_line(
+                "form.syntax",
+                self.index,
+                f"the potential of {self.block.symbol} does not say how many electrons it replaces",
+                element=self.block.symbol,
+                expected=f"{self.block.symbol} nelec 10",
+                remedy="write the `nelec` line",
+            )
+            self.block.complete = False
+            return
+        highest = max((c.l for c in self.channels), default=-1)
+        # The local part stands for the angular momentum above the highest projector.
+        settled = tuple(
+            Channel(
+                highest + 1 if channel.local else channel.l,
+                channel.local,
+                channel.powers,
+                channel.exponents,
+                channel.coefficients,
+                channel.line,
+                channel.title,
+                channel.kind,
+            )
+            for channel in self.channels
+        )
+        self.block.potential = Potential(self.electrons, settled, self.index + 1)
+
+
+_Potentials = dict[str, _PotentialDraft]
+
+
 class _Reader:
     """Walks the tree of one text."""
 
@@ -75,10 +118,8 @@ class _Reader:
         self.role: Role = "unstated"
 
     def document(self) -> Document:
-        tokens = list(self.build.tokens(self.classify))
-        self.build.note_letters(
-            (token.split()[1], index_of(token)) for token in tokens if token.type == "SHELL"
-        )
+        tokens = list(self.build.tokens(self.classify, joined=True))
+        self.build.note_letters(self.build.shell_letters(tokens, 1))
         for piece in self.build.parse(tokens).children:
             if isinstance(piece, Tree):
                 getattr(self, str(piece.data))(piece)
@@ -140,13 +181,12 @@ class _Reader:
                 remedy="put a line `end` after the last row of the section",
             )
 
-    def block(self, token: Token) -> BlockDraft:
+    def block(self, symbol: str, index: int) -> BlockDraft:
         """The block a shell heading belongs to: the open one, or a new one at a new symbol."""
-        symbol = token.split()[0]
         if self.open is None or self.open.symbol.lower() != symbol.lower():
             self.open = self.build.open_block(
                 symbol,
-                index_of(token),
+                index,
                 section=self.section,
                 label=self.label,
                 functions=self.functions,
@@ -154,23 +194,22 @@ class _Reader:
             )
         return self.open
 
-    def shell(self, node: Node) -> None:
-        heading, rows = node.children
-        assert isinstance(heading, Token) and isinstance(rows, Token)
-        self.build.shell(
-            self.block(heading),
-            heading.split()[1],
-            index_of(heading),
-            self.build.rows(rows),
-            letters_word=1,
-            general=True,
-        )
+    def shells(self, node: Node) -> None:
+        token = node.children[0]
+        assert isinstance(token, Token)
+        build = self.build
+        for heading, first, last in build.shells_in(token):
+            symbol, letters = build.bodies[heading].split()
+            block = self.block(symbol, heading)
+            if not build.sound_shell(block, letters, heading, first, last, None, general=True):
+                run = build.rows_between(first, last)
+                build.shell(block, letters, heading, run, letters_word=1, general=True)
 
     def bare(self, node: Node) -> None:
         heading = node.children[0]
         assert isinstance(heading, Token)
         self.build.shell(
-            self.block(heading),
+            self.block(heading.split()[0], index_of(heading)),
             heading.split()[1],
             index_of(heading),
             self.build.rows(None),
@@ -234,10 +273,12 @@ class _Reader:
         heading, *pieces = node.children
         assert isinstance(heading, Token)
         self.open = None
-        potentials: dict[str, _PotentialDraft] = {}
+        potentials: _Potentials = {}
         for piece in pieces:
-            if isinstance(piece, Tree) and piece.data in ("electrons", "local", "channel"):
-                self.potential_part(piece, potentials)
+            if isinstance(piece, Tree) and piece.data == "electrons":
+                self.electrons(piece, potentials)
+            elif isinstance(piece, Tree) and piece.data in ("local", "channels", "empty"):
+                self.channels(piece, potentials)
             elif isinstance(piece, Tree):
                 getattr(self, str(piece.data))(piece)
             elif piece.type == "REFER":
@@ -247,62 +288,77 @@ class _Reader:
         for draft in potentials.values():
             draft.close(self.build)
 
-    def potential_part(self, node: Node, potentials: "dict[str, _PotentialDraft]") -> None:
+    def draft(self, symbol: str, index: int, potentials: _Potentials) -> _PotentialDraft:
+        """The potential of an element in the open section."""
+        key = symbol.lower()
+        if key not in potentials:
+            potentials[key] = _PotentialDraft(self.owner(symbol, index), index)
+        return potentials[key]
+
+    def electrons(self, node: Node, potentials: _Potentials) -> None:
         line = node.children[0]
         assert isinstance(line, Token)
-        words = line.split()
-        symbol = words[0]
-        draft = potentials.setdefault(
-            symbol.lower(), _PotentialDraft(self.owner(symbol, line), index_of(line))
-        )
-        if node.data == "electrons":
-            draft.electrons = integer(words[2])
-            if draft.electrons is None:
-                self.build.fault_word(
-                    "form.number",
-                    index_of(line),
-                    2,
-                    f"{words[2]!r} is not a number of electrons",
-                    element=symbol,
-                    measured=words[2],
-                    remedy="write the number of electrons that the potential replaces",
-                )
-                draft.electrons = 0
-            return
-        local = node.data == "local"
-        if local:
-            l: int = -1  # settled when the other channels are known
-        elif (angular := self.build.angular_of(words[1], index_of(line), 1)) is not None:
-            l = angular[0]
-        else:
+        symbol, _, count = line.split()
+        draft = self.draft(symbol, index_of(line), potentials)
+        draft.electrons = integer(count)
+        if draft.electrons is None:
+            self.build.fault_word(
+                "form.number",
+                index_of(line),
+                2,
+                f"{count!r} is not a number of electrons",
+                element=symbol,
+                measured=count,
+                remedy="write the number of electrons that the potential replaces",
+            )
+            draft.electrons = 0
+
+    def channels(self, node: Node, potentials: _Potentials) -> None:
+        """Headings with their terms: `Hg ul` for the local part, `Hg S` for a projected one."""
+        line = node.children[0]
+        assert isinstance(line, Token)
+        if node.data == "channels":
+            for heading, first, last in self.build.shells_in(line):
+                self.channel(heading, self.build.rows_between(first, last), potentials)
             return
         rows = node.children[1] if len(node.children) > 1 else None
         assert rows is None or isinstance(rows, Token)
-        run = self.build.rows(rows)
-        channel = self.build.channel(draft.block, l, local, index_of(line), run, title=str(line))
-        if channel is not None:
-            draft.channels.append(channel)
-        if any(len(row) == 4 for row in run.rows):
-            spin_orbit = self.build.channel(
-                draft.block,
-                l,
-                local,
-                index_of(line),
-                run,
-                order="power exponent - coefficient",
-                title=str(line),
-                spin_orbit=True,
-            )
-            if spin_orbit is not None:
-                draft.channels.append(spin_orbit)
+        self.channel(index_of(line), self.build.rows(rows), potentials)
 
-    def owner(self, symbol: str, line: Token) -> BlockDraft:
+    def channel(self, heading: int, run: Run, potentials: _Potentials) -> None:
+        title = self.build.bodies[heading]
+        symbol, letters = title.split()
+        draft = self.draft(symbol, heading, potentials)
+        local = letters.lower() == "ul"
+        if local:
+            l = -1  # settled when the other channels are known
+        elif (angular := self.build.angular_of(letters, heading, 1)) is not None:
+            l = angular[0]
+        else:
+            return
+        made = [self.build.channel(draft.block, l, local, heading, run, title=title)]
+        if any(len(row) == 4 for row in run.rows):
+            made.append(
+                self.build.channel(
+                    draft.block,
+                    l,
+                    local,
+                    heading,
+                    run,
+                    order="power exponent - coefficient",
+                    title=title,
+                    spin_orbit=True,
+                )
+            )
+        draft.channels += [channel for channel in made if channel is not None]
+
+    def owner(self, symbol: str, index: int) -> BlockDraft:
         """The element's orbital block earlier in the file, or a new block."""
         number = number_of(symbol)
         for block in reversed(self.build.blocks):
             if number is not None and block.number == number:
                 return block
-        return self.build.open_block(symbol, index_of(line), section="ecp")
+        return self.build.open_block(symbol, index, section="ecp")
 
     def potential_line(self, node: Node) -> None:
         line = node.children[0]
@@ -315,45 +371,6 @@ class _Reader:
             expected="ecp",
             remedy="put a line `ecp` above it",
         )
-
-
-class _PotentialDraft:
-    """A potential whose channels are still coming in."""
-
-    def __init__(self, block: BlockDraft, index: int) -> None:
-        self.block = block
-        self.index = index
-        self.electrons: int | None = None
-        self.channels: list[Channel] = []
-
-    def close(self, build: Build) -> None:
-        if self.electrons is None:
-            build.fault_line(
-                "form.syntax",
-                self.index,
-                f"the potential of {self.block.symbol} does not say how many electrons it replaces",
-                element=self.block.symbol,
-                expected=f"{self.block.symbol} nelec 10",
-                remedy="write the `nelec` line",
-            )
-            self.block.complete = False
-            return
-        highest = max((c.l for c in self.channels), default=-1)
-        # The local part stands for the angular momentum above the highest projector.
-        settled = tuple(
-            Channel(
-                highest + 1 if channel.local else channel.l,
-                channel.local,
-                channel.powers,
-                channel.exponents,
-                channel.coefficients,
-                channel.line,
-                channel.title,
-                channel.kind,
-            )
-            for channel in self.channels
-        )
-        self.block.potential = Potential(self.electrons, settled, self.index + 1)
 
 
 def _opening(line: str) -> tuple[str | None, list[str]]:

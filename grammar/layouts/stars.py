@@ -19,6 +19,7 @@ S   2   1.00
       4.0      0.6
 ****"""
 
+_ONE = ("1.00", "1.0", "1.000000")  # usual spellings of a scale factor that changes nothing
 _SHELL_THEN_ROW = re.compile(
     r"^[ \t]*(?:[A-Za-z]{1,2}|[Ll]=\d+)[ \t]+[1-9]\d*(?:[ \t]+\d*\.\d*)?[ \t]*(?:!.*)?\n"
     r"(?:[ \t]*(?:!.*)?\n)*[ \t]*[-+.\d]",
@@ -56,10 +57,8 @@ class _Reader:
         self.functions: FunctionType | None = None
 
     def document(self) -> Document:
-        tokens = list(self.build.tokens(self.classify))
-        self.build.note_letters(
-            (token.split()[0], index_of(token)) for token in tokens if token.type == "SHELL"
-        )
+        tokens = list(self.build.tokens(self.classify, joined=True))
+        self.build.note_letters(self.build.shell_letters(tokens))
         tree = self.build.parse(tokens)
         for piece in tree.children:
             if isinstance(piece, Tree):
@@ -138,7 +137,7 @@ class _Reader:
             )
         symbols = words[:-1] if words[-1] in ("0", "O", "o") else words
         has_potential = any(isinstance(p, Tree) and p.data == "potential" for p in pieces)
-        has_shells = any(isinstance(p, Tree) and p.data in ("shell", "bare") for p in pieces)
+        has_shells = any(isinstance(p, Tree) and p.data in ("shells", "bare") for p in pieces)
         blocks = []
         for ordinal, symbol in enumerate(symbols):
             bare = symbol.lstrip("-")
@@ -157,19 +156,20 @@ class _Reader:
             None,
         )
 
-    def shell(self, block: BlockDraft, node: Node) -> None:
-        heading, rows = node.children
-        assert isinstance(heading, Token) and isinstance(rows, Token)
-        words = heading.split()
-        scale = read_number(words[2]).value if len(words) > 2 else None
-        self.build.shell(
-            block,
-            words[0],
-            index_of(heading),
-            self.build.rows(rows),
-            announced=words[1],
-            scale=scale or 1.0,
-        )
+    def shells(self, block: BlockDraft, node: Node) -> None:
+        token = node.children[0]
+        assert isinstance(token, Token)
+        build = self.build
+        for heading, first, last in build.shells_in(token):
+            letters, announced, *more = build.bodies[heading].split()
+            if more and more[0] not in _ONE:
+                scale = read_number(more[0]).value
+            elif build.sound_shell(block, letters, heading, first, last, announced):
+                continue
+            else:
+                scale = 1.0
+            run = build.rows_between(first, last)
+            build.shell(block, letters, heading, run, announced=announced, scale=scale or 1.0)
 
     def bare(self, block: BlockDraft, node: Node) -> None:
         heading = node.children[0]
