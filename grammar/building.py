@@ -636,6 +636,8 @@ class Build:
             wrong = wrong[:1]
         for at in wrong:
             count = len(run.rows[at])
+            if count + sum("together" in read_number(word).slip for word in run.rows[at]) == wanted:
+                continue  # nothing is lost: the word itself is the fault
             self.fault_word(
                 "form.count",
                 run.lines[at],
@@ -663,6 +665,20 @@ class Build:
             span = self.source.span_of_word(index, ordinal, self.word_pattern)
             self.slip(reading, word, span, element, shell)
         return reading.value
+
+    def whole_numbers(
+        self, words: Sequence[str], index: int, element: str | None
+    ) -> list[int] | None:
+        """The counts on a line (0-based), or None where a word is none; says what is misspelt."""
+        whole: list[int] = []
+        for ordinal, word in enumerate(words):
+            value: float | None = integer(word)
+            if value is None:
+                value = self.number(word, index, ordinal, element, None)
+            if value is None or value < 0 or value != int(value):
+                return None
+            whole.append(int(value))
+        return whole
 
     def slip(
         self, reading: Reading, word: str, span: Span, element: str | None, shell: str | None

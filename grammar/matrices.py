@@ -6,11 +6,11 @@ piece ends; lines and blank lines say where a number was lost or added.
 """
 
 import re
-from bisect import bisect_right
+from bisect import bisect_left, bisect_right
 from itertools import accumulate, pairwise
 from typing import NamedTuple
 
-from overlapse.grammar.building import BlockDraft, Build, Run, integer
+from overlapse.grammar.building import BlockDraft, Build, Run
 from overlapse.grammar.model import LETTERS, Grid, letter_of
 
 WHOLE = re.compile(r"[0-9]{1,15}(?:[ \t]+[0-9]{1,15})*")
@@ -65,14 +65,10 @@ class Lists:
             if WHOLE.fullmatch(" ".join(row)):
                 table.append(list(map(int, row)))
                 continue
-            table.append([])
-            for ordinal, word in enumerate(row):
-                value: float | None = integer(word)
-                if value is None:
-                    value = self.build.number(word, index, ordinal, self.block.symbol, None)
-                if value is None or value < 0 or value != int(value):
-                    return None
-                table[-1].append(int(value))
+            whole = self.build.whole_numbers(row, index, self.block.symbol)
+            if whole is None:
+                return None
+            table.append(whole)
         return table
 
     def _three(self, table: list[list[int]]) -> tuple[list[list[int]], int] | None:
@@ -171,14 +167,10 @@ class Cutting:
             ):
                 self._pair(entry, top, matrix)
         elif fits:
-            for entry, (first, second) in zip(
-                self.entries, zip(bounds[::2], bounds[1::2], strict=False), strict=True
-            ):
+            for entry, first, second in zip(self.entries, bounds[::2], bounds[1::2], strict=False):
                 self._add(entry, first, second)
         else:
             self._by_lines(bounds)
-        if not any(shell.run is self.run for shell in self.block.shells):
-            self.build.check_words(self.block, "", self.run)
 
     def _sizes(self) -> list[int]:
         return [
@@ -196,9 +188,28 @@ class Cutting:
     def _add(self, entry: Entry, first: int, second: int, rows: int = 0, columns: int = 0) -> None:
         """A shell whose exponents and coefficients begin at the given numbers of the stream."""
         shape = rows or entry.primitives, columns or entry.contractions
-        line = self.run.lines[bisect_right(self.above, first) - 1]
-        grid = Grid(first, 1, second, shape[1], 1)
-        self.build.matrix(self.block, entry.l, line, self.run, shape, grid)
+        run = self._part(first, second + shape[0] * shape[1])
+        grid = Grid(0, 1, second - first, shape[1], 1)
+        self.build.matrix(self.block, entry.l, run.lines[0], run, shape, grid)
+
+    def _part(self, first: int, last: int) -> Run:
+        """The numbers from one to before another, as a run of their own."""
+        top = bisect_right(self.above, first) - 1
+        end = bisect_left(self.above, last)
+        rows, skip = self.run.rows[top:end], first - self.above[top]
+        if last < self.above[end]:
+            rows[-1] = rows[-1][: last - self.above[end]]
+        if not skip:
+            return Run(rows, self.run.lines[top:end])
+        rows[0] = rows[0][skip:]
+        return Run(rows, self.run.lines[top:end], [skip, *[0] * (end - top - 1)])
+
+    def _rows(self, first: int, last: int | None = None) -> Run:
+        return Run(self.run.rows[first:last], self.run.lines[first:last])
+
+    def _pass_over(self, first: int, last: int | None = None) -> None:
+        """Rows that make no shell: only their spelling is looked at."""
+        self.build.check_words(self.block, "", self._rows(first, last))
 
     # ---- what does not fit
 
@@ -206,37 +217,41 @@ class Cutting:
         """A shell whose exponents and matrix are paragraphs of their own."""
         first, second = self.above[top.start], self.above[matrix.start]
         exponents, coefficients = self.above[top.stop] - first, self.above[matrix.stop] - second
-        wanted, columns = entry.primitives, entry.contractions
-        letter, line = letter_of(entry.l), self.run.lines[matrix.start]
-        rows = Run(self.run.rows[matrix.start : matrix.stop],
-                   self.run.lines[matrix.start : matrix.stop])  # fmt: skip
-        widths = {len(row) for row in rows.rows}
+        wanted, columns, letter = entry.primitives, entry.contractions, letter_of(entry.l)
+        rows = self._rows(matrix.start, matrix.stop)
+        widths = set(map(len, rows.rows))
         if (exponents, coefficients) == (wanted, wanted * columns):
             self._add(entry, first, second)
         elif exponents != wanted and coefficients == exponents * columns:
             message = f"{wanted} primitives of {letter} are announced, {exponents} follow"
             self.lists.say(entry.at_primitives, message, exponents, wanted)
             self._add(entry, first, second, rows=exponents)
-        elif exponents != wanted:
-            message = f"{exponents} exponents of {letter} where {wanted} are announced"
-            self._say_line(self.run.lines[top.start], message, exponents, wanted)
-        elif len(matrix) != wanted:
-            message = (
-                f"{coefficients} coefficients of {letter} in {len(matrix)} rows where {wanted} "
-                f"rows of {columns} are announced"
-            )
-            self._say_line(line, message, coefficients, wanted * columns)
-        elif len(widths) == 1 and wanted > 1:
+        elif exponents == wanted == len(matrix) > 1 and len(widths) == 1:
             found = max(widths)
             message = f"{columns} contractions of {letter} are announced, rows have {found} numbers"
             self.lists.say(entry.at_contractions, message, found, columns)
             self._add(entry, first, second, columns=found)
         else:
-            self.block.complete = False
-            name = self.block.next_name(letter)
-            self.build.check_rows(
-                self.block, name, rows, columns, f"the matrix of {letter} has {columns}"
+            self._say_pair(entry, self._rows(top.start, top.stop), rows)
+            self._pass_over(top.start, matrix.stop)
+
+    def _say_pair(self, entry: Entry, top: Run, matrix: Run) -> None:
+        """What is wrong with exponents and matrix that make no shell."""
+        self.block.complete = False
+        wanted, columns, letter = entry.primitives, entry.contractions, letter_of(entry.l)
+        exponents, coefficients = sum(map(len, top.rows)), sum(map(len, matrix.rows))
+        if exponents != wanted:
+            message = f"{exponents} exponents of {letter} where {wanted} are announced"
+            self._say_line(top.lines[0], message, exponents, wanted)
+        elif len(matrix.rows) != wanted:
+            message = (
+                f"{coefficients} coefficients of {letter} in {len(matrix.rows)} rows where "
+                f"{wanted} rows of {columns} are announced"
             )
+            self._say_line(matrix.lines[0], message, coefficients, wanted * columns)
+        else:
+            name, holds = self.block.next_name(letter), f"the matrix of {letter} has {columns}"
+            self.build.check_rows(self.block, name, matrix, columns, holds)
 
     def _by_lines(self, bounds: list[int]) -> None:
         """Shells up to the first one that does not end with a line; then what is wrong."""
@@ -247,12 +262,14 @@ class Cutting:
             for what, bound in ("exponents", second), ("coefficients", last):
                 if bound not in ends:
                     self._say_break(f"{what} of {letter_of(entry.l)}", bound, bounds[-1])
+                    self._pass_over(bisect_left(self.above, first))
                     return
             self._add(entry, first, second)
         left = self.above[-1] - bounds[-1]
-        line = self.run.lines[bisect_right(self.above, bounds[-1]) - 1]
+        after = bisect_left(self.above, bounds[-1])
         message = f"{left} number{'s' * (left > 1)} too many from here on: all matrices are full"
-        self._say_line(line, message, self.above[-1], bounds[-1])
+        self._say_line(self.run.lines[after], message, self.above[-1], bounds[-1])
+        self._pass_over(after)
 
     def _say_break(self, what: str, bound: int, wanted: int) -> None:
         total = self.above[-1]

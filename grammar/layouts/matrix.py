@@ -6,7 +6,7 @@ from itertools import pairwise
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of, integer
+from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of, integer, shorten
 from overlapse.grammar.cores import CHANNEL, core_lines, read_core
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
@@ -49,7 +49,7 @@ class _Reader:
     def __init__(self, source: Source) -> None:
         self.build = Build(source, "matrix", "!#")
         self.heads: dict[int, tuple[str, str, str]] = {}  # line: word, symbol, name
-        self.titles: dict[int, str] = {}
+        self.titles: set[int] = set()
         self.known: dict[tuple[str, str], BlockDraft] = {}
         # How many numbers the lists still lack: None before the first, 0 when they are closed.
         self.left: int | None = 0
@@ -82,8 +82,7 @@ class _Reader:
             if body[:1] == "*" and not _is_overflow(body.split()):
                 self.build.remarks.append(Remark(body.strip("* "), index + 1))
                 bodies[index] = ""
-        # Numbers hold no stars, so for finding their places the sign needs no such care.
-        self.build.comment += "*"
+        self.build.leading = "*"
 
     def find_heads(self) -> None:
         bodies = self.build.bodies
@@ -95,8 +94,8 @@ class _Reader:
                 continue
             self.heads[index] = (match[1], match[2], match[3])
             if self.has_title(index + 1):
+                self.titles.add(index + 1)
                 title = self.build.source.lines[index + 1].strip()
-                self.titles[index + 1] = title
                 self.build.remarks.append(Remark(title, index + 2))
                 bodies[index + 1] = "title"  # which may begin like a number
         self.build.remarks.sort(key=lambda remark: remark.line)
@@ -109,15 +108,12 @@ class _Reader:
         )
 
     def has_title(self, index: int) -> bool:
-        bodies = [*self.build.bodies[index : index + 2], "", ""]
-        match = _HEAD.fullmatch(bodies[0])
-        if (
-            not bodies[0]
-            or bodies[0].lower().startswith("ncore")
-            or (match and number_of(match[2]))
-        ):
+        """Whether the line below a heading is a title, and not yet the lists or something else."""
+        body, below = [*self.build.bodies[index : index + 2], "", ""][:2]
+        match = _HEAD.fullmatch(body)
+        if not body or body.lower().startswith("ncore") or (match and number_of(match[2])):
             return False
-        return not bodies[1] or not WHOLE.fullmatch(bodies[0])
+        return not below or not WHOLE.fullmatch(body)
 
     def classify(self, body: str, index: int) -> str:
         if index in self.heads:
@@ -220,21 +216,28 @@ class _Reader:
 
     def numbers(self, block: BlockDraft, pieces: list[Node], wanted: int) -> Run:
         """The rows of an element as one run, up to the number of numbers wanted (0: unknown)."""
-        run, found = Run([], []), 0
+        rows: list[list[str]] = []
+        lines: list[int] = []
+        found = 0
         last = max((at for at, piece in enumerate(pieces) if piece.data == "numbers"), default=0)
         for at, piece in enumerate(pieces):
             if 0 < wanted <= found:
                 break  # what follows belongs to somebody else's input
             token = piece.children[0]
             assert isinstance(token, Token)
+            if piece.data == "lists":
+                continue
             if piece.data == "numbers":
                 more = self.build.rows(token)
-                run = Run(run.rows + more.rows, [*run.lines, *more.lines]) if found else more
+                rows += more.rows
+                lines += more.lines
                 found += sum(map(len, more.rows))
+            elif not wanted:
+                break  # where nothing is known of the numbers, they end with the first other line
             elif piece.data == "remark" and at < last:
-                message = f"{str(token)!r} stands among the numbers of {block.symbol}"
+                message = f"{shorten(token, 60)!r} stands among the numbers of {block.symbol}"
                 self.amiss(block, piece, message)
-        return run
+        return Run(rows, lines)
 
 
 def _is_overflow(words: list[str]) -> bool:

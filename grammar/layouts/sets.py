@@ -2,15 +2,15 @@
 
 import re
 from collections.abc import Iterator
-from functools import lru_cache
-from typing import NamedTuple
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of, integer
+from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of, integer, shorten
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
-from overlapse.grammar.model import LETTERS, Block, Document, Fault, Grid, letter_of
+from overlapse.grammar.model import Block, Document, Fault, Grid, letter_of
+from overlapse.grammar.pseudopotentials import GAP, IDLE, potentials_in
+from overlapse.grammar.setheadings import Heading, heading_of, made_of, slip_in
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, say_shared_names, split_shared, title_of
 
@@ -21,32 +21,12 @@ C invented
       4.0      0.6      0.3
       0.5      0.5      0.8"""
 
-_GAP = r"[ \t]*(?:#[^\n]*)?\n(?:[ \t]*(?:#[^\n]*)?\n)*"  # the rest of a line, then idle lines
 _SET = re.compile(
-    r"^[ \t]*([A-Za-z]{1,3})_?\d*(?:[ \t]+[^\n#]*)?" + _GAP
-    + r"(?:[ \t]*\d+" + _GAP + r")?[ \t]*(\d+(?:[ \t]+\d+){4,})" + _GAP
+    r"^[ \t]*([A-Za-z]{1,3})_?\d*(?:[ \t][^\n]*)?\n" + IDLE
+    + r"(?:[ \t]*\d+" + GAP + r")?[ \t]*(\d+(?:[ \t]+\d+){4,})" + GAP
     + r"[ \t]*[-+.\d][^\n.#]*\.",
     re.MULTILINE,
 )  # fmt: skip
-# The same family keeps pseudopotentials in files of their own, in one of these forms.
-_POTENTIALS = {
-    "electrons by l and a local part below each element": re.compile(
-        r"^[ \t]*[A-Z][A-Za-z]?[ \t]+[A-Za-z][^\n#]*" + _GAP + r"[ \t]*\d+(?:[ \t]+\d+)*" + _GAP
-        + r"[ \t]*\d*\.\d+[ \t]+\d+(?:[ \t]+[-+]?\d*\.\d+)*" + _GAP + r"[ \t]*(?:\d|[A-Z])",
-        re.MULTILINE,
-    ),
-    "core potentials below a name": re.compile(
-        r"^[ \t]*(?!(?:ecp|end|so)[ \t]*$)[^\s\"#&]+" + _GAP
-        + r"[ \t]*[A-Za-z]{1,3}[ \t]+nelec[ \t]+\d+",
-        re.MULTILINE | re.IGNORECASE,
-    ),
-    "sections of a fitted potential": re.compile(
-        r"^[ \t]*&\w*_POT[ \t]*\n[^\n]*\n(?:[ \t]*\d+[ \t]*\n)?[ \t]*\d*\.\d+[ \t]",
-        re.MULTILINE | re.IGNORECASE,
-    ),
-}  # fmt: skip
-_SECTION = re.compile(r"^[ \t]*(?:basis|ecp)\b", re.MULTILINE | re.IGNORECASE)
-_WHOLE = re.compile(r"\d{1,15}(?:[ \t]+\d{1,15}){4,}")
 _SYMBOL = re.compile(r"([A-Za-z]{1,3})_?\d*")
 _LIKE_SYMBOL = re.compile(r"[A-Z][A-Za-z]?\d*")
 _ELECTRONS = re.compile(r"-q\d+$")
@@ -57,24 +37,14 @@ def recognise(source: Source) -> Evidence | None:
         if number_of(match[1]) and _is_heading(match[2]):
             heading = match[0].strip().split("\n", 1)[0].split("#")[0].strip()
             return Evidence(75, f"`{heading}` above a set's heading `{match[2]}`")
-    if found := _potentials(source):
+    if found := potentials_in(source):
         return Evidence(80, f"{found[0]}, and no basis functions")
-    return None
-
-
-def _potentials(source: Source) -> tuple[str, int] | None:
-    """What marks a file of pseudopotentials alone, and the line (0-based) where it begins."""
-    text = source.flat
-    if not _SECTION.search(text):
-        for what, pattern in _POTENTIALS.items():
-            if match := pattern.search(text):
-                return what, text.count("\n", 0, match.start())
     return None
 
 
 def read(source: Source) -> Document:
     document = _Reader(source).document()
-    if not any(block.shells for block in document.blocks) and (found := _potentials(source)):
+    if not any(block.shells for block in document.blocks) and (found := potentials_in(source)):
         what, line = found
         fault = Fault(
             "form.syntax",
@@ -88,14 +58,6 @@ def read(source: Source) -> Document:
 
 
 _EXPECTED = "a set's heading such as `1 0 1 3 2 1`"
-
-
-class _Heading(NamedTuple):
-    """A set's heading: each l with its contractions, the numbers of rows and of words in a row."""
-
-    parts: list[tuple[int, int]]
-    length: int
-    width: int
 
 
 class _Reader:
@@ -156,7 +118,7 @@ class _Reader:
         if len(words) == 1:
             ruled = not any(map(str.isdigit, body))
             return "COUNT" if integer(body) is not None else "RULED" if ruled else None
-        if (heading := _heading_of(body)) is not None:
+        if (heading := heading_of(body)) is not None:
             self.width = heading.width
             return "SET"
         # A row may be written without any decimal point, and a heading may be misspelt.
@@ -235,7 +197,9 @@ class _Reader:
             message = f"the number of sets is missing below the heading of {symbol}"
             remedy = f"put a line with the number of sets, {found}, below this one"
         elif found == announced or (self.overfull and found < announced):
-            return  # where a heading between two sets is lost, the surplus of rows says so
+            # Where a heading between two sets is lost, the surplus of rows says so.
+            block.complete = block.complete and found == announced
+            return
         else:
             message = f"{announced} sets are announced for {symbol}, {found} follow"
             remedy = "a set was lost or added, or the number is wrong: compare with the source"
@@ -273,39 +237,32 @@ class _Reader:
 
     bare = set
 
-    def announced(self, block: BlockDraft, heading: Token) -> _Heading | None:
+    def announced(self, block: BlockDraft, heading: Token) -> Heading | None:
         """What a set's heading announces, or None, with faults, where it makes no sense."""
-        said = _heading_of(heading)
-        if said is not None and len(heading.split()) == 5 + said.parts[-1][0] - said.parts[0][0]:
+        said = heading_of(heading)
+        if said is not None and not said.surplus:
             return said
-        index, whole = index_of(heading), []
-        for at, word in enumerate(heading.split()):
-            value: float | None = integer(word)
-            if value is None:
-                value = self.build.number(word, index, at, block.symbol, None)
-            if value is None or value < 0 or value != int(value):
-                return None
-            whole.append(int(value))
-        slip = _slip_in(whole)
+        index, words = index_of(heading), heading.split()
+        whole = self.build.whole_numbers(words, index, block.symbol)
+        slip = slip_in(whole) if whole else None
         if slip is not None:
-            ordinal, message, expected = slip
             self.build.fault_word(
                 "form.count",
                 index,
-                ordinal,
-                message,
+                slip.ordinal,
+                slip.message,
                 # Numbers behind the last one that counts do no harm to most readers.
-                severity="warning" if _made_of(whole) else "error",
+                severity="warning" if said else "error",
                 element=block.symbol,
-                measured=heading.split()[ordinal],
-                expected=expected,
+                measured=words[slip.ordinal],
+                expected=slip.expected,
                 remedy="a set's heading is: a label, the lowest and the highest l, the number of "
                 "exponents, then the number of contractions for each l",
             )
-        return _made_of(whole)
+        return made_of(whole) if whole else None
 
     def length(
-        self, block: BlockDraft, name: str, index: int, run: Run, said: _Heading
+        self, block: BlockDraft, name: str, index: int, run: Run, said: Heading
     ) -> int | None:
         """The number of exponents, or None, with faults, where rows have not the right width."""
         widths = set(map(len, run.rows))
@@ -354,7 +311,7 @@ class _Reader:
         self.build.fault_line(
             "form.syntax",
             index_of(first),
-            f"{str(first)!r} {what}" if first else what,
+            f"{shorten(first, 60)!r} {what}" if first else what,
             element=block.symbol,
             expected=expected,
             remedy="write what belongs here, or make the line a comment with `#`",
@@ -398,43 +355,7 @@ def _odd(words: list[str]) -> int:
 
 
 def _is_heading(body: str) -> bool:
-    return _heading_of(body) is not None
-
-
-@lru_cache(4096)  # the same few headings come again and again
-def _heading_of(body: str) -> _Heading | None:
-    return _made_of(list(map(int, body.split()))) if _WHOLE.fullmatch(body) else None
-
-
-def _made_of(whole: list[int]) -> _Heading | None:
-    """The heading of a set, if the numbers are enough and of sensible size."""
-    if len(whole) < 5 or not whole[1] <= whole[2] < len(LETTERS) or not whole[3]:
-        return None
-    lowest, highest = whole[1:3]
-    counts = whole[4 : 5 + highest - lowest]
-    if len(counts) <= highest - lowest or not any(counts):
-        return None
-    parts = [(l, count) for l, count in enumerate(counts, lowest) if count]
-    return _Heading(parts, whole[3], 1 + sum(counts))
-
-
-def _slip_in(whole: list[int]) -> tuple[int, str, object] | None:
-    """What is wrong with the heading of a set: the word's place, a message, what is expected."""
-    if len(whole) < 4:
-        return len(whole) - 1, f"{len(whole)} numbers make no heading of a set", "at least 5"
-    lowest, highest, length = whole[1:4]
-    wanted, found = highest - lowest + 1, len(whole) - 4
-    if wanted < 1:
-        return 1, f"the lowest l, {lowest}, lies above the highest, {highest}", None
-    if highest >= len(LETTERS):
-        return 2, f"l = {highest} is no angular momentum of a basis function", None
-    if found != wanted:
-        span = f"l = {lowest}" + f" to {highest}" * (wanted > 1)
-        what = "number" + "s" * (wanted > 1)
-        return 2, f"{span} wants {wanted} {what} of contractions, {found} follow", wanted
-    if not length:
-        return 3, "the heading announces no exponent", None
-    return None if any(whole[4:]) else (4, "the heading announces no contraction", None)
+    return heading_of(body) is not None
 
 
 def write(document: Document) -> Written:
