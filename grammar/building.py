@@ -476,6 +476,8 @@ class Build:
             if len(row) != width:
                 return False
         count = len(rows)
+        if general and width > 2 and _is_index(rows):
+            return False
         if announced is not None and announced != str(count):
             return False
         grid = self._grids.get(width)
@@ -515,6 +517,10 @@ class Build:
         """
         angular = self.angular_of(letters, heading, letters_word)
         width = self._width(run)
+        if angular is not None and self._is_indexed(angular, run, width, general):
+            self._say_index(block, run)
+            self._keep_indexed(block, angular, heading, run, scale)
+            return
         if columns is not None and any(len(row) == columns + 1 for row in run.rows):
             width = columns + 1
         if angular == (8,) and width == 3 and letters.lower() == "l" and not general:
@@ -531,6 +537,40 @@ class Build:
             self.check_words(block, name, run)
             return
         shape, grid = (len(run.rows), width - 1), Grid(0, width, 1, width, 1)
+        self.keep(block, ShellDraft(name, angular, heading, run, 0, shape, grid, scale))
+
+    @staticmethod
+    def _is_indexed(angular: tuple[int, ...], run: Run, width: int, general: bool) -> bool:
+        """Whether 1, 2, 3 ... stand in front of rows that would be whole without them."""
+        if not run.rows or any(len(row) != width for row in run.rows) or not _is_index(run.rows):
+            return False
+        return width > 2 and len(run.rows) > 1 if general else width == 2 + len(angular)
+
+    def _say_index(self, block: BlockDraft, run: Run) -> None:
+        self.fault_word(
+            "form.index-column",
+            run.lines[0],
+            0,
+            "1, 2, 3 ... stand where the exponents belong: the numbers of the rows were carried "
+            "over from another layout",
+            element=block.symbol,
+            measured=run.rows[0][0],
+            expected=run.rows[0][1],
+            remedy="take the first column out; it was passed over here",
+        )
+
+    def _keep_indexed(
+        self,
+        block: BlockDraft,
+        angular: tuple[int, ...],
+        heading: int,
+        run: Run,
+        scale: float,
+    ) -> None:
+        name = block.next_name("".join(_WITHOUT_J[l] for l in angular))
+        width = len(run.rows[0])
+        block.end = max(block.end, heading, run.lines[-1])
+        shape, grid = (len(run.rows), width - 2), Grid(1, width, 2, width, 1)
         self.keep(block, ShellDraft(name, angular, heading, run, 0, shape, grid, scale))
 
     def matrix(
@@ -946,6 +986,11 @@ class Build:
             expected=1,
             remedy="keep one of the two: a reader may add them up, or take either",
         )
+
+
+def _is_index(rows: list[list[str]]) -> bool:
+    """Whether the first words of rows are 1, 2, 3 ... without a point."""
+    return all(row[0] == str(at) for at, row in enumerate(rows, 1))
 
 
 def index_of(token: Token) -> int:

@@ -53,7 +53,14 @@ def read_number(word: str) -> Reading:
     return _slip(word)
 
 
+_INVISIBLE = dict.fromkeys(map(ord, "\u200b\u200c\u200d\u2060\ufeff\u00ad"))
+
+
 def _slip(word: str) -> Reading:
+    if (seen := word.translate(_INVISIBLE)) != word:
+        again = read_number(seen)
+        if again.value is not None:
+            return _guess("has an invisible character in it", again.spelling or seen)
     if set(word) == {"*"}:
         return Reading(None, "is a field that overflowed when it was written: its digits are lost")
     if match := _LOST_LETTER.fullmatch(word):

@@ -1,8 +1,10 @@
 """From a file to a document: find the layout, then let it read."""
 
 import os
+from dataclasses import replace
 from pathlib import Path
 
+from overlapse.grammar.bytewise import text_faults
 from overlapse.grammar.layout import Evidence, Layout
 from overlapse.grammar.layouts import layout_of, spotted
 from overlapse.grammar.model import Document, Fault
@@ -47,7 +49,7 @@ def read_source(source: Source, *, layout: str | None = None) -> Document:
     lengths = list(map(len, source.lines))
     is_long = max(lengths) > LONGEST_LINE
     if wanted is not None and (wanted.any_line or not is_long):
-        return wanted.read(source)
+        return _read_as(source, wanted)
     found = candidates(source) if wanted is None else []
     if is_long:
         found = [pair for pair in found if pair[1].any_line]
@@ -82,14 +84,17 @@ def _candidates(source: Source) -> list[tuple[Evidence, Layout]]:
     return sorted(found, key=lambda pair: -pair[0].strength)
 
 
+def _read_as(source: Source, layout: Layout, reason: str = "", *doubts: Fault) -> Document:
+    document = layout.read(source)
+    faults = [*document.faults, *text_faults(source, layout.comment)]
+    faults.sort(key=lambda fault: fault.span)
+    return replace(document, faults=(*doubts, *faults), reason=reason)
+
+
 def _read_by_content(source: Source, found: list[tuple[Evidence, Layout]]) -> Document:
     (evidence, layout), *others = found
-    document = layout.read(source)
-    rivals = [pair for pair in others if evidence.strength - pair[0].strength < CLOSE_CALL]
-    faults = document.faults
-    if rivals:
-        rival_evidence, rival = rivals[0]
-        doubt = Fault(
+    doubts = [
+        Fault(
             "form.syntax",
             f"read as {layout.name} ({evidence.reason}); it might also be {rival.name} "
             f"({rival_evidence.reason})",
@@ -97,16 +102,10 @@ def _read_by_content(source: Source, found: list[tuple[Evidence, Layout]]) -> Do
             severity="note",
             remedy=f"say which with --layout {layout.name} or --layout {rival.name}",
         )
-        faults = (doubt, *faults)
-    return Document(
-        source,
-        document.layout,
-        document.sets,
-        document.remarks,
-        faults,
-        evidence.reason,
-        document.raw_primitives,
-    )
+        for rival_evidence, rival in others[:1]
+        if evidence.strength - rival_evidence.strength < CLOSE_CALL
+    ]
+    return _read_as(source, layout, evidence.reason, *doubts)
 
 
 def _unread(source: Source, message: str) -> Document:

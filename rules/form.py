@@ -193,3 +193,99 @@ def repeat(case: Case) -> Iterator[Finding]:
         ****
     """
     yield from case.faults("form.repeat")
+
+
+@rule("form.index-column")
+def index_column(case: Case) -> Iterator[Finding]:
+    """The numbers of the rows stand where the exponents belong.
+
+    Layouts that number their rows have 1, 2, 3 ... in front of each; pasted into a layout without
+    that column they are read as exponents, the exponents as coefficients, and nothing complains.
+    The shell is judged without the column.
+
+    Source: common practice, no source.
+
+    Remedy: take the first column out.
+
+    Bad::
+
+        C 0
+        S 2 1.00
+          1 4.0 0.6
+          2 0.5 0.55505
+        ****
+
+    Good::
+
+        C 0
+        S 2 1.00
+          4.0 0.6
+          0.5 0.55505
+        ****
+    """
+    yield from case.faults("form.index-column")
+
+
+@rule("form.ending")
+def ending(case: Case) -> Iterator[Finding]:
+    """Line ends are of two kinds, or of a kind that most readers do not know.
+
+    A file with lone carriage returns is one long line to most readers. Mixed line ends are
+    harmless to read, but they make every later comparison of texts noisy.
+
+    Source: line ends of POSIX (LF) and of ECMA-48 and DOS (CR LF); common practice, no source.
+
+    Remedy: convert the line ends to LF.
+
+    Bad::
+
+        $basis\r
+        *
+        h x
+        *
+        1 s
+        0.5 1.0
+        *
+        $end
+
+    Good::
+
+        $basis
+        *
+        h x
+        *
+        1 s
+        0.5 1.0
+        *
+        $end
+    """
+    yield from case.faults("form.ending")
+
+
+@rule("form.encoding")
+def encoding(case: Case) -> Iterator[Finding]:
+    """The bytes are no plain UTF-8: another encoding, or a byte-order mark.
+
+    Names of authors in comments are the usual cause and do no harm to most readers. Outside
+    comments such a byte, or a mark in front of the first word, makes a reader stop or take a
+    heading for something else.
+
+    Source: The Unicode Standard, section 3.10 (UTF-8) and section 2.13 (byte-order mark).
+
+    Remedy: save the file as UTF-8 without a byte-order mark.
+
+    Bad::
+
+        \ufeffC 0
+        S 1 1.00
+          4.0 1.0
+        ****
+
+    Good::
+
+        C 0
+        S 1 1.00
+          4.0 1.0
+        ****
+    """
+    yield from case.faults("form.encoding")

@@ -59,7 +59,7 @@ def test_line_ends_and_letter_case_do_not_matter() -> None:
     plain = read_text(SOUND)
     for other in (SOUND.replace("\n", "\r\n"), SOUND.replace("\n", "\r"), SOUND.lower()):
         again = read_text(other)
-        assert not again.faults
+        assert {fault.rule for fault in again.faults} <= {"form.ending"}
         assert [b.counts for b in again.blocks] == [b.counts for b in plain.blocks]
         assert again.blocks[0].shells[0].place(2, 0) == (8, 16)
 
