@@ -21,7 +21,12 @@ POTENTIAL_KINDS = ("scalar", "spinorbit", "scalar_ecp", "spinorbit_ecp")
 
 _SHELL = ("angular_momentum", "exponents", "coefficients")
 _TERMS = ("angular_momentum", "r_exponents", "gaussian_exponents", "coefficients")
-_NAMES = frozenset({*_SHELL, *_TERMS, "harmonic_type", "function_type", "ecp_type"})
+_NAMES = frozenset(
+    {
+        *_SHELL, *_TERMS, "harmonic_type", "function_type", "ecp_type",
+        "electron_shells", "ecp_electrons", "ecp_potentials", "center_data", "atom_map", "name",
+    }
+)  # fmt: skip
 _JSON_NUMBER = re.compile(r"-?(?:0|[1-9]\d*)(?:\.\d+)?(?:[Ee][+-]?\d+)?", re.ASCII)
 _PARTS = re.compile(r"([+-]?)0*(\d*)\.?(\d*)(?:[EeDd]([+-]?\d+))?")
 
@@ -109,15 +114,25 @@ class Apart(JsonText):
 
     # ---- members
 
-    def check_names(self, members: Members, names: Sequence[str], where: Where) -> None:
-        """Names that have to be there; a misspelt one by itself, all that are missing at once."""
+    def check_names(
+        self,
+        members: Members,
+        names: Sequence[str],
+        where: Where | None = None,
+        optional: Sequence[str] = (),
+    ) -> None:
+        """Names that have to be there: a misspelt one by itself, all that are missing at once.
+
+        ``optional`` ones may be missing, but not be misspelt.
+        """
         missing = []
-        for name in names:
+        where = where or {}
+        for name in (*names, *optional):
             near = get_close_matches(name, sorted(members.entries.keys() - _NAMES), 1)
             if members.get(name) is not None:
                 continue
             if not near:
-                missing.append(name)
+                missing += [name] if name in names else []
                 continue
             self.fault(
                 members.entries[near[0]][0],

@@ -23,14 +23,15 @@ from overlapse.grammar.numbers import read_number
 
 Value = Token | Node
 
-# A quote that is not closed on its line makes a word that ends before the next sign.
-_QUOTED = r'"[^"\\\x00-\x1f]*(?:\\["\\/bfnrtu][^"\\\x00-\x1f]*)*"'
+# A quote that is not closed on its line makes a word that ends before the next sign, or with its
+# line if there are backslashes, which may hide quotes.
+_QUOTED = r'"[^"\\\x00-\x1f]*(?:\\[^\x00-\x1f][^"\\\x00-\x1f]*)*"'
 _BLANKS = r"[ \t\r\n]*"  # JSON knows no others
 _SIGNS = r"(?P<OPEN>\{)|(?P<CLOSE>\})|(?P<BEGIN>\[)|(?P<END>\])|(?P<COMMA>,)|(?P<COLON>:)"
 _SINGLE = (
     rf"(?P<NOTE>//[^\n]*|/\*[^\n]*|\#[^\n]*)"
     rf"|(?P<KEY>(?:{_QUOTED}|'[^'\n]*'|[A-Za-z_]\w*){_BLANKS}:)|(?P<STRING>{_QUOTED})|{_SIGNS}"
-    rf'|(?P<WORD>"[^"\n,:{{}}\[\]]*|[^ \t\r\n{{}}\[\],:"]+)'
+    rf'|(?P<WORD>"[^"\\\n]*\\[^\n]*|"[^"\n,:{{}}\[\]]*|[^ \t\r\n{{}}\[\],:"]+)'
 )
 _FINE = re.compile(rf"{_BLANKS}(?:{_SINGLE})")
 _LEAF = r"\{[^{}\\]*\}"
@@ -89,6 +90,7 @@ class JsonText:
         self.text = build.source.text
         self.leaves: dict[int, dict[str, Any]] = {}  # contents of the LEAF tokens, by offset
         self.said: set[Span] = set()  # where slips have been reported
+        self.ends: dict[int, int] = {}  # where what opens at an offset ends
         self.damage: list[int] = []  # offsets where brackets do not fit
 
     def tree(self) -> Node:
@@ -97,7 +99,7 @@ class JsonText:
     def expand(self, token: Token) -> Node:
         """The tree of a LEAF or FLAT token."""
         start, end = span_of(token)
-        node = self.build.parse(self._scan(_FINE, start, end)).children[0]
+        node = self.build.parse(self._matched(self._scan(_FINE, start, end))).children[0]
         assert isinstance(node, Tree)
         return node
 
@@ -136,10 +138,11 @@ class JsonText:
                 opened.append(token)
             elif wanted := _CLOSES.get(token.type):
                 if opened and opened[-1].type == wanted:
-                    opened.pop()
+                    self.ends[span_of(opened.pop())[0]] = span_of(token)[1]
                 elif len(opened) > 1 and opened[-2].type == wanted:
                     self._say_mismatch(token, opened[-1])
                     left_over += 2  # one of either kind
+                    self.ends |= {span_of(opener)[0]: span_of(token)[1] for opener in opened[-2:]}
                     del opened[-2:]
                 else:
                     if left_over:
@@ -187,15 +190,23 @@ class JsonText:
 
     def is_damaged(self, value: Value) -> bool:
         """Whether a bracket that does not fit stands inside."""
-        start, end = extent_of(value) if self.damage else (0, 0)
+        start, end = self.extent(value) if self.damage else (0, 0)
         return any(start <= offset < end for offset in self.damage)
+
+    def extent(self, value: Value) -> Span:
+        """From the first to past the last character of an object or a list."""
+        start, end = span_of(value)
+        return start, end if isinstance(value, Token) else self.ends.get(start, len(self.text))
 
     # ---- views of the tree
 
-    def holders(self, tree: Node, name: str) -> Iterator[tuple[Token | None, Node]]:
+    def holders(
+        self, tree: Node, name: str, nested: bool = True
+    ) -> Iterator[tuple[Token | None, Node]]:
         """The objects that have a member of some name, in the order of the text.
 
-        Each comes with the key that it is the value of, None if it is in a list or by itself.
+        ``nested``: also those inside others.  Each comes with the key that it is the value of, None
+        if it is in a list or by itself.
         """
         waiting: list[tuple[Token | None, Value]] = [(None, tree)]
         while waiting:
@@ -206,6 +217,8 @@ class JsonText:
                 node = self.expand(node)
             if node.data == "object" and any(name_of(k) == name for k, _ in pairs_in(node)):
                 yield key, node
+                if not nested:
+                    continue
             first = node.children[0] if node.data == "pair" else None
             key = first if isinstance(first, Token) else None
             waiting += [(key, child) for child in reversed(node.children)]
@@ -221,6 +234,10 @@ class JsonText:
             if key[0] != '"':
                 self.fault(key, "names stand in double quotes", expected=f'"{name_of(key)}":',
                            remedy=f'write "{name_of(key)}":')  # fmt: skip
+            for part in (key, *rest):
+                if isinstance(part, Token) and part[0] == '"' and _has_false_escape(part):
+                    self.fault(part, "a backslash here begins no escape that JSON knows",
+                               expected="\\\\", remedy="write two backslashes for one")  # fmt: skip
             if not rest:
                 found.whole = False
                 self.fault(key, f"no value follows the name {name_of(key)!r}",
@@ -320,15 +337,6 @@ def span_of(value: Value) -> Span:
     return value.start_pos or 0, value.end_pos or 0
 
 
-def extent_of(value: Value) -> Span:
-    """From the first to past the last character of a token or a tree."""
-    start, end = span_of(value)
-    while isinstance(value, Tree):
-        value = value.children[-1]
-        end = value.end_pos or 0 if isinstance(value, Token) else end
-    return start, end
-
-
 def _is_unquoted(value: Value) -> bool:
     """Whether a value is neither a number nor likely meant as one."""
     return (
@@ -337,6 +345,15 @@ def _is_unquoted(value: Value) -> bool:
         and value not in ("true", "false", "null")
         and read_number(value).value is None
     )
+
+
+def _has_false_escape(text: Token) -> bool:
+    if "\\" in text:
+        try:
+            json.loads(text.rstrip(": \t\r\n") if text.type == "KEY" else text)
+        except ValueError:
+            return True
+    return False
 
 
 def _is_closed(value: Value) -> bool:

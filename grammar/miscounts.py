@@ -4,7 +4,6 @@ The lines tell more than the total: where all rows but one have the announced le
 the fault; where every row fits, the number of rows is.
 """
 
-from collections.abc import Iterable
 from dataclasses import dataclass
 from itertools import accumulate
 
@@ -51,16 +50,16 @@ class Miscount:
         if set(widths) == {widths[0]} and len(widths) == count and widths[0] > 1:
             return self._say_columns(widths[0])
         pattern = _pattern(widths, columns + 1)
-        if pattern is None or len(widths) < len(pattern):
+        found, rest = divmod(len(widths), len(pattern)) if pattern else (0, 0)
+        if pattern and (odd := _odd_lines(widths, pattern)):
+            self._say_lines(odd, 0)
+        elif found == 0 or rest:
             self._say_total()
-            return None
-        if odd := _odd_lines(widths, pattern):
-            self._say_lines(odd, pattern, 0)
-            return None
-        found = len(widths) // len(pattern)
-        self._say(0, f"{count} primitives", f"{found} rows", found, count)
-        width = columns + 1
-        return (found, columns), Grid(0, width, 1, width, 1)
+        else:
+            self._say(0, f"{count} primitives", f"{found} rows", found, count)
+            width = columns + 1
+            return (found, columns), Grid(0, width, 1, width, 1)
+        return None
 
     def _say_columns(self, width: int) -> tuple[Shape, Grid]:
         """All rows are of one length, but of another than announced."""
@@ -83,7 +82,7 @@ class Miscount:
         if columns < 2 or pattern is None:
             self._say_total()
         elif above and (odd := _odd_lines(widths[above:], pattern)):
-            self._say_lines([above + line for line in odd], pattern, above)
+            self._say_lines(odd, above)
         elif above:
             found = (len(widths) - above) // len(pattern)
             self._say(0, f"{count} rows of coefficients", f"{found} rows", found, count)
@@ -113,42 +112,54 @@ class Miscount:
             "the source",
         )
 
-    def _say_lines(self, odd: Iterable[int], pattern: list[int], first: int) -> None:
-        """Say which lines, from line ``first`` of the table on, do not fit the pattern."""
-        for line in odd:
-            found, wanted = self.widths[line], pattern[(line - first) % len(pattern)]
+    def _say_lines(self, odd: dict[int, int], first: int) -> None:
+        """Say which lines, counted from line ``first`` of the table, do not fit their table."""
+        for line, wanted in odd.items():
+            found = self.widths[first + line]
             self.build.fault_word(
                 "form.count",
-                self.run.lines[line],
-                min(found, wanted) - (found < wanted),
+                self.run.lines[first + line],
+                min(found, wanted) - (found < wanted) if found - wanted in (-1, 1) else 0,
                 f"{found} number{'s' * (found != 1)} on this line where its table has {wanted}",
                 element=self.block.symbol,
                 shell=self.name,
                 measured=found,
                 expected=wanted,
-                remedy="a number was lost, added or run together with its neighbour",
+                remedy="a number or a line was lost or added, or numbers are run together",
             )
 
 
 def _pattern(widths: list[int], size: int) -> list[int] | None:
     """How rows of ``size`` numbers are spread over lines: the numbers on each line of a row."""
-    if not widths or size < 1:
-        return None
-    if max(set(widths), key=widths.count) == size:
-        return [size]
-    for end, total in enumerate(accumulate(widths), 1):
-        if total == size:
-            # Rows of single numbers are no rows: these are exponents without coefficients.
-            return widths[:end] if widths[0] > 1 else None
-        if total > size:
-            break
-    full, rest = divmod(size, max(widths))
-    if full and max(widths) > 1 and widths.count(max(widths)) >= full:
-        return [max(widths)] * full + [rest] * (rest > 0)
-    return None
+    longest = max(widths, default=0)
+    if size < 1 or longest < 2 < size or not longest:
+        return None  # single numbers are no rows: these are exponents without coefficients
+    likely = [[size]] if size in widths else []
+    totals = list(accumulate(widths))
+    if size in totals:
+        likely.append(widths[: totals.index(size) + 1])
+    common = [width for width in widths if 3 * widths.count(width) >= len(widths)]
+    for full_line in {longest, max(common, default=longest)}:
+        full, rest = divmod(size, full_line)
+        if widths.count(full_line) >= full > 0:
+            likely.append([full_line] * full + [rest] * (rest > 0))
+    return min(likely, key=lambda pattern: (len(_odd_lines(widths, pattern)), len(pattern)),
+               default=None)  # fmt: skip
 
 
-def _odd_lines(widths: list[int], pattern: list[int]) -> list[int]:
-    """Lines that do not fit the pattern; only the first where a line was lost or added."""
-    odd = [k for k, width in enumerate(widths) if width != pattern[k % len(pattern)]]
-    return odd if len(widths) % len(pattern) == 0 else odd[:1]
+def _odd_lines(widths: list[int], pattern: list[int]) -> dict[int, int]:
+    """Lines that do not fit the pattern, and how many numbers each should have.
+
+    Where the line below a wrong one does not fit either, a line was lost or added above: what
+    follows is counted from the place that the line fits.
+    """
+    odd: dict[int, int] = {}
+    at = 0
+    for line, width in enumerate(widths):
+        below = (at + 1) % len(pattern)
+        if width != pattern[at]:
+            odd[line] = pattern[at]
+            if width in pattern and widths[line + 1 : line + 2] not in ([], [pattern[below]]):
+                below = (pattern.index(width) + 1) % len(pattern)
+        at = below
+    return odd

@@ -10,7 +10,7 @@ from overlapse.grammar.building import BlockDraft, Build, index_of, integer
 from overlapse.grammar.channels import joined_channels
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.model import Potential, letter_of
-from overlapse.grammar.numbers import read_number
+from overlapse.grammar.numbers import NUMBER, read_number
 from overlapse.grammar.tables import Tables
 
 
@@ -86,19 +86,28 @@ class Sorter:
                 tails.append(token)
                 self.tails.setdefault(token.split()[0].upper(), []).append(token)
         yield from tails[:1]
+        self.check_foreign(tokens[at:])
 
     def check_foreign(self, tokens: list[Token]) -> None:
-        """Tables below a complete element have lost their heading."""
-        kinds = [token.type for token in tokens]
-        if any(pair == ("HEAD", "ROWS") for pair in pairwise(kinds)):
-            self.build.fault_line(
-                "form.syntax",
-                index_of(tokens[0]),
-                f"{str(tokens[0])!r} stands where the heading of an element belongs, since tables "
-                "follow",
-                expected="a heading such as `/C.name.author.9s4p1d.3s2p1d.`",
-                remedy="restore the heading: a slash, the symbol, and fields with points between",
-            )
+        """Charge and tables below a complete element have lost their heading."""
+        named = [at for at, t in enumerate(tokens) if t.type == "TEXT" and t[:3].upper() != "END"]
+        for at in named:
+            below = next((k for k in range(at, len(tokens)) if tokens[k].type != "TEXT"), None)
+            if below is None or tokens[below].type not in ("HEAD", "COUNT", "ROWS"):
+                continue
+            _, rest = self.split_charge(tokens[below:])
+            if [token.type for token in rest[:2]] == ["HEAD", "ROWS"]:
+                self.say_lost_heading(tokens[at])
+                return
+
+    def say_lost_heading(self, line: Token) -> None:
+        self.build.fault_line(
+            "form.syntax",
+            index_of(line),
+            f"{str(line)!r} stands where the heading of an element belongs, since tables follow",
+            expected="a heading such as `/C.name.author.9s4p1d.3s2p1d.`",
+            remedy="restore the heading: a slash, the symbol, and fields with points between",
+        )
 
 
 @dataclass
@@ -122,9 +131,12 @@ class Element:
         index, words = index_of(line), line.split()
         self.charge_line = index
         symbol = self.block.symbol
-        self.charge = build.number(words[0], index, 0, symbol, None)
-        self.highest = highest_of(words)
+        charge = build.number(words[0], index, 0, symbol, None)
+        surplus = any(map(NUMBER.fullmatch, words[2:]))
+        self.highest = None if surplus else highest_of(words)
         if self.highest is not None:
+            if NUMBER.fullmatch(words[0]):
+                self.charge = charge  # a misspelt one is not held against others
             if words[1] != str(self.highest):
                 build.number(words[1], index, 1, symbol, None)
             return

@@ -43,13 +43,15 @@ class Tables:
 
     ``way`` is how the tables of the layout are laid out, None where their numbers have to tell;
     ``last`` then serves for tables that leave it open.  ``alone``: whether exponents may stand
-    alone under a heading that announces as many contractions.
+    alone under a heading that announces as many contractions; ``lonely`` tells that they do so in
+    this text, where it matters: a lone exponent may have lost its coefficient.
     """
 
     build: Build
     way: Way | None
     alone: bool = False
     last: Way = "rows"
+    lonely: bool = False
     abutting: list[tuple[int, int, str]] = field(default_factory=list)
     stated: dict[int, int] = field(default_factory=dict)
     _runs: dict[tuple[int, int], tuple[Run, int]] = field(default_factory=dict)
@@ -107,14 +109,14 @@ class Tables:
             token = tokens[end]
             following = tokens[end + 1] if end + 1 < len(tokens) else None
             rows_follow = following is not None and following.type == "ROWS"
-            if token.type == "TEXT" and found and rows_follow:
+            if token.type == "TEXT" and rows_follow:
                 others += len(token.split())  # perhaps a row that nobody would take for one
             elif token.type not in _TABLE_TOKENS or self._heads(token, following):
                 break
             else:
                 found += self.size(token)
             end += 1
-        complete = wanted in (found, found + others)
+        complete = not {found, found + others}.isdisjoint(self._sizes(heading_of(tokens[at])))
         goes_on = end < len(tokens) and tokens[end].type == "ROWS"
         return end if complete and not goes_on else first
 
@@ -122,7 +124,12 @@ class Tables:
         """Whether just as many numbers follow as a token announces."""
         if following is None or (token.type, following.type) != ("HEAD", "ROWS"):
             return False
-        return heading_of(token).numbers == self.size(following)
+        return self.size(following) in self._sizes(heading_of(token))
+
+    def _sizes(self, heading: Heading) -> tuple[int, ...]:
+        """How many numbers a table may hold as announced."""
+        lone = self.alone and heading.primitives == heading.contractions
+        return (heading.numbers, heading.primitives) if lone else (heading.numbers,)
 
     def _table(self, heading: Token, pieces: list[Token]) -> list[Token]:
         """The rows of a table as one token, or what stands for them where something is wrong."""
@@ -134,22 +141,32 @@ class Tables:
         if not pieces:
             return []
         rows = spanning(pieces[0], pieces[-1])
-        if self.size(rows) > heading_of(heading).numbers:
-            return self._cut(rows)
+        announced, size = heading_of(heading), self.size(rows)
+        if self.alone and size == announced.primitives == announced.contractions:
+            self.lonely = self.lonely or size > 1
+        elif size != announced.numbers and (start := self._next_table(rows, announced)):
+            return [
+                Token("ROWS", "", line=rows.line, end_line=start),
+                Token("LOST", "", line=start, end_line=start + 1),
+                Token("ROWS", "", line=start, end_line=rows.end_line),
+            ]
         return [rows]
 
-    def _cut(self, rows: Token) -> list[Token]:
-        """Rows that are too many, cut where a comment among them speaks of the next l."""
-        first, end = index_of(rows), rows.end_line or 0
-        cut = next((k for k in range(first + 1, end) if k in self.stated), None)
-        if cut is None:
-            return [rows]
-        start = next(k for k in range(cut, end) if self.build.bodies[k])
-        return [
-            Token("ROWS", "", line=first, end_line=cut),
-            Token("LOST", "", line=start, end_line=start + 1),
-            Token("ROWS", "", line=start, end_line=end),
-        ]
+    def _next_table(self, rows: Token, heading: Heading) -> int:
+        """The line in wrong rows where the table below begins that has lost its heading, or 0.
+
+        A comment may speak of it, or lines of another length follow when all numbers are there.
+        """
+        run, seen = self.run(rows), 0
+        for above, below in pairwise(range(len(run.rows))):
+            first, second = run.lines[above], run.lines[below]
+            if any(line in self.stated for line in range(first + 1, second)):
+                return second
+            seen += len(run.rows[above])
+            other = len(run.rows[above]) != len(run.rows[below]) and below + 1 < len(run.rows)
+            if seen == heading.numbers and other:
+                return second
+        return 0
 
     def cut_after(self, rows: Token, numbers: int) -> Token:
         """The first lines of a run, up to so many numbers."""
@@ -214,7 +231,8 @@ class Tables:
                 size == 2 * count
                 and all(len(row) == 2 and read_number(row[1]).value == 1.0 for row in run.rows)
             )
-        return self.alone and size == count == heading.contractions
+        alone = self.alone and size == count == heading.contractions
+        return alone and (count > 1 or self.lonely)
 
     def _way(self, heading: Heading, run: Run) -> Way:
         """Whether a table is rows or a list: as a rule only one has sensible exponents.

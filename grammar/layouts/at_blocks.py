@@ -45,13 +45,14 @@ class _Reader:
         self.build = Build(source, "at-blocks", "!")
         self.label: str | None = None
         self.names = 0
+        self.homeless = False  # whether shells without an element have been said already
 
     def document(self) -> Document:
         tokens = list(self.build.tokens(self.classify, _seal))
         self.build.note_letters(
             (token.split()[0], index_of(token)) for token in tokens if token.type == "SHELL"
         )
-        for piece in self.build.parse(tokens).children:
+        for piece in self.build.parse(self.joined(tokens)).children:
             if isinstance(piece, Tree):
                 getattr(self, str(piece.data))(piece)
             elif piece.type == "NAME":
@@ -70,6 +71,25 @@ class _Reader:
             return "SHELL"
         return _seal(body) or "TEXT"
 
+    def joined(self, tokens: list[Token]) -> Iterator[Token]:
+        """The tokens, with a TEXT that parts the announced rows of a shell as an INTRUDER."""
+        at = 0
+        while at < len(tokens):
+            yield tokens[at]
+            intruder = at + 1
+            while intruder < len(tokens) and tokens[intruder].type == "ROWS":
+                intruder += 1
+            kinds = [token.type for token in tokens[intruder : intruder + 2]]
+            at += 1
+            if tokens[at - 1].type == "SHELL" and kinds == ["TEXT", "ROWS"]:
+                rows = [*tokens[at:intruder], tokens[intruder + 1]]
+                if sum(len(self.build.rows(token).rows) for token in rows) == integer(
+                    tokens[at - 1].split()[1]
+                ):
+                    line = tokens[intruder]
+                    yield Token("INTRUDER", str(line), line=line.line, end_line=line.end_line)
+                    at = intruder + 2
+
     # ---- the tree
 
     def name(self, line: Token) -> None:
@@ -86,6 +106,7 @@ class _Reader:
         assert isinstance(heading, Token)
         words = heading.split()
         index = index_of(heading)
+        self.homeless = False
         if words[0].upper() != "@ATOMBASIS":
             self.misspelt(index, words[0])
         block = self.build.open_block(
@@ -153,6 +174,8 @@ class _Reader:
             return  # rows that differ are faults of their own
         widths = [len(row) - 1 for row in run.rows]
         found = max(set(widths), key=widths.count)
+        if found == 0:
+            return
         self.build.fault_word(
             "form.count",
             index_of(heading),
@@ -162,6 +185,18 @@ class _Reader:
             measured=found,
             expected=wanted,
             remedy="a column was lost or added, or the count is wrong: compare with the source",
+        )
+
+    def interrupted(self, block: BlockDraft, node: Node) -> None:
+        line = node.children[1]
+        assert isinstance(line, Token)
+        block.complete = False
+        self.build.fault_line(
+            "form.syntax",
+            index_of(line),
+            f"{str(line)!r} stands among the rows of a shell and is no row of numbers",
+            element=block.symbol,
+            remedy="make it a comment with `!`, or mend the row",
         )
 
     def unheaded(self, block: BlockDraft, node: Node) -> None:
@@ -199,8 +234,10 @@ class _Reader:
         first = node.children[0]
         assert isinstance(first, Token)
         # Among our blocks a shell with rows has lost its element; elsewhere it is not ours.
-        if len(node.children) < 2 or not (self.build.blocks or self.names):
+        ours = len(node.children) > 1 and (self.build.blocks or self.names)
+        if self.homeless or not ours:
             return
+        self.homeless = True
         self.build.fault_line(
             "form.syntax",
             index_of(first),

@@ -7,7 +7,7 @@ from typing import NamedTuple
 
 from lark import Token
 
-from overlapse.grammar.apart import POTENTIAL_KINDS, SHELL_KINDS, Apart
+from overlapse.grammar.apart import POTENTIAL_KINDS, SHELL_KINDS, Apart, Where
 from overlapse.grammar.building import BlockDraft, Build, FunctionType, Node, integer
 from overlapse.grammar.centres import gather
 from overlapse.grammar.elements import number_of
@@ -15,7 +15,6 @@ from overlapse.grammar.jsontext import (
     LISTS,
     Members,
     Value,
-    extent_of,
     kind_of,
     name_of,
     pairs_in,
@@ -81,7 +80,7 @@ class _Reader:
 
     def document(self) -> Document:
         self.check_outside()
-        bases = [node for _, node in self.json.holders(self.tree, "center_data")]
+        bases = [node for _, node in self.json.holders(self.tree, "center_data", False)]
         for node in bases:
             self.basis(node)
         if not bases or self.json.damage:
@@ -113,11 +112,13 @@ class _Reader:
             self.json.fault(where, "`center_data` is no object", expected="{", remedy=remedy)
             return
         damaged = self.json.is_damaged(centres)
-        for key, value in self.json.members(centres).entries.values():
+        for name, (key, value) in self.json.members(centres).entries.items():
+            self.sizes[name] = []
             # Behind a bracket that does not fit, names of other things may have come here.
             if value is not None and not (damaged and kind_of(value) not in _OBJECTS):
                 self.centre(key, value)
         if members.whole and not self.json.damage:
+            self.json.check_names(members, ["atom_map"], optional=["name"])
             self.check_map(members)
 
     def centre(self, key: Token, value: Value) -> None:
@@ -130,14 +131,18 @@ class _Reader:
                 value, message, element=block.symbol, expected="{", remedy="restore the object"
             )
             return
-        self.sizes[name] = []
+        sizes = self.sizes.setdefault(name, [])
         members = self.json.members(value)
         block.complete &= members.whole
+        if members.whole:
+            where: Where = {"element": block.symbol}
+            names = ("ecp_electrons", "ecp_potentials")
+            self.json.check_names(members, ["electron_shells"], where, names)
         for shell in self.objects(members, "electron_shells", block):
-            self.shell(block, shell, self.sizes[name])
+            self.shell(block, shell, sizes)
         self.potential(block, members)
-        block.functions = self.functions(block, self.sizes[name])
-        block.end = max(block.end, self.build.source.place(extent_of(value)[1]).line - 1)
+        block.functions = self.functions(block, sizes)
+        block.end = max(block.end, self.build.source.place(self.json.extent(value)[1]).line - 1)
 
     def opened(self, key: Token) -> BlockDraft:
         """The block of a centre, whose element its name has to tell."""
@@ -181,7 +186,7 @@ class _Reader:
         return [item for item in items if kind_of(item) in _OBJECTS]
 
     def shell(self, block: BlockDraft, value: Value, sizes: list[_Size]) -> None:
-        start, end = extent_of(value)
+        start, end = self.json.extent(value)
         table = None
         if isinstance(value, Token):
             table = table_of(self.json.leaves[start])
@@ -262,31 +267,25 @@ class _Reader:
     def check_map(self, members: Members) -> None:
         """`atom_map` names centres that are there; `nbf` counts the functions of its atoms."""
         value = members.get("atom_map")
-        if value is None or kind_of(value) not in LISTS:
-            message = "`atom_map`, a list of the atoms' centres, is missing"
-            self.json.fault(
-                members.opener if value is None else value,
-                message,
-                severity="warning",
-                expected="atom_map",
-                remedy="list the centre of each atom",
-            )
+        if value is None:
             return
-        items = self.json.items(value)[0]
+        items = self.json.listed(value, "atom_map", {})
+        first: dict[str, Value] = {}
         for item in items:
-            name = string_of(item)
-            if name not in self.sizes:
-                self.build.fault(
-                    "form.element",
-                    span_of(item),
-                    f"`center_data` holds no centre {name or str(item)!r}",
-                    measured=name,
-                    remedy="mend the name, or add the centre",
-                )
-                return
-        self.check_size(members.get("nbf"), [self.sizes[string_of(item) or ""] for item in items])
+            first.setdefault(string_of(item) or "", item)
+        for name in first.keys() - self.sizes.keys():
+            self.build.fault(
+                "form.element",
+                span_of(first[name]),
+                f"`center_data` holds no centre {name!r}",
+                measured=name,
+                remedy="mend the name, or add the centre",
+            )
+        if first.keys() <= self.sizes.keys():
+            self.check_size(members, [self.sizes[string_of(item) or ""] for item in items])
 
-    def check_size(self, value: Value | None, atoms: list[list[_Size]]) -> None:
+    def check_size(self, members: Members, atoms: list[list[_Size]]) -> None:
+        value = members.get("nbf")
         sizes = [size for atom in atoms for size in atom]
         whole = all(block.complete for block in self.starts.values())
         announced = integer(str(value)) if isinstance(value, Token) else None
@@ -333,7 +332,7 @@ class _Reader:
             for _, node in self.json.holders(self.tree, name):
                 found = next(value for key, value in pairs_in(node) if name_of(key) == name)
                 if found is not None:
-                    text = self.json.text[slice(*extent_of(found))]
+                    text = self.json.text[slice(*self.json.extent(found))]
                     lists.setdefault(name, _QUOTED.findall(text))
         symbols, centres = lists.get("symbols", []), lists.get("atom_map", [])
         if len(symbols) != len(centres):

@@ -164,7 +164,9 @@ class _Reader(TabledReader):
         symbol, name = fields[0], fields[1] if len(fields) > 1 else ""
         if symbol.lower() in _PLACEHOLDERS:
             self.placeholders.append(heading)
-            return Element(BlockDraft(symbol, None, index, "", end=index), fields[2:])
+            block = BlockDraft(symbol, None, index, "", end=index)
+            self.build.blocks.append(block)
+            return Element(block, fields[2:])
         section = self.section(name, symbol, fields[2:])
         block = self.build.open_block(symbol, index, section=section, label=name or None)
         return Element(block, fields[2:])
@@ -180,7 +182,18 @@ class _Reader(TabledReader):
             element.read_charge(self.build, line)
         elif line.type == "TAIL":
             element.tail = line
-        elif self.found:
+        elif element.charge_line is None:
+            self.build.fault_line(
+                "form.syntax",
+                index_of(line),
+                f"{str(line)!r} is a third line of title, where charge and highest angular "
+                "momentum belong",
+                severity="warning",
+                element=element.block.symbol,
+                expected="two numbers such as `6.0   2`",
+                remedy="make it a comment with `*`",
+            )
+        else:
             element.block.complete = False
             self.build.fault_line(
                 "form.syntax",

@@ -102,10 +102,15 @@ BROKEN = {
     "heading without count": ("@ATOMBASIS C\n⟦S\n1.0 1.0\n@END\n", ["form.syntax"]),
     "rows without heading": ("@ATOMBASIS C\n⟦1.0 1.0\nS 1  1\n1.0 1.0\n@END\n", ["form.syntax"]),
     "prose in a block": ("@ATOMBASIS C\nS 1  1\n1.0 1.0\n⟦see below\n@END\n", ["form.syntax"]),
+    "prose among the rows": ("@ATOMBASIS C\nS 2  1\n1.0 1.0\n⟦see below\n0.5 1.0\n@END\n",
+                             ["form.syntax"]),
+    "prose below the heading": ("@ATOMBASIS C\nS 1  1\n⟦see below\n1.0 1.0\n@END\n",
+                                ["form.syntax"]),
+    "numbers run together": ("@ATOMBASIS C\nS 1  1\n⟦5.0e-018.0e-01\n@END\n", ["form.number"]),
     "the end is lost": ("⟦@ATOMBASIS C\nS 1  1\n1.0 1.0\n@ATOMBASIS N\nS 1  1\n1.0 1.0\n@END\n",
                         ["form.syntax"]),
-    "the heading is lost": ("@ATOMBASIS C\nS 1  1\n1.0 1.0\n@END\n⟦S 1  1\n2.0 1.0\n@END\n",
-                            ["form.syntax"]),
+    "the heading is lost": ("@ATOMBASIS C\nS 1  1\n1.0 1.0\n@END\n⟦S 1  1\n2.0 1.0\n"
+                            "P 1  1\n2.0 1.0\n@END\n", ["form.syntax"]),
     "the keyword is misspelt": ("@ATOMBASIS C\nS 1  1\n1.0 1.0\n@END\n"
                                 "⟦@ATOMBASS N\nS 1  1\n2.0 1.0\n@END\n", ["form.syntax"]),
     "element given twice": ("@ATOMBASIS C\nS 1  1\n1.0 1.0\n@END\n"

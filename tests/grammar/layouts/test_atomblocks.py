@@ -193,6 +193,16 @@ BROKEN = {
     "a column too many": ("a 6\n 2 ⟦1 0\n 4.0 0.6 0.1\n 0.5 0.5 0.2\n", ["form.count"]),
     "a wrapped row is short": ("a 6\n 2 4 0\n 4.0 0.6 0.1\n 0.2 0.3\n 0.5 0.5 0.1\n ⟦0.2\n",
                                ["form.count"]),
+    "a line of a wrapped row is lost": (
+        "a 6\n 3 4 0\n 4.0 0.6 0.1 0.1\n 0.3\n 0.5 0.5 0.1 0.1\n ⟦0.4 0.5 0.1 0.1\n 0.1\n",
+        ["form.count"]),
+    "a number too many in a wrapped row": (
+        "a 6\n 3 4 0\n 4.0 0.6 0.1 ⟦0.1\n 0.2 0.3\n 0.5 0.5 0.1\n 0.2 0.2\n"
+        " 0.4 0.5 0.1\n 0.1 0.2\n",
+        ["form.count"]),
+    "a heading is lost without a comment": (
+        "a 6\n 2 2 0\n 9.0 1.0 0.0\n 4.0 0.0 1.0\n ⟦1.0 1.0\n 0.5 0.5\n 1 1 0\n 0.5 1.0\n",
+        ["form.syntax"]),
     "a list lacks an exponent": ("a 6\n 2 2\n 8.0 4.0\n 1.0 0.0\n 0.0 1.0\n ⟦3 2\n 9.0 3.0\n"
                                  " 1.0 0.0\n 0.0 1.0\n 0.0 1.0\n", ["form.count"]),
     "a list lacks a row": ("a 6\n 2 2\n 8.0 4.0\n 1.0 0.0\n 0.0 1.0\n ⟦3 2\n 9.0 3.0 1.0\n"
@@ -221,6 +231,7 @@ BROKEN = {
     "a damaged heading": ("a 6\n 1 1 0\n 9.0 1.0\n⟦x 1 0\n 1.0 1.0\n", ["form.syntax"]),
     "rows without heading": ("a 6\n ⟦1.0 1.0\n 1 1 0\n 1.0 1.0\n", ["form.syntax"]),
     "prose among the rows": ("a 6\n 2 1 0\n 1.0 1.0\n⟦see below\n 0.5 1.0\n", ["form.syntax"]),
+    "prose below the heading": ("a 6\n 1 1 0\n⟦see below\n 0.5 1.0\n", ["form.syntax"]),
     "a row that is none": ("a 6\n 3 1 0\n 1.0 1.0\n ⟦?.8 1.0\n 0.5 1.0\n", ["form.number"]),
     "element given twice": ("a 6\n 1 1 0\n 1.0 1.0\n⟦a 6\n 1 1 0\n 1.0 1.0\n", ["form.repeat"]),
     "a channel is lost": ("a 80\n ⟦2 60\n 1\n 2 1.0 0.0\n 1\n 2 3.0 1.0\n", ["form.count"]),

@@ -228,9 +228,14 @@ BROKEN = {
     "a heading is lost": (
         HEAD + "6.0 2\n* s-type\n1 1\n9.0\n1.0\n* p-type\n⟦9.0\n1.0\n* d-type\n1 1\n9.0\n1.0\n",
         ["form.syntax"]),
+    "a heading is lost without a comment": (
+        HEAD + "6.0 1\n2 2\n9.0\n4.0\n1.0 0.0\n0.0 1.0\n⟦9.0\n1.0\n", ["form.syntax"]),
+    "a lone exponent": (HEAD + "6.0 1\n1 1\n9.0\n1.0\n⟦1 1\n1.0\n", ["form.count"]),
+    "a third line of title": (HEAD + "⟦more\n6.0 0\n1 1\n9.0\n1.0\n", ["form.syntax"]),
     "the charge line is lost": ("⟦" + HEAD + "1 1\n9.0\n1.0\n", ["form.syntax"]),
     "the highest l is lost": (HEAD + "⟦6.0\n1 1\n9.0\n1.0\n", ["form.syntax"]),
     "letter O in the charge": (HEAD + "⟦6.O 0\n1 1\n9.0\n1.0\n", ["form.number"]),
+    "a charge run together with the highest l": (HEAD + "⟦6.00\n1 1\n9.0\n1.0\n", ["form.syntax"]),
     "another element's charge": (HEAD + "⟦7.0 0\n1 1\n9.0\n1.0\n", ["form.element"]),
     "letter O": (HEAD + "6.0 0\n1 1\n⟦O.9\n1.0\n", ["form.number"]),
     "decimal comma": (HEAD + "6.0 0\n1 1\n9.0\n⟦1,5\n", ["form.number"]),
@@ -243,6 +248,9 @@ BROKEN = {
                           + HEAD[1:] + "6.0 0\n1 1\n9.0\n1.0\n", ["form.syntax"]),
     "an element's heading is lost": (HEAD + "6.0 0\n1 1\n9.0\n1.0\n⟦reference\nNITROGEN\n7.0 0\n"
                                      "1 1\n9.0\n1.0\n", ["form.syntax"]),
+    "an element's heading is lost below a potential": (
+        HEAD + "4.0 0\n1 1\n9.0\n1.0\nPP, C, 2, 0 ;\n 1 ;\n2, 1.0, 0.0 ;\n⟦reference\nNITROGEN\n"
+        "7.0 0\n1 1\n9.0\n1.0\n", ["form.syntax"]),
     "prose among the rows": (HEAD + "6.0 0\n2 2\n9.0 3.0\n1.0 0.0\n⟦see below\n0.0 1.0\n",
                              ["form.syntax"]),
     "prose between tables": (HEAD + "6.0 1\n1 1\n9.0\n1.0\n⟦see below\n1 1\n9.0\n1.0\n",
