@@ -55,6 +55,7 @@ _ROW_START = frozenset("0123456789+-.")
 # With a j shell present the letters run on without a gap; else j is left out, as in spectroscopy.
 _WITHOUT_J = "spdfghiklmnoqrtuv"
 _WITH_J = "spdfghijklmnoqrtuv"
+_ONE = ("1.00", "1.0", "1.000000")  # usual spellings of a scale factor that changes nothing
 _ABOVE_I = frozenset("jJkK")
 
 
@@ -494,6 +495,18 @@ class Build:
         for row in rows:
             words += row
         return True
+
+    def scaled_shells(self, block: BlockDraft, token: Token) -> None:
+        """Add a run of shells headed by letter, number of rows and scale factor (`S 3 1.00`)."""
+        for heading, first, last in self.shells_in(token):
+            letters, announced, *more = self.bodies[heading].split()
+            scale = 1.0
+            if more and more[0] not in _ONE:
+                scale = read_number(more[0]).value or 1.0
+            elif self.sound_shell(block, letters, heading, first, last, announced):
+                continue
+            run = self.rows_between(first, last)
+            self.shell(block, letters, heading, run, announced=announced, scale=scale)
 
     def shell(
         self,

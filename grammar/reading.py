@@ -1,6 +1,9 @@
 """From a file to a document: find the layout, then let it read."""
 
+import gc
 import os
+from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import replace
 from pathlib import Path
 
@@ -84,8 +87,21 @@ def _candidates(source: Source) -> list[tuple[Evidence, Layout]]:
     return sorted(found, key=lambda pair: -pair[0].strength)
 
 
+@contextmanager
+def _collector_at_rest() -> Iterator[None]:
+    """Nothing made while reading is garbage; the collector would only walk it, again and again."""
+    was_on = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if was_on:
+            gc.enable()
+
+
 def _read_as(source: Source, layout: Layout, reason: str = "", *doubts: Fault) -> Document:
-    document = layout.read(source)
+    with _collector_at_rest():
+        document = layout.read(source)
     faults = [*document.faults, *text_faults(source, layout.comment)]
     faults.sort(key=lambda fault: fault.span)
     return replace(document, faults=(*doubts, *faults), reason=reason)

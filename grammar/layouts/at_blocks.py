@@ -48,11 +48,9 @@ class _Reader:
         self.homeless = False  # whether shells without an element have been said already
 
     def document(self) -> Document:
-        tokens = list(self.build.tokens(self.classify, _seal))
-        self.build.note_letters(
-            (token.split()[0], index_of(token)) for token in tokens if token.type == "SHELL"
-        )
-        for piece in self.build.parse(self.joined(tokens)).children:
+        tokens = list(self.build.tokens(self.classify, _seal, joined=True))
+        self.build.note_letters(self.build.shell_letters(tokens))
+        for piece in self.build.parse(self.interruptions(tokens)).children:
             if isinstance(piece, Tree):
                 getattr(self, str(piece.data))(piece)
             elif piece.type == "NAME":
@@ -71,24 +69,37 @@ class _Reader:
             return "SHELL"
         return _seal(body) or "TEXT"
 
-    def joined(self, tokens: list[Token]) -> Iterator[Token]:
+    def interruptions(self, tokens: list[Token]) -> Iterator[Token]:
         """The tokens, with a TEXT that parts the announced rows of a shell as an INTRUDER."""
         at = 0
         while at < len(tokens):
-            yield tokens[at]
-            intruder = at + 1
-            while intruder < len(tokens) and tokens[intruder].type == "ROWS":
-                intruder += 1
-            kinds = [token.type for token in tokens[intruder : intruder + 2]]
+            token = tokens[at]
+            kinds = [token.type for token in tokens[at + 1 : at + 3]]
             at += 1
-            if tokens[at - 1].type == "SHELL" and kinds == ["TEXT", "ROWS"]:
-                rows = [*tokens[at:intruder], tokens[intruder + 1]]
-                if sum(len(self.build.rows(token).rows) for token in rows) == integer(
-                    tokens[at - 1].split()[1]
-                ):
-                    line = tokens[intruder]
+            if token.type in ("SHELL", "SHELLS") and kinds == ["TEXT", "ROWS"]:
+                line, rows = tokens[at : at + 2]
+                heading = self.parted(token, rows)
+                if heading is not None:
+                    if token.type == "SHELLS" and self.build.shells_in(token):
+                        yield token
+                    yield heading
                     yield Token("INTRUDER", str(line), line=line.line, end_line=line.end_line)
-                    at = intruder + 2
+                    at += 2
+                    continue
+            yield token
+
+    def parted(self, token: Token, rows: Token) -> Token | None:
+        """The heading of the last shell, taken out of its run, if ``rows`` make it whole."""
+        shells = self.build.shells_in(token) if token.type == "SHELLS" else []
+        heading, first, last = shells[-1] if shells else (index_of(token), 0, 0)
+        body = self.build.bodies[heading]
+        found = sum(len(run.rows) for run in (self.build.rows_between(first, last),
+                                               self.build.rows(rows)))  # fmt: skip
+        if found != integer(body.split()[1]):
+            return None
+        if shells:
+            shells.pop()
+        return Token("SHELL", body, line=heading, end_line=heading + 1)
 
     # ---- the tree
 
@@ -145,12 +156,23 @@ class _Reader:
             remedy="put a line `@END` after the last row of the block",
         )
 
-    def shell(self, block: BlockDraft, node: Node) -> None:
+    def shells(self, block: BlockDraft, node: Node) -> None:
+        token = node.children[0]
+        assert isinstance(token, Token)
+        build = self.build
+        for heading, first, last in build.shells_in(token):
+            words = build.bodies[heading].split()
+            plain = len(words) == 2 or words[2:] == ["1"]
+            if not plain or not build.sound_shell(block, words[0], heading, first, last, words[1]):
+                self.shell(block, heading, build.rows_between(first, last))
+
+    def bare(self, block: BlockDraft, node: Node) -> None:
         heading = node.children[0]
-        rows = node.children[1] if len(node.children) > 1 else None
-        assert isinstance(heading, Token) and (rows is None or isinstance(rows, Token))
-        words = heading.split()
-        run = self.build.rows(rows)
+        assert isinstance(heading, Token)
+        self.shell(block, index_of(heading), self.build.rows(None))
+
+    def shell(self, block: BlockDraft, heading: int, run: Run) -> None:
+        words = self.build.bodies[heading].split()
         # Without a count there is one column; an sp shell counts in its own way.
         announced = integer(words[2]) if len(words) > 2 else 1
         announced = None if words[0].lower() == "sp" else announced
@@ -159,16 +181,14 @@ class _Reader:
         self.build.shell(
             block,
             words[0],
-            index_of(heading),
+            heading,
             run,
             announced=words[1],
             general=len(words) > 2,
             columns=announced,
         )
 
-    bare = shell
-
-    def check_columns(self, block: BlockDraft, heading: Token, announced: str, run: Run) -> None:
+    def check_columns(self, block: BlockDraft, heading: int, announced: str, run: Run) -> None:
         wanted = integer(announced)
         if any(len(row) - 1 == wanted for row in run.rows):
             return  # rows that differ are faults of their own
@@ -178,7 +198,7 @@ class _Reader:
             return
         self.build.fault_word(
             "form.count",
-            index_of(heading),
+            heading,
             2,
             f"the heading announces {announced} columns of coefficients, the rows have {found}",
             element=block.symbol,
@@ -234,7 +254,7 @@ class _Reader:
         first = node.children[0]
         assert isinstance(first, Token)
         # Among our blocks a shell with rows has lost its element; elsewhere it is not ours.
-        ours = len(node.children) > 1 and (self.build.blocks or self.names)
+        ours = first.type == "SHELLS" and (self.build.blocks or self.names)
         if self.homeless or not ours:
             return
         self.homeless = True

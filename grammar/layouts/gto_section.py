@@ -13,7 +13,6 @@ from overlapse.grammar.convention import Count, count_normalised
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Fault, Shell, letter_of
-from overlapse.grammar.numbers import read_number
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, is_general, segments
 
@@ -69,10 +68,8 @@ class _Reader:
         self.symbols: dict[int, str] = {}  # by the line of the heading in [GTO]
 
     def document(self) -> Document:
-        tokens = list(self.build.tokens(self.classify, self.numeric_heading))
-        self.build.note_letters(
-            (token.split()[0], index_of(token)) for token in tokens if token.type == "SHELL"
-        )
+        tokens = list(self.build.tokens(self.classify, self.numeric_heading, joined=True))
+        self.build.note_letters(self.build.shell_letters(tokens))
         pieces = [piece for piece in self.build.parse(tokens).children if isinstance(piece, Tree)]
         for piece in pieces:
             if piece.data == "atoms":
@@ -249,22 +246,18 @@ class _Reader:
         self.build.blocks.append(block)
         return block
 
-    def shell(self, block: BlockDraft, node: Node) -> None:
-        heading = node.children[0]
-        rows = node.children[1] if len(node.children) > 1 else None
-        assert isinstance(heading, Token) and (rows is None or isinstance(rows, Token))
-        words = heading.split()
-        scale = read_number(words[2]).value if len(words) > 2 else None
-        self.build.shell(
-            block,
-            words[0],
-            index_of(heading),
-            self.build.rows(rows),
-            announced=words[1],
-            scale=scale or 1.0,
-        )
+    def shells(self, block: BlockDraft, node: Node) -> None:
+        token = node.children[0]
+        assert isinstance(token, Token)
+        self.build.scaled_shells(block, token)
 
-    bare = shell
+    def bare(self, block: BlockDraft, node: Node) -> None:
+        heading = node.children[0]
+        assert isinstance(heading, Token)
+        words = heading.split()
+        self.build.shell(
+            block, words[0], index_of(heading), self.build.rows(None), announced=words[1]
+        )
 
     def unheaded(self, block: BlockDraft, node: Node) -> None:
         first = node.children[0]

@@ -9,7 +9,6 @@ from overlapse.grammar.building import BlockDraft, Build, FunctionType, Node, in
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Channel, Document, Potential, Shell, letter_of
-from overlapse.grammar.numbers import read_number
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, is_general, segments, terms
 
@@ -19,7 +18,6 @@ S   2   1.00
       4.0      0.6
 ****"""
 
-_ONE = ("1.00", "1.0", "1.000000")  # usual spellings of a scale factor that changes nothing
 _SHELL_THEN_ROW = re.compile(
     r"^[ \t]*(?:[A-Za-z]{1,2}|[Ll]=\d+)[ \t]+[1-9]\d*(?:[ \t]+\d*\.\d*)?[ \t]*(?:!.*)?\n"
     r"(?:[ \t]*(?:!.*)?\n)*[ \t]*[-+.\d]",
@@ -159,17 +157,7 @@ class _Reader:
     def shells(self, block: BlockDraft, node: Node) -> None:
         token = node.children[0]
         assert isinstance(token, Token)
-        build = self.build
-        for heading, first, last in build.shells_in(token):
-            letters, announced, *more = build.bodies[heading].split()
-            if more and more[0] not in _ONE:
-                scale = read_number(more[0]).value
-            elif build.sound_shell(block, letters, heading, first, last, announced):
-                continue
-            else:
-                scale = 1.0
-            run = build.rows_between(first, last)
-            build.shell(block, letters, heading, run, announced=announced, scale=scale or 1.0)
+        self.build.scaled_shells(block, token)
 
     def bare(self, block: BlockDraft, node: Node) -> None:
         heading = node.children[0]
