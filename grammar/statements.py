@@ -127,7 +127,7 @@ class Statements:
 
 
 def _is_name(fields: list[str]) -> bool:
-    """Whether what follows a symbol names a set, such as vdz or 6-31g, rather than numbers."""
+    """Whether what follows a symbol names a set, such as cc-pvdz or 6-31g, rather than numbers."""
     first = fields[0]
     is_word = first[:1].isalpha() or ("-" in first and any(map(str.isalpha, first)))
     return is_word and not any(map(looks_numeric, fields[1:]))

@@ -128,7 +128,7 @@ def test_elements_may_take_turns() -> None:
 
 
 def test_a_set_from_a_library_is_a_note() -> None:
-    for reference in ("spd, C, vdz; c;", "default=vdz", "ecp, Hg, ECP60X"):
+    for reference in ("spd, C, cc-pvdz; c;", "default=cc-pvdz", "ecp, Hg, SMALLCORE"):
         document = read_text(f"basis={{\n{reference}\ns, H, 1.0\n}}\n")
         assert document.layout == "commas"
         assert [(f.rule, f.severity) for f in document.faults] == [("form.syntax", "note")]

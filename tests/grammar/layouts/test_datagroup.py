@@ -10,8 +10,8 @@ from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read_text
 
 SOUND = """\
- $CONTRL scftyp=rhf
-   runtyp=energy $END
+ $OTHER  first=1
+   second=2 $END
  $DATA
 invented molecule
 CNV  2
@@ -41,7 +41,7 @@ CNV  2
     1     0.2    1.0
 
  $END
- $VEC
+ $OTHER
  1  1 1.86482786E-01 2.83671749E-01
  $END
  $ECP
@@ -148,7 +148,7 @@ def test_a_card_for_a_built_in_set_is_a_note_for_each_element() -> None:
 
 
 def test_a_potential_known_by_name_is_a_note() -> None:
-    text = MOLECULE.format(ATOM.format(0, 4.0)) + " $ECP\n C-ECP HW\n $END\n"
+    text = MOLECULE.format(ATOM.format(0, 4.0)) + " $ECP\n C-ECP SMALL\n $END\n"
     document = read_text(text)
     assert [fault.severity for fault in document.faults] == ["note"]
     assert not document.blocks[0].complete
@@ -241,7 +241,7 @@ WHOLE = {
     "the blank line below the symmetry is lost": (
         HEAD.replace("C1\n C", "CNV 2\n ⟦C") + "S 1\n 1 4.0 1.0\n\n $END\n", ["form.syntax"]),
     "the group is not closed": (
-        HEAD.replace("$DATA", "⟦$DATA") + "S 1\n 1 4.0 1.0\n\n $VEC\n 1 1\n", ["form.syntax"]),
+        HEAD.replace("$DATA", "⟦$DATA") + "S 1\n 1 4.0 1.0\n\n $OTHER\n 1 1\n", ["form.syntax"]),
     "shells without an atom": (
         " $DATA\nt\nC1\n ⟦S 1\n 1 4.0 1.0\nP 1\n 1 1.0 1.0\n\n" + HEAD[12:]
         + " S 1\n 1 4.0 1.0\n\n $END\n", ["form.syntax"]),

@@ -80,7 +80,7 @@ def test_line_ends_and_letter_case_do_not_matter() -> None:
 
 RUN_INPUT = """\
 invented oxide
-SLABRUN
+LATTICE
 0 0 0
 225
 4.2
@@ -90,9 +90,9 @@ SLABRUN
 END
 {}99 0
 END
-SHRINK
+GRID
 8 8
-ATOMSPIN
+SPINS
 2
 1 1
 2 -1
@@ -129,7 +129,9 @@ def test_built_in_and_explicit_shells_of_one_element() -> None:
 
 
 def test_a_potential_known_by_name_is_a_note() -> None:
-    document = read_text("247 1 \nHAYWSC\n0 1 1 1. 1.\n 0.6 1.0 1.0\n\nsome reference\n1991 12.\n")
+    document = read_text(
+        "247 1 \nSMALLCORE\n0 1 1 1. 1.\n 0.6 1.0 1.0\n\nsome reference\n1991 12.\n"
+    )
     assert document.layout == "deck"
     assert [fault.severity for fault in document.faults] == ["note"]
     silver = document.blocks[0]
@@ -230,7 +232,7 @@ BROKEN = {
                        ["form.number"]),
     "a damaged shell heading": ("6 2\n0 0 1 2. 1.\n 4.0 1.0\n⟦shell 2\n 4.0 1.0\n99 0\n",
                                 ["form.syntax"]),
-    "the end is lost": ("6 1\n0 0 1 2. 1.\n 4.0 1.0\n⟦END\nSHRINK\n8 8\n", ["form.syntax"]),
+    "the end is lost": ("6 1\n0 0 1 2. 1.\n 4.0 1.0\n⟦END\nGRID\n8 8\n", ["form.syntax"]),
     "the end is damaged": ("6 1\n0 0 1 2. 1.\n 4.0 1.0\n⟦99\n", ["form.count"]),
     "a row of the potential is lost": (
         POTENTIAL.replace(" 4.0 1.5 0\n", "").replace(" 0 1 1", " ⟦0 1 1"), ["form.count"]),
@@ -244,7 +246,7 @@ BROKEN = {
     "the potential is lost": (POTENTIAL.replace("280", "⟦280").replace(
         "INPUT\n20. 0 1 1 0 0 0\n 3.0 15.0 0\n 4.0 1.5 0\n", ""), ["form.syntax"]),
     "a potential that is not announced": (POTENTIAL.replace("280", "⟦80"), ["form.syntax"]),
-    "rows below a named potential": (POTENTIAL.replace("INPUT", "⟦DURAND"), ["form.syntax"]),
+    "rows below a named potential": (POTENTIAL.replace("INPUT", "⟦SMALLCORE"), ["form.syntax"]),
 }  # fmt: skip
 
 
