@@ -3,6 +3,7 @@
 import re
 from collections.abc import Iterator
 from contextlib import suppress
+from math import isfinite
 
 from lark import Token, Tree
 
@@ -277,8 +278,10 @@ class _Reader:
         """The five numbers of a shell heading; None for one that is lost or cannot be read."""
         words, index = heading.split()[:5], index_of(heading)
         if len(words) == 5 and _WHOLE.issuperset("".join(words[:3])):
-            with suppress(ValueError):
-                return [*map(plain, words)]
+            with suppress(ValueError):  # a slip; found below
+                numbers = [*map(plain, words)]
+                if all(map(isfinite, numbers)):
+                    return [*numbers]
         values = [self.build.number(w, index, k, block.symbol, None) for k, w in enumerate(words)]
         if len(words) < 5:
             self.build.fault_line(

@@ -194,6 +194,7 @@ BROKEN = {
     "a row is lost": ("6 1\n0 0 ⟦3 2. 1.\n 4.0 0.6\n 0.5 0.5\n", ["form.count"]),
     "a row too many": ("6 1\n0 0 ⟦1 2. 1.\n 4.0 0.6\n 0.5 0.5\n", ["form.count"]),
     "an absurd count": ("6 1\n0 0 ⟦999999999999999999 2. 1.\n 4.0 0.6\n", ["form.count"]),
+    "a count beyond all numbers": (f"6 1\n0 0 ⟦{'9' * 400} 2. 1.\n 4.0 1.0\n", ["form.number"]),
     "no rows": ("6 2\n⟦0 0 3 2. 1.\n0 0 1 2. 1.\n 1.0 1.0\n", ["form.count"]),
     "a coefficient is lost": ("6 1\n0 0 2 2. 1.\n 4.0 0.6\n ⟦0.5\n", ["form.count"]),
     "a number too many": ("6 1\n0 0 2 2. 1.\n 4.0 0.6\n 0.5 0.5 ⟦0.1\n", ["form.count"]),
