@@ -8,7 +8,7 @@ import re
 from math import isfinite
 from typing import NamedTuple
 
-NUMBER = re.compile(r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[EeDd][+-]?[0-9]+)?")
+NUMBER = re.compile(r"[+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[EeDd][+-]?[0-9]+)?")
 CHARACTERS = frozenset("0123456789+-.eEdD ")
 FORTRAN = str.maketrans("Dd", "Ee")
 
@@ -18,7 +18,7 @@ _LOOK_ALIKES = str.maketrans(
 )
 _LOST_LETTER = re.compile(r"([+-]?(?:[0-9]+\.[0-9]*|\.[0-9]+))([+-][0-9]{1,3})")
 _ABUTTED = re.compile(r"([+-]?[0-9]*\.[0-9]+(?:[EeDd][+-]?[0-9]+)?)([+-][0-9]*\.[0-9]+.*)")
-_OTHER_LETTER = re.compile(r"([+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+))[FfGgHhQqXx^]([+-]?[0-9]+)")
+_OTHER_LETTER = re.compile(r"([+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+))[FfGgHhQqXx^]([+-]?[0-9]+)")
 _LETTER_FOR_POINT = re.compile(r"([+-]?[0-9]+)[A-Za-z;:]([0-9]+(?:[EeDd][+-]?[0-9]+)?)")
 
 

@@ -1,15 +1,17 @@
 """What the readers of counted tables share: an element's tables stand in the order s, p, d ...
 
 The place of a table gives its l.  A lost table or heading would silently change the l of all that
-follow, so comments such as "p-type functions" are held against the place.
+follow, so comments such as "p-type functions" are held against the place.  Where the next comment
+fits the place again, only the comment was wrong.
 """
 
+from collections import deque
 from typing import ClassVar
 
-from lark import Token
+from lark import Token, Tree
 
 from overlapse.grammar.building import BlockDraft, Build, Node, index_of
-from overlapse.grammar.model import Remark, letter_of
+from overlapse.grammar.model import Remark, Severity, letter_of
 from overlapse.grammar.numbers import looks_numeric
 from overlapse.grammar.tables import Tables
 
@@ -25,11 +27,22 @@ class TabledReader:
         self.l = 0  # angular momentum of the next table
         self.found = 0  # tables of the element so far
         self.in_doubt = False  # whether tables are known to be missing or too many
+        self.stated: deque[int | None] = deque()  # what comments say of the tables to come
 
-    def begin(self) -> None:
-        """A new element begins."""
+    def begin(self, pieces: list[Token | Node]) -> None:
+        """A new element begins, with these pieces of the tree."""
         self.l = self.found = 0
         self.in_doubt = False
+        headings = [
+            piece.children[0]
+            for piece in pieces
+            if isinstance(piece, Tree) and piece.data in ("table", "interrupted")
+        ]
+        self.stated = deque(
+            self.tables.stated_above(index_of(heading))
+            for heading in headings
+            if isinstance(heading, Token)
+        )
 
     def next_table(self) -> None:
         self.l += 1
@@ -37,20 +50,23 @@ class TabledReader:
 
     def in_order(self, block: BlockDraft, node: Node) -> BlockDraft:
         """The block a table belongs to: its own unless a comment shows that a heading is lost."""
-        heading = node.children[0]
+        heading, stated = node.children[0], self.stated.popleft()
         assert isinstance(heading, Token)
-        stated = self.tables.stated_above(index_of(heading))
         if stated is None or stated == self.l:
             return block
-        block.complete = False
-        self.in_doubt = True
+        following = self.stated[0] if self.stated else None
+        if following == self.l + 1 or (following is None and 0 < stated < self.l):
+            self.say_order(block, heading, stated, "the comment or the order is wrong", "warning")
+            return block
         if stated == 0:
             lack = "the heading of an element is missing above it"
         elif stated > self.l:
             lack = "a table is missing above it, where an empty one would be `0 0`"
         else:
             lack = "there is a table too many above it"
-        self.say_order(block, heading, letter_of(self.l), letter_of(stated), lack)
+        self.say_order(block, heading, stated, lack, "error")
+        block.complete = False
+        self.in_doubt = True
         self.l = stated
         if stated == 0:
             block = BlockDraft("unknown", None, index_of(heading), "", end=index_of(heading))
@@ -58,18 +74,20 @@ class TabledReader:
         return block
 
     def say_order(
-        self, block: BlockDraft, heading: Token, here: str, there: str, lack: str
+        self, block: BlockDraft, heading: Token, stated: int, lack: str, severity: Severity
     ) -> None:
+        here, there = letter_of(self.l), letter_of(stated)
         self.build.fault_line(
             "form.syntax",
             index_of(heading),
             f"the comment above speaks of {there}, but by its place this table of "
             f"{block.symbol} is {here}: {lack}",
+            severity=severity,
             element=block.symbol,
             measured=here,
             expected=there,
-            remedy="restore what is missing; the tables of an element stand in the order "
-            "s, p, d ... without a gap",
+            remedy="the tables of an element stand in the order s, p, d ... without a gap: restore "
+            "what is missing, or correct the comment",
         )
 
     def interrupted(self, block: BlockDraft, node: Node) -> None:

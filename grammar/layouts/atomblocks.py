@@ -155,7 +155,7 @@ class _Reader(TabledReader):
         heading, *pieces = node.children
         assert isinstance(heading, Token)
         block = self.opened(heading, pieces)
-        self.begin()
+        self.begin(pieces)
         for piece in pieces:
             if not isinstance(piece, Tree):
                 self.prose.append(piece)

@@ -30,7 +30,7 @@ end"""
 
 _SHELL_THEN_ROW = re.compile(
     r"^[ \t]*[A-Za-z]{1,3}[ \t]+(?:[SPDFGHIKLspdfghikl]|[Ss][Pp])[ \t]*(?:#.*)?\n"
-    r"(?:[ \t]*(?:#.*)?\n)*[ \t]*[-+]?(?:\d+\.?\d*|\.\d+)(?:[EeDd][-+]?\d+)?[ \t]+[-+.\d]",
+    r"(?:[ \t]*(?:#.*)?\n)*[ \t]*[-+]?(?:\d+(?:\.\d*)?|\.\d+)(?:[EeDd][-+]?\d+)?[ \t]+[-+.\d]",
     re.MULTILINE,
 )
 _BASIS = re.compile(

@@ -127,7 +127,7 @@ class _Reader(TabledReader):
         assert isinstance(heading, Token)
         element = self.opened(heading)
         block = element.block
-        self.begin()
+        self.begin(pieces)
         for piece in pieces:
             if not isinstance(piece, Tree):
                 self.line(element, piece)

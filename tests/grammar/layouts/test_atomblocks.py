@@ -152,6 +152,11 @@ def test_a_one_behind_each_uncontracted_exponent_is_no_fault() -> None:
     assert document.blocks[0].shells[0].place(1) == (4, 2)
 
 
+def test_a_wrong_comment_does_not_move_a_table() -> None:
+    text = BROKEN["a comment of another l"][0].replace(broken.MARK, "")
+    assert read_text(text, layout="atomblocks").blocks[0].names == ("s-1", "p-1", "d-1")
+
+
 def test_very_many_uncontracted_exponents_are_shells_of_their_own() -> None:
     exponents = [3000.0 - at for at in range(3000)]
     document = read_text("a 6\n 3000 0 0\n" + "\n".join(map(str, exponents)) + "\n")
@@ -227,6 +232,11 @@ BROKEN = {
                                      " 1.0 1.0\n$ p-type\n 1 1 0\n 2.0 1.0\n", ["form.syntax"]),
     "a table twice": ("a 6\n$ s-type\n 1 1 0\n 9.0 1.0\n$ p-type\n 1 1 0\n 1.0 1.0\n$ p-type\n"
                       " ⟦1 1 0\n 1.0 1.0\n", ["form.syntax"]),
+    "a comment of another l": ("a 6\n$ s-type\n 1 1 0\n 9.0 1.0\n$ d-type\n ⟦1 1 0\n 1.0 1.0\n"
+                               "$ d-type\n 1 1 0\n 1.0 1.0\n", ["form.syntax"]),
+    "a table twice and more": (
+        "a 6\n$ s-type\n 1 1 0\n 9.0 1.0\n$ p-type\n 1 1 0\n 9.0 1.0\n$ p-type\n ⟦1 1 0\n"
+        " 9.0 1.0\n$ d-type\n 1 1 0\n 1.0 1.0\n", ["form.syntax"]),
     "half a heading": ("a 6\n ⟦2\n 1.0 1.0\n 0.5 1.0\n", ["form.syntax"]),
     "a damaged heading": ("a 6\n 1 1 0\n 9.0 1.0\n⟦x 1 0\n 1.0 1.0\n", ["form.syntax"]),
     "rows without heading": ("a 6\n ⟦1.0 1.0\n 1 1 0\n 1.0 1.0\n", ["form.syntax"]),

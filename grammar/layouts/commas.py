@@ -1,0 +1,399 @@
+"""Reader for the layout of statements with commas: `s, C, exponents`, then `c, 1.3, ...`."""
+
+import re
+from collections.abc import Iterator
+from typing import NamedTuple
+
+from lark import Token, Tree
+
+from overlapse.grammar.building import (
+    BlockDraft,
+    Build,
+    Node,
+    Run,
+    index_of,
+    shorten,
+)
+from overlapse.grammar.layout import Evidence, Layout, Written
+from overlapse.grammar.model import Block, Document, Grid, letter_of
+from overlapse.grammar.source import Source
+from overlapse.grammar.statedcores import read_stated, stated_lines
+from overlapse.grammar.statements import FIELD, Statements, fault_field, fields_of, run_of
+from overlapse.grammar.writing import Losses, split_shared, title_of
+
+PICTURE = """\
+basis={
+s, C , 4.0, 0.5
+c, 1.2, 0.6, 0.5
+}"""
+
+_SHELL = re.compile(
+    r"(?:^|[;{])[ \t]*([spdfghik][ \t]*,[ \t]*[A-Z]{1,3}[ \t]*,[ \t]*[-+]?\.?\d)",
+    re.MULTILINE | re.IGNORECASE,
+)
+_COLUMN = re.compile(r"(?:^|;)[ \t]*(c[ \t]*,[ \t]*\d+\.\d+[ \t]*,)", re.MULTILINE | re.IGNORECASE)
+_BASIS = re.compile(r"(?:^|[ \t,])basis[ \t]*=[ \t]*\{", re.MULTILINE | re.IGNORECASE)
+_ECP = re.compile(
+    r"(?:^|[;{])[ \t]*(ecp[ \t]*,[ \t]*[A-Z]{1,3}[ \t]*,[ \t]*\d+[ \t]*,[ \t]*\d+)",
+    re.MULTILINE | re.IGNORECASE,
+)
+_RANGE = re.compile(r"([0-9]{1,6})\.([0-9]{1,6})")
+
+
+def recognise(source: Source) -> Evidence | None:
+    text = source.flat
+    shell = _SHELL.search(text)
+    if shell and (column := _COLUMN.search(text)):
+        return Evidence(85, f"statements such as `{shell[1]}...` and `{column[1]} ...`")
+    if shell and _BASIS.search(text):
+        return Evidence(85, f"`basis={{` and statements such as `{shell[1]}...`")
+    if potential := _ECP.search(text):
+        return Evidence(80, f"the statement `{potential[1]}`")
+    if shell and _SHELL.search(text, shell.end()):
+        return Evidence(65, f"statements such as `{shell[1]}...`")
+    return None
+
+
+def read(source: Source) -> Document:
+    return _Reader(source).document()
+
+
+class _Column(NamedTuple):
+    """A contraction: which exponents it covers, and where its first coefficient stands.
+
+    ``first`` and ``last`` count from 0, ``last`` past the end; ``at`` is a place in the run.
+    """
+
+    first: int
+    last: int
+    at: int
+    statement: Token
+
+
+class _Reader:
+    """Walks the tree of one text."""
+
+    def __init__(self, source: Source) -> None:
+        self.build = Build(source, "commas", "!", FIELD)
+        self.section = ""
+        self.sections = 0
+        self.known: dict[tuple[str, str], BlockDraft] = {}  # the last of a section and symbol
+        self.last: BlockDraft | None = None
+
+    def document(self) -> Document:
+        tokens = list(Statements(self.build.bodies).tokens())
+        self.build.note_letters(
+            (fields_of(token)[0], index_of(token)) for token in tokens if token.type == "SHELL"
+        )
+        for piece in self.build.parse(tokens).children:
+            if isinstance(piece, Tree):
+                getattr(self, str(piece.data))(piece)
+            else:
+                self.single(piece)
+        return self.build.document()
+
+    def basis(self, node: Node) -> None:
+        self.sections += 1
+        self.section = f"basis {self.sections}"
+        for piece in node.children:
+            if isinstance(piece, Tree):
+                getattr(self, str(piece.data))(piece)
+            else:
+                self.single(piece)
+        self.section = ""
+        opening, last = node.children[0], node.children[-1]
+        assert isinstance(opening, Token)
+        if not (isinstance(last, Token) and last.type == "CLOSE"):
+            self.build.fault_line(
+                "form.syntax",
+                index_of(opening),
+                f"the section `{opening}` is not closed by a brace",
+                severity="warning",
+                expected="}",
+                remedy="put a line `}` after the last statement of the basis",
+            )
+
+    def single(self, token: Token) -> None:
+        """A statement that has no children."""
+        if token.type == "SET":
+            self.section = f"basis {self.sections} {' '.join(fields_of(token)[1:]).lower()}"
+        elif token.type == "REFER":
+            fault_field(
+                self.build,
+                token,
+                0,
+                "form.syntax",
+                f"{shorten(str(token))!r} names a set that stands in a library, not in this text: "
+                "it is not judged",
+                severity="note",
+                remedy="write the numbers out to have them judged",
+            )
+
+    def stray(self, node: Node) -> None:
+        first = node.children[0]
+        assert isinstance(first, Token)
+        what = "contraction" if first.type == "COLUMN" else "numbers"
+        wanted = "s, C, 4.0, 0.5"
+        if self.last is not None:
+            self.last.complete = False
+        fault_field(
+            self.build,
+            first,
+            0,
+            "form.syntax",
+            f"{what} without exponents above; a statement such as `{wanted}` is missing",
+            expected=wanted,
+            remedy="write the statement with letter, symbol and exponents",
+        )
+
+    def remark(self, node: Node) -> None:
+        line = node.children[0]
+        assert isinstance(line, Token)
+        if self.last is not None:
+            self.last.complete = False
+        fault_field(
+            self.build,
+            line,
+            0,
+            "form.syntax",
+            f"{shorten(str(line))!r} is no statement of a basis",
+            expected="`s, C, 4.0, 0.5` or `c, 1.2, 0.6, 0.5`",
+            remedy="mend the statement, or make it a comment with `!`",
+        )
+
+    # ---- shells
+
+    def shell(self, node: Node) -> None:
+        heading, *rest = node.children
+        assert isinstance(heading, Token)
+        fields = fields_of(heading)
+        angular = self.build.angular_of(fields[0], index_of(heading), heading.column or 0)
+        block = self.block(heading, fields[1] if len(fields) > 1 else "", angular)
+        for piece in rest:
+            if isinstance(piece, Tree):
+                self.remark(piece)
+        columns = [piece for piece in rest if isinstance(piece, Token)]
+        count = len(fields) - 2
+        whole = all([self.has_fields(token, block) for token in (heading, *columns)])
+        run, places = run_of([heading, *columns], self.build.bodies)
+        if count < 1:
+            fault_field(
+                self.build,
+                heading,
+                0,
+                "form.count",
+                "no exponents follow the letter and the symbol",
+                element=block.symbol,
+                measured=0,
+                remedy="restore the exponents, or take the statement out",
+            )
+        found = self.columns(block, heading, columns, places[1:]) if count > 0 and whole else []
+        kept = angular is not None and whole and count > 0 and (found or not columns)
+        block.complete = block.complete and bool(kept) and len(found) == len(columns)
+        block.end = max(block.end, *run.lines)
+        if angular is None or not kept:
+            self.build.check_words(block, None, run)
+        elif not columns:
+            for at in range(2, 2 + count):
+                grid = Grid(at, 1, at, 1, 1)
+                self.build.matrix(
+                    block, angular[0], index_of(heading), run, (1, 1), grid, unit=True
+                )
+        else:
+            self.keep(block, angular[0], index_of(heading), run, found)
+
+    def block(self, heading: Token, symbol: str, angular: tuple[int, ...] | None) -> BlockDraft:
+        """The block of a symbol; a new one where the list of shells begins anew.
+
+        Elements may take turns, as long as each goes on where it stopped.
+        """
+        key = (self.section, symbol.lower())
+        known = self.known.get(key)
+        shells = known.shells if known is not None and known is not self.last else []
+        if known is None or (angular and shells and angular[0] <= shells[-1].angular[0]):
+            known = self.known[key] = self.build.open_block(
+                symbol, index_of(heading), section=self.section, word=(heading.column or 0) + 1
+            )
+        self.last = known
+        return known
+
+    def has_fields(self, token: Token, block: BlockDraft) -> bool:
+        """Whether a comma stands between any two fields, and a field between any two commas."""
+        parts = token.split(",")
+        whole, field = True, 0
+        if len(parts) == len(fields_of(token)):
+            return True
+        for part in parts:
+            words = part.split()
+            if len(words) == 1:
+                field += 1
+                continue
+            fault_field(
+                self.build,
+                token,
+                max(field - 1, 0) if not words else field + 1,
+                "form.syntax",
+                f"a comma is missing before {shorten(words[1])!r}"
+                if words
+                else "nothing stands between the comma behind this and the next",
+                element=block.symbol,
+                remedy="put the comma in" if words else "restore the number that was lost",
+            )
+            whole = whole and bool(words)
+            field += len(words)
+        return whole
+
+    def columns(
+        self, block: BlockDraft, heading: Token, tokens: list[Token], places: list[int]
+    ) -> list[_Column]:
+        """The contractions that fit their ranges, and these the exponents; faults for the rest."""
+        count = len(fields_of(heading)) - 2
+        found = [
+            _Column(*covered, place + 2, token)
+            for token, place in zip(tokens, places, strict=True)
+            if (covered := self.range(block, token)) is not None
+        ]
+        highest = max((column.last for column in found), default=0)
+        if highest > count and all(column.last != count for column in found):
+            fault_field(
+                self.build,
+                heading,
+                count + 1,
+                "form.count",
+                f"{count} exponents stand here, the contractions below cover {highest}",
+                element=block.symbol,
+                measured=count,
+                expected=highest,
+                remedy="an exponent was lost, or the ranges of the contractions are wrong",
+            )
+            return []
+        for column in found:
+            if column.last > count:
+                fault_field(
+                    self.build,
+                    column.statement,
+                    1,
+                    "form.count",
+                    f"the range goes up to exponent {column.last}, but the statement above has "
+                    f"{count}",
+                    element=block.symbol,
+                    measured=column.last,
+                    expected=count,
+                    remedy="mend the range: first and last exponent, with a point between them",
+                )
+        return [column for column in found if column.last <= count]
+
+    def range(self, block: BlockDraft, token: Token) -> tuple[int, int] | None:
+        """First exponent and the one past the last, from 0, if as many coefficients follow."""
+        word, *coefficients = fields_of(token)[1:] or [""]
+        match = _RANGE.fullmatch(word)
+        first, last = (int(match[1]), int(match[2])) if match else (0, 0)
+        if not 0 < first <= last:
+            fault_field(
+                self.build,
+                token,
+                1 if word else 0,
+                "form.number",
+                f"{shorten(word)!r} is no range: first and last exponent, with a point between",
+                element=block.symbol,
+                measured=shorten(word),
+                expected=f"1.{len(coefficients) or 1}",
+                remedy="write the range, such as 1.3 for the first three exponents",
+            )
+            return None
+        if last - first + 1 == len(coefficients):
+            return first - 1, last
+        fault_field(
+            self.build,
+            token,
+            1,
+            "form.count",
+            f"the range {word} announces {last - first + 1} coefficients, {len(coefficients)} "
+            "follow",
+            element=block.symbol,
+            measured=len(coefficients),
+            expected=last - first + 1,
+            remedy="a coefficient was lost or added, or the range is wrong",
+        )
+        return None
+
+    def keep(self, block: BlockDraft, l: int, index: int, run: Run, columns: list[_Column]) -> None:
+        """Contractions over the same exponents, evenly spaced in the text, make one shell."""
+        at = 0
+        while at < len(columns):
+            first, end = columns[at], at + 1
+            step = columns[end].at - first.at if end < len(columns) else 1
+            while (
+                end < len(columns)
+                and columns[end][:2] == first[:2]
+                and columns[end].at - columns[end - 1].at == step
+            ):
+                end += 1
+            shape = (first.last - first.first, end - at)
+            grid = Grid(2 + first.first, 1, first.at, 1, step if end - at > 1 else 1)
+            self.build.matrix(block, l, index, run, shape, grid)
+            at = end
+
+    # ---- core potentials
+
+    def potential(self, node: Node) -> None:
+        heading, *rest = node.children
+        assert isinstance(heading, Token)
+        for piece in rest:
+            if isinstance(piece, Tree):
+                self.remark(piece)
+        numbers = [piece for piece in rest if isinstance(piece, Token)]
+        fields = fields_of(heading)
+        block = self.owner(heading, fields[1] if len(fields) > 1 else "")
+        if len(fields) == 3 and not numbers and not fields[2].isdigit():
+            block.complete = False
+            self.single(Token.new_borrow_pos("REFER", str(heading), heading))
+            return
+        read_stated(self.build, block, heading, numbers)
+
+    def owner(self, heading: Token, symbol: str) -> BlockDraft:
+        """The block that a potential belongs to: the element's in this section, if there is one."""
+        self.last = self.known.get((self.section, symbol.lower()))
+        return self.last or self.block(heading, symbol, None)
+
+
+def write(document: Document) -> Written:
+    """A section for each set; a `c` statement for each contraction."""
+    losses = Losses()
+    lines: list[str] = []
+    if any(block.functions for block in document.blocks):
+        losses.say("the layout has no flag for spherical or Cartesian functions")
+    for members in document.sets:
+        lines.append("basis={")
+        for block in members.blocks:
+            if block.label or members.label:
+                losses.say("a set's name is only a comment here")
+            lines.append(f"! {block.symbol} {title_of(document, block)}")
+            lines += _shell_lines(block, losses)
+            lines += stated_lines(block, losses)
+        lines.append("}")
+    return Written("\n".join(lines) + "\n", losses.lines())
+
+
+def _shell_lines(block: Block, losses: Losses) -> Iterator[str]:
+    for shell in block.shells:
+        if len(shell.angular) > 1:
+            losses.say("shared s and p exponents are written as an s and a p shell", block.symbol)
+        used = iter(shell.coefficients.T != 0.0)
+        for l, exponents, table in split_shared(shell):
+            yield f"{letter_of(l)}, {block.symbol} , {', '.join(exponents)}"
+            for column, in_use in zip(zip(*table, strict=True), used, strict=False):
+                places = in_use.nonzero()[0].tolist() or [0, len(column) - 1]
+                first, last = places[0], places[-1]
+                yield f"c, {first + 1}.{last + 1}, {', '.join(column[first : last + 1])}"
+
+
+LAYOUT = Layout(
+    name="commas",
+    summary="statements `s, C, exponents`, then `c, 1.3, coefficients` for each contraction",
+    picture=PICTURE,
+    comment="!",
+    recognise=recognise,
+    read=read,
+    write=write,
+)

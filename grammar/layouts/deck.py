@@ -1,0 +1,512 @@
+"""Reader for the layout that is numbers alone: `6 4` heads an element, `0 0 3 2.0 1.0` a shell."""
+
+import re
+from collections.abc import Iterator
+from contextlib import suppress
+from math import isfinite
+
+from lark import Token, Tree
+
+from overlapse.grammar.building import BlockDraft, Build, Node, index_of, integer, shorten
+from overlapse.grammar.charged import charged_lines, read_charged
+from overlapse.grammar.elements import replaced_by, subshells, symbol_of
+from overlapse.grammar.layout import Evidence, Layout, Written
+from overlapse.grammar.model import Block, Document, letter_of
+from overlapse.grammar.numbers import plain
+from overlapse.grammar.plainlines import WITH_POTENTIAL, Lines
+from overlapse.grammar.source import Source
+from overlapse.grammar.writing import Losses, columns, is_general, segments
+
+PICTURE = """\
+6 1
+0 0 2 2.0 1.0
+  4.0  0.6
+  0.5  0.5"""
+
+# Shell types by their number, each with the electrons that it can hold.
+_TYPES = (("s", 2), ("sp", 8), ("p", 6), ("d", 10), ("f", 14), ("g", 18))
+_TYPE_LIST = "0 s, 1 sp, 2 p, 3 d, 4 f, 5 g"
+_FIVE = "0 and the shell type, the number of rows, the formal charge, the scale factor"
+_WHOLE = frozenset("0123456789")
+# Published scale factors lie near 1; far outside of this stands something else.
+_SCALES = (0.01, 100.0)
+
+# Neighbours in a pattern never match the same signs, else a long line would take for ever.
+_PLAIN = r"(?:\d+(?:\.\d*)?|\.\d+)"
+_SHELL = rf"[012][ \t]+[0-5][ \t]+\d{{1,3}}[ \t]+{_PLAIN}[ \t]+{_PLAIN}(?!\S)[^\n]*"
+_NEXT = r"[ \t]*\n(?:[ \t]*\n)*[ \t]*"
+_BLOCK_THEN_SHELL = re.compile(
+    rf"^[ \t]*([1-9]\d{{0,2}}[ \t]+\d{{1,2}}){_NEXT}(?:[A-Za-z]{{3,12}}{_NEXT})?({_SHELL})$",
+    re.MULTILINE,
+)
+_BLOCK_THEN_POTENTIAL = re.compile(
+    rf"^[ \t]*([2-9]\d\d[ \t]+\d{{1,2}}){_NEXT}INPUT{_NEXT}{_PLAIN}(?:[ \t]+\d+){{6}}\b",
+    re.MULTILINE | re.IGNORECASE,
+)
+_SHELLS_THEN_ROWS = re.compile(
+    rf"^[ \t]*(?=0){_SHELL}{_NEXT}[-+]?\d*\.\S*[ \t]+[-+]?\.?\d", re.MULTILINE
+)
+
+
+def recognise(source: Source) -> Evidence | None:
+    text = source.flat
+    if match := _BLOCK_THEN_SHELL.search(text):
+        return Evidence(75, f"`{match[1]}` followed by the shell heading `{match[2].strip()}`")
+    if match := _BLOCK_THEN_POTENTIAL.search(text):
+        return Evidence(75, f"`{match[1]}`, `INPUT` and seven numbers of a core potential")
+    if len(found := _SHELLS_THEN_ROWS.findall(text)) > 1:
+        return Evidence(55, f"{len(found)} shell headings of five numbers, but no element heading")
+    return None
+
+
+def read(source: Source) -> Document:
+    return _Reader(source).document()
+
+
+class _Reader:
+    """Walks the tree of one text."""
+
+    def __init__(self, source: Source) -> None:
+        self.build = Build(source, "deck")
+        self.lists = 0  # that have ended
+        self.numbers: dict[tuple[int, int], str] = {}  # of headings, by list and atomic number
+
+    def document(self) -> Document:
+        pieces = self.build.parse(Lines(self.build.bodies).tokens()).children
+        last_end = max((at for at, piece in enumerate(pieces) if _is_token(piece)), default=-1)
+        still_open: list[Node] = []
+        for at, piece in enumerate(pieces):
+            if isinstance(piece, Token):
+                self.end(piece)
+                still_open = []
+            elif piece.data == "block":
+                goes_on = at + 1 < last_end and not _is_token(pieces[at + 1])
+                self.block(piece, goes_on)
+                still_open.append(piece)
+            else:
+                self.stray(piece)
+        self.check_end(still_open)
+        return self.build.document()
+
+    def end(self, line: Token) -> None:
+        self.lists += 1
+        if line.split() != ["99", "0"]:
+            self.build.fault_line(
+                "form.count",
+                index_of(line),
+                "the line that ends the list has lost its 0",
+                measured=1,
+                expected="99 0",
+                remedy="write `99 0`",
+            )
+
+    def check_end(self, blocks: list[Node]) -> None:
+        """A list that runs on into the next section, or is several elements long without an end."""
+        if not blocks:
+            return
+        last = blocks[-1].children[-1]
+        text = last.children[0] if isinstance(last, Tree) and last.data == "remark" else None
+        within = isinstance(text, Token) and text.split()[0].upper() == "END"
+        if within or len(blocks) > 1:
+            line = text if within else blocks[-1].children[0]
+            assert isinstance(line, Token)
+            self.build.fault_line(
+                "form.syntax",
+                index_of(line),
+                "the list of elements is not closed by `99 0`"
+                + (" before this line" if within else ", of which this is the last"),
+                severity="warning" if within else "note",
+                expected="99 0",
+                remedy="put a line `99 0` after the last shell of the last element",
+            )
+
+    def stray(self, node: Node) -> None:
+        first = node.children[0]
+        assert isinstance(first, Token)
+        self.build.fault_line(
+            "form.syntax",
+            index_of(first),
+            "this stands below no element; a line with the atomic number and the number of shells "
+            "is missing above it",
+            expected="a heading such as `6 4`",
+            remedy="write the heading of the element that this belongs to",
+        )
+
+    # ---- one element
+
+    def block(self, node: Node, goes_on: bool) -> None:
+        """``goes_on``: another element of the same list follows."""
+        heading, *pieces = node.children
+        assert isinstance(heading, Token)
+        block = self.headed(heading)
+        announced = self.announced(heading, block)
+        trees = [piece for piece in pieces if isinstance(piece, Tree)]
+        if not any(tree.data == "potential" for tree in trees):
+            self.check_potential(block, heading)
+        shells = [tree for tree in trees if tree.data in ("shell", "bare")]
+        first_of_next = self.lost_heading(block, announced, shells)
+        sound, found = announced is not None and first_of_next is None, 0
+        for at, tree in enumerate(trees):
+            if tree is first_of_next:
+                break
+            if tree.data == "potential":
+                self.potential(block, heading, tree)
+            elif tree.data in ("shell", "bare"):
+                # Below a line that nobody understands the next element may have begun.
+                if sound or found != announced:
+                    self.shell(block, tree)
+                    found += 1
+            elif (
+                len(tree.children) > 1 or at + 1 < len(trees) or goes_on or tree.data == "unheaded"
+            ):
+                self.misfit(block, tree)
+                sound = False
+        if sound and found != announced:
+            self.build.fault_word(
+                "form.count",
+                index_of(heading),
+                1,
+                f"{heading.split()[1]} shells are announced for {block.symbol}, {found} follow",
+                element=block.symbol,
+                measured=found,
+                expected=announced,
+                remedy="a shell was lost or added, or the count is wrong",
+            )
+            block.complete = block.complete and found > (announced or 0)
+
+    def headed(self, heading: Token) -> BlockDraft:
+        """The block that a heading opens; other numbers for one element make other sets."""
+        word, index = heading.split()[0], index_of(heading)
+        z = int(word) % 100
+        first = self.numbers.setdefault((self.lists, z), word)
+        section = f"{self.lists}" if first == word else f"{self.lists} {word}"
+        if z > 0:
+            return self.build.open_block(symbol_of(z), index, section=section)
+        self.build.fault_word(
+            "form.element",
+            index,
+            0,
+            f"{word} stands for no element: its last two digits are the atomic number",
+            measured=word,
+            remedy="write the atomic number; add 200 where a core potential follows",
+        )
+        block = BlockDraft(word, None, index, section, end=index)
+        self.build.blocks.append(block)
+        return block
+
+    def announced(self, heading: Token, block: BlockDraft) -> int | None:
+        words = heading.split()
+        if len(words) > 1:
+            return integer(words[1])
+        self.build.fault_line(
+            "form.count",
+            index_of(heading),
+            f"the number of shells of {block.symbol} is missing",
+            element=block.symbol,
+            expected=f"{words[0]} 4",
+            remedy="write the number of shells after the atomic number",
+        )
+        return None
+
+    def lost_heading(
+        self, block: BlockDraft, announced: int | None, shells: list[Node]
+    ) -> Node | None:
+        """The shell that begins another element whose heading is lost.
+
+        When all shells have come, and after a d shell an s shell follows, that is likelier than a
+        wrong count.
+        """
+        if not announced or len(shells) <= announced:
+            return None
+        before, first = (str(node.children[0]).split()[1] for node in shells[announced - 1 :][:2])
+        if first > "1" or before <= first:
+            return None
+        line = shells[announced].children[0]
+        assert isinstance(line, Token)
+        self.build.fault_line(
+            "form.syntax",
+            index_of(line),
+            f"the {announced} shells announced for {block.symbol} are complete; "
+            "the heading of the next element is missing above this line",
+            expected="a heading such as `6 4`",
+            remedy="write the atomic number and the number of shells of the next element",
+        )
+        return shells[announced]
+
+    def misfit(self, block: BlockDraft, node: Node) -> None:
+        """Rows or text where a shell heading belongs."""
+        line = node.children[0]
+        assert isinstance(line, Token)
+        block.complete = False
+        what = f"{str(line)!r} is" if node.data == "remark" else "rows without a heading:"
+        self.build.fault_line(
+            "form.syntax",
+            index_of(line),
+            f"{what} no shell heading, which has five numbers: {_FIVE}",
+            element=block.symbol,
+            expected="a shell heading such as `0 0 3 2.0 1.0`",
+            remedy="write the heading of the shell, or take the line out: there are no comments",
+        )
+
+    def shell(self, block: BlockDraft, node: Node) -> None:
+        heading = node.children[0]
+        rows = node.children[1] if len(node.children) > 1 else None
+        assert isinstance(heading, Token) and (rows is None or isinstance(rows, Token))
+        run = self.build.rows(rows)
+        kind, shape, count, charge, scale = self.five(block, heading)
+        if kind in (1.0, 2.0) and not run.rows:
+            self.built_in(block, heading)
+            return
+        if kind != 0.0 or shape is None or not 0 <= shape < len(_TYPES):
+            self.unknown(block, heading, kind, shape)
+            self.build.check_words(block, None, run)
+            return
+        letters, capacity = _TYPES[int(shape)]
+        if all(len(row) == len(letters) + 1 for row in run.rows):
+            self.check_charge(block, heading, letters, capacity, charge or 0.0)
+        self.build.shell(
+            block,
+            letters,
+            index_of(heading),
+            run,
+            announced=None if count is None else f"{count:.0f}",
+            announced_word=2,
+            scale=self.scale(block, heading, scale),
+        )
+
+    def five(self, block: BlockDraft, heading: Token) -> list[float | None]:
+        """The five numbers of a shell heading; None for one that is lost or cannot be read."""
+        words, index = heading.split()[:5], index_of(heading)
+        if len(words) == 5 and _WHOLE.issuperset("".join(words[:3])):
+            with suppress(ValueError):  # a slip; found below
+                numbers = [*map(plain, words)]
+                if all(map(isfinite, numbers)):
+                    return [*numbers]
+        values = [self.build.number(w, index, k, block.symbol, None) for k, w in enumerate(words)]
+        if len(words) < 5:
+            self.build.fault_line(
+                "form.count",
+                index,
+                f"{len(words)} numbers in a shell heading; it has five: {_FIVE}",
+                element=block.symbol,
+                measured=len(words),
+                expected=5,
+                remedy="restore the missing number from the source",
+            )
+        for at, value in enumerate(values[:3]):
+            if value is not None and not value.is_integer():
+                self.not_whole(block, index, at, words[at])
+                values[at] = None
+        return values + [None] * (5 - len(values))
+
+    def not_whole(self, block: BlockDraft, index: int, ordinal: int, word: str) -> None:
+        self.build.fault_word(
+            "form.number",
+            index,
+            ordinal,
+            f"{shorten(word)!r} stands where a whole number belongs",
+            element=block.symbol,
+            measured=shorten(word),
+            remedy="write a whole number; perhaps a number before it was lost",
+        )
+
+    def unknown(
+        self, block: BlockDraft, heading: Token, kind: float | None, shape: float | None
+    ) -> None:
+        """A shell that cannot be read for what its first two numbers say, or do not say."""
+        words, index = heading.split(), index_of(heading)
+        block.complete = False
+        block.end = max(block.end, index)
+        if kind is not None and kind != 0.0:
+            built_in = kind in (1.0, 2.0)
+            message = (
+                f"kind {words[0]} is a built-in shell, which has no rows, but rows follow"
+                if built_in
+                else f"{words[0]} is no kind of shell: 0 has rows, 1 and 2 are built in"
+            )
+            self.build.fault_word(
+                "form.syntax",
+                index,
+                0,
+                message,
+                element=block.symbol,
+                measured=words[0],
+                expected=0,
+                remedy="write 0 for a shell whose rows follow",
+            )
+        elif shape is not None and kind is not None:
+            self.build.fault_word(
+                "form.letter",
+                index,
+                1,
+                f"{words[1]} is no shell type: {_TYPE_LIST}",
+                element=block.symbol,
+                measured=words[1],
+                expected=_TYPE_LIST,
+                remedy="write the number of the shell's type",
+            )
+
+    def built_in(self, block: BlockDraft, heading: Token) -> None:
+        """A shell whose numbers are known to the program alone: said once for each element."""
+        if block.complete:
+            self.build.fault_line(
+                "form.syntax",
+                index_of(heading),
+                f"this shell of {block.symbol} is built into the program that reads the list: its "
+                "numbers stand nowhere in the text, and it is not judged",
+                severity="note",
+                element=block.symbol,
+                remedy="write the shells out, with kind 0 and their rows, to have them judged",
+            )
+        block.complete = False
+        block.end = max(block.end, index_of(heading))
+
+    def check_charge(
+        self, block: BlockDraft, heading: Token, letters: str, capacity: int, charge: float
+    ) -> None:
+        if not 0.0 <= charge <= capacity:
+            self.build.fault_word(
+                "form.number",
+                index_of(heading),
+                3,
+                f"a formal charge of {charge:g} electrons; one {letters} shell holds 0 to "
+                f"{capacity}",
+                severity="warning",
+                element=block.symbol,
+                measured=charge,
+                expected=capacity,
+                remedy="mend the formal charge, or the shell type before it",
+            )
+
+    def scale(self, block: BlockDraft, heading: Token, value: float | None) -> float:
+        """The scale factor, or 1 where it is lost or senseless."""
+        if value is None or _SCALES[0] <= value <= _SCALES[1]:
+            return 1.0 if value is None else value
+        self.build.fault_word(
+            "form.number",
+            index_of(heading),
+            4,
+            f"a scale factor of {value:g}: exponents are multiplied by its square",
+            element=block.symbol,
+            measured=value,
+            expected=1.0,
+            remedy="write 1.0 where the exponents stand for themselves",
+        )
+        return 1.0
+
+    # ---- core potentials
+
+    def check_potential(self, block: BlockDraft, heading: Token) -> None:
+        word = heading.split()[0]
+        if int(word) >= WITH_POTENTIAL:
+            block.complete = False
+            self.build.fault_word(
+                "form.syntax",
+                index_of(heading),
+                0,
+                f"{word} announces a core potential, but neither `INPUT` nor a name follows",
+                element=block.symbol,
+                measured=word,
+                expected=int(word) % 100,
+                remedy=f"write {int(word) % 100} for an all-electron set, or restore the potential",
+            )
+
+    def potential(self, block: BlockDraft, heading: Token, node: Node) -> None:
+        name, *rest = [piece for piece in node.children if isinstance(piece, Token)]
+        word = heading.split()[0]
+        if int(word) < WITH_POTENTIAL:
+            self.build.fault_word(
+                "form.syntax",
+                index_of(heading),
+                0,
+                f"{word} announces no core potential, but {str(name)!r} follows",
+                element=block.symbol,
+                measured=word,
+                expected=WITH_POTENTIAL + int(word) % 100,
+                remedy=f"write {WITH_POTENTIAL + int(word) % 100}",
+            )
+        if name.upper() == "INPUT":
+            read_charged(self.build, block, int(word) % 100, name, rest)
+            return
+        block.complete = False
+        self.build.fault_line(
+            "form.syntax",
+            index_of(name),
+            f"the core potential {str(name)!r} of {block.symbol} is built into the program that "
+            "reads the list: it is not judged, nor is the number of its electrons known"
+            if not rest
+            else f"numbers follow the name {str(name)!r}: only `INPUT` announces numbers",
+            severity="error" if rest else "note",
+            element=block.symbol,
+            expected="INPUT" if rest else None,
+            remedy="write the potential out below `INPUT` to have it judged",
+        )
+
+
+def _is_token(piece: Token | Node) -> bool:
+    return isinstance(piece, Token)
+
+
+def write(document: Document) -> Written:
+    """Every shell by itself; formal charges are those of the neutral atom."""
+    losses = Losses()
+    lines: list[str] = []
+    losses.say("formal charges are filled in as the neutral atom has them")
+    losses.say("the layout has no comments: names and remarks are left out")
+    if any(block.functions for block in document.blocks):
+        losses.say("the layout has no flag for spherical or Cartesian functions")
+    if len(document.sets) > 1:
+        losses.say("names that keep several sets of one file apart are not written")
+    for block in document.blocks:
+        if block.atomic_number > 98:
+            losses.say("elements beyond 98 have no number here and are left out", block.symbol)
+            continue
+        lines += _block_lines(block, losses)
+    return Written("\n".join([*lines, "99 0"]) + "\n", losses.lines())
+
+
+def _block_lines(block: Block, losses: Losses) -> Iterator[str]:
+    tables: list[tuple[tuple[int, ...], list[list[str]]]] = []
+    for shell in block.shells:
+        if max(shell.angular) > 4:
+            losses.say("functions above g have no shell type here and are left out", block.symbol)
+            continue
+        if is_general(shell):
+            losses.say("general contractions are written as separate shells", block.symbol)
+        tables += segments(shell)
+    potential = list(charged_lines(block, losses))
+    if not tables and not potential:
+        return
+    yield f"{block.atomic_number + WITH_POTENTIAL * bool(potential)} {len(tables)}"
+    yield from potential
+    charges = _charges(block)
+    for angular, rows in tables:
+        shape = "".join(map(letter_of, angular))
+        number = next(at for at, (letters, _) in enumerate(_TYPES) if letters == shape)
+        charge = sum(charges[l].pop(0) for l in angular if charges.get(l))
+        yield f"0 {number} {len(rows)} {charge}.0 1.0"
+        yield from columns(rows, 2)
+
+
+def _charges(block: Block) -> dict[int, list[int]]:
+    """Electrons of the occupied subshells outside the core, by l, from the inside out."""
+    core = block.potential.electrons if block.potential else 0
+    left = block.atomic_number
+    charges: dict[int, list[int]] = {}
+    for _, l in subshells(block.atomic_number):
+        charges.setdefault(l, []).append(min(left, 4 * l + 2))
+        left -= charges[l][-1]
+    for l, count in (replaced_by(core) or {}).items():
+        del charges.get(l, [])[:count]
+    return charges
+
+
+LAYOUT = Layout(
+    name="deck",
+    summary="numbers alone: `6 4` heads an element, `0 0 3 2.0 1.0` a shell, `99 0` ends the list",
+    picture=PICTURE,
+    comment="",
+    recognise=recognise,
+    read=read,
+    write=write,
+)
