@@ -38,6 +38,7 @@ class Layout:
     write: document to text in this layout, with the digits as they were spelled.
     raw_primitives: whether texts of this layout may have coefficients over raw primitives; to all
         others a document is written with its coefficients over normalised ones.
+    highest: highest angular momentum that the layout has a sign for.
     any_line: whether line ends mean nothing here, so that a line may be as long as it likes.
     """
 
@@ -50,6 +51,7 @@ class Layout:
     write: Callable[[Document], Written]
     raw_primitives: bool = False
     any_line: bool = False
+    highest: int = 20
 
     def __post_init__(self) -> None:
         if not self.raw_primitives:

@@ -509,4 +509,5 @@ LAYOUT = Layout(
     recognise=recognise,
     read=read,
     write=write,
+    highest=4,
 )
