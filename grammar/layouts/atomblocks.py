@@ -7,15 +7,15 @@ from itertools import zip_longest
 from lark import Token, Tree
 
 from overlapse.grammar.building import BlockDraft, Build, Node, index_of, integer
-from overlapse.grammar.channels import channels_of, joined_channels, ladder, rows_of
 from overlapse.grammar.elements import number_of, symbol_of
-from overlapse.grammar.gathering import composition, gathered
-from overlapse.grammar.headings import count_of, heading_of, whole
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Potential, letter_of
+from overlapse.grammar.pieces.channels import channels_of, joined_channels, ladder, rows_of
+from overlapse.grammar.pieces.gathering import composition, gathered
+from overlapse.grammar.pieces.headings import count_of, heading_of, whole
+from overlapse.grammar.pieces.tabled import TabledReader, take_out_comments
+from overlapse.grammar.pieces.tables import ABUTTING, Tables
 from overlapse.grammar.source import Source
-from overlapse.grammar.tabled import TabledReader, take_out_comments
-from overlapse.grammar.tables import ABUTTING, Tables
 from overlapse.grammar.writing import Losses, columns, title_of
 
 PICTURE = """\

@@ -16,9 +16,9 @@ from overlapse.grammar.building import (
 )
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Grid, letter_of
+from overlapse.grammar.pieces.statedcores import read_stated, stated_lines
+from overlapse.grammar.pieces.statements import FIELD, Statements, fault_field, fields_of, run_of
 from overlapse.grammar.source import Source
-from overlapse.grammar.statedcores import read_stated, stated_lines
-from overlapse.grammar.statements import FIELD, Statements, fault_field, fields_of, run_of
 from overlapse.grammar.writing import Losses, split_shared, title_of
 
 PICTURE = """\

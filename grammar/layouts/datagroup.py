@@ -15,9 +15,7 @@ from overlapse.grammar.building import (
     integer,
     shorten,
 )
-from overlapse.grammar.centres import gather
 from overlapse.grammar.elements import number_of, symbol_of
-from overlapse.grammar.groups import is_atom, keep_groups, say_built_in, say_missing
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import (
     Block,
@@ -27,9 +25,11 @@ from overlapse.grammar.model import (
     letter_of,
 )
 from overlapse.grammar.numbers import looks_numeric, read_number
-from overlapse.grammar.rownumbers import numbers_in_front
+from overlapse.grammar.pieces.centres import gather
+from overlapse.grammar.pieces.groups import is_atom, keep_groups, say_built_in, say_missing
+from overlapse.grammar.pieces.rownumbers import numbers_in_front
+from overlapse.grammar.pieces.titled import Cores, titled_lines
 from overlapse.grammar.source import Source
-from overlapse.grammar.titled import Cores, titled_lines
 from overlapse.grammar.writing import Losses, columns, is_general, segments, title_of
 
 PICTURE = """\

@@ -8,12 +8,12 @@ from math import isfinite
 from lark import Token, Tree
 
 from overlapse.grammar.building import BlockDraft, Build, Node, index_of, integer, shorten
-from overlapse.grammar.charged import charged_lines, read_charged
 from overlapse.grammar.elements import replaced_by, subshells, symbol_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, letter_of
 from overlapse.grammar.numbers import plain
-from overlapse.grammar.plainlines import WITH_POTENTIAL, Lines
+from overlapse.grammar.pieces.charged import charged_lines, read_charged
+from overlapse.grammar.pieces.plainlines import WITH_POTENTIAL, Lines
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, is_general, segments
 

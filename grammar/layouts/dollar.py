@@ -6,10 +6,10 @@ from collections.abc import Iterator
 from lark import Token, Tree
 
 from overlapse.grammar.building import BlockDraft, Build, Node, Role, Run, index_of
-from overlapse.grammar.cores import CHANNEL, core_lines, read_core
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Document, Fault, Shell, letter_of
+from overlapse.grammar.pieces.cores import CHANNEL, core_lines, read_core
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, is_general, segments, title_of
 

@@ -6,13 +6,13 @@ from dataclasses import replace
 
 from lark import Token, Tree
 
-from overlapse.grammar.brackets import Repeat, Section, repeats_in, sections
 from overlapse.grammar.building import BlockDraft, Build, FunctionType, Node, index_of, integer
-from overlapse.grammar.centres import gather
 from overlapse.grammar.convention import Count, count_normalised
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Fault, Shell, letter_of
+from overlapse.grammar.pieces.brackets import Repeat, Section, repeats_in, sections
+from overlapse.grammar.pieces.centres import gather
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, is_general, segments
 

@@ -7,12 +7,12 @@ from itertools import pairwise
 from lark import Token, Tree
 
 from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of, integer, shorten
-from overlapse.grammar.cores import CHANNEL, core_lines, read_core
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
-from overlapse.grammar.matrices import WHOLE, Cutting, Lists
 from overlapse.grammar.model import Block, Document, Remark
 from overlapse.grammar.numbers import looks_numeric
+from overlapse.grammar.pieces.cores import CHANNEL, core_lines, read_core
+from overlapse.grammar.pieces.matrices import WHOLE, Cutting, Lists
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, say_shared_names, split_shared, title_of
 

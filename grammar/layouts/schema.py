@@ -7,11 +7,13 @@ from typing import NamedTuple
 
 from lark import Token
 
-from overlapse.grammar.apart import POTENTIAL_KINDS, SHELL_KINDS, Apart, Where
 from overlapse.grammar.building import BlockDraft, Build, FunctionType, Node, integer
-from overlapse.grammar.centres import gather
 from overlapse.grammar.elements import number_of
-from overlapse.grammar.jsontext import (
+from overlapse.grammar.layout import Evidence, Layout
+from overlapse.grammar.model import Channel, Document, Potential, Remark, Shell
+from overlapse.grammar.pieces.apart import POTENTIAL_KINDS, SHELL_KINDS, Apart, Where
+from overlapse.grammar.pieces.centres import gather
+from overlapse.grammar.pieces.jsontext import (
     LISTS,
     Members,
     Value,
@@ -21,10 +23,8 @@ from overlapse.grammar.jsontext import (
     span_of,
     string_of,
 )
-from overlapse.grammar.jsonwriting import write
-from overlapse.grammar.layout import Evidence, Layout
-from overlapse.grammar.leaves import Terms, cells_of, table_of, terms_of
-from overlapse.grammar.model import Channel, Document, Potential, Remark, Shell
+from overlapse.grammar.pieces.jsonwriting import write
+from overlapse.grammar.pieces.leaves import Terms, cells_of, table_of, terms_of
 from overlapse.grammar.source import Source
 
 PICTURE = """\

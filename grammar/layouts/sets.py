@@ -9,8 +9,8 @@ from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of, i
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Fault, Grid, letter_of
-from overlapse.grammar.pseudopotentials import GAP, IDLE, potentials_in
-from overlapse.grammar.setheadings import Heading, heading_of, made_of, slip_in
+from overlapse.grammar.pieces.pseudopotentials import GAP, IDLE, potentials_in
+from overlapse.grammar.pieces.setheadings import Heading, heading_of, made_of, slip_in
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, say_shared_names, split_shared, title_of
 

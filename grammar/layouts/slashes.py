@@ -7,16 +7,16 @@ from itertools import pairwise
 from lark import Token, Tree
 
 from overlapse.grammar.building import BlockDraft, Build, Node, index_of, integer
-from overlapse.grammar.channels import channels_of, ladder, rows_of
-from overlapse.grammar.gathering import composition, gathered
-from overlapse.grammar.headings import heading_of, whole
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Potential, Remark, letter_of
 from overlapse.grammar.numbers import NUMBER
-from overlapse.grammar.slashed import Element, Sorter
+from overlapse.grammar.pieces.channels import channels_of, ladder, rows_of
+from overlapse.grammar.pieces.gathering import composition, gathered
+from overlapse.grammar.pieces.headings import heading_of, whole
+from overlapse.grammar.pieces.slashed import Element, Sorter
+from overlapse.grammar.pieces.tabled import TabledReader, take_out_comments
+from overlapse.grammar.pieces.tables import Tables
 from overlapse.grammar.source import Source
-from overlapse.grammar.tabled import TabledReader, take_out_comments
-from overlapse.grammar.tables import Tables
 from overlapse.grammar.writing import Losses, columns, title_of
 
 PICTURE = """\

@@ -6,9 +6,9 @@ import re
 import broken
 import pytest
 
-from overlapse.grammar.apart import as_json
 from overlapse.grammar.layouts import layouts
 from overlapse.grammar.numbers import plain
+from overlapse.grammar.pieces.apart import as_json
 from overlapse.grammar.reading import read_text
 
 SOUND = """\

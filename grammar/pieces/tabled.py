@@ -13,7 +13,7 @@ from lark import Token, Tree
 from overlapse.grammar.building import BlockDraft, Build, Node, index_of
 from overlapse.grammar.model import Remark, Severity, letter_of
 from overlapse.grammar.numbers import looks_numeric
-from overlapse.grammar.tables import Tables
+from overlapse.grammar.pieces.tables import Tables
 
 
 class TabledReader:

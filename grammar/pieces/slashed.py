@@ -7,11 +7,11 @@ from itertools import pairwise, zip_longest
 from lark import Token
 
 from overlapse.grammar.building import BlockDraft, Build, index_of, integer
-from overlapse.grammar.channels import joined_channels
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.model import Potential, letter_of
 from overlapse.grammar.numbers import NUMBER, read_number
-from overlapse.grammar.tables import Tables
+from overlapse.grammar.pieces.channels import joined_channels
+from overlapse.grammar.pieces.tables import Tables
 
 
 def highest_of(words: list[str]) -> int | None:

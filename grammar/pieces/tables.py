@@ -16,10 +16,10 @@ from typing import Literal
 from lark import Token
 
 from overlapse.grammar.building import BlockDraft, Build, Run, index_of
-from overlapse.grammar.headings import DIGITS, Heading, heading_of, sensible, spanning
-from overlapse.grammar.miscounts import Miscount
 from overlapse.grammar.model import Grid, letter_of
 from overlapse.grammar.numbers import FORTRAN, read_number
+from overlapse.grammar.pieces.headings import DIGITS, Heading, heading_of, sensible, spanning
+from overlapse.grammar.pieces.miscounts import Miscount
 
 Way = Literal["rows", "list"]
 

@@ -11,10 +11,10 @@ from itertools import zip_longest
 from lark import Token, Tree
 
 from overlapse.grammar.building import BlockDraft, Build, Node, index_of, integer
-from overlapse.grammar.channels import ladder, rows_of
 from overlapse.grammar.elements import number_of, symbol_of
-from overlapse.grammar.groups import say_built_in, say_missing
 from overlapse.grammar.model import Channel, Potential, letter_of
+from overlapse.grammar.pieces.channels import ladder, rows_of
+from overlapse.grammar.pieces.groups import say_built_in, say_missing
 from overlapse.grammar.writing import Losses, columns
 
 # Far above any angular momentum of a core potential.

@@ -10,9 +10,9 @@ from dataclasses import replace
 from lark import Token
 
 from overlapse.grammar.building import BlockDraft, Build, Run, index_of, shorten
-from overlapse.grammar.channels import ladder, rows_of
 from overlapse.grammar.model import Block, Channel, Potential
 from overlapse.grammar.numbers import looks_numeric
+from overlapse.grammar.pieces.channels import ladder, rows_of
 from overlapse.grammar.writing import Losses, columns
 
 _PARTS = ("local", "s", "p", "d", "f", "g")

@@ -9,9 +9,9 @@ from collections.abc import Sequence
 from lark import Token, Tree
 
 from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of
-from overlapse.grammar.headings import count_of, spanning
 from overlapse.grammar.model import Channel, Potential, letter_of
-from overlapse.grammar.tables import Tables
+from overlapse.grammar.pieces.headings import count_of, spanning
+from overlapse.grammar.pieces.tables import Tables
 from overlapse.grammar.writing import Losses, terms
 
 # No potential reaches so high: what announces more is a slip.

@@ -1,6 +1,6 @@
 """Shells and potential terms whose JSON is not as the schema wants it: what is wrong, what is left.
 
-`overlapse.grammar.leaves` reads the sound ones.
+`overlapse.grammar.pieces.leaves` reads the sound ones.
 """
 
 import re
@@ -11,10 +11,18 @@ import numpy as np
 from lark import Token
 
 from overlapse.grammar.building import BlockDraft, integer
-from overlapse.grammar.jsontext import LISTS, JsonText, Members, Value, kind_of, span_of, string_of
-from overlapse.grammar.leaves import HIGHEST, Table, Terms
 from overlapse.grammar.model import letter_of
 from overlapse.grammar.numbers import Reading, read_number
+from overlapse.grammar.pieces.jsontext import (
+    LISTS,
+    JsonText,
+    Members,
+    Value,
+    kind_of,
+    span_of,
+    string_of,
+)
+from overlapse.grammar.pieces.leaves import HIGHEST, Table, Terms
 
 SHELL_KINDS = ("spherical", "cartesian", "gto", "gto_spherical", "gto_cartesian")
 POTENTIAL_KINDS = ("scalar", "spinorbit", "scalar_ecp", "spinorbit_ecp")

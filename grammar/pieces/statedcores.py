@@ -9,10 +9,10 @@ from collections.abc import Iterator
 from lark import Token
 
 from overlapse.grammar.building import BlockDraft, Build, index_of, integer, shorten
-from overlapse.grammar.channels import ladder, rows_of
 from overlapse.grammar.model import Block, Channel, Potential
-from overlapse.grammar.statements import fault_field, fields_of, terms_of
-from overlapse.grammar.titled import HIGHEST
+from overlapse.grammar.pieces.channels import ladder, rows_of
+from overlapse.grammar.pieces.statements import fault_field, fields_of, terms_of
+from overlapse.grammar.pieces.titled import HIGHEST
 from overlapse.grammar.writing import Losses
 
 

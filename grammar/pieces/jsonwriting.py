@@ -3,9 +3,9 @@
 import json
 from collections.abc import Iterable, Iterator
 
-from overlapse.grammar.apart import as_json
 from overlapse.grammar.layout import Written
 from overlapse.grammar.model import Block, Document, Potential, Shell
+from overlapse.grammar.pieces.apart import as_json
 from overlapse.grammar.writing import Losses, segments, terms, title_of
 
 
