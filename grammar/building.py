@@ -633,6 +633,7 @@ class Build:
     ) -> None:
         found = len(run.rows)
         if announced is not None and found and integer(announced) != found:
+            block.complete = False
             self.fault_word(
                 "form.count",
                 heading,

@@ -67,8 +67,9 @@ def _table(folder: Path, audits: list[FileAudit]) -> str:
     rows = [("file", "layout", "planted", "found")]
     for entry in scenario():
         audit = by_path[folder / entry["path"]]
-        first = next((f for f in audit.findings if f.severity != "note"), None)
-        found = f"{first.rule}, line {first.line}" if first else "nothing"
+        loud = [f for f in audit.findings if f.severity != "note"]
+        loud.sort(key=lambda f: f.rule != entry["rule"])
+        found = f"{loud[0].rule}, line {loud[0].line}" if loud else "nothing"
         rows.append((entry["path"], entry["layout"], entry["planted"] or "nothing", found))
     widths = [max(len(row[k]) for row in rows) for k in range(3)]
     return "".join(

@@ -5,6 +5,7 @@ from dataclasses import replace
 from functools import cached_property
 from typing import Any
 
+from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import number_of, occupied, replaced_by, symbol_of
 from overlapse.grammar.model import BasisSet, Block, Document, Function, Severity, Span
 from overlapse.rules.claims import Claim, claims_of
@@ -18,7 +19,8 @@ class Case:
     """A document, the label it was given from outside (if any), and helpers to make findings."""
 
     def __init__(self, document: Document, label: str | None = None) -> None:
-        self.document = document
+        # Rules reason over normalised primitives; where the text does not, its numbers are turned.
+        self.document = over_normalised(document)
         self.given_label = label
         self._rule = ""
 
@@ -60,6 +62,20 @@ class Case:
     @property
     def sets(self) -> tuple[BasisSet, ...]:
         return self.document.sets
+
+    @cached_property
+    def _faulty(self) -> set[tuple[int, str]]:
+        """Atomic number and name of the shells that a fault of form names."""
+        return {
+            (number, fault.shell)
+            for fault in self.document.faults
+            if fault.severity != "note" and fault.element and fault.shell
+            if (number := number_of(fault.element)) is not None
+        }
+
+    def is_faulty(self, block: Block, shell: int) -> bool:
+        """Whether the reader found fault with a shell, so that its numbers are in doubt."""
+        return (block.atomic_number, block.names[shell]) in self._faulty
 
     # ---- making findings
 

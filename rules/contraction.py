@@ -80,7 +80,8 @@ def norm(case: Case, *, share: float = 0.9, floor: float = 3e-6) -> Iterator[Fin
                 limit=0.0,
                 remedy="the coefficients cancel one another or are far out of range",
             )
-        judged = [n for n in found if n not in broken] if broken else found
+        # A shell whose form is at fault has been reported; its norm only follows from that.
+        judged = [n for n in found if n not in broken and not case.is_faulty(n.block, n.shell)]
         sound = [n for n in judged if n.deviation < NORMALISED]
         scale = _Scale(judged, sound, share, floor)
         evident = [n for n in judged if n.deviation > floor and scale.is_evident(n)]

@@ -43,7 +43,7 @@ def centre(
           0.5 0.5
         S 2 1.00
           4.0 0.6
-          0.5 0.5000001
+          0.5 0.5005
         ****
 
     Good::
@@ -67,6 +67,11 @@ def centre(
                 continue
             overlap = contracted_overlap([f for _, f in functions])
             if not np.isfinite(overlap).all():
+                continue
+            # A function that is given twice has a rule of its own.
+            once = [k for k in range(len(functions)) if not (overlap[k, :k] > 1.0 - 1e-10).any()]
+            functions, overlap = [functions[k] for k in once], overlap[np.ix_(once, once)]
+            if len(functions) < 2:
                 continue
             values = eigenvalues(overlap)
             if values[0] >= tight:

@@ -57,13 +57,23 @@ def _judged(case: Case) -> Iterator[list[Block]]:
 
 
 def valence_blocks(members: BasisSet) -> list[Block]:
-    """Blocks without a potential that lack just the shells of a core, if there are several."""
+    """Blocks without a potential that lack just the shells of a core, and mean to.
+
+    Several such blocks mean it, and so does one without any primitive tight enough for a core.
+    """
     found = [
         block
         for block in members.blocks
         if block.complete and block.shells and not block.potential and fitting_core(block)
     ]
-    return found if len(found) > 2 else []
+    return [block for block in found if len(found) > 2 or _is_soft(block)]
+
+
+def _is_soft(block: Block) -> bool:
+    """Whether no s primitive reaches the core: all-electron sets of Li and beyond have one above
+    0.68 Z**2 (the smallest found among published sets)."""
+    tightest = max((float(f.exponents.max()) for _, f in block.functions_of(0)), default=0.0)
+    return tightest < 0.6 * block.atomic_number**2
 
 
 def _shells(counts: dict[int, int]) -> str:
@@ -127,7 +137,7 @@ def core_shells(case: Case) -> Iterator[Finding]:
 
         Na 0
         S 1 1.00
-          0.5 1.0
+          90.0 1.0
         P 1 1.00
           0.5 1.0
         ****
