@@ -51,6 +51,7 @@ Role = Literal["orbital", "fitting", "unstated"]
 FunctionType = Literal["spherical", "cartesian"]
 Node = Tree[Token]
 
+MOST = 2_000  # primitives of a shell, or functions of an element; published sets stay below 500
 _ROW_START = frozenset("0123456789+-.")
 # With a j shell present the letters run on without a gap; else j is left out, as in spectroscopy.
 _WITHOUT_J = "spdfghiklmnoqrtuv"
@@ -890,6 +891,8 @@ class Build:
             shells.append(
                 Shell.checked(draft.angular, exponents, coefficients, draft.heading + 1, cells)
             )
+        if self._is_absurd(block, shells):
+            complete, shells = False, []
         if block.number is None:
             raise AssertionError("only blocks of known elements are made")
         return Block(
@@ -902,6 +905,26 @@ class Build:
             block.line + 1,
             block.end + 1,
         )
+
+    def _is_absurd(self, block: BlockDraft, shells: list[Shell]) -> bool:
+        """Whether a block is so large that it is none; matrices over it would burst the memory."""
+        longest = max((len(shell.exponents) for shell in shells), default=0)
+        functions = sum(shell.coefficients.shape[1] for shell in shells)
+        if max(longest, functions) <= MOST:
+            return False
+        count, what = (longest, "primitives in one shell")
+        if functions > longest:
+            count, what = (functions, "contracted functions")
+        self.fault_line(
+            "form.count",
+            block.line,
+            f"{count:,} {what} of {block.symbol}: no basis set has so many; not judged",
+            element=block.symbol,
+            measured=count,
+            limit=MOST,
+            remedy="check that this is the file you meant, and that it is whole",
+        )
+        return True
 
     def _say_overflow(self, block: BlockDraft, draft: ShellDraft) -> None:
         self.fault_line(

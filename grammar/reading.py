@@ -2,14 +2,14 @@
 
 import gc
 import os
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from contextlib import contextmanager
 from dataclasses import replace
 from pathlib import Path
 
 from overlapse.grammar.bytewise import text_faults
 from overlapse.grammar.layout import Evidence, Layout
-from overlapse.grammar.layouts import layout_of, spotted
+from overlapse.grammar.layouts import layout_of, names, spotted
 from overlapse.grammar.model import Document, Fault
 from overlapse.grammar.source import Source
 
@@ -53,9 +53,10 @@ def read_source(source: Source, *, layout: str | None = None) -> Document:
     is_long = max(lengths) > LONGEST_LINE
     if wanted is not None and (wanted.any_line or not is_long):
         return _read_as(source, wanted)
-    found = candidates(source) if wanted is None else []
-    if is_long:
-        found = [pair for pair in found if pair[1].any_line]
+    if is_long and wanted is None:
+        found = _candidates(source, [name for name in names() if layout_of(name).any_line])
+    else:
+        found = candidates(source) if wanted is None else []
     if found:
         return _read_by_content(source, found)
     if not is_long:
@@ -74,14 +75,14 @@ def candidates(source: Source) -> list[tuple[Evidence, Layout]]:
     head = source
     if len(source.text) > HEAD:
         head = Source(source.text[: source.text.rfind("\n", 0, HEAD) + 1] or source.text)
-    found = _candidates(head)
-    return found if found or head is source else _candidates(source)
+    found = _candidates(head, names())
+    return found if found or head is source else _candidates(source, names())
 
 
-def _candidates(source: Source) -> list[tuple[Evidence, Layout]]:
+def _candidates(source: Source, among: Iterable[str]) -> list[tuple[Evidence, Layout]]:
     found = [
         (evidence, layout)
-        for layout in spotted(source.flat)
+        for layout in spotted(source.flat, among)
         if (evidence := layout.recognise(source)) is not None
     ]
     return sorted(found, key=lambda pair: -pair[0].strength)

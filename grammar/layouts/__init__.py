@@ -7,6 +7,7 @@ spares most texts the import of most modules: only a layout that is spotted is a
 """
 
 import re
+from collections.abc import Iterable
 from functools import cache
 from importlib import import_module
 from pathlib import Path
@@ -46,6 +47,6 @@ def _pattern(name: str) -> re.Pattern[str]:
     return re.compile(line[len(_SPOTTED_BY) :].rstrip("\n"), re.MULTILINE | re.IGNORECASE)
 
 
-def spotted(text: str) -> list[Layout]:
-    """Layouts whose pattern a text matches."""
-    return [layout_of(name) for name in names() if _pattern(name).search(text)]
+def spotted(text: str, among: Iterable[str]) -> list[Layout]:
+    """Those of the named layouts whose pattern a text matches."""
+    return [layout_of(name) for name in among if _pattern(name).search(text)]

@@ -29,8 +29,12 @@ def primitive_overlap(left: Floats, right: Floats, l: int) -> Floats:
 
 
 def self_overlap(exponents: Floats, coefficients: Floats, l: int) -> float:
-    """Self-overlap of one contraction over normalised primitives; dimensionless."""
-    return float(coefficients @ primitive_overlap(exponents, exponents, l) @ coefficients)
+    """Self-overlap of one contraction over normalised primitives; dimensionless.
+
+    Infinite or NaN where numbers are too large for it, never an error.
+    """
+    with np.errstate(over="ignore", invalid="ignore"):
+        return float(coefficients @ primitive_overlap(exponents, exponents, l) @ coefficients)
 
 
 def contracted_overlap(functions: list[Function]) -> Floats:
@@ -44,10 +48,10 @@ def contracted_overlap(functions: list[Function]) -> Floats:
     owner = np.repeat(np.arange(len(functions)), [len(f.exponents) for f in functions])
     weights = np.zeros((len(functions), len(exponents)))
     weights[owner, np.arange(len(exponents))] = np.concatenate([f.coefficients for f in functions])
-    with np.errstate(invalid="ignore", divide="ignore"):
+    with np.errstate(all="ignore"):
         overlap = weights @ primitive_overlap(exponents, exponents, l) @ weights.T
         scale = 1.0 / np.sqrt(np.diagonal(overlap))
-    result: Floats = overlap * scale[:, None] * scale[None, :]
+        result: Floats = overlap * scale[:, None] * scale[None, :]
     return result
 
 

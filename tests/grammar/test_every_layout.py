@@ -8,7 +8,7 @@ from generated import content, documents
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
-from overlapse.grammar.layouts import layouts
+from overlapse.grammar.layouts import layouts, spotted
 from overlapse.grammar.reading import read_text
 
 LAYOUTS = sorted(layouts())
@@ -64,3 +64,53 @@ def test_a_layout_is_one_grammar_one_module_and_one_test(name: str) -> None:
     layout = layouts()[name]
     assert layout.picture.count("\n") <= 4
     assert layout.summary
+
+
+PAIRS = [(first, second) for first in LAYOUTS for second in LAYOUTS if first != second]
+INVENTED = read_text(
+    "spherical\n****\nC     0\nS   3   1.00\n  40.5   0.15\n  7.25   0.5\n  2.0D0   -.25\n"
+    "S   1   1.00\n  0.3   1.0\nP   2   1.00\n  3.5   0.6\n  0.7   0.45\nD   1   1.00\n"
+    "  0.8   1.0\nF   1   1.00\n  1.125   1.0\n****\nN     0\nS   2   1.00\n  50.1   0.2\n"
+    "  9.5   0.9\nP   1   1.00\n  0.9   1.0\n****\n",
+    layout="stars",
+)
+
+
+@pytest.mark.parametrize(("first", "second"), PAIRS)
+def test_numbers_survive_the_way_through_two_layouts(first: str, second: str) -> None:
+    there = read_text(layouts()[first].write(INVENTED).text, layout=first)
+    back = read_text(layouts()[second].write(there).text, layout=second)
+    assert content(back) == content(INVENTED)
+
+
+@pytest.mark.parametrize("name", LAYOUTS)
+def test_digits_stay_as_they_were_spelled(name: str) -> None:
+    written = layouts()[name].write(INVENTED).text
+    for spelling in ("40.5", "7.25", "1.125", "9.5"):
+        assert spelling in written
+
+
+@pytest.mark.parametrize("name", LAYOUTS)
+def test_a_layout_is_spotted_wherever_it_is_recognised(name: str) -> None:
+    text = layouts()[name].write(INVENTED).text
+    assert name in {layout.name for layout in spotted(text, LAYOUTS)}
+
+
+def test_a_text_that_could_be_two_layouts_names_both() -> None:
+    one, other = (layouts()[name].write(INVENTED).text for name in ("stars", "deck"))
+    document = read_text(one + other)
+    doubt = document.faults[0]
+    assert doubt.severity == "note"
+    assert "stars" in doubt.message and "deck" in doubt.message and "`" in doubt.message
+
+
+@pytest.mark.parametrize("name", ["keyworded", "dollar", "commas", "stars", "at-blocks"])
+def test_a_basis_inside_a_larger_input_is_judged_where_it_stands(name: str) -> None:
+    before = (
+        "title of somebody's run\n memory 4 gb\n\n geometry\n  O 0.0 0.0 0.1\n end geometry\n\n"
+    )
+    text = layouts()[name].write(INVENTED).text
+    document = read_text(before + text + "\n task energy\n")
+    assert document.layout == name
+    assert content(document) == content(INVENTED)
+    assert document.blocks[0].line > before.count("\n")

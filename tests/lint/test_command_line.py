@@ -136,6 +136,14 @@ BAD = {
     "prose": (b"It was a dark and stormy night.\n", "no known layout"),
     "one line of a megabyte": (b"1.0 " * 250_000, "1,000,000 characters"),
     "a huge announced count": (b"C 0\nS 999999999999 1.00\n 1.0 1.0\n****\n", "999999999999"),
+    "a shell of absurd length": (
+        b"C 0\nS 3000 1.00\n" + b" 1.0 1.0\n" * 3000 + b"****\n",
+        "no basis set has so many",
+    ),
+    "an element of absurd size": (
+        b"C 0\n" + b"S 1 1.00\n 1.0 1.0\n" * 3000 + b"****\n",
+        "no basis set has so many",
+    ),
     "not UTF-8": (b"! \xff\xfe\nC 0\nS 2 1.0\n 1.0 1.0\n****\n", "announces 2 rows"),
     "a shell without end": (b"C 0\nS 2 1.00\n 1.0", "1 number in this row"),
     "a heading without end": (b"C 0\nS 1 1.0\n 1.0 1.0\n****\nN 0\nS 1", "no rows"),
