@@ -118,7 +118,8 @@ def _converted_shell(shell: Shell) -> Shell:
     table = np.array(shell.coefficients)
     for at, l in enumerate(shell.angular):
         columns = slice(at * shell.columns_per_l, (at + 1) * shell.columns_per_l)
-        table[:, columns] /= raw_norms(shell.exponents, l)[:, None]
+        with np.errstate(all="ignore"):
+            table[:, columns] /= raw_norms(shell.exponents, l)[:, None]
         for column in range(columns.start, columns.stop):
             one = (np.array([l]), shell.exponents[None, :], shell.coefficients[None, :, column])
             table[:, column] *= (_factor(l, _self_overlaps(*one)[1][0]) or 1.0) ** 0.5

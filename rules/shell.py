@@ -72,7 +72,8 @@ def valence_blocks(members: BasisSet) -> list[Block]:
 def _is_soft(block: Block) -> bool:
     """Whether no s primitive reaches the core: all-electron sets of Li and beyond have one above
     0.68 Z**2 (the smallest found among published sets)."""
-    tightest = max((float(f.exponents.max()) for _, f in block.functions_of(0)), default=0.0)
+    shells = [shell for shell in block.shells if 0 in shell.angular]
+    tightest = max((float(shell.exponents.max()) for shell in shells), default=0.0)
     return tightest < 0.6 * block.atomic_number**2
 
 
