@@ -7,6 +7,7 @@ from overlapse.grammar.designation import Designation
 from overlapse.grammar.model import BasisSet, Block, letter_of
 from overlapse.rules.case import Case, gathered, is_orbital
 from overlapse.rules.claims import Claim, CompositionClaim, composition_claim
+from overlapse.rules.composition import lengths_of, notation, primitives
 from overlapse.rules.families.expected import Lengths, Promise, candidates, promise
 from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rule
@@ -33,14 +34,6 @@ class Verdict(NamedTuple):
     @property
     def fits(self) -> bool:
         return not self.split and not self.added
-
-
-def lengths_of(block: Block) -> Lengths:
-    """Contraction lengths of a block for each l, longest first."""
-    found: dict[int, list[int]] = {}
-    for _, function in block.contracted:
-        found.setdefault(function.l, []).append(len(function.exponents))
-    return {l: tuple(sorted(n, reverse=True)) for l, n in sorted(found.items())}
 
 
 def verdict(block: Block, label: Designation) -> Verdict | None:
@@ -314,10 +307,10 @@ def composition(case: Case) -> Iterator[Finding]:
                 claim.line,
                 "note",
                 f"{len(wrong)} of {len(claimed)} comments on the composition differ from the "
-                f"blocks, first {claim.text} for {block.symbol}, which has {_notation(block)}: "
+                f"blocks, first {claim.text} for {block.symbol}, which has {notation(block)}: "
                 "they seem to describe another set",
                 element=block.symbol,
-                measured=_notation(block),
+                measured=notation(block),
                 limit=claim.text,
                 remedy="correct the comments, or use the file with the set it belongs to",
             )
@@ -327,9 +320,9 @@ def composition(case: Case) -> Iterator[Finding]:
                 case.at_line(
                     claim.line,
                     "warning",
-                    f"the comment says {claim.text}, but {block.symbol} has {_notation(block)}",
+                    f"the comment says {claim.text}, but {block.symbol} has {notation(block)}",
                     element=block.symbol,
-                    measured=_notation(block),
+                    measured=notation(block),
                     limit=claim.text,
                     remedy="restore the row or shell that was lost, or correct the comment",
                 )
@@ -343,27 +336,6 @@ def _agrees(block: Block, claim: CompositionClaim) -> bool:
         return False
     distinct, written = primitives(block)
     return not claim.primitives or claim.primitives in (distinct, written)
-
-
-def primitives(block: Block) -> tuple[dict[int, int], dict[int, int]]:
-    """Primitives per l, counted as distinct exponents and as rows of all contractions."""
-    distinct: dict[int, set[float]] = {}
-    written: dict[int, int] = {}
-    for shell in block.shells:
-        for l in shell.angular:
-            distinct.setdefault(l, set()).update(shell.exponents.tolist())
-            written[l] = written.get(l, 0) + len(shell.exponents)
-    return {l: len(e) for l, e in sorted(distinct.items())}, dict(sorted(written.items()))
-
-
-def _notation(block: Block) -> str:
-    """Composition in the usual notation: (10s,4p) -> [3s,2p]."""
-    distinct, _ = primitives(block)
-
-    def join(counts: dict[int, int]) -> str:
-        return ",".join(f"{count}{letter_of(l)}" for l, count in counts.items())
-
-    return f"({join(distinct)}) -> [{join(block.counts)}]"
 
 
 @rule("label.unknown")
