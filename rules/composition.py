@@ -22,11 +22,40 @@ def primitives(block: Block) -> tuple[dict[int, int], dict[int, int]]:
     return {l: len(e) for l, e in sorted(distinct.items())}, dict(sorted(written.items()))
 
 
-def notation(block: Block) -> str:
-    """Composition in the usual notation: (10s,4p) -> [3s,2p]."""
+def notation(block: Block, between: str = ",") -> str:
+    """Composition in the usual notation: (10s,4p) -> [3s,2p], or (10s4p) -> [3s2p]."""
     distinct, _ = primitives(block)
 
     def join(counts: dict[int, int]) -> str:
-        return ",".join(f"{count}{letter_of(l)}" for l, count in counts.items())
+        return between.join(f"{count}{letter_of(l)}" for l, count in counts.items())
 
     return f"({join(distinct)}) -> [{join(block.counts)}]"
+
+
+def show(lengths: dict[int, tuple[int, ...]], which: tuple[int, ...] | None = None) -> str:
+    """Contraction lengths in words, of all l or of those in ``which``: s (6,3,1), p (3,1)."""
+    shown = [
+        f"{letter_of(l)} ({','.join(map(str, n))})"
+        for l, n in lengths.items()
+        if which is None or l in which
+    ]
+    missing = [f"no {letter_of(l)}" for l in which or () if l not in lengths]
+    return ", ".join([*shown, *missing]) or "nothing"
+
+
+def function_counts(block: Block) -> tuple[int, int]:
+    """Number of basis functions of one atom: with spherical, and with Cartesian d and above."""
+    counts = block.counts.items()
+    spherical = sum((2 * l + 1) * count for l, count in counts)
+    return spherical, sum((l + 1) * (l + 2) // 2 * count for l, count in counts)
+
+
+def exponent_limits(block: Block) -> dict[int, tuple[float, float]]:
+    """Highest and lowest exponent of each l, bohr**-2."""
+    found: dict[int, tuple[float, float]] = {}
+    for shell in block.shells:
+        exponents = shell.exponents.tolist()
+        for l in shell.angular:
+            high, low = found.get(l, (exponents[0], exponents[0]))
+            found[l] = max(high, *exponents), min(low, *exponents)
+    return dict(sorted(found.items()))

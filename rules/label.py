@@ -7,7 +7,7 @@ from overlapse.grammar.designation import Designation
 from overlapse.grammar.model import BasisSet, Block, letter_of
 from overlapse.rules.case import Case, gathered, is_orbital
 from overlapse.rules.claims import Claim, CompositionClaim, composition_claim
-from overlapse.rules.composition import lengths_of, notation, primitives
+from overlapse.rules.composition import lengths_of, notation, primitives, show
 from overlapse.rules.families.expected import Lengths, Promise, candidates, promise
 from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rule
@@ -71,16 +71,6 @@ def _best(members: BasisSet) -> str | None:
     return str(labels[0][0]) if labels else None
 
 
-def _show(lengths: Lengths, which: tuple[int, ...] | None = None) -> str:
-    shown = [
-        f"{letter_of(l)} ({','.join(map(str, n))})"
-        for l, n in lengths.items()
-        if which is None or l in which
-    ]
-    missing = [f"no {letter_of(l)}" for l in which or () if l not in lengths]
-    return ", ".join([*shown, *missing]) or "nothing"
-
-
 def _judged(case: Case) -> Iterator[tuple[BasisSet, Claim, Designation]]:
     for index, members in enumerate(case.sets):
         for claim in case.claims[index]:
@@ -115,9 +105,9 @@ def _compare(
                 say(v, claim, label),
                 element=v.block.symbol,
                 shell=letter_of(differ(v)[0]),
-                measured=_show(v.found, differ(v)),
-                limit=_show(v.promise.full, differ(v)),
-                expected=_show(v.promise.full),
+                measured=show(v.found, differ(v)),
+                limit=show(v.promise.full, differ(v)),
+                expected=show(v.promise.full),
                 remedy="restore the lost function, or correct the label",
             )
 
@@ -139,12 +129,12 @@ def _wrong_label(
         "warning",
         f"{claim.label!r} ({claim.where}) is not what the set contains: {len(wrong)} of {count} "
         f"element{'s' * (count != 1)} differ{'s' * (count == 1)}, first {v.block.symbol} on line "
-        f"{v.block.line} with {_show(v.found, differ(v))} where the label promises "
-        f"{_show(v.promise.full, differ(v))}{told}{fits}",
+        f"{v.block.line} with {show(v.found, differ(v))} where the label promises "
+        f"{show(v.promise.full, differ(v))}{told}{fits}",
         element=v.block.symbol,
         shell=letter_of(differ(v)[0]),
-        measured=_show(v.found),
-        limit=_show(v.promise.full),
+        measured=show(v.found),
+        limit=show(v.promise.full),
         expected=best,
         remedy=f"call it {best}" if best else "correct the label, or restore what was lost",
     )
@@ -192,8 +182,8 @@ def split(case: Case) -> Iterator[Finding]:
     def say(v: Verdict, claim: Claim, label: Designation) -> str:
         why = f"; {v.promise.why}" if v.promise.why else ""
         return (
-            f"{label} ({claim.where}) promises {_show(v.promise.full, v.split)} for "
-            f"{v.block.symbol}; found {_show(v.found, v.split)}{why}"
+            f"{label} ({claim.where}) promises {show(v.promise.full, v.split)} for "
+            f"{v.block.symbol}; found {show(v.found, v.split)}{why}"
         )
 
     yield from _compare(case, lambda v: v.split, say)
@@ -250,8 +240,8 @@ def decoration(case: Case) -> Iterator[Finding]:
             words.append(f"{abs(short)} {letter_of(l)} function {verb}")
         why = f"; {v.promise.why}" if v.promise.why else ""
         return (
-            f"{label} ({claim.where}) promises {_show(v.promise.full, v.added)} for "
-            f"{v.block.symbol}; found {_show(v.found, v.added)}: {', '.join(words)}{why}"
+            f"{label} ({claim.where}) promises {show(v.promise.full, v.added)} for "
+            f"{v.block.symbol}; found {show(v.found, v.added)}: {', '.join(words)}{why}"
         )
 
     yield from _compare(case, lambda v: () if v.split else v.added, say, lambda v: v.is_decorated)
