@@ -8,6 +8,7 @@ from io import BytesIO
 from itertools import groupby
 from math import ceil
 from pathlib import PurePath
+from textwrap import shorten
 from typing import TYPE_CHECKING, Any, NamedTuple
 
 from overlapse.grammar.elements import period_of, row_of
@@ -112,7 +113,7 @@ def _panels(each: SetPortrait, several: bool) -> Iterator[_Panel]:
         heavier = min((other for other in row if other > z), default=0)
         title = portrait.block.symbol
         if several:
-            title += f", {each.claimed}" if each.claimed else f", set {each.ordinal}"
+            title += f", {shorten(each.claimed, 20)}" if each.claimed else f", set {each.ordinal}"
         place = (each.ordinal, period_of(z))
         yield _Panel(title, place, portrait.block, drawn.get(lighter), drawn.get(heavier))
 
@@ -127,7 +128,12 @@ def _title(description: Description) -> str:
     }
     name = names.pop() if len(names) == 1 else ""
     name = name or PurePath(description.document.path).name
-    return f"{one_line(name)}: exponents of the primitives"
+    return f"{name}: exponents of the primitives"
+
+
+def _plain(text: str) -> str:
+    """Text that is shown as it stands: a dollar sign would start a formula."""
+    return one_line(text).replace("$", r"\$")
 
 
 def _sizes(panels: Sequence[_Panel]) -> _Sizes:
@@ -171,7 +177,7 @@ def _draw(figure: "Figure", panels: Sequence[_Panel], sizes: _Sizes, title: str)
             )
             _ladder(axes, panel, sizes.unit)
             _scale(axes, limits, across == 0)
-    figure.suptitle(title, x=0.5, y=1 - 0.1 / height, va="top", fontsize=11)
+    figure.suptitle(_plain(title), x=0.5, y=1 - 0.1 / height, va="top", fontsize=11)
     figure.supxlabel("contracted functions of each angular momentum", y=(below - 0.3) / height)
     _legend(figure, panels, legend)
 
@@ -186,7 +192,9 @@ def _limits(panels: Sequence[_Panel]) -> tuple[float, float]:
         for shell in block.shells
     ]
     exponents = [e for shell in shells for e in shell.exponents.tolist() if e > 0]
-    return min(exponents) / 2, max(exponents) * 2
+    low, high = min(exponents), max(exponents)
+    room = max(2.0, 10 / (high / low) ** 0.5)  # two decades at least, for two marks on the scale
+    return low / room, high * room
 
 
 def _scale(axes: "Axes", limits: tuple[float, float], named: bool) -> None:
@@ -206,7 +214,7 @@ def _scale(axes: "Axes", limits: tuple[float, float], named: bool) -> None:
 
 def _ladder(axes: "Axes", panel: _Panel, unit: float) -> None:
     """Lanes of the angular momenta side by side; a place only neighbours fill stays grey."""
-    axes.set_title(panel.title, fontsize=10, fontweight="bold", pad=4)
+    axes.set_title(_plain(panel.title), fontsize=10, fontweight="bold", pad=4)
     beside = [
         (block, x) for block, x in ((panel.lighter, -_SHIFT), (panel.heavier, _SHIFT)) if block
     ]

@@ -105,7 +105,8 @@ class Ranking:
         """Labels that fit as many elements: the content alone does not decide."""
         count = self._fits[label]
         rivals = [str(other) for other, n in self._fits.items() if n == count and other != label]
-        return [f"these elements fit {listed(rivals)} just as well"] if rivals and count else []
+        told = f"these elements fit {listed(rivals)} just as well"
+        return [told] if rivals and count * 2 > len(self._blocks) else []
 
 
 def _whole(members: BasisSet) -> list[Block]:

@@ -268,6 +268,11 @@ def test_neighbours_of_the_row_are_grey() -> None:
     assert "#a6a6a6" not in drawn(alone)
 
 
+def test_labels_are_no_formulas() -> None:
+    text = "$basis\n*\nh b$\\frac{1$\n*\n 1 s\n 0.5 1.0\n*\n$end\n"
+    assert "b$\\frac{1$: exponents of the primitives" in drawn(text)
+
+
 def test_the_same_picture_has_the_same_bytes() -> None:
     assert drawn(PAIR) == drawn(PAIR)
 
