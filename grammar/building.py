@@ -37,6 +37,7 @@ from overlapse.grammar.model import (
     Shell,
     Span,
     letter_of,
+    read_only,
 )
 from overlapse.grammar.numbers import (
     FORTRAN,
@@ -611,10 +612,8 @@ class Build:
         run.  ``name``: as `BlockDraft.next_name` gave it, if the caller has asked already.
         """
         name = name or block.next_name(letter_of(l))
-        block.end = max(block.end, heading, *run.lines[-1:])
-        self.keep(
-            block, ShellDraft(name, (l,), heading, run, len(self._words), shape, grid, unit=unit)
-        )
+        block.end = max(block.end, heading, run.lines[-1] if run.lines else 0)
+        self.keep(block, ShellDraft(name, (l,), heading, run, 0, shape, grid, 1.0, unit))
 
     def keep(self, block: BlockDraft, draft: ShellDraft) -> None:
         """Add a shell whose numbers the caller has counted; `ShellDraft.start` is set here."""
@@ -878,9 +877,8 @@ class Build:
             if self._has_holes and np.isnan(np.append(exponents, coefficients)).any():
                 complete = False
                 continue
-            lines = draft.run.lines
-            first, last = lines[0], lines[-1] + 1
-            skip = draft.run.before[0] if draft.run.before else 0
+            _, lines, before = draft.run
+            first, last, skip = lines[0], lines[-1] + 1, before[0] if before else 0
             cells = Cells(
                 self.source, first, last, draft.grid, self.comment, pattern, skip, leading
             )
@@ -912,6 +910,11 @@ class Build:
 
     def _is_absurd(self, block: BlockDraft, shells: list[Shell]) -> bool:
         """Whether a block is so large that it is none; matrices over it would burst the memory."""
+        drafts = block.shells
+        if drafts and not block.ready:
+            count, columns = drafts[-1].shape
+            if drafts[-1].start + count * (1 + columns) - drafts[0].start <= MOST:
+                return False  # so few numbers cannot make so many functions
         longest = max((len(shell.exponents) for shell in shells), default=0)
         functions = sum(shell.coefficients.shape[1] for shell in shells)
         if max(longest, functions) <= MOST:
@@ -946,27 +949,26 @@ class Build:
     @staticmethod
     def _table(draft: ShellDraft, values: Floats) -> tuple[Floats, Floats]:
         """Exponents (nprim,) and coefficients (nprim, ncontr) of a draft, views where possible."""
-        (count, columns), grid, start = draft.shape, draft.grid, draft.start
-        if grid.e0 == 0 and grid.c0 == 1 and grid.es == columns + 1 and not draft.unit:
-            end = start + count * grid.es
-            if columns == 1:
-                return values[start:end:2], values[start + 1 : end : 2, None]
-            table = values[start:end].reshape(count, grid.es)
-            return table[:, 0], table[:, 1:]
-        plain = grid.cj == 1 and not draft.unit
-        if plain and grid.e0 < grid.ci == grid.es >= grid.c0 + columns:
-            table = values[start : start + count * grid.es].reshape(count, grid.es)
-            return table[:, grid.e0], table[:, grid.c0 : grid.c0 + columns]
-        if plain and grid.es == 1 and grid.ci == columns:
-            first, matrix = start + grid.e0, start + grid.c0
-            table = values[matrix : matrix + count * columns].reshape(count, columns)
-            return values[first : first + count], table
-        rows = np.arange(count)
-        exponents = values[start + grid.e0 + grid.es * rows]
+        (count, columns), start = draft.shape, draft.start
+        e0, es, c0, ci, cj = draft.grid
         if draft.unit:
-            return exponents, np.eye(count)
-        cells = start + grid.c0 + grid.ci * rows[:, None] + grid.cj * np.arange(columns)
-        return exponents, values[cells]
+            first = start + e0
+            return values[first : first + es * count : es], read_only(np.eye(count))
+        if es == 1 and cj == 1 and ci == columns:  # a list and a matrix
+            first, matrix = start + e0, start + c0
+            end = matrix + count * columns
+            if columns == 1:
+                return values[first : first + count], values[matrix:end, None]
+            return values[first : first + count], values[matrix:end].reshape(count, columns)
+        if cj == 1 and e0 < ci == es >= c0 + columns:  # rows
+            end = start + count * es
+            if columns == 1:
+                return values[start + e0 : end : es], values[start + c0 : end : es, None]
+            table = values[start:end].reshape(count, es)
+            return table[:, e0], table[:, c0 : c0 + columns]
+        rows = np.arange(count)
+        cells = start + c0 + ci * rows[:, None] + cj * np.arange(columns)
+        return read_only(values[start + e0 + es * rows]), read_only(values[cells])
 
     def _sets(self, drafts: list[BlockDraft], made: list[Block]) -> Iterator[BasisSet]:
         """Group blocks into sets: by section, and anew where the list of elements starts again."""
