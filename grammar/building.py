@@ -303,21 +303,35 @@ class Build:
     def parse(self, tokens: Iterable[Token]) -> Node:
         """Put tokens through the layout's grammar.
 
-        The grammars take every sequence of their tokens, so that one fault never hides the next;
-        should one refuse a token all the same, that is a finding and the token is passed over.
+        The grammars take every sequence of tokens that their readers make, so that one fault never
+        hides the next; should one refuse a token all the same, that is a finding and the token is
+        passed over.
         """
-        parser = parser_of(self.layout.replace("-", "_")).parse_interactive()
-        for token in tokens:
+        left = list(tokens)
+        refused: set[int] = set()
+        while True:
+            parser = parser_of(self.layout.replace("-", "_")).parse_interactive()
+            for token in left:
+                try:
+                    parser.feed_token(token)
+                except UnexpectedToken as refusal:
+                    self._refuse(token, refusal, refused)
             try:
-                parser.feed_token(token)
+                tree = parser.feed_eof()  # type: ignore[no-untyped-call]
             except UnexpectedToken as refusal:
-                expected = ", ".join(sorted(refusal.accepts or refusal.expected)).lower()
-                self.fault_line(
-                    "form.syntax",
-                    index_of(token),
-                    f"{str(token)!r} does not belong here; expected: {expected}",
-                )
-        return parser.feed_eof()  # type: ignore[no-any-return, no-untyped-call]
+                self._refuse(left.pop(), refusal, refused)  # it ends in the middle of something
+                continue
+            return tree  # type: ignore[no-any-return]
+
+    def _refuse(self, token: Token, refusal: UnexpectedToken, refused: set[int]) -> None:
+        if index_of(token) not in refused:
+            refused.add(index_of(token))
+            expected = ", ".join(sorted(refusal.accepts or refusal.expected)).lower()
+            self.fault_line(
+                "form.syntax",
+                index_of(token),
+                f"{str(token)!r} does not belong here; expected: {expected}",
+            )
 
     def rows(self, token: Token | None) -> Run:
         """The words of a run of rows, line by line; blank lines and comments are left out."""
