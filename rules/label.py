@@ -7,6 +7,7 @@ from overlapse.grammar.designation import Designation
 from overlapse.grammar.model import BasisSet, Block, letter_of
 from overlapse.rules.case import Case, gathered, is_orbital
 from overlapse.rules.claims import Claim, CompositionClaim, composition_claim
+from overlapse.rules.composition import lengths_of, notation, primitives, show
 from overlapse.rules.families.expected import Lengths, Promise, candidates, promise
 from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rule
@@ -33,14 +34,6 @@ class Verdict(NamedTuple):
     @property
     def fits(self) -> bool:
         return not self.split and not self.added
-
-
-def lengths_of(block: Block) -> Lengths:
-    """Contraction lengths of a block for each l, longest first."""
-    found: dict[int, list[int]] = {}
-    for _, function in block.contracted:
-        found.setdefault(function.l, []).append(len(function.exponents))
-    return {l: tuple(sorted(n, reverse=True)) for l, n in sorted(found.items())}
 
 
 def verdict(block: Block, label: Designation) -> Verdict | None:
@@ -78,16 +71,6 @@ def _best(members: BasisSet) -> str | None:
     return str(labels[0][0]) if labels else None
 
 
-def _show(lengths: Lengths, which: tuple[int, ...] | None = None) -> str:
-    shown = [
-        f"{letter_of(l)} ({','.join(map(str, n))})"
-        for l, n in lengths.items()
-        if which is None or l in which
-    ]
-    missing = [f"no {letter_of(l)}" for l in which or () if l not in lengths]
-    return ", ".join([*shown, *missing]) or "nothing"
-
-
 def _judged(case: Case) -> Iterator[tuple[BasisSet, Claim, Designation]]:
     for index, members in enumerate(case.sets):
         for claim in case.claims[index]:
@@ -122,9 +105,9 @@ def _compare(
                 say(v, claim, label),
                 element=v.block.symbol,
                 shell=letter_of(differ(v)[0]),
-                measured=_show(v.found, differ(v)),
-                limit=_show(v.promise.full, differ(v)),
-                expected=_show(v.promise.full),
+                measured=show(v.found, differ(v)),
+                limit=show(v.promise.full, differ(v)),
+                expected=show(v.promise.full),
                 remedy="restore the lost function, or correct the label",
             )
 
@@ -146,12 +129,12 @@ def _wrong_label(
         "warning",
         f"{claim.label!r} ({claim.where}) is not what the set contains: {len(wrong)} of {count} "
         f"element{'s' * (count != 1)} differ{'s' * (count == 1)}, first {v.block.symbol} on line "
-        f"{v.block.line} with {_show(v.found, differ(v))} where the label promises "
-        f"{_show(v.promise.full, differ(v))}{told}{fits}",
+        f"{v.block.line} with {show(v.found, differ(v))} where the label promises "
+        f"{show(v.promise.full, differ(v))}{told}{fits}",
         element=v.block.symbol,
         shell=letter_of(differ(v)[0]),
-        measured=_show(v.found),
-        limit=_show(v.promise.full),
+        measured=show(v.found),
+        limit=show(v.promise.full),
         expected=best,
         remedy=f"call it {best}" if best else "correct the label, or restore what was lost",
     )
@@ -199,8 +182,8 @@ def split(case: Case) -> Iterator[Finding]:
     def say(v: Verdict, claim: Claim, label: Designation) -> str:
         why = f"; {v.promise.why}" if v.promise.why else ""
         return (
-            f"{label} ({claim.where}) promises {_show(v.promise.full, v.split)} for "
-            f"{v.block.symbol}; found {_show(v.found, v.split)}{why}"
+            f"{label} ({claim.where}) promises {show(v.promise.full, v.split)} for "
+            f"{v.block.symbol}; found {show(v.found, v.split)}{why}"
         )
 
     yield from _compare(case, lambda v: v.split, say)
@@ -257,8 +240,8 @@ def decoration(case: Case) -> Iterator[Finding]:
             words.append(f"{abs(short)} {letter_of(l)} function {verb}")
         why = f"; {v.promise.why}" if v.promise.why else ""
         return (
-            f"{label} ({claim.where}) promises {_show(v.promise.full, v.added)} for "
-            f"{v.block.symbol}; found {_show(v.found, v.added)}: {', '.join(words)}{why}"
+            f"{label} ({claim.where}) promises {show(v.promise.full, v.added)} for "
+            f"{v.block.symbol}; found {show(v.found, v.added)}: {', '.join(words)}{why}"
         )
 
     yield from _compare(case, lambda v: () if v.split else v.added, say, lambda v: v.is_decorated)
@@ -314,10 +297,10 @@ def composition(case: Case) -> Iterator[Finding]:
                 claim.line,
                 "note",
                 f"{len(wrong)} of {len(claimed)} comments on the composition differ from the "
-                f"blocks, first {claim.text} for {block.symbol}, which has {_notation(block)}: "
+                f"blocks, first {claim.text} for {block.symbol}, which has {notation(block)}: "
                 "they seem to describe another set",
                 element=block.symbol,
-                measured=_notation(block),
+                measured=notation(block),
                 limit=claim.text,
                 remedy="correct the comments, or use the file with the set it belongs to",
             )
@@ -327,9 +310,9 @@ def composition(case: Case) -> Iterator[Finding]:
                 case.at_line(
                     claim.line,
                     "warning",
-                    f"the comment says {claim.text}, but {block.symbol} has {_notation(block)}",
+                    f"the comment says {claim.text}, but {block.symbol} has {notation(block)}",
                     element=block.symbol,
-                    measured=_notation(block),
+                    measured=notation(block),
                     limit=claim.text,
                     remedy="restore the row or shell that was lost, or correct the comment",
                 )
@@ -343,27 +326,6 @@ def _agrees(block: Block, claim: CompositionClaim) -> bool:
         return False
     distinct, written = primitives(block)
     return not claim.primitives or claim.primitives in (distinct, written)
-
-
-def primitives(block: Block) -> tuple[dict[int, int], dict[int, int]]:
-    """Primitives per l, counted as distinct exponents and as rows of all contractions."""
-    distinct: dict[int, set[float]] = {}
-    written: dict[int, int] = {}
-    for shell in block.shells:
-        for l in shell.angular:
-            distinct.setdefault(l, set()).update(shell.exponents.tolist())
-            written[l] = written.get(l, 0) + len(shell.exponents)
-    return {l: len(e) for l, e in sorted(distinct.items())}, dict(sorted(written.items()))
-
-
-def _notation(block: Block) -> str:
-    """Composition in the usual notation: (10s,4p) -> [3s,2p]."""
-    distinct, _ = primitives(block)
-
-    def join(counts: dict[int, int]) -> str:
-        return ",".join(f"{count}{letter_of(l)}" for l, count in counts.items())
-
-    return f"({join(distinct)}) -> [{join(block.counts)}]"
 
 
 @rule("label.unknown")
