@@ -8,7 +8,7 @@ of the file in one go and makes the model.  Positions of single numbers are work
 faults.
 """
 
-from collections.abc import Callable, Iterable, Iterator, Sequence
+from collections.abc import Callable, Collection, Iterable, Iterator, Sequence
 from contextlib import suppress
 from dataclasses import dataclass, field
 from functools import cache
@@ -153,7 +153,7 @@ class Build:
         layout: str,
         comment: str = "",
         word_pattern: str = r"\S+",
-        windows: Iterable[range] | None = None,
+        windows: Collection[range] | None = None,
     ) -> None:
         """``comment`` holds the signs that begin a comment, ``word_pattern`` matches a number.
 
@@ -190,7 +190,9 @@ class Build:
             bodies.append(line.strip())
         return bodies
 
-    def _within(self, windows: Iterable[range]) -> list[str]:
+    def _within(self, windows: Collection[range]) -> list[str]:
+        if not windows:
+            return []
         lines = self.source.lines
         bodies = [""] * len(lines)
         for window in windows:

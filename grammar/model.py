@@ -184,12 +184,11 @@ class Shell:
         into arrays.
         """
         shell = cls.__new__(cls)
-        put = object.__setattr__
-        put(shell, "angular", angular)
-        put(shell, "exponents", exponents)
-        put(shell, "coefficients", coefficients)
-        put(shell, "line", line)
-        put(shell, "cells", cells)
+        _put_angular(shell, angular)
+        _put_exponents(shell, exponents)
+        _put_coefficients(shell, coefficients)
+        _put_line(shell, line)
+        _put_cells(shell, cells)
         return shell
 
     @property
@@ -266,6 +265,12 @@ class Shell:
             return self.cells.spelling(row, column)
         value = self.exponents[row] if column is None else self.coefficients[row, column]
         return repr(float(value))
+
+
+# The quick way into the slots of a frozen shell.
+_put_angular, _put_exponents, _put_coefficients, _put_line, _put_cells = (
+    getattr(Shell, name).__set__ for name in Shell.__slots__
+)
 
 
 def _exact(word: str, value: float) -> str:

@@ -49,8 +49,7 @@ def read_source(source: Source, *, layout: str | None = None) -> Document:
     wanted = layout_of(layout) if layout is not None else None
     if not source.text.strip():
         return _unread(source, "the file is empty")
-    lengths = list(map(len, source.lines))
-    is_long = max(lengths) > LONGEST_LINE
+    is_long = _has_long_line(source)
     if wanted is not None and (wanted.any_line or not is_long):
         return _read_as(source, wanted)
     if is_long and wanted is None:
@@ -61,10 +60,22 @@ def read_source(source: Source, *, layout: str | None = None) -> Document:
         return _read_by_content(source, found)
     if not is_long:
         return _unread(source, "no known layout of basis sets is recognised in this text")
+    lengths = list(map(len, source.lines))
     line = lengths.index(max(lengths)) + 1
     return _unread(
         source, f"line {line} has {max(lengths):,} characters: no row of a basis set is so long"
     )
+
+
+def _has_long_line(source: Source) -> bool:
+    """Whether some line is longer than any row; no need to cut all lines out for that."""
+    text, start = source.flat, 0
+    while len(text) - start > LONGEST_LINE:
+        end = text.rfind("\n", start, start + LONGEST_LINE + 1)
+        if end < 0:
+            return True
+        start = end + 1
+    return False
 
 
 def candidates(source: Source) -> list[tuple[Evidence, Layout]]:

@@ -1,9 +1,9 @@
 """One document under judgement, with the results that several rules share."""
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from dataclasses import replace
 from functools import cached_property
-from typing import Any
+from typing import Any, TypeVar
 
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import number_of, occupied, replaced_by, symbol_of
@@ -14,6 +14,8 @@ from overlapse.rules.norms import Norm, norms_of
 from overlapse.rules.registry import Rule
 from overlapse.rules.rows import Row, Suspect, rows_of, suspects_of
 
+Shared = TypeVar("Shared")
+
 
 class Case:
     """A document, the label it was given from outside (if any), and helpers to make findings."""
@@ -23,6 +25,7 @@ class Case:
         self.document = over_normalised(document)
         self.given_label = label
         self._rule = ""
+        self._shared: dict[str, Any] = {}
 
     # ---- running a rule
 
@@ -34,6 +37,12 @@ class Case:
         ]
 
     # ---- shared results
+
+    def shared(self, name: str, make: Callable[[], Shared]) -> Shared:
+        """A result that several rules use, worked out by whichever asks first."""
+        if name not in self._shared:
+            self._shared[name] = make()
+        return self._shared[name]  # type: ignore[no-any-return]
 
     @cached_property
     def claims(self) -> dict[int, list[Claim]]:

@@ -4,7 +4,12 @@ import re
 from pathlib import PurePath
 from typing import NamedTuple
 
-from overlapse.grammar.designation import Designation, label_in_file_name, parse_label
+from overlapse.grammar.designation import (
+    Designation,
+    label_in_file_name,
+    label_in_words,
+    parse_label,
+)
 from overlapse.grammar.model import BasisSet, Block, Document
 
 _LETTERS = "spdfghiklmnoqrtuv"
@@ -72,9 +77,8 @@ def _commented(document: Document) -> list[Claim]:
         if remark.line >= first:
             break
         named = _NAMED.search(remark.text)
-        words = remark.text.split()
-        label = named[1] if named else words[0] if words else ""
-        if (designation := parse_label(label)) is not None:
+        label = named[1] if named else label_in_words(remark.text.split())
+        if label and (designation := parse_label(label)) is not None:
             return [Claim(label, designation, f"the comment on line {remark.line}", remark.line)]
     return []
 

@@ -1,140 +1,73 @@
 """Labels: does the set contain what its name and its comments say?"""
 
-from collections.abc import Callable, Iterator
-from typing import NamedTuple
+from collections.abc import Iterator
 
 from overlapse.grammar.designation import Designation
 from overlapse.grammar.model import BasisSet, Block, letter_of
 from overlapse.rules.case import Case, gathered, is_orbital
 from overlapse.rules.claims import Claim, CompositionClaim, composition_claim
-from overlapse.rules.composition import lengths_of, notation, primitives, show
-from overlapse.rules.families.expected import Lengths, Promise, candidates, promise
+from overlapse.rules.composition import notation, primitives
+from overlapse.rules.families.counted import is_on_record
 from overlapse.rules.finding import Finding
+from overlapse.rules.labelling import Judged, Kind, Verdict, best_label, fits, judged
 from overlapse.rules.registry import rule
 
 
-class Verdict(NamedTuple):
-    """A block against a promise: where they differ, by angular momentum.
+def differing(case: Case, kind: Kind) -> Iterator[Finding]:
+    """Findings for all claims, where the difference is of this kind.
 
-    split: l whose core or valence functions differ; added: l whose polarization or diffuse
-    functions differ.
+    Where most elements differ the label is wrong, not they, and it is said once.
     """
-
-    block: Block
-    promise: Promise
-    found: Lengths
-    split: tuple[int, ...]
-    added: tuple[int, ...]
-
-    @property
-    def is_decorated(self) -> bool:
-        """Whether the label adds functions to this element, or the block has some of its own."""
-        return self.promise.full != self.promise.plain or bool(self.added)
-
-    @property
-    def fits(self) -> bool:
-        return not self.split and not self.added
-
-
-def verdict(block: Block, label: Designation) -> Verdict | None:
-    """Compare a block with what a label promises, or None where the label is not defined."""
-    promised = promise(label, block.atomic_number)
-    if promised is None:
-        return None
-    found = lengths_of(block)
-    split: list[int] = []
-    added: list[int] = []
-    for l in sorted({*promised.full, *found}):
-        here, full = found.get(l, ()), promised.full.get(l, ())
-        if here in (full, full + promised.optional.get(l, ())):
+    for claim in judged(case):
+        if claim.label_is_wrong:
+            if claim.kind == kind:
+                yield _wrong_label(case, claim)
             continue
-        plain = promised.plain.get(l, ())
-        only_ones = here[: len(plain)] == plain and set(here[len(plain) :]) <= {1}
-        (added if only_ones else split).append(l)
-    return Verdict(block, promised, found, tuple(split), tuple(added))
+        yield from gathered([_at_element(case, claim, v) for v in claim.wrong if v.kind == kind])
 
 
-def fitting_labels(members: BasisSet, limit: int = 12) -> list[tuple[Designation, int, int]]:
-    """Known labels that fit a set: label, elements that fit, elements looked at; best first."""
-    blocks = [block for block in members.blocks if block.complete and block.shells][:limit]
-    found = []
-    for label in candidates():
-        verdicts = [verdict(block, label) for block in blocks]
-        fits = sum(v is not None and v.fits for v in verdicts)
-        if fits * 2 > len(blocks):
-            found.append((label, fits, len(blocks)))
-    return sorted(found, key=lambda item: -item[1])
-
-
-def _best(members: BasisSet) -> str | None:
-    labels = fitting_labels(members)
-    return str(labels[0][0]) if labels else None
-
-
-def _judged(case: Case) -> Iterator[tuple[BasisSet, Claim, Designation]]:
-    for index, members in enumerate(case.sets):
-        for claim in case.claims[index]:
-            if claim.designation is not None and is_orbital(members):
-                yield members, claim, claim.designation
-
-
-def _compare(
-    case: Case,
-    differ: Callable[[Verdict], tuple[int, ...]],
-    say: Callable[[Verdict, Claim, Designation], str],
-    concerns: Callable[[Verdict], bool] = lambda v: True,
-) -> Iterator[Finding]:
-    """Findings for all claims; where most elements differ the label is wrong, not they.
-
-    ``concerns`` chooses the elements that the comparison says anything about.
-    """
-    for members, claim, label in _judged(case):
-        blocks = [block for block in members.blocks if block.complete and block.shells]
-        verdicts = [v for block in blocks if (v := verdict(block, label)) is not None]
-        verdicts = [v for v in verdicts if concerns(v)]
-        wrong = [v for v in verdicts if differ(v)]
-        if not wrong:
-            continue
-        if len(wrong) * 2 > len(verdicts):
-            yield _wrong_label(case, members, claim, wrong, len(verdicts), differ)
-            continue
-        for v in wrong:
-            yield case.at_line(
-                v.block.line,
-                "warning",
-                say(v, claim, label),
-                element=v.block.symbol,
-                shell=letter_of(differ(v)[0]),
-                measured=show(v.found, differ(v)),
-                limit=show(v.promise.full, differ(v)),
-                expected=show(v.promise.full),
-                remedy="restore the lost function, or correct the label",
-            )
-
-
-def _wrong_label(
-    case: Case,
-    members: BasisSet,
-    claim: Claim,
-    wrong: list[Verdict],
-    count: int,
-    differ: Callable[[Verdict], tuple[int, ...]],
-) -> Finding:
-    v = wrong[0]
-    best = _best(members)
-    fits = f"; the contents fit {best}" if best else "; no known label fits the contents better"
-    told = f" ({v.promise.why})" if v.promise.why else ""
+def _at_element(case: Case, claim: Judged, v: Verdict) -> Finding:
     return case.at_line(
-        claim.line,
+        v.block.line,
         "warning",
-        f"{claim.label!r} ({claim.where}) is not what the set contains: {len(wrong)} of {count} "
-        f"element{'s' * (count != 1)} differ{'s' * (count == 1)}, first {v.block.symbol} on line "
-        f"{v.block.line} with {show(v.found, differ(v))} where the label promises "
-        f"{show(v.promise.full, differ(v))}{told}{fits}",
+        told(claim, v),
         element=v.block.symbol,
-        shell=letter_of(differ(v)[0]),
-        measured=show(v.found),
-        limit=show(v.promise.full),
+        shell=letter_of(v.l),
+        measured=v.found,
+        limit=v.promised,
+        expected=v.whole,
+        remedy="restore the lost function, or correct the label",
+    )
+
+
+def told(claim: Judged, v: Verdict) -> str:
+    """The difference of one element in words."""
+    detail = f": {v.detail}" if v.detail else ""
+    why = f"; {v.why}" if v.why else ""
+    return (
+        f"{claim.label} ({claim.claim.where}) promises {v.promised} for {v.block.symbol}; found "
+        f"{v.found}{detail}{why}"
+    )
+
+
+def _wrong_label(case: Case, claim: Judged) -> Finding:
+    v, wrong, count = claim.wrong[0], len(claim.wrong), len(claim.verdicts)
+    best = str(claim.best) if claim.best is not None and claim.best != claim.label else None
+    fits_it = f"; the contents fit {best}" if best else "; no known label fits the contents better"
+    why = f" ({v.why})" if v.why else ""
+    # Libraries of fitting sets file them under the name of the set that they belong to.
+    beside = claim.best is not None and bool(claim.best.fitting) and not claim.label.fitting
+    return case.at_line(
+        claim.claim.line,
+        "note" if beside else "warning",
+        f"{claim.claim.label!r} ({claim.claim.where}) is not what the set contains: {wrong} of "
+        f"{count} element{'s' * (count != 1)} differ{'s' * (count == 1)}, first {v.block.symbol} "
+        f"on line {v.block.line} with {v.found} where the label promises {v.promised}{why}"
+        f"{fits_it}",
+        element=v.block.symbol,
+        shell=letter_of(v.l),
+        measured=v.found,
+        limit=v.promised,
         expected=best,
         remedy=f"call it {best}" if best else "correct the label, or restore what was lost",
     )
@@ -179,14 +112,7 @@ def split(case: Case) -> Iterator[Finding]:
         ****
     """
 
-    def say(v: Verdict, claim: Claim, label: Designation) -> str:
-        why = f"; {v.promise.why}" if v.promise.why else ""
-        return (
-            f"{label} ({claim.where}) promises {show(v.promise.full, v.split)} for "
-            f"{v.block.symbol}; found {show(v.found, v.split)}{why}"
-        )
-
-    yield from _compare(case, lambda v: v.split, say)
+    yield from differing(case, "split")
 
 
 @rule("label.decoration")
@@ -195,11 +121,15 @@ def decoration(case: Case) -> Iterator[Finding]:
 
     A star, or (d,p), stands for polarization functions, a plus for diffuse s and p functions on
     heavy atoms, a second plus for a diffuse s function on hydrogen.  What a star adds depends on
-    the row: an f function for Sc-Zn in 6-31G*, nothing below Na in 3-21G*.
+    the row: an f function for Sc-Zn in 6-31G*, nothing below Na in 3-21G*.  The prefixes of other
+    families (aug-, jul- to feb-, maug-, ma-) stand for diffuse functions, one for each angular
+    momentum or for some of them; single elements that lack those are left to `shell.diffuse`.
 
     Source: P. C. Hariharan, J. A. Pople, Theor. Chim. Acta 28, 213 (1973); T. Clark, J.
     Chandrasekhar, G. W. Spitznagel, P. von R. Schleyer, J. Comput. Chem. 4, 294 (1983); M. J.
-    Frisch, J. A. Pople, J. S. Binkley, J. Chem. Phys. 80, 3265 (1984).
+    Frisch, J. A. Pople, J. S. Binkley, J. Chem. Phys. 80, 3265 (1984); R. A. Kendall, T. H.
+    Dunning, R. J. Harrison, J. Chem. Phys. 96, 6796 (1992); E. Papajak, J. Zheng, X. Xu, H. R.
+    Leverentz, D. G. Truhlar, J. Chem. Theory Comput. 7, 3027 (2011).
 
     Remedy: restore the lost function, or correct the label.
 
@@ -232,19 +162,7 @@ def decoration(case: Case) -> Iterator[Finding]:
         ****
     """
 
-    def say(v: Verdict, claim: Claim, label: Designation) -> str:
-        words = []
-        for l in v.added:
-            short = len(v.promise.full.get(l, ())) - len(v.found.get(l, ()))
-            verb = "is missing" if short > 0 else "is too many"
-            words.append(f"{abs(short)} {letter_of(l)} function {verb}")
-        why = f"; {v.promise.why}" if v.promise.why else ""
-        return (
-            f"{label} ({claim.where}) promises {show(v.promise.full, v.added)} for "
-            f"{v.block.symbol}; found {show(v.found, v.added)}: {', '.join(words)}{why}"
-        )
-
-    yield from _compare(case, lambda v: () if v.split else v.added, say, lambda v: v.is_decorated)
+    yield from differing(case, "decoration")
 
 
 @rule("label.composition")
@@ -330,10 +248,10 @@ def _agrees(block: Block, claim: CompositionClaim) -> bool:
 
 @rule("label.unknown")
 def unknown(case: Case) -> Iterator[Finding]:
-    """A label is not understood, so the composition was not judged by it.
+    """A label is not understood, or means several sets, so it was not used to judge by.
 
     The rest of the audit does not depend on the label.  If the contents fit a known label, it is
-    named.
+    named.  Short names such as DZP, SVP or TZVP were given to several sets each.
 
     Source: none is needed.
 
@@ -363,16 +281,46 @@ def unknown(case: Case) -> Iterator[Finding]:
     """
     for index, members in enumerate(case.sets):
         for claim in case.claims[index]:
-            if claim.designation is None:
-                best = _best(members) if is_orbital(members) else None
-                fits = f"; the contents fit {best}" if best else ""
-                yield case.at_line(
-                    claim.line,
-                    "note",
-                    f"no composition is on record for {claim.label!r} ({claim.where}), so the set "
-                    f"was judged without its label{fits}",
-                    element=members.blocks[0].symbol,
-                    measured=claim.label,
-                    expected=best,
-                    remedy="give the label with --label if the set has one of the known names",
-                )
+            label = claim.designation
+            if label is not None and label.readings:
+                yield _ambiguous(case, members, claim, label.readings)
+            elif label is None or not _has_record(label):
+                yield _not_on_record(case, members, claim)
+
+
+def _has_record(label: Designation) -> bool:
+    return label.family in ("STO-nG", "N-MPG") or is_on_record(label)
+
+
+def _not_on_record(case: Case, members: BasisSet, claim: Claim) -> Finding:
+    found = best_label(members) if is_orbital(members) else None
+    best = None if found is None else str(found)
+    fitting = f"; the contents fit {best}" if best else ""
+    return case.at_line(
+        claim.line,
+        "note",
+        f"no composition is on record for {claim.label!r} ({claim.where}), so the set "
+        f"was judged without its label{fitting}",
+        element=members.blocks[0].symbol,
+        measured=claim.label,
+        expected=best,
+        remedy="give the label with --label if the set has one of the known names",
+    )
+
+
+def _ambiguous(
+    case: Case, members: BasisSet, claim: Claim, readings: tuple[Designation, ...]
+) -> Finding:
+    blocks = [block for block in members.blocks if block.complete and block.shells]
+    fitting = [str(r) for r in readings if all(fits(block, r) for block in blocks)]
+    told = f"the contents fit {' and '.join(fitting)}" if fitting else "the contents fit none"
+    return case.at_line(
+        claim.line,
+        "note",
+        f"{claim.label!r} ({claim.where}) is the name of more than one set, among them "
+        f"{', '.join(map(str, readings))}; {told}",
+        element=members.blocks[0].symbol,
+        measured=claim.label,
+        expected=fitting[0] if len(fitting) == 1 else None,
+        remedy="say which set it is: the name alone does not",
+    )

@@ -1,30 +1,29 @@
 """Reader and writer for the open JSON schema of basis sets in quantum chemistry."""
 
 import re
-from collections.abc import Iterator
 from functools import cached_property
-from typing import NamedTuple
 
 from lark import Token
 
-from overlapse.grammar.building import BlockDraft, Build, FunctionType, Node, integer
+from overlapse.grammar.building import BlockDraft, Build, Node, integer
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout
-from overlapse.grammar.model import Channel, Document, Potential, Remark, Shell
-from overlapse.grammar.pieces.apart import POTENTIAL_KINDS, SHELL_KINDS, Apart, Where
+from overlapse.grammar.model import Document, Potential, Remark
+from overlapse.grammar.pieces.apart import Apart, Where
+from overlapse.grammar.pieces.atonce import document_of
 from overlapse.grammar.pieces.centres import gather
-from overlapse.grammar.pieces.jsontext import (
-    LISTS,
-    Members,
-    Value,
-    kind_of,
-    name_of,
-    pairs_in,
-    span_of,
-    string_of,
-)
+from overlapse.grammar.pieces.centrewise import settle_functions, sizes_of, symbol_in
+from overlapse.grammar.pieces.jsontext import Members, name_of, pairs_in, string_of
+from overlapse.grammar.pieces.jsontokens import LISTS, Value, kind_of, span_of
 from overlapse.grammar.pieces.jsonwriting import write
-from overlapse.grammar.pieces.leaves import Terms, cells_of, table_of, terms_of
+from overlapse.grammar.pieces.leaves import (
+    Shape,
+    Terms,
+    channels_of,
+    shells_of,
+    table_of,
+    terms_of,
+)
 from overlapse.grammar.source import Source
 
 PICTURE = """\
@@ -34,7 +33,6 @@ PICTURE = """\
 ]}}, "atom_map": ["C"]}"""
 
 _OBJECTS = ("object", "LEAF")
-_NAME = re.compile(r"([A-Za-z]{1,3})\d*")
 _QUOTED = re.compile(r'"([^"\\\n]*)"')
 
 
@@ -49,22 +47,7 @@ def recognise(source: Source) -> Evidence | None:
 
 
 def read(source: Source) -> Document:
-    return _Reader(source).document()
-
-
-class _Size(NamedTuple):
-    """A shell's angular momenta, its kind of functions, and its number of columns."""
-
-    angular: tuple[int, ...]
-    kind: FunctionType | None
-    columns: int
-
-    @property
-    def functions(self) -> int:
-        """Number of components, of one contraction for each l."""
-        if self.kind == "spherical":
-            return sum(2 * l + 1 for l in self.angular)
-        return sum((l + 1) * (l + 2) // 2 for l in self.angular)
+    return gather(document_of(source) or _Reader(source).document())
 
 
 class _Reader:
@@ -76,7 +59,7 @@ class _Reader:
         self.tree = self.json.tree()
         self.label: str | None = None
         self.starts: dict[int, BlockDraft] = {}  # by the offset of their names
-        self.sizes: dict[str, list[_Size]] = {}  # of the centres of one basis
+        self.shapes: dict[str, list[Shape]] = {}  # of the centres of one basis
 
     def document(self) -> Document:
         self.check_outside()
@@ -86,7 +69,7 @@ class _Reader:
         if not bases or self.json.damage:
             self.strays(bool(bases))
         self.mark_damage()
-        return gather(self.build.document())
+        return self.build.document()
 
     def check_outside(self) -> None:
         """In a file that is one JSON text, nothing stands beside it."""
@@ -101,7 +84,7 @@ class _Reader:
     def basis(self, node: Node) -> None:
         members = self.json.members(node)
         self.label = string_of(members.get("name")) or None
-        self.sizes = {}
+        self.shapes = {}
         described = members.get("description")
         if described is not None and (text := string_of(described)):
             self.build.remarks.append(Remark(text, self.line_of(described) + 1))
@@ -113,7 +96,7 @@ class _Reader:
             return
         damaged = self.json.is_damaged(centres)
         for name, (key, value) in self.json.members(centres).entries.items():
-            self.sizes[name] = []
+            self.shapes[name] = []
             # Behind a bracket that does not fit, names of other things may have come here.
             if value is not None and not (damaged and kind_of(value) not in _OBJECTS):
                 self.centre(key, value)
@@ -131,7 +114,7 @@ class _Reader:
                 value, message, element=block.symbol, expected="{", remedy="restore the object"
             )
             return
-        sizes = self.sizes.setdefault(name, [])
+        shapes = self.shapes.setdefault(name, [])
         members = self.json.members(value)
         block.complete &= members.whole
         if members.whole:
@@ -139,15 +122,15 @@ class _Reader:
             names = ("ecp_electrons", "ecp_potentials")
             self.json.check_names(members, ["electron_shells"], where, names)
         for shell in self.objects(members, "electron_shells", block):
-            self.shell(block, shell, sizes)
+            self.shell(block, shell, shapes)
         self.potential(block, members)
-        block.functions = self.functions(block, sizes)
+        settle_functions(self.build, block, shapes)
         block.end = max(block.end, self.build.source.place(self.json.extent(value)[1]).line - 1)
 
     def opened(self, key: Token) -> BlockDraft:
         """The block of a centre, whose element its name has to tell."""
         name, start = name_of(key), span_of(key)[0]
-        symbol = _symbol_in(name) or self.elements.get(name)
+        symbol = symbol_in(name) or self.elements.get(name)
         if symbol is None:
             self.build.fault(
                 "form.element",
@@ -185,43 +168,16 @@ class _Reader:
         block.complete &= whole and not wrong
         return [item for item in items if kind_of(item) in _OBJECTS]
 
-    def shell(self, block: BlockDraft, value: Value, sizes: list[_Size]) -> None:
+    def shell(self, block: BlockDraft, value: Value, shapes: list[Shape]) -> None:
         start, end = self.json.extent(value)
-        table = None
-        if isinstance(value, Token):
-            table = table_of(self.json.leaves[start])
-        if table is None or table.kind not in SHELL_KINDS:
+        table = table_of(self.json.leaves[start]) if isinstance(value, Token) else None
+        if table is None:
             table = self.json.table(value, block)
         if table is None:
             block.complete = False
             return
-        sizes.append(_Size(table.angular, _function_type(table.kind), table.coefficients.shape[1]))
-        line, source = self.line_of(value) + 1, self.build.source
-        if table.angular == (0, 1) or len(table.angular) == 1:
-            cells = cells_of(source, start, end, len(table.exponents), 0)
-            shell = Shell(table.angular, table.exponents, table.coefficients, line, cells)
-            block.ready.append(shell)
-            return
-        # The model shares exponents between s and p only: one shell for each l.
-        for at, l in enumerate(table.angular):
-            cells = cells_of(source, start, end, len(table.exponents), at)
-            column = table.coefficients[:, at : at + 1]
-            block.ready.append(Shell((l,), table.exponents, column, line, cells))
-
-    def functions(self, block: BlockDraft, sizes: list[_Size]) -> FunctionType | None:
-        """Spherical or Cartesian; s and p functions, which are both, decide if alone."""
-        above = {size.kind for size in sizes if max(size.angular) > 1}
-        kinds = above or {size.kind for size in sizes}
-        if len(kinds) > 1 and above:
-            self.build.fault_line(
-                "form.syntax",
-                block.line,
-                "some shells of this centre are spherical, others Cartesian",
-                severity="note",
-                element=block.symbol,
-                remedy="nothing, if this is meant: few programs can use such a set",
-            )
-        return kinds.pop() if len(kinds) == 1 else None
+        shapes.append(table[0])
+        block.ready += shells_of(table, self.build.source, self.line_of(value) + 1, start, end)
 
     # ---- potentials
 
@@ -249,15 +205,13 @@ class _Reader:
             )
         found = [(self.line_of(part) + 1, self.terms(block, part)) for part in parts]
         if parts or electrons:
-            channels = _channels([(line, part) for line, part in found if part is not None])
+            channels = channels_of([(line, part) for line, part in found if part is not None])
             line = self.line_of(parts[0] if value is None else value) + 1
             block.potential = Potential(electrons or 0, tuple(channels), line)
 
     def terms(self, block: BlockDraft, value: Value) -> Terms | None:
-        found = None
-        if isinstance(value, Token):
-            found = terms_of(self.json.leaves[span_of(value)[0]])
-        if found is None or found.kind not in POTENTIAL_KINDS:
+        found = terms_of(self.json.leaves[span_of(value)[0]]) if isinstance(value, Token) else None
+        if found is None:
             found = self.json.terms(value, block)
         block.complete &= found is not None
         return found
@@ -273,7 +227,7 @@ class _Reader:
         first: dict[str, Value] = {}
         for item in items:
             first.setdefault(string_of(item) or "", item)
-        for name in first.keys() - self.sizes.keys():
+        for name in first.keys() - self.shapes.keys():
             self.build.fault(
                 "form.element",
                 span_of(first[name]),
@@ -281,24 +235,20 @@ class _Reader:
                 measured=name,
                 remedy="mend the name, or add the centre",
             )
-        if first.keys() <= self.sizes.keys():
-            self.check_size(members, [self.sizes[string_of(item) or ""] for item in items])
+        if first.keys() <= self.shapes.keys():
+            self.check_size(members, [self.shapes[string_of(item) or ""] for item in items])
 
-    def check_size(self, members: Members, atoms: list[list[_Size]]) -> None:
+    def check_size(self, members: Members, atoms: list[list[Shape]]) -> None:
         value = members.get("nbf")
-        sizes = [size for atom in atoms for size in atom]
-        whole = all(block.complete for block in self.starts.values())
         announced = integer(str(value)) if isinstance(value, Token) else None
-        if value is None or announced is None or not whole or not all(s.kind for s in sizes):
-            return
-        found = sum(size.functions * size.columns // len(size.angular) for size in sizes)
-        # Some programs count a general contraction as one function.
-        if announced not in (found, sum(size.functions for size in sizes)):
+        whole = all(block.complete for block in self.starts.values())
+        sizes = sizes_of(atoms) if whole and announced is not None else None
+        if value is not None and sizes is not None and announced not in sizes:
             self.build.fault(
                 "form.count",
                 span_of(value),
-                f"`nbf` announces {announced} functions; the centres of `atom_map` have {found}",
-                measured=found,
+                f"`nbf` announces {announced} functions; the centres of `atom_map` have {sizes[0]}",
+                measured=sizes[0],
                 expected=announced,
                 remedy="a shell or an atom was lost or added, or the number is wrong",
             )
@@ -343,39 +293,6 @@ class _Reader:
     def line_of(self, value: Value) -> int:
         """0-based line of the first character."""
         return self.build.source.place(span_of(value)[0]).line - 1
-
-
-def _symbol_in(name: str) -> str | None:
-    """The element's symbol in a centre's name: C, C1, bs_c, C-1, or None."""
-    parts = re.split(r"[^A-Za-z0-9]+", name)
-    for part in (name, parts[-1], parts[0]):
-        match = _NAME.fullmatch(part)
-        if match and number_of(match[1]):
-            return match[1]
-    return None
-
-
-def _function_type(kind: str) -> FunctionType | None:
-    if kind.endswith("spherical"):
-        return "spherical"
-    return "cartesian" if kind.endswith("cartesian") else None
-
-
-def _channels(parts: list[tuple[int, Terms]]) -> Iterator[Channel]:
-    """Channels of a potential; the local one is that of the highest l."""
-    scalar = [part.l for _, part in parts if part.kind.startswith("scalar")]
-    for line, part in parts:
-        spin_orbit = part.kind.startswith("spinorbit")
-        for column in part.coefficients.T:
-            yield Channel(
-                part.l,
-                not spin_orbit and part.l == max(scalar),
-                part.powers,
-                part.exponents,
-                column,
-                line,
-                kind="spin-orbit" if spin_orbit else "scalar",
-            )
 
 
 LAYOUT = Layout(

@@ -11,21 +11,11 @@ import numpy as np
 from lark import Token
 
 from overlapse.grammar.building import BlockDraft, integer
-from overlapse.grammar.model import letter_of
+from overlapse.grammar.model import letter_of, read_only
 from overlapse.grammar.numbers import Reading, read_number
-from overlapse.grammar.pieces.jsontext import (
-    LISTS,
-    JsonText,
-    Members,
-    Value,
-    kind_of,
-    span_of,
-    string_of,
-)
-from overlapse.grammar.pieces.leaves import HIGHEST, Table, Terms
-
-SHELL_KINDS = ("spherical", "cartesian", "gto", "gto_spherical", "gto_cartesian")
-POTENTIAL_KINDS = ("scalar", "spinorbit", "scalar_ecp", "spinorbit_ecp")
+from overlapse.grammar.pieces.jsontext import JsonText, Members, string_of
+from overlapse.grammar.pieces.jsontokens import LISTS, Value, kind_of, span_of
+from overlapse.grammar.pieces.leaves import HIGHEST, POTENTIAL_KINDS, SHELL_KINDS, Table, Terms
 
 _SHELL = ("angular_momentum", "exponents", "coefficients")
 _TERMS = ("angular_momentum", "r_exponents", "gaussian_exponents", "coefficients")
@@ -94,7 +84,8 @@ class Apart(JsonText):
         values, table = np.array(exponents), np.array(columns).T
         if np.isnan(values).any() or np.isnan(table).any():
             return None
-        return Table(tuple(angular), kind, values, table)
+        shape = tuple(angular), kind, len(exponents), len(columns)
+        return shape, read_only(values), read_only(table)
 
     def terms(self, value: Value, block: BlockDraft) -> Terms | None:
         """Terms of a core potential, None where something is wrong that no guess can mend."""

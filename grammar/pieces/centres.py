@@ -19,11 +19,16 @@ def gather(document: Document, severity: Severity = "note") -> Document:
     for members in document.sets:
         for block in members.blocks:
             known = variants.setdefault((members.label, block.atomic_number), {})
-            if (key := _key(block)) in known or (known and not block.complete):
+            if not known:
+                known[()] = block  # most elements come once, and then no key is wanted
+                continue
+            if first := known.pop((), None):
+                known[_key(first)] = first
+            if (key := _key(block)) in known or not block.complete:
                 continue
             if len(known) == 1 and not next(iter(known.values())).complete:
                 known.clear()
-            elif known:
+            else:
                 faults.append(_another(document, block, next(iter(known.values())), severity))
             known[key] = block
     faults.sort(key=lambda fault: fault.span)

@@ -4,12 +4,16 @@ import json
 import re
 
 import broken
+import numpy as np
 import pytest
 
 from overlapse.grammar.layouts import layouts
+from overlapse.grammar.model import Document
 from overlapse.grammar.numbers import plain
 from overlapse.grammar.pieces.apart import as_json
+from overlapse.grammar.pieces.atonce import document_of
 from overlapse.grammar.reading import read_text
+from overlapse.grammar.source import Source
 
 SOUND = """\
 {
@@ -126,6 +130,62 @@ def test_numbers_taken_apart_are_the_same() -> None:
     potential = document.blocks[1].potential
     assert potential is not None
     assert [c.coefficients.tolist() for c in potential.channels] == [[15.0, -1.5], [0.0], [0.25]]
+
+
+# Sound to the last member: all numbers are numbers.
+PLAIN = (
+    SOUND.replace('["1.0"], [".5D0"]', "[1.0], [0.5]")
+    .replace('["0.3"]', "[0.3]")
+    .replace('"4.0"', "4.0")
+    .replace('"schema_version": 1', '"schema_version": 100')
+)
+
+
+def everything(document: Document) -> list[object]:
+    return [
+        *document.remarks,
+        *((members.label, members.line) for members in document.sets),
+        *(
+            (block.label, block.line, block.end, block.functions, block.complete, shell.angular,
+             shell.exponents.tolist(), shell.coefficients.tolist(), shell.line, shell.spellings(),
+             [(shell.place(row), shell.place(row, column))
+              for row, column in np.ndindex(*shell.coefficients.shape)])
+            for block in document.blocks
+            for shell in block.shells
+        ),
+        *(
+            (block.potential.electrons, block.potential.line, channel.l, channel.local,
+             channel.powers, channel.exponents.tolist(), channel.coefficients.tolist(),
+             channel.line, channel.kind)
+            for block in document.blocks
+            if block.potential
+            for channel in block.potential.channels
+        ),
+    ]  # fmt: skip
+
+
+@pytest.mark.parametrize(
+    "text",
+    [
+        PLAIN,
+        PLAIN.replace("\n", "\r\n"),
+        PLAIN.replace("\n", "\r"),
+        json.dumps(json.loads(PLAIN)),
+        json.dumps(
+            [{"a": {"b": [{}]}}, {"of": "a molecule", "basis": json.loads(PLAIN)}], indent=1
+        ),
+        PLAIN.replace("an invented set", "\u03b1 \U0001f600"),
+        re.sub(r"(-?\d+\.\d*(e0)?)", r'"\1"', PLAIN.replace("[0, -0.5", "[0.0, -0.5")),
+    ],
+)
+def test_read_at_once_or_token_by_token_a_text_says_the_same(text: str) -> None:
+    assert document_of(Source(text)) is not None
+    # No count has a point: such a text is looked at more closely.
+    doubtful = text.replace('"schema_version": 100', '"schema_version": 1.0')
+    assert document_of(Source(doubtful)) is None
+    document = read_text(text, layout="schema")
+    assert [fault for fault in document.faults if fault.rule != "form.ending"] == []
+    assert everything(document) == everything(read_text(doubtful, layout="schema"))
 
 
 @pytest.mark.parametrize(
