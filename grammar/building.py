@@ -39,9 +39,9 @@ from overlapse.grammar.model import (
     letter_of,
 )
 from overlapse.grammar.numbers import (
-    CHARACTERS,
     FORTRAN,
     Reading,
+    is_plain,
     looks_numeric,
     read_number,
 )
@@ -435,14 +435,16 @@ class Build:
         return None
 
     def shell_letters(self, tokens: Iterable[Token], word: int = 0) -> Iterator[tuple[str, int]]:
-        """Letters and line (0-based) of all shell headings, for `note_letters`.
+        """Letters and line (0-based) of shell headings, for `note_letters`.
 
         ``word`` is the letters' place in a heading (0-based).
         """
         for token in tokens:
             if token.type == "SHELLS":
                 for heading, _, _ in self.shells_in(token):
-                    yield self.bodies[heading].split(None, word + 1)[word], heading
+                    body = self.bodies[heading]
+                    if word or body[0] in _ABOVE_I:  # others tell nothing
+                        yield body.split(None, word + 1)[word], heading
             elif token.type == "SHELL":
                 yield token.split()[word], index_of(token)
 
@@ -821,7 +823,7 @@ class Build:
     def _plain_columns(run: Run, width: int) -> list[list[float]] | None:
         """The columns of rows of one width whose numbers are all sound; None where one is not."""
         words = [word for row in run.rows for word in row]
-        if not set("".join(words)) <= CHARACTERS or any(len(row) != width for row in run.rows):
+        if not is_plain("".join(words)) or any(len(row) != width for row in run.rows):
             return None
         with suppress(ValueError):
             values = [float(word.translate(FORTRAN)) for word in words]
@@ -856,13 +858,13 @@ class Build:
 
     def _convert(self) -> Floats:
         """All numbers of all shells as one read-only array; NaN where one cannot be read."""
-        text = " ".join(self._words)
-        if "D" in text or "d" in text:
-            text = text.translate(FORTRAN)
+        words, text = self._words, " ".join(self._words)
         values = np.array([np.nan])
-        if set(text) <= CHARACTERS:
+        if is_plain(text):
+            if "D" in text or "d" in text:
+                words = text.translate(FORTRAN).split()
             with suppress(ValueError):  # a slip among the numbers; found below
-                values = np.array(list(map(float, text.split())))
+                values = np.fromiter(map(float, words), np.float64, len(words))
         if not np.isfinite(values).all():
             values = self._convert_one_by_one()
         self._has_holes = bool(np.isnan(values).any())
@@ -960,7 +962,10 @@ class Build:
         """Exponents (nprim,) and coefficients (nprim, ncontr) of a draft, views where possible."""
         (count, columns), grid, start = draft.shape, draft.grid, draft.start
         if grid.e0 == 0 and grid.c0 == 1 and grid.es == columns + 1 and not draft.unit:
-            table = values[start : start + count * grid.es].reshape(count, grid.es)
+            end = start + count * grid.es
+            if columns == 1:
+                return values[start:end:2], values[start + 1 : end : 2, None]
+            table = values[start:end].reshape(count, grid.es)
             return table[:, 0], table[:, 1:]
         plain = grid.cj == 1 and not draft.unit
         if plain and grid.e0 < grid.ci == grid.es >= grid.c0 + columns:

@@ -17,6 +17,7 @@ from math import pi
 from typing import NamedTuple
 
 import numpy as np
+import numpy.typing as npt
 
 from overlapse.grammar.model import Block, Document, Floats, Shell, read_only
 
@@ -58,27 +59,35 @@ def factorials(l: int) -> tuple[float, ...]:
 
 def count_normalised(shells: Iterable[Shell]) -> Count:
     """Count the contracted functions that are normalised under each convention."""
+    normalised = raw = total = 0
+    for count, members in _by_length(shells).items():
+        momenta = [l for l, _, _ in members]
+        l, shape = np.array(momenta), (len(members), count)
+        exponents = np.concatenate([values for _, values, _ in members]).reshape(shape)
+        coefficients = np.concatenate([values for _, _, values in members]).reshape(shape)
+        plain, folded = _self_overlaps(l, exponents, coefficients)
+        total += len(members)
+        normalised += int(_are_one(plain).sum())
+        raw += sum(_count_raw(one, folded[l == one]) for one in set(momenta))
+    return Count(normalised, raw, total)
+
+
+def _by_length(shells: Iterable[Shell]) -> dict[int, list[tuple[int, Floats, Floats]]]:
+    """The contractions of shells (l, exponents, coefficients) by their number of primitives."""
     groups: dict[int, list[tuple[int, Floats, Floats]]] = {}
     for shell in shells:
-        each = shell.columns_per_l
-        for column in range(each * len(shell.angular)):
-            groups.setdefault(len(shell.exponents), []).append(
-                (shell.angular[column // each], shell.exponents, shell.coefficients[:, column])
-            )
-    normalised = raw = 0
-    for members in groups.values():
-        ls = [l for l, _, _ in members]
-        plain, folded = _self_overlaps(
-            np.array(ls), np.array([e for _, e, _ in members]), np.array([c for _, _, c in members])
-        )
-        normalised += sum(abs(value - 1.0) < TOLERANCE for value in plain)
-        raw += sum(_factor(l, value) is not None for l, value in zip(ls, folded, strict=True))
-    return Count(normalised, raw, sum(map(len, groups.values())))
+        count, columns = shell.coefficients.shape
+        group = groups.setdefault(count, [])
+        if columns == 1:
+            group.append((shell.angular[0], shell.exponents, shell.coefficients[:, 0]))
+            continue
+        for column in range(columns):
+            l = shell.angular[column // shell.columns_per_l]
+            group.append((l, shell.exponents, shell.coefficients[:, column]))
+    return groups
 
 
-def _self_overlaps(
-    l: Floats, exponents: Floats, coefficients: Floats
-) -> tuple[list[float], list[float]]:
+def _self_overlaps(l: Floats, exponents: Floats, coefficients: Floats) -> tuple[Floats, Floats]:
     """Self-overlaps of many contractions, over normalised and over raw primitives.
 
     l: shape (k,); exponents, coefficients: shape (k, n).
@@ -88,7 +97,17 @@ def _self_overlaps(
         overlap = (2.0 / (root + 1.0 / root)) ** (l[:, None, None] + 1.5)
         both = np.stack([coefficients, coefficients / raw_norms(exponents, l[:, None])], axis=1)
         plain, folded = ((both @ overlap) * both).sum(axis=2).T
-    return plain.tolist(), folded.tolist()
+    return plain, folded
+
+
+def _are_one(overlaps: Floats) -> npt.NDArray[np.bool_]:
+    return np.abs(overlaps - 1.0) < TOLERANCE
+
+
+def _count_raw(l: int, overlaps: Floats) -> int:
+    """How many self-overlaps over raw primitives are one with some double factorials."""
+    with np.errstate(all="ignore"):
+        return int(np.any([_are_one(overlaps * factor) for factor in factorials(l)], axis=0).sum())
 
 
 def _factor(l: int, overlap: float) -> float | None:
@@ -122,6 +141,6 @@ def _converted_shell(shell: Shell) -> Shell:
             table[:, columns] /= raw_norms(shell.exponents, l)[:, None]
         for column in range(columns.start, columns.stop):
             one = (np.array([l]), shell.exponents[None, :], shell.coefficients[None, :, column])
-            table[:, column] *= (_factor(l, _self_overlaps(*one)[1][0]) or 1.0) ** 0.5
+            table[:, column] *= (_factor(l, float(_self_overlaps(*one)[1][0])) or 1.0) ** 0.5
     table[~np.isfinite(table)] = 0.0
     return replace(shell, coefficients=read_only(table))

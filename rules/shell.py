@@ -2,79 +2,24 @@
 
 from collections.abc import Iterator
 
-from overlapse.grammar.elements import core, occupied, replaced_by, usual_cores
-from overlapse.grammar.model import BasisSet, Block, letter_of
+from overlapse.grammar.elements import core
+from overlapse.grammar.model import Block, letter_of
 from overlapse.rules.case import Case, gathered, is_orbital
 from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rule
-
-
-def needed(block: Block) -> dict[int, int] | None:
-    """Occupied subshells per l that the block must describe, or None for an unusual potential."""
-    wanted = dict(occupied(block.atomic_number))
-    if block.potential is not None:
-        replaced = replaced_by(block.potential.electrons)
-        if replaced is None:
-            return None
-        wanted = {l: max(0, count - replaced.get(l, 0)) for l, count in wanted.items()}
-    return wanted
-
-
-def lacking(block: Block) -> dict[int, int]:
-    """Number of missing functions per l against the occupied subshells."""
-    wanted = needed(block) or {}
-    return {
-        l: count - block.counts.get(l, 0)
-        for l, count in wanted.items()
-        if count > block.counts.get(l, 0)
-    }
-
-
-def fitting_core(block: Block) -> int | None:
-    """Electrons of the usual core whose subshells are just those that the block lacks."""
-    lack = lacking(block)
-    z = block.atomic_number
-    for electrons in usual_cores()[1:]:
-        replaced = replaced_by(electrons) or {}
-        wanted = {l: n - replaced.get(l, 0) for l, n in occupied(z).items()}
-        if electrons < z and min(wanted.values()) >= 0 and lack and all(
-            block.counts.get(l, 0) >= n for l, n in wanted.items()
-        ):  # fmt: skip
-            return electrons
-    return None
+from overlapse.rules.valence import fitting_core, is_valence_set, lacking, needed, valence_blocks
 
 
 def _judged(case: Case) -> Iterator[list[Block]]:
     """For each set, the blocks for which a missing shell means something.
 
     Where several elements lack just the shells of a usual core, they are valence blocks whose
-    potentials live elsewhere; `shell.fragment` says so once.
+    potentials live elsewhere; `potential.missing` says so once.
     """
     for members in case.sets:
         if is_orbital(members):
             valence = {id(block) for block in valence_blocks(members)}
             yield [b for b in members.blocks if b.complete and b.shells and id(b) not in valence]
-
-
-def valence_blocks(members: BasisSet) -> list[Block]:
-    """Blocks without a potential that lack just the shells of a core, and mean to.
-
-    Several such blocks mean it, and so does one without any primitive tight enough for a core.
-    """
-    found = [
-        block
-        for block in members.blocks
-        if block.complete and block.shells and not block.potential and fitting_core(block)
-    ]
-    return [block for block in found if len(found) > 2 or _is_soft(block)]
-
-
-def _is_soft(block: Block) -> bool:
-    """Whether no s primitive reaches the core: all-electron sets of Li and beyond have one above
-    0.68 Z**2 (the smallest found among published sets)."""
-    shells = [shell for shell in block.shells if 0 in shell.angular]
-    tightest = max((float(shell.exponents.max()) for shell in shells), default=0.0)
-    return tightest < 0.6 * block.atomic_number**2
 
 
 def _shells(counts: dict[int, int]) -> str:
@@ -289,15 +234,16 @@ def _gaps(block: Block) -> Iterator[tuple[int, int]]:
 
 @rule("shell.fragment")
 def fragment(case: Case) -> Iterator[Finding]:
-    """Many elements of the set lack occupied shells: a fragment or a valence set.
+    """Most elements of the set lack occupied shells: a fragment.
 
-    Files that only add polarization or diffuse functions, valence sets whose core potentials live
-    in another file, and fitting sets look like this.  Used alone as an orbital set such a file
-    gives nonsense, so it is said once; missing shells are then not reported element by element.
+    Files that only add polarization or diffuse functions, and fitting sets, look like this.  Used
+    alone as an orbital set such a file gives nonsense, so it is said once; missing shells are then
+    not reported element by element.  Valence sets without their core potentials are another matter
+    (`potential.missing`).
 
     Source: common practice, no source.
 
-    Remedy: use it together with the set, or the potentials, that it belongs to.
+    Remedy: use it together with the set that it belongs to.
 
     Bad::
 
@@ -318,24 +264,17 @@ def fragment(case: Case) -> Iterator[Finding]:
         ****
     """
     for members in case.sets:
+        if members.role == "fitting" or is_orbital(members):
+            continue
         blocks = [block for block in members.blocks if block.complete and block.shells]
         short = [block for block in blocks if lacking(block)]
-        valence = valence_blocks(members)
-        if is_orbital(members):
-            short = valence
-        if not short or members.role == "fitting":
+        if not short or is_valence_set(members):
             continue
-        meant = "it adds functions to another set, or is no orbital set"
-        if len(valence) * 2 > len(short):
-            sizes = ", ".join(f"{block.symbol} {fitting_core(block)}" for block in valence[:4])
-            meant = (
-                "they look like valence sets whose core potentials are not in this file "
-                f"(electrons replaced: {sizes}{' ...' if len(valence) > 4 else ''})"
-            )
         yield case.at_line(
             short[0].line,
             "note",
-            f"{len(short)} of {len(blocks)} elements lack occupied shells: {meant}",
+            f"{len(short)} of {len(blocks)} elements lack occupied shells: it adds functions to "
+            "another set, or is no orbital set",
             element=short[0].symbol,
             measured=len(short),
             limit=len(blocks),

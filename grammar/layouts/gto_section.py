@@ -1,20 +1,26 @@
 """Reader for the `[GTO]` section of a file of bracket sections, one basis for each atom."""
 
 import re
-from collections.abc import Iterator
 from dataclasses import replace
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, FunctionType, Node, index_of, integer
+from overlapse.grammar.building import BlockDraft, Build, Node, index_of, integer
 from overlapse.grammar.convention import Count, count_normalised
-from overlapse.grammar.elements import number_of, symbol_of
-from overlapse.grammar.layout import Evidence, Layout, Written
-from overlapse.grammar.model import Block, Document, Fault, Shell, letter_of
-from overlapse.grammar.pieces.brackets import Repeat, Section, repeats_in, sections
+from overlapse.grammar.layout import Evidence, Layout
+from overlapse.grammar.model import Document, Fault, letter_of
+from overlapse.grammar.pieces.atomlists import AtomList
+from overlapse.grammar.pieces.brackets import (
+    Repeat,
+    Section,
+    functions_of,
+    kinds_of,
+    repeats_in,
+    sections,
+)
+from overlapse.grammar.pieces.bracketwriting import write
 from overlapse.grammar.pieces.centres import gather
 from overlapse.grammar.source import Source
-from overlapse.grammar.writing import Losses, columns, is_general, segments
 
 PICTURE = """\
 [GTO]
@@ -23,10 +29,6 @@ PICTURE = """\
       4.0   0.6"""
 
 _BRACKET = re.compile(r"\[([^\[\]\n]*)\]")
-_FLAG = re.compile(r"(\d+)([dfgh])")
-_FLAGS = re.compile(r"(?:\d+[dfgh])+")
-_ROUND = str.maketrans("[]", "()")
-_NAME = re.compile(r"([A-Za-z]+)\d*")
 _LETTERS = re.compile(r"[A-Za-z]{1,2}|[Ll]=\d+")
 
 
@@ -54,7 +56,9 @@ class _Reader:
     """Walks the tree of one text."""
 
     def __init__(self, source: Source, found: list[Section], repeats: dict[int, Repeat]) -> None:
-        self.flags = {name for name, _ in found}
+        self.kinds = kinds_of({name for name, _ in found})
+        # Spherical or Cartesian, None if that differs from l to l.
+        self.kind = next(iter(self.kinds.values())) if len({*self.kinds.values()}) == 1 else None
         # Orbitals and what else the file holds are somebody else's, and may be very long.
         windows = [lines for name, lines in found if name in ("atoms", "gto")]
         self.build = Build(source, "gto-section", windows=windows)
@@ -63,12 +67,13 @@ class _Reader:
         self.repeats = repeats
         self.differs = False  # whether the same text stands for two elements
         self.inside = ""
-        self.elements: dict[int, tuple[str, int]] = {}  # by the atom's number; symbol and line
+        self.headings: dict[str, str] = {}  # tokens of lines, most of which come again and again
+        self.atom_list = AtomList(self.build)
         self.described: dict[int, int] = {}  # atoms of [GTO] and their lines
         self.symbols: dict[int, str] = {}  # by the line of the heading in [GTO]
 
     def document(self) -> Document:
-        tokens = list(self.build.tokens(self.classify, self.numeric_heading, joined=True))
+        tokens = self.tokens()
         self.build.note_letters(self.build.shell_letters(tokens))
         pieces = [piece for piece in self.build.parse(tokens).children if isinstance(piece, Tree)]
         for piece in pieces:
@@ -81,20 +86,34 @@ class _Reader:
 
     # ---- which token a line is
 
+    def tokens(self) -> list[Token]:
+        """Those of the build; the lines of `[Atoms]` are one."""
+        found: list[Token] = []
+        for token in self.build.tokens(self.classify, self.numeric_heading, joined=True):
+            if token.type == "CENTRES" and found[-1].type == "CENTRES":
+                found[-1].end_line = token.end_line
+            else:
+                found.append(token)
+        return found
+
     def classify(self, body: str, index: int) -> str:
         if body[0] == "[" and (match := _BRACKET.match(body)):
             self.inside = match[1].strip().lower()
             return "ATOMS" if self.inside == "atoms" else "GTO"
         if self.inside == "atoms":
-            return "CENTRE"
-        words = body.split(None, 2)
-        if len(words) > 1 and _LETTERS.fullmatch(words[0]) and integer(words[1]) is not None:
-            return "SHELL"
-        return "TEXT"
+            return "CENTRES"
+        kind = self.headings.get(body)
+        if kind is None:
+            words = body.split(None, 2)
+            is_shell = (
+                len(words) > 1 and _LETTERS.fullmatch(words[0]) and integer(words[1]) is not None
+            )
+            kind = self.headings[body] = "SHELL" if is_shell else "TEXT"
+        return kind
 
     def numeric_heading(self, body: str) -> str | None:
         if self.inside == "atoms":
-            return "CENTRE"
+            return "CENTRES"
         if "." in body:
             return None
         words = body.split()
@@ -105,66 +124,18 @@ class _Reader:
     # ---- the atoms
 
     def atoms(self, node: Node) -> None:
-        for line in node.children[1:]:
-            assert isinstance(line, Token)
-            self.centre(line.split(), index_of(line))
-
-    def centre(self, words: list[str], index: int) -> None:
-        atom = integer(words[1]) if len(words) > 2 else None
-        charge = integer(words[2]) if len(words) > 2 else None
-        if atom is None or charge is None:
-            self.build.fault_line(
-                "form.syntax",
-                index,
-                "an atom is given by its name, its number and its atomic number, "
-                "before its position",
-                expected="C   1   6   0.0   0.0   0.0",
-                remedy="write the line in this order",
-            )
-        elif atom in self.elements:
-            self.build.fault_word(
-                "form.repeat",
-                index,
-                1,
-                f"an atom {atom} was already given on line {self.elements[atom][1] + 1}",
-                measured=atom,
-                remedy="number the atoms 1, 2, 3 ...",
-            )
-        else:
-            self.elements[atom] = (self.symbol(words[0], charge, index), index)
-
-    def symbol(self, name: str, charge: int, index: int) -> str:
-        """The element of an atom: by its atomic number, unless that and a plain name disagree.
-
-        "" for an atom that is none: no fault as long as it has no functions.
-        """
-        match = _NAME.fullmatch(name)
-        named = number_of(match[1]) if match else None
-        by_number = symbol_of(charge) if 1 <= charge <= 118 else None
-        # Names such as CA and HB are labels of a C and an H atom; ghosts have the charge 0.
-        labelled = by_number is not None and name[: len(by_number)].lower() == by_number.lower()
-        if named is None or labelled or named == charge:
-            return by_number or ""
-        if charge:
-            self.build.fault_word(
-                "form.element",
-                index,
-                2,
-                f"{name} has the atomic number {named}, not {charge}: read as {symbol_of(named)}",
-                severity="warning",
-                element=symbol_of(named),
-                measured=charge,
-                expected=named,
-                remedy="mend the name or the number",
-            )
-        return symbol_of(named)
+        for lines in node.children[1:]:
+            assert isinstance(lines, Token)
+            for index in range(index_of(lines), lines.end_line or 0):
+                if body := self.build.bodies[index]:
+                    self.atom_list.add(body, index)
 
     # ---- the basis of each atom
 
     def gto(self, node: Node) -> None:
         heading, *pieces = node.children
         assert isinstance(heading, Token)
-        if not self.elements:
+        if not self.atom_list.elements:
             self.build.fault_line(
                 "form.syntax",
                 index_of(heading),
@@ -179,7 +150,7 @@ class _Reader:
                 self.atom(piece)
             else:
                 self.loose(piece)
-        self.check_atoms(index_of(heading))
+        self.atom_list.check(self.described.keys(), index_of(heading))
 
     def atom(self, node: Node) -> None:
         heading, *pieces = node.children
@@ -207,13 +178,14 @@ class _Reader:
 
     def repeat(self, atom: int, index: int) -> None:
         """Note an atom with the text of an earlier one: all is said if their element is one."""
-        symbol = self.elements.get(atom, ("", 0))[0]
+        symbol = self.atom_list.symbol_of(atom)
         before = self.symbols.get(self.repeats[index].first)
         self.differs |= before != symbol or atom in self.described
         self.described[atom] = index
 
     def block(self, atom: int, index: int) -> BlockDraft:
-        if not self.elements.get(atom, ("", 0))[0]:
+        symbol = self.atom_list.symbol_of(atom)
+        if not symbol:
             return self.unknown(atom, index)
         if atom in self.described:
             self.build.fault_word(
@@ -221,17 +193,17 @@ class _Reader:
                 index,
                 0,
                 f"atom {atom} was already described on line {self.described[atom] + 1}",
-                element=self.elements[atom][0],
+                element=symbol,
                 measured=atom,
                 remedy="keep one of the two, or mend the number",
             )
         self.described[atom] = index
-        self.symbols[index] = symbol = self.elements[atom][0]
-        return self.build.open_block(symbol, index, section=str(index))
+        self.symbols[index] = symbol
+        return self.build.open_block(symbol, index, section=str(index), functions=self.kind)
 
     def unknown(self, atom: int, index: int) -> BlockDraft:
         """A block of no known element, judged for its form alone."""
-        symbol, at = self.elements.get(atom, (None, index))
+        symbol, at = self.atom_list.elements.get(atom, (None, index))
         self.build.fault_word(
             "form.element",
             at,
@@ -292,39 +264,24 @@ class _Reader:
             remedy="write the heading of the shell, or take the line out",
         )
 
-    def check_atoms(self, heading: int) -> None:
-        """Both sections list the same atoms."""
-        known = {atom for atom, (symbol, _) in self.elements.items() if symbol}
-        missing = sorted(known - self.described.keys())
-        if not missing:
-            return
-        listed = ", ".join(f"{atom} ({self.elements[atom][0]})" for atom in missing[:5])
-        more = f" and {len(missing) - 5} more" if len(missing) > 5 else ""
-        self.build.fault_line(
-            "form.count",
-            heading,
-            f"`[Atoms]` lists {len(known)} atoms; no functions are given here for {listed}{more}",
-            severity="warning",
-            measured=len(known) - len(missing),
-            expected=len(known),
-            remedy="an atom's basis was lost, unless it is meant to have none",
-        )
-
     # ---- what only the whole file tells
 
     def judged(self, document: Document) -> Document:
         """With the flags of the file and its convention for coefficients."""
-        faults = list(document.faults)
-        kinds = _kinds(self.flags)
-        sets = tuple(
-            replace(
-                members,
-                blocks=tuple(replace(b, functions=_functions(b, kinds)) for b in members.blocks),
+        faults, sets = list(document.faults), document.sets
+        if self.kind is None:
+            sets = tuple(
+                replace(
+                    members,
+                    blocks=tuple(
+                        replace(block, functions=functions_of(block, self.kinds))
+                        for block in members.blocks
+                    ),
+                )
+                for members in sets
             )
-            for members in document.sets
-        )
         if any(block.functions is None for members in sets for block in members.blocks):
-            spherical = ", ".join(letter_of(l) for l, kind in kinds.items() if kind == "spherical")
+            spherical = ", ".join(letter_of(l) for l, k in self.kinds.items() if k == "spherical")
             faults.append(self.note(f"spherical functions for {spherical}, Cartesian for others"))
         count = count_normalised(shell for b in document.blocks for shell in b.shells)
         raw = count.raw > count.normalised
@@ -347,87 +304,6 @@ def _raw_because(count: Count) -> str:
         f"{count.raw} of {count.of} contractions are normalised if the coefficients already "
         f"contain the primitives' norms, {count.normalised} if they do not: read as containing them"
     )
-
-
-def _kinds(flags: set[str]) -> dict[int, FunctionType]:
-    """Spherical or Cartesian for d, f, g and h, by flags such as `[5D]`, `[5D10F]`, `[9G]`."""
-    kinds: dict[int, FunctionType] = dict.fromkeys(range(2, 6), "cartesian")
-    given = {
-        letter: int(n)
-        for flag in flags
-        if _FLAGS.fullmatch(flag)
-        for n, letter in _FLAG.findall(flag)
-    }
-    if given.get("d") == 5 and "f" not in given:
-        given["f"] = 7  # `[5D]` speaks for both
-    if given.get("g") == 9 and "h" not in given:
-        given["h"] = 11
-    for l, letter in enumerate("dfgh", 2):
-        if given.get(letter) == 2 * l + 1:
-            kinds[l] = "spherical"
-    return kinds
-
-
-def _functions(block: Block, kinds: dict[int, FunctionType]) -> FunctionType | None:
-    """What the flags make of a block; None if they treat its shells in two ways."""
-    used = {kinds[min(l, 5)] for l in block.counts if l >= 2} or {kinds[2]}
-    return used.pop() if len(used) == 1 else None
-
-
-def write(document: Document) -> Written:
-    """Each block as an atom; the atoms stand in a row, ten bohr apart."""
-    losses = Losses()
-    blocks = [block for block in document.blocks if block.shells]
-    title = next((members.label for members in document.sets if members.label), "unnamed")
-    title = " ".join(title.split()).translate(_ROUND)  # a bracket would open a section
-    lines = ["[Title]", f" {title}", "[Atoms] AU"]
-    losses.say("the layout lists the atoms of a molecule: their positions are made up")
-    losses.say("the name of the set stands in the title only")
-    if len(document.sets) > 1:
-        losses.say("names that keep several sets of one file apart are not written")
-    for atom, block in enumerate(blocks, 1):
-        lines.append(
-            f"{block.symbol:<2} {atom:4} {block.atomic_number:4}    0.0   0.0   {10.0 * atom}"
-        )
-    lines += [*_flag_lines(blocks, losses), "[GTO]"]
-    for atom, block in enumerate(blocks, 1):
-        lines.append(f"{atom:4} 0")
-        for shell in block.shells:
-            lines += _shell_lines(shell, block.symbol, losses)
-        lines.append("")
-    for block in document.blocks:
-        if block.potential is not None:
-            losses.say("core potentials are left out", block.symbol)
-    _say_convention(document, losses)
-    return Written("\n".join(lines) + "\n", losses.lines())
-
-
-def _flag_lines(blocks: list[Block], losses: Losses) -> list[str]:
-    kinds = {block.functions for block in blocks}
-    if kinds - {"spherical", "cartesian"}:
-        losses.say("spherical or Cartesian functions were not stated: the layout says Cartesian")
-    if "spherical" not in kinds:
-        return []
-    if len(kinds) > 1:
-        losses.say("flags for spherical functions hold for the whole file: all become spherical")
-    return ["[5D]", "[9G]"]
-
-
-def _shell_lines(shell: Shell, element: str, losses: Losses) -> Iterator[str]:
-    if is_general(shell):
-        losses.say("general contractions are written as separate shells", element)
-    for angular, rows in segments(shell):
-        letters = "".join(map(letter_of, angular))
-        yield f" {letters:<2} {len(rows):4} 1.00"
-        yield from columns(rows, 6)
-
-
-def _say_convention(document: Document, losses: Losses) -> None:
-    """Readers tell the convention of the coefficients by what is normalised."""
-    count = count_normalised(shell for block in document.blocks for shell in block.shells)
-    if (count.raw > count.normalised) != document.raw_primitives:
-        meant = "raw" if document.raw_primitives else "normalised"
-        losses.say(f"coefficients over {meant} primitives will be taken for the other kind")
 
 
 LAYOUT = Layout(

@@ -1,4 +1,4 @@
-"""Files of bracket sections: where each section stands, and which atoms repeat an earlier one.
+"""Files of bracket sections: where each stands, which atoms repeat others, and what flags say.
 
 Such files hold a whole calculation; what is not a basis may be very long and is not looked at.
 """
@@ -6,10 +6,14 @@ Such files hold a whole calculation; what is not a basis may be very long and is
 import re
 from typing import NamedTuple
 
+from overlapse.grammar.building import FunctionType
+from overlapse.grammar.model import Block
 from overlapse.grammar.source import Source
 
 _HEADING = re.compile(r"\n[ \t]*\[([^\[\]\n]*)\]")
 _ATOM = re.compile(r"\s*\d+\s+0\s*")
+_FLAG = re.compile(r"(\d+)([dfgh])")
+_FLAGS = re.compile(r"(?:\d+[dfgh])+")
 
 
 class Section(NamedTuple):
@@ -55,3 +59,28 @@ def repeats_in(source: Source, found: list[Section]) -> dict[int, Repeat]:
             if below and first.setdefault(below, head) != head:
                 repeats[head] = Repeat(first[below], range(head + 1, end))
     return repeats
+
+
+def kinds_of(flags: set[str]) -> dict[int, FunctionType]:
+    """Spherical or Cartesian for d, f, g and h, by flags such as `[5D]`, `[5D10F]`, `[9G]`."""
+    kinds: dict[int, FunctionType] = dict.fromkeys(range(2, 6), "cartesian")
+    given = {
+        letter: int(n)
+        for flag in flags
+        if _FLAGS.fullmatch(flag)
+        for n, letter in _FLAG.findall(flag)
+    }
+    if given.get("d") == 5 and "f" not in given:
+        given["f"] = 7  # `[5D]` speaks for both
+    if given.get("g") == 9 and "h" not in given:
+        given["h"] = 11
+    for l, letter in enumerate("dfgh", 2):
+        if given.get(letter) == 2 * l + 1:
+            kinds[l] = "spherical"
+    return kinds
+
+
+def functions_of(block: Block, kinds: dict[int, FunctionType]) -> FunctionType | None:
+    """What the flags make of a block; None if they treat its shells in two ways."""
+    used = {kinds[min(l, 5)] for l in block.counts if l >= 2} or {kinds[2]}
+    return used.pop() if len(used) == 1 else None

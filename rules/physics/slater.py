@@ -99,6 +99,35 @@ def slater_overlap(orbital: Orbital, exponents: Floats, zeta: float = 1.0) -> Fl
     return overlap
 
 
+def slater_zetas(subshells: tuple[Orbital, ...], z: int) -> dict[Orbital, float]:
+    """Slater exponents of an atom's occupied subshells by Slater's rules, bohr**-1.
+
+    subshells: in the order in which they fill.  J. C. Slater, Phys. Rev. 36, 57 (1930), with n
+    itself for the effective quantum number.
+    """
+    electrons: dict[Orbital, int] = {}
+    left = z
+    for n, l in subshells:
+        electrons[n, l] = min(left, 4 * l + 2)
+        left -= electrons[n, l]
+    return {
+        orbital: max((z - _screened(orbital, electrons)) / orbital[0], 0.3) for orbital in electrons
+    }
+
+
+def _screened(orbital: Orbital, electrons: dict[Orbital, int]) -> float:
+    n, l = orbital
+    total = 0.0
+    for (m, k), count in electrons.items():
+        if m == n and (k == l or max(k, l) < 2):
+            total += (0.3 if n == 1 else 0.35) * (count - (k == l))
+        elif l < 2 and m == n - 1:
+            total += 0.85 * count
+        elif m < n or (m == n and k < l):
+            total += count
+    return total
+
+
 def _norm(n: int) -> float:
     return float(2.0 ** (n + 0.5) / sqrt(factorial(2 * n)))
 
