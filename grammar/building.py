@@ -11,7 +11,7 @@ faults.
 from collections.abc import Callable, Collection, Iterable, Iterator, Sequence
 from contextlib import suppress
 from dataclasses import dataclass, field
-from functools import cache
+from functools import cache, cached_property
 from itertools import groupby
 from math import isfinite
 from typing import Any, Literal, NamedTuple
@@ -41,6 +41,7 @@ from overlapse.grammar.model import (
 from overlapse.grammar.numbers import (
     FORTRAN,
     Reading,
+    has_only_characters,
     is_plain,
     looks_numeric,
     read_number,
@@ -58,6 +59,7 @@ _WITHOUT_J = "spdfghiklmnoqrtuv"
 _WITH_J = "spdfghijklmnoqrtuv"
 _ONE = ("1.00", "1.0", "1.000000")  # usual spellings of a scale factor that changes nothing
 _ABOVE_I = frozenset("jJkK")
+_ORDINALS = tuple(f"{number} " for number in range(1, 100))
 
 
 class _OurTokens(Lexer):
@@ -97,20 +99,24 @@ class Run(NamedTuple):
 class ShellDraft:
     """A shell whose numbers still are words.
 
-    ``start`` is the place of its first word among all words of the file; ``shape`` is (nprim,
-    ncontr); ``grid`` tells exponents from coefficients; ``unit`` marks a shell whose coefficients
-    are not written at all because every exponent is a function of its own.
+    ``run`` is None for a sound shell, whose rows need not be split.  ``start`` is the place of its
+    first word among all words of the file; ``shape`` is (nprim, ncontr); ``grid`` tells exponents
+    from coefficients; ``unit`` marks a shell whose coefficients are not written at all because
+    every exponent is a function of its own.  ``first`` and ``last`` are its lines (0-based, past
+    the end).
     """
 
     name: str
     angular: tuple[int, ...]
     heading: int
-    run: Run
+    run: Run | None
     start: int
     shape: tuple[int, int]
     grid: Grid
     scale: float = 1.0
     unit: bool = False
+    first: int = 0
+    last: int = 0
 
     def places(self) -> Iterator[int]:
         """Which numbers of the run (0-based) are this shell's exponents and coefficients."""
@@ -168,10 +174,13 @@ class Build:
         self.blocks: list[BlockDraft] = []
         self.bodies = self._without_comments() if windows is None else self._within(windows)
         self.leading = ""  # signs that make a line a comment where they lead it
-        self._words: list[str] = []
+        self._pieces: list[str] = []  # of text, whose words are the numbers of the shells
+        self._count = 0  # of these numbers
+        self._readings: dict[str, Reading] = {}
         self._letters: dict[str, tuple[int, ...]] = {}
-        self._grids: dict[int, Grid] = {}
+        self._grids: dict[tuple[int, int], Grid] = {}
         self._runs_of_shells: dict[int, list[tuple[int, int, int]]] = {}
+        self._views: dict[tuple[Grid, int, int], tuple[Floats, Floats]] = {}
         self._has_holes = False  # whether a number of a shell cannot be read
         self._j_is_used = False
 
@@ -179,16 +188,22 @@ class Build:
 
     def _without_comments(self) -> list[str]:
         lines = self.source.lines
-        if not any(sign in self.source.text for sign in self.comment):
-            return [line.strip() for line in lines]
-        bodies = []
-        for index, line in enumerate(lines):
+        bodies = list(map(str.strip, lines))
+        signs = [sign for sign in self.comment if sign in self.source.text]
+        concerned = {index for sign in signs for index in self.source.lines_with(sign)}
+        for index in sorted(concerned):
+            line = lines[index]
             for sign in self.comment:
                 if sign in line:
                     line, remark = line.split(sign, 1)
                     self.remarks.append(Remark(remark.strip(), index + 1))
-            bodies.append(line.strip())
+            bodies[index] = line.strip()
         return bodies
+
+    @cached_property
+    def widths(self) -> list[int]:
+        """How many words each of the bodies has."""
+        return list(map(len, map(str.split, self.bodies)))
 
     def _within(self, windows: Collection[range]) -> list[str]:
         if not windows:
@@ -220,10 +235,14 @@ class Build:
         is then a heading without rows, and ROWS are rows without a shell heading.
         """
         lines = self._lines(classify, heading)
-        if not joined:
+        if joined:
+            yield from self.joined(lines)
+        else:
             for kind, first, last in lines:
                 yield self._token(kind, first, last)
-            return
+
+    def joined(self, lines: Iterable[tuple[str, int, int]]) -> Iterator[Token]:
+        """Tokens out of kinds and lines (0-based, past the last), runs of shells as one token."""
         waiting: int | None = None  # a shell heading whose rows may follow
         shells: list[tuple[int, int, int]] = []
         for kind, first, last in lines:
@@ -467,6 +486,18 @@ class Build:
                 remedy="write the number (L=7) where the layout allows it",
             )
 
+    def take_rows(self, first: int, last: int, width: int) -> int | None:
+        """Take in lines ``first`` up to ``last``, if all have ``width`` words.
+
+        The place of their first number is for `even_shell`.
+        """
+        if self.widths[first:last].count(width) != last - first:
+            return None
+        start = self._count
+        self._pieces += self.bodies[first:last]
+        self._count += (last - first) * width
+        return start
+
     def sound_shell(
         self,
         block: BlockDraft,
@@ -476,44 +507,55 @@ class Build:
         last: int,
         announced: str | None,
         general: bool = False,
+        scale: float = 1.0,
+        lead: int = 0,
     ) -> bool:
         """Add a shell that is just what its heading announces, and say whether it was one.
 
         The quick way past `shell` for what nearly all shells are: known letters, rows of one
-        fitting width, and as many as announced.  Rows are lines ``first`` up to ``last``.
+        fitting width, and as many as announced.  Rows are lines ``first`` up to ``last``;
+        ``lead`` is 1 where they begin with their number.
         """
         angular = self._letters.get(letters)
         if angular is None or angular == (8,):
             return False
-        rows = [body.split() for body in self.bodies[first:last]]
-        width = len(rows[0])
-        if general and len(angular) == 1:
-            if width < 2:
-                return False
-        elif width != 1 + len(angular):
-            return False
-        for row in rows:
-            if len(row) != width:
-                return False
-        count = len(rows)
-        if general and width > 2 and _is_index(rows):
-            return False
+        count, width = last - first, self.widths[first]
         if announced is not None and announced != str(count):
             return False
-        grid = self._grids.get(width)
+        if width != lead + 1 + len(angular) and not (general and len(angular) == 1 < width):
+            return False
+        if lead and not _are_numbered(self.bodies[first:last]):
+            return False
+        if general and width > 2 and _is_index(row.split() for row in self.bodies[first:last]):
+            return False
+        start = self.take_rows(first, last, width)
+        if start is None:
+            return False
+        grid = self._grids.get((width, lead))
         if grid is None:
-            grid = self._grids[width] = Grid(0, width, 1, width, 1)
+            grid = self._grids[width, lead] = Grid(lead, width, lead + 1, width, 1)
+        shape = (count, width - lead - 1)
+        self.even_shell(block, angular, heading, first, last, start, shape, grid, scale)
+        return True
+
+    def even_shell(
+        self,
+        block: BlockDraft,
+        angular: tuple[int, ...],
+        heading: int,
+        first: int,
+        last: int,
+        start: int,
+        shape: tuple[int, int],
+        grid: Grid,
+        scale: float = 1.0,
+    ) -> None:
+        """Add a shell that lies in rows which `take_rows` has taken; several may share them."""
         name = block.next_name("sp" if len(angular) > 1 else _WITHOUT_J[angular[0]])
-        words = self._words
-        run = Run(rows, range(first, last))
-        shape = (count, width - 1)
         block.shells.append(
-            ShellDraft(name, angular, heading, run, len(words), shape, grid, 1.0, False)
+            ShellDraft(name, angular, heading, None, start, shape, grid, scale, False, first, last)
         )
         block.end = last - 1
-        for row in rows:
-            words += row
-        return True
 
     def scaled_shells(self, block: BlockDraft, token: Token) -> None:
         """Add a run of shells headed by letter, number of rows and scale factor (`S 3 1.00`)."""
@@ -625,21 +667,22 @@ class Build:
         run.  ``name``: as `BlockDraft.next_name` gave it, if the caller has asked already.
         """
         name = name or block.next_name(letter_of(l))
-        block.end = max(block.end, heading, *run.lines[-1:])
-        self.keep(
-            block, ShellDraft(name, (l,), heading, run, len(self._words), shape, grid, unit=unit)
-        )
+        block.end = max(block.end, heading, run.lines[-1] if run.lines else 0)
+        self.keep(block, ShellDraft(name, (l,), heading, run, 0, shape, grid, 1.0, unit))
 
     def keep(self, block: BlockDraft, draft: ShellDraft) -> None:
-        """Add a shell whose numbers the caller has counted; `ShellDraft.start` is set here."""
+        """Add a shell whose numbers the caller has counted; its place is set here."""
         before = block.shells[-1] if block.shells else None
         block.shells.append(draft)
+        assert draft.run is not None
+        draft.first, draft.last = draft.run.lines[0], draft.run.lines[-1] + 1
         if before is not None and before.run is draft.run:
             draft.start = before.start
             return
-        draft.start = len(self._words)
+        draft.start = self._count
         for row in draft.run.rows:
-            self._words += row
+            self._pieces += row
+            self._count += len(row)
 
     @staticmethod
     def _width(run: Run) -> int:
@@ -733,7 +776,9 @@ class Build:
     def number(
         self, word: str, index: int, ordinal: int, element: str | None, shell: str | None
     ) -> float | None:
-        reading = read_number(word)
+        reading = self._readings.get(word)
+        if reading is None:
+            reading = self._readings[word] = read_number(word)
         if reading.slip:
             span = self.source.span_of_word(index, ordinal, self.word_pattern)
             self.slip(reading, word, span, element, shell)
@@ -858,13 +903,13 @@ class Build:
 
     def _convert(self) -> Floats:
         """All numbers of all shells as one read-only array; NaN where one cannot be read."""
-        words, text = self._words, " ".join(self._words)
+        text = " ".join(self._pieces)
+        if "D" in text or "d" in text:
+            text = text.translate(FORTRAN)
         values = np.array([np.nan])
-        if is_plain(text):
-            if "D" in text or "d" in text:
-                words = text.translate(FORTRAN).split()
+        if has_only_characters(text):
             with suppress(ValueError):  # a slip among the numbers; found below
-                values = np.fromiter(map(float, words), np.float64, len(words))
+                values = np.array(list(map(float, text.split())))
         if not np.isfinite(values).all():
             values = self._convert_one_by_one()
         self._has_holes = bool(np.isnan(values).any())
@@ -872,12 +917,13 @@ class Build:
         return values
 
     def _convert_one_by_one(self) -> Floats:
-        values = np.full(len(self._words), np.nan)
+        values = np.full(self._count, np.nan)
         for block in self.blocks:
             for start, sharing in groupby(block.shells, key=lambda shell: shell.start):
                 shells = list(sharing)
                 names = {place: shell.name for shell in shells[::-1] for place in shell.places()}
-                for at, (word, index, ordinal) in enumerate(shells[0].run.words()):
+                run = shells[0].run or self.rows_between(shells[0].first, shells[0].last)
+                for at, (word, index, ordinal) in enumerate(run.words()):
                     name = names.get(at, shells[-1].name)
                     value = self.number(word, index, ordinal, block.symbol, name)
                     values[start + at] = np.nan if value is None else value
@@ -886,17 +932,16 @@ class Build:
     def _block(self, block: BlockDraft, values: Floats) -> Block:
         shells = list(block.ready)
         complete = block.complete
+        source, comment = self.source, self.comment
         pattern, leading = self.word_pattern, self.leading
         for draft in block.shells:
             exponents, coefficients = self._table(draft, values)
             if self._has_holes and np.isnan(np.append(exponents, coefficients)).any():
                 complete = False
                 continue
-            lines = draft.run.lines
-            first, last = lines[0], lines[-1] + 1
-            skip = draft.run.before[0] if draft.run.before else 0
+            skip = draft.run.before[0] if draft.run is not None and draft.run.before else 0
             cells = Cells(
-                self.source, first, last, draft.grid, self.comment, pattern, skip, leading
+                source, draft.first, draft.last, draft.grid, comment, pattern, skip, leading
             )
             if draft.scale != 1.0:
                 with np.errstate(over="ignore"):
@@ -957,29 +1002,26 @@ class Build:
             remedy="mend the scale factor: exponents are multiplied by its square",
         )
 
-    @staticmethod
-    def _table(draft: ShellDraft, values: Floats) -> tuple[Floats, Floats]:
+    def _table(self, draft: ShellDraft, values: Floats) -> tuple[Floats, Floats]:
         """Exponents (nprim,) and coefficients (nprim, ncontr) of a draft, views where possible."""
         (count, columns), grid, start = draft.shape, draft.grid, draft.start
-        if grid.e0 == 0 and grid.c0 == 1 and grid.es == columns + 1 and not draft.unit:
-            end = start + count * grid.es
-            if columns == 1:
-                return values[start:end:2], values[start + 1 : end : 2, None]
-            table = values[start:end].reshape(count, grid.es)
-            return table[:, 0], table[:, 1:]
-        plain = grid.cj == 1 and not draft.unit
-        if plain and grid.e0 < grid.ci == grid.es >= grid.c0 + columns:
-            table = values[start : start + count * grid.es].reshape(count, grid.es)
-            return table[:, grid.e0], table[:, grid.c0 : grid.c0 + columns]
-        if plain and grid.es == 1 and grid.ci == columns:
-            first, matrix = start + grid.e0, start + grid.c0
+        e0, es, c0, ci, cj = grid
+        plain = cj == 1 and not draft.unit
+        if plain and e0 < ci == es >= c0 + columns:
+            row, phase = divmod(start, es)
+            views = self._views.get((grid, columns, phase))
+            if views is None:
+                views = self._views[grid, columns, phase] = _views(values[phase:], grid, columns)
+            return views[0][row : row + count], views[1][row : row + count]
+        if plain and es == 1 and ci == columns:
+            first, matrix = start + e0, start + c0
             table = values[matrix : matrix + count * columns].reshape(count, columns)
             return values[first : first + count], table
         rows = np.arange(count)
-        exponents = values[start + grid.e0 + grid.es * rows]
+        exponents = values[start + e0 + es * rows]
         if draft.unit:
             return exponents, np.eye(count)
-        cells = start + grid.c0 + grid.ci * rows[:, None] + grid.cj * np.arange(columns)
+        cells = start + c0 + ci * rows[:, None] + cj * np.arange(columns)
         return exponents, values[cells]
 
     def _sets(self, drafts: list[BlockDraft], made: list[Block]) -> Iterator[BasisSet]:
@@ -1046,9 +1088,24 @@ class Build:
         )
 
 
-def _is_index(rows: list[list[str]]) -> bool:
+def _is_index(rows: Iterable[list[str]]) -> bool:
     """Whether the first words of rows are 1, 2, 3 ... without a point."""
     return all(row[0] == str(at) for at, row in enumerate(rows, 1))
+
+
+def _are_numbered(rows: list[str]) -> bool:
+    """As `_is_index`, for rows that are not split; says no where they are very many, or tabbed."""
+    return len(rows) < 100 and all(map(str.startswith, rows, _ORDINALS))
+
+
+def _views(values: Floats, grid: Grid, columns: int) -> tuple[Floats, Floats]:
+    """All numbers as rows of one width: exponents and coefficients, which shells cut slices from.
+
+    Slices of a table are quicker to come by than tables.
+    """
+    width = grid.es
+    table = values[: len(values) // width * width].reshape(-1, width)
+    return table[:, grid.e0], table[:, grid.c0 : grid.c0 + columns]
 
 
 def index_of(token: Token) -> int:

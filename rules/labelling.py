@@ -12,7 +12,7 @@ from overlapse.rules.composition import lengths_of, primitives, show
 from overlapse.rules.families.candidates import candidates
 from overlapse.rules.families.counted import WITH_POTENTIALS, Counts, Expected, expected, plus
 from overlapse.rules.families.expected import Promise, promise
-from overlapse.rules.shell import fitting_core
+from overlapse.rules.valence import fitting_core
 
 # split, family: core or valence functions differ.  decoration: those differ that a decoration in
 # the label stands for.  polarization, diffuse: functions of that kind are missing.
