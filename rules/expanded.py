@@ -1,5 +1,6 @@
 """Contracted functions against the expansions of Slater functions: which, and of what zeta?"""
 
+from functools import cache
 from typing import NamedTuple
 
 import numpy as np
@@ -82,17 +83,14 @@ def _compared(
     here = [e for e in table if orbital in e.coefficients]
     if not here:
         return None
-    shifts = {e: logs - np.log(e.exponents) for e in table}
+    shifts = logs - _logarithms(len(order))
     # The middle of the shifts, so that one wrong exponent does not move all others.
-    middles = {e: float(np.median(shift)) for e, shift in shifts.items()}
-    spread = {e: float(np.abs(shift - middles[e]).max()) for e, shift in shifts.items()}
+    middles = dict(zip(table, _middles(shifts).tolist(), strict=True))
+    spread = dict(zip(table, np.abs(shifts - _middles(shifts)[:, None]).max(axis=1), strict=True))
     same_ratios = tuple(e for e in table if spread[e] < limits.ratio)
-    same_coefficients = tuple(
-        (e, n)
-        for e in table
-        for (n, l), values in e.coefficients.items()
-        if l == orbital[1] and _apart(c, values) < limits.coefficient
-    )
+    owners, values = _columns(len(order), orbital[1])
+    apart = np.minimum(np.abs(values - c).max(axis=1), np.abs(values + c).max(axis=1))
+    same_coefficients = tuple(owners[at] for at in np.flatnonzero(apart < limits.coefficient))
     near = [e for e in here if e in same_ratios] or [
         e for e in here if (e, orbital[0]) in same_coefficients
     ]
@@ -101,6 +99,31 @@ def _compared(
     return Match(
         block, shell, function, orbital, same_ratios, same_coefficients, nearest, zeta, order
     )
+
+
+@cache
+def _logarithms(count: int) -> Floats:
+    """ln(exponent) of all expansions in so many Gaussians, shape (expansions, count)."""
+    return np.log([e.exponents for e in expansions(count)])
+
+
+@cache
+def _columns(count: int, l: int) -> tuple[list[tuple[Expansion, int]], Floats]:
+    """All functions of one l: expansion and n of each, and their coefficients, a row for each."""
+    found = [
+        ((e, n), values)
+        for e in expansions(count)
+        for (n, k), values in e.coefficients.items()
+        if k == l
+    ]
+    return [owner for owner, _ in found], np.array([values for _, values in found])
+
+
+def _middles(shifts: Floats) -> Floats:
+    """Median of each row; numpy's own imports more of numpy than an audit needs."""
+    ordered, count = np.sort(shifts, axis=1), shifts.shape[1]
+    middle: Floats = 0.5 * (ordered[:, (count - 1) // 2] + ordered[:, count // 2])
+    return middle
 
 
 def _apart(left: Floats, right: Floats) -> float:
@@ -172,12 +195,13 @@ def _wrong_exponents(match: Match) -> Departure:
     e = next((x for x, m in match.coefficients if m == match.orbital[0]), match.nearest)
     a = match.function.exponents[match.order]
     shift = np.log(a / e.exponents)
-    wrong = np.flatnonzero(np.abs(shift - np.median(shift)) > 1e-3)
+    middle = float(_middles(shift[None])[0])
+    wrong = np.flatnonzero(np.abs(shift - middle) > 1e-3)
     named = f"the coefficients are those of the {e.name} expansion"
     if len(wrong) == 1 and len(a) > 2:
         at = int(match.order[wrong[0]])
         row = int(match.function.rows[at])
-        value = float(e.exponents[wrong[0]] * np.exp(np.median(shift)))
+        value = float(e.exponents[wrong[0]] * np.exp(middle))
         spelled = match.block.shells[match.shell].spelling(row)
         return Departure(f"{named}, but exponent {spelled} should be {value:.8g}", row, None, value)
     return Departure(f"{named}, the exponents are in the ratios of none")
@@ -193,7 +217,7 @@ def exchanged(match: Match, others: list[Match]) -> str:
         if other.shell != match.shell and _belong(other, match) and _belong(match, other):
             e = next(x for x, _ in match.coefficients if x in other.exponents)
             a = other.function.exponents[other.order]
-            zeta = float(np.exp(0.5 * np.median(np.log(a / e.exponents))))
+            zeta = float(np.exp(0.5 * _middles(np.log(a / e.exponents)[None])[0]))
             name = match.block.names[other.shell]
             return f"; with the exponents of {name} it would be one, of zeta {zeta:.3f}: exchanged?"
     return ""

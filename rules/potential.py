@@ -274,8 +274,9 @@ def _without(case: Case, index: int, members: BasisSet) -> Iterator[Finding]:
     valence += [b for b in blocks if b not in valence and _needs(case, index, b, bool(others))]
     if not valence:
         return
-    sizes = [f"{block.symbol} {_meant(case, index, block)}" for block in valence]
-    shown = ", ".join(sizes[:6]) + (f" and {len(sizes) - 6} more" if len(sizes) > 6 else "")
+    sizes = [(block.symbol, _meant(case, index, block)) for block in valence[:6]]
+    shown = ", ".join(f"{symbol} {electrons}" for symbol, electrons in sizes)
+    shown += f" and {len(valence) - 6} more" if len(valence) > 6 else ""
     count = f"{len(valence)} of {len(blocks)} elements are valence sets"
     if len(valence) == 1:
         count = f"{valence[0].symbol} is a valence set"
@@ -291,7 +292,7 @@ def _without(case: Case, index: int, members: BasisSet) -> Iterator[Finding]:
         f"{'it' if len(valence) == 1 else 'them'}, {where} (electrons to be replaced: {shown})",
         element=valence[0].symbol,
         measured=0,
-        expected=_meant(case, index, valence[0]),
+        expected=sizes[0][1],
         remedy="use it together with its potential, never alone",
     )
 
