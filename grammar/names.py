@@ -4,7 +4,7 @@ import json
 import re
 from functools import cache
 from importlib.resources import files
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 _FILLING = re.compile(r"[\s_-]+")
 _BRACKETS = str.maketrans("", "", "()")
@@ -27,8 +27,13 @@ def _key(name: str) -> str:
 
 
 @cache
+def _data() -> Any:
+    return json.loads(files("overlapse.grammar").joinpath("names.json").read_text("utf-8"))
+
+
+@cache
 def _names() -> dict[str, Named]:
-    data = json.loads(files("overlapse.grammar").joinpath("names.json").read_text("utf-8"))
+    data = _data()
     found: dict[str, Named] = {}
     for family, sets in data["sets"].items():
         for name, spellings in sets.items():
@@ -48,7 +53,7 @@ def named(label: str) -> Named | None:
 
 def usual_names() -> dict[str, str]:
     """Usual name of every set that is called by a plain name, with its family."""
-    return {n.sets[0]: n.family for n in _names().values() if not n.ambiguous}
+    return {name: family for family, sets in _data()["sets"].items() for name in sets}
 
 
 def is_short(label: str) -> bool:

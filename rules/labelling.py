@@ -57,8 +57,19 @@ def verdict(block: Block, label: Designation) -> Verdict | None:
 
 def fits(block: Block, label: Designation) -> bool:
     """Whether a block is what the label promises."""
+    if label.family not in _DIGITS:
+        # Most candidates are ruled out by their counts, without the words of a verdict.
+        wanted = expected(label, block.atomic_number)
+        if wanted is None or not _same_counts(block, wanted):
+            return False
     found = verdict(block, label)
     return found is not None and found.fits
+
+
+def _same_counts(block: Block, wanted: Expected) -> bool:
+    return block.counts == wanted.contracted or any(
+        block.counts == counts for counts, _ in wanted.others
+    )
 
 
 # ---- by contraction lengths
