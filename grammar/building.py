@@ -173,6 +173,7 @@ class Build:
         self.remarks: list[Remark] = []
         self.blocks: list[BlockDraft] = []
         self.bodies = self._without_comments() if windows is None else self._within(windows)
+        self.split: Callable[[str], list[str]] = str.split  # a row into its words
         self.leading = ""  # signs that make a line a comment where they lead it
         self._pieces: list[str] = []  # of text, whose words are the numbers of the shells
         self._count = 0  # of these numbers
@@ -363,7 +364,7 @@ class Build:
     def rows_between(self, first: int, last: int) -> Run:
         """As `rows`, for lines ``first`` up to ``last`` (0-based, past the end)."""
         lines: Sequence[int] = range(first, last)
-        rows = [body.split() for body in self.bodies[first:last]]
+        rows = list(map(self.split, self.bodies[first:last]))
         if [] in rows:
             lines = [index for index, row in zip(lines, rows, strict=True) if row]
             rows = [row for row in rows if row]
@@ -493,10 +494,13 @@ class Build:
         """
         if self.widths[first:last].count(width) != last - first:
             return None
-        start = self._count
-        self._pieces += self.bodies[first:last]
-        self._count += (last - first) * width
-        return start
+        return self.take(self.bodies[first:last], (last - first) * width)
+
+    def take(self, texts: list[str], count: int) -> int:
+        """Take in texts that hold ``count`` numbers: the place of the first."""
+        self._pieces += texts
+        self._count += count
+        return self._count - count
 
     def sound_shell(
         self,
@@ -549,11 +553,12 @@ class Build:
         shape: tuple[int, int],
         grid: Grid,
         scale: float = 1.0,
+        unit: bool = False,
     ) -> None:
-        """Add a shell that lies in rows which `take_rows` has taken; several may share them."""
-        name = block.next_name("sp" if len(angular) > 1 else _WITHOUT_J[angular[0]])
+        """Add a shell whose numbers `take` has taken; several may share them."""
+        name = block.next_name("sp" if len(angular) > 1 else letter_of(angular[0]))
         block.shells.append(
-            ShellDraft(name, angular, heading, None, start, shape, grid, scale, False, first, last)
+            ShellDraft(name, angular, heading, None, start, shape, grid, scale, unit, first, last)
         )
         block.end = last - 1
 
