@@ -37,6 +37,7 @@ from overlapse.grammar.model import (
     Shell,
     Span,
     letter_of,
+    read_only,
 )
 from overlapse.grammar.numbers import (
     FORTRAN,
@@ -181,7 +182,6 @@ class Build:
         self._letters: dict[str, tuple[int, ...]] = {}
         self._grids: dict[tuple[int, int], Grid] = {}
         self._runs_of_shells: dict[int, list[tuple[int, int, int]]] = {}
-        self._views: dict[tuple[Grid, int, int], tuple[Floats, Floats]] = {}
         self._has_holes = False  # whether a number of a shell cannot be read
         self._j_is_used = False
 
@@ -976,6 +976,11 @@ class Build:
 
     def _is_absurd(self, block: BlockDraft, shells: list[Shell]) -> bool:
         """Whether a block is so large that it is none; matrices over it would burst the memory."""
+        drafts = block.shells
+        if drafts and not block.ready:
+            count, columns = drafts[-1].shape
+            if drafts[-1].start + count * (1 + columns) - drafts[0].start <= MOST:
+                return False  # so few numbers cannot make so many functions
         longest = max((len(shell.exponents) for shell in shells), default=0)
         functions = sum(shell.coefficients.shape[1] for shell in shells)
         if max(longest, functions) <= MOST:
@@ -1007,27 +1012,29 @@ class Build:
             remedy="mend the scale factor: exponents are multiplied by its square",
         )
 
-    def _table(self, draft: ShellDraft, values: Floats) -> tuple[Floats, Floats]:
+    @staticmethod
+    def _table(draft: ShellDraft, values: Floats) -> tuple[Floats, Floats]:
         """Exponents (nprim,) and coefficients (nprim, ncontr) of a draft, views where possible."""
-        (count, columns), grid, start = draft.shape, draft.grid, draft.start
-        e0, es, c0, ci, cj = grid
-        plain = cj == 1 and not draft.unit
-        if plain and e0 < ci == es >= c0 + columns:
-            row, phase = divmod(start, es)
-            views = self._views.get((grid, columns, phase))
-            if views is None:
-                views = self._views[grid, columns, phase] = _views(values[phase:], grid, columns)
-            return views[0][row : row + count], views[1][row : row + count]
-        if plain and es == 1 and ci == columns:
-            first, matrix = start + e0, start + c0
-            table = values[matrix : matrix + count * columns].reshape(count, columns)
-            return values[first : first + count], table
-        rows = np.arange(count)
-        exponents = values[start + e0 + es * rows]
+        (count, columns), start = draft.shape, draft.start
+        e0, es, c0, ci, cj = draft.grid
         if draft.unit:
-            return exponents, np.eye(count)
+            first = start + e0
+            return values[first : first + es * count : es], read_only(np.eye(count))
+        if es == 1 and cj == 1 and ci == columns:  # a list and a matrix
+            first, matrix = start + e0, start + c0
+            end = matrix + count * columns
+            if columns == 1:
+                return values[first : first + count], values[matrix:end, None]
+            return values[first : first + count], values[matrix:end].reshape(count, columns)
+        if cj == 1 and e0 < ci == es >= c0 + columns:  # rows
+            end = start + count * es
+            if columns == 1:
+                return values[start + e0 : end : es], values[start + c0 : end : es, None]
+            table = values[start:end].reshape(count, es)
+            return table[:, e0], table[:, c0 : c0 + columns]
+        rows = np.arange(count)
         cells = start + c0 + ci * rows[:, None] + cj * np.arange(columns)
-        return exponents, values[cells]
+        return read_only(values[start + e0 + es * rows]), read_only(values[cells])
 
     def _sets(self, drafts: list[BlockDraft], made: list[Block]) -> Iterator[BasisSet]:
         """Group blocks into sets: by section, and anew where the list of elements starts again."""
@@ -1101,16 +1108,6 @@ def _is_index(rows: Iterable[list[str]]) -> bool:
 def _are_numbered(rows: list[str]) -> bool:
     """As `_is_index`, for rows that are not split; says no where they are very many, or tabbed."""
     return len(rows) < 100 and all(map(str.startswith, rows, _ORDINALS))
-
-
-def _views(values: Floats, grid: Grid, columns: int) -> tuple[Floats, Floats]:
-    """All numbers as rows of one width: exponents and coefficients, which shells cut slices from.
-
-    Slices of a table are quicker to come by than tables.
-    """
-    width = grid.es
-    table = values[: len(values) // width * width].reshape(-1, width)
-    return table[:, grid.e0], table[:, grid.c0 : grid.c0 + columns]
 
 
 def index_of(token: Token) -> int:

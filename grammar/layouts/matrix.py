@@ -12,7 +12,7 @@ from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Remark
 from overlapse.grammar.numbers import looks_numeric
 from overlapse.grammar.pieces.cores import CHANNEL, core_lines, read_core
-from overlapse.grammar.pieces.matrices import WHOLE, Cutting, Lists
+from overlapse.grammar.pieces.matrices import WHOLE, Cutting, Lists, sizes_of
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, say_shared_names, split_shared, title_of
 
@@ -49,7 +49,6 @@ class _Reader:
     def __init__(self, source: Source) -> None:
         self.build = Build(source, "matrix", "!#")
         self.heads: dict[int, tuple[str, str, str]] = {}  # line: word, symbol, name
-        self.titles: set[int] = set()
         self.known: dict[tuple[str, str], BlockDraft] = {}
         # How many numbers the lists still lack: None before the first, 0 when they are closed.
         self.left: int | None = 0
@@ -58,8 +57,7 @@ class _Reader:
         self.find_heads()
 
     def document(self) -> Document:
-        tokens = self.build.tokens(self.classify, self.numeric_heading)
-        for piece in self.build.parse(tokens).children:
+        for piece in self.build.parse(self.tokens()).children:
             if isinstance(piece, Tree) and piece.data == "element":
                 self.element(piece)
         blocks = self.build.blocks
@@ -78,26 +76,28 @@ class _Reader:
     def take_out_stars(self) -> None:
         """A `*` begins a comment at the start of a line only: names such as 6-31G* hold it too."""
         bodies = self.build.bodies
+        self.build.leading = "*"
+        if "*" not in self.build.source.text:
+            return
         for index, body in enumerate(bodies):
             if body[:1] == "*" and not _is_overflow(body.split()):
                 self.build.remarks.append(Remark(body.strip("* "), index + 1))
                 bodies[index] = ""
-        self.build.leading = "*"
 
     def find_heads(self) -> None:
+        """Note the headings; titles become remarks, since they may look like anything."""
         bodies = self.build.bodies
         for index, body in enumerate(bodies):
-            if ":" not in body or index in self.titles:
+            if ":" not in body:
                 continue
             match = _HEAD.fullmatch(body)
             if match is None or not (number_of(match[2]) or self.announces(index)):
                 continue
             self.heads[index] = (match[1], match[2], match[3])
             if self.has_title(index + 1):
-                self.titles.add(index + 1)
                 title = self.build.source.lines[index + 1].strip()
                 self.build.remarks.append(Remark(title, index + 2))
-                bodies[index + 1] = "title"  # which may begin like a number
+                bodies[index + 1] = ""
         self.build.remarks.sort(key=lambda remark: remark.line)
 
     def announces(self, index: int) -> bool:
@@ -115,12 +115,25 @@ class _Reader:
             return False
         return not below or not WHOLE.fullmatch(body)
 
+    def tokens(self) -> Iterator[Token]:
+        """Those of the build; lines of lists that follow one another are one."""
+        lists: Token | None = None
+        for token in self.build.tokens(self.classify, self.numeric_heading):
+            if lists is not None:
+                if token.type == "INTS":
+                    lists.end_line = token.end_line
+                    continue
+                yield lists
+            lists = token if token.type == "INTS" else None
+            if lists is None:
+                yield token
+        if lists is not None:
+            yield lists
+
     def classify(self, body: str, index: int) -> str:
         if index in self.heads:
             self.left, self.in_potential = None, False
             return "HEAD"
-        if index in self.titles:
-            return "TITLE"
         if body.lower().startswith("ncore"):
             self.left, self.in_potential = 0, True
             return "CORE"
@@ -194,9 +207,14 @@ class _Reader:
 
     def orbitals(self, block: BlockDraft, heading: Token, pieces: list[Node]) -> None:
         """The lists of an element and the matrices that they announce."""
-        tokens = [line for p in pieces if p.data == "lists" for line in p.children]
-        said = [line for line in tokens if isinstance(line, Token)]
-        lists = Lists(self.build, block, Run([*map(str.split, said)], [*map(index_of, said)]))
+        said = [
+            self.build.rows(token)
+            for piece in pieces
+            if piece.data == "lists"
+            for token in piece.children
+            if isinstance(token, Token)
+        ]
+        lists = Lists(self.build, block, _joined(said))
         if not said:
             self.build.fault_line(
                 "form.count",
@@ -207,7 +225,7 @@ class _Reader:
                 remedy="restore the lists, or take the heading out",
             )
         entries = lists.entries() if said else None
-        run = self.numbers(block, pieces, sum(entry.numbers for entry in entries or ()))
+        run = self.numbers(block, pieces, sum(sizes_of(entries or [])))
         if entries:
             Cutting(lists, entries, run).cut()
         else:
@@ -216,8 +234,7 @@ class _Reader:
 
     def numbers(self, block: BlockDraft, pieces: list[Node], wanted: int) -> Run:
         """The rows of an element as one run, up to the number of numbers wanted (0: unknown)."""
-        rows: list[list[str]] = []
-        lines: list[int] = []
+        runs: list[Run] = []
         found = 0
         last = max((at for at, piece in enumerate(pieces) if piece.data == "numbers"), default=0)
         for at, piece in enumerate(pieces):
@@ -228,16 +245,20 @@ class _Reader:
             if piece.data == "lists":
                 continue
             if piece.data == "numbers":
-                more = self.build.rows(token)
-                rows += more.rows
-                lines += more.lines
-                found += sum(map(len, more.rows))
+                runs.append(self.build.rows(token))
+                found += sum(map(len, runs[-1].rows))
             elif not wanted:
                 break  # where nothing is known of the numbers, they end with the first other line
             elif piece.data == "remark" and at < last:
                 message = f"{shorten(token, 60)!r} stands among the numbers of {block.symbol}"
                 self.amiss(block, piece, message)
-        return Run(rows, lines)
+        return _joined(runs)
+
+
+def _joined(runs: list[Run]) -> Run:
+    if len(runs) == 1:
+        return runs[0]
+    return Run([row for run in runs for row in run.rows], [at for run in runs for at in run.lines])
 
 
 def _is_overflow(words: list[str]) -> bool:

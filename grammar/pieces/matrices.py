@@ -7,6 +7,7 @@ piece ends; lines and blank lines say where a number was lost or added.
 
 import re
 from bisect import bisect_left, bisect_right
+from functools import lru_cache
 from itertools import accumulate, pairwise
 from typing import NamedTuple
 
@@ -27,9 +28,10 @@ class Entry(NamedTuple):
     at_primitives: int
     at_contractions: int
 
-    @property
-    def numbers(self) -> int:
-        return self.primitives * (1 + self.contractions)
+
+def sizes_of(entries: list[Entry]) -> list[int]:
+    """How many exponents and how many coefficients each shell has, one after the other."""
+    return [size for _, n, columns, _, _ in entries for size in (n, n * columns)]
 
 
 class Lists:
@@ -50,19 +52,22 @@ class Lists:
         if found is None:
             self.block.complete = False
             return None
-        three, start = found
-        count = len(three[0])
-        made = [
-            Entry(*announced, start + 2 * count + at, start + count + at)
-            for at, announced in enumerate(zip(three[0], three[2], three[1], strict=True))
-        ]
+        (momenta, contractions, primitives), start = found
+        count = len(momenta)
+        places = (
+            range(start + 2 * count, start + 3 * count),
+            range(start + count, start + 2 * count),
+        )
+        made = list(map(Entry, momenta, primitives, contractions, *places))
+        if max(momenta) < len(LETTERS) and 0 not in contractions and 0 not in primitives:
+            return made
         sound = [self._is_sensible(entry, start + at) for at, entry in enumerate(made)]
         return [entry for entry in made if entry.primitives] if all(sound) else None
 
     def _whole_numbers(self) -> list[list[int]] | None:
         table: list[list[int]] = []
         for row, index in zip(self.run.rows, self.run.lines, strict=True):
-            if WHOLE.fullmatch(" ".join(row)):
+            if WHOLE.fullmatch(self.build.bodies[index]):
                 table.append(list(map(int, row)))
                 continue
             whole = self.build.whole_numbers(row, index, self.block.symbol)
@@ -142,6 +147,12 @@ class Lists:
         )
 
 
+@lru_cache(256)
+def _grid(exponents: int, columns: int) -> Grid:
+    """Places of a list of exponents and the matrix behind it."""
+    return Grid(0, 1, exponents, columns, 1)
+
+
 class Cutting:
     """The numbers of one element, in the rows of ``run``, and the shells announced for it."""
 
@@ -156,9 +167,11 @@ class Cutting:
 
     def cut(self) -> None:
         """Hand the shells to the build, or say what is wrong with them."""
-        bounds = list(accumulate(self._sizes(), initial=0))
+        bounds = list(accumulate(sizes_of(self.entries), initial=0))
         fits = bounds[-1] == self.above[-1]
-        paragraphs = [] if fits and set(self.above).issuperset(bounds) else self._paragraphs()
+        if fits and self._cut_by_lines(bounds):
+            return
+        paragraphs = self._paragraphs()
         if not self.run.rows:
             self._say_line(self.lists.run.lines[-1], "no numbers follow these lists", 0, bounds[-1])
         elif len(paragraphs) == 2 * len(self.entries):
@@ -172,12 +185,17 @@ class Cutting:
         else:
             self._by_lines(bounds)
 
-    def _sizes(self) -> list[int]:
-        return [
-            size
-            for entry in self.entries
-            for size in (entry.primitives, entry.primitives * entry.contractions)
-        ]
+    def _cut_by_lines(self, bounds: list[int]) -> bool:
+        """Hand over shells whose exponents and matrices all begin with lines, if they do."""
+        rows = [bisect_left(self.above, bound) for bound in bounds]
+        if [self.above[row] for row in rows] != bounds:
+            return False
+        for entry, first, last in zip(self.entries, rows[::2], rows[2::2], strict=False):
+            l, count, columns, _, _ = entry
+            run = self._rows(first, last)
+            shape = count, columns
+            self.build.matrix(self.block, l, run.lines[0], run, shape, _grid(count, columns))
+        return True
 
     def _paragraphs(self) -> list[range]:
         """Rows that follow one another without a blank line between them."""
