@@ -11,7 +11,7 @@ faults.
 from collections.abc import Callable, Collection, Iterable, Iterator, Sequence
 from contextlib import suppress
 from dataclasses import dataclass, field
-from functools import cache
+from functools import cache, cached_property
 from itertools import groupby
 from math import isfinite
 from typing import Any, Literal, NamedTuple
@@ -42,6 +42,7 @@ from overlapse.grammar.model import (
 from overlapse.grammar.numbers import (
     FORTRAN,
     Reading,
+    has_only_characters,
     is_plain,
     looks_numeric,
     read_number,
@@ -59,6 +60,7 @@ _WITHOUT_J = "spdfghiklmnoqrtuv"
 _WITH_J = "spdfghijklmnoqrtuv"
 _ONE = ("1.00", "1.0", "1.000000")  # usual spellings of a scale factor that changes nothing
 _ABOVE_I = frozenset("jJkK")
+_ORDINALS = tuple(f"{number} " for number in range(1, 100))
 
 
 class _OurTokens(Lexer):
@@ -98,20 +100,24 @@ class Run(NamedTuple):
 class ShellDraft:
     """A shell whose numbers still are words.
 
-    ``start`` is the place of its first word among all words of the file; ``shape`` is (nprim,
-    ncontr); ``grid`` tells exponents from coefficients; ``unit`` marks a shell whose coefficients
-    are not written at all because every exponent is a function of its own.
+    ``run`` is None for a sound shell, whose rows need not be split.  ``start`` is the place of its
+    first word among all words of the file; ``shape`` is (nprim, ncontr); ``grid`` tells exponents
+    from coefficients; ``unit`` marks a shell whose coefficients are not written at all because
+    every exponent is a function of its own.  ``first`` and ``last`` are its lines (0-based, past
+    the end).
     """
 
     name: str
     angular: tuple[int, ...]
     heading: int
-    run: Run
+    run: Run | None
     start: int
     shape: tuple[int, int]
     grid: Grid
     scale: float = 1.0
     unit: bool = False
+    first: int = 0
+    last: int = 0
 
     def places(self) -> Iterator[int]:
         """Which numbers of the run (0-based) are this shell's exponents and coefficients."""
@@ -168,10 +174,13 @@ class Build:
         self.remarks: list[Remark] = []
         self.blocks: list[BlockDraft] = []
         self.bodies = self._without_comments() if windows is None else self._within(windows)
+        self.split: Callable[[str], list[str]] = str.split  # a row into its words
         self.leading = ""  # signs that make a line a comment where they lead it
-        self._words: list[str] = []
+        self._pieces: list[str] = []  # of text, whose words are the numbers of the shells
+        self._count = 0  # of these numbers
+        self._readings: dict[str, Reading] = {}
         self._letters: dict[str, tuple[int, ...]] = {}
-        self._grids: dict[int, Grid] = {}
+        self._grids: dict[tuple[int, int], Grid] = {}
         self._runs_of_shells: dict[int, list[tuple[int, int, int]]] = {}
         self._has_holes = False  # whether a number of a shell cannot be read
         self._j_is_used = False
@@ -180,16 +189,22 @@ class Build:
 
     def _without_comments(self) -> list[str]:
         lines = self.source.lines
-        if not any(sign in self.source.text for sign in self.comment):
-            return [line.strip() for line in lines]
-        bodies = []
-        for index, line in enumerate(lines):
+        bodies = list(map(str.strip, lines))
+        signs = [sign for sign in self.comment if sign in self.source.text]
+        concerned = {index for sign in signs for index in self.source.lines_with(sign)}
+        for index in sorted(concerned):
+            line = lines[index]
             for sign in self.comment:
                 if sign in line:
                     line, remark = line.split(sign, 1)
                     self.remarks.append(Remark(remark.strip(), index + 1))
-            bodies.append(line.strip())
+            bodies[index] = line.strip()
         return bodies
+
+    @cached_property
+    def widths(self) -> list[int]:
+        """How many words each of the bodies has."""
+        return list(map(len, map(str.split, self.bodies)))
 
     def _within(self, windows: Collection[range]) -> list[str]:
         if not windows:
@@ -221,10 +236,14 @@ class Build:
         is then a heading without rows, and ROWS are rows without a shell heading.
         """
         lines = self._lines(classify, heading)
-        if not joined:
+        if joined:
+            yield from self.joined(lines)
+        else:
             for kind, first, last in lines:
                 yield self._token(kind, first, last)
-            return
+
+    def joined(self, lines: Iterable[tuple[str, int, int]]) -> Iterator[Token]:
+        """Tokens out of kinds and lines (0-based, past the last), runs of shells as one token."""
         waiting: int | None = None  # a shell heading whose rows may follow
         shells: list[tuple[int, int, int]] = []
         for kind, first, last in lines:
@@ -306,21 +325,35 @@ class Build:
     def parse(self, tokens: Iterable[Token]) -> Node:
         """Put tokens through the layout's grammar.
 
-        The grammars take every sequence of their tokens, so that one fault never hides the next;
-        should one refuse a token all the same, that is a finding and the token is passed over.
+        The grammars take every sequence of tokens that their readers make, so that one fault never
+        hides the next; should one refuse a token all the same, that is a finding and the token is
+        passed over.
         """
-        parser = parser_of(self.layout.replace("-", "_")).parse_interactive()
-        for token in tokens:
+        left = list(tokens)
+        refused: set[int] = set()
+        while True:
+            parser = parser_of(self.layout.replace("-", "_")).parse_interactive()
+            for token in left:
+                try:
+                    parser.feed_token(token)
+                except UnexpectedToken as refusal:
+                    self._refuse(token, refusal, refused)
             try:
-                parser.feed_token(token)
+                tree = parser.feed_eof()  # type: ignore[no-untyped-call]
             except UnexpectedToken as refusal:
-                expected = ", ".join(sorted(refusal.accepts or refusal.expected)).lower()
-                self.fault_line(
-                    "form.syntax",
-                    index_of(token),
-                    f"{str(token)!r} does not belong here; expected: {expected}",
-                )
-        return parser.feed_eof()  # type: ignore[no-any-return, no-untyped-call]
+                self._refuse(left.pop(), refusal, refused)  # it ends in the middle of something
+                continue
+            return tree  # type: ignore[no-any-return]
+
+    def _refuse(self, token: Token, refusal: UnexpectedToken, refused: set[int]) -> None:
+        if index_of(token) not in refused:
+            refused.add(index_of(token))
+            expected = ", ".join(sorted(refusal.accepts or refusal.expected)).lower()
+            self.fault_line(
+                "form.syntax",
+                index_of(token),
+                f"{str(token)!r} does not belong here; expected: {expected}",
+            )
 
     def rows(self, token: Token | None) -> Run:
         """The words of a run of rows, line by line; blank lines and comments are left out."""
@@ -331,7 +364,7 @@ class Build:
     def rows_between(self, first: int, last: int) -> Run:
         """As `rows`, for lines ``first`` up to ``last`` (0-based, past the end)."""
         lines: Sequence[int] = range(first, last)
-        rows = [body.split() for body in self.bodies[first:last]]
+        rows = list(map(self.split, self.bodies[first:last]))
         if [] in rows:
             lines = [index for index, row in zip(lines, rows, strict=True) if row]
             rows = [row for row in rows if row]
@@ -454,6 +487,21 @@ class Build:
                 remedy="write the number (L=7) where the layout allows it",
             )
 
+    def take_rows(self, first: int, last: int, width: int) -> int | None:
+        """Take in lines ``first`` up to ``last``, if all have ``width`` words.
+
+        The place of their first number is for `even_shell`.
+        """
+        if self.widths[first:last].count(width) != last - first:
+            return None
+        return self.take(self.bodies[first:last], (last - first) * width)
+
+    def take(self, texts: list[str], count: int) -> int:
+        """Take in texts that hold ``count`` numbers: the place of the first."""
+        self._pieces += texts
+        self._count += count
+        return self._count - count
+
     def sound_shell(
         self,
         block: BlockDraft,
@@ -463,44 +511,56 @@ class Build:
         last: int,
         announced: str | None,
         general: bool = False,
+        scale: float = 1.0,
+        lead: int = 0,
     ) -> bool:
         """Add a shell that is just what its heading announces, and say whether it was one.
 
         The quick way past `shell` for what nearly all shells are: known letters, rows of one
-        fitting width, and as many as announced.  Rows are lines ``first`` up to ``last``.
+        fitting width, and as many as announced.  Rows are lines ``first`` up to ``last``;
+        ``lead`` is 1 where they begin with their number.
         """
         angular = self._letters.get(letters)
         if angular is None or angular == (8,):
             return False
-        rows = [body.split() for body in self.bodies[first:last]]
-        width = len(rows[0])
-        if general and len(angular) == 1:
-            if width < 2:
-                return False
-        elif width != 1 + len(angular):
-            return False
-        for row in rows:
-            if len(row) != width:
-                return False
-        count = len(rows)
-        if general and width > 2 and _is_index(rows):
-            return False
+        count, width = last - first, self.widths[first]
         if announced is not None and announced != str(count):
             return False
-        grid = self._grids.get(width)
+        if width != lead + 1 + len(angular) and not (general and len(angular) == 1 < width):
+            return False
+        if lead and not _are_numbered(self.bodies[first:last]):
+            return False
+        if general and width > 2 and _is_index(row.split() for row in self.bodies[first:last]):
+            return False
+        start = self.take_rows(first, last, width)
+        if start is None:
+            return False
+        grid = self._grids.get((width, lead))
         if grid is None:
-            grid = self._grids[width] = Grid(0, width, 1, width, 1)
-        name = block.next_name("sp" if len(angular) > 1 else _WITHOUT_J[angular[0]])
-        words = self._words
-        run = Run(rows, range(first, last))
-        shape = (count, width - 1)
+            grid = self._grids[width, lead] = Grid(lead, width, lead + 1, width, 1)
+        shape = (count, width - lead - 1)
+        self.even_shell(block, angular, heading, first, last, start, shape, grid, scale)
+        return True
+
+    def even_shell(
+        self,
+        block: BlockDraft,
+        angular: tuple[int, ...],
+        heading: int,
+        first: int,
+        last: int,
+        start: int,
+        shape: tuple[int, int],
+        grid: Grid,
+        scale: float = 1.0,
+        unit: bool = False,
+    ) -> None:
+        """Add a shell whose numbers `take` has taken; several may share them."""
+        name = block.next_name("sp" if len(angular) > 1 else letter_of(angular[0]))
         block.shells.append(
-            ShellDraft(name, angular, heading, run, len(words), shape, grid, 1.0, False)
+            ShellDraft(name, angular, heading, None, start, shape, grid, scale, unit, first, last)
         )
         block.end = last - 1
-        for row in rows:
-            words += row
-        return True
 
     def scaled_shells(self, block: BlockDraft, token: Token) -> None:
         """Add a run of shells headed by letter, number of rows and scale factor (`S 3 1.00`)."""
@@ -616,15 +676,18 @@ class Build:
         self.keep(block, ShellDraft(name, (l,), heading, run, 0, shape, grid, 1.0, unit))
 
     def keep(self, block: BlockDraft, draft: ShellDraft) -> None:
-        """Add a shell whose numbers the caller has counted; `ShellDraft.start` is set here."""
+        """Add a shell whose numbers the caller has counted; its place is set here."""
         before = block.shells[-1] if block.shells else None
         block.shells.append(draft)
+        assert draft.run is not None
+        draft.first, draft.last = draft.run.lines[0], draft.run.lines[-1] + 1
         if before is not None and before.run is draft.run:
             draft.start = before.start
             return
-        draft.start = len(self._words)
+        draft.start = self._count
         for row in draft.run.rows:
-            self._words += row
+            self._pieces += row
+            self._count += len(row)
 
     @staticmethod
     def _width(run: Run) -> int:
@@ -718,7 +781,9 @@ class Build:
     def number(
         self, word: str, index: int, ordinal: int, element: str | None, shell: str | None
     ) -> float | None:
-        reading = read_number(word)
+        reading = self._readings.get(word)
+        if reading is None:
+            reading = self._readings[word] = read_number(word)
         if reading.slip:
             span = self.source.span_of_word(index, ordinal, self.word_pattern)
             self.slip(reading, word, span, element, shell)
@@ -843,13 +908,13 @@ class Build:
 
     def _convert(self) -> Floats:
         """All numbers of all shells as one read-only array; NaN where one cannot be read."""
-        words, text = self._words, " ".join(self._words)
+        text = " ".join(self._pieces)
+        if "D" in text or "d" in text:
+            text = text.translate(FORTRAN)
         values = np.array([np.nan])
-        if is_plain(text):
-            if "D" in text or "d" in text:
-                words = text.translate(FORTRAN).split()
+        if has_only_characters(text):
             with suppress(ValueError):  # a slip among the numbers; found below
-                values = np.fromiter(map(float, words), np.float64, len(words))
+                values = np.array(list(map(float, text.split())))
         if not np.isfinite(values).all():
             values = self._convert_one_by_one()
         self._has_holes = bool(np.isnan(values).any())
@@ -857,12 +922,13 @@ class Build:
         return values
 
     def _convert_one_by_one(self) -> Floats:
-        values = np.full(len(self._words), np.nan)
+        values = np.full(self._count, np.nan)
         for block in self.blocks:
             for start, sharing in groupby(block.shells, key=lambda shell: shell.start):
                 shells = list(sharing)
                 names = {place: shell.name for shell in shells[::-1] for place in shell.places()}
-                for at, (word, index, ordinal) in enumerate(shells[0].run.words()):
+                run = shells[0].run or self.rows_between(shells[0].first, shells[0].last)
+                for at, (word, index, ordinal) in enumerate(run.words()):
                     name = names.get(at, shells[-1].name)
                     value = self.number(word, index, ordinal, block.symbol, name)
                     values[start + at] = np.nan if value is None else value
@@ -871,16 +937,16 @@ class Build:
     def _block(self, block: BlockDraft, values: Floats) -> Block:
         shells = list(block.ready)
         complete = block.complete
+        source, comment = self.source, self.comment
         pattern, leading = self.word_pattern, self.leading
         for draft in block.shells:
             exponents, coefficients = self._table(draft, values)
             if self._has_holes and np.isnan(np.append(exponents, coefficients)).any():
                 complete = False
                 continue
-            _, lines, before = draft.run
-            first, last, skip = lines[0], lines[-1] + 1, before[0] if before else 0
+            skip = draft.run.before[0] if draft.run is not None and draft.run.before else 0
             cells = Cells(
-                self.source, first, last, draft.grid, self.comment, pattern, skip, leading
+                source, draft.first, draft.last, draft.grid, comment, pattern, skip, leading
             )
             if draft.scale != 1.0:
                 with np.errstate(over="ignore"):
@@ -1034,9 +1100,14 @@ class Build:
         )
 
 
-def _is_index(rows: list[list[str]]) -> bool:
+def _is_index(rows: Iterable[list[str]]) -> bool:
     """Whether the first words of rows are 1, 2, 3 ... without a point."""
     return all(row[0] == str(at) for at, row in enumerate(rows, 1))
+
+
+def _are_numbered(rows: list[str]) -> bool:
+    """As `_is_index`, for rows that are not split; says no where they are very many, or tabbed."""
+    return len(rows) < 100 and all(map(str.startswith, rows, _ORDINALS))
 
 
 def index_of(token: Token) -> int:

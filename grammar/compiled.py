@@ -11,6 +11,7 @@ import sys
 from contextlib import suppress
 from pathlib import Path
 from typing import Any
+from zlib import crc32
 
 from lark import Lark
 
@@ -20,20 +21,23 @@ _FOLDER = Path(__file__).parent
 def grammar(name: str, **options: Any) -> Lark:
     """The LALR parser of a grammar file below this folder, ``name`` without its ending."""
     text = _FOLDER.joinpath(f"{name}.lark").read_text("utf-8")
-    kept = _kept(name)
+    kept = _kept(name, text)
     with suppress(OSError):
         return Lark(text, parser="lalr", maybe_placeholders=False, cache=kept or False, **options)
     return Lark(text, parser="lalr", maybe_placeholders=False, **options)
 
 
-def _kept(name: str) -> str | None:
-    """Where the compiled grammar is kept, or None where no cache folder can be made."""
+def _kept(name: str, text: str) -> str | None:
+    """Where the compiled grammar is kept, or None where no cache folder can be made.
+
+    The name holds a sum of the text, so that two versions do not push each other out.
+    """
     version = f"{sys.version_info.major}.{sys.version_info.minor}"
     with suppress(OSError):
         folder = cache_folder() / f"grammars-{version}"
         folder.mkdir(parents=True, exist_ok=True)
         if os.access(folder, os.W_OK):
-            return str(folder / f"{name.replace('/', '-')}.tables")
+            return str(folder / f"{name.replace('/', '-')}-{crc32(text.encode()):08x}.tables")
     return None
 
 

@@ -10,6 +10,7 @@ from typing import NamedTuple
 
 NUMBER = re.compile(r"[+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[EeDd][+-]?[0-9]+)?")
 CHARACTERS = frozenset("0123456789+-.eEdD ")
+_DELETED = "".join(sorted(CHARACTERS | {"\t"})).encode()
 FORTRAN = str.maketrans("Dd", "Ee")
 _PLAIN = "".join(CHARACTERS).encode()
 
@@ -35,11 +36,23 @@ class Reading(NamedTuple):
     spelling: str | None = None
 
 
+def has_only_characters(text: str) -> bool:
+    """Whether numbers and blanks alone could make up a text; quick for a long one."""
+    return text.isascii() and not text.encode().translate(None, _DELETED)
+
+
 def plain(word: str) -> float:
     """Value of a correctly spelled number; raises ValueError for anything else."""
     if not NUMBER.fullmatch(word):
         raise ValueError(word)
-    return float(word.translate(FORTRAN))
+    return _value(word)
+
+
+def _value(number: str) -> float:
+    try:
+        return float(number)
+    except ValueError:  # D is rare enough to try without looking for it
+        return float(number.translate(FORTRAN))
 
 
 def is_plain(text: str) -> bool:
@@ -53,7 +66,7 @@ def is_plain(text: str) -> bool:
 def read_number(word: str) -> Reading:
     """Read a word, and name the slip where it is not a number."""
     if NUMBER.fullmatch(word):
-        value = float(word.translate(FORTRAN))
+        value = _value(word)
         if not isfinite(value):
             return Reading(None, "is too large for a double-precision number")
         if value == 0.0 and re.match(r"[+-]?[0.]*[1-9]", word):

@@ -2,6 +2,7 @@
 
 import re
 from bisect import bisect_right
+from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import cached_property, lru_cache
 from itertools import accumulate
@@ -59,6 +60,16 @@ class Source:
         if "\r" in self.text:
             return [0, *(end.end() for end in _LINE_END.finditer(self.text))]
         return [0, *accumulate(len(line) + 1 for line in self.lines[:-1])]
+
+    def lines_with(self, sign: str) -> Iterator[int]:
+        """The lines (0-based) that hold a sign, without looking at the others."""
+        text, index, seen = self.flat, 0, 0
+        while (found := text.find(sign, seen)) >= 0:
+            index += text.count("\n", seen, found)
+            yield index
+            seen = text.find("\n", found)
+            if seen < 0:
+                return
 
     def place(self, offset: int) -> Place:
         """Line and column of an offset; offsets past the end give the end."""

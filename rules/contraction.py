@@ -34,8 +34,8 @@ def norm(case: Case, *, share: float = 0.9, floor: float = 3e-6) -> Iterator[Fin
     Phys. 58, 4452 (1973) (general contraction) and its segmented forms.
 
     Limits: share: the part of the set that must be normalised before one that is not is evidence.
-    floor: departures below it never count; above it, ten times what the printed digits explain and
-    what the neighbours show.
+    floor: departures below it never count; above it, three times what the printed digits explain
+    and ten times what the neighbours show.
 
     Remedy: compare the number pointed at with the original publication.  To rescale the
     contraction instead would hide the slip.
@@ -135,7 +135,7 @@ class _Scale:
             limit = max(20.0 * self.usual, 1e-4)
         else:
             return False
-        return off.deviation > max(limit, self.floor) and off.deviation > 10.0 * rounding(off)
+        return off.deviation > max(limit, self.floor) and off.deviation > 3.0 * rounding(off)
 
 
 def _odd_ones(
@@ -166,6 +166,7 @@ def _odd_one(case: Case, group: list[Norm], sound: list[Norm], rows: list[Row]) 
     published = unnormalised_as_published(
         off.block.atomic_number, len(off.function.exponents), off.overlap
     )
+    is_clear = guess is not None and guess.clear
     factor = 1.0 / np.sqrt(off.overlap)
     witnesses = [f"{len(sound)} contractions of this set are normalised"]
     message = f"self-overlap {parts} where 1 is expected"
@@ -186,7 +187,7 @@ def _odd_one(case: Case, group: list[Norm], sound: list[Norm], rows: list[Row]) 
     return case.at_shell(
         off.block,
         off.shell,
-        "note" if published or (off.deviation < 2e-5 and guess is None) else "warning",
+        "note" if published or (off.deviation < 1e-4 and not is_clear) else "warning",
         message,
         function=off.function,
         **place,

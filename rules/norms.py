@@ -82,11 +82,11 @@ def rounding(norm: Norm) -> float:
 
 
 def _half_unit(word: str) -> float:
-    """Half a unit in the last printed place of a number."""
+    """Half a unit in the last printed place of a number; zeros at its end may be mere padding."""
     if not NUMBER.fullmatch(word):
         return 0.0
     mantissa, _, power = word.upper().replace("D", "E").partition("E")
-    decimals = len(mantissa.partition(".")[2])
+    decimals = len(mantissa.partition(".")[2].rstrip("0"))
     return float(0.5 * 10.0 ** (int(power or 0) - decimals))
 
 

@@ -10,14 +10,21 @@ from overlapse.grammar.building import (
     BlockDraft,
     Build,
     Node,
-    Run,
     index_of,
     shorten,
 )
 from overlapse.grammar.layout import Evidence, Layout, Written
-from overlapse.grammar.model import Block, Document, Grid, letter_of
+from overlapse.grammar.model import Block, Document, letter_of
+from overlapse.grammar.pieces.soundstatements import RANGE, Column, Cut, cuts
 from overlapse.grammar.pieces.statedcores import read_stated, stated_lines
-from overlapse.grammar.pieces.statements import FIELD, Statements, fault_field, fields_of, run_of
+from overlapse.grammar.pieces.statements import (
+    FIELD,
+    Statements,
+    as_numbers,
+    fault_field,
+    fields_of,
+    run_of,
+)
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, split_shared, title_of
 
@@ -37,7 +44,6 @@ _ECP = re.compile(
     r"(?:^|[;{])[ \t]*(ecp[ \t]*,[ \t]*[A-Z]{1,3}[ \t]*,[ \t]*\d+[ \t]*,[ \t]*\d+)",
     re.MULTILINE | re.IGNORECASE,
 )
-_RANGE = re.compile(r"([0-9]{1,6})\.([0-9]{1,6})")
 
 
 def recognise(source: Source) -> Evidence | None:
@@ -75,13 +81,16 @@ class _Reader:
 
     def __init__(self, source: Source) -> None:
         self.build = Build(source, "commas", "!", FIELD)
+        self.build.split = as_numbers
+        self.statements = Statements(self.build)
+        self.cuts: dict[tuple[int, tuple[Column, ...]], list[Cut]] = {}
         self.section = ""
         self.sections = 0
         self.known: dict[tuple[str, str], BlockDraft] = {}  # the last of a section and symbol
         self.last: BlockDraft | None = None
 
     def document(self) -> Document:
-        tokens = list(Statements(self.build.bodies).tokens())
+        tokens = list(self.statements.tokens())
         self.build.note_letters(
             (fields_of(token)[0], index_of(token)) for token in tokens if token.type == "SHELL"
         )
@@ -163,12 +172,26 @@ class _Reader:
 
     # ---- shells
 
+    def shells(self, node: Node) -> None:
+        token, build = node.children[0], self.build
+        assert isinstance(token, Token)
+        for index, past, opening, columns, texts, total in self.statements.runs[index_of(token)]:
+            angular = build.angular_of(opening.letter, index)
+            assert angular is not None
+            block = self.block(index, 1, opening.symbol, angular)
+            start, count = build.take(texts, total), self.statements.plain.counts[index] - 2
+            if (found := self.cuts.get((count, columns))) is None:
+                found = self.cuts[count, columns] = list(cuts(count, columns))
+            for shape, grid, unit in found:
+                build.even_shell(block, angular, index, index, past, start, shape, grid, unit=unit)
+
     def shell(self, node: Node) -> None:
         heading, *rest = node.children
         assert isinstance(heading, Token)
         fields = fields_of(heading)
         angular = self.build.angular_of(fields[0], index_of(heading), heading.column or 0)
-        block = self.block(heading, fields[1] if len(fields) > 1 else "", angular)
+        symbol, place = fields[1] if len(fields) > 1 else "", (heading.column or 0) + 1
+        block = self.block(index_of(heading), place, symbol, angular)
         for piece in rest:
             if isinstance(piece, Tree):
                 self.remark(piece)
@@ -193,18 +216,17 @@ class _Reader:
         block.end = max(block.end, *run.lines)
         if angular is None or not kept:
             self.build.check_words(block, None, run)
-        elif not columns:
-            for at in range(2, 2 + count):
-                grid = Grid(at, 1, at, 1, 1)
-                self.build.matrix(
-                    block, angular[0], index_of(heading), run, (1, 1), grid, unit=True
-                )
         else:
-            self.keep(block, angular[0], index_of(heading), run, found)
+            ranges = tuple((column.first, column.last, column.at) for column in found)
+            for shape, grid, unit in cuts(count, ranges):
+                self.build.matrix(block, angular[0], index_of(heading), run, shape, grid, unit=unit)
 
-    def block(self, heading: Token, symbol: str, angular: tuple[int, ...] | None) -> BlockDraft:
+    def block(
+        self, index: int, word: int, symbol: str, angular: tuple[int, ...] | None
+    ) -> BlockDraft:
         """The block of a symbol; a new one where the list of shells begins anew.
 
+        The symbol is a word of line ``index`` (both 0-based).
         Elements may take turns, as long as each goes on where it stopped.
         """
         key = (self.section, symbol.lower())
@@ -212,7 +234,7 @@ class _Reader:
         shells = known.shells if known is not None and known is not self.last else []
         if known is None or (angular and shells and angular[0] <= shells[-1].angular[0]):
             known = self.known[key] = self.build.open_block(
-                symbol, index_of(heading), section=self.section, word=(heading.column or 0) + 1
+                symbol, index, section=self.section, word=word
             )
         self.last = known
         return known
@@ -286,7 +308,7 @@ class _Reader:
     def range(self, block: BlockDraft, token: Token) -> tuple[int, int] | None:
         """First exponent and the one past the last, from 0, if as many coefficients follow."""
         word, *coefficients = fields_of(token)[1:] or [""]
-        match = _RANGE.fullmatch(word)
+        match = RANGE.fullmatch(word)
         first, last = (int(match[1]), int(match[2])) if match else (0, 0)
         if not 0 < first <= last:
             fault_field(
@@ -317,23 +339,6 @@ class _Reader:
         )
         return None
 
-    def keep(self, block: BlockDraft, l: int, index: int, run: Run, columns: list[_Column]) -> None:
-        """Contractions over the same exponents, evenly spaced in the text, make one shell."""
-        at = 0
-        while at < len(columns):
-            first, end = columns[at], at + 1
-            step = columns[end].at - first.at if end < len(columns) else 1
-            while (
-                end < len(columns)
-                and columns[end][:2] == first[:2]
-                and columns[end].at - columns[end - 1].at == step
-            ):
-                end += 1
-            shape = (first.last - first.first, end - at)
-            grid = Grid(2 + first.first, 1, first.at, 1, step if end - at > 1 else 1)
-            self.build.matrix(block, l, index, run, shape, grid)
-            at = end
-
     # ---- core potentials
 
     def potential(self, node: Node) -> None:
@@ -354,7 +359,7 @@ class _Reader:
     def owner(self, heading: Token, symbol: str) -> BlockDraft:
         """The block that a potential belongs to: the element's in this section, if there is one."""
         self.last = self.known.get((self.section, symbol.lower()))
-        return self.last or self.block(heading, symbol, None)
+        return self.last or self.block(index_of(heading), (heading.column or 0) + 1, symbol, None)
 
 
 def write(document: Document) -> Written:

@@ -10,6 +10,7 @@ from overlapse.grammar.building import (
     BlockDraft,
     Build,
     Node,
+    Run,
     ShellDraft,
     index_of,
     integer,
@@ -24,7 +25,7 @@ from overlapse.grammar.model import (
     Shell,
     letter_of,
 )
-from overlapse.grammar.numbers import looks_numeric, read_number
+from overlapse.grammar.numbers import Reading, looks_numeric, read_number
 from overlapse.grammar.pieces.centres import gather
 from overlapse.grammar.pieces.groups import is_atom, keep_groups, say_built_in, say_missing
 from overlapse.grammar.pieces.rownumbers import numbers_in_front
@@ -63,15 +64,14 @@ class _Reader:
         self.group = ""
         self.atoms: list[BlockDraft] = []  # of all groups, in the order of the text
         self.empty: list[tuple[BlockDraft, Token]] = []  # atoms with neither shells nor card
+        self.known: dict[str, tuple[str, str, float] | None] = {}  # headings, if sound
         self.named: set[tuple[str, str]] = set()  # elements and their built-in sets
         self.cores = Cores(self.build, self.atoms)
 
     def document(self) -> Document:
         keep_groups(self.build)
-        tokens = list(self.build.tokens(self.classify, self.count_line))
-        self.build.note_letters(
-            (token.split()[0], index_of(token)) for token in tokens if token.type == "SHELL"
-        )
+        tokens = list(self.build.tokens(self.classify, self.count_line, joined=True))
+        self.build.note_letters(self.build.shell_letters(tokens))
         for piece in self.build.parse(tokens).children:
             assert isinstance(piece, Tree)
             getattr(self, str(piece.data))(piece)
@@ -82,6 +82,8 @@ class _Reader:
     # ---- which token a line is
 
     def classify(self, body: str, index: int) -> str:
+        if body in self.known and self.group == "$data":
+            return "SHELL"
         words = body.split()
         if body[0] == "$":
             self.group = words[0].lower()
@@ -96,6 +98,7 @@ class _Reader:
             and words[0].isalpha()
             and (len(words[0]) == 1 or words[0].upper() == "SP")
         ):
+            self.known[body] = _spelt(words)
             return "SHELL"
         if _CARD.fullmatch(body) and (body.isupper() or any(c.isdigit() for c in body)):
             return "CARD"
@@ -103,12 +106,12 @@ class _Reader:
 
     def count_line(self, body: str) -> str | None:
         """In `$ECP` a line with the number of rows, most often followed by a title."""
+        if self.group != "$ecp":
+            return None
         words = body.split()
-        if self.group == "$ecp" and words[0].upper().endswith("-ECP"):
+        if words[0].upper().endswith("-ECP"):
             return "POTENTIAL"
-        if self.group == "$ecp" and (len(words) == 1 or not looks_numeric(words[1])):
-            return "COUNT"
-        return None
+        return "COUNT" if len(words) == 1 or not looks_numeric(words[1]) else None
 
     # ---- atoms
 
@@ -232,11 +235,27 @@ class _Reader:
 
     # ---- what stands below an atom
 
-    def shell(self, block: BlockDraft, node: Node) -> None:
+    def shells(self, block: BlockDraft, node: Node) -> None:
+        token = node.children[0]
+        assert isinstance(token, Token)
+        bodies = self.build.bodies
+        for index, first, last in self.build.shells_in(token):
+            sound = self.known[bodies[index]]
+            if sound is not None and first == index + 1 and bodies[index - 1]:
+                letters, announced, scale = sound
+                if self.build.sound_shell(
+                    block, letters, index, first, last, announced, scale=scale, lead=1
+                ):
+                    continue
+            self.shell(block, index, self.build.rows_between(first, last))
+
+    def bare(self, block: BlockDraft, node: Node) -> None:
         heading = node.children[0]
-        rows = node.children[1] if len(node.children) > 1 else None
-        assert isinstance(heading, Token) and (rows is None or isinstance(rows, Token))
-        words, index, run = heading.split(), index_of(heading), self.build.rows(rows)
+        assert isinstance(heading, Token)
+        self.shell(block, index_of(heading), self.build.rows(None))
+
+    def shell(self, block: BlockDraft, index: int, run: Run) -> None:
+        words = self.build.bodies[index].split()
         self.check_blanks(block, [index, *run.lines])
         announced = self.announced(block, words, index)
         scale = self.scale(block, words, index)
@@ -260,8 +279,6 @@ class _Reader:
         width = lead + 1 + len(angular)
         shape, grid = (len(run.rows), len(angular)), Grid(lead, width, lead + 1, width, 1)
         self.build.keep(block, ShellDraft(name, angular, index, run, 0, shape, grid, scale))
-
-    bare = shell
 
     def announced(self, block: BlockDraft, words: list[str], index: int) -> str | None:
         """The number of rows as spelled, or None with a fault."""
@@ -375,6 +392,14 @@ class _Reader:
                 say_missing(self.build, piece, "HG-ECP GEN   60   3")
             before = str(piece.data)
         self.check_end(node)
+
+
+def _spelt(words: list[str]) -> tuple[str, str, float] | None:
+    """Letters, number of rows and scale factor of a plain shell heading."""
+    scale = read_number(words[2]) if len(words) > 2 else Reading(1.0)
+    if len(words) < 2 or scale.slip or not _SCALES[0] <= (scale.value or 0.0) <= _SCALES[1]:
+        return None
+    return ("sp" if words[0].lower() == "l" else words[0]), words[1], scale.value or 1.0
 
 
 def write(document: Document) -> Written:

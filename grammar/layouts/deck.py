@@ -7,7 +7,7 @@ from math import isfinite
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, index_of, integer, shorten
+from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of, integer, shorten
 from overlapse.grammar.elements import replaced_by, subshells, symbol_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, letter_of
@@ -16,6 +16,8 @@ from overlapse.grammar.pieces.charged import charged_lines, read_charged
 from overlapse.grammar.pieces.plainlines import WITH_POTENTIAL, Lines
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, is_general, segments
+
+_Shell = tuple[int, int, int]  # lines of its heading, of its first row, and past the last
 
 PICTURE = """\
 6 1
@@ -69,10 +71,12 @@ class _Reader:
     def __init__(self, source: Source) -> None:
         self.build = Build(source, "deck")
         self.lists = 0  # that have ended
+        self.known: dict[str, tuple[str, str, float] | None] = {}  # headings, if plain
         self.numbers: dict[tuple[int, int], str] = {}  # of headings, by list and atomic number
 
     def document(self) -> Document:
-        pieces = self.build.parse(Lines(self.build.bodies).tokens()).children
+        tokens = self.build.joined(Lines(self.build).lines())
+        pieces = self.build.parse(tokens).children
         last_end = max((at for at, piece in enumerate(pieces) if _is_token(piece)), default=-1)
         still_open: list[Node] = []
         for at, piece in enumerate(pieces):
@@ -123,14 +127,16 @@ class _Reader:
     def stray(self, node: Node) -> None:
         first = node.children[0]
         assert isinstance(first, Token)
-        self.build.fault_line(
-            "form.syntax",
-            index_of(first),
-            "this stands below no element; a line with the atomic number and the number of shells "
-            "is missing above it",
-            expected="a heading such as `6 4`",
-            remedy="write the heading of the element that this belongs to",
-        )
+        shells = self.build.shells_in(first) if first.type == "SHELLS" else []
+        for index in [heading for heading, _, _ in shells] or [index_of(first)]:
+            self.build.fault_line(
+                "form.syntax",
+                index,
+                "this stands below no element; a line with the atomic number and the number of "
+                "shells is missing above it",
+                expected="a heading such as `6 4`",
+                remedy="write the heading of the element that this belongs to",
+            )
 
     # ---- one element
 
@@ -140,26 +146,26 @@ class _Reader:
         assert isinstance(heading, Token)
         block = self.headed(heading)
         announced = self.announced(heading, block)
-        trees = [piece for piece in pieces if isinstance(piece, Tree)]
-        if not any(tree.data == "potential" for tree in trees):
+        parts = [part for piece in pieces for part in self.parts(piece)]
+        if not any(isinstance(part, Tree) and part.data == "potential" for part in parts):
             self.check_potential(block, heading)
-        shells = [tree for tree in trees if tree.data in ("shell", "bare")]
+        shells = [part for part in parts if isinstance(part, tuple)]
         first_of_next = self.lost_heading(block, announced, shells)
         sound, found = announced is not None and first_of_next is None, 0
-        for at, tree in enumerate(trees):
-            if tree is first_of_next:
+        for at, part in enumerate(parts):
+            if part is first_of_next:
                 break
-            if tree.data == "potential":
-                self.potential(block, heading, tree)
-            elif tree.data in ("shell", "bare"):
+            if isinstance(part, tuple):
                 # Below a line that nobody understands the next element may have begun.
                 if sound or found != announced:
-                    self.shell(block, tree)
+                    self.shell(block, *part)
                     found += 1
+            elif part.data == "potential":
+                self.potential(block, heading, part)
             elif (
-                len(tree.children) > 1 or at + 1 < len(trees) or goes_on or tree.data == "unheaded"
+                len(part.children) > 1 or at + 1 < len(parts) or goes_on or part.data == "unheaded"
             ):
-                self.misfit(block, tree)
+                self.misfit(block, part)
                 sound = False
         if sound and found != announced:
             self.build.fault_word(
@@ -173,6 +179,16 @@ class _Reader:
                 remedy="a shell was lost or added, or the count is wrong",
             )
             block.complete = block.complete and found > (announced or 0)
+
+    def parts(self, piece: Token | Node) -> list[Node | _Shell]:
+        """A piece of an element, or each of its shells."""
+        assert isinstance(piece, Tree)
+        first = piece.children[0]
+        if isinstance(first, Token) and first.type == "SHELLS":
+            return [*self.build.shells_in(first)]
+        if isinstance(first, Token) and first.type == "SHELL":
+            return [(index_of(first), index_of(first) + 1, index_of(first) + 1)]
+        return [piece]
 
     def headed(self, heading: Token) -> BlockDraft:
         """The block that a heading opens; other numbers for one element make other sets."""
@@ -209,8 +225,8 @@ class _Reader:
         return None
 
     def lost_heading(
-        self, block: BlockDraft, announced: int | None, shells: list[Node]
-    ) -> Node | None:
+        self, block: BlockDraft, announced: int | None, shells: list[_Shell]
+    ) -> _Shell | None:
         """The shell that begins another element whose heading is lost.
 
         When all shells have come, and after a d shell an s shell follows, that is likelier than a
@@ -218,14 +234,13 @@ class _Reader:
         """
         if not announced or len(shells) <= announced:
             return None
-        before, first = (str(node.children[0]).split()[1] for node in shells[announced - 1 :][:2])
+        bodies = self.build.bodies
+        before, first = (bodies[index].split()[1] for index, _, _ in shells[announced - 1 :][:2])
         if first > "1" or before <= first:
             return None
-        line = shells[announced].children[0]
-        assert isinstance(line, Token)
         self.build.fault_line(
             "form.syntax",
-            index_of(line),
+            shells[announced][0],
             f"the {announced} shells announced for {block.symbol} are complete; "
             "the heading of the next element is missing above this line",
             expected="a heading such as `6 4`",
@@ -248,35 +263,42 @@ class _Reader:
             remedy="write the heading of the shell, or take the line out: there are no comments",
         )
 
-    def shell(self, block: BlockDraft, node: Node) -> None:
-        heading = node.children[0]
-        rows = node.children[1] if len(node.children) > 1 else None
-        assert isinstance(heading, Token) and (rows is None or isinstance(rows, Token))
-        run = self.build.rows(rows)
-        kind, shape, count, charge, scale = self.five(block, heading)
+    def shell(self, block: BlockDraft, index: int, first: int, last: int) -> None:
+        """A shell whose heading is line ``index``, its rows lines ``first`` up to ``last``."""
+        body = self.build.bodies[index]
+        if body not in self.known:
+            self.known[body] = _spelt(body.split())
+        if (spelt := self.known[body]) is not None and first < last:
+            letters, announced, scale = spelt
+            if self.build.sound_shell(block, letters, index, first, last, announced, scale=scale):
+                return
+        self.doubtful(block, index, self.build.rows_between(first, last))
+
+    def doubtful(self, block: BlockDraft, index: int, run: Run) -> None:
+        kind, shape, count, charge, scale = self.five(block, index)
         if kind in (1.0, 2.0) and not run.rows:
-            self.built_in(block, heading)
+            self.built_in(block, index)
             return
         if kind != 0.0 or shape is None or not 0 <= shape < len(_TYPES):
-            self.unknown(block, heading, kind, shape)
+            self.unknown(block, index, kind, shape)
             self.build.check_words(block, None, run)
             return
         letters, capacity = _TYPES[int(shape)]
         if all(len(row) == len(letters) + 1 for row in run.rows):
-            self.check_charge(block, heading, letters, capacity, charge or 0.0)
+            self.check_charge(block, index, letters, capacity, charge or 0.0)
         self.build.shell(
             block,
             letters,
-            index_of(heading),
+            index,
             run,
             announced=None if count is None else f"{count:.0f}",
             announced_word=2,
-            scale=self.scale(block, heading, scale),
+            scale=self.scale(block, index, scale),
         )
 
-    def five(self, block: BlockDraft, heading: Token) -> list[float | None]:
+    def five(self, block: BlockDraft, index: int) -> list[float | None]:
         """The five numbers of a shell heading; None for one that is lost or cannot be read."""
-        words, index = heading.split()[:5], index_of(heading)
+        words = self.build.bodies[index].split()[:5]
         if len(words) == 5 and _WHOLE.issuperset("".join(words[:3])):
             with suppress(ValueError):  # a slip; found below
                 numbers = [*map(plain, words)]
@@ -311,10 +333,10 @@ class _Reader:
         )
 
     def unknown(
-        self, block: BlockDraft, heading: Token, kind: float | None, shape: float | None
+        self, block: BlockDraft, index: int, kind: float | None, shape: float | None
     ) -> None:
         """A shell that cannot be read for what its first two numbers say, or do not say."""
-        words, index = heading.split(), index_of(heading)
+        words = self.build.bodies[index].split()
         block.complete = False
         block.end = max(block.end, index)
         if kind is not None and kind != 0.0:
@@ -346,12 +368,12 @@ class _Reader:
                 remedy="write the number of the shell's type",
             )
 
-    def built_in(self, block: BlockDraft, heading: Token) -> None:
+    def built_in(self, block: BlockDraft, index: int) -> None:
         """A shell whose numbers are known to the program alone: said once for each element."""
         if block.complete:
             self.build.fault_line(
                 "form.syntax",
-                index_of(heading),
+                index,
                 f"this shell of {block.symbol} is built into the program that reads the list: its "
                 "numbers stand nowhere in the text, and it is not judged",
                 severity="note",
@@ -359,15 +381,15 @@ class _Reader:
                 remedy="write the shells out, with kind 0 and their rows, to have them judged",
             )
         block.complete = False
-        block.end = max(block.end, index_of(heading))
+        block.end = max(block.end, index)
 
     def check_charge(
-        self, block: BlockDraft, heading: Token, letters: str, capacity: int, charge: float
+        self, block: BlockDraft, index: int, letters: str, capacity: int, charge: float
     ) -> None:
         if not 0.0 <= charge <= capacity:
             self.build.fault_word(
                 "form.number",
-                index_of(heading),
+                index,
                 3,
                 f"a formal charge of {charge:g} electrons; one {letters} shell holds 0 to "
                 f"{capacity}",
@@ -378,13 +400,13 @@ class _Reader:
                 remedy="mend the formal charge, or the shell type before it",
             )
 
-    def scale(self, block: BlockDraft, heading: Token, value: float | None) -> float:
+    def scale(self, block: BlockDraft, index: int, value: float | None) -> float:
         """The scale factor, or 1 where it is lost or senseless."""
         if value is None or _SCALES[0] <= value <= _SCALES[1]:
             return 1.0 if value is None else value
         self.build.fault_word(
             "form.number",
-            index_of(heading),
+            index,
             4,
             f"a scale factor of {value:g}: exponents are multiplied by its square",
             element=block.symbol,
@@ -441,6 +463,18 @@ class _Reader:
             expected="INPUT" if rest else None,
             remedy="write the potential out below `INPUT` to have it judged",
         )
+
+
+def _spelt(words: list[str]) -> tuple[str, str, float] | None:
+    """Letters, number of rows and scale factor of a plain shell heading."""
+    if len(words) != 5 or words[0] != "0" or not _WHOLE.issuperset(words[1] + words[2]):
+        return None
+    with suppress(ValueError):
+        shape, charge, scale = int(words[1]), plain(words[3]), plain(words[4])
+        if shape < len(_TYPES) and 0.0 <= charge <= _TYPES[shape][1]:
+            sensible = _SCALES[0] <= scale <= _SCALES[1]
+            return (_TYPES[shape][0], words[2], scale) if sensible else None
+    return None
 
 
 def _is_token(piece: Token | Node) -> bool:

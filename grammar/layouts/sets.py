@@ -8,7 +8,7 @@ from lark import Token, Tree
 from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of, integer, shorten
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
-from overlapse.grammar.model import Block, Document, Fault, Grid, letter_of
+from overlapse.grammar.model import Block, Document, Fault, letter_of
 from overlapse.grammar.pieces.pseudopotentials import GAP, IDLE, potentials_in
 from overlapse.grammar.pieces.setheadings import Heading, heading_of, made_of, slip_in
 from overlapse.grammar.source import Source
@@ -70,7 +70,7 @@ class _Reader:
         self.owners: dict[tuple[str, str], str] = {}
 
     def document(self) -> Document:
-        tokens = self.build.tokens(self.classify, self.numeric_heading)
+        tokens = self.build.tokens(self.classify, self.numeric_heading, joined=True)
         for piece in self.build.parse(tokens).children:
             if isinstance(piece, Tree):
                 getattr(self, str(piece.data))(piece)
@@ -87,7 +87,7 @@ class _Reader:
         if self.is_element(words, index):
             return "ELEMENT"
         # A heading whose first number is misspelt does not begin like a number.
-        return "SET" if len(words) > 4 and _odd(words) < 2 else "TEXT"
+        return "SHELL" if len(words) > 4 and _odd(words) < 2 else "TEXT"
 
     def is_element(self, words: list[str], index: int) -> bool:
         """Whether a line opens an element: its symbol says so, and what follows must fit."""
@@ -111,19 +111,19 @@ class _Reader:
         return next(said, ""), next(said, "")
 
     def numeric_heading(self, body: str) -> str | None:
-        """COUNT for a lone whole number, SET for the heading of a set, None for a row."""
+        """COUNT for a lone whole number, SHELL for the heading of a set, None for a row."""
         if "." in body:
             return None
+        if (heading := heading_of(body)) is not None:
+            self.width = heading.width
+            return "SHELL"
         words = body.split()
         if len(words) == 1:
             ruled = not any(map(str.isdigit, body))
             return "COUNT" if integer(body) is not None else "RULED" if ruled else None
-        if (heading := heading_of(body)) is not None:
-            self.width = heading.width
-            return "SET"
         # A row may be written without any decimal point, and a heading may be misspelt.
         is_row = len(words) < 4 or len(words) == self.width or _odd(words) > 1
-        return None if is_row else "SET"
+        return None if is_row else "SHELL"
 
     # ---- the tree
 
@@ -143,7 +143,9 @@ class _Reader:
         for piece in pieces:
             if count and found >= int(count) and _is(piece, "remark", "damaged", "END"):
                 break
-            if isinstance(piece, Tree) and not _is_empty(piece):
+            if isinstance(piece, Tree) and piece.data == "shells":
+                found += self.shells(block, piece)
+            elif isinstance(piece, Tree) and not _is_empty(piece):
                 found += piece.data != "remark"
                 getattr(self, str(piece.data))(block, piece)
         if isinstance(spoilt, Tree) and found:
@@ -215,34 +217,47 @@ class _Reader:
             remedy=remedy,
         )
 
-    def set(self, block: BlockDraft, node: Node) -> None:
-        heading, *rows = node.children
-        token = rows[0] if rows else None
-        assert isinstance(heading, Token) and not isinstance(token, Tree)
-        run = self.build.rows(token)
-        index = index_of(heading)
-        said = self.announced(block, heading)
-        names = [block.next_name(letter_of(l)) for l, _ in said.parts] if said else ["set"]
+    def shells(self, block: BlockDraft, node: Node) -> int:
+        """Add a run of sets, and say how many."""
+        token, build = node.children[0], self.build
+        assert isinstance(token, Token)
+        sets = build.shells_in(token)
+        for index, first, last in sets:
+            said = heading_of(build.bodies[index])
+            sound = said is not None and said.length == last - first and not said.surplus
+            start = build.take_rows(first, last, said.width) if said and sound else None
+            if said is None or start is None:
+                self.set(block, index, build.rows_between(first, last))
+                continue
+            for l, count, grid in said.parts:
+                shape = (said.length, count)
+                build.even_shell(block, (l,), index, first, last, start, shape, grid)
+        return len(sets)
+
+    def bare(self, block: BlockDraft, node: Node) -> None:
+        heading = node.children[0]
+        assert isinstance(heading, Token)
+        self.set(block, index_of(heading), self.build.rows(None))
+
+    def set(self, block: BlockDraft, index: int, run: Run) -> None:
+        said = self.announced(block, index)
+        names = [block.next_name(letter_of(part.l)) for part in said.parts] if said else ["set"]
         length = self.length(block, names[0], index, run, said) if said else None
         if said is None or length is None:
             block.complete = False
             block.end = max(block.end, index, *run.lines[-1:])
             self.build.check_words(block, names[0], run)
             return
-        offset = 1
-        for (l, count), name in zip(said.parts, names, strict=True):
-            grid = Grid(0, said.width, offset, said.width, 1)
+        for (l, count, grid), name in zip(said.parts, names, strict=True):
             self.build.matrix(block, l, index, run, (length, count), grid, name=name)
-            offset += count
 
-    bare = set
-
-    def announced(self, block: BlockDraft, heading: Token) -> Heading | None:
+    def announced(self, block: BlockDraft, index: int) -> Heading | None:
         """What a set's heading announces, or None, with faults, where it makes no sense."""
+        heading = self.build.bodies[index]
         said = heading_of(heading)
         if said is not None and not said.surplus:
             return said
-        index, words = index_of(heading), heading.split()
+        words = heading.split()
         whole = self.build.whole_numbers(words, index, block.symbol)
         slip = slip_in(whole) if whole else None
         if slip is not None:
@@ -320,18 +335,26 @@ class _Reader:
     def unnamed(self, node: Node) -> None:
         first = node.children[0]
         assert isinstance(first, Token)
+        self.nameless(index_of(first))
+
+    def nameless(self, index: int) -> None:
         self.build.fault_line(
             "form.syntax",
-            index_of(first),
+            index,
             "the heading of an element is missing above this line",
             expected="the element's symbol and the name of the set, such as `C invented`",
             remedy="write the heading of the element that this belongs to",
         )
 
     def stray(self, node: Node) -> None:
-        """A set before any element; mere rows may belong to somebody else's input."""
-        if _is(node.children[0], "SET"):
-            self.unnamed(node)
+        """Sets before any element; mere rows may belong to somebody else's input."""
+        token = node.children[0]
+        assert isinstance(token, Token)
+        if token.type == "SHELL":
+            self.nameless(index_of(token))
+        elif token.type == "SHELLS":
+            for index, _, _ in self.build.shells_in(token):
+                self.nameless(index)
 
 
 def _is(piece: Token | Node, *names: str) -> bool:

@@ -201,8 +201,12 @@ class _Reader:
         )
 
     def potential(self, block: BlockDraft, node: Node) -> None:
-        heading, *channels = node.children
+        heading, *pieces = node.children
         assert isinstance(heading, Token)
+        channels = [piece for piece in pieces if _is(piece, "channel")]
+        for piece in pieces:
+            if isinstance(piece, Tree) and piece.data == "untold":
+                self.untold(block, piece)
         words = heading.split()
         highest = integer(words[1]) if len(words) > 1 else None
         electrons = integer(words[2]) if len(words) > 2 else None
@@ -237,6 +241,18 @@ class _Reader:
         ]
         block.potential = Potential(
             electrons, tuple(channel for channel in made if channel), index_of(heading) + 1
+        )
+
+    def untold(self, block: BlockDraft, node: Node) -> None:
+        title = node.children[0]
+        assert isinstance(title, Token)
+        self.build.fault_line(
+            "form.count",
+            index_of(title),
+            f"no count and no rows follow {str(title)!r}",
+            element=block.symbol,
+            measured=0,
+            remedy="restore the rows of this channel, or take its title out",
         )
 
     def channel(self, block: BlockDraft, node: Token | Node, l: int, local: bool) -> Channel | None:

@@ -14,7 +14,7 @@ def gather(document: Document, severity: Severity = "note") -> Document:
     set.  Sets of different names stay apart.  A block that had to leave something out gives way to
     a whole one of its element.  ``severity``: of the remark on a second basis.
     """
-    variants: dict[tuple[str | None, int], dict[_Key, Block]] = {}
+    variants: dict[tuple[str | None, int], dict[_Key | None, Block]] = {}
     faults = list(document.faults)
     for members in document.sets:
         for block in members.blocks:
@@ -36,7 +36,7 @@ def gather(document: Document, severity: Severity = "note") -> Document:
 
 
 def _sets(
-    document: Document, variants: dict[tuple[str | None, int], dict[_Key, Block]]
+    document: Document, variants: dict[tuple[str | None, int], dict[_Key | None, Block]]
 ) -> tuple[BasisSet, ...]:
     heads: dict[str | None, BasisSet] = {}
     for members in document.sets:

@@ -1,14 +1,16 @@
 """A list of elements written in numbers alone: which line heads an element, which a shell."""
 
+import re
 from collections.abc import Iterator
-
-from lark import Token
 
 from overlapse.grammar.building import Build, integer
 from overlapse.grammar.numbers import NUMBER, looks_numeric
 
 # An element's number from here on announces a core potential; the atomic number is its remainder.
 WITH_POTENTIAL = 200
+
+# A row that nobody could take for a heading, for its exponent has a point.
+_ROW = re.compile(r"[-+]?(?:[0-9]+\.[0-9]*|\.[0-9]+)(?:[EeDd][-+]?[0-9]+)?\s")
 
 
 class Lines:
@@ -17,32 +19,49 @@ class Lines:
     Two whole numbers may be a heading or a row, so it keeps count of what is still to come.
     """
 
-    def __init__(self, bodies: list[str]) -> None:
-        self.bodies = bodies
+    def __init__(self, build: Build) -> None:
+        self.build = build
+        self.bodies = build.bodies
+        self.headings: dict[str, int] = {}  # of sound shells, with their number of rows
         self.inside = False  # a list has begun and has not ended
         self.ended = False  # some list has ended: what follows is most likely no basis
         self.rows = self.shells = 0  # announced and still to come
         self.last = ""
 
-    def tokens(self) -> Iterator[Token]:
+    def lines(self) -> Iterator[tuple[str, int, int]]:
+        """Kind, first line and past the last line of each heading and of each run of rows."""
         first: int | None = None
-        end = 0
-        for index, body in enumerate(self.bodies):
-            if not body or (kind := self.kind(body, index)) is None:
+        index = end = 0
+        while index < len(self.bodies):
+            body = self.bodies[index]
+            index += 1
+            if not body or (kind := self.kind(body, index - 1)) is None:
                 continue
             if kind != "ROWS":
                 if first is not None:
-                    yield Token("ROWS", "", line=first, end_line=end)
+                    yield "ROWS", first, end
                     first = None
-                yield Token(kind, body, line=index, end_line=index + 1)
+                yield kind, index - 1, index
             elif first is None:
-                first = index
-            end, self.last = index + 1, kind
+                first = index - 1
+            end, self.last = index, kind
+            if kind == "SHELL" and self.are_rows(index, index + self.rows):
+                first, end = index, index + self.rows
+                index, self.rows, self.last = end, 0, "ROWS"
         if first is not None:
-            yield Token("ROWS", "", line=first, end_line=end)
+            yield "ROWS", first, end
+
+    def are_rows(self, first: int, last: int) -> bool:
+        """Whether lines are plain rows, as many as announced, so that none needs a closer look."""
+        widths = self.build.widths[first:last]
+        count = widths.count(2) + widths.count(3)
+        return 0 < count == last - first and all(map(_ROW.match, self.bodies[first:last]))
 
     def kind(self, body: str, index: int) -> str | None:
         """The token that a line is, or None for a line outside any list."""
+        if self.inside and (count := self.headings.get(body)) is not None:
+            self.shells, self.rows = self.shells - 1, count
+            return "SHELL"
         words = body.split()
         if self.inside and "." in words[0] and len(words) < 4 and self.last != "NAME":
             return self.row(words, body)
@@ -56,6 +75,8 @@ class Lines:
         if _is_shell(words) if self.inside else self.is_lost_shell(words, index):
             self.inside, self.shells = True, self.shells - 1
             self.rows = 0 if words[0] in ("1", "2") else integer(words[2]) or 0
+            if words[0] == "0" and _is_shell(words, strict=True):
+                self.headings[body] = self.rows
             return "SHELL"
         if not self.inside:
             return None

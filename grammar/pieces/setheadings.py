@@ -8,18 +8,26 @@ import re
 from functools import lru_cache
 from typing import NamedTuple
 
-from overlapse.grammar.model import LETTERS
+from overlapse.grammar.model import LETTERS, Grid
 
 _WHOLE = re.compile(r"\d{1,15}(?:[ \t]+\d{1,15}){4,}")
 
 
+class Part(NamedTuple):
+    """What a set has of one l: the number of contractions, and where its numbers stand."""
+
+    l: int
+    contractions: int
+    grid: Grid
+
+
 class Heading(NamedTuple):
-    """Each l with its contractions, the number of rows, and of words in a row.
+    """The parts of a set, the number of rows, and of words in a row.
 
     ``surplus``: how many numbers stand behind the last one that counts.
     """
 
-    parts: list[tuple[int, int]]
+    parts: list[Part]
     length: int
     width: int
     surplus: int
@@ -47,8 +55,13 @@ def made_of(whole: list[int]) -> Heading | None:
     counts = whole[4 : 5 + highest - lowest]
     if len(counts) <= highest - lowest or not any(counts):
         return None
-    parts = [(l, count) for l, count in enumerate(counts, lowest) if count]
-    return Heading(parts, whole[3], 1 + sum(counts), len(whole) - 4 - len(counts))
+    width = 1 + sum(counts)
+    parts = [
+        Part(l, count, Grid(0, width, 1 + sum(counts[:at]), width, 1))
+        for at, (l, count) in enumerate(enumerate(counts, lowest))
+        if count
+    ]
+    return Heading(parts, whole[3], width, len(whole) - 4 - len(counts))
 
 
 def slip_in(whole: list[int]) -> Slip | None:

@@ -1,6 +1,7 @@
 """Damaged and arbitrary texts never raise; the long run is in tests/bench/fuzz.py."""
 
 import random
+import re
 import sys
 from pathlib import Path
 
@@ -10,8 +11,13 @@ from hypothesis import strategies as st
 
 sys.path.insert(0, str(Path(__file__).parents[1] / "bench"))
 from fuzz import damaged, run_one, samples
+from lark import Token
 
+from overlapse.grammar.building import Build
 from overlapse.grammar.layouts import names
+from overlapse.grammar.source import Source
+
+GRAMMARS = Path(__file__).parents[2] / "grammar" / "layouts"
 
 # Words that readers look for, so that random texts reach deep into them.
 WORDS = (
@@ -28,6 +34,26 @@ WORDS = (
 def test_words_in_any_order(name: str, lines: list[list[str]]) -> None:
     text = "\n".join(" ".join(words) for words in lines)
     run_one(text.encode(), name)
+
+
+@pytest.mark.parametrize("name", names())
+def test_a_grammar_takes_tokens_in_any_order(name: str) -> None:
+    kinds = sorted(_declared(name))
+    dice = random.Random(7)
+    for _ in range(300):
+        build = Build(Source("x\n" * 12), name)
+        tokens = [
+            Token(dice.choice(kinds), "x", line=at, end_line=at + 1)
+            for at in range(dice.randint(0, 12))
+        ]
+        build.parse(tokens)
+
+
+def _declared(name: str) -> set[str]:
+    text = (GRAMMARS / f"{name.replace('-', '_')}.lark").read_text()
+    return {
+        word for line in re.findall(r"^%declare (.*)$", text, re.MULTILINE) for word in line.split()
+    }
 
 
 @settings(max_examples=200, deadline=None)

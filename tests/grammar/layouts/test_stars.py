@@ -122,6 +122,8 @@ BROKEN = {
                             ["form.repeat"]),
     "a channel is lost": ("HG 0\nHG-ECP ⟦2 60\nd-ul\n 1\n2 1.0 0.0\ns-d\n 1\n2 1.0 1.0\n",
                           ["form.count"]),
+    "a channel without rows": ("HG 0\nHG-ECP ⟦1 60\np-ul\n 1\n2 1.0 0.0\n⟦s-p\n",
+                               ["form.count", "form.count"]),
     "potential without numbers": ("HG 0\n⟦HG-ECP two 60\nd-ul\n 1\n2 1.0 0.0\n", ["form.syntax"]),
     "a term's number is lost": ("HG 0\nHG-ECP 0 2\ns-ul\n 1\n⟦2 1.0\n", ["form.count"]),
 }  # fmt: skip
