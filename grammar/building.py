@@ -43,7 +43,6 @@ from overlapse.grammar.numbers import (
     FORTRAN,
     Reading,
     has_only_characters,
-    is_plain,
     looks_numeric,
     read_number,
 )
@@ -873,7 +872,7 @@ class Build:
     def _plain_columns(run: Run, width: int) -> list[list[float]] | None:
         """The columns of rows of one width whose numbers are all sound; None where one is not."""
         words = [word for row in run.rows for word in row]
-        if not is_plain("".join(words)) or any(len(row) != width for row in run.rows):
+        if not has_only_characters("".join(words)) or any(len(row) != width for row in run.rows):
             return None
         with suppress(ValueError):
             values = [float(word.translate(FORTRAN)) for word in words]

@@ -12,7 +12,6 @@ NUMBER = re.compile(r"[+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[EeDd][+-]?[0-9]+)
 CHARACTERS = frozenset("0123456789+-.eEdD ")
 _DELETED = "".join(sorted(CHARACTERS | {"\t"})).encode()
 FORTRAN = str.maketrans("Dd", "Ee")
-_PLAIN = "".join(CHARACTERS).encode()
 
 _DASHES = "\u2212\u2010\u2011\u2012\u2013\u2014\ufe63\uff0d"
 _LOOK_ALIKES = str.maketrans(
@@ -53,14 +52,6 @@ def _value(number: str) -> float:
         return float(number)
     except ValueError:  # D is rare enough to try without looking for it
         return float(number.translate(FORTRAN))
-
-
-def is_plain(text: str) -> bool:
-    """Whether a text has no characters but those of numbers, and blanks between them.
-
-    What is plain to float() is then a number, but for a value beyond its range.
-    """
-    return not text.encode("ascii", "replace").translate(None, _PLAIN)
 
 
 def read_number(word: str) -> Reading:

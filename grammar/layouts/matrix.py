@@ -12,7 +12,7 @@ from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Remark
 from overlapse.grammar.numbers import looks_numeric
 from overlapse.grammar.pieces.cores import CHANNEL, core_lines, read_core
-from overlapse.grammar.pieces.matrices import WHOLE, Cutting, Lists, sizes_of
+from overlapse.grammar.pieces.matrices import WHOLE, Cutting, Lists, cut_by_lines, sizes_of
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, say_shared_names, split_shared, title_of
 
@@ -225,6 +225,13 @@ class _Reader:
                 remedy="restore the lists, or take the heading out",
             )
         entries = lists.entries() if said else None
+        if entries and [piece.data for piece in pieces] == ["lists", "numbers"]:
+            token = pieces[1].children[0]
+            assert isinstance(token, Token)
+            if cut_by_lines(
+                self.build, block, entries, range(index_of(token), token.end_line or 0)
+            ):
+                return
         run = self.numbers(block, pieces, sum(sizes_of(entries or [])))
         if entries:
             Cutting(lists, entries, run).cut()

@@ -16,7 +16,7 @@ import numpy as np
 
 from overlapse.grammar.building import FunctionType
 from overlapse.grammar.model import Cells, Channel, Floats, Grid, Shell, Span
-from overlapse.grammar.numbers import FORTRAN, is_plain
+from overlapse.grammar.numbers import FORTRAN, has_only_characters
 from overlapse.grammar.source import Source
 
 HIGHEST = 20  # angular momentum; no basis comes near
@@ -149,7 +149,7 @@ def _values(lists: list[list[Any]], counts: list[int]) -> Floats | None:
 def _unquoted(words: list[str]) -> list[float]:
     text = " ".join(words)
     found = text.translate(FORTRAN).split()
-    if not (is_plain(text) and text.count(" ") == len(words) - 1 == len(found) - 1):
+    if not (has_only_characters(text) and text.count(" ") == len(words) - 1 == len(found) - 1):
         raise ValueError("some string is not one plain number")
     return list(map(float, found))
 

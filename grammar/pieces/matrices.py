@@ -147,6 +147,26 @@ class Lists:
         )
 
 
+def cut_by_lines(build: Build, block: BlockDraft, entries: list[Entry], lines: range) -> bool:
+    """Hand shells to the build whose exponents and matrices all begin with lines, if they do.
+
+    ``lines`` (0-based) hold all their numbers, and no others.
+    """
+    above = list(accumulate(build.widths[lines.start : lines.stop], initial=0))
+    bounds = list(accumulate(sizes_of(entries), initial=0))
+    ends = [bisect_left(above, bound) for bound in bounds]
+    if above[-1] != bounds[-1] or [above[end] for end in ends] != bounds:
+        return False
+    start = build.take(build.bodies[lines.start : lines.stop], above[-1])
+    for entry, bound, end in zip(entries, bounds[::2], ends[2::2], strict=False):
+        l, count, columns, _, _ = entry
+        # Blank lines have as many numbers above them as the line behind them.
+        first, last = lines.start + bisect_right(above, bound) - 1, lines.start + end
+        shape, grid = (count, columns), _grid(count, columns)
+        build.even_shell(block, (l,), first, first, last, start + bound, shape, grid)
+    return True
+
+
 @lru_cache(256)
 def _grid(exponents: int, columns: int) -> Grid:
     """Places of a list of exponents and the matrix behind it."""
@@ -169,9 +189,7 @@ class Cutting:
         """Hand the shells to the build, or say what is wrong with them."""
         bounds = list(accumulate(sizes_of(self.entries), initial=0))
         fits = bounds[-1] == self.above[-1]
-        if fits and self._cut_by_lines(bounds):
-            return
-        paragraphs = self._paragraphs()
+        paragraphs = [] if fits and set(self.above).issuperset(bounds) else self._paragraphs()
         if not self.run.rows:
             self._say_line(self.lists.run.lines[-1], "no numbers follow these lists", 0, bounds[-1])
         elif len(paragraphs) == 2 * len(self.entries):
@@ -184,18 +202,6 @@ class Cutting:
                 self._add(entry, first, second)
         else:
             self._by_lines(bounds)
-
-    def _cut_by_lines(self, bounds: list[int]) -> bool:
-        """Hand over shells whose exponents and matrices all begin with lines, if they do."""
-        rows = [bisect_left(self.above, bound) for bound in bounds]
-        if [self.above[row] for row in rows] != bounds:
-            return False
-        for entry, first, last in zip(self.entries, rows[::2], rows[2::2], strict=False):
-            l, count, columns, _, _ = entry
-            run = self._rows(first, last)
-            shape = count, columns
-            self.build.matrix(self.block, l, run.lines[0], run, shape, _grid(count, columns))
-        return True
 
     def _paragraphs(self) -> list[range]:
         """Rows that follow one another without a blank line between them."""
