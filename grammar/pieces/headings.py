@@ -29,6 +29,8 @@ class Heading(NamedTuple):
 
 def whole(body: str) -> str | None:
     """Token of a line of bare whole numbers: HEAD for two (and a 0), COUNT for one, else None."""
+    if "." in body and body[: body.index(".")].isalnum():
+        return None  # nearly all numbers of tables have a point
     match = _WHOLE.fullmatch(body)
     if match is None:
         return None

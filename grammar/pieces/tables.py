@@ -10,6 +10,7 @@ by the counts, before the tokens go to the grammar.
 
 import re
 from dataclasses import dataclass, field
+from functools import lru_cache
 from itertools import accumulate, pairwise
 from typing import Literal
 
@@ -54,7 +55,6 @@ class Tables:
     lonely: bool = False
     abutting: list[tuple[int, int, str]] = field(default_factory=list)
     stated: dict[int, int] = field(default_factory=dict)
-    _runs: dict[tuple[int, int], tuple[Run, int]] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
         # The l that comments such as "p-type functions" speak of, by their 0-based line.
@@ -65,21 +65,12 @@ class Tables:
     # ---- which numeric lines are headings
 
     def run(self, token: Token | None) -> Run:
-        """As `Build.rows`, split once only."""
-        return self._counted(token)[0]
+        """The words in the lines of a token."""
+        return self.build.rows(token)
 
     def size(self, token: Token | None) -> int:
         """How many numbers stand in the lines of a token."""
-        return self._counted(token)[1]
-
-    def _counted(self, token: Token | None) -> tuple[Run, int]:
-        if token is None:
-            return Run([], []), 0
-        key = (token.line or 0, token.end_line or 0)
-        if key not in self._runs:
-            run = self.build.rows(token)
-            self._runs[key] = run, sum(map(len, run.rows))
-        return self._runs[key]
+        return 0 if token is None else sum(self.build.widths[token.line or 0 : token.end_line])
 
     def joined(self, tokens: list[Token]) -> list[Token]:
         """The tokens, with whole-number lines inside tables made part of their rows.
@@ -192,11 +183,29 @@ class Tables:
         """Add the table headed by ``token`` to a block, or say what is wrong with it."""
         heading = heading_of(token)
         self._check_spelling(block, token)
-        run, size = self._counted(rows)
-        if not size:
+        size = self.size(rows)
+        if rows is None or not size:
             if heading.primitives:
                 self._say_empty(block, l, token, heading)
-            return
+        elif size == heading.numbers and heading.contractions:
+            self._add_whole(block, l, token, rows)
+        else:
+            self._add_odd(block, l, token, self.run(rows), size)
+
+    def _add_whole(self, block: BlockDraft, l: int, token: Token, rows: Token) -> None:
+        """A table of just the numbers that its heading announces."""
+        heading, build = heading_of(token), self.build
+        way = self.way or self._way(heading, self.run(rows))
+        first, last = index_of(rows), rows.end_line or 0
+        while not build.bodies[last - 1]:
+            last -= 1
+        start = build.take(build.bodies[first:last], heading.numbers)
+        shape, grid = heading[:2], _grid(way, *heading[:2])
+        build.even_shell(block, (l,), index_of(token), first, last, start, shape, grid)
+
+    def _add_odd(self, block: BlockDraft, l: int, token: Token, run: Run, size: int) -> None:
+        """A table whose heading announces another number than ``size``, or no contractions."""
+        heading = heading_of(token)
         if size < heading.numbers:
             run = self._parted(run)
             size = sum(map(len, run.rows))
@@ -204,9 +213,7 @@ class Tables:
         if self._is_uncontracted(heading, run, size):
             self._add_uncontracted(block, l, index_of(token), run, count, size // count)
         elif size == heading.numbers and columns:
-            by_rows = (self.way or self._way(heading, run)) == "rows"
-            width = columns + 1
-            grid = Grid(0, width, 1, width, 1) if by_rows else Grid(0, 1, count, columns, 1)
+            grid = _grid(self.way or self._way(heading, run), count, columns)
             self.build.matrix(block, l, index_of(token), run, (count, columns), grid)
         else:
             self._miscounted(block, l, token, heading, run)
@@ -327,6 +334,13 @@ class Tables:
             return
         block.complete = False
         self.build.check_words(block, table.name, run)
+
+
+@lru_cache(256)
+def _grid(way: Way, count: int, columns: int) -> Grid:
+    """Places of so many exponents and columns of coefficients."""
+    width = columns + 1
+    return Grid(0, width, 1, width, 1) if way == "rows" else Grid(0, 1, count, columns, 1)
 
 
 def _likeness(words: list[str]) -> tuple[bool, bool, bool]:
