@@ -174,6 +174,7 @@ class Build:
         self.blocks: list[BlockDraft] = []
         self.bodies = self._without_comments() if windows is None else self._within(windows)
         self.split: Callable[[str], list[str]] = str.split  # a row into its words
+        self.separators = ""  # signs that part numbers as blanks do
         self.leading = ""  # signs that make a line a comment where they lead it
         self._pieces: list[str] = []  # of text, whose words are the numbers of the shells
         self._count = 0  # of these numbers
@@ -908,12 +909,14 @@ class Build:
     def _convert(self) -> Floats:
         """All numbers of all shells as one read-only array; NaN where one cannot be read."""
         text = " ".join(self._pieces)
+        for sign in self.separators:
+            text = text.replace(sign, " ")
         if "D" in text or "d" in text:
             text = text.translate(FORTRAN)
         values = np.array([np.nan])
         if has_only_characters(text):
             with suppress(ValueError):  # a slip among the numbers; found below
-                values = np.array(list(map(float, text.split())))
+                values = np.fromiter(map(float, text.split()), np.float64)
         if not np.isfinite(values).all():
             values = self._convert_one_by_one()
         self._has_holes = bool(np.isnan(values).any())

@@ -81,7 +81,7 @@ class _Reader:
 
     def __init__(self, source: Source) -> None:
         self.build = Build(source, "commas", "!", FIELD)
-        self.build.split = as_numbers
+        self.build.split, self.build.separators = as_numbers, ",;"
         self.statements = Statements(self.build)
         self.cuts: dict[tuple[int, tuple[Column, ...]], list[Cut]] = {}
         self.section = ""
@@ -175,15 +175,22 @@ class _Reader:
     def shells(self, node: Node) -> None:
         token, build = node.children[0], self.build
         assert isinstance(token, Token)
-        for index, past, opening, columns, texts, total in self.statements.runs[index_of(token)]:
-            angular = build.angular_of(opening.letter, index)
+        block: BlockDraft | None = None
+        symbol = ""
+        run, counts = self.statements.runs[index_of(token)], self.statements.plain.counts
+        base = build.take(run.texts, run.total)
+        for first, last, opening, columns, start in run.shells:
+            angular = build.angular_of(opening.letter, first)
             assert angular is not None
-            block = self.block(index, 1, opening.symbol, angular)
-            start, count = build.take(texts, total), self.statements.plain.counts[index] - 2
-            if (found := self.cuts.get((count, columns))) is None:
-                found = self.cuts[count, columns] = list(cuts(count, columns))
+            if block is None or opening.symbol != symbol:
+                symbol = opening.symbol
+                block = self.block(first, 1, symbol, angular)
+            key = counts[first] - 2, columns
+            if (found := self.cuts.get(key)) is None:
+                found = self.cuts[key] = list(cuts(*key))
+            place = base + start
             for shape, grid, unit in found:
-                build.even_shell(block, angular, index, index, past, start, shape, grid, unit=unit)
+                build.even_shell(block, angular, first, first, last, place, shape, grid, unit=unit)
 
     def shell(self, node: Node) -> None:
         heading, *rest = node.children

@@ -29,6 +29,9 @@ class Opening(NamedTuple):
     last: int = 0
 
 
+_NOTHING = Opening("")
+
+
 class Cut(NamedTuple):
     """A shell of the model out of the fields of a statement and its contractions."""
 
@@ -37,9 +40,20 @@ class Cut(NamedTuple):
     unit: bool
 
 
-# First line and past the last (0-based), letter and symbol, contractions, fields as text and their
-# number; letters, symbols and ranges come as zeros.
-SoundShell = tuple[int, int, Opening, tuple[Column, ...], list[str], int]
+# First line and past the last (0-based), what the first statement opens with, the contractions, and
+# the place of its first field among those of its run.
+SoundShell = tuple[int, int, Opening, tuple[Column, ...], int]
+
+
+class SoundRun(NamedTuple):
+    """Shells that follow one another, and their fields as text: ``total`` numbers.
+
+    Letters, symbols and ranges come as zeros.
+    """
+
+    shells: list[SoundShell]
+    texts: list[str]
+    total: int
 
 
 class Plain:
@@ -48,55 +62,63 @@ class Plain:
     def __init__(self, build: Build) -> None:
         self.bodies = bodies = build.bodies
         self.openings: dict[str, Opening] = {}
-        self.fields = "\n".join(bodies).replace(",", " ").replace(";", " ").split("\n")
-        self.counts = list(map(len, map(str.split, self.fields)))
-        self.commas = list(map(str.count, bodies, repeat(",")))
+        lines = "\n".join(bodies).replace(",", " ").replace(";", " ").split("\n")
+        counts, commas = map(len, map(str.split, lines)), map(str.count, bodies, repeat(","))
+        # Fields of each line, 0 for one that is not whole.
+        self.counts = [n if n == m + 1 > 2 else 0 for n, m in zip(counts, commas, strict=True)]
         for sign in "={};":
             for index in build.source.lines_with(sign):
                 if sign != ";" or bodies[index].find(sign) != len(bodies[index]) - 1:
                     self.counts[index] = 0
 
-    def shell(self, index: int) -> SoundShell | None:
-        """The shell whose statements stand one below the other from a line on."""
-        opening, end = self.opening(index)
-        if opening.letter in ("", "c") or not _EXPONENT.match(self.bodies[index], end):
-            return None
-        texts, columns = ["0 0", self.fields[index][end:]], []  # type: list[str], list[Column]
-        count, total, past = self.counts[index] - 2, self.counts[index], index + 1
-        while past < len(self.bodies) and self.bodies[past][:1] in ("c", "C"):
-            column, end = self.opening(past)
-            length = column.last - column.first
-            if not column.last <= count or not 0 < length == self.counts[past] - 2:
-                return None
-            columns.append((column.first, column.last, total + 2))
-            texts += ("0 0", self.fields[past][end:])
-            total += length + 2
-            past += 1
-        return index, past, opening, tuple(columns), texts, total
+    def run(self, index: int, inside: bool) -> SoundRun | None:
+        """The sound shells from a line on; ``inside``: a brace may close them."""
+        bodies, counts, end = self.bodies, self.counts, len(self.bodies)
+        shells: list[SoundShell] = []
+        texts: list[str] = []
+        opening, columns = _NOTHING, ()  # type: Opening, tuple[Column, ...]
+        first = total = start = mark = 0
+        past = -1  # the line below the last statement of the shell at hand
+        while index < end and (counts[index] or not bodies[index]):
+            if not (count := counts[index]):
+                index += 1
+                continue
+            body = bodies[index]
+            comma = body.find(",", body.find(",") + 1)
+            said = self.openings.get(body[:comma]) or self.opening(body[:comma])
+            if said.symbol:
+                if not _EXPONENT.match(body, comma + 1):
+                    break
+                if opening.symbol:
+                    shells.append((first, past, opening, columns, start))
+                opening, columns = said, ()
+                first, start, mark = index, total, len(texts)
+            else:
+                length = said.last - said.first
+                if index != past or not 0 < length == count - 2 or said.last > counts[first] - 2:
+                    break
+                columns += ((said.first, said.last, total - start + 2),)
+            texts += ("0 0", body[comma + 1 :])
+            total += count
+            index = past = index + 1
+        if opening.symbol and (index == end or (inside and bodies[index] == "}")):
+            shells.append((first, past, opening, columns, start))
+        elif opening.symbol:  # the basis does not end here, so what follows may belong to this one
+            del texts[mark:]
+            total = start
+        return SoundRun(shells, texts, total) if shells else None
 
-    def opening(self, index: int) -> tuple[Opening, int]:
-        """What a statement opens with, and where on its line that ends."""
-        if self.counts[index] != self.commas[index] + 1 or self.counts[index] < 3:
-            return _NOTHING, 0
-        body = self.bodies[index]
-        end = body.find(",", body.find(",") + 1)
-        text = body[:end]
-        if (known := self.openings.get(text)) is None:
-            known = self.openings[text] = _opening(text)
-        return known, end + 1
-
-
-_NOTHING = Opening("")
-
-
-def _opening(text: str) -> Opening:
-    name, symbol = (field.strip() for field in text.split(","))
-    if name.lower() in _LETTERS and symbol.isalpha() and len(symbol) < 4:
-        return Opening(name, symbol)
-    match = RANGE.fullmatch(symbol) if name.lower() == "c" else None
-    if match is None or not 0 < int(match[1]) <= int(match[2]):
-        return _NOTHING
-    return Opening("c", "", int(match[1]) - 1, int(match[2]))
+    def opening(self, text: str) -> Opening:
+        """What the first two fields of a statement say."""
+        name, symbol = (field.strip() for field in text.split(","))
+        match = RANGE.fullmatch(symbol) if name.lower() == "c" else None
+        said = _NOTHING
+        if name.lower() in _LETTERS and symbol.isalpha() and len(symbol) < 4:
+            said = Opening(name, symbol)
+        elif match is not None and 0 < int(match[1]) <= int(match[2]):
+            said = Opening("c", "", int(match[1]) - 1, int(match[2]))
+        self.openings[text] = said
+        return said
 
 
 def cuts(count: int, columns: tuple[Column, ...]) -> Iterator[Cut]:

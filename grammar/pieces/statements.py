@@ -8,7 +8,7 @@ from lark import Token
 
 from overlapse.grammar.building import Build, Run, index_of
 from overlapse.grammar.numbers import looks_numeric
-from overlapse.grammar.pieces.soundstatements import Plain, SoundShell
+from overlapse.grammar.pieces.soundstatements import Plain, SoundRun
 
 # A field is what stands between these signs; fields of a line are counted from 0.
 FIELD = r"[^\s,;{}=]+"
@@ -37,7 +37,7 @@ class Statements:
     def __init__(self, build: Build) -> None:
         self.bodies = bodies = build.bodies
         self.plain = Plain(build)
-        self.runs: dict[int, list[SoundShell]] = {}  # of sound shells, by their first line
+        self.runs: dict[int, SoundRun] = {}  # by their first line
         self.inside = False  # the braces of the basis
         self.foreign = False  # the braces of something else, such as a geometry
         self.counting = -2  # line of the last number that belongs to a core potential
@@ -48,29 +48,15 @@ class Statements:
     def tokens(self) -> Iterator[Token]:
         index = 0
         while index < len(self.bodies):
-            if run := self.run(index):
+            past, body = index + 1, self.bodies[index]
+            if body and not self.foreign and (run := self.plain.run(index, self.inside)):
                 self.runs[index] = run
-                past = run[-1][1]
+                past = run.shells[-1][1]
                 self.last = past - 1
                 yield Token("SHELLS", "", line=index, end_line=past)
-                index = past
-                continue
-            if self.bodies[index]:
-                yield from self.line(self.bodies[index], index)
-            index += 1
-
-    def run(self, index: int) -> list[SoundShell]:
-        """The run of sound shells that begins on a line."""
-        found: list[SoundShell] = []
-        end = 0 if self.foreign else len(self.bodies)
-        while index < end and (shell := self.plain.shell(index)) is not None:
-            found.append(shell)
-            index = shell[1]
-            while index < end and not self.bodies[index]:
-                index += 1
-        # Unless the basis ends here, what follows may belong to the last shell.
-        ends = index == end or (self.inside and self.bodies[index] == "}")
-        return found if ends else found[:-1]
+            elif body:
+                yield from self.line(body, index)
+            index = past
 
     def line(self, body: str, index: int) -> Iterator[Token]:
         before = 0
