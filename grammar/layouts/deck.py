@@ -2,17 +2,15 @@
 
 import re
 from collections.abc import Iterator
-from contextlib import suppress
-from math import isfinite
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of, integer, shorten
+from overlapse.grammar.building import BlockDraft, Build, Node, index_of, integer
 from overlapse.grammar.elements import replaced_by, subshells, symbol_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, letter_of
-from overlapse.grammar.numbers import plain
-from overlapse.grammar.pieces.charged import charged_lines, read_charged
+from overlapse.grammar.pieces.charged import charged_lines, check_potential, read_potential
+from overlapse.grammar.pieces.fives import FIVE, TYPES, Fives
 from overlapse.grammar.pieces.plainlines import WITH_POTENTIAL, Lines
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, is_general, segments
@@ -24,14 +22,6 @@ PICTURE = """\
 0 0 2 2.0 1.0
   4.0  0.6
   0.5  0.5"""
-
-# Shell types by their number, each with the electrons that it can hold.
-_TYPES = (("s", 2), ("sp", 8), ("p", 6), ("d", 10), ("f", 14), ("g", 18))
-_TYPE_LIST = "0 s, 1 sp, 2 p, 3 d, 4 f, 5 g"
-_FIVE = "0 and the shell type, the number of rows, the formal charge, the scale factor"
-_WHOLE = frozenset("0123456789")
-# Published scale factors lie near 1; far outside of this stands something else.
-_SCALES = (0.01, 100.0)
 
 # Neighbours in a pattern never match the same signs, else a long line would take for ever.
 _PLAIN = r"(?:\d+(?:\.\d*)?|\.\d+)"
@@ -70,8 +60,8 @@ class _Reader:
 
     def __init__(self, source: Source) -> None:
         self.build = Build(source, "deck")
+        self.fives = Fives(self.build)
         self.lists = 0  # that have ended
-        self.known: dict[str, tuple[str, str, float] | None] = {}  # headings, if plain
         self.numbers: dict[tuple[int, int], str] = {}  # of headings, by list and atomic number
 
     def document(self) -> Document:
@@ -148,7 +138,7 @@ class _Reader:
         announced = self.announced(heading, block)
         parts = [part for piece in pieces for part in self.parts(piece)]
         if not any(isinstance(part, Tree) and part.data == "potential" for part in parts):
-            self.check_potential(block, heading)
+            check_potential(self.build, block, heading)
         shells = [part for part in parts if isinstance(part, tuple)]
         first_of_next = self.lost_heading(block, announced, shells)
         sound, found = announced is not None and first_of_next is None, 0
@@ -158,10 +148,10 @@ class _Reader:
             if isinstance(part, tuple):
                 # Below a line that nobody understands the next element may have begun.
                 if sound or found != announced:
-                    self.shell(block, *part)
+                    self.fives.shell(block, *part)
                     found += 1
             elif part.data == "potential":
-                self.potential(block, heading, part)
+                read_potential(self.build, block, heading, part)
             elif (
                 len(part.children) > 1 or at + 1 < len(parts) or goes_on or part.data == "unheaded"
             ):
@@ -257,224 +247,11 @@ class _Reader:
         self.build.fault_line(
             "form.syntax",
             index_of(line),
-            f"{what} no shell heading, which has five numbers: {_FIVE}",
+            f"{what} no shell heading, which has five numbers: {FIVE}",
             element=block.symbol,
             expected="a shell heading such as `0 0 3 2.0 1.0`",
             remedy="write the heading of the shell, or take the line out: there are no comments",
         )
-
-    def shell(self, block: BlockDraft, index: int, first: int, last: int) -> None:
-        """A shell whose heading is line ``index``, its rows lines ``first`` up to ``last``."""
-        body = self.build.bodies[index]
-        if body not in self.known:
-            self.known[body] = _spelt(body.split())
-        if (spelt := self.known[body]) is not None and first < last:
-            letters, announced, scale = spelt
-            if self.build.sound_shell(block, letters, index, first, last, announced, scale=scale):
-                return
-        self.doubtful(block, index, self.build.rows_between(first, last))
-
-    def doubtful(self, block: BlockDraft, index: int, run: Run) -> None:
-        kind, shape, count, charge, scale = self.five(block, index)
-        if kind in (1.0, 2.0) and not run.rows:
-            self.built_in(block, index)
-            return
-        if kind != 0.0 or shape is None or not 0 <= shape < len(_TYPES):
-            self.unknown(block, index, kind, shape)
-            self.build.check_words(block, None, run)
-            return
-        letters, capacity = _TYPES[int(shape)]
-        if all(len(row) == len(letters) + 1 for row in run.rows):
-            self.check_charge(block, index, letters, capacity, charge or 0.0)
-        self.build.shell(
-            block,
-            letters,
-            index,
-            run,
-            announced=None if count is None else f"{count:.0f}",
-            announced_word=2,
-            scale=self.scale(block, index, scale),
-        )
-
-    def five(self, block: BlockDraft, index: int) -> list[float | None]:
-        """The five numbers of a shell heading; None for one that is lost or cannot be read."""
-        words = self.build.bodies[index].split()[:5]
-        if len(words) == 5 and _WHOLE.issuperset("".join(words[:3])):
-            with suppress(ValueError):  # a slip; found below
-                numbers = [*map(plain, words)]
-                if all(map(isfinite, numbers)):
-                    return [*numbers]
-        values = [self.build.number(w, index, k, block.symbol, None) for k, w in enumerate(words)]
-        if len(words) < 5:
-            self.build.fault_line(
-                "form.count",
-                index,
-                f"{len(words)} numbers in a shell heading; it has five: {_FIVE}",
-                element=block.symbol,
-                measured=len(words),
-                expected=5,
-                remedy="restore the missing number from the source",
-            )
-        for at, value in enumerate(values[:3]):
-            if value is not None and not value.is_integer():
-                self.not_whole(block, index, at, words[at])
-                values[at] = None
-        return values + [None] * (5 - len(values))
-
-    def not_whole(self, block: BlockDraft, index: int, ordinal: int, word: str) -> None:
-        self.build.fault_word(
-            "form.number",
-            index,
-            ordinal,
-            f"{shorten(word)!r} stands where a whole number belongs",
-            element=block.symbol,
-            measured=shorten(word),
-            remedy="write a whole number; perhaps a number before it was lost",
-        )
-
-    def unknown(
-        self, block: BlockDraft, index: int, kind: float | None, shape: float | None
-    ) -> None:
-        """A shell that cannot be read for what its first two numbers say, or do not say."""
-        words = self.build.bodies[index].split()
-        block.complete = False
-        block.end = max(block.end, index)
-        if kind is not None and kind != 0.0:
-            built_in = kind in (1.0, 2.0)
-            message = (
-                f"kind {words[0]} is a built-in shell, which has no rows, but rows follow"
-                if built_in
-                else f"{words[0]} is no kind of shell: 0 has rows, 1 and 2 are built in"
-            )
-            self.build.fault_word(
-                "form.syntax",
-                index,
-                0,
-                message,
-                element=block.symbol,
-                measured=words[0],
-                expected=0,
-                remedy="write 0 for a shell whose rows follow",
-            )
-        elif shape is not None and kind is not None:
-            self.build.fault_word(
-                "form.letter",
-                index,
-                1,
-                f"{words[1]} is no shell type: {_TYPE_LIST}",
-                element=block.symbol,
-                measured=words[1],
-                expected=_TYPE_LIST,
-                remedy="write the number of the shell's type",
-            )
-
-    def built_in(self, block: BlockDraft, index: int) -> None:
-        """A shell whose numbers are known to the program alone: said once for each element."""
-        if block.complete:
-            self.build.fault_line(
-                "form.syntax",
-                index,
-                f"this shell of {block.symbol} is built into the program that reads the list: its "
-                "numbers stand nowhere in the text, and it is not judged",
-                severity="note",
-                element=block.symbol,
-                remedy="write the shells out, with kind 0 and their rows, to have them judged",
-            )
-        block.complete = False
-        block.end = max(block.end, index)
-
-    def check_charge(
-        self, block: BlockDraft, index: int, letters: str, capacity: int, charge: float
-    ) -> None:
-        if not 0.0 <= charge <= capacity:
-            self.build.fault_word(
-                "form.number",
-                index,
-                3,
-                f"a formal charge of {charge:g} electrons; one {letters} shell holds 0 to "
-                f"{capacity}",
-                severity="warning",
-                element=block.symbol,
-                measured=charge,
-                expected=capacity,
-                remedy="mend the formal charge, or the shell type before it",
-            )
-
-    def scale(self, block: BlockDraft, index: int, value: float | None) -> float:
-        """The scale factor, or 1 where it is lost or senseless."""
-        if value is None or _SCALES[0] <= value <= _SCALES[1]:
-            return 1.0 if value is None else value
-        self.build.fault_word(
-            "form.number",
-            index,
-            4,
-            f"a scale factor of {value:g}: exponents are multiplied by its square",
-            element=block.symbol,
-            measured=value,
-            expected=1.0,
-            remedy="write 1.0 where the exponents stand for themselves",
-        )
-        return 1.0
-
-    # ---- core potentials
-
-    def check_potential(self, block: BlockDraft, heading: Token) -> None:
-        word = heading.split()[0]
-        if int(word) >= WITH_POTENTIAL:
-            block.complete = False
-            self.build.fault_word(
-                "form.syntax",
-                index_of(heading),
-                0,
-                f"{word} announces a core potential, but neither `INPUT` nor a name follows",
-                element=block.symbol,
-                measured=word,
-                expected=int(word) % 100,
-                remedy=f"write {int(word) % 100} for an all-electron set, or restore the potential",
-            )
-
-    def potential(self, block: BlockDraft, heading: Token, node: Node) -> None:
-        name, *rest = [piece for piece in node.children if isinstance(piece, Token)]
-        word = heading.split()[0]
-        if int(word) < WITH_POTENTIAL:
-            self.build.fault_word(
-                "form.syntax",
-                index_of(heading),
-                0,
-                f"{word} announces no core potential, but {str(name)!r} follows",
-                element=block.symbol,
-                measured=word,
-                expected=WITH_POTENTIAL + int(word) % 100,
-                remedy=f"write {WITH_POTENTIAL + int(word) % 100}",
-            )
-        if name.upper() == "INPUT":
-            read_charged(self.build, block, int(word) % 100, name, rest)
-            return
-        block.complete = False
-        self.build.fault_line(
-            "form.syntax",
-            index_of(name),
-            f"the core potential {str(name)!r} of {block.symbol} is built into the program that "
-            "reads the list: it is not judged, nor is the number of its electrons known"
-            if not rest
-            else f"numbers follow the name {str(name)!r}: only `INPUT` announces numbers",
-            severity="error" if rest else "note",
-            element=block.symbol,
-            expected="INPUT" if rest else None,
-            remedy="write the potential out below `INPUT` to have it judged",
-        )
-
-
-def _spelt(words: list[str]) -> tuple[str, str, float] | None:
-    """Letters, number of rows and scale factor of a plain shell heading."""
-    if len(words) != 5 or words[0] != "0" or not _WHOLE.issuperset(words[1] + words[2]):
-        return None
-    with suppress(ValueError):
-        shape, charge, scale = int(words[1]), plain(words[3]), plain(words[4])
-        if shape < len(_TYPES) and 0.0 <= charge <= _TYPES[shape][1]:
-            sensible = _SCALES[0] <= scale <= _SCALES[1]
-            return (_TYPES[shape][0], words[2], scale) if sensible else None
-    return None
 
 
 def _is_token(piece: Token | Node) -> bool:
@@ -516,7 +293,7 @@ def _block_lines(block: Block, losses: Losses) -> Iterator[str]:
     charges = _charges(block)
     for angular, rows in tables:
         shape = "".join(map(letter_of, angular))
-        number = next(at for at, (letters, _) in enumerate(_TYPES) if letters == shape)
+        number = next(at for at, (letters, _) in enumerate(TYPES) if letters == shape)
         charge = sum(charges[l].pop(0) for l in angular if charges.get(l))
         yield f"0 {number} {len(rows)} {charge}.0 1.0"
         yield from columns(rows, 2)

@@ -9,16 +9,68 @@ from dataclasses import replace
 
 from lark import Token
 
-from overlapse.grammar.building import BlockDraft, Build, Run, index_of, shorten
+from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of
 from overlapse.grammar.model import Block, Channel, Potential
 from overlapse.grammar.numbers import looks_numeric
 from overlapse.grammar.pieces.channels import ladder, rows_of
+from overlapse.grammar.pieces.plainlines import WITH_POTENTIAL
+from overlapse.grammar.pieces.slips import say_not_whole
 from overlapse.grammar.writing import Losses, columns
 
 _PARTS = ("local", "s", "p", "d", "f", "g")
 
 
-def read_charged(build: Build, block: BlockDraft, z: int, name: Token, rest: list[Token]) -> None:
+def check_potential(build: Build, block: BlockDraft, heading: Token) -> None:
+    """Whether an element without a potential announces one."""
+    word = heading.split()[0]
+    if int(word) >= WITH_POTENTIAL:
+        block.complete = False
+        build.fault_word(
+            "form.syntax",
+            index_of(heading),
+            0,
+            f"{word} announces a core potential, but neither `INPUT` nor a name follows",
+            element=block.symbol,
+            measured=word,
+            expected=int(word) % 100,
+            remedy=f"write {int(word) % 100} for an all-electron set, or restore the potential",
+        )
+
+
+def read_potential(build: Build, block: BlockDraft, heading: Token, node: Node) -> None:
+    """The potential of an element: written out below `INPUT`, or a name for a known one."""
+    name, *rest = [piece for piece in node.children if isinstance(piece, Token)]
+    word = heading.split()[0]
+    if int(word) < WITH_POTENTIAL:
+        build.fault_word(
+            "form.syntax",
+            index_of(heading),
+            0,
+            f"{word} announces no core potential, but {str(name)!r} follows",
+            element=block.symbol,
+            measured=word,
+            expected=WITH_POTENTIAL + int(word) % 100,
+            remedy=f"write {WITH_POTENTIAL + int(word) % 100}",
+        )
+    if name.upper() == "INPUT":
+        _read_charged(build, block, int(word) % 100, name, rest)
+        return
+    block.complete = False
+    build.fault_line(
+        "form.syntax",
+        index_of(name),
+        f"the core potential {str(name)!r} of {block.symbol} is built into the program that "
+        "reads the list: it is not judged, nor is the number of its electrons known"
+        if not rest
+        else f"numbers follow the name {str(name)!r}: only `INPUT` announces numbers",
+        severity="error" if rest else "note",
+        element=block.symbol,
+        expected="INPUT" if rest else None,
+        remedy="write the potential out below `INPUT` to have it judged",
+    )
+
+
+def _read_charged(build: Build, block: BlockDraft, z: int, name: Token, rest: list[Token]) -> None:
     """Give a block the potential whose line of charges, and whose rows, are in ``rest``."""
     line = rest[0] if rest and rest[0].type == "CHARGES" else None
     run = build.rows(rest[-1] if rest and rest[-1].type == "ROWS" else None)
@@ -85,15 +137,7 @@ def _whole(build: Build, block: BlockDraft, line: Token, at: int, word: str) -> 
     value = build.number(word, index_of(line), at, block.symbol, None)
     if value is None or (value >= 0.0 and value.is_integer()):
         return None if value is None else int(value)
-    build.fault_word(
-        "form.number",
-        index_of(line),
-        at,
-        f"{shorten(word)!r} stands where a whole number belongs",
-        element=block.symbol,
-        measured=shorten(word),
-        remedy="write a whole number; perhaps one before it was lost",
-    )
+    say_not_whole(build, block, index_of(line), at, word, "perhaps one before it was lost")
     return None
 
 

@@ -9,6 +9,8 @@ from overlapse.grammar.numbers import NUMBER, looks_numeric
 # An element's number from here on announces a core potential; the atomic number is its remainder.
 WITH_POTENTIAL = 200
 
+# An absurd number of rows is not looked at ahead.
+_MANY = 100
 # A row that nobody could take for a heading, for its exponent has a point.
 _ROW = re.compile(r"[-+]?(?:[0-9]+\.[0-9]*|\.[0-9]+)(?:[EeDd][-+]?[0-9]+)?\s")
 
@@ -53,9 +55,11 @@ class Lines:
 
     def are_rows(self, first: int, last: int) -> bool:
         """Whether lines are plain rows, as many as announced, so that none needs a closer look."""
+        if not 0 < last - first < _MANY:
+            return False
         widths = self.build.widths[first:last]
-        count = widths.count(2) + widths.count(3)
-        return 0 < count == last - first and all(map(_ROW.match, self.bodies[first:last]))
+        fitting = widths.count(2) + widths.count(3) == last - first
+        return fitting and all(map(_ROW.match, self.bodies[first:last]))
 
     def kind(self, body: str, index: int) -> str | None:
         """The token that a line is, or None for a line outside any list."""
