@@ -2,33 +2,17 @@
 
 import re
 from collections.abc import Iterator
-from itertools import pairwise
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import (
-    BlockDraft,
-    Build,
-    Node,
-    Run,
-    ShellDraft,
-    index_of,
-    integer,
-    shorten,
-)
-from overlapse.grammar.elements import number_of, symbol_of
+from overlapse.grammar.building import BlockDraft, Build, Node, index_of
 from overlapse.grammar.layout import Evidence, Layout, Written
-from overlapse.grammar.model import (
-    Block,
-    Document,
-    Grid,
-    Shell,
-    letter_of,
-)
-from overlapse.grammar.numbers import Reading, looks_numeric, read_number
+from overlapse.grammar.model import Block, Document, Shell, letter_of
+from overlapse.grammar.numbers import looks_numeric
+from overlapse.grammar.pieces.atoms import is_atom, open_atom
 from overlapse.grammar.pieces.centres import gather
-from overlapse.grammar.pieces.groups import is_atom, keep_groups, say_built_in, say_missing
-from overlapse.grammar.pieces.rownumbers import numbers_in_front
+from overlapse.grammar.pieces.groups import keep_groups, say_built_in, say_missing
+from overlapse.grammar.pieces.numbered import Numbered
 from overlapse.grammar.pieces.titled import Cores, titled_lines
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, is_general, segments, title_of
@@ -42,8 +26,6 @@ PICTURE = """\
 _DATA = re.compile(r"^ ?(\$DATA)[ \t]*$", re.MULTILINE | re.IGNORECASE)
 _ECP = re.compile(r"^ ?(\$ECP)[ \t]*\n[ \t]*\S+-ECP\b", re.MULTILINE | re.IGNORECASE)
 _CARD = re.compile(r"[A-Za-z]\w+(?:\s+\d+)?")
-_LETTERS = re.compile(r"[A-Za-z]+")
-_SCALES = (0.01, 100.0)
 
 
 def recognise(source: Source) -> Evidence | None:
@@ -61,10 +43,10 @@ class _Reader:
 
     def __init__(self, source: Source) -> None:
         self.build = Build(source, "datagroup", "!")
+        self.numbered = Numbered(self.build)
         self.group = ""
         self.atoms: list[BlockDraft] = []  # of all groups, in the order of the text
         self.empty: list[tuple[BlockDraft, Token]] = []  # atoms with neither shells nor card
-        self.known: dict[str, tuple[str, str, float] | None] = {}  # headings, if sound
         self.named: set[tuple[str, str]] = set()  # elements and their built-in sets
         self.cores = Cores(self.build, self.atoms)
 
@@ -82,7 +64,7 @@ class _Reader:
     # ---- which token a line is
 
     def classify(self, body: str, index: int) -> str:
-        if body in self.known and self.group == "$data":
+        if body in self.numbered.known and self.group == "$data":
             return "SHELL"
         words = body.split()
         if body[0] == "$":
@@ -98,7 +80,7 @@ class _Reader:
             and words[0].isalpha()
             and (len(words[0]) == 1 or words[0].upper() == "SP")
         ):
-            self.known[body] = _spelt(words)
+            self.numbered.note(body)
             return "SHELL"
         if _CARD.fullmatch(body) and (body.isupper() or any(c.isdigit() for c in body)):
             return "CARD"
@@ -153,68 +135,13 @@ class _Reader:
                 element=self.atoms[-1].symbol if self.atoms else None,
                 remedy="put a blank line above this one",
             )
-        block = self.headed(heading)
+        block = open_atom(self.build, heading)
         self.atoms.append(block)
         if not pieces:
             self.empty.append((block, heading))
         for piece in pieces:
             assert isinstance(piece, Tree)
             getattr(self, str(piece.data))(block, piece)
-
-    def headed(self, heading: Token) -> BlockDraft:
-        """The block of an atom, whose nuclear charge says which element it is."""
-        words, index = heading.split(), index_of(heading)
-        letters = _LETTERS.match(words[0])
-        named = number_of(letters[0]) if letters else None
-        values = [
-            self.build.number(word, index, at, words[0], None)
-            for at, word in enumerate(words[1:5], 1)
-        ]
-        # A nucleus without charge that carries functions has its atomic number with a minus.
-        charge = abs(values[0] or 0.0)
-        z = int(charge) if charge.is_integer() and 1 <= charge <= 118 else None
-        if len(words) < 5:
-            self.build.fault_line(
-                "form.count",
-                index,
-                f"{len(words)} words where an atom has five: name, nuclear charge, x, y, z",
-                element=words[0],
-                measured=len(words),
-                expected=5,
-                remedy="restore the missing number",
-            )
-        elif values[0] is not None:
-            self.check_charge(index, words, z, named)
-            named = z
-        number = z if named is None else named
-        block = BlockDraft(
-            words[0] if number is None else symbol_of(number),
-            number,
-            index,
-            str(index),
-            end=index,
-        )
-        self.build.blocks.append(block)
-        return block
-
-    def check_charge(self, index: int, words: list[str], z: int | None, named: int | None) -> None:
-        """Names are free (CA may be a carbon), but N is not oxygen."""
-        if z is not None and (named is None or symbol_of(named)[0] == symbol_of(z)[0]):
-            return
-        self.build.fault_word(
-            "form.element",
-            index,
-            1,
-            f"{words[1]} is no atomic number"
-            if z is None
-            else f"{words[1]} is the nuclear charge of {symbol_of(z)}, but the atom is called "
-            f"{words[0]}",
-            severity="error" if z is None else "warning",
-            element=words[0],
-            measured=words[1],
-            expected=named,
-            remedy="write the atomic number of the element that was meant",
-        )
 
     def check_empty(self) -> None:
         """Atoms without shells: a note if all are so, for then the basis stands elsewhere."""
@@ -238,98 +165,14 @@ class _Reader:
     def shells(self, block: BlockDraft, node: Node) -> None:
         token = node.children[0]
         assert isinstance(token, Token)
-        bodies = self.build.bodies
         for index, first, last in self.build.shells_in(token):
-            sound = self.known[bodies[index]]
-            if sound is not None and first == index + 1 and bodies[index - 1]:
-                letters, announced, scale = sound
-                if self.build.sound_shell(
-                    block, letters, index, first, last, announced, scale=scale, lead=1
-                ):
-                    continue
-            self.shell(block, index, self.build.rows_between(first, last))
+            self.numbered.shell(block, index, first, last)
 
     def bare(self, block: BlockDraft, node: Node) -> None:
         heading = node.children[0]
         assert isinstance(heading, Token)
-        self.shell(block, index_of(heading), self.build.rows(None))
-
-    def shell(self, block: BlockDraft, index: int, run: Run) -> None:
-        words = self.build.bodies[index].split()
-        self.check_blanks(block, [index, *run.lines])
-        announced = self.announced(block, words, index)
-        scale = self.scale(block, words, index)
-        letters = "sp" if words[0].lower() == "l" else words[0]
-        angular = self.build.angular_of(letters, index)
-        name = block.next_name("".join(map(letter_of, angular)) if angular else letters)
-        block.end = max(block.end, index, *run.lines[-1:])
-        if announced is not None or not run.rows:
-            self.build.check_count(block, name, announced, 1, index, run)
-        if not run.rows or angular is None:
-            block.complete = False
-            self.build.check_words(block, name, run)
-            return
-        lead = numbers_in_front(
-            self.build, block, name, run, 1 + len(angular), integer(announced or "")
-        )
-        if lead is None:
-            block.complete = False
-            self.build.check_words(block, name, run)
-            return
-        width = lead + 1 + len(angular)
-        shape, grid = (len(run.rows), len(angular)), Grid(lead, width, lead + 1, width, 1)
-        self.build.keep(block, ShellDraft(name, angular, index, run, 0, shape, grid, scale))
-
-    def announced(self, block: BlockDraft, words: list[str], index: int) -> str | None:
-        """The number of rows as spelled, or None with a fault."""
-        if len(words) > 1 and words[1].isascii() and words[1].isdigit():
-            return words[1]
-        count = read_number(words[1]) if len(words) > 1 else None
-        self.build.fault_word(
-            "form.number" if count else "form.count",
-            index,
-            1 if count else 0,
-            f"{shorten(words[1])!r} stands where the number of rows belongs"
-            if count
-            else f"the number of rows is missing after {words[0]!r}",
-            element=block.symbol,
-            measured=shorten(words[1]) if count else None,
-            expected=count.value if count else None,
-            remedy="write the number of rows that follow",
-        )
-        return None
-
-    def scale(self, block: BlockDraft, words: list[str], index: int) -> float:
-        if len(words) < 3:
-            return 1.0
-        value = self.build.number(words[2], index, 2, block.symbol, None)
-        if value is None or _SCALES[0] <= value <= _SCALES[1]:
-            return value or 1.0
-        self.build.fault_word(
-            "form.number",
-            index,
-            2,
-            f"a scale factor of {value:g}: exponents are multiplied by its square",
-            element=block.symbol,
-            measured=value,
-            expected=1.0,
-            remedy="write 1.0 where the exponents stand for themselves",
-        )
-        return 1.0
-
-    def check_blanks(self, block: BlockDraft, lines: list[int]) -> None:
-        """A blank line above or within a shell: it ends the atom."""
-        source = self.build.source.lines
-        gaps = [b for a, b in pairwise(lines) if b != a + 1]
-        for index in [lines[0], *gaps]:
-            if not source[index - 1].strip():
-                self.build.fault_line(
-                    "form.syntax",
-                    index,
-                    f"a blank line ends the atom {block.symbol}, but more of it follows here",
-                    element=block.symbol,
-                    remedy="take the blank line above out",
-                )
+        index = index_of(heading)
+        self.numbered.shell(block, index, index + 1, index + 1)
 
     def card(self, block: BlockDraft, node: Node) -> None:
         """A set that is built into the program: said once for each element."""
@@ -392,14 +235,6 @@ class _Reader:
                 say_missing(self.build, piece, "HG-ECP GEN   60   3")
             before = str(piece.data)
         self.check_end(node)
-
-
-def _spelt(words: list[str]) -> tuple[str, str, float] | None:
-    """Letters, number of rows and scale factor of a plain shell heading."""
-    scale = read_number(words[2]) if len(words) > 2 else Reading(1.0)
-    if len(words) < 2 or scale.slip or not _SCALES[0] <= (scale.value or 0.0) <= _SCALES[1]:
-        return None
-    return ("sp" if words[0].lower() == "l" else words[0]), words[1], scale.value or 1.0
 
 
 def write(document: Document) -> Written:

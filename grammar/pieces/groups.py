@@ -4,7 +4,7 @@ from lark import Token
 
 from overlapse.grammar.building import Build, Node, index_of
 from overlapse.grammar.model import Remark
-from overlapse.grammar.numbers import looks_numeric
+from overlapse.grammar.pieces.atoms import is_atom
 
 
 def keep_groups(build: Build) -> None:
@@ -51,12 +51,6 @@ def _preamble(build: Build, index: int) -> None:
     if present and following[0]:
         build.remarks.append(Remark(following[0], index + 2))
     bodies[index + 1 : index + 1 + present] = [""] * len(bodies[index + 1 : index + 1 + present])
-
-
-def is_atom(body: str) -> bool:
-    """Name, nuclear charge and three coordinates, of which one word may be lost or damaged."""
-    words = body.split()
-    return len(words) > 3 and words[0][0].isalpha() and sum(map(looks_numeric, words[1:5])) > 2
 
 
 def say_built_in(build: Build, line: Token, symbol: str, what: str) -> None:
