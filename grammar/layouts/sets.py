@@ -11,6 +11,7 @@ from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Fault, letter_of
 from overlapse.grammar.pieces.pseudopotentials import GAP, IDLE, potentials_in
 from overlapse.grammar.pieces.setheadings import Heading, heading_of, made_of, slip_in
+from overlapse.grammar.pieces.setlines import SYMBOL, SetLines
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, say_shared_names, split_shared, title_of
 
@@ -27,14 +28,12 @@ _SET = re.compile(
     + r"[ \t]*[-+.\d][^\n.#]*\.",
     re.MULTILINE,
 )  # fmt: skip
-_SYMBOL = re.compile(r"([A-Za-z]{1,3})_?\d*")
-_LIKE_SYMBOL = re.compile(r"[A-Z][A-Za-z]?\d*")
 _ELECTRONS = re.compile(r"-q\d+$")
 
 
 def recognise(source: Source) -> Evidence | None:
     for match in _SET.finditer(source.flat):
-        if number_of(match[1]) and _is_heading(match[2]):
+        if number_of(match[1]) and heading_of(match[2]) is not None:
             heading = match[0].strip().split("\n", 1)[0].split("#")[0].strip()
             return Evidence(75, f"`{heading}` above a set's heading `{match[2]}`")
     if found := potentials_in(source):
@@ -65,65 +64,16 @@ class _Reader:
 
     def __init__(self, source: Source) -> None:
         self.build = Build(source, "sets", "#")
-        self.width = 0  # of a row of the set whose heading was met last
         self.overfull = False  # whether a set of the element at hand has too many rows
         self.owners: dict[tuple[str, str], str] = {}
 
     def document(self) -> Document:
-        tokens = self.build.tokens(self.classify, self.numeric_heading, joined=True)
+        lines = SetLines(self.build.bodies)
+        tokens = self.build.tokens(lines.classify, lines.numeric_heading, joined=True)
         for piece in self.build.parse(tokens).children:
             if isinstance(piece, Tree):
                 getattr(self, str(piece.data))(piece)
         return self.build.document()
-
-    # ---- which token a line is
-
-    def classify(self, body: str, index: int) -> str:
-        words = body.split()
-        if body.lower() == "end":
-            return "END"
-        if not any(map(str.isalnum, body)):
-            return "RULED"
-        if self.is_element(words, index):
-            return "ELEMENT"
-        # A heading whose first number is misspelt does not begin like a number.
-        return "SHELL" if len(words) > 4 and _odd(words) < 2 else "TEXT"
-
-    def is_element(self, words: list[str], index: int) -> bool:
-        """Whether a line opens an element: its symbol says so, and what follows must fit."""
-        below, after = self.following(index)
-        counted = integer(below) is not None
-        if counted and _is_heading(after):
-            return True
-        if not _is_symbol(words[0]):
-            return _is_heading(below) and _LIKE_SYMBOL.fullmatch(words[0]) is not None
-        if counted or _is_heading(below):
-            return True
-        named = len(words) > 1 and words[1][0].isalpha() and not words[1].islower()
-        if below and _is_symbol(below.split()[0]):
-            return named and integer(after) is not None  # nothing follows but the next element
-        return _is_heading(after) or (named and below.lower() in ("", "end"))
-
-    def following(self, index: int) -> tuple[str, str]:
-        """The next two lines that are neither blank nor a comment, "" past the end."""
-        bodies = self.build.bodies
-        said = filter(None, map(bodies.__getitem__, range(index + 1, len(bodies))))
-        return next(said, ""), next(said, "")
-
-    def numeric_heading(self, body: str) -> str | None:
-        """COUNT for a lone whole number, SHELL for the heading of a set, None for a row."""
-        if "." in body:
-            return None
-        if (heading := heading_of(body)) is not None:
-            self.width = heading.width
-            return "SHELL"
-        words = body.split()
-        if len(words) == 1:
-            ruled = not any(map(str.isdigit, body))
-            return "COUNT" if integer(body) is not None else "RULED" if ruled else None
-        # A row may be written without any decimal point, and a heading may be misspelt.
-        is_row = len(words) < 4 or len(words) == self.width or _odd(words) > 1
-        return None if is_row else "SHELL"
 
     # ---- the tree
 
@@ -155,7 +105,7 @@ class _Reader:
 
     def headed(self, heading: Token) -> BlockDraft:
         words = heading.split()
-        match = _SYMBOL.fullmatch(words[0])
+        match = SYMBOL.fullmatch(words[0])
         symbol = match[1] if match else words[0]
         # Some files put the composition in parentheses before the names.
         names = [word for word in words[1:] if word[0] != "("] or words[1:]
@@ -365,20 +315,6 @@ def _is_empty(piece: Node) -> bool:
     """Whether a set is said to have no exponents and no contractions."""
     words = str(piece.children[0]).split()[3:]
     return piece.data == "bare" and all(integer(word) == 0 for word in words)
-
-
-def _is_symbol(word: str) -> bool:
-    match = _SYMBOL.fullmatch(word)
-    return match is not None and number_of(match[1]) is not None
-
-
-def _odd(words: list[str]) -> int:
-    """How many of the words are no whole numbers."""
-    return sum(integer(word) is None for word in words)
-
-
-def _is_heading(body: str) -> bool:
-    return heading_of(body) is not None
 
 
 def write(document: Document) -> Written:
