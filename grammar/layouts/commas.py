@@ -2,7 +2,6 @@
 
 import re
 from collections.abc import Iterator
-from typing import NamedTuple
 
 from lark import Token, Tree
 
@@ -15,7 +14,8 @@ from overlapse.grammar.building import (
 )
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, letter_of
-from overlapse.grammar.pieces.soundstatements import RANGE, Column, Cut, cuts
+from overlapse.grammar.pieces.contractions import contractions, has_fields
+from overlapse.grammar.pieces.soundstatements import Column, Cut, cuts
 from overlapse.grammar.pieces.statedcores import read_stated, stated_lines
 from overlapse.grammar.pieces.statements import (
     FIELD,
@@ -62,18 +62,6 @@ def recognise(source: Source) -> Evidence | None:
 
 def read(source: Source) -> Document:
     return _Reader(source).document()
-
-
-class _Column(NamedTuple):
-    """A contraction: which exponents it covers, and where its first coefficient stands.
-
-    ``first`` and ``last`` count from 0, ``last`` past the end; ``at`` is a place in the run.
-    """
-
-    first: int
-    last: int
-    at: int
-    statement: Token
 
 
 class _Reader:
@@ -185,7 +173,7 @@ class _Reader:
             if block is None or opening.symbol != symbol:
                 symbol = opening.symbol
                 block = self.block(first, 1, symbol, angular)
-            key = counts[first] - 2, columns
+            key = counts[first] - 2, tuple(columns)
             if (found := self.cuts.get(key)) is None:
                 found = self.cuts[key] = list(cuts(*key))
             place = base + start
@@ -204,7 +192,7 @@ class _Reader:
                 self.remark(piece)
         columns = [piece for piece in rest if isinstance(piece, Token)]
         count = len(fields) - 2
-        whole = all([self.has_fields(token, block) for token in (heading, *columns)])
+        whole = all([has_fields(self.build, block, token) for token in (heading, *columns)])
         run, places = run_of([heading, *columns], self.build.bodies)
         if count < 1:
             fault_field(
@@ -217,14 +205,18 @@ class _Reader:
                 measured=0,
                 remedy="restore the exponents, or take the statement out",
             )
-        found = self.columns(block, heading, columns, places[1:]) if count > 0 and whole else []
+        found = (
+            contractions(self.build, block, heading, columns, places[1:])
+            if count > 0 and whole
+            else []
+        )
         kept = angular is not None and whole and count > 0 and (found or not columns)
         block.complete = block.complete and bool(kept) and len(found) == len(columns)
         block.end = max(block.end, *run.lines)
         if angular is None or not kept:
             self.build.check_words(block, None, run)
         else:
-            ranges = tuple((column.first, column.last, column.at) for column in found)
+            ranges = [(column.first, column.last, column.at) for column in found]
             for shape, grid, unit in cuts(count, ranges):
                 self.build.matrix(block, angular[0], index_of(heading), run, shape, grid, unit=unit)
 
@@ -245,106 +237,6 @@ class _Reader:
             )
         self.last = known
         return known
-
-    def has_fields(self, token: Token, block: BlockDraft) -> bool:
-        """Whether a comma stands between any two fields, and a field between any two commas."""
-        parts = token.split(",")
-        whole, field = True, 0
-        if len(parts) == len(fields_of(token)):
-            return True
-        for part in parts:
-            words = part.split()
-            if len(words) == 1:
-                field += 1
-                continue
-            fault_field(
-                self.build,
-                token,
-                max(field - 1, 0) if not words else field + 1,
-                "form.syntax",
-                f"a comma is missing before {shorten(words[1])!r}"
-                if words
-                else "nothing stands between the comma behind this and the next",
-                element=block.symbol,
-                remedy="put the comma in" if words else "restore the number that was lost",
-            )
-            whole = whole and bool(words)
-            field += len(words)
-        return whole
-
-    def columns(
-        self, block: BlockDraft, heading: Token, tokens: list[Token], places: list[int]
-    ) -> list[_Column]:
-        """The contractions that fit their ranges, and these the exponents; faults for the rest."""
-        count = len(fields_of(heading)) - 2
-        found = [
-            _Column(*covered, place + 2, token)
-            for token, place in zip(tokens, places, strict=True)
-            if (covered := self.range(block, token)) is not None
-        ]
-        highest = max((column.last for column in found), default=0)
-        if highest > count and all(column.last != count for column in found):
-            fault_field(
-                self.build,
-                heading,
-                count + 1,
-                "form.count",
-                f"{count} exponents stand here, the contractions below cover {highest}",
-                element=block.symbol,
-                measured=count,
-                expected=highest,
-                remedy="an exponent was lost, or the ranges of the contractions are wrong",
-            )
-            return []
-        for column in found:
-            if column.last > count:
-                fault_field(
-                    self.build,
-                    column.statement,
-                    1,
-                    "form.count",
-                    f"the range goes up to exponent {column.last}, but the statement above has "
-                    f"{count}",
-                    element=block.symbol,
-                    measured=column.last,
-                    expected=count,
-                    remedy="mend the range: first and last exponent, with a point between them",
-                )
-        return [column for column in found if column.last <= count]
-
-    def range(self, block: BlockDraft, token: Token) -> tuple[int, int] | None:
-        """First exponent and the one past the last, from 0, if as many coefficients follow."""
-        word, *coefficients = fields_of(token)[1:] or [""]
-        match = RANGE.fullmatch(word)
-        first, last = (int(match[1]), int(match[2])) if match else (0, 0)
-        if not 0 < first <= last:
-            fault_field(
-                self.build,
-                token,
-                1 if word else 0,
-                "form.number",
-                f"{shorten(word)!r} is no range: first and last exponent, with a point between",
-                element=block.symbol,
-                measured=shorten(word),
-                expected=f"1.{len(coefficients) or 1}",
-                remedy="write the range, such as 1.3 for the first three exponents",
-            )
-            return None
-        if last - first + 1 == len(coefficients):
-            return first - 1, last
-        fault_field(
-            self.build,
-            token,
-            1,
-            "form.count",
-            f"the range {word} announces {last - first + 1} coefficients, {len(coefficients)} "
-            "follow",
-            element=block.symbol,
-            measured=len(coefficients),
-            expected=last - first + 1,
-            remedy="a coefficient was lost or added, or the range is wrong",
-        )
-        return None
 
     # ---- core potentials
 

@@ -1,7 +1,7 @@
 """Shells of statements with commas that are plainly sound: told by bulk checks, without tokens."""
 
 import re
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from itertools import repeat
 from typing import NamedTuple
 
@@ -42,7 +42,7 @@ class Cut(NamedTuple):
 
 # First line and past the last (0-based), what the first statement opens with, the contractions, and
 # the place of its first field among those of its run.
-SoundShell = tuple[int, int, Opening, tuple[Column, ...], int]
+SoundShell = tuple[int, int, Opening, list[Column], int]
 
 
 class SoundRun(NamedTuple):
@@ -76,7 +76,8 @@ class Plain:
         bodies, counts, end = self.bodies, self.counts, len(self.bodies)
         shells: list[SoundShell] = []
         texts: list[str] = []
-        opening, columns = _NOTHING, ()  # type: Opening, tuple[Column, ...]
+        opening = _NOTHING
+        columns: list[Column] = []
         first = total = start = mark = 0
         past = -1  # the line below the last statement of the shell at hand
         while index < end and (counts[index] or not bodies[index]):
@@ -91,13 +92,13 @@ class Plain:
                     break
                 if opening.symbol:
                     shells.append((first, past, opening, columns, start))
-                opening, columns = said, ()
+                opening, columns = said, []
                 first, start, mark = index, total, len(texts)
             else:
                 length = said.last - said.first
                 if index != past or not 0 < length == count - 2 or said.last > counts[first] - 2:
                     break
-                columns += ((said.first, said.last, total - start + 2),)
+                columns.append((said.first, said.last, total - start + 2))
             texts += ("0 0", body[comma + 1 :])
             total += count
             index = past = index + 1
@@ -121,7 +122,7 @@ class Plain:
         return said
 
 
-def cuts(count: int, columns: tuple[Column, ...]) -> Iterator[Cut]:
+def cuts(count: int, columns: Sequence[Column]) -> Iterator[Cut]:
     """Contractions over the same exponents, evenly spaced in the text, make one shell.
 
     Without any, each of the ``count`` exponents is a function of its own.
