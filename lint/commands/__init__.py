@@ -1,0 +1,36 @@
+"""Commands: one module each, named like the command it defines; found by presence."""
+
+from functools import cache
+from importlib import import_module
+from importlib.resources import files
+
+import click
+
+
+@cache
+def names() -> tuple[str, ...]:
+    """Names of all commands, in alphabetical order."""
+    entries = (entry.name for entry in files(__name__).iterdir())
+    return tuple(
+        sorted(
+            name.removesuffix(".py")
+            for name in entries
+            if name.endswith(".py") and name != "__init__.py"
+        )
+    )
+
+
+def command(name: str) -> click.Command:
+    """A command by its name; only its own module is imported."""
+    found: click.Command = getattr(import_module(f"{__name__}.{name}"), name)
+    return found
+
+
+class Commands(click.Group):
+    """All commands of the folder, each imported when it is asked for."""
+
+    def list_commands(self, ctx: click.Context) -> list[str]:
+        return list(names())
+
+    def get_command(self, ctx: click.Context, cmd_name: str) -> click.Command | None:
+        return command(cmd_name) if cmd_name in names() else None

@@ -1,0 +1,93 @@
+"""``overlapse describe``: say what a file contains and which label fits it."""
+
+import sys
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import click
+
+from overlapse.lint.common import CLEAN, FOUND, Unreadable, a_layout, output
+
+if TYPE_CHECKING:
+    from overlapse.lint.describe import Description
+
+
+def _some_elements(
+    context: click.Context, parameter: click.Parameter, value: tuple[str, ...]
+) -> tuple[int, ...]:
+    """Atomic numbers of the symbols given."""
+    from overlapse.grammar.elements import number_of
+
+    numbers = tuple(number_of(symbol) or 0 for symbol in value)
+    if 0 in numbers:
+        raise click.BadParameter(f"{value[numbers.index(0)]!r} is not the symbol of an element")
+    return numbers
+
+
+@click.command()
+@click.argument("path", type=click.Path(dir_okay=False, allow_dash=True, path_type=Path))
+@click.option(
+    "--element",
+    "elements",
+    multiple=True,
+    callback=_some_elements,
+    help="Only this element; may be given several times.",
+)
+@click.option("--report", type=click.Choice(["text", "json"]), default="text")
+@click.option("--out", type=click.Path(path_type=Path), help="Write the report to this file.")
+@click.option(
+    "--picture",
+    "drawing",
+    type=click.Path(path_type=Path),
+    help="Draw the exponents into this file: .svg, .png or .pdf (extra: report).",
+)
+@click.option("--layout", callback=a_layout, help="Read the file as this layout.")
+@click.option("--named", default="<stdin>", help="File name to report for standard input (-).")
+def describe(
+    path: Path,
+    elements: tuple[int, ...],
+    report: str,
+    out: Path | None,
+    drawing: Path | None,
+    layout: str | None,
+    named: str,
+) -> None:
+    """Say what a file, or standard input (-), contains, and which label fits it best.
+
+    Exit status: 0 described, 1 faults of form may have cost something, 2 wrong use, 3 the file
+    could not be read.
+    """
+    from overlapse.grammar.reading import read_bytes
+    from overlapse.lint import describe as facts
+    from overlapse.lint.tables import write_text
+
+    try:
+        data = sys.stdin.buffer.read() if path == Path("-") else path.read_bytes()
+    except OSError as problem:
+        raise Unreadable(f"{path}: {problem.strerror or problem}") from problem
+    name = named if path == Path("-") else str(path)
+    description = facts.describe(read_bytes(data, name, layout=layout), elements)
+    if lack := facts.emptiness(description):
+        raise click.UsageError(lack) if description.document.blocks else Unreadable(lack)
+    if drawing is not None:
+        _draw(description, drawing)
+    with output(out) as stream:
+        (facts.write_json if report == "json" else write_text)(description, stream)
+    sys.exit(FOUND if description.broken else CLEAN)
+
+
+def _draw(description: "Description", path: Path) -> None:
+    """Write the picture; without its library, or to a place that cannot be written, wrong use."""
+    from overlapse.lint.picture import KINDS, PictureError, picture
+
+    kind = path.suffix[1:].lower()
+    if kind not in KINDS:
+        raise click.UsageError(f"{path}: a picture's name ends in .{', .'.join(KINDS)}")
+    try:
+        drawn = picture(description, kind)
+        with click.open_file(str(path), "wb", atomic=True) as stream:
+            stream.write(drawn)
+    except PictureError as problem:
+        raise click.UsageError(str(problem)) from problem
+    except OSError as problem:
+        raise click.UsageError(f"{path}: {problem.strerror or problem}") from problem

@@ -1,0 +1,35 @@
+"""``overlapse recast``: write a file in another layout."""
+
+from pathlib import Path
+
+import click
+
+from overlapse.lint.common import Refused, a_layout, output
+
+
+@click.command()
+@click.argument("path", type=click.Path(exists=True, dir_okay=False, path_type=Path))
+@click.option("--layout", "target", callback=a_layout, required=True, help="Layout to write.")
+@click.option("--from-layout", "origin", callback=a_layout, help="Read the file as this layout.")
+@click.option("--out", type=click.Path(path_type=Path), help="Write to this file.")
+def recast(path: Path, target: str, origin: str | None, out: Path | None) -> None:
+    """Write a file in another layout, its numbers with the digits they have.
+
+    What the new layout cannot express is said on standard error.
+    """
+    from overlapse.grammar.layouts import layouts
+    from overlapse.grammar.reading import read
+
+    document = read(path, layout=origin)
+    broken = [fault for fault in document.faults if fault.severity == "error"]
+    if broken:
+        place = document.source.place(broken[0].span[0])
+        raise Refused(
+            f"{path}:{place.line}:{place.column}: {broken[0].message}; "
+            f"mend the file first ({len(broken)} such faults)",
+        )
+    written = layouts()[target].write(document)
+    with output(out) as stream:
+        stream.write(written.text)
+    for loss in written.losses:
+        click.echo(f"not expressed in {target}: {loss}", err=True)
