@@ -2,7 +2,8 @@
 
 Units: exponents in bohr**-2.  Coefficients are as written; they multiply normalised primitives
 unless a document says otherwise (`Document.raw_primitives`).  Everything here is frozen, is
-checked once when it is made, and holds read-only arrays.
+checked once when it is made, and holds read-only arrays.  Things that hold arrays are equal only
+to themselves: whether two of them say the same is a question of its own.
 """
 
 import re
@@ -140,7 +141,7 @@ class Function(NamedTuple):
     column: int
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class Shell:
     """Contracted functions that share one list of primitives.
 
@@ -280,7 +281,7 @@ def _exact(word: str, value: float) -> str:
     )
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class Channel:
     """One angular part of a core potential: the sum of c * r**(power-2) * exp(-exponent * r**2).
 
@@ -305,7 +306,7 @@ class Channel:
             raise ValueError("powers, exponents and coefficients must have one length")
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class Potential:
     """An effective core potential: how many electrons it replaces, and its channels."""
 
@@ -318,7 +319,7 @@ class Potential:
             raise ValueError("a core potential cannot replace fewer than no electrons")
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Block:
     """What one set says about one element.
 
@@ -378,7 +379,7 @@ class Block:
         return dict(sorted(counts.items()))
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class BasisSet:
     """Blocks that belong together: one name, each element once.
 
@@ -414,7 +415,7 @@ class Fault:
     remedy: str = ""
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Document:
     """A text and what it says.
 

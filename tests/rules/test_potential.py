@@ -167,3 +167,12 @@ def test_a_part_copied_from_another() -> None:
     potential = Potential(10, (_channel(2, True), _channel(0), copy))
     (finding,) = _judge("potential.channels", _block(11, potential))
     assert "the same terms in its s and p parts" in finding.message
+
+
+def test_an_element_twice_beside_its_like() -> None:
+    """Blocks are told apart by what they are, not by comparing their arrays."""
+    first = Shell((0,), [24.0, 1.2, 0.2], [[0.5], [1.0], [0.3]])
+    other = Shell((0,), [49.0, 24.0, 11.0], [[0.4], [0.2], [0.1]])
+    found = _judge("potential.missing", *(_block(z, None, (s,)) for z, s in
+                                          ((4, first), (3, first), (4, other))))  # fmt: skip
+    assert all(finding.rule == "potential.missing" for finding in found)
