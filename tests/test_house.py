@@ -1,6 +1,7 @@
 """The house itself: imports run one way, folders hold what they should, nothing is left out."""
 
 import ast
+import re
 import subprocess
 import sys
 import zipfile
@@ -83,3 +84,10 @@ def test_the_tables_of_the_readme_are_fresh() -> None:
 
     text = README.read_text("utf-8")
     assert rewritten(text) == text, "run python tests/bench/tables.py"
+
+
+def test_every_piece_is_in_the_table_of_its_folder() -> None:
+    folder = ROOT / "grammar" / "pieces"
+    told = set(re.findall(r"\w+", (folder / "__init__.py").read_text()))
+    for path in folder.glob("*.py"):
+        assert path.stem == "__init__" or path.stem in told, path.stem

@@ -9,6 +9,7 @@ from lark import Token, Tree
 from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of, integer
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Document, Shell, letter_of
+from overlapse.grammar.pieces.slips import say_remark, say_unheaded
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, split_shared
 
@@ -223,32 +224,13 @@ class _Reader:
         first = node.children[0]
         assert isinstance(first, Token)
         block.complete = False
-        what = (
-            f"{str(first)!r} stands where a shell heading belongs: a letter and the number of rows"
-            if first.type == "TEXT"
-            else "rows of numbers without a shell heading above them"
-        )
-        self.build.fault_line(
-            "form.syntax",
-            index_of(first),
-            what,
-            element=block.symbol,
-            expected="a shell heading such as `S 3  1`",
-            remedy="write the heading of the shell that these rows belong to",
-        )
+        say_unheaded(self.build, first, block.symbol, "S 3  1", "a letter and the number of rows")
 
     def remark(self, block: BlockDraft, node: Node) -> None:
-        line = node.children[0]
-        assert isinstance(line, Token)
+        first = node.children[0]
+        assert isinstance(first, Token)
         block.complete = False
-        self.build.fault_line(
-            "form.syntax",
-            index_of(line),
-            f"{str(line)!r} is no shell heading, no row of numbers and no `@END`",
-            element=block.symbol,
-            expected="a shell heading such as `S 3  1`, a row of numbers, or `@END`",
-            remedy="make it a comment with `!`, or mend the heading",
-        )
+        say_remark(self.build, first, block.symbol, "S 3  1", "@END", "!")
 
     def stray(self, node: Node) -> None:
         first = node.children[0]

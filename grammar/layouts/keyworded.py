@@ -19,6 +19,7 @@ from overlapse.grammar.building import (
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Channel, Document, Potential, Shell, letter_of
+from overlapse.grammar.pieces.slips import say_remark, say_unheaded
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, split_shared, terms
 
@@ -217,30 +218,22 @@ class _Reader:
         )
 
     def unheaded(self, node: Node) -> None:
-        rows = node.children[0]
-        assert isinstance(rows, Token)
+        first = node.children[0]
+        assert isinstance(first, Token)
         self.spoil()
-        self.build.fault_line(
-            "form.syntax",
-            index_of(rows),
-            "rows of numbers without a shell heading above them",
-            element=self.open.symbol if self.open else None,
-            expected="a shell heading such as `C    S`",
-            remedy="write the heading of the shell that these rows belong to",
+        say_unheaded(
+            self.build,
+            first,
+            self.open.symbol if self.open else None,
+            "C    S",
+            "an element and a letter",
         )
 
     def remark(self, node: Node) -> None:
-        line = node.children[0]
-        assert isinstance(line, Token)
+        first = node.children[0]
+        assert isinstance(first, Token)
         self.spoil()
-        self.build.fault_line(
-            "form.syntax",
-            index_of(line),
-            f"{str(line)!r} is no shell heading, no row of numbers and no `end`",
-            element=self.open.symbol if self.open else None,
-            expected="a shell heading such as `C    S`, a row of numbers, or `end`",
-            remedy="make it a comment with `#`, or mend the heading",
-        )
+        say_remark(self.build, first, self.open.symbol if self.open else None, "C    S", "end", "#")
 
     def misplaced(self, node: Node) -> None:
         line = node.children[0]

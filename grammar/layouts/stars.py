@@ -9,6 +9,7 @@ from overlapse.grammar.building import BlockDraft, Build, FunctionType, Node, in
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Channel, Document, Potential, Shell, letter_of
+from overlapse.grammar.pieces.slips import say_remark, say_unheaded
 from overlapse.grammar.source import Source
 from overlapse.grammar.writing import Losses, columns, is_general, segments, terms
 
@@ -171,34 +172,19 @@ class _Reader:
         first = node.children[0]
         assert isinstance(first, Token)
         block.complete = False
-        if first.type == "TEXT":
-            message = (
-                f"{str(first)!r} stands where a shell heading belongs: "
-                "a letter, the number of rows and a scale factor, such as `S   3   1.00`"
-            )
-        else:
-            message = "rows of numbers without a shell heading above them"
-        self.build.fault_line(
-            "form.syntax",
-            index_of(first),
-            message,
-            element=block.symbol,
-            expected="a shell heading such as `S   3   1.00`",
-            remedy="write the heading of the shell that these rows belong to",
+        say_unheaded(
+            self.build,
+            first,
+            block.symbol,
+            "S   3   1.00",
+            "a letter, the number of rows and a scale factor, such as `S   3   1.00`",
         )
 
     def remark(self, block: BlockDraft, node: Node) -> None:
-        line = node.children[0]
-        assert isinstance(line, Token)
+        first = node.children[0]
+        assert isinstance(first, Token)
         block.complete = False
-        self.build.fault_line(
-            "form.syntax",
-            index_of(line),
-            f"{str(line)!r} is no shell heading, no row of numbers and no `****`",
-            element=block.symbol,
-            expected="`S   3   1.00`, a row of numbers, or `****`",
-            remedy="make it a comment with `!`, or mend the heading",
-        )
+        say_remark(self.build, first, block.symbol, "S   3   1.00", "****", "!")
 
     def potential(self, block: BlockDraft, node: Node) -> None:
         heading, *pieces = node.children

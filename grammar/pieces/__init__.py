@@ -4,13 +4,14 @@
 |---|---|
 | atomblocks, slashes: counted tables | headings, tables, tabled, miscounts, channels, gathering |
 | slashes alone | slashed |
-| sets | setheadings, pseudopotentials |
+| sets | setheadings, setlines, pseudopotentials |
 | matrix | matrices |
 | matrix, dollar: core potentials | cores |
-| deck | plainlines, charged |
-| commas | statements, statedcores |
-| datagroup | groups, rownumbers, titled |
-| gto-section | brackets |
+| deck | plainlines, fives, charged |
+| commas | statements, soundstatements, contractions, statedcores |
+| datagroup | groups, atoms, numbered, rownumbers, titled |
+| gto-section | brackets, atomlists, bracketwriting |
 | datagroup, gto-section, schema: a basis for each atom | centres |
-| schema | jsontext, leaves, apart, jsonwriting |
+| schema | jsontokens, jsontext, leaves, apart, atonce, centrewise, jsonwriting |
+| stars, at-blocks, keyworded, deck, datagroup: slips in headings | slips |
 """

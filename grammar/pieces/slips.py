@@ -1,6 +1,8 @@
 """Slips in headings that several layouts share."""
 
-from overlapse.grammar.building import BlockDraft, Build, shorten
+from lark import Token
+
+from overlapse.grammar.building import BlockDraft, Build, index_of, shorten
 
 # Published scale factors lie near 1; far outside of this stands something else.
 _LEAST, _MOST = 0.01, 100.0
@@ -39,4 +41,35 @@ def say_not_whole(
         element=block.symbol,
         measured=shorten(word),
         remedy=f"write a whole number; {perhaps}",
+    )
+
+
+def say_unheaded(build: Build, first: Token, element: str | None, heading: str, parts: str) -> None:
+    """Rows without a shell heading above them, or a line of text that should have been one.
+
+    heading: how one looks; parts: what it is made of, in words.
+    """
+    build.fault_line(
+        "form.syntax",
+        index_of(first),
+        f"{str(first)!r} stands where a shell heading belongs: {parts}"
+        if first.type == "TEXT"
+        else "rows of numbers without a shell heading above them",
+        element=element,
+        expected=f"a shell heading such as `{heading}`",
+        remedy="write the heading of the shell that these rows belong to",
+    )
+
+
+def say_remark(
+    build: Build, line: Token, element: str | None, heading: str, end: str, comment: str
+) -> None:
+    """A line of text among shells.  end: the word or sign that ends them; comment: the sign."""
+    build.fault_line(
+        "form.syntax",
+        index_of(line),
+        f"{str(line)!r} is no shell heading, no row of numbers and no `{end}`",
+        element=element,
+        expected=f"a shell heading such as `{heading}`, a row of numbers, or `{end}`",
+        remedy=f"make it a comment with `{comment}`, or mend the heading",
     )
