@@ -1,7 +1,7 @@
 """The audit: from paths to findings.  Nothing here prints."""
 
 import os
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Callable, Container, Iterable, Iterator, Sequence
 from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import NamedTuple
@@ -12,6 +12,7 @@ from overlapse.grammar.source import Source
 from overlapse.lint.settings import Settings, settings_for
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
+from overlapse.rules.probe import Probe
 from overlapse.rules.registry import rules
 
 LEVELS = ("note", "warning", "error")  # rising
@@ -130,11 +131,20 @@ def audit_text(
     return judge(document, label=label, settings=effective)
 
 
-def judge(document: Document, *, label: str | None = None, settings: Settings) -> FileAudit:
-    """Run all rules over a document."""
-    case = Case(document, label)
+def judge(
+    document: Document,
+    *,
+    label: str | None = None,
+    settings: Settings,
+    probes: Sequence[Probe] = (),
+    only: Container[str] | None = None,
+) -> FileAudit:
+    """Run all rules, or ``only`` those named, over a document and what was probed of it."""
+    case = Case(document, label, probes)
     findings: list[Finding] = []
     for name, rule in rules().items():
+        if only is not None and name not in only:
+            continue
         level = settings.severity.get(name)
         if level == "off":
             continue

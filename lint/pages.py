@@ -20,6 +20,8 @@ def page(rule: Rule) -> str:
         parts.append(f"Values: {values}")
     parts.append(f"Found in:\n\n{_indented(text.bad)}")
     parts.append(f"Not found in:\n\n{_indented(text.good)}")
+    if text.geometry:
+        parts.append(f"Both with the geometry:\n\n{_indented(text.geometry)}")
     return "\n\n".join(filter(None, parts))
 
 

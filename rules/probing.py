@@ -1,0 +1,257 @@
+"""Measuring: from atoms with their blocks to what is known of their overlap matrix."""
+
+from collections import Counter
+from collections.abc import Sequence
+from typing import NamedTuple
+
+import numpy as np
+
+from overlapse.grammar.geometry import Atom
+from overlapse.grammar.model import Block, Floats
+from overlapse.rules.physics.integrals import kinetic, overlap
+from overlapse.rules.physics.onecentre import eigenvalues
+from overlapse.rules.physics.outlook import outlook
+from overlapse.rules.physics.placed import Functions, Ints, Placed, lay_out
+from overlapse.rules.physics.pruning import chosen, shells_to_drop
+from overlapse.rules.physics.spectrum import LADDER, Spectrum, lowest, spectrum
+from overlapse.rules.probe import NEAR, Dropped, Function, Left, Probe, Share, Small
+
+_BLAMED = 12  # eigenvalues whose combinations are looked into
+_TOLD = 12  # shares that are kept of each
+_LEAST = 0.005  # share that is worth telling
+
+
+class Site(NamedTuple):
+    """An atom of a geometry and the block that was chosen for it, from the file at ``path``.
+
+    fitting: the block is of a set for fitting, so that no field is solved in its functions.
+    """
+
+    atom: Atom
+    path: str
+    block: Block
+    spherical: bool = True
+    fitting: bool = False
+
+    @property
+    def placed(self) -> Placed:
+        return Placed(self.block, self.atom.position, self.spherical)
+
+
+class Wanted(NamedTuple):
+    """What to measure: removal threshold, tolerance of pruning, and whether it is atom by atom.
+
+    mesh: number of k points along each vector of a cell.  values: all eigenvalues are wanted.
+    """
+
+    threshold: float = 1e-6
+    tolerance: float = 1e-7
+    per_atom: bool = False
+    mesh: tuple[int, int, int] = (2, 2, 2)
+    values: bool = False
+
+
+def size(sites: Sequence[Site]) -> int:
+    """Number of basis functions, without making any."""
+    return sum(
+        (2 * l + 1 if site.spherical else (l + 1) * (l + 2) // 2) * count
+        for site in sites
+        for l, count in site.block.counts.items()
+    )
+
+
+def probe(
+    sites: Sequence[Site],
+    wanted: Wanted,
+    *,
+    geometry: str = "<geometry>",
+    frame: int = 1,
+    title: str = "",
+) -> Probe:
+    """Measure one molecule.
+
+    Raises `overlapse.rules.physics.placed.NotNormalisable` where a function has no norm.
+    """
+    placed = [site.placed for site in sites]
+    matrix = overlap(placed)
+    functions = lay_out(placed)
+    edges = (wanted.threshold / NEAR, wanted.threshold, wanted.threshold * NEAR)
+    found = spectrum(matrix, tuple(sorted({*LADDER, *edges}, reverse=True)))
+    drop, after = _pruned(matrix, functions, sites, wanted, found)
+    return Probe(
+        geometry,
+        frame,
+        title,
+        formula(sites),
+        len(sites),
+        _spherical(sites),
+        found._replace(below={step: found.below[step] for step in LADDER}),
+        wanted.threshold,
+        found.functions - found.below[wanted.threshold],
+        found.below[edges[2]] - found.below[edges[0]],
+        outlook(matrix, kinetic(placed) if found.smallest < LADDER[1] else None, functions),
+        wanted.tolerance,
+        blame(matrix, functions, sites, found, edges[2]),
+        drop,
+        after,
+        _counterpart(sites),
+        None,
+        any(site.fitting for site in sites),
+        tuple(dict.fromkeys(site.path for site in sites)),
+        tuple(eigenvalues(matrix).tolist()) if wanted.values else (),
+    )
+
+
+def _spherical(sites: Sequence[Site]) -> bool | None:
+    kinds = {site.spherical for site in sites if max(site.block.counts, default=0) > 1}
+    return None if len(kinds) > 1 else kinds.pop() if kinds else True
+
+
+def formula(sites: Sequence[Site]) -> str:
+    """Hill's order: carbon, hydrogen, the others by letter; ghosts apart."""
+    parts = []
+    for ghost in (False, True):
+        symbols = Counter(site.atom.symbol for site in sites if site.atom.ghost == ghost)
+        first = ("C", "H") if "C" in symbols else ()
+        order = sorted(symbols, key=lambda symbol: (*(symbol != f for f in first), symbol))
+        text = "".join(f"{s}{symbols[s] if symbols[s] > 1 else ''}" for s in order)
+        if text:
+            parts.append(f"ghosts {text}" if ghost else text)
+    return " and ".join(parts)
+
+
+def in_short(matrix: Floats) -> Left:
+    """Number of functions, smallest eigenvalue and condition number."""
+    found = spectrum(matrix, ())
+    return Left(found.functions, found.smallest, found.condition)
+
+
+def _counterpart(sites: Sequence[Site]) -> Left | None:
+    """The same with spherical functions, where some are Cartesian."""
+    if all(site.spherical or max(site.block.counts, default=0) < 2 for site in sites):
+        return None
+    return in_short(overlap([site.placed._replace(spherical=True) for site in sites]))
+
+
+# ---- who is to blame
+
+
+def blame(
+    matrix: Floats, functions: Functions, sites: Sequence[Site], found: Spectrum, least: float
+) -> tuple[Small, ...]:
+    """Shares of the functions in the combinations of the smallest eigenvalues.
+
+    A share is the squared component of the unit eigenvector, summed over a function's components.
+    Eigenvalues below ``least`` and below 1e-4 are looked into, the dozen smallest at most.
+    """
+    steps = {step: count for step, count in found.below.items() if step <= max(least, LADDER[0])}
+    limits = [step for step in sorted(steps) if steps[step]]
+    if not limits:
+        return ()
+    fitting = [step for step in limits if steps[step] <= _BLAMED]
+    values, vectors = lowest(matrix, fitting[-1] if fitting else limits[0])
+    order = np.argsort(values)[:_BLAMED]
+    groups = _groups(functions)
+    return tuple(_small(float(values[k]), vectors[:, k], groups, functions, sites) for k in order)
+
+
+def _groups(functions: Functions) -> Ints:
+    """Number of the contracted function of an atom that each basis function belongs to."""
+    keys = np.column_stack([functions.atom, functions.shell, functions.column])
+    new = np.any(np.diff(keys, axis=0) != 0, axis=1)
+    return np.concatenate([[0], np.cumsum(new)]).astype(np.intp)
+
+
+def _small(
+    value: float, vector: Floats, groups: Ints, functions: Functions, sites: Sequence[Site]
+) -> Small:
+    weights = np.bincount(groups, weights=np.abs(vector) ** 2)
+    firsts = np.flatnonzero(np.diff(groups, prepend=-1))
+    shares: list[Share] = []
+    kinds: dict[Function, float] = {}
+    for k in np.argsort(-weights, kind="stable"):
+        weight = float(weights[k])
+        at = int(firsts[k])
+        function = described(functions, at, sites)
+        kinds[function] = kinds.get(function, 0.0) + weight
+        if weight >= _LEAST and len(shares) < _TOLD:
+            shares.append(Share(weight, function, int(functions.atom[at]) + 1))
+    summed = sorted(kinds.items(), key=lambda item: -item[1])
+    told = [Share(weight, function) for function, weight in summed if weight >= _LEAST]
+    return Small(value, tuple(shares), tuple(told[:_TOLD] or [Share(summed[0][1], summed[0][0])]))
+
+
+def described(functions: Functions, at: int, sites: Sequence[Site]) -> Function:
+    """The contracted function that basis function number ``at`` belongs to."""
+    site = sites[int(functions.atom[at])]
+    index, column = int(functions.shell[at]), int(functions.column[at])
+    shell = site.block.shells[index]
+    name = site.block.names[index]
+    if shell.columns_per_l > 1:
+        name += f"/{column % shell.columns_per_l + 1}"
+    return Function(
+        site.path,
+        shell.line,
+        site.block.symbol,
+        site.block.names[index],
+        name,
+        column,
+        float(functions.exponent[at]),
+        _is_outermost(site.block, index, column),
+    )
+
+
+def _is_outermost(block: Block, index: int, column: int) -> bool:
+    shell = block.shells[index]
+    l = shell.angular[column // shell.columns_per_l]
+    own = shell.exponents[shell.coefficients[:, column] != 0.0]
+    loosest = min(float(f.exponents.min()) for _, f in block.functions_of(l) if f.exponents.size)
+    return own.size == 1 and float(own[0]) <= loosest
+
+
+# ---- what to drop
+
+
+def _pruned(
+    matrix: Floats,
+    functions: Functions,
+    sites: Sequence[Site],
+    wanted: Wanted,
+    found: Spectrum,
+) -> tuple[tuple[Dropped, ...], Left | None]:
+    """What the Cholesky choice takes away, and what it leaves.
+
+    A pivot is a diagonal element of a Schur complement, so it is never below the smallest
+    eigenvalue: above the tolerance nothing can go.
+    """
+    if found.smallest >= wanted.tolerance:
+        return (), None
+    if wanted.per_atom:
+        kept = np.zeros(len(matrix), dtype=bool)
+        kept[chosen(matrix, wanted.tolerance)] = True
+        gone = np.flatnonzero(~kept)
+    else:
+        parts = shells_to_drop(matrix, functions, [site.placed for site in sites], wanted.tolerance)
+        doomed = {(id(sites[atom].block), shell, column) for atom, shell, column in parts}
+        kept = np.array(
+            [
+                (id(sites[atom].block), shell, column) not in doomed
+                for atom, shell, column in zip(
+                    functions.atom.tolist(),
+                    functions.shell.tolist(),
+                    functions.column.tolist(),
+                    strict=True,
+                )
+            ]
+        )
+        gone = np.flatnonzero(~kept)
+    dropped = dict.fromkeys(
+        Dropped(
+            described(functions, int(at), sites),
+            int(functions.atom[at]) + 1 if wanted.per_atom else 0,
+        )
+        for at in gone
+    )
+    if not dropped or not kept.any():
+        return tuple(dropped), None
+    return tuple(dropped), in_short(matrix[np.ix_(kept, kept)])
