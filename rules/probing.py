@@ -7,13 +7,13 @@ from typing import NamedTuple
 import numpy as np
 
 from overlapse.grammar.geometry import Atom
-from overlapse.grammar.model import Block, Floats
+from overlapse.grammar.model import Block
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.onecentre import eigenvalues
 from overlapse.rules.physics.outlook import outlook
 from overlapse.rules.physics.placed import Functions, Ints, Placed, lay_out
-from overlapse.rules.physics.pruning import chosen, shells_to_drop
-from overlapse.rules.physics.spectrum import LADDER, Spectrum, lowest, spectrum
+from overlapse.rules.physics.pruning import shells_to_drop
+from overlapse.rules.physics.spectrum import LADDER, Matrix, Spectrum, lowest, spectrum
 from overlapse.rules.probe import NEAR, Dropped, Function, Left, Probe, Share, Small
 
 _BLAMED = 12  # eigenvalues whose combinations are looked into
@@ -120,7 +120,7 @@ def formula(sites: Sequence[Site]) -> str:
     return " and ".join(parts)
 
 
-def in_short(matrix: Floats) -> Left:
+def in_short(matrix: Matrix) -> Left:
     """Number of functions, smallest eigenvalue and condition number."""
     found = spectrum(matrix, ())
     return Left(found.functions, found.smallest, found.condition)
@@ -137,7 +137,7 @@ def _counterpart(sites: Sequence[Site]) -> Left | None:
 
 
 def blame(
-    matrix: Floats, functions: Functions, sites: Sequence[Site], found: Spectrum, least: float
+    matrix: Matrix, functions: Functions, sites: Sequence[Site], found: Spectrum, least: float
 ) -> tuple[Small, ...]:
     """Shares of the functions in the combinations of the smallest eigenvalues.
 
@@ -163,7 +163,7 @@ def _groups(functions: Functions) -> Ints:
 
 
 def _small(
-    value: float, vector: Floats, groups: Ints, functions: Functions, sites: Sequence[Site]
+    value: float, vector: Matrix, groups: Ints, functions: Functions, sites: Sequence[Site]
 ) -> Small:
     weights = np.bincount(groups, weights=np.abs(vector) ** 2)
     firsts = np.flatnonzero(np.diff(groups, prepend=-1))
@@ -172,7 +172,13 @@ def _small(
     for k in np.argsort(-weights, kind="stable"):
         weight = float(weights[k])
         at = int(firsts[k])
-        function = described(functions, at, sites)
+        site = sites[int(functions.atom[at])]
+        function = described(
+            site,
+            int(functions.shell[at]),
+            int(functions.column[at]),
+            float(functions.exponent[at]),
+        )
         kinds[function] = kinds.get(function, 0.0) + weight
         if weight >= _LEAST and len(shares) < _TOLD:
             shares.append(Share(weight, function, int(functions.atom[at]) + 1))
@@ -181,10 +187,8 @@ def _small(
     return Small(value, tuple(shares), tuple(told[:_TOLD] or [Share(summed[0][1], summed[0][0])]))
 
 
-def described(functions: Functions, at: int, sites: Sequence[Site]) -> Function:
-    """The contracted function that basis function number ``at`` belongs to."""
-    site = sites[int(functions.atom[at])]
-    index, column = int(functions.shell[at]), int(functions.column[at])
+def described(site: Site, index: int, column: int, exponent: float) -> Function:
+    """A contracted function of an atom: shell ``index`` of its block, and the column in it."""
     shell = site.block.shells[index]
     name = site.block.names[index]
     if shell.columns_per_l > 1:
@@ -196,7 +200,7 @@ def described(functions: Functions, at: int, sites: Sequence[Site]) -> Function:
         site.block.names[index],
         name,
         column,
-        float(functions.exponent[at]),
+        exponent,
         _is_outermost(site.block, index, column),
     )
 
@@ -213,7 +217,7 @@ def _is_outermost(block: Block, index: int, column: int) -> bool:
 
 
 def _pruned(
-    matrix: Floats,
+    matrix: Matrix,
     functions: Functions,
     sites: Sequence[Site],
     wanted: Wanted,
@@ -226,32 +230,18 @@ def _pruned(
     """
     if found.smallest >= wanted.tolerance:
         return (), None
-    if wanted.per_atom:
-        kept = np.zeros(len(matrix), dtype=bool)
-        kept[chosen(matrix, wanted.tolerance)] = True
-        gone = np.flatnonzero(~kept)
-    else:
-        parts = shells_to_drop(matrix, functions, [site.placed for site in sites], wanted.tolerance)
-        doomed = {(id(sites[atom].block), shell, column) for atom, shell, column in parts}
-        kept = np.array(
-            [
-                (id(sites[atom].block), shell, column) not in doomed
-                for atom, shell, column in zip(
-                    functions.atom.tolist(),
-                    functions.shell.tolist(),
-                    functions.column.tolist(),
-                    strict=True,
-                )
-            ]
-        )
-        gone = np.flatnonzero(~kept)
-    dropped = dict.fromkeys(
-        Dropped(
-            described(functions, int(at), sites),
-            int(functions.atom[at]) + 1 if wanted.per_atom else 0,
-        )
-        for at in gone
+    pruning = shells_to_drop(
+        matrix,
+        functions,
+        [site.placed for site in sites],
+        wanted.tolerance,
+        "atom" if wanted.per_atom else "element",
     )
-    if not dropped or not kept.any():
-        return tuple(dropped), None
-    return tuple(dropped), in_short(matrix[np.ix_(kept, kept)])
+    if not pruning.drops:
+        return (), None
+    left = Left(len(pruning.kept), pruning.smallest, pruning.condition)
+    dropped = []
+    for drop in pruning.drops:
+        function = described(sites[drop.like], drop.shell, drop.column, drop.exponent)
+        dropped.append(Dropped(function, drop.like + 1 if wanted.per_atom else 0))
+    return tuple(dropped), left

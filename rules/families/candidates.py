@@ -9,7 +9,8 @@ from overlapse.grammar.designation import Designation, parse_label
 from overlapse.grammar.names import usual_names
 from overlapse.rules.families.counted import table
 
-_TABLES = ("karlsruhe", "jensen", "older", "atomic", "effective", "consistent", "dyall", "fitting")
+_TABLES = ("karlsruhe", "jensen", "older", "atomic", "effective", "consistent", "dyall", "fitting",
+           "borrowed")  # fmt: skip
 
 
 @cache

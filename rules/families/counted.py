@@ -27,6 +27,8 @@ _FILES = {
     "SBKJC": "effective", "CRENB": "effective", "BFD": "effective", "dyall": "dyall",
     "cc-pVXZ": "consistent",
 }  # fmt: skip
+# Core potentials that correlation-consistent sets were made for besides their own.
+_OTHER_POTENTIALS = frozenset({"ccECP", "SDB"})
 # Families whose sets need a core potential for their heavy elements, or for all.
 WITH_POTENTIALS = frozenset({"LANL", "Stuttgart", "SBKJC", "CRENB", "BFD"})
 
@@ -158,6 +160,8 @@ def _fitting(label: Designation, z: int) -> Expected | None:
 
 
 def _consistent(label: Designation, z: int) -> Expected | None:
+    if label.potential in _OTHER_POTENTIALS:
+        return _lookup("borrowed", str(label), z)
     data = table("consistent")
     whole = str(label.but(augmentation="", tight=False))
     bare = label.but(augmentation="", tight=False, core_valence="")

@@ -55,7 +55,16 @@ def test_outside_its_range_a_set_is_not_defined() -> None:
 
 def test_every_table_names_its_source_and_is_reached_by_its_label() -> None:
     names = {str(label) for label in candidates()}
-    for file in ("karlsruhe", "jensen", "atomic", "older", "effective", "dyall", "fitting"):
+    for file in (
+        "karlsruhe",
+        "jensen",
+        "atomic",
+        "older",
+        "effective",
+        "dyall",
+        "fitting",
+        "borrowed",
+    ):
         data = table(file)
         assert data["what"] and data["source"]
         assert set(data["sets"]) <= names
