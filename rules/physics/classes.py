@@ -26,9 +26,10 @@ E. J. Weniger, E. O. Steinborn, J. Chem. Phys. 78, 6121 (1983).
 
 from collections.abc import Sequence
 from math import factorial, gamma, lgamma, log, pi, sqrt
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
+from scipy import sparse
 
 from overlapse.grammar.model import Block, Floats
 from overlapse.rules.physics.harmonics import cartesian_parts, gaunt
@@ -171,36 +172,47 @@ class GroupPair:
         reach = tail.reach(mu, {q: row * strength.ravel() for q, row in bounds.items()})
         order = np.argsort(-reach, kind="stable")
         self.reach, self.mu = reach[order], mu[order]
-        both = np.einsum("ia,jb->ijab", left.weights, right.weights)
-        both = both.reshape(-1, len(mu))[:, order]
-        self.weights = np.concatenate([both * row[order] for row in rows])
+        self.weights = _weights(left.weights, right.weights, order, rows)
         self.top = max(term.third for term in self.terms)
 
-    def blocks(self, square: Floats, harmonics: list[Floats], shortest: float) -> Floats:
-        """Overlaps for p distances, shape (n, n', components, components', p).
+    def fill(
+        self, out: Floats, square: Floats, harmonics: list[Floats], shortest: float, room: Floats
+    ) -> None:
+        """Write the overlaps for p distances into ``out``, shape (n, c, n', c', p).
 
-        square: R**2, shape (p,).  harmonics: R_LM of the vectors from the right to the left atom.
-        shortest: the smallest of the distances.
+        n, n': contracted functions; c, c': components.  square: R**2, shape (p,).  harmonics:
+        R_LM of the vectors from the right to the left atom.  shortest: the smallest distance.
+        room: a buffer of at least the size of ``out``.
         """
         keep = int(np.searchsorted(-self.reach, -shortest))
         table = np.multiply.outer(-self.mu[:keep], square)
         np.exp(table, out=table)
-        n, m = len(self.left.weights), len(self.right.weights)
-        radial = (self.weights[:, :keep] @ table).reshape(-1, n * m, 1, len(square))
-        shape = (n * m, self.left.components * self.right.components, len(square))
-        found = np.empty(shape)
-        room = np.empty(shape) if len(self.terms) > 1 else found
+        n, c, m, d, p = out.shape
+        radial = (self.weights[:, :keep] @ table).reshape(-1, n, 1, m, 1, p)
+        room = room[: out.size].reshape(out.shape)
         for number, term in enumerate(self.terms):
             value = radial[term.first + term.rows - 1]
             for power in range(term.rows - 2, -1, -1):
-                value = value * square
+                value *= square
                 value += radial[term.first + power]
-            angular = (term.angular @ harmonics[term.third])[None]
+            angular = (term.angular @ harmonics[term.third]).reshape(1, c, 1, d, p)
+            np.multiply(value, angular, out=room if number else out)
             if number:
-                found += np.multiply(value, angular, out=room)
-            else:
-                np.multiply(value, angular, out=found)
-        return found.reshape(n, m, self.left.components, self.right.components, len(square))
+                out += room
+
+
+def _weights(left: Floats, right: Floats, order: Ints, rows: list[Floats]) -> Any:
+    """Weight of each primitive pair in each pair of contractions, once for each of ``rows``.
+
+    Shape (len(rows) * n * n', Q); sparse where it is large and mostly zero, as of many functions
+    that are not contracted.
+    """
+    if len(left) * len(right) * len(order) * len(rows) < 1e6:
+        both = np.einsum("ia,jb->ijab", left, right).reshape(-1, len(order))[:, order]
+        return np.concatenate([both * row[order] for row in rows])
+    large = sparse.kron(sparse.csr_array(left), sparse.csr_array(right)).tocsc()[:, order]
+    stack = sparse.vstack([large @ sparse.diags(row[order]) for row in rows]).tocsr()
+    return stack if stack.nnz < 0.2 * stack.shape[0] * stack.shape[1] else stack.toarray()
 
 
 def _radial(
@@ -272,7 +284,7 @@ class Tail:
 
         while (large := too_large(high)).any():
             high[large] *= 2.0
-        for _ in range(50):
+        for _ in range(26):
             middle = 0.5 * (low + high)
             large = too_large(middle)
             low, high = np.where(large, middle, low), np.where(large, high, middle)

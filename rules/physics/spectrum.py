@@ -9,8 +9,8 @@ rest R, the number of eigenvalues of S below t is that of the negative eigenvalu
 
     S_RR - t - S_RK (S_KK - t)**-1 S_KR,
 
-provided that S_KK - t has a Cholesky factor, so no negative eigenvalue of its own (the law of inertia
-of J. J. Sylvester; E. V. Haynsworth, Linear Algebra Appl. 1, 73, 1968).
+provided that S_KK - t has a Cholesky factor, so no negative eigenvalue: the law of inertia
+(J. J. Sylvester 1852), additive over a split (E. V. Haynsworth, Linear Algebra Appl. 1, 73, 1968).
 
 Formula (bound): the smallest eigenvalue of any principal submatrix is an upper bound of that of the
 matrix (interlacing; R. A. Horn, C. R. Johnson, Matrix Analysis, chapter 4).  The submatrix of the
