@@ -6,7 +6,8 @@ from difflib import SequenceMatcher
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of, integer
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Node, Run, index_of, integer
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Document, Shell, letter_of
 from overlapse.grammar.pieces.slips import say_remark, say_unheaded

@@ -6,7 +6,8 @@ from itertools import zip_longest
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, index_of, integer
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Node, index_of, integer
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Potential, letter_of

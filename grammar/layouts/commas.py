@@ -5,13 +5,8 @@ from collections.abc import Iterator
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import (
-    BlockDraft,
-    Build,
-    Node,
-    index_of,
-    shorten,
-)
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Node, index_of, shorten
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, letter_of
 from overlapse.grammar.pieces.contractions import contractions, has_fields

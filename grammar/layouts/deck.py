@@ -5,7 +5,8 @@ from collections.abc import Iterator
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, index_of, integer
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Node, index_of, integer
 from overlapse.grammar.elements import replaced_by, subshells, symbol_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, letter_of

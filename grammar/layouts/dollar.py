@@ -5,7 +5,8 @@ from collections.abc import Iterator
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, Role, Run, index_of
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Node, Role, Run, index_of
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Document, Fault, Shell, letter_of

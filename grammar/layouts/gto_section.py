@@ -5,8 +5,9 @@ from dataclasses import replace
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, index_of, integer
+from overlapse.grammar.building import Build
 from overlapse.grammar.convention import Count, count_normalised
+from overlapse.grammar.drafts import BlockDraft, Node, index_of, integer
 from overlapse.grammar.layout import Evidence, Layout
 from overlapse.grammar.model import Document, Fault, letter_of
 from overlapse.grammar.pieces.atomlists import AtomList

@@ -6,16 +6,8 @@ from typing import Literal
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import (
-    BlockDraft,
-    Build,
-    FunctionType,
-    Node,
-    Role,
-    Run,
-    index_of,
-    integer,
-)
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, FunctionType, Node, Role, Run, index_of, integer
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Channel, Document, Potential, Shell, letter_of

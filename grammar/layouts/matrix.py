@@ -6,7 +6,8 @@ from itertools import pairwise
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of, integer, shorten
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Node, Run, index_of, integer, shorten
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Remark

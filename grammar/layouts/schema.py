@@ -5,7 +5,8 @@ from functools import cached_property
 
 from lark import Token
 
-from overlapse.grammar.building import BlockDraft, Build, Node, integer
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Node, integer
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout
 from overlapse.grammar.model import Document, Potential, Remark

@@ -6,7 +6,8 @@ from itertools import pairwise
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, index_of, integer
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Node, index_of, integer
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Potential, Remark, letter_of
 from overlapse.grammar.numbers import NUMBER

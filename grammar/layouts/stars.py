@@ -5,7 +5,8 @@ from collections.abc import Iterator
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, FunctionType, Node, index_of, integer
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, FunctionType, Node, index_of, integer
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Channel, Document, Potential, Shell, letter_of

@@ -10,7 +10,7 @@ from difflib import get_close_matches
 import numpy as np
 from lark import Token
 
-from overlapse.grammar.building import BlockDraft, integer
+from overlapse.grammar.drafts import BlockDraft, integer
 from overlapse.grammar.model import letter_of, read_only
 from overlapse.grammar.numbers import Reading, read_number
 from overlapse.grammar.pieces.jsontext import JsonText, Members, string_of

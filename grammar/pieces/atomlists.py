@@ -3,7 +3,8 @@
 import re
 from collections.abc import Set
 
-from overlapse.grammar.building import Build, integer
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import integer
 from overlapse.grammar.elements import number_of, symbol_of
 
 _NAME = re.compile(r"([A-Za-z]+)\d*")

@@ -4,7 +4,8 @@ import re
 
 from lark import Token
 
-from overlapse.grammar.building import BlockDraft, Build, index_of
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, index_of
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.numbers import looks_numeric
 

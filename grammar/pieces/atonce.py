@@ -13,7 +13,8 @@ from typing import Any, NamedTuple
 
 import numpy as np
 
-from overlapse.grammar.building import BlockDraft, Build
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft
 from overlapse.grammar.model import Document, Floats, Potential, Remark
 from overlapse.grammar.pieces.centrewise import settle_functions, sizes_of, symbol_in
 from overlapse.grammar.pieces.jsontokens import DECODER

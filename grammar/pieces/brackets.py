@@ -6,7 +6,7 @@ Such files hold a whole calculation; what is not a basis may be very long and is
 import re
 from typing import NamedTuple
 
-from overlapse.grammar.building import FunctionType
+from overlapse.grammar.drafts import FunctionType
 from overlapse.grammar.model import Block
 from overlapse.grammar.source import Source
 

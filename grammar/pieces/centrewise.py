@@ -4,7 +4,8 @@ import re
 from collections.abc import Iterator
 from operator import mul
 
-from overlapse.grammar.building import BlockDraft, Build, FunctionType
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, FunctionType
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.pieces.leaves import SHELL_KINDS, Shape
 

@@ -8,7 +8,8 @@ from collections.abc import Sequence
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Node, Run, index_of
 from overlapse.grammar.model import Channel, Potential, letter_of
 from overlapse.grammar.pieces.headings import count_of, spanning
 from overlapse.grammar.pieces.tables import Tables

@@ -9,7 +9,8 @@ from dataclasses import replace
 
 from lark import Token
 
-from overlapse.grammar.building import BlockDraft, Build, Node, Run, index_of
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Node, Run, index_of
 from overlapse.grammar.model import Block, Channel, Potential
 from overlapse.grammar.numbers import looks_numeric
 from overlapse.grammar.pieces.channels import ladder, rows_of

@@ -4,7 +4,8 @@ from typing import NamedTuple
 
 from lark import Token
 
-from overlapse.grammar.building import BlockDraft, Build, shorten
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, shorten
 from overlapse.grammar.pieces.soundstatements import RANGE
 from overlapse.grammar.pieces.statements import fault_field, fields_of
 

@@ -9,7 +9,8 @@ from collections.abc import Iterator
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, index_of
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Node, index_of
 from overlapse.grammar.model import Channel, Potential, letter_of
 from overlapse.grammar.writing import Losses, columns, terms
 

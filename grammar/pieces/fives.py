@@ -5,7 +5,8 @@ Kind 0 has rows; 1 and 2 are built into the program that reads them and have non
 
 from contextlib import suppress
 
-from overlapse.grammar.building import BlockDraft, Build, Run
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Run
 from overlapse.grammar.numbers import plain
 from overlapse.grammar.pieces.slips import check_scale, is_sensible, say_not_whole
 

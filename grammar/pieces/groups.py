@@ -2,7 +2,8 @@
 
 from lark import Token
 
-from overlapse.grammar.building import Build, Node, index_of
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import Node, index_of
 from overlapse.grammar.model import Remark
 from overlapse.grammar.pieces.atoms import is_atom
 

@@ -11,7 +11,7 @@ from dataclasses import dataclass, field
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import Node, shorten
+from overlapse.grammar.drafts import Node, shorten
 from overlapse.grammar.model import Span
 from overlapse.grammar.numbers import read_number
 from overlapse.grammar.pieces.jsontokens import (

@@ -13,7 +13,8 @@ from typing import Any
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import Build, Node
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import Node
 from overlapse.grammar.model import Span
 
 Value = Token | Node

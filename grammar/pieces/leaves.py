@@ -14,7 +14,7 @@ from typing import Any, NamedTuple
 
 import numpy as np
 
-from overlapse.grammar.building import FunctionType
+from overlapse.grammar.drafts import FunctionType
 from overlapse.grammar.model import Cells, Channel, Floats, Grid, Shell, Span
 from overlapse.grammar.numbers import FORTRAN, has_only_characters
 from overlapse.grammar.source import Source

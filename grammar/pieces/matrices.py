@@ -11,7 +11,8 @@ from functools import lru_cache
 from itertools import accumulate, pairwise
 from typing import NamedTuple
 
-from overlapse.grammar.building import BlockDraft, Build, Run
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Run
 from overlapse.grammar.model import LETTERS, Grid, letter_of
 
 WHOLE = re.compile(r"[0-9]{1,15}(?:[ \t]+[0-9]{1,15})*")

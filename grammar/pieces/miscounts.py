@@ -7,7 +7,8 @@ the fault; where every row fits, the number of rows is.
 from dataclasses import dataclass
 from itertools import accumulate
 
-from overlapse.grammar.building import BlockDraft, Build, Run
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Run
 from overlapse.grammar.model import Grid, letter_of
 from overlapse.grammar.numbers import read_number
 

@@ -2,7 +2,8 @@
 
 from itertools import pairwise
 
-from overlapse.grammar.building import BlockDraft, Build, Run, ShellDraft, integer, shorten
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Run, ShellDraft, integer, shorten
 from overlapse.grammar.model import Grid, letter_of
 from overlapse.grammar.numbers import Reading, read_number
 from overlapse.grammar.pieces.rownumbers import numbers_in_front

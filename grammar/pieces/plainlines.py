@@ -3,7 +3,8 @@
 import re
 from collections.abc import Iterator
 
-from overlapse.grammar.building import Build, integer
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import integer
 from overlapse.grammar.numbers import NUMBER, looks_numeric
 
 # An element's number from here on announces a core potential; the atomic number is its remainder.

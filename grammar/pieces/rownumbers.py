@@ -2,7 +2,8 @@
 
 from itertools import pairwise
 
-from overlapse.grammar.building import BlockDraft, Build, Run, integer, shorten
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Run, integer, shorten
 
 
 def numbers_in_front(

@@ -2,7 +2,7 @@
 
 import re
 
-from overlapse.grammar.building import integer
+from overlapse.grammar.drafts import integer
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.pieces.setheadings import heading_of
 

@@ -6,7 +6,8 @@ from itertools import pairwise, zip_longest
 
 from lark import Token
 
-from overlapse.grammar.building import BlockDraft, Build, index_of, integer
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, index_of, integer
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.model import Potential, letter_of
 from overlapse.grammar.numbers import NUMBER, read_number

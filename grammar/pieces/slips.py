@@ -2,7 +2,8 @@
 
 from lark import Token
 
-from overlapse.grammar.building import BlockDraft, Build, index_of, shorten
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, index_of, shorten
 
 # Published scale factors lie near 1; far outside of this stands something else.
 _LEAST, _MOST = 0.01, 100.0

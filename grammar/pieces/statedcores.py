@@ -8,7 +8,8 @@ from collections.abc import Iterator
 
 from lark import Token
 
-from overlapse.grammar.building import BlockDraft, Build, index_of, integer, shorten
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, index_of, integer, shorten
 from overlapse.grammar.model import Block, Channel, Potential
 from overlapse.grammar.pieces.channels import ladder, rows_of
 from overlapse.grammar.pieces.statements import fault_field, fields_of, terms_of

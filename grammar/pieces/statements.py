@@ -6,7 +6,8 @@ from typing import Any
 
 from lark import Token
 
-from overlapse.grammar.building import Build, Run, index_of
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import Run, index_of
 from overlapse.grammar.numbers import looks_numeric
 from overlapse.grammar.pieces.soundstatements import Plain, SoundRun
 

@@ -10,7 +10,8 @@ from typing import ClassVar
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, index_of
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Node, index_of
 from overlapse.grammar.model import Remark, Severity, letter_of
 from overlapse.grammar.numbers import looks_numeric
 from overlapse.grammar.pieces.tables import Tables

@@ -16,7 +16,8 @@ from typing import Literal
 
 from lark import Token
 
-from overlapse.grammar.building import BlockDraft, Build, Run, index_of
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Run, index_of
 from overlapse.grammar.model import Grid, letter_of
 from overlapse.grammar.numbers import FORTRAN, read_number
 from overlapse.grammar.pieces.headings import DIGITS, Heading, heading_of, sensible, spanning

@@ -10,7 +10,8 @@ from itertools import zip_longest
 
 from lark import Token, Tree
 
-from overlapse.grammar.building import BlockDraft, Build, Node, index_of, integer
+from overlapse.grammar.building import Build
+from overlapse.grammar.drafts import BlockDraft, Node, index_of, integer
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.model import Channel, Potential, letter_of
 from overlapse.grammar.pieces.channels import ladder, rows_of
