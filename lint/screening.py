@@ -21,7 +21,7 @@ from overlapse.lint.engine import FileAudit, judge
 from overlapse.lint.settings import Settings, settings_for
 from overlapse.rules.finding import Finding
 from overlapse.rules.probe import Probe
-from overlapse.rules.probing import Site, Wanted, probe, size
+from overlapse.rules.probing import Label, Site, Wanted, probe, size
 from overlapse.rules.registry import rules
 
 
@@ -173,7 +173,13 @@ def measure(task: Task, shelf: Shelf, wanted: Wanted) -> Probe:
     """Measure one frame."""
     frame = task.frame
     sites, _ = shelf.sites(frame)
-    return probe(sites, wanted, geometry=task.geometry, frame=frame.index, title=frame.title)
+    label = Label(task.geometry, frame.index, frame.title)
+    if frame.cell is None:
+        return probe(sites, wanted, label)
+    # Crystals are the rarer case, and their sums need more libraries.
+    from overlapse.rules.probing_lattice import probe_lattice
+
+    return probe_lattice(sites, frame.cell, frame.periodic, wanted, label)
 
 
 # ---- judging

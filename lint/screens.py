@@ -1,6 +1,7 @@
 """Reports of a screening: text for people, and one object as plain data."""
 
 import json
+from collections import Counter
 from collections.abc import Iterator, Sequence
 from math import isfinite
 from textwrap import wrap
@@ -15,6 +16,7 @@ from overlapse.rules.overlap_words import dropped, plain, shares
 from overlapse.rules.probe import Function, Left, Probe, Share, Small
 
 _WIDTH = 96
+_BLAMED = 6  # eigenvalues that are told; the object has all
 _FULL = 3  # so many frames are told in full; of more only the worst, and a table of all
 
 
@@ -59,8 +61,9 @@ def _frame(probe: Probe) -> Iterator[str]:
     if probe.counterpart is not None:
         yield from _item("spherical", _left(probe.counterpart))
     yield from _lattice(probe)
-    for small in probe.blame:
-        yield from _item(f"{small.value:.1e}", shares(small, 5))
+    told = [(f"{small.value:.1e}", shares(small, 4)) for small in probe.blame]
+    for (value, words), count in list(Counter(told).items())[:_BLAMED]:
+        yield from _item(value, words + (f" ({count} times)" if count > 1 else ""))
     if probe.drop:
         yield from _item(
             "to drop",
@@ -86,9 +89,16 @@ def _item(name: str, text: str) -> list[str]:
 def _lattice(probe: Probe) -> Iterator[str]:
     if probe.lattice is None:
         return
-    for point in probe.lattice.points:
+    lattice = probe.lattice
+    for point in lattice.points:
         k = ", ".join(f"{x:.3g}" for x in point.k)
-        yield from _item(f"k {k}", f"smallest eigenvalue {point.smallest:.3g}")
+        yield from _item("k point", f"({k}): smallest eigenvalue {point.smallest:.3g}")
+    yield from _item(
+        "sums",
+        f"over images within {lattice.reach:.1f} bohr, error at most {lattice.bound:.1g}; with "
+        f"those within {lattice.cut_at:.1f} bohr alone the smallest eigenvalue is "
+        f"{lattice.cut:.3g}",
+    )
 
 
 def _table(probes: Sequence[Probe]) -> Iterator[str]:
@@ -206,6 +216,7 @@ def _lattice_object(probe: Probe) -> dict[str, Any] | None:
     return {
         "points": [{"k": list(p.k), "smallest": _number(p.smallest)} for p in lattice.points],
         "bound": lattice.bound,
-        "coarse": {"tolerance": lattice.coarse_at, "smallest": _number(lattice.coarse)},
+        "reach": lattice.reach,
+        "cut": {"at": lattice.cut_at, "smallest": _number(lattice.cut)},
         "loose": [_function_object(function) for function in lattice.loose],
     }

@@ -73,7 +73,10 @@ def others(group: Sequence[Probe], what: str) -> str:
 
 def remedy(probe: Probe) -> str:
     """What would help, the surest first."""
-    return "; or ".join(_remedies(probe)) or "take the functions named out of one of the elements"
+    found = list(_remedies(probe))
+    if not probe.drop and probe.kept < probe.spectrum.functions:
+        found.append(f"--prune {plain(10.0 * probe.threshold)} names functions to drop")
+    return "; or ".join(found) or "take one of the functions named out"
 
 
 def _remedies(probe: Probe) -> Iterator[str]:

@@ -81,16 +81,19 @@ class AtPoint(NamedTuple):
 
 @dataclass(frozen=True)
 class Lattice:
-    """What a cell adds: smallest eigenvalues by k point, and how far the sums can be trusted.
+    """What a cell adds to the numbers of its worst k point.
 
-    bound: of the error of an eigenvalue that cutting the sums off leaves.  coarse: the smallest
-    eigenvalue when sums are cut where a looser program does, at ``coarse_at``.
+    points: smallest eigenvalues, the centre of the zone first.  bound: of the error that cutting
+    the sums off leaves in an eigenvalue.  reach: how far the sums went, bohr.  cut: the smallest
+    eigenvalue of the worst point when images beyond ``cut_at`` (bohr) are left out, as a program
+    with looser limits does.  loose: functions with an exponent below 0.3 bohr**-2.
     """
 
     points: tuple[AtPoint, ...]
     bound: float
-    coarse: float
-    coarse_at: float
+    reach: float
+    cut: float
+    cut_at: float
     loose: tuple[Function, ...] = ()
 
 

@@ -1,20 +1,20 @@
 """Measuring: from atoms with their blocks to what is known of their overlap matrix."""
 
 from collections import Counter
-from collections.abc import Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from typing import NamedTuple
 
 import numpy as np
 
 from overlapse.grammar.geometry import Atom
-from overlapse.grammar.model import Block
+from overlapse.grammar.model import Block, Floats
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.onecentre import eigenvalues
 from overlapse.rules.physics.outlook import outlook
 from overlapse.rules.physics.placed import Functions, Ints, Placed, lay_out
-from overlapse.rules.physics.pruning import shells_to_drop
-from overlapse.rules.physics.spectrum import LADDER, Matrix, Spectrum, lowest, spectrum
-from overlapse.rules.probe import NEAR, Dropped, Function, Left, Probe, Share, Small
+from overlapse.rules.physics.pruning import Drop, shells_to_drop
+from overlapse.rules.physics.spectrum import LADDER, SMALL, Matrix, Spectrum, lowest, spectrum
+from overlapse.rules.probe import NEAR, Dropped, Function, Lattice, Left, Probe, Share, Small
 
 _BLAMED = 12  # eigenvalues whose combinations are looked into
 _TOLD = 12  # shares that are kept of each
@@ -60,45 +60,73 @@ def size(sites: Sequence[Site]) -> int:
     )
 
 
-def probe(
-    sites: Sequence[Site],
-    wanted: Wanted,
-    *,
-    geometry: str = "<geometry>",
-    frame: int = 1,
-    title: str = "",
-) -> Probe:
+class Label(NamedTuple):
+    """Which frame it is: path of the geometry, place in it counted from 1, comment line."""
+
+    geometry: str = "<geometry>"
+    frame: int = 1
+    title: str = ""
+
+
+Pruned = tuple[tuple[Dropped, ...], Left | None]
+
+
+def probe(sites: Sequence[Site], wanted: Wanted, label: Label = Label()) -> Probe:  # noqa: B008
     """Measure one molecule.
 
     Raises `overlapse.rules.physics.placed.NotNormalisable` where a function has no norm.
     """
     placed = [site.placed for site in sites]
     matrix = overlap(placed)
-    functions = lay_out(placed)
+    found = steps(matrix, wanted)
+    pruned = pruned_set(matrix, lay_out(placed), sites, wanted, found)
+    energies = kinetic(placed) if found.smallest < LADDER[1] else None
+    turned = turned_spherical(sites)
+    counterpart = in_short(overlap([s.placed for s in turned])) if turned else None
+    return assembled(sites, wanted, label, matrix, found, pruned, energies, counterpart)
+
+
+def steps(matrix: Matrix, wanted: Wanted) -> Spectrum:
+    """The spectrum, with counts at the ladder and on both sides of the removal threshold."""
     edges = (wanted.threshold / NEAR, wanted.threshold, wanted.threshold * NEAR)
-    found = spectrum(matrix, tuple(sorted({*LADDER, *edges}, reverse=True)))
-    drop, after = _pruned(matrix, functions, sites, wanted, found)
+    return spectrum(matrix, tuple(sorted({*LADDER, *edges}, reverse=True)))
+
+
+def assembled(
+    sites: Sequence[Site],
+    wanted: Wanted,
+    label: Label,
+    matrix: Matrix,
+    found: Spectrum,
+    pruned: Pruned,
+    energies: Floats | None,
+    counterpart: Left | None,
+    lattice: Lattice | None = None,
+) -> Probe:
+    """All that is known of a matrix, in one piece."""
+    functions = lay_out([site.placed for site in sites])
+    low, step, high = wanted.threshold / NEAR, wanted.threshold, wanted.threshold * NEAR
     return Probe(
-        geometry,
-        frame,
-        title,
-        formula(sites),
-        len(sites),
-        _spherical(sites),
-        found._replace(below={step: found.below[step] for step in LADDER}),
-        wanted.threshold,
-        found.functions - found.below[wanted.threshold],
-        found.below[edges[2]] - found.below[edges[0]],
-        outlook(matrix, kinetic(placed) if found.smallest < LADDER[1] else None, functions),
-        wanted.tolerance,
-        blame(matrix, functions, sites, found, edges[2]),
-        drop,
-        after,
-        _counterpart(sites),
-        None,
-        any(site.fitting for site in sites),
-        tuple(dict.fromkeys(site.path for site in sites)),
-        tuple(eigenvalues(matrix).tolist()) if wanted.values else (),
+        geometry=label.geometry,
+        frame=label.frame,
+        title=label.title,
+        formula=formula(sites),
+        atoms=len(sites),
+        spherical=_spherical(sites),
+        spectrum=found._replace(below={rung: found.below[rung] for rung in LADDER}),
+        threshold=step,
+        kept=found.functions - found.below[step],
+        near=found.below[high] - found.below[low],
+        outlook=outlook(matrix, energies, functions),
+        tolerance=wanted.tolerance,
+        blame=blame(matrix, functions, sites, found, high),
+        drop=pruned[0],
+        after=pruned[1],
+        counterpart=counterpart,
+        lattice=lattice,
+        fitting=any(site.fitting for site in sites),
+        files=tuple(dict.fromkeys(site.path for site in sites)),
+        values=tuple(eigenvalues(matrix).tolist()) if wanted.values else (),
     )
 
 
@@ -126,11 +154,11 @@ def in_short(matrix: Matrix) -> Left:
     return Left(found.functions, found.smallest, found.condition)
 
 
-def _counterpart(sites: Sequence[Site]) -> Left | None:
-    """The same with spherical functions, where some are Cartesian."""
+def turned_spherical(sites: Sequence[Site]) -> list[Site]:
+    """The same with spherical functions, where some are Cartesian; nothing where none are."""
     if all(site.spherical or max(site.block.counts, default=0) < 2 for site in sites):
-        return None
-    return in_short(overlap([site.placed._replace(spherical=True) for site in sites]))
+        return []
+    return [site._replace(spherical=True) for site in sites]
 
 
 # ---- who is to blame
@@ -142,14 +170,18 @@ def blame(
     """Shares of the functions in the combinations of the smallest eigenvalues.
 
     A share is the squared component of the unit eigenvector, summed over a function's components.
-    Eigenvalues below ``least`` and below 1e-4 are looked into, the dozen smallest at most.
+    Eigenvalues below ``least`` and below 1e-4 are looked into, the dozen smallest at most; of a
+    small matrix the smallest eigenvalue in any case.
     """
-    steps = {step: count for step, count in found.below.items() if step <= max(least, LADDER[0])}
-    limits = [step for step in sorted(steps) if steps[step]]
-    if not limits:
+    counts = {rung: n for rung, n in found.below.items() if n and rung <= max(least, LADDER[0])}
+    few = [rung for rung, n in counts.items() if n <= _BLAMED]
+    if counts:
+        limit = max(few) if few else min(counts)
+    elif found.functions <= SMALL:
+        limit = found.smallest * (1.0 + 1e-9)
+    else:
         return ()
-    fitting = [step for step in limits if steps[step] <= _BLAMED]
-    values, vectors = lowest(matrix, fitting[-1] if fitting else limits[0])
+    values, vectors = lowest(matrix, limit)
     order = np.argsort(values)[:_BLAMED]
     groups = _groups(functions)
     return tuple(_small(float(values[k]), vectors[:, k], groups, functions, sites) for k in order)
@@ -216,13 +248,13 @@ def _is_outermost(block: Block, index: int, column: int) -> bool:
 # ---- what to drop
 
 
-def _pruned(
+def pruned_set(
     matrix: Matrix,
     functions: Functions,
     sites: Sequence[Site],
     wanted: Wanted,
     found: Spectrum,
-) -> tuple[tuple[Dropped, ...], Left | None]:
+) -> Pruned:
     """What the Cholesky choice takes away, and what it leaves.
 
     A pivot is a diagonal element of a Schur complement, so it is never below the smallest
@@ -240,8 +272,11 @@ def _pruned(
     if not pruning.drops:
         return (), None
     left = Left(len(pruning.kept), pruning.smallest, pruning.condition)
-    dropped = []
-    for drop in pruning.drops:
+    return tuple(as_dropped(pruning.drops, sites, wanted)), left
+
+
+def as_dropped(drops: Iterable[Drop], sites: Sequence[Site], wanted: Wanted) -> Iterator[Dropped]:
+    """What was chosen to be dropped, with its places in the files."""
+    for drop in drops:
         function = described(sites[drop.like], drop.shell, drop.column, drop.exponent)
-        dropped.append(Dropped(function, drop.like + 1 if wanted.per_atom else 0))
-    return tuple(dropped), left
+        yield Dropped(function, drop.like + 1 if wanted.per_atom else 0)

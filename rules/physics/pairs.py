@@ -99,7 +99,7 @@ def mixed_bounds(left: Lone, right: Lone, distances: Floats) -> Floats:
     across = two_centre(left, right, distances)
     matrices[:, :width, width:] = across
     matrices[:, width:, :width] = across.transpose(0, 2, 1)
-    found: Floats = np.linalg.eigvalsh(matrices)[:, 0]
+    found: Floats = np.asarray(np.linalg.eigvalsh(matrices)[:, 0], dtype=np.float64)
     return found
 
 
@@ -113,8 +113,8 @@ def cube_bounds(atoms: Lone, edges: Floats) -> Floats:
     s = Lone(np.where(atoms.l == 0, 0, _NONE), atoms.exponents)
     if not (s.l == 0).any():
         return np.ones(len(s.l))
-    matrices: Floats = one_centre(s)
+    matrices = one_centre(s)
     for weight, stretch in ((-3.0, 1.0), (3.0, 2.0**0.5), (-1.0, 3.0**0.5)):
         matrices = matrices + weight * two_centre(s, s, stretch * edges)
-    found: Floats = np.linalg.eigvalsh(matrices)[:, 0]
+    found: Floats = np.asarray(np.linalg.eigvalsh(matrices)[:, 0], dtype=np.float64)
     return found
