@@ -35,7 +35,7 @@ def edge(case: Case) -> Iterator[Finding]:
         S 1 1.00
           0.0500 1.0
         S 1 1.00
-          0.0502 1.0
+          0.0505 1.0
         ****
 
     Good::

@@ -190,24 +190,46 @@ def cartesian(case: Case, *, tight: float = 1e-5, times: float = 10.0) -> Iterat
 
         basis "H_invented" CARTESIAN
         H S
+         1.0 1.0
+        H S
          0.5 1.0
         H S
-         0.0800 1.0
+         0.25 1.0
+        H S
+         0.12 1.0
+        H S
+         0.06 1.0
         H D
-         0.0802 1.0
+         0.7 1.0
         H D
-         0.0790 1.0
+         0.35 1.0
+        H D
+         0.17 1.0
+        H D
+         0.09 1.0
         end
 
     Good::
 
         basis "H_invented" SPHERICAL
         H S
+         1.0 1.0
+        H S
          0.5 1.0
         H S
-         0.0800 1.0
+         0.25 1.0
+        H S
+         0.12 1.0
+        H S
+         0.06 1.0
         H D
-         0.8 1.0
+         0.7 1.0
+        H D
+         0.35 1.0
+        H D
+         0.17 1.0
+        H D
+         0.09 1.0
         end
 
     With::
@@ -215,7 +237,7 @@ def cartesian(case: Case, *, tight: float = 1e-5, times: float = 10.0) -> Iterat
         2
         hydrogen, angstrom
         H 0.0 0.0 0.0
-        H 0.0 0.0 1.40
+        H 0.0 0.0 0.74
     """
     for group in groups_of(case, lambda p: p.smallest < tight):
         found = [

@@ -2,11 +2,20 @@
 
 import pytest
 
+from probed import probed
+
+from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read_bytes, read_text
 from overlapse.rules.case import Case
-from overlapse.rules.registry import rules
+from overlapse.rules.registry import Rule, rules
 
 RULES = sorted(rules())
+
+
+def _case(document: Document, rule: Rule) -> Case:
+    """A sample's case; in its geometry where the rule has one."""
+    geometry = rule.explanation.geometry
+    return probed(document, geometry) if geometry else Case(document)
 
 
 @pytest.mark.parametrize("name", RULES)
@@ -25,7 +34,7 @@ def test_the_bad_sample_is_found(name: str) -> None:
     rule = rules()[name]
     # Samples go through bytes, as files do: one of them is about the bytes themselves.
     document = read_bytes(rule.explanation.bad.encode(), "sample")
-    found = Case(document).judge(rule)
+    found = _case(document, rule).judge(rule)
     assert found
     for finding in found:
         assert finding.rule == name
@@ -39,7 +48,7 @@ def test_the_good_sample_is_not(name: str) -> None:
     rule = rules()[name]
     document = read_text(rule.explanation.good, "sample")
     assert document.layout
-    assert not [f for f in Case(document).judge(rule) if f.severity != "note"]
+    assert not [f for f in _case(document, rule).judge(rule) if f.severity != "note"]
     assert not [fault for fault in document.faults if fault.severity == "error"]
 
 
@@ -47,6 +56,6 @@ def test_the_good_sample_is_not(name: str) -> None:
 def test_heuristic_rules_never_give_errors(name: str) -> None:
     rule = rules()[name]
     if rule.explanation.what.lower().startswith("suspect"):
-        found = Case(read_text(rule.explanation.bad, "sample")).judge(rule)
+        found = _case(read_text(rule.explanation.bad, "sample"), rule).judge(rule)
         assert {finding.severity for finding in found} <= {"warning", "note"}
         assert all("suspect" in finding.message for finding in found)
