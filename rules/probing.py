@@ -10,10 +10,11 @@ from overlapse.grammar.geometry import Atom
 from overlapse.grammar.model import Block, Floats
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.onecentre import eigenvalues
-from overlapse.rules.physics.outlook import outlook
+from overlapse.rules.physics.outlook import LOOKED_AT, Outlook, by_eigenvalue, foresee
 from overlapse.rules.physics.placed import Functions, Ints, Placed, lay_out
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
 from overlapse.rules.physics.spectrum import LADDER, SMALL, Matrix, Spectrum, lowest, spectrum
+from overlapse.rules.physics.superposed import affordable
 from overlapse.rules.probe import NEAR, Dropped, Function, Lattice, Left, Probe, Share, Small
 
 _BLAMED = 12  # eigenvalues whose combinations are looked into
@@ -42,6 +43,8 @@ class Wanted(NamedTuple):
     """What to measure: removal threshold, tolerance of pruning, and whether it is atom by atom.
 
     mesh: number of k points along each vector of a cell.  values: all eigenvalues are wanted.
+    charge, unpaired: of the molecule, for the outlook; unpaired electrons the fewest possible where
+    None.
     """
 
     threshold: float = 1e-6
@@ -49,6 +52,8 @@ class Wanted(NamedTuple):
     per_atom: bool = False
     mesh: tuple[int, int, int] = (2, 2, 2)
     values: bool = False
+    charge: int = 0
+    unpaired: int | None = None
 
 
 def size(sites: Sequence[Site]) -> int:
@@ -80,7 +85,7 @@ def probe(sites: Sequence[Site], wanted: Wanted, label: Label = Label()) -> Prob
     matrix = overlap(placed)
     found = steps(matrix, wanted)
     pruned = pruned_set(matrix, lay_out(placed), sites, wanted, found)
-    energies = kinetic(placed) if found.smallest < LADDER[1] else None
+    energies = kinetic(placed) if found.smallest < LOOKED_AT else None
     turned = turned_spherical(sites)
     counterpart = in_short(overlap([s.placed for s in turned])) if turned else None
     return assembled(sites, wanted, label, matrix, found, pruned, energies, counterpart)
@@ -117,7 +122,7 @@ def assembled(
         threshold=step,
         kept=found.functions - found.below[step],
         near=found.below[high] - found.below[low],
-        outlook=outlook(matrix, energies, functions),
+        outlook=_outlook(sites, wanted, matrix, found, energies),
         tolerance=wanted.tolerance,
         blame=blame(matrix, functions, sites, found, high),
         drop=pruned[0],
@@ -128,6 +133,39 @@ def assembled(
         files=tuple(dict.fromkeys(site.path for site in sites)),
         values=tuple(eigenvalues(matrix).tolist()) if wanted.values else (),
     )
+
+
+def _outlook(
+    sites: Sequence[Site],
+    wanted: Wanted,
+    matrix: Matrix,
+    found: Spectrum,
+    energies: Floats | None,
+) -> Outlook:
+    """The outlook by the cheapest way: no vector where S is sound, a field where it can be made."""
+    placed = [site.placed for site in sites]
+    if found.smallest >= LOOKED_AT:
+        return by_eigenvalue(found.smallest, np.zeros(0), None, None)
+    functions = lay_out(placed)
+    fitting = any(site.fitting for site in sites)
+    if energies is not None and not fitting and affordable(placed, len(matrix)):
+        empty = [k for k, site in enumerate(sites) if site.atom.ghost]
+        return foresee(
+            placed,
+            matrix,
+            energies,
+            functions,
+            empty=empty,
+            charge=wanted.charge,
+            unpaired=wanted.unpaired,
+        )
+    _, vectors = lowest(matrix, _above(found.smallest))
+    return by_eigenvalue(found.smallest, np.abs(vectors[:, 0]), None, functions)
+
+
+def _above(smallest: float) -> float:
+    """A limit that the smallest eigenvalue is below, and few others."""
+    return smallest + max(1e-9 * abs(smallest), 1e-15)
 
 
 def _spherical(sites: Sequence[Site]) -> bool | None:
@@ -178,7 +216,7 @@ def blame(
     if counts:
         limit = max(few) if few else min(counts)
     elif found.functions <= SMALL:
-        limit = found.smallest * (1.0 + 1e-9)
+        limit = _above(found.smallest)
     else:
         return ()
     values, vectors = lowest(matrix, limit)

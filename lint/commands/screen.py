@@ -127,6 +127,12 @@ def _a_fraction(context: click.Context, parameter: click.Parameter, value: float
     help="Tolerance of the choice of functions to drop.",
 )
 @click.option("--per-atom", is_flag=True, help="Choose atom by atom, not for all of an element.")
+@click.option("--charge", default=0, help="Charge of the molecule, for the outlook [0].")
+@click.option(
+    "--unpaired",
+    type=click.IntRange(0),
+    help="Unpaired electrons, for the outlook [the fewest possible].",
+)
 @click.option(
     "--mesh",
     default="2,2,2",
@@ -165,6 +171,8 @@ def screen(
     threshold: float,
     tolerance: float,
     per_atom: bool,
+    charge: int,
+    unpaired: int | None,
     mesh: tuple[int, int, int],
     folder: Path | None,
     drawing: Path | None,
@@ -198,7 +206,9 @@ def screen(
         found, audits = tasks(shelf, read)
         check_memory(found, limit)
         with _progress(found) as done:
-            asked = Wanted(threshold, tolerance, per_atom, mesh, drawing is not None)
+            asked = Wanted(
+                threshold, tolerance, per_atom, mesh, drawing is not None, charge, unpaired
+            )
             probes = measure_all(found, shelf, asked, jobs=jobs, limit=limit, done=done)
     except ScreenError as problem:
         raise Refused(str(problem)) from problem

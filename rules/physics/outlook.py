@@ -117,7 +117,7 @@ def outlook(
         reason = f"{what} within rounding (smallest eigenvalue {smallest:.1e})"
         return Outlook("fails", smallest, _rounding(overlap), reason)
     if smallest >= LOOKED_AT or kinetic is None or field is None:
-        return _by_eigenvalue(smallest, vectors[:, 0], kinetic, functions)
+        return by_eigenvalue(smallest, vectors[:, 0], kinetic, functions)
     low = int(np.searchsorted(values, LOOKED_AT))
     held, height = _occupations(values, vectors, low, kinetic, field)
     measures = held ** (2 / 3) * height**0.25 / values[:low]
@@ -143,9 +143,10 @@ def _rounding(overlap: Floats) -> float:
     return float(np.finfo(float).eps * len(overlap) * np.abs(overlap).sum(axis=1).max())
 
 
-def _by_eigenvalue(
+def by_eigenvalue(
     smallest: float, vector: Floats, kinetic: Floats | None, functions: Functions | None
 ) -> Outlook:
+    """The outlook without a field, for which one eigenvalue and its vector suffice."""
     reason = f"smallest eigenvalue {smallest:.1e}"
     if smallest < LOOKED_AT:
         if kinetic is not None:
