@@ -22,6 +22,7 @@ from overlapse.rules.registry import rule
 _LOOSE = 0.8  # bohr**-2: tighter functions hardly reach a neighbour
 _HIGHEST = 2  # f functions and above hardly change the bound
 _LIKELY = 300.0  # times the limit: only atoms whose own pair comes that close meet the others
+_OWN = 0.3  # of what the atoms have by themselves: the neighbour must matter
 _MET = 12  # such atoms at most, those of the closest pairs
 
 
@@ -112,7 +113,8 @@ def pair(case: Case, *, strained: float = 1e-7, tight: float = 1e-6) -> Iterator
         found = []
         for worst in _worst(members, tight):
             bound = min(worst.pair, worst.cube)
-            # What one centre shows by itself has a rule of its own.
+            if bound > _OWN * worst.own:
+                continue  # what one centre shows by itself has a rule of its own
             if bound < strained <= worst.own and is_orbital(members):
                 found.append(_finding(case, worst, "warning", strained))
             elif bound < tight <= worst.own:

@@ -12,9 +12,8 @@ from typing import Any
 
 import numpy as np
 import scipy.linalg
-from pyscf import scf
-
 from builders import System
+from pyscf import scf
 
 REMOVAL = 1e-7
 TOLERANCE = 1e-9  # hartree

@@ -3,10 +3,26 @@
 from typing import Any
 
 from builders import (
-    Atoms, Basis,
-    System, benzene, ammonia, centred, chain, cube, diffuse, doubled, ethene, even, moved,
-    octahedron, published, ring, squeezed, twins, water,
+    Atoms,
+    Basis,
+    System,
+    ammonia,
+    benzene,
+    centred,
+    chain,
+    cube,
+    diffuse,
+    doubled,
+    ethene,
+    even,
+    octahedron,
+    published,
+    ring,
+    squeezed,
+    twins,
+    water,
 )
+
 
 def calibration() -> list[System]:
     """The systems on which limits are chosen."""

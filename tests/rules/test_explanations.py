@@ -1,7 +1,6 @@
 """Every rule explains itself, and its own samples show that it works."""
 
 import pytest
-
 from probed import probed
 
 from overlapse.grammar.model import Document
