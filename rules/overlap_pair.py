@@ -22,7 +22,7 @@ from overlapse.rules.registry import rule
 _LOOSE = 0.8  # bohr**-2: tighter functions hardly reach a neighbour
 _HIGHEST = 2  # f functions and above hardly change the bound
 _LIKELY = 300.0  # times the limit: only atoms whose own pair comes that close meet the others
-_OWN = 0.3  # of what the atoms have by themselves: the neighbour must matter
+_OWN = 0.05  # of what the atoms have by themselves: the neighbour must matter
 _MET = 12  # such atoms at most, those of the closest pairs
 
 
