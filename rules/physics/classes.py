@@ -24,116 +24,60 @@ Series, and Products, 6.631; closed forms of this kind are old, see for instance
 E. J. Weniger, E. O. Steinborn, J. Chem. Phys. 78, 6121 (1983).
 """
 
-from collections.abc import Sequence
-from math import factorial, gamma, lgamma, log, pi, sqrt
+from dataclasses import dataclass
+from fractions import Fraction
+from functools import cache, lru_cache
+from math import factorial, gamma, pi, sqrt
 from typing import Any, NamedTuple
 
 import numpy as np
 from scipy import sparse
 
-from overlapse.grammar.model import Block, Floats
+from overlapse.grammar.model import Floats
 from overlapse.rules.physics.harmonics import cartesian_parts, gaunt
-from overlapse.rules.physics.placed import Ints, Placed, components, normalised_columns
+from overlapse.rules.physics.kinds import Group
+from overlapse.rules.physics.placed import Ints
 
 
-class Group(NamedTuple):
-    """The contracted functions of one l of one atom.
+class Factor(NamedTuple):
+    """The angular factor of one L for a pair of parts of two shells.
 
-    exponents: the union of those they use, shape (P,).  weights: shape (n, P).  parts: pairs of l
-    and the expansion of a component in harmonics of that l.  place: index of each function's first
-    component within the atom, shape (n,).
+    l, l2: of the parts; third: L.  table: shape (components * components', 2L+1), with its sign.
+    size: an upper bound of the factor of R**L, whatever the direction.
     """
 
     l: int
-    exponents: Floats
-    weights: Floats
-    parts: tuple[tuple[int, Floats], ...]
-    place: Ints
-
-    @property
-    def components(self) -> int:
-        return len(self.parts[0][1])
+    l2: int
+    third: int
+    table: Floats
+    size: float
 
 
-class Kind(NamedTuple):
-    """Atoms with the same functions.
-
-    members: indices of the atoms.  groups: by rising l.  size: functions of an atom.  order: where
-    the functions, taken group by group, stand in the atom; None where that is their order anyway.
-    """
-
-    members: Ints
-    groups: tuple[Group, ...]
-    size: int
-    order: Ints | None
-
-    @property
-    def top(self) -> int:
-        return max((group.l for group in self.groups), default=0)
+@cache
+def _factors(l: int, l2: int, spherical: bool, spherical2: bool) -> tuple[Factor, ...]:
+    found = []
+    for k, turn in _parts(l, spherical):
+        for k2, turn2 in _parts(l2, spherical2):
+            for third in range(abs(k - k2), k + k2 + 1, 2):
+                table = np.tensordot(turn2, gaunt(k, k2, third), (1, 1))  # b, m, M
+                table = np.tensordot(turn, table, (1, 1)).reshape(-1, 2 * third + 1)
+                sign = -1.0 if (k - k2 + third) // 2 % 2 else 1.0
+                most = float((table**2).sum(axis=1).max())
+                size = sqrt(most * (2 * third + 1) / (4.0 * pi))
+                found.append(Factor(k, k2, third, sign * table, size))
+    return tuple(found)
 
 
-def kinds(atoms: Sequence[Placed]) -> list[Kind]:
-    """The atoms sorted by what functions they carry, in order of first appearance.
-
-    Raises `NotNormalisable` for a function that has no finite positive self-overlap.
-    """
-    known: dict[int, tuple[object, ...]] = {}
-    found: dict[tuple[object, ...], list[int]] = {}
-    for index, atom in enumerate(atoms):
-        if id(atom.block) not in known:
-            known[id(atom.block)] = tuple(
-                (shell.angular, shell.exponents.tobytes(), shell.coefficients.tobytes())
-                for shell in atom.block.shells
-            )
-        found.setdefault((atom.spherical, known[id(atom.block)]), []).append(index)
-    made = []
-    for members in found.values():
-        first = atoms[members[0]]
-        groups = _groups(first.block, first.spherical)
-        order = _order(groups)
-        made.append(Kind(np.array(members), groups, len(order), order))
-        if np.array_equal(order, np.arange(len(order))):
-            made[-1] = made[-1]._replace(order=None)
-    return made
-
-
-def _order(groups: tuple[Group, ...]) -> Ints:
-    spread = [(g.place[:, None] + np.arange(g.components)).ravel() for g in groups]
-    return np.concatenate(spread) if spread else np.zeros(0, dtype=np.intp)
-
-
-def _groups(block: Block, spherical: bool) -> tuple[Group, ...]:
-    columns: dict[int, list[tuple[Floats, Floats, int]]] = {}
-    at = 0
-    for index, shell in enumerate(block.shells):
-        table = normalised_columns(block, index)
-        for column in range(table.shape[1]):
-            l = shell.angular[column // shell.columns_per_l]
-            used = table[:, column] != 0.0
-            columns.setdefault(l, []).append((shell.exponents[used], table[used, column], at))
-            at += components(l, spherical)
-    groups = []
-    for l, members in sorted(columns.items()):
-        union = np.unique(np.concatenate([exponents for exponents, _, _ in members]))
-        weights = np.zeros((len(members), len(union)))
-        for row, (exponents, values, _) in enumerate(members):
-            np.add.at(weights[row], np.searchsorted(union, exponents), values)
-        parts = ((l, np.eye(2 * l + 1)),) if spherical else cartesian_parts(l)
-        groups.append(Group(l, union, weights, parts, np.array([place for *_, place in members])))
-    return tuple(groups)
+def _parts(l: int, spherical: bool) -> tuple[tuple[int, Floats], ...]:
+    return ((l, np.eye(2 * l + 1)),) if spherical else cartesian_parts(l)
 
 
 class Term(NamedTuple):
-    """One L of one pair of parts: rows of the weight table, and the angular factor.
-
-    first, rows: these rows hold the coefficients of R**0, R**2, ... in g_L.  third: L.  angular:
-    shape (components * components', 2L+1).
-    """
+    """One L of one pair of parts: where the coefficients of R**0, R**2, ... in g_L stand."""
 
     first: int
     rows: int
-    third: int
-    angular: Floats
+    factor: Factor
 
 
 class GroupPair:
@@ -145,35 +89,32 @@ class GroupPair:
 
     def __init__(self, left: Group, right: Group, tail: "Tail", kinetic: bool = False) -> None:
         self.left, self.right = left, right
-        a, b = (
-            np.repeat(left.exponents, len(right.exponents)),
-            np.tile(right.exponents, len(left.exponents)),
-        )
+        a = np.repeat(left.exponents, len(right.exponents))
+        b = np.tile(right.exponents, len(left.exponents))
         mu = a * b / (a + b)
-        lean = (np.log(2.0 * b / (a + b)), np.log(2.0 * a / (a + b)))
+        lean = (2.0 * b / (a + b), 2.0 * a / (a + b))
+        powers = [np.ones_like(mu), np.sqrt(mu)]
         rows: list[Floats] = []
         self.terms: list[Term] = []
         bounds: dict[int, Floats] = {}  # by twice the power of mu R**2
-        for k, turn in left.parts:
-            for kk, other in right.parts:
-                for third in range(abs(k - kk), k + kk + 1, 2):
-                    shape = ((left.l, k), (right.l, kk), third)
-                    radial = _radial(*shape, kinetic, lean, mu)
-                    factor = np.einsum("am,bn,mnk->abk", turn, other, gaunt(k, kk, third))
-                    sign = -1.0 if (k - kk + third) // 2 % 2 else 1.0
-                    angular = sign * factor.reshape(-1, 2 * third + 1)
-                    self.terms.append(Term(len(rows), len(radial), third, angular))
-                    rows += radial
-                    size = sqrt(float((angular**2).sum(axis=1).max()) * (2 * third + 1) / (4 * pi))
-                    for power, row in enumerate(radial):
-                        q = 2 * power + third
-                        bounds[q] = bounds.get(q, 0.0) + size * np.abs(row) / mu ** (q / 2)
+        for factor in _factors(left.l, right.l, left.spherical, right.spherical):
+            shape = ((left.l, factor.l), (right.l, factor.l2), factor.third)
+            radial = _radial(shape, kinetic, lean)
+            if kinetic:
+                radial *= mu
+            self.terms.append(Term(len(rows), len(radial), factor))
+            for q, row in enumerate(radial):
+                twice = 2 * q + factor.third
+                while len(powers) <= twice:
+                    powers.append(powers[-1] * powers[1])
+                rows.append(row * powers[twice])
+                bounds[twice] = bounds.get(twice, 0.0) + factor.size * np.abs(row)
         strength = np.abs(left.weights).max(axis=0)[:, None] * np.abs(right.weights).max(axis=0)
         reach = tail.reach(mu, {q: row * strength.ravel() for q, row in bounds.items()})
         order = np.argsort(-reach, kind="stable")
         self.reach, self.mu = reach[order], mu[order]
         self.weights = _weights(left.weights, right.weights, order, rows)
-        self.top = max(term.third for term in self.terms)
+        self.top = max(term.factor.third for term in self.terms)
 
     def fill(
         self, out: Floats, square: Floats, harmonics: list[Floats], shortest: float, room: Floats
@@ -195,7 +136,8 @@ class GroupPair:
             for power in range(term.rows - 2, -1, -1):
                 value *= square
                 value += radial[term.first + power]
-            angular = (term.angular @ harmonics[term.third]).reshape(1, c, 1, d, p)
+            angular = term.factor.table @ harmonics[term.factor.third]
+            angular = angular.reshape(1, c, 1, d, p)
             np.multiply(value, angular, out=room if number else out)
             if number:
                 out += room
@@ -215,78 +157,86 @@ def _weights(left: Floats, right: Floats, order: Ints, rows: list[Floats]) -> An
     return stack if stack.nnz < 0.2 * stack.shape[0] * stack.shape[1] else stack.toarray()
 
 
-def _radial(
-    one: tuple[int, int],
-    two: tuple[int, int],
-    third: int,
-    kinetic: bool,
-    lean: tuple[Floats, Floats],
-    mu: Floats,
-) -> list[Floats]:
-    """Coefficients of R**0, R**2, ... in g_L for normalised primitives, each of shape (Q,).
+# Frame after frame of a trajectory needs the same ones.
+group_pair = lru_cache(maxsize=512)(GroupPair)
 
-    one, two: degree and l of the parts.  lean: logarithms of 2 mu / a and 2 mu / b.
+Shape = tuple[tuple[int, int], tuple[int, int], int]  # degree and l of two parts, and L
+
+
+def _radial(shape: Shape, kinetic: bool, lean: tuple[Floats, Floats]) -> Floats:
+    """Coefficients of (mu R**2)**0, ... in g_L / mu**(L/2) for normalised primitives, (m, Q).
+
+    lean: 2 mu / a and 2 mu / b.  The kinetic energy has a factor mu more.
     """
-    (degree, l), (degree2, l2) = one, two
+    (_, l), (_, l2), _ = shape
+    table = _coefficients(shape, kinetic)
+    left, right = lean
+    first = left ** (l / 2 + 0.75) * right ** (l2 / 2 + 0.75)
+    both = np.stack(
+        [first * left**u * right**v for u in range(len(table)) for v in range(table.shape[1])]
+    )
+    found: Floats = table.reshape(len(both), -1).T @ both
+    return found
+
+
+@cache
+def _coefficients(shape: Shape, kinetic: bool) -> Floats:
+    """Factors of (2 mu/a)**u (2 mu/b)**v (mu R**2)**j, shape (s+1, s'+1, m)."""
+    (degree, l), (degree2, l2), third = shape
     s, s2 = (degree - l) // 2, (degree2 - l2) // 2
     front = 8.0 * pi**1.5 / 2.0 ** (third + 2) * factorial(s) * factorial(s2) * 2.0 ** (s + s2)
     front /= sqrt(gamma(degree + 1.5)) * sqrt(gamma(degree2 + 1.5))
-    if kinetic:
-        front /= 2.0
+    front *= 2.0**third * (2.0 if kinetic else 1.0)  # (4 mu)**(L/2), and 4 mu / 2
     lowest = (l + l2 - third) // 2 + kinetic
-    rows = [np.zeros_like(mu) for _ in range(lowest + s + s2 + 1)]
-    scale = (4.0 * mu) ** (third / 2 + kinetic)
+    table = np.zeros((s + 1, s2 + 1, lowest + s + s2 + 1))
     for u in range(s + 1):
         for v in range(s2 + 1):
             n = lowest + u + v
             value = front * _laguerre(s, l + 0.5, u) * _laguerre(s2, l2 + 0.5, v)
             value *= factorial(n) / 2.0 ** (u + v)
-            whole = value * np.exp((l / 2 + 0.75 + u) * lean[0] + (l2 / 2 + 0.75 + v) * lean[1])
             for power in range(n + 1):
-                rows[power] += _laguerre(n, third + 0.5, power) * whole * scale * mu**power
-    return rows
+                table[u, v, power] = value * _laguerre(n, third + 0.5, power)
+    return table
 
 
+@cache
 def _laguerre(n: int, alpha: float, power: int) -> float:
     """Coefficient of x**power in the generalised Laguerre polynomial of degree n."""
-    size = lgamma(n + alpha + 1) - lgamma(n - power + 1) - lgamma(alpha + power + 1)
-    return float((-1) ** power * np.exp(size - lgamma(power + 1)))
+    value = Fraction((-1) ** power, factorial(power))
+    for step in range(1, n - power + 1):
+        value *= (Fraction(alpha) + power + step) / step
+    return float(value)
 
 
+@dataclass(frozen=True)
 class Tail:
     """How far primitive pairs are followed: what is left out of an element stays below a limit.
 
     limit: absolute bound of the error of any matrix element.
     """
 
-    def __init__(self, limit: float) -> None:
-        self.limit = limit
+    limit: float
 
     def reach(self, mu: Floats, bounds: dict[int, Floats]) -> Floats:
         """Distance from which each pair is left out, shape (Q,), bohr.
 
         bounds: for each q the factor of x**(q/2) exp(-x), x = mu R**2, in the bound of the pair.
         """
-        share = log(self.limit / len(mu))
-        with np.errstate(divide="ignore"):
-            logs = np.stack([np.log(row) for row in bounds.values()])
         half = np.array(list(bounds))[:, None] / 2.0
+        table = np.stack(list(bounds.values())) * (len(mu) / self.limit)
         # From the largest power on, every term falls; before, the pair is kept whatever it is.
-        low = np.full(len(mu), float(half.max()) + 1e-9)
-        high = low + 64.0
+        low = float(half.max()) + 1e-9
 
-        def too_large(x: Floats) -> np.ndarray[tuple[int, ...], np.dtype[np.bool_]]:
-            size = logs + half * np.log(x) - x
-            most = size.max(axis=0)
-            with np.errstate(invalid="ignore"):
-                total = most + np.log(np.exp(size - most).sum(axis=0))
-            return np.asarray(total > share)
+        def root(x: Floats) -> Floats:
+            with np.errstate(divide="ignore"):
+                return np.asarray(np.log((table * x**half).sum(axis=0)))
 
-        while (large := too_large(high)).any():
-            high[large] *= 2.0
-        for _ in range(26):
-            middle = 0.5 * (low + high)
-            large = too_large(middle)
-            low, high = np.where(large, middle, low), np.where(large, high, middle)
-        found: Floats = np.sqrt(high / mu)
+        # x = log P(x) has its largest root where P(x) exp(-x) falls below the share of a pair;
+        # iterated from above, x stays above it.
+        x = np.full(len(mu), low + 64.0)
+        while (above := root(x) > x).any():
+            x[above] *= 2.0
+        for _ in range(8):
+            x = np.maximum(root(x), low)
+        found: Floats = np.sqrt(x / mu)
         return found

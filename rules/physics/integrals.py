@@ -15,8 +15,9 @@ import numpy as np
 from scipy import sparse
 
 from overlapse.grammar.model import Floats
-from overlapse.rules.physics.classes import GroupPair, Kind, Tail, kinds
+from overlapse.rules.physics.classes import Tail, group_pair
 from overlapse.rules.physics.harmonics import solid_harmonics
+from overlapse.rules.physics.kinds import Kind, kinds
 from overlapse.rules.physics.placed import Ints, Placed
 
 LIMIT = 1e-15  # bound of what screening leaves out of a matrix element
@@ -55,7 +56,7 @@ class KindPair:
     def __init__(self, left: Kind, right: Kind, tail: Tail, kinetic: bool = False) -> None:
         self.left, self.right = left, right
         self.pairs = [
-            [GroupPair(one, two, tail, kinetic) for two in right.groups] for one in left.groups
+            [group_pair(one, two, tail, kinetic) for two in right.groups] for one in left.groups
         ]
         self.top = left.top + right.top
         self.size = left.size * right.size

@@ -10,6 +10,7 @@ points do not overlap; and the pair's bound (`classes`) falls with distance.
 """
 
 from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
 from itertools import product
 from math import gamma, pi
 from typing import Any, NamedTuple
@@ -19,7 +20,7 @@ import numpy.typing as npt
 from scipy import sparse
 
 from overlapse.grammar.model import Floats
-from overlapse.rules.physics.classes import Kind, Tail
+from overlapse.rules.physics.classes import Tail
 from overlapse.rules.physics.integrals import (
     WORKING,
     Frame,
@@ -28,6 +29,7 @@ from overlapse.rules.physics.integrals import (
     TooLarge,
     batch_size,
 )
+from overlapse.rules.physics.kinds import Kind
 from overlapse.rules.physics.placed import Ints, Placed
 
 Complexes = npt.NDArray[np.complex128]
@@ -74,6 +76,7 @@ def lattice_of(cell: Floats, periodic: Sequence[bool] = (True, True, True)) -> L
     return lattice
 
 
+@dataclass(frozen=True, eq=False)
 class LatticeTail(Tail):
     """What a lattice sum leaves out of an element stays below a limit.
 
@@ -81,9 +84,8 @@ class LatticeTail(Tail):
     not hold.
     """
 
-    def __init__(self, limit: float, lattice: Lattice, longest: float = np.inf) -> None:
-        super().__init__(limit)
-        self.lattice, self.longest = lattice, longest
+    lattice: Lattice
+    longest: float = np.inf
 
     def reach(self, mu: Floats, bounds: dict[int, Floats]) -> Floats:
         """Distance from which each pair is left out; see `classes.Tail.reach`."""
