@@ -23,7 +23,7 @@ import numpy as np
 
 from overlapse.grammar.elements import subshells
 from overlapse.grammar.model import Floats
-from overlapse.rules.physics.classes import Group, kinds
+from overlapse.rules.physics.kinds import Group, kinds
 from overlapse.rules.physics.harmonics import solid_harmonics, sphere
 from overlapse.rules.physics.placed import Placed
 from overlapse.rules.physics.slater import slater_zetas
