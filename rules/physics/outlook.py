@@ -47,6 +47,7 @@ STRAINED, FAILS = 6e4, 1.3e6  # of the measure m, with a field
 SMALL, TINY = 1e-7, 5e-10  # of the smallest eigenvalue, without a field
 UNPROTECTED = 1e-10  # eigenvalue below which symmetry alone is no comfort
 LOOKED_AT = 1e-6  # eigenvalues below are looked into
+LARGE = 700  # functions, from which other algorithms than full diagonalisation are cheaper
 GAP = 0.1  # hartree: smallest denominator, so that a degeneracy does not blow up the estimate
 
 
@@ -79,23 +80,26 @@ def foresee(
     empty: Sequence[int] = (),
     charge: int = 0,
     unpaired: int | None = None,
+    smallest: float | None = None,
 ) -> Outlook:
     """The outlook for placed atoms; a field is made where it is needed and can be afforded.
 
     overlap, kinetic: their matrices, shape (n, n), hartree.  empty: indices of atoms that only
     carry functions.  charge: of the molecule.  unpaired: electrons, the fewest possible where None.
+    smallest: eigenvalue of the overlap, where it is known already.
     """
     field = None
+    if smallest is None:
+        smallest = _smallest(overlap)
     nuclei = [0 if k in set(empty) else a.block.atomic_number for k, a in enumerate(atoms)]
     electrons = sum(nuclei) - charge
     whole = all(atom.block.potential is None for atom in atoms) and electrons > 0
-    if kinetic is not None and whole and affordable(atoms, len(overlap)):
-        smallest = float(np.linalg.eigvalsh(overlap)[0])
-        if _rounding(overlap) < smallest < LOOKED_AT:
-            up = (electrons + (electrons % 2 if unpaired is None else unpaired)) // 2
-            pair = (up, electrons - up)
-            field = Field(superposed_field(atoms, nuclei, overlap, kinetic, pair), pair)
-    return outlook(overlap, kinetic, functions, field=field)
+    doubtful = _rounding(overlap) <= smallest < LOOKED_AT
+    if kinetic is not None and doubtful and whole and affordable(atoms, len(overlap)):
+        up = (electrons + (electrons % 2 if unpaired is None else unpaired)) // 2
+        pair = (up, electrons - up)
+        field = Field(superposed_field(atoms, nuclei, overlap, kinetic, pair), pair)
+    return outlook(overlap, kinetic, functions, field=field, smallest=smallest)
 
 
 def outlook(
@@ -104,26 +108,28 @@ def outlook(
     functions: Functions | None = None,
     *,
     field: Field | None = None,
+    smallest: float | None = None,
 ) -> Outlook:
     """The outlook for an overlap matrix, shape (n, n), symmetric with ones on its diagonal.
 
     kinetic: matrix of the kinetic energy, hartree; needed where there is a field.  functions: only
-    to say in words what kind of combination it is.
+    to say in words what kind of combination it is.  smallest: as in `foresee`.
     """
-    values, vectors = np.linalg.eigh(overlap)
-    smallest = float(values[0])
+    if smallest is None:
+        smallest = _smallest(overlap)
     if smallest < _rounding(overlap):
         what = "S is not positive" if smallest <= 0.0 else "S is singular"
         reason = f"{what} within rounding (smallest eigenvalue {smallest:.1e})"
         return Outlook("fails", smallest, _rounding(overlap), reason)
     if smallest >= LOOKED_AT or kinetic is None or field is None:
-        return _by_eigenvalue(smallest, vectors[:, 0], kinetic, functions)
+        return _by_eigenvalue(smallest, overlap, kinetic, functions)
+    values, vectors = np.linalg.eigh(overlap)
     low = int(np.searchsorted(values, LOOKED_AT))
     held, height = _occupations(values, vectors, low, kinetic, field)
     measures = held ** (2 / 3) * height**0.25 / values[:low]
     worst = int(np.argmax(measures))
     measure = float(measures[worst])
-    kind = f", {described(vectors[:, worst], functions)}" if functions else ""
+    kind = f", {described(vectors[:, worst], functions)}" if functions is not None else ""
     reason = (
         f"a combination of eigenvalue {values[worst]:.1e} and kinetic energy "
         f"{height[worst]:.2g} hartree{kind} would hold about {held[worst]:.0e} electrons"
@@ -143,11 +149,30 @@ def _rounding(overlap: Floats) -> float:
     return float(np.finfo(float).eps * len(overlap) * np.abs(overlap).sum(axis=1).max())
 
 
+def _smallest(overlap: Floats) -> float:
+    if len(overlap) <= LARGE:
+        return float(np.linalg.eigvalsh(overlap)[0])
+    from overlapse.rules.physics.spectrum import smallest  # brings scipy, slow to import
+
+    return smallest(overlap)
+
+
+def _vector(overlap: Floats, smallest: float) -> Floats:
+    """A unit eigenvector of the smallest eigenvalue, shape (n,)."""
+    if len(overlap) <= LARGE:
+        return np.asarray(np.linalg.eigh(overlap)[1][:, 0])
+    from overlapse.rules.physics.spectrum import lowest
+
+    _, vectors = lowest(overlap, max(2.0 * smallest, smallest + _rounding(overlap)))
+    return np.asarray(vectors[:, 0])
+
+
 def _by_eigenvalue(
-    smallest: float, vector: Floats, kinetic: Floats | None, functions: Functions | None
+    smallest: float, overlap: Floats, kinetic: Floats | None, functions: Functions | None
 ) -> Outlook:
     reason = f"smallest eigenvalue {smallest:.1e}"
-    if smallest < LOOKED_AT:
+    if smallest < LOOKED_AT and (kinetic is not None or functions is not None):
+        vector = _vector(overlap, smallest)
         if kinetic is not None:
             height = float(vector @ kinetic @ vector) / smallest
             reason += f", kinetic energy of the combination {height:.2g} hartree"
