@@ -9,24 +9,25 @@ electrons are in f, energy and gradient carry a noise of about
 
 T = v' T v / lambda being the kinetic energy of f, whose root measures how compact f is.  So the
 same small eigenvalue can be harmless (tight twins that hold little, combinations that no occupied
-orbital has the symmetry of) or fatal.  The occupation is that of perturbation theory,
+orbital has the symmetry of) or fatal.  In the approximate field of `superposed` the occupied spin
+orbitals i are found among all combinations above 1e-9, and
 
-    p = sum over occupied spin orbitals i of  (F_fi / (F_ff - e_i))**2,
+    p = sum over i of  <f|i>**2,   below 1e-9, for want of digits,  (F_fi / (F_ff - e_i))**2.
 
-in the approximate field of `superposed`.  The measure is
+The measure is a sum over the combinations f of eigenvalues below 1e-6,
 
-    m = greatest, over the combinations f, of  p**(2/3) (T / hartree)**(1/4) / lambda.
+    m = sum of  p**(2/3) (T / hartree)**(1/4) / lambda.
 
 The powers are those of a logistic fit to 108 calculations without removal, rounded; they lie a
 little below the formula's because the estimate of p has an error of a factor of two or three.
 
-Limits, from the same calculations: no field failed below m = 6e4 in any of four ways to do the
-arithmetic, and nearly all did above m = 1.3e6; between the two the noise of the program decides.
-An eigenvalue that has nothing but symmetry to protect it (below 1e-10, where one-electron matrices
+Limits, from the same calculations: no field failed below m = 1.3e5 in any of four ways to do the
+arithmetic, and nearly all did above 2e6; between the two the noise of the program decides.  An
+eigenvalue that has nothing but symmetry to protect it (below 1e-10, where one-electron matrices
 lose their digits as well) is never called safe, and one within rounding of zero always fails.
 
 Without a field (too many functions, a core potential) only lambda is judged: fails below 5e-10,
-strained below 1e-7.  That is much coarser: of the calculations between these two, half failed.
+strained below 1e-7.  That is much coarser.
 
 Source: the perturbation formula is that of single excitations, A. Szabo, N. S. Ostlund, Modern
 Quantum Chemistry, chapter 6; calibration and judgement: tests/bench/outlook.py and its figures.
@@ -43,11 +44,12 @@ from overlapse.rules.physics.superposed import affordable, superposed_field
 
 Level = Literal["safe", "strained", "fails"]
 
-STRAINED, FAILS = 6e4, 1.3e6  # of the measure m, with a field
+STRAINED, FAILS = 8e4, 2e6  # of the measure m, with a field
 SMALL, TINY = 1e-7, 5e-10  # of the smallest eigenvalue, without a field
 UNPROTECTED = 1e-10  # eigenvalue below which symmetry alone is no comfort
 LOOKED_AT = 1e-6  # eigenvalues below are looked into
 LARGE = 700  # functions, from which other algorithms than full diagonalisation are cheaper
+DIGITS = 1e-9  # eigenvalue from which a combination can be treated like any other
 GAP = 0.1  # hartree: smallest denominator, so that a degeneracy does not blow up the estimate
 
 
@@ -128,7 +130,7 @@ def outlook(
     held, height = _occupations(values, vectors, low, kinetic, field)
     measures = held ** (2 / 3) * height**0.25 / values[:low]
     worst = int(np.argmax(measures))
-    measure = float(measures[worst])
+    measure = float(measures.sum())
     kind = f", {described(vectors[:, worst], functions)}" if functions is not None else ""
     reason = (
         f"a combination of eigenvalue {values[worst]:.1e} and kinetic energy "
@@ -190,16 +192,19 @@ def _occupations(
 ) -> tuple[Floats, Floats]:
     """Electrons in each of the ``low`` first combinations, and their kinetic energies, hartree."""
     fock = kinetic + field.potential
-    x = vectors[:, low:] / np.sqrt(values[low:])
+    least = int(np.searchsorted(values[:low], DIGITS))
+    x = vectors[:, least:] / np.sqrt(values[least:])
     energies, orbitals = np.linalg.eigh(x.T @ fock @ x)
     combinations = vectors[:, :low] / np.sqrt(values[:low])
-    levels = np.einsum("nf,nm,mf->f", combinations, fock, combinations)
     height = np.einsum("nf,nm,mf->f", combinations, kinetic, combinations)
-    coupling = (combinations.T @ fock) @ (x @ orbitals)
+    outside = combinations[:, :least]
+    levels = np.einsum("nf,nm,mf->f", outside, fock, outside)
     gaps = np.maximum(levels[:, None] - energies, GAP)
-    shares = (coupling / gaps) ** 2
-    held = sum(shares[:, :n].sum(axis=1) for n in field.electrons)
-    return np.asarray(held), np.maximum(height, 0.0)
+    shares = np.concatenate(
+        [(outside.T @ fock @ x @ orbitals / gaps) ** 2, orbitals[: low - least] ** 2]
+    )
+    held: Floats = sum(shares[:, :n].sum(axis=1) for n in field.electrons)
+    return held, np.maximum(height, 0.0)
 
 
 DIFFUSE, TIGHT = 0.1, 30.0  # bohr**-2: below and above, exponents are called so
