@@ -10,11 +10,10 @@ from overlapse.grammar.geometry import Atom
 from overlapse.grammar.model import Block, Floats
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.onecentre import eigenvalues
-from overlapse.rules.physics.outlook import LOOKED_AT, Outlook, by_eigenvalue, foresee
+from overlapse.rules.physics.outlook import LOOKED_AT, Outlook, foresee, outlook
 from overlapse.rules.physics.placed import Functions, Ints, Placed, lay_out
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
 from overlapse.rules.physics.spectrum import LADDER, SMALL, Matrix, Spectrum, lowest, spectrum
-from overlapse.rules.physics.superposed import affordable
 from overlapse.rules.probe import NEAR, Dropped, Function, Lattice, Left, Probe, Share, Small
 
 _BLAMED = 12  # eigenvalues whose combinations are looked into
@@ -142,25 +141,20 @@ def _outlook(
     found: Spectrum,
     energies: Floats | None,
 ) -> Outlook:
-    """The outlook by the cheapest way: no vector where S is sound, a field where it can be made."""
+    """The outlook; by the eigenvalue alone for crystals and for functions that are for fitting."""
+    if energies is None or any(site.fitting for site in sites):
+        return outlook(matrix, smallest=found.smallest)
     placed = [site.placed for site in sites]
-    if found.smallest >= LOOKED_AT:
-        return by_eigenvalue(found.smallest, np.zeros(0), None, None)
-    functions = lay_out(placed)
-    fitting = any(site.fitting for site in sites)
-    if energies is not None and not fitting and affordable(placed, len(matrix)):
-        empty = [k for k, site in enumerate(sites) if site.atom.ghost]
-        return foresee(
-            placed,
-            matrix,
-            energies,
-            functions,
-            empty=empty,
-            charge=wanted.charge,
-            unpaired=wanted.unpaired,
-        )
-    _, vectors = lowest(matrix, _above(found.smallest))
-    return by_eigenvalue(found.smallest, np.abs(vectors[:, 0]), None, functions)
+    return foresee(
+        placed,
+        matrix,
+        energies,
+        lay_out(placed),
+        empty=[k for k, site in enumerate(sites) if site.atom.ghost],
+        charge=wanted.charge,
+        unpaired=wanted.unpaired,
+        smallest=found.smallest,
+    )
 
 
 def _above(smallest: float) -> float:

@@ -9,24 +9,25 @@ electrons are in f, energy and gradient carry a noise of about
 
 T = v' T v / lambda being the kinetic energy of f, whose root measures how compact f is.  So the
 same small eigenvalue can be harmless (tight twins that hold little, combinations that no occupied
-orbital has the symmetry of) or fatal.  The occupation is that of perturbation theory,
+orbital has the symmetry of) or fatal.  In the approximate field of `superposed` the occupied spin
+orbitals i are found among all combinations above 1e-9, and
 
-    p = sum over occupied spin orbitals i of  (F_fi / (F_ff - e_i))**2,
+    p = sum over i of  <f|i>**2,   below 1e-9, for want of digits,  (F_fi / (F_ff - e_i))**2.
 
-in the approximate field of `superposed`.  The measure is
+The measure is a sum over the combinations f of eigenvalues below 1e-6,
 
-    m = greatest, over the combinations f, of  p**(2/3) (T / hartree)**(1/4) / lambda.
+    m = sum of  p**(2/3) (T / hartree)**(1/4) / lambda.
 
 The powers are those of a logistic fit to 108 calculations without removal, rounded; they lie a
 little below the formula's because the estimate of p has an error of a factor of two or three.
 
-Limits, from the same calculations: no field failed below m = 6e4 in any of four ways to do the
-arithmetic, and nearly all did above m = 1.3e6; between the two the noise of the program decides.
-An eigenvalue that has nothing but symmetry to protect it (below 1e-10, where one-electron matrices
+Limits, from the same calculations: no field failed below m = 1.3e5 in any of four ways to do the
+arithmetic, and nearly all did above 2e6; between the two the noise of the program decides.  An
+eigenvalue that has nothing but symmetry to protect it (below 1e-10, where one-electron matrices
 lose their digits as well) is never called safe, and one within rounding of zero always fails.
 
 Without a field (too many functions, a core potential) only lambda is judged: fails below 5e-10,
-strained below 1e-7.  That is much coarser: of the calculations between these two, half failed.
+strained below 1e-7.  That is much coarser.
 
 Source: the perturbation formula is that of single excitations, A. Szabo, N. S. Ostlund, Modern
 Quantum Chemistry, chapter 6; calibration and judgement: tests/bench/outlook.py and its figures.
@@ -43,10 +44,12 @@ from overlapse.rules.physics.superposed import affordable, superposed_field
 
 Level = Literal["safe", "strained", "fails"]
 
-STRAINED, FAILS = 6e4, 1.3e6  # of the measure m, with a field
+STRAINED, FAILS = 8e4, 2e6  # of the measure m, with a field
 SMALL, TINY = 1e-7, 5e-10  # of the smallest eigenvalue, without a field
 UNPROTECTED = 1e-10  # eigenvalue below which symmetry alone is no comfort
 LOOKED_AT = 1e-6  # eigenvalues below are looked into
+LARGE = 700  # functions, from which other algorithms than full diagonalisation are cheaper
+DIGITS = 1e-9  # eigenvalue from which a combination can be treated like any other
 GAP = 0.1  # hartree: smallest denominator, so that a degeneracy does not blow up the estimate
 
 
@@ -79,23 +82,26 @@ def foresee(
     empty: Sequence[int] = (),
     charge: int = 0,
     unpaired: int | None = None,
+    smallest: float | None = None,
 ) -> Outlook:
     """The outlook for placed atoms; a field is made where it is needed and can be afforded.
 
     overlap, kinetic: their matrices, shape (n, n), hartree.  empty: indices of atoms that only
     carry functions.  charge: of the molecule.  unpaired: electrons, the fewest possible where None.
+    smallest: eigenvalue of the overlap, where it is known already.
     """
     field = None
+    if smallest is None:
+        smallest = _smallest(overlap)
     nuclei = [0 if k in set(empty) else a.block.atomic_number for k, a in enumerate(atoms)]
     electrons = sum(nuclei) - charge
     whole = all(atom.block.potential is None for atom in atoms) and electrons > 0
-    if kinetic is not None and whole and affordable(atoms, len(overlap)):
-        smallest = float(np.linalg.eigvalsh(overlap)[0])
-        if _rounding(overlap) < smallest < LOOKED_AT:
-            up = (electrons + (electrons % 2 if unpaired is None else unpaired)) // 2
-            pair = (up, electrons - up)
-            field = Field(superposed_field(atoms, nuclei, overlap, kinetic, pair), pair)
-    return outlook(overlap, kinetic, functions, field=field)
+    doubtful = _rounding(overlap) <= smallest < LOOKED_AT
+    if kinetic is not None and doubtful and whole and affordable(atoms, len(overlap)):
+        up = (electrons + (electrons % 2 if unpaired is None else unpaired)) // 2
+        pair = (up, electrons - up)
+        field = Field(superposed_field(atoms, nuclei, overlap, kinetic, pair), pair)
+    return outlook(overlap, kinetic, functions, field=field, smallest=smallest)
 
 
 def outlook(
@@ -104,26 +110,28 @@ def outlook(
     functions: Functions | None = None,
     *,
     field: Field | None = None,
+    smallest: float | None = None,
 ) -> Outlook:
     """The outlook for an overlap matrix, shape (n, n), symmetric with ones on its diagonal.
 
     kinetic: matrix of the kinetic energy, hartree; needed where there is a field.  functions: only
-    to say in words what kind of combination it is.
+    to say in words what kind of combination it is.  smallest: as in `foresee`.
     """
-    values, vectors = np.linalg.eigh(overlap)
-    smallest = float(values[0])
+    if smallest is None:
+        smallest = _smallest(overlap)
     if smallest < _rounding(overlap):
         what = "S is not positive" if smallest <= 0.0 else "S is singular"
         reason = f"{what} within rounding (smallest eigenvalue {smallest:.1e})"
         return Outlook("fails", smallest, _rounding(overlap), reason)
     if smallest >= LOOKED_AT or kinetic is None or field is None:
-        return by_eigenvalue(smallest, vectors[:, 0], kinetic, functions)
+        return _by_eigenvalue(smallest, overlap, kinetic, functions)
+    values, vectors = np.linalg.eigh(overlap)
     low = int(np.searchsorted(values, LOOKED_AT))
     held, height = _occupations(values, vectors, low, kinetic, field)
     measures = held ** (2 / 3) * height**0.25 / values[:low]
     worst = int(np.argmax(measures))
-    measure = float(measures[worst])
-    kind = f", {described(vectors[:, worst], functions)}" if functions else ""
+    measure = float(measures.sum())
+    kind = f", {described(vectors[:, worst], functions)}" if functions is not None else ""
     reason = (
         f"a combination of eigenvalue {values[worst]:.1e} and kinetic energy "
         f"{height[worst]:.2g} hartree{kind} would hold about {held[worst]:.0e} electrons"
@@ -143,12 +151,30 @@ def _rounding(overlap: Floats) -> float:
     return float(np.finfo(float).eps * len(overlap) * np.abs(overlap).sum(axis=1).max())
 
 
-def by_eigenvalue(
-    smallest: float, vector: Floats, kinetic: Floats | None, functions: Functions | None
+def _smallest(overlap: Floats) -> float:
+    if len(overlap) <= LARGE:
+        return float(np.linalg.eigvalsh(overlap)[0])
+    from overlapse.rules.physics.spectrum import smallest  # brings scipy, slow to import
+
+    return smallest(overlap)
+
+
+def _vector(overlap: Floats, smallest: float) -> Floats:
+    """A unit eigenvector of the smallest eigenvalue, shape (n,)."""
+    if len(overlap) <= LARGE:
+        return np.asarray(np.linalg.eigh(overlap)[1][:, 0])
+    from overlapse.rules.physics.spectrum import lowest
+
+    _, vectors = lowest(overlap, max(2.0 * smallest, smallest + _rounding(overlap)))
+    return np.asarray(vectors[:, 0])
+
+
+def _by_eigenvalue(
+    smallest: float, overlap: Floats, kinetic: Floats | None, functions: Functions | None
 ) -> Outlook:
-    """The outlook without a field, for which one eigenvalue and its vector suffice."""
     reason = f"smallest eigenvalue {smallest:.1e}"
-    if smallest < LOOKED_AT:
+    if smallest < LOOKED_AT and (kinetic is not None or functions is not None):
+        vector = _vector(overlap, smallest)
         if kinetic is not None:
             height = float(vector @ kinetic @ vector) / smallest
             reason += f", kinetic energy of the combination {height:.2g} hartree"
@@ -166,16 +192,19 @@ def _occupations(
 ) -> tuple[Floats, Floats]:
     """Electrons in each of the ``low`` first combinations, and their kinetic energies, hartree."""
     fock = kinetic + field.potential
-    x = vectors[:, low:] / np.sqrt(values[low:])
+    least = int(np.searchsorted(values[:low], DIGITS))
+    x = vectors[:, least:] / np.sqrt(values[least:])
     energies, orbitals = np.linalg.eigh(x.T @ fock @ x)
     combinations = vectors[:, :low] / np.sqrt(values[:low])
-    levels = np.einsum("nf,nm,mf->f", combinations, fock, combinations)
     height = np.einsum("nf,nm,mf->f", combinations, kinetic, combinations)
-    coupling = (combinations.T @ fock) @ (x @ orbitals)
+    outside = combinations[:, :least]
+    levels = np.einsum("nf,nm,mf->f", outside, fock, outside)
     gaps = np.maximum(levels[:, None] - energies, GAP)
-    shares = (coupling / gaps) ** 2
-    held = sum(shares[:, :n].sum(axis=1) for n in field.electrons)
-    return np.asarray(held), np.maximum(height, 0.0)
+    shares = np.concatenate(
+        [(outside.T @ fock @ x @ orbitals / gaps) ** 2, orbitals[: low - least] ** 2]
+    )
+    held: Floats = sum(shares[:, :n].sum(axis=1) for n in field.electrons)
+    return held, np.maximum(height, 0.0)
 
 
 DIFFUSE, TIGHT = 0.1, 30.0  # bohr**-2: below and above, exponents are called so

@@ -23,8 +23,8 @@ import numpy as np
 
 from overlapse.grammar.elements import subshells
 from overlapse.grammar.model import Floats
+from overlapse.rules.physics.harmonics import cartesian_parts, solid_harmonics, sphere
 from overlapse.rules.physics.kinds import Group, kinds
-from overlapse.rules.physics.harmonics import solid_harmonics, sphere
 from overlapse.rules.physics.placed import Placed
 from overlapse.rules.physics.slater import slater_zetas
 
@@ -140,12 +140,19 @@ def _values(points: Floats, positions: Floats, atoms: Sequence[Placed]) -> Float
         found = np.empty((members[index].size, len(points)))
         for group in members[index].groups:
             for place, part in zip(group.place, _radial(group, square), strict=True):
-                for l, expansion in group.parts:
+                for l, expansion in _parts(group):
                     block = (expansion @ harmonics[l]) * (part * square ** ((group.l - l) // 2))
                     into = slice(place, place + group.components)
                     found[into] = block if l == group.l else found[into] + block
         rows.append(found)
     return np.concatenate(rows)
+
+
+def _parts(group: Group) -> tuple[tuple[int, Floats], ...]:
+    """Pairs of l and the expansion of a component in harmonics of that l."""
+    if group.spherical:
+        return ((group.l, np.eye(2 * group.l + 1)),)
+    return cartesian_parts(group.l)
 
 
 def _radial(group: Group, square: Floats) -> Floats:

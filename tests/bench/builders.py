@@ -34,7 +34,7 @@ class System:
     cartesian: bool = False
 
     def molecule(self, turned: bool = False) -> gto.Mole:
-        """The oracle's molecule; ``turned`` to an arbitrary direction, which moves all roundings."""
+        """The oracle's molecule; ``turned`` moves all roundings."""
         atoms = [(s, _turn(p) if turned else p) for s, p in self.atoms]
         return gto.M(
             atom=atoms,

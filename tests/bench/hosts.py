@@ -131,7 +131,12 @@ def removed(system: System, molecule: Any, eri: Any) -> tuple[Run, int, float]:
     fock, orbitals = np.asarray(field.get_fock()), np.asarray(field.mo_coeff)
     energies, numbers = np.asarray(field.mo_energy), np.asarray(field.mo_occ)
     if fock.ndim == 2:
-        fock, orbitals, energies, numbers = fock[None], orbitals[None], energies[None], numbers[None]
+        fock, orbitals, energies, numbers = (
+            fock[None],
+            orbitals[None],
+            energies[None],
+            numbers[None],
+        )
     worth = 0.0
     for f, c, e, n in zip(fock, orbitals, energies, numbers, strict=True):
         inside = out.T @ f @ out

@@ -55,7 +55,13 @@ def calibration() -> list[System]:
     neon = published("def2-svp", "Ne")
     for ratio in (1.001, 1.0002, 1.00005, 1.00002):
         add(f"Ne, twins s 500, {ratio}", chain(["Ne"], 1), twins(neon, "Ne", 0, 500.0, ratio))
-    for exponent, ratio in ((60.0, 1.0002), (60.0, 1.00005), (60.0, 1.00002), (8.0, 1.0001), (8.0, 1.00004)):
+    for exponent, ratio in (
+        (60.0, 1.0002),
+        (60.0, 1.00005),
+        (60.0, 1.00002),
+        (8.0, 1.0001),
+        (8.0, 1.00004),
+    ):
         base = twins(published("def2-svp", "Ar"), "Ar", 1, exponent, ratio)
         add(f"Ar, twins p {exponent:g}, {ratio}", chain(["Ar"], 1), base)
     for ratio in (1.0003, 1.0001, 1.00004):
@@ -165,18 +171,36 @@ def judging() -> list[System]:
         found.append(System(name, atoms, basis, **more))
 
     # Sound sets at sound distances.
-    add("silane, cc-pVTZ on Si, cc-pVDZ on H", centred("Si", "H", 1.48),
-        published(Si="cc-pvtz", H="cc-pvdz"))
-    add("hydrogen cyanide, aug-cc-pVDZ", [("H", (0, 0, -1.07)), *chain("CN", 1.16)],
-        published("aug-cc-pvdz", "H", "C", "N"))
-    add("butadiyne, 6-31++G**", [("H", (0, 0, -1.06)), ("C", (0, 0, 0)), ("C", (0, 0, 1.21)),
-        ("C", (0, 0, 2.58)), ("C", (0, 0, 3.79)), ("H", (0, 0, 4.85))],
-        published("6-31++g**", "H", "C"))
+    add(
+        "silane, cc-pVTZ on Si, cc-pVDZ on H",
+        centred("Si", "H", 1.48),
+        published(Si="cc-pvtz", H="cc-pvdz"),
+    )
+    add(
+        "hydrogen cyanide, aug-cc-pVDZ",
+        [("H", (0, 0, -1.07)), *chain("CN", 1.16)],
+        published("aug-cc-pvdz", "H", "C", "N"),
+    )
+    add(
+        "butadiyne, 6-31++G**",
+        [
+            ("H", (0, 0, -1.06)),
+            ("C", (0, 0, 0)),
+            ("C", (0, 0, 1.21)),
+            ("C", (0, 0, 2.58)),
+            ("C", (0, 0, 3.79)),
+            ("H", (0, 0, 4.85)),
+        ],
+        published("6-31++g**", "H", "C"),
+    )
     # Near-twins of valence exponents.
     for ratio in (1.02, 1.006, 1.002):
         base = published("def2-svp", "Si", "H")
-        add(f"silane, twins s 0.15 on all, {ratio}", centred("Si", "H", 1.48),
-            twins(base, "Si H", 0, 0.15, ratio))
+        add(
+            f"silane, twins s 0.15 on all, {ratio}",
+            centred("Si", "H", 1.48),
+            twins(base, "Si H", 0, 0.15, ratio),
+        )
     for ratio in (1.0012, 1.0006, 1.0003):
         base = twins(published("cc-pvdz", "N"), "N", 2, 0.6, ratio)
         add(f"N2, twins d 0.6, {ratio}", chain("NN", 1.1), base)
@@ -196,8 +220,11 @@ def judging() -> list[System]:
         base = twins(published("cc-pvdz", "Ne"), "Ne", 1, 90.0, ratio)
         add(f"Ne, twins p 90, {ratio}", chain(["Ne"], 1), base)
     base = twins(published("def2-svp", "S", "H"), "S", 0, 120.0, 1.0001)
-    add("hydrogen sulphide, twins s 120 on S, 1.0001",
-        [("S", (0, 0, 0)), ("H", (0, 0.97, 0.93)), ("H", (0, -0.97, 0.93))], base)
+    add(
+        "hydrogen sulphide, twins s 120 on S, 1.0001",
+        [("S", (0, 0, 0)), ("H", (0, 0.97, 0.93)), ("H", (0, -0.97, 0.93))],
+        base,
+    )
     for ratio in (1.0025, 1.0007, 1.0003):
         base = twins(published("def2-svp", "Na", "H"), "Na", 0, 0.012, ratio)
         add(f"NaH, twins s 0.012 on Na, {ratio}", chain(["Na", "H"], 1.89), base)
@@ -229,7 +256,11 @@ def judging() -> list[System]:
     for factor in (0.75, 0.4):
         base = diffuse(published("def2-svpd", "C", "N", "H"), "C N H", 2, 0.4)
         atoms = [("H", (0.0, 0.0, -1.07)), *chain("CN", 1.16)]
-        add(f"hydrogen cyanide, def2-SVPD and two diffuse steps, squeezed to {factor}", squeezed(atoms, factor), base)
+        add(
+            f"hydrogen cyanide, def2-SVPD and two diffuse steps, squeezed to {factor}",
+            squeezed(atoms, factor),
+            base,
+        )
     base = published("aug-cc-pvdz", "O", "H")
     add("two waters, aug-cc-pVDZ, squeezed to 0.35", squeezed(water() + water(2.9), 0.35), base)
     # One centre, long series.
@@ -245,8 +276,7 @@ def judging() -> list[System]:
         add(f"CuF, twins d 0.8 on Cu, {ratio}", chain(["Cu", "F"], 1.75), base)
     for ratio in (1.01, 1.003):
         base = twins(published("def2-svp", "Sc", "H"), "Sc", 0, 0.05, ratio)
-        add(f"ScH3, twins s 0.05 on Sc, {ratio}",
-            [("Sc", (0, 0, 0)), *ring("HHH", 3.14)], base)
+        add(f"ScH3, twins s 0.05 on Sc, {ratio}", [("Sc", (0, 0, 0)), *ring("HHH", 3.14)], base)
     base = twins(published("def2-svp", "Fe"), "Fe", 0, 1500.0, 1.0001)
     add("Fe, unrestricted, twins s 1500, 1.0001", chain(["Fe"], 1), base, spin=4)
     base = twins(published("def2-svp", "V"), "V", 1, 0.15, 1.0006)
@@ -274,8 +304,11 @@ def judging() -> list[System]:
     base = published("6-31+g*", "O", "H")
     base["X-O"] = base["O"]
     for distance in (0.3, 0.17, 0.1):
-        add(f"water, empty centre {distance} from O",
-            [*water(), ("X-O", (distance, 0.0, 0.0))], base)
+        add(
+            f"water, empty centre {distance} from O",
+            [*water(), ("X-O", (distance, 0.0, 0.0))],
+            base,
+        )
     return found
 
 
