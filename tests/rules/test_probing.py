@@ -1,5 +1,7 @@
 """Measurements in real geometries: numbers, shares, what to drop, and what rules say of them."""
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from probed import probed
@@ -88,8 +90,6 @@ def test_cartesian_functions_are_compared_with_spherical_ones() -> None:
     shells = "".join(f"S 1 1.0\n {a} 1.0\n" for a in (1.0, 0.5, 0.25, 0.12, 0.06))
     shells += "".join(f"D 1 1.0\n {a} 1.0\n" for a in (0.7, 0.35, 0.17, 0.09))
     document = read_text(f"H 0\n{shells}****\n")
-    from dataclasses import replace
-
     (members,) = document.sets
     blocks = tuple(replace(block, functions="cartesian") for block in members.blocks)
     case = probed(replace(document, sets=(replace(members, blocks=blocks),)), H2)
@@ -155,8 +155,6 @@ def test_an_eigenvalue_near_the_threshold_is_told() -> None:
 
 
 def test_a_fitting_set_has_no_outlook() -> None:
-    from dataclasses import replace
-
     document = read_text(TWINS.replace("0.0503", "0.0500001"))
     (members,) = document.sets
     fitting = replace(document, sets=(replace(members, role="fitting"),))
@@ -200,7 +198,6 @@ def test_set_and_truncated_sums_are_told_apart() -> None:
     first, listed = _found(case, "overlap.lattice")
     assert first.severity == "warning"
     assert "comes from the set" in first.message
-    assert "negative eigenvalue" in first.message
     assert listed.severity == "note"
     assert listed.measured == 0.04
     assert "below 0.1" in listed.message
@@ -212,3 +209,16 @@ def test_set_and_truncated_sums_are_told_apart() -> None:
     assert probe.after.smallest > 1e-8
     sound = probed(read_text("H 0\nS 1 1.00\n 0.5 1.0\n****\n"), cube)
     assert not _found(sound, "overlap.lattice")
+    # What a cut makes of it depends on where it is; here it is set.
+    (finding,) = _found(_cut(case, -1e-7), "overlap.lattice")[:1]
+    assert "make a negative eigenvalue of it" in finding.message
+    (finding,) = _found(_cut(sound, -1e-3), "overlap.lattice")
+    assert finding.severity == "note"
+    assert "the set is sound" in finding.message
+    assert finding.measured == -1e-3
+
+
+def _cut(case: Case, value: float) -> Case:
+    (probe,) = case.probes
+    assert probe.lattice is not None
+    return Case(case.document, probes=[replace(probe, lattice=replace(probe.lattice, cut=value))])
