@@ -217,12 +217,21 @@ def screened(shelf: Shelf, probes: Sequence[Probe], audits: Sequence[FileAudit] 
     return Screening(tuple(probes), tuple(by_frame), (*judged(shelf, probes), *audits))
 
 
+def probes_of(
+    basis: Sequence[Path],
+    geometry: Path,
+    wanted: Wanted = Wanted(),  # noqa: B008  it is a constant
+) -> list[Probe]:
+    """Measurements of basis files in one geometry, a file or a folder.  Raises as `probe_files`."""
+    return _measured(_read(basis, ()), geometry, wanted, None)[0]
+
+
 def probe_files(
     basis: Sequence[Path],
     geometry: Path,
     *,
     uses: Sequence[Use] = (),
-    wanted: Wanted = Wanted(),  # noqa: B008  it is a constant
+    wanted: Wanted = Wanted(),  # noqa: B008
     label: str = "",
     spherical: bool | None = None,
     unit: Unit | None = None,
@@ -233,11 +242,23 @@ def probe_files(
     ScreenError, `overlapse.lint.choices.ChoiceError` or
     `overlapse.grammar.geometry.GeometryError` for what cannot be screened.
     """
+    made = _read(basis, uses, label, spherical)
+    probes, audits = _measured(made, geometry, wanted, unit)
+    return {audit.path: list(audit.findings) for audit in [*judged(made, probes), *audits]}
+
+
+def _read(
+    basis: Sequence[Path], uses: Sequence[Use], label: str = "", spherical: bool | None = None
+) -> Shelf:
     documents = [read_basis(path, path.read_bytes()) for path in basis]
     chosen = [(use, read_basis(use.path, use.path.read_bytes())) for use in uses]
-    made = shelf(documents, chosen, wanted=label, spherical=spherical)
+    return shelf(documents, chosen, wanted=label, spherical=spherical)
+
+
+def _measured(
+    made: Shelf, geometry: Path, wanted: Wanted, unit: Unit | None
+) -> tuple[list[Probe], list[FileAudit]]:
     read = [geometries.read(path, unit=unit) for path in geometry_files([geometry])]
     found, audits = tasks(made, read)
     check_memory(found, memory.allowed())
-    probes = [measure(task, made, wanted) for task in found]
-    return {audit.path: list(audit.findings) for audit in [*judged(made, probes), *audits]}
+    return [measure(task, made, wanted) for task in found], audits

@@ -180,6 +180,7 @@ def _function_object(function: Function) -> dict[str, Any]:
     return {
         "element": function.element,
         "shell": function.name,
+        "part": function.letter or None,
         "exponent": function.exponent,
         "path": function.path,
         "line": function.line,

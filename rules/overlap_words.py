@@ -82,12 +82,12 @@ def remedy(probe: Probe) -> str:
 def _remedies(probe: Probe) -> Iterator[str]:
     counterpart = probe.counterpart
     if counterpart is not None and counterpart.smallest > 10.0 * max(probe.smallest, 0.0):
-        yield f"use spherical functions: smallest eigenvalue {counterpart.smallest:.1e}"
+        yield f"use spherical functions: smallest eigenvalue {plain(counterpart.smallest)}"
     if probe.drop:
         told = f"drop {dropped(probe.drop)}"
         if probe.after is not None:
             left = probe.after
-            told += f": {left.functions} functions stay, smallest eigenvalue {left.smallest:.1e}"
+            told += f": {left.functions} functions stay, smallest eigenvalue {plain(left.smallest)}"
         yield told
     kinds: Sequence[Function] = [
         share.function for small in probe.blame[:3] for share in small.kinds if share.weight > 0.1
@@ -97,6 +97,16 @@ def _remedies(probe: Probe) -> Iterator[str]:
 
 
 def dropped(parts: Sequence[Dropped], most: int = 6) -> str:
-    """Functions to drop, in a row: C s-4 (0.0469), H s-3 (0.0297) of atom 4."""
-    words = [str(p.function) + (f" of atom {p.atom}" if p.atom else "") for p in parts]
+    """Functions to drop, in a row: C s-4 (0.0469), H s-3 (0.0297) of atom 4.
+
+    A shared shell that goes with both its parts is told once.
+    """
+    groups: dict[tuple[str, str, int], list[Function]] = {}
+    for part in parts:
+        key = (part.function.element, part.function.name, part.atom)
+        groups.setdefault(key, []).append(part.function)
+    words = []
+    for (_, _, atom), members in groups.items():
+        first = members[0] if len(members) == 1 else members[0]._replace(letter="")
+        words.append(str(first) + (f" of atom {atom}" if atom else ""))
     return listed(words, most)

@@ -18,8 +18,9 @@ class Function(NamedTuple):
 
     path, line: of its shell's heading.  shell: its name, "s-4"; column: of its coefficients,
     counted from 0, and name: the shell's with the column, "s-4/2", where the contraction is
-    general.  exponent: bohr**-2, the smallest with weight in the contraction.  outermost: a lone
-    primitive, and the loosest of its angular momentum.
+    general.  letter: "s" or "p" where the shell has both, else "".  exponent: bohr**-2, the
+    smallest with weight in the contraction.  outermost: a lone primitive, and the loosest of its
+    angular momentum.
     """
 
     path: str
@@ -28,11 +29,17 @@ class Function(NamedTuple):
     shell: str
     name: str
     column: int
+    letter: str
     exponent: float
     outermost: bool = False
 
     def __str__(self) -> str:
-        return f"{self.element} {self.name} ({self.exponent:.4g})"
+        return f"{' '.join(self.words)} ({self.exponent:.4g})"
+
+    @property
+    def words(self) -> tuple[str, ...]:
+        """Element, shell, and the part of a shared shell."""
+        return (self.element, self.name, *([self.letter] if self.letter else []))
 
 
 class Share(NamedTuple):

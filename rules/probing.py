@@ -7,7 +7,7 @@ from typing import NamedTuple
 import numpy as np
 
 from overlapse.grammar.geometry import Atom
-from overlapse.grammar.model import Block, Floats
+from overlapse.grammar.model import Block, Floats, letter_of
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.onecentre import eigenvalues
 from overlapse.rules.physics.outlook import LOOKED_AT, Outlook, foresee, outlook
@@ -264,6 +264,7 @@ def described(site: Site, index: int, column: int, exponent: float) -> Function:
         site.block.names[index],
         name,
         column,
+        letter_of(shell.angular[column // shell.columns_per_l]) * (len(shell.angular) > 1),
         exponent,
         _is_outermost(site.block, index, column),
     )

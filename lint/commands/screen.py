@@ -29,6 +29,7 @@ if TYPE_CHECKING:
 
 # Below this much work (cubes of the numbers of functions) no bar would be seen.
 _QUIET = 2e9
+_STDIN = Path("-")
 
 
 class _Screen(click.Command):
@@ -83,13 +84,13 @@ def _a_fraction(context: click.Context, parameter: click.Parameter, value: float
 
 
 @click.command(cls=_Screen)
-@click.argument("basis", nargs=-1, type=click.Path(dir_okay=False, path_type=Path))
+@click.argument("basis", nargs=-1, type=click.Path(dir_okay=False, allow_dash=True, path_type=Path))
 @click.option(
     "--on",
     "geometry",
     multiple=True,
     required=True,
-    type=click.Path(path_type=Path),
+    type=click.Path(allow_dash=True, path_type=Path),
     help="Geometry files, or folders of XYZ files; all words up to the next option.",
 )
 @click.option(
@@ -159,6 +160,7 @@ def _a_fraction(context: click.Context, parameter: click.Parameter, value: float
 @click.option("--report", callback=a_report, default="text", help="text, lines, json or sarif.")
 @click.option("--out", type=click.Path(path_type=Path), help="Write the report to this file.")
 @click.option("--layout", callback=a_layout, help="Read all basis files as this layout.")
+@click.option("--named", default="<stdin>", help="File name to report for standard input (-).")
 @click.option("--fail-at", type=SEVERITIES, help="Level from which the screening fails [warning].")
 @click.option("--least", type=SEVERITIES, default="note", help="Least level to show [note].")
 def screen(
@@ -181,12 +183,14 @@ def screen(
     report: str,
     out: Path | None,
     layout: str | None,
+    named: str,
     fail_at: str | None,
     least: str,
 ) -> None:
     """Measure the overlap of BASIS files in real molecules or cells, before a field is solved.
 
-    Name the basis files first: overlapse screen c.basis --on molecule.xyz
+    Name the basis files first: overlapse screen c.basis --on molecule.xyz.  One of all files may be
+    standard input (-).
 
     Exit status: 0 nothing found at the failing level, 1 something found, 2 wrong use or settings,
     3 a file could not be read.
@@ -200,8 +204,10 @@ def screen(
         raise click.UsageError("name a basis file: overlapse screen BASIS... --on GEOMETRY...")
     if folder is not None and per_atom:
         raise click.UsageError("a basis file serves all atoms of an element: leave out --per-atom")
-    shelf = _shelf(basis, uses, layout, wanted, spherical)
-    read = list(_geometries(geometry, unit))
+    if [*basis, *geometry].count(_STDIN) > 1:
+        raise click.UsageError("standard input can stand for one file only")
+    shelf = _shelf(basis, uses, layout, named, wanted, spherical)
+    read = list(_geometries(geometry, unit, named))
     try:
         found, audits = tasks(shelf, read)
         check_memory(found, limit)
@@ -252,6 +258,7 @@ def _shelf(
     basis: Sequence[Path],
     uses: "Sequence[Use]",
     layout: str | None,
+    named: str,
     wanted: str,
     spherical: bool | None,
 ) -> "Shelf":
@@ -260,7 +267,7 @@ def _shelf(
     read: dict[Path, Document] = {}
     for path in [*basis, *(use.path for use in uses)]:
         if path not in read:
-            read[path] = _document(path, layout)
+            read[path] = _document(path, layout, named)
     try:
         return shelf(
             [read[path] for path in dict.fromkeys(basis)],
@@ -272,10 +279,12 @@ def _shelf(
         raise click.UsageError(str(problem)) from problem
 
 
-def _document(path: Path, layout: str | None) -> "Document":
+def _document(path: Path, layout: str | None, named: str) -> "Document":
     from overlapse.lint.screening import ScreenError, read_basis
 
     try:
+        if path == _STDIN:
+            return read_basis(Path(named), sys.stdin.buffer.read(), layout)
         return read_basis(path, path.read_bytes(), layout)
     except OSError as problem:
         raise Unreadable(f"{path}: {problem.strerror or problem}") from problem
@@ -283,8 +292,8 @@ def _document(path: Path, layout: str | None) -> "Document":
         raise Unreadable(str(problem)) from problem
 
 
-def _geometries(paths: Sequence[Path], unit: "Unit | None") -> "Iterator[Geometry]":
-    from overlapse.grammar.geometry import GeometryError, read
+def _geometries(paths: Sequence[Path], unit: "Unit | None", named: str) -> "Iterator[Geometry]":
+    from overlapse.grammar.geometry import GeometryError, read, read_bytes
     from overlapse.lint.screening import geometry_files
 
     found = list(geometry_files(paths))
@@ -292,7 +301,10 @@ def _geometries(paths: Sequence[Path], unit: "Unit | None") -> "Iterator[Geometr
         raise Unreadable(f"no geometry in {', '.join(map(str, paths))}: folders hold .xyz files")
     for path in found:
         try:
-            yield read(path, unit=unit)
+            if path == _STDIN:
+                yield read_bytes(sys.stdin.buffer.read(), named, unit=unit)
+            else:
+                yield read(path, unit=unit)
         except OSError as problem:
             raise Unreadable(f"{path}: {problem.strerror or problem}") from problem
         except GeometryError as problem:

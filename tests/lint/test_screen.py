@@ -36,10 +36,17 @@ H   0.000000  -0.757200  -0.469200
 """
 
 
-def run(*arguments: str | Path, cwd: Path | None = None) -> subprocess.CompletedProcess[str]:
+def run(
+    *arguments: str | Path, cwd: Path | None = None, text: str = ""
+) -> subprocess.CompletedProcess[str]:
     command = [sys.executable, "-c", "from overlapse.lint.cli import main; main()", "screen"]
     done = subprocess.run(
-        [*command, *map(os.fspath, arguments)], capture_output=True, check=False, cwd=cwd, text=True
+        [*command, *map(os.fspath, arguments)],
+        capture_output=True,
+        check=False,
+        cwd=cwd,
+        text=True,
+        input=text,
     )
     assert "Traceback" not in done.stderr, done.stderr
     return done
@@ -248,6 +255,18 @@ def test_wrong_use(folder: Path, arguments: list[str], status: int, told: str) -
     done = run(*arguments, cwd=folder)
     assert done.returncode == status, done.stderr
     assert told in done.stderr
+
+
+def test_standard_input_stands_for_a_basis_or_a_geometry(folder: Path) -> None:
+    done = run(
+        "-", "--on", folder / "water.xyz", "--named", "sent", "--report", "lines", text=BASIS
+    )
+    assert done.returncode == 1
+    assert done.stdout.startswith("sent:")
+    done = run(folder / "sound.basis", "--on", "-", "--named", "sent", text=WATER)
+    assert done.returncode == 0
+    assert done.stdout.startswith("sent, frame 1: H2O")
+    assert run("-", "--on", "-").returncode == 2
 
 
 def test_all_words_behind_on_are_geometries(folder: Path) -> None:
