@@ -12,7 +12,7 @@ import click
 
 from overlapse.lint.engine import FileAudit, audit_file, targets
 from overlapse.lint.reports import text
-from overlapse.lint.screening import probes_of
+from overlapse.lint.screening import screen_files
 from overlapse.lint.settings import Settings
 
 _STORY = (
@@ -82,7 +82,7 @@ def _screens(folder: Path) -> str:
     told = "Two molecules of the lab, screened before a field is solved:\n\n"
     for entry in screens():
         basis, geometry = folder / entry["basis"], folder / entry["geometry"]
-        for probe in probes_of([basis], geometry):
+        for probe in screen_files([basis], geometry).probes:
             what = f"smallest eigenvalue {plain(probe.smallest)}, outlook {probe.outlook.level}"
             if probe.drop:
                 what += f"; to drop: {dropped(probe.drop)}"

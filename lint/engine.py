@@ -29,7 +29,7 @@ class FileAudit:
 
     document: None for a file that could not be opened; problem says why.  label: the claimed label
     that weighs most, with where it was found.  passed_over: no layout was recognised and that was
-    allowed.
+    allowed.  probes: what was measured of it in geometries.
     """
 
     path: str
@@ -40,6 +40,7 @@ class FileAudit:
     problem: str = ""
     passed_over: bool = False
     settings: Settings = field(default_factory=Settings)
+    probes: tuple[Probe, ...] = ()
 
     @property
     def fails(self) -> bool:
@@ -161,4 +162,5 @@ def judge(
         claims[0].label if claims else None,
         claims[0].where if claims else "",
         settings=settings,
+        probes=case.probes,
     )

@@ -7,7 +7,7 @@ import os
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 
@@ -217,48 +217,33 @@ def screened(shelf: Shelf, probes: Sequence[Probe], audits: Sequence[FileAudit] 
     return Screening(tuple(probes), tuple(by_frame), (*judged(shelf, probes), *audits))
 
 
-def probes_of(
-    basis: Sequence[Path],
-    geometry: Path,
-    wanted: Wanted = Wanted(),  # noqa: B008  it is a constant
-) -> list[Probe]:
-    """Measurements of basis files in one geometry, a file or a folder.  Raises as `probe_files`."""
-    return _measured(_read(basis, ()), geometry, wanted, None)[0]
-
-
-def probe_files(
+def screen_files(
     basis: Sequence[Path],
     geometry: Path,
     *,
     uses: Sequence[Use] = (),
-    wanted: Wanted = Wanted(),  # noqa: B008
+    wanted: Wanted = Wanted(),  # noqa: B008  it is a constant
     label: str = "",
     spherical: bool | None = None,
     unit: Unit | None = None,
-) -> dict[str, list[Finding]]:
-    """Findings of basis files in one geometry (a file or a folder), by the path of the file.
+) -> Screening:
+    """Screen basis files in one geometry, a file or a folder of XYZ files.
 
-    The geometry's own faults come under its path.  Raises OSError for files that cannot be opened,
-    ScreenError, `overlapse.lint.choices.ChoiceError` or
+    uses: files for elements or atoms; label: of the set to take where a file has several;
+    spherical: kind of the functions, None to follow the files.  Raises OSError for files that
+    cannot be opened, ScreenError, `overlapse.lint.choices.ChoiceError` or
     `overlapse.grammar.geometry.GeometryError` for what cannot be screened.
     """
-    made = _read(basis, uses, label, spherical)
-    probes, audits = _measured(made, geometry, wanted, unit)
-    return {audit.path: list(audit.findings) for audit in [*judged(made, probes), *audits]}
-
-
-def _read(
-    basis: Sequence[Path], uses: Sequence[Use], label: str = "", spherical: bool | None = None
-) -> Shelf:
     documents = [read_basis(path, path.read_bytes()) for path in basis]
     chosen = [(use, read_basis(use.path, use.path.read_bytes())) for use in uses]
-    return shelf(documents, chosen, wanted=label, spherical=spherical)
-
-
-def _measured(
-    made: Shelf, geometry: Path, wanted: Wanted, unit: Unit | None
-) -> tuple[list[Probe], list[FileAudit]]:
+    made = shelf(documents, chosen, wanted=label, spherical=spherical)
     read = [geometries.read(path, unit=unit) for path in geometry_files([geometry])]
     found, audits = tasks(made, read)
     check_memory(found, memory.allowed())
-    return [measure(task, made, wanted) for task in found], audits
+    return screened(made, [measure(task, made, wanted) for task in found], audits)
+
+
+def probe_files(basis: Sequence[Path], geometry: Path, **options: Any) -> dict[str, list[Finding]]:
+    """Findings of basis files in one geometry, by the path of the file; as `screen_files`."""
+    audits = screen_files(basis, geometry, **options).audits
+    return {audit.path: list(audit.findings) for audit in audits}

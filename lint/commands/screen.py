@@ -17,6 +17,7 @@ from overlapse.lint.common import (
     Unreadable,
     a_layout,
     a_report,
+    draw,
     output,
 )
 
@@ -212,15 +213,16 @@ def screen(
         found, audits = tasks(shelf, read)
         check_memory(found, limit)
         with _progress(found) as done:
-            asked = Wanted(
-                threshold, tolerance, per_atom, mesh, drawing is not None, charge, unpaired
-            )
+            values = drawing is not None or report == "html"  # both draw all eigenvalues
+            asked = Wanted(threshold, tolerance, per_atom, mesh, values, charge, unpaired)
             probes = measure_all(found, shelf, asked, jobs=jobs, limit=limit, done=done)
     except ScreenError as problem:
         raise Refused(str(problem)) from problem
     screening = screened(shelf, probes, audits)
     if drawing is not None:
-        _draw(probes, drawing)
+        from overlapse.lint.spectra import spectra
+
+        draw(drawing, lambda kind: spectra(probes, kind))
     with output(out) as stream:
         shown = screening.at_least(LEVELS[LEVELS.index(least) :])
         _write(shown, report, stream, out is None and stream.isatty())
@@ -320,24 +322,6 @@ def _progress(found: "Sequence[Task]") -> Iterator[Callable[[int], None]]:
         return
     with click.progressbar(length=total, label="screening", file=sys.stderr) as bar:
         yield lambda count: bar.update(count**3)
-
-
-def _draw(probes: "Sequence[Probe]", path: Path) -> None:
-    """Write the picture; without its library, or to a place that cannot be written, wrong use."""
-    from overlapse.lint.picture import KINDS, PictureError
-    from overlapse.lint.spectra import spectra
-
-    kind = path.suffix[1:].lower()
-    if kind not in KINDS:
-        raise click.UsageError(f"{path}: a picture's name ends in .{', .'.join(KINDS)}")
-    try:
-        drawn = spectra(probes, kind)
-        with click.open_file(str(path), "wb", atomic=True) as stream:
-            stream.write(drawn)
-    except PictureError as problem:
-        raise click.UsageError(str(problem)) from problem
-    except OSError as problem:
-        raise click.UsageError(f"{path}: {problem.strerror or problem}") from problem
 
 
 def _write_pruned(shelf: "Shelf", probes: "Sequence[Probe]", folder: Path) -> None:

@@ -7,7 +7,7 @@ import pytest
 
 from overlapse.lint.demonstration import copy_to, demonstrate, scenario, screens
 from overlapse.lint.engine import Target, audit_file
-from overlapse.lint.screening import probes_of
+from overlapse.lint.screening import screen_files
 from overlapse.lint.settings import Settings
 
 
@@ -28,7 +28,8 @@ def test_what_is_planted_is_found(entry: dict[str, str], tmp_path: Path) -> None
 def test_one_geometry_is_sound_and_one_goes_linearly_dependent(tmp_path: Path) -> None:
     copy_to(tmp_path)
     for entry in screens():
-        (probe,) = probes_of([tmp_path / entry["basis"]], tmp_path / entry["geometry"])
+        basis, geometry = tmp_path / entry["basis"], tmp_path / entry["geometry"]
+        (probe,) = screen_files([basis], geometry).probes
         assert probe.outlook.level == entry["outlook"]
         assert (probe.kept < probe.spectrum.functions) == (entry["outlook"] == "fails")
         assert bool(probe.drop) == (entry["outlook"] == "fails")
