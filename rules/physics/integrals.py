@@ -142,9 +142,10 @@ class Frame:
                 for first in range(0, len(left.members), rows := _rows(right)):
                     members = left.members[first : first + rows]
                     yield from self._panel(pair, members, left is right)
-                    done += len(members) * left.size * len(right.members) * right.size
-                    if progress is not None and whole:
-                        progress(min(1.0, done / whole * (1.0 if left is right else 2.0)))
+                    share = len(members) * left.size * len(right.members) * right.size / whole
+                    done += share if left is right else 2.0 * share
+                    if progress is not None:
+                        progress(min(1.0, done))
 
     def _panel(self, pair: KindPair, members: Ints, same: bool) -> Iterator[Batch]:
         left = np.repeat(members, len(pair.right.members))

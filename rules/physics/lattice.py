@@ -213,8 +213,9 @@ def _sum_images(pair: KindPair, offsets: Floats, shifts: Floats, phases: Complex
 def _place(
     matrix: Complexes, frame: Frame, kinds: tuple[Kind, Kind], at: Ints, to: Ints, blocks: Complexes
 ) -> None:
-    own = at == to
-    blocks[own] = 0.5 * (blocks[own] + blocks[own].conj().swapaxes(-1, -2))
+    own = np.flatnonzero(at == to)
+    if len(own):  # a block and its transpose are equal but for rounding
+        blocks[own] = 0.5 * (blocks[own] + blocks[own].conj().swapaxes(-1, -2))
     rows = (frame.starts[at][:, None] + np.arange(kinds[0].size))[:, :, None]
     columns = (frame.starts[to][:, None] + np.arange(kinds[1].size))[:, None, :]
     for k in range(len(matrix)):

@@ -6,12 +6,14 @@ spherical harmonics, or the Cartesian powers x**i y**j z**k with i falling first
 """
 
 from collections.abc import Sequence
+from math import prod, sqrt
 from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
 
 from overlapse.grammar.model import Block, Floats
+from overlapse.rules.physics.harmonics import powers
 
 Ints = npt.NDArray[np.intp]
 
@@ -54,6 +56,24 @@ class NotNormalisable(ValueError):
 def components(l: int, spherical: bool) -> int:
     """Number of components of a shell."""
     return 2 * l + 1 if spherical else (l + 1) * (l + 2) // 2
+
+
+def shared_norms(atoms: Sequence[Placed]) -> Floats:
+    """Norms of the functions where all components of a Cartesian shell share the factor of x**l.
+
+    Shape (n,), one for spherical functions.  The matrices here give each component a norm of one
+    of its own; times these factors for rows and columns they are in the other usual convention,
+    where x**i y**j z**k has the self-overlap (2i-1)!! (2j-1)!! (2k-1)!! / (2l-1)!!.
+    """
+    functions = lay_out(atoms)
+    norms = np.ones(len(functions.l))
+    for at, (atom, l, component) in enumerate(
+        zip(functions.atom, functions.l, functions.component, strict=True)
+    ):
+        if l > 1 and not atoms[atom].spherical:
+            odd = [prod(range(1, 2 * power, 2)) for power in powers(int(l))[component]]
+            norms[at] = sqrt(prod(odd) / prod(range(1, 2 * int(l), 2)))
+    return norms
 
 
 def normalised_columns(block: Block, shell: int) -> Floats:

@@ -44,7 +44,7 @@ def _general(dice: np.random.Generator, top: int) -> list[list[object]]:
 def test_random_contractions_at_random_places(seed: int, cartesian: bool) -> None:
     dice = np.random.default_rng(seed)
     top = 3 if seed < 10 else 6
-    symbols = [str(s) for s in dice.choice(ELEMENTS, 3, replace=False)]
+    symbols = [str(s) for s in dice.choice(ELEMENTS, 3 if top == 3 else 2, replace=False)]
     basis = {symbol: _general(dice, top) for symbol in symbols}
     atoms = [(str(s), tuple(dice.uniform(-2.0, 2.0, 3))) for s in (*symbols, symbols[0])]
     molecule = gto.M(atom=atoms, basis=basis, unit="B", cart=cartesian, spin=None, verbose=0)
@@ -56,24 +56,18 @@ def test_random_contractions_at_random_places(seed: int, cartesian: bool) -> Non
         assert np.abs(found - expected).max() < limit * max(1.0, np.abs(expected).max())
 
 
-@pytest.mark.parametrize("name", ["sto-3g.dat", "def2-tzvpd.dat", "cc-pvtz.dat", "ano.dat"])
+@pytest.mark.parametrize("name", ["sto-3g", "6-31g*", "def2-tzvpd", "cc-pvtz", "ano"])
 def test_a_published_set_through_the_reader(name: str) -> None:
     """The functions of the file as read here against the library's own reading of it."""
-    symbols = ["O", "H", "H", "C"]
-    blocks = {block.symbol: block for block in read(BASIS / name).blocks}
+    path = BASIS / {"6-31g*": "pople-basis/6-31Gs.dat"}.get(name, f"{name}.dat")
+    blocks = {block.symbol: block for block in read(path).blocks}
     dice = np.random.default_rng(5)
-    places = [tuple(dice.uniform(-2.0, 2.0, 3)) for _ in symbols]
-    atoms = list(zip(symbols, places, strict=True))
-    basis = name.removesuffix(".dat")
-    molecule = gto.M(atom=atoms, basis=basis, unit="B", verbose=0)
+    atoms = [(symbol, tuple(dice.uniform(-2.0, 2.0, 3))) for symbol in ("O", "H", "H", "C")]
+    molecule = gto.M(atom=atoms, basis=name, unit="B", verbose=0)
     ours = [Placed(blocks[symbol], place) for symbol, place in atoms]
     found = in_its_order(overlap(ours), molecule, ours)
     expected = unit_diagonal(molecule.intor("int1e_ovlp"), molecule)
-    # Orders differ where s and p share exponents; the spectrum does not know of order.
-    assert np.linalg.eigvalsh(found) == pytest.approx(np.linalg.eigvalsh(expected), abs=1e-12)
-    assert np.sort(np.abs(found).sum(0)) == pytest.approx(
-        np.sort(np.abs(expected).sum(0)), abs=1e-11
-    )
+    assert np.abs(found - expected).max() < 1e-12
 
 
 def test_sparse_form() -> None:
