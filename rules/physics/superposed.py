@@ -28,10 +28,10 @@ from overlapse.rules.physics.kinds import Group, kinds
 from overlapse.rules.physics.placed import Placed
 from overlapse.rules.physics.slater import slater_zetas
 
-RADIAL, DEGREE = 48, 17  # points on a ray; degree that the points of a sphere integrate exactly
+RADIAL, DEGREE = 36, 13  # points on a ray; degree that the points of a sphere integrate exactly
 ROUNDS = 3  # renewals of the density, half new and half old; more change little
 KEPT = 1e-6  # eigenvalue of S from which a direction takes part in the orbitals
-MOST_VALUES, MOST_WORK = 2e7, 1e10  # numbers held (160 MB), multiplications of a round
+MOST_VALUES, MOST_WORK = 3e7, 1.5e10  # numbers held (240 MB), multiplications of a round
 
 
 def affordable(atoms: Sequence[Placed], size: int) -> bool:

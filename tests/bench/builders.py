@@ -15,7 +15,7 @@ from pyscf import gto
 
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.model import Block, Shell
-from overlapse.rules.physics.placed import Placed
+from overlapse.rules.physics.placed import Placed, lay_out
 
 Shells = list[Any]  # one list per shell: l, then rows of exponent and coefficients
 Basis = dict[str, Shells]
@@ -172,7 +172,7 @@ def placed(system: System) -> tuple[list[Placed], list[int]]:
     blocks = {}
     for symbol, shells in system.basis.items():
         made = []
-        for l, *rows in shells:
+        for l, *rows in sorted(shells, key=lambda shell: shell[0]):  # the oracle's order
             table = np.array(rows)
             made.append(Shell((l,), table[:, 0], table[:, 1:]))
         number = number_of(symbol.removeprefix("X-"))
@@ -184,3 +184,15 @@ def placed(system: System) -> tuple[list[Placed], list[int]]:
         atoms.append(Placed(blocks[symbol], position, not system.cartesian))
         nuclei.append(0 if symbol.startswith("X-") else blocks[symbol].atomic_number)
     return atoms, nuclei
+
+
+def places(system: System) -> list[int]:
+    """Where the oracle lists each of our functions: it has p functions as x, y, z, not y, z, x."""
+    atoms, _ = placed(system)
+    functions = lay_out(atoms)
+    order = list(range(len(functions.l)))
+    if not system.cartesian:
+        for k, (l, m) in enumerate(zip(functions.l, functions.component, strict=True)):
+            if l == 1:
+                order[k] = k - (m + 1) + (1, 2, 0)[m + 1]
+    return order

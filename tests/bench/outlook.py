@@ -70,7 +70,8 @@ def truth(system: System, known: dict[str, Any], path: Path | None) -> Truth:
             path.write_text(json.dumps(known))
     found = known[system.name]
     runs = {name: Run(**run) for name, run in found["runs"].items()}
-    return Truth(Run(**found["removed"]), found["orbitals"], found["explained"], runs)
+    reference, again = Run(**found["removed"]), Run(**found["removed_turned"])
+    return Truth(reference, again, found["orbitals"], found["explained"], runs)
 
 
 def happened(truth: Truth) -> str:
@@ -126,11 +127,15 @@ HEAD = (
 
 def report(title: str, rows: list[Row]) -> str:
     """The table of a set and its counts, markdown."""
-    sound = [row for row in rows if row.truth.removed.converged]
+    sound = [row for row in rows if row.truth.settled]
     text = [f"### {title}: {len(sound)} systems", "", HEAD, *map(line, sound), ""]
     for row in rows:
         if row not in sound:
-            text.append(f"Left out, the field with removal does not converge: {row.name}.")
+            pair = (row.truth.removed, row.truth.removed_turned)
+            ends = " and ".join(f"{run.energy:.6f}" if run.converged else "no end" for run in pair)
+            text.append(
+                f"Left out, the field with removal has no single solution ({ends}): {row.name}."
+            )
     text += ["| judged by | " + " | ".join(counts(sound, lambda r: r.outlook.level)) + " |"]
     text += ["|---" * 6 + "|"]
     for name, say in (
