@@ -206,6 +206,8 @@ def crowded(case: Case, *, eigenvalue: float = 1e-7, near_twin: float = 5e-4) ->
                 continue
             pairs = list(distinct.values())
             overlap = contracted_overlap([function for _, function in pairs])
+            if not np.isfinite(overlap).all():
+                continue
             values = eigenvalues(overlap)
             gap, first, second = closest_pair(overlap)
             if values[0] >= eigenvalue and gap >= near_twin:

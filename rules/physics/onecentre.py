@@ -49,6 +49,8 @@ def contracted_overlap(functions: list[Function]) -> Floats:
     weights = np.zeros((len(functions), len(exponents)))
     weights[owner, np.arange(len(exponents))] = np.concatenate([f.coefficients for f in functions])
     with np.errstate(all="ignore"):
+        # The length of a function does not matter here, but its square could leave the range.
+        weights /= np.abs(weights).max(axis=1, keepdims=True)
         overlap = weights @ primitive_overlap(exponents, exponents, l) @ weights.T
         scale = 1.0 / np.sqrt(np.diagonal(overlap))
         result: Floats = overlap * scale[:, None] * scale[None, :]
