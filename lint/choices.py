@@ -14,7 +14,7 @@ from overlapse.grammar.geometry import Atom, Frame
 from overlapse.grammar.model import BasisSet, Block, Document
 from overlapse.rules.claims import claims_of
 from overlapse.rules.kinds import Kinds
-from overlapse.rules.probing import Site
+from overlapse.rules.site import Site
 
 _ATOMS = re.compile(r"(\d+)(?:-(\d+))?")
 

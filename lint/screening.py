@@ -21,8 +21,9 @@ from overlapse.lint.engine import FileAudit, judge
 from overlapse.lint.settings import Settings, settings_for
 from overlapse.rules.finding import Finding
 from overlapse.rules.probe import Probe
-from overlapse.rules.probing import Label, Site, Wanted, probe, size
+from overlapse.rules.probing import Label, Wanted, probe
 from overlapse.rules.registry import rules
+from overlapse.rules.site import Site, size
 
 
 class ScreenError(ValueError):

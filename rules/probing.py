@@ -1,41 +1,18 @@
 """Measuring: from atoms with their blocks to what is known of their overlap matrix."""
 
-from collections import Counter
 from collections.abc import Iterable, Iterator, Sequence
 from typing import NamedTuple
 
-import numpy as np
-
-from overlapse.grammar.geometry import Atom
-from overlapse.grammar.model import Block, Floats, letter_of
+from overlapse.grammar.model import Floats
+from overlapse.rules.blaming import blame, described
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.onecentre import eigenvalues
 from overlapse.rules.physics.outlook import LOOKED_AT, Outlook, foresee, outlook
-from overlapse.rules.physics.placed import Functions, Ints, Placed, lay_out
+from overlapse.rules.physics.placed import Functions, lay_out
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
-from overlapse.rules.physics.spectrum import LADDER, SMALL, Matrix, Spectrum, lowest, spectrum
-from overlapse.rules.probe import NEAR, Dropped, Function, Lattice, Left, Probe, Share, Small
-
-_BLAMED = 12  # eigenvalues whose combinations are looked into
-_TOLD = 12  # shares that are kept of each
-_LEAST = 0.005  # share that is worth telling
-
-
-class Site(NamedTuple):
-    """An atom of a geometry and the block that was chosen for it, from the file at ``path``.
-
-    fitting: the block is of a set for fitting, so that no field is solved in its functions.
-    """
-
-    atom: Atom
-    path: str
-    block: Block
-    spherical: bool = True
-    fitting: bool = False
-
-    @property
-    def placed(self) -> Placed:
-        return Placed(self.block, self.atom.position, self.spherical)
+from overlapse.rules.physics.spectrum import LADDER, Matrix, Spectrum, spectrum
+from overlapse.rules.probe import NEAR, Dropped, Lattice, Left, Probe
+from overlapse.rules.site import Site, formula, kind_of
 
 
 class Wanted(NamedTuple):
@@ -53,15 +30,6 @@ class Wanted(NamedTuple):
     values: bool = False
     charge: int = 0
     unpaired: int | None = None
-
-
-def size(sites: Sequence[Site]) -> int:
-    """Number of basis functions, without making any."""
-    return sum(
-        (2 * l + 1 if site.spherical else (l + 1) * (l + 2) // 2) * count
-        for site in sites
-        for l, count in site.block.counts.items()
-    )
 
 
 class Label(NamedTuple):
@@ -116,7 +84,7 @@ def assembled(
         title=label.title,
         formula=formula(sites),
         atoms=len(sites),
-        spherical=_spherical(sites),
+        spherical=kind_of(sites),
         spectrum=found._replace(below={rung: found.below[rung] for rung in LADDER}),
         threshold=step,
         kept=found.functions - found.below[step],
@@ -157,29 +125,6 @@ def _outlook(
     )
 
 
-def _above(smallest: float) -> float:
-    """A limit that the smallest eigenvalue is below, and few others."""
-    return smallest + max(1e-9 * abs(smallest), 1e-15)
-
-
-def _spherical(sites: Sequence[Site]) -> bool | None:
-    kinds = {site.spherical for site in sites if max(site.block.counts, default=0) > 1}
-    return None if len(kinds) > 1 else kinds.pop() if kinds else True
-
-
-def formula(sites: Sequence[Site]) -> str:
-    """Hill's order: carbon, hydrogen, the others by letter; ghosts apart."""
-    parts = []
-    for ghost in (False, True):
-        symbols = Counter(site.atom.symbol for site in sites if site.atom.ghost == ghost)
-        first = ("C", "H") if "C" in symbols else ()
-        order = sorted(symbols, key=lambda symbol: (*(symbol != f for f in first), symbol))
-        text = "".join(f"{s}{symbols[s] if symbols[s] > 1 else ''}" for s in order)
-        if text:
-            parts.append(f"ghosts {text}" if ghost else text)
-    return " and ".join(parts)
-
-
 def in_short(matrix: Matrix) -> Left:
     """Number of functions, smallest eigenvalue and condition number."""
     found = spectrum(matrix, ())
@@ -191,91 +136,6 @@ def turned_spherical(sites: Sequence[Site]) -> list[Site]:
     if all(site.spherical or max(site.block.counts, default=0) < 2 for site in sites):
         return []
     return [site._replace(spherical=True) for site in sites]
-
-
-# ---- who is to blame
-
-
-def blame(
-    matrix: Matrix, functions: Functions, sites: Sequence[Site], found: Spectrum, least: float
-) -> tuple[Small, ...]:
-    """Shares of the functions in the combinations of the smallest eigenvalues.
-
-    A share is the squared component of the unit eigenvector, summed over a function's components.
-    Eigenvalues below ``least`` and below 1e-4 are looked into, the dozen smallest at most; of a
-    small matrix the smallest eigenvalue in any case.
-    """
-    counts = {rung: n for rung, n in found.below.items() if n and rung <= max(least, LADDER[0])}
-    few = [rung for rung, n in counts.items() if n <= _BLAMED]
-    if counts:
-        limit = max(few) if few else min(counts)
-    elif found.functions <= SMALL:
-        limit = _above(found.smallest)
-    else:
-        return ()
-    values, vectors = lowest(matrix, limit)
-    order = np.argsort(values)[:_BLAMED]
-    groups = _groups(functions)
-    return tuple(_small(float(values[k]), vectors[:, k], groups, functions, sites) for k in order)
-
-
-def _groups(functions: Functions) -> Ints:
-    """Number of the contracted function of an atom that each basis function belongs to."""
-    keys = np.column_stack([functions.atom, functions.shell, functions.column])
-    new = np.any(np.diff(keys, axis=0) != 0, axis=1)
-    return np.concatenate([[0], np.cumsum(new)]).astype(np.intp)
-
-
-def _small(
-    value: float, vector: Matrix, groups: Ints, functions: Functions, sites: Sequence[Site]
-) -> Small:
-    weights = np.bincount(groups, weights=np.abs(vector) ** 2)
-    firsts = np.flatnonzero(np.diff(groups, prepend=-1))
-    shares: list[Share] = []
-    kinds: dict[Function, float] = {}
-    for k in np.argsort(-weights, kind="stable"):
-        weight = float(weights[k])
-        at = int(firsts[k])
-        site = sites[int(functions.atom[at])]
-        function = described(
-            site,
-            int(functions.shell[at]),
-            int(functions.column[at]),
-            float(functions.exponent[at]),
-        )
-        kinds[function] = kinds.get(function, 0.0) + weight
-        if weight >= _LEAST and len(shares) < _TOLD:
-            shares.append(Share(weight, function, int(functions.atom[at]) + 1))
-    summed = sorted(kinds.items(), key=lambda item: -item[1])
-    told = [Share(weight, function) for function, weight in summed if weight >= _LEAST]
-    return Small(value, tuple(shares), tuple(told[:_TOLD] or [Share(summed[0][1], summed[0][0])]))
-
-
-def described(site: Site, index: int, column: int, exponent: float) -> Function:
-    """A contracted function of an atom: shell ``index`` of its block, and the column in it."""
-    shell = site.block.shells[index]
-    name = site.block.names[index]
-    if shell.columns_per_l > 1:
-        name += f"/{column % shell.columns_per_l + 1}"
-    return Function(
-        site.path,
-        shell.line,
-        site.block.symbol,
-        site.block.names[index],
-        name,
-        column,
-        letter_of(shell.angular[column // shell.columns_per_l]) * (len(shell.angular) > 1),
-        exponent,
-        _is_outermost(site.block, index, column),
-    )
-
-
-def _is_outermost(block: Block, index: int, column: int) -> bool:
-    shell = block.shells[index]
-    l = shell.angular[column // shell.columns_per_l]
-    own = shell.exponents[shell.coefficients[:, column] != 0.0]
-    loosest = min(float(f.exponents.min()) for _, f in block.functions_of(l) if f.exponents.size)
-    return own.size == 1 and float(own[0]) <= loosest
 
 
 # ---- what to drop

@@ -5,6 +5,7 @@ from collections.abc import Callable, Sequence
 import numpy as np
 
 from overlapse.grammar.model import Floats
+from overlapse.rules.blaming import described
 from overlapse.rules.physics.lattice import lattice_overlap, lattice_reach, monkhorst_pack
 from overlapse.rules.physics.placed import Functions, Ints, lay_out
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
@@ -13,15 +14,14 @@ from overlapse.rules.probe import AtPoint, Function, Lattice, Left, Probe
 from overlapse.rules.probing import (
     Label,
     Pruned,
-    Site,
     Wanted,
     as_dropped,
     assembled,
-    described,
     in_short,
     steps,
     turned_spherical,
 )
+from overlapse.rules.site import Site
 
 TOLERANCE = 1e-13  # bound of what is left out of an element of S(k)
 _LOOSE = 0.3  # bohr**-2: functions below are listed
