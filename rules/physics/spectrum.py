@@ -225,15 +225,19 @@ def _negative(
     return int((eigvalsh(remainder, overwrite_a=True) < 0.0).sum()) if len(rest) else 0
 
 
-def pivoted(matrix: Matrix) -> tuple[npt.NDArray[np.intp], Floats]:
+def pivoted(matrix: Matrix, *, overwrite: bool = False) -> tuple[npt.NDArray[np.intp], Floats]:
     """Pivoted Cholesky: the order of the functions and their pivots, falling, shape (rank,).
+
+    overwrite: the matrix is no longer needed.
 
     A pivot is the squared norm of what a function adds to those before it.  The rank ends where
     nothing is left above rounding; functions after it follow in no special order.
     """
     (pstrf,) = get_lapack_funcs(("pstrf",), (matrix,))
     tolerance = 4.0 * len(matrix) * np.finfo(float).eps
-    factor, piv, rank, _ = pstrf(matrix.copy().T, tol=tolerance, lower=False, overwrite_a=True)
+    factor, piv, rank, _ = pstrf(
+        (matrix if overwrite else matrix.copy()).T, tol=tolerance, lower=False, overwrite_a=True
+    )
     pivots = np.abs(np.diagonal(factor)[:rank]) ** 2
     return np.asarray(piv, dtype=np.intp) - 1, np.asarray(pivots, dtype=float)
 
