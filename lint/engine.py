@@ -1,7 +1,7 @@
 """The audit: from paths to findings.  Nothing here prints."""
 
 import os
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator, Mapping
 from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import NamedTuple
@@ -9,12 +9,14 @@ from typing import NamedTuple
 from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read_bytes, read_source
 from overlapse.grammar.source import Source
+from overlapse.lint.fingerprint import marked
 from overlapse.lint.settings import Settings, settings_for
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rules
 
 LEVELS = ("note", "warning", "error")  # rising
+EXCERPT = 160  # characters of a line that are kept for a report
 # Text that may quote basis sets without being one; folders are searched without them.
 _NOT_SEARCHED = frozenset(
     ".py .pyi .ipynb .md .rst .html .htm .css .js .ts .c .cc .cpp .h .hpp .f .f90 .rs .go .java "
@@ -22,13 +24,35 @@ _NOT_SEARCHED = frozenset(
 )
 
 
+class Excerpt(NamedTuple):
+    """A stretch of a line of text; ``start`` is the 0-based place of its first character."""
+
+    text: str
+    start: int
+
+
+@dataclass(frozen=True)
+class Options:
+    """What the caller asks for, over what files and settings say.
+
+    label: what the sets are called.  layout: read as this layout instead of finding it by content.
+    settings: used for all files instead of those found above them.
+    """
+
+    label: str | None = None
+    layout: str | None = None
+    settings: Settings | None = None
+
+
 @dataclass(frozen=True)
 class FileAudit:
     """What was found in one file.
 
-    document: None for a file that could not be opened; problem says why.  label: the claimed label
-    that weighs most, with where it was found.  passed_over: no layout was recognised and that was
-    allowed.
+    document: None for a file that could not be opened (problem says why), and where it was judged
+    in another process or at another time; layout, elements, blocks and excerpts are there all the
+    same.  label: the claimed label that weighs most, with where it was found.  passed_over: no
+    layout was recognised and that was allowed.  layout: "" for none.  elements, blocks: counts.
+    excerpts: what stands around each place that a finding points at, by line and column.
     """
 
     path: str
@@ -39,6 +63,10 @@ class FileAudit:
     problem: str = ""
     passed_over: bool = False
     settings: Settings = field(default_factory=Settings)
+    layout: str = ""
+    elements: int = 0
+    blocks: int = 0
+    excerpts: Mapping[tuple[int, int], Excerpt] = field(default_factory=dict)
 
     @property
     def fails(self) -> bool:
@@ -108,12 +136,24 @@ def audit_file(
     try:
         data = target.path.read_bytes()
     except OSError as problem:
-        return FileAudit(name, problem=f"{name}: {problem.strerror or problem}")
-    effective = settings if settings is not None else settings_for(target.path)
-    document = read_bytes(data, name, layout=layout)
-    if target.searched and not document.layout:
+        return unopened(name, problem)
+    return audit_bytes(data, name, Options(label, layout, settings), searched=target.searched)
+
+
+def unopened(name: str, problem: OSError) -> FileAudit:
+    """The audit of a file that could not be opened."""
+    return FileAudit(name, problem=f"{name}: {problem.strerror or problem}")
+
+
+def audit_bytes(data: bytes, name: str, options: Options, *, searched: bool = False) -> FileAudit:
+    """Judge the bytes of a file; ``searched``: pass over a text that shows no layout."""
+    effective = options.settings
+    if effective is None:
+        effective = settings_for(Path(name).absolute())
+    document = read_bytes(data, name, layout=options.layout)
+    if searched and not document.layout:
         return FileAudit(name, document, settings=effective, passed_over=True)
-    return judge(document, label=label, settings=effective)
+    return judge(document, label=options.label, settings=effective)
 
 
 def audit_text(
@@ -147,8 +187,24 @@ def judge(document: Document, *, label: str | None = None, settings: Settings) -
     return FileAudit(
         document.path,
         document,
-        tuple(findings),
+        marked(findings, document.source),
         claims[0].label if claims else None,
         claims[0].where if claims else "",
         settings=settings,
+        layout=document.layout,
+        elements=len({block.atomic_number for block in document.blocks}),
+        blocks=len(document.blocks),
+        excerpts=_excerpts(findings, document.source),
     )
+
+
+def _excerpts(findings: Iterable[Finding], source: Source) -> dict[tuple[int, int], Excerpt]:
+    """Lines that findings point at; of a long line what stands around the place."""
+    found: dict[tuple[int, int], Excerpt] = {}
+    for finding in findings:
+        if source.text:
+            line = source.lines[finding.line - 1]
+            start = max(0, finding.column - 1 - EXCERPT // 2) if len(line) > EXCERPT else 0
+            place = finding.line, finding.column
+            found[place] = Excerpt(line[start : start + EXCERPT], start)
+    return found
