@@ -24,6 +24,7 @@ class Case:
         # Rules reason over normalised primitives; where the text does not, its numbers are turned.
         self.document = over_normalised(document)
         self.given_label = label
+        self.found: dict[str, list[Finding]] = {}  # by rule, for the rules that come last
         self._rule = ""
         self._shared: dict[str, Any] = {}
 

@@ -29,6 +29,12 @@ def as_object(audit: FileAudit) -> dict[str, Any]:
         "blocks": audit.blocks,
         "problem": audit.problem or None,
         "findings": [finding_object(finding) for finding in audit.findings],
+        "accepted": [
+            {**finding_object(finding), "reason": reason, "where": where}
+            for finding, reason, where in audit.accepted
+        ],
+        "known": [finding_object(finding) for finding in audit.known],
+        "gone": [dict(entry) for entry in audit.gone],
     }
 
 

@@ -50,6 +50,8 @@ def _invocation(problems: Sequence[str]) -> dict[str, Any]:
 
 
 def _rule(name: str) -> dict[str, Any]:
+    if name not in rules():  # a ledger may be older than the program
+        return {"id": name}
     text = rules()[name].explanation
     parts = [text.why, text.formula and f"Formula: {text.formula}"]
     parts += [f"Source: {text.source}", f"Remedy: {text.remedy}"]
@@ -62,12 +64,30 @@ def _rule(name: str) -> dict[str, Any]:
 
 
 def _results(audit: FileAudit, order: dict[str, int]) -> Iterator[dict[str, Any]]:
+    compared = bool(audit.known or audit.gone)
     for finding in audit.findings:
-        order.setdefault(finding.rule, len(order))
-        yield _result(finding, order)
+        yield _result(finding, order, **({"baselineState": "new"} if compared else {}))
+    for finding in audit.known:
+        yield _result(finding, order, baselineState="unchanged")
+    for finding, reason, where in audit.accepted:
+        kind = "inSource" if where.startswith("line ") else "external"
+        suppression = {"kind": kind, "status": "accepted", "justification": reason}
+        yield _result(finding, order, suppressions=[suppression])
+    for entry in audit.gone:
+        order.setdefault(entry["rule"], len(order))
+        yield {
+            "ruleId": entry["rule"],
+            "ruleIndex": order[entry["rule"]],
+            "level": entry["severity"],
+            "message": {"text": entry["message"]},
+            "locations": [{"physicalLocation": {"artifactLocation": {"uri": _uri(audit.path)}}}],
+            "partialFingerprints": {"overlapsePlace/v1": entry["fingerprint"]},
+            "baselineState": "absent",
+        }
 
 
-def _result(finding: Finding, order: dict[str, int]) -> dict[str, Any]:
+def _result(finding: Finding, order: dict[str, int], **more: Any) -> dict[str, Any]:
+    order.setdefault(finding.rule, len(order))
     plain = finding_object(finding)
     kept = ("element", "shell", "measured", "limit", "expected", "remedy")
     properties = {key: plain[key] for key in kept if plain[key] not in (None, "")}
@@ -92,6 +112,7 @@ def _result(finding: Finding, order: dict[str, int]) -> dict[str, Any]:
         ],
         "partialFingerprints": {"overlapsePlace/v1": finding.fingerprint},
         "properties": properties,
+        **more,
     }
 
 

@@ -1,7 +1,7 @@
 """For people: each finding with the line it stands on, a pointer, the numbers and what to do."""
 
 from collections import Counter
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass, field
 from textwrap import fill
 from typing import TextIO
@@ -26,10 +26,11 @@ def write(audits: Iterable[FileAudit], out: TextIO, colour: bool) -> None:
             continue
         if audit.problem:
             out.write(f"{paint('error', 'error')}  {one_line(audit.problem)}\n\n")
-        elif audit.findings:
+        elif audit.findings or audit.accepted or audit.gone:
             out.write(_heading(audit, paint) + "\n\n")
             for finding in audit.findings:
                 out.write(_finding(finding, audit, paint) + "\n")
+            out.write("".join(f"{line}\n" for line in _set_apart(audit)))
     out.write(tally.sentence() + "\n")
 
 
@@ -42,6 +43,8 @@ def _painted(text: str, kind: str) -> str:
 
 
 def _heading(audit: FileAudit, paint: Paint) -> str:
+    if audit.absent:
+        return f"{paint(one_line(audit.path), 'path')}  (in the ledger only)"
     facts = [f"layout {audit.layout}" if audit.layout else "no layout"]
     if audit.elements:
         facts.append(f"{audit.elements} element{'s' * (audit.elements != 1)}")
@@ -71,6 +74,20 @@ def _finding(finding: Finding, audit: FileAudit, paint: Paint) -> str:
     if finding.remedy:
         lines.append(_wrapped(f"to do: {finding.remedy}", "  "))
     return "\n".join(lines) + "\n"
+
+
+def _set_apart(audit: FileAudit) -> Iterator[str]:
+    """What does not count: accepted findings, and known ones that are gone."""
+    for finding, reason, where in audit.accepted:
+        place = " ".join(filter(None, (finding.element, finding.shell)))
+        yield _wrapped(
+            f"accepted  {place}  line {finding.line}  {finding.rule}: {reason} ({where})", ""
+        )
+    for entry in audit.gone:
+        place = " ".join(filter(None, (entry.get("element"), entry.get("shell"))))
+        yield _wrapped(f"gone  {place}  {entry['rule']}: {entry['message']}", "")
+    if audit.accepted or audit.gone:
+        yield ""
 
 
 def _wrapped(text: str, indent: str) -> str:
@@ -110,17 +127,23 @@ def _excerpt(finding: Finding, audit: FileAudit, paint: Paint) -> list[str]:
 
 @dataclass
 class Tally:
-    """How many files, how many findings of each level."""
+    """How many files, how many findings of each level, how many that do not count."""
 
     files: int = 0
     unread: int = 0
     passed: int = 0
+    accepted: int = 0
+    known: int = 0
+    gone: int = 0
     levels: Counter[str] = field(default_factory=Counter)
 
     def add(self, audit: FileAudit) -> None:
-        self.files += not audit.passed_over
+        self.files += not (audit.passed_over or audit.absent)
         self.passed += audit.passed_over
         self.unread += bool(audit.problem)
+        self.accepted += len(audit.accepted)
+        self.known += len(audit.known)
+        self.gone += len(audit.gone)
         self.levels.update(finding.severity for finding in audit.findings)
 
     def sentence(self) -> str:
@@ -130,7 +153,15 @@ class Tally:
             if (count := self.levels[level])
         ]
         parts = [f"{self.files} file{'s' * (self.files != 1)}"]
-        parts.append(", ".join(told) if told else "nothing found")
+        new = " new" if self.known or self.gone else ""
+        parts.append(", ".join(told) + new * bool(told) if told else f"nothing{new} found")
+        for count, what in (
+            (self.accepted, "accepted"),
+            (self.known, "known from the ledger"),
+            (self.gone, "gone since"),
+        ):
+            if count:
+                parts.append(f"{count} {what}")
         if self.unread:
             parts.append(f"{self.unread} could not be read")
         if self.passed:
