@@ -18,6 +18,7 @@ from overlapse.grammar.model import (
     read_only,
 )
 from overlapse.grammar.numbers import FORTRAN, has_only_characters
+from overlapse.grammar.repairing import block_span
 
 MOST = 2_000  # primitives of a shell, or functions of an element; published sets stay below 500
 
@@ -245,5 +246,6 @@ class Making(Checks):
             element=block.symbol,
             measured=2,
             expected=1,
+            edits=((block_span(self.source, block.line, block.end), ""),) if equal else (),
             remedy="keep one of the two: a reader may add them up, or take either",
         )

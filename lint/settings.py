@@ -140,11 +140,11 @@ def file_for(folder: Path) -> "SettingsFile | None":
 
         return read(own, ())
     project = folder / "pyproject.toml"
-    if project.is_file() and _is_mentioned(project):
-        if table_of(project, ("tool", "overlapse")) is not None:
-            from overlapse.lint.settingsfile import read
+    keys = ("tool", "overlapse")
+    if project.is_file() and _is_mentioned(project) and table_of(project, keys) is not None:
+        from overlapse.lint.settingsfile import read
 
-            return read(project, ("tool", "overlapse"))
+        return read(project, keys)
     return file_for(folder.parent) if folder.parent != folder else None
 
 
