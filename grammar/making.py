@@ -15,6 +15,7 @@ from overlapse.grammar.model import (
     Document,
     Floats,
     Shell,
+    Span,
     read_only,
 )
 from overlapse.grammar.numbers import FORTRAN, has_only_characters
@@ -246,6 +247,9 @@ class Making(Checks):
             element=block.symbol,
             measured=2,
             expected=1,
-            edits=((block_span(self.source, block.line, block.end), ""),) if equal else (),
+            edits=((self._span_of(block), ""),) if equal else (),
             remedy="keep one of the two: a reader may add them up, or take either",
         )
+
+    def _span_of(self, block: Block) -> Span:
+        return block_span(self.source, self.bodies, block.line, block.end)

@@ -17,7 +17,7 @@ from typing import NamedTuple
 
 from overlapse.grammar import plugins
 from overlapse.grammar.reading import read_bytes
-from overlapse.lint.cache import Cache, key_of, under
+from overlapse.lint.cache import Cache, begin, key_of, under
 from overlapse.lint.engine import FileAudit, Options, Target, audit_bytes, unopened
 from overlapse.lint.settings import settings_for
 
@@ -64,6 +64,7 @@ def audits(
     (which is read again where it was judged elsewhere).  done: told of the size of each file that
     is finished, in bytes.  standard_input: gives the name and the bytes of the target "-".
     """
+    begin()
     jobs = (Job(target, size_of(target.path)) for target in targets)
     pool = _Pool(processes) if processes > 1 else None
     try:

@@ -173,6 +173,11 @@ def surroundings(settings: Settings) -> str:
     return " ".join(_stamped(place) for place in places if place is not None)
 
 
+def begin() -> None:
+    """Look anew at the files that settings point at; to be called before a run."""
+    _stamped.cache_clear()
+
+
 @cache
 def code() -> str:
     """A digest of everything that judges: this program, its rules and layouts from elsewhere."""

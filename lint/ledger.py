@@ -8,7 +8,6 @@ import json
 import os
 from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass, field, replace
-from functools import cache
 from pathlib import Path
 from typing import Any
 
@@ -82,7 +81,6 @@ def _entry(finding: Finding) -> Entry:
     return {key: getattr(finding, key) for key in _KEPT if getattr(finding, key) is not None}
 
 
-@cache
 def read(path: Path) -> Ledger:
     """Read a ledger; raises SettingsError for a file that is none."""
     try:
@@ -112,11 +110,9 @@ def place_for(path: str, settings: Settings) -> Path | None:
     return _nearest(Path(os.path.realpath(path)).parent)
 
 
-@cache
 def _nearest(folder: Path) -> Path | None:
-    if (folder / NAME).is_file():
-        return folder / NAME
-    return _nearest(folder.parent) if folder.parent != folder else None
+    above = (place / NAME for place in (folder, *folder.parents))
+    return next((place for place in above if place.is_file()), None)
 
 
 class Sieve:

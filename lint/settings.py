@@ -5,6 +5,7 @@ They are looked for from each checked file upwards: the nearest ``overlapse.toml
 """
 
 import os
+import stat
 import sys
 from collections.abc import Mapping
 from dataclasses import dataclass, field
@@ -127,33 +128,41 @@ def settings_for(path: str | os.PathLike[str]) -> Settings:
     return found.settings_for(folder.resolve() / path.name if folder != path else folder.resolve())
 
 
-@cache
 def file_for(folder: Path) -> "SettingsFile | None":
     """The settings file that holds in a (resolved) folder, or None for the defaults.
 
     Raises SettingsError for one that cannot be used.
     """
-    # The validating library is imported only where there is something to validate.
-    own = folder / "overlapse.toml"
-    if own.is_file():
-        from overlapse.lint.settingsfile import read
+    for place in (folder, *folder.parents):
+        for name, keys in (("overlapse.toml", ()), ("pyproject.toml", ("tool", "overlapse"))):
+            path = place / name
+            try:
+                seen = os.stat(path)
+            except OSError:
+                continue
+            if not stat.S_ISREG(seen.st_mode):
+                continue
+            found = _file(path, keys, seen.st_mtime_ns, seen.st_size)
+            if found is not None:
+                return found
+    return None
 
-        return read(own, ())
-    project = folder / "pyproject.toml"
-    keys = ("tool", "overlapse")
-    if project.is_file() and _is_mentioned(project) and table_of(project, keys) is not None:
-        from overlapse.lint.settingsfile import read
 
-        return read(project, keys)
-    return file_for(folder.parent) if folder.parent != folder else None
-
-
-def _is_mentioned(project: Path) -> bool:
-    """Whether a project's file can hold settings of ours at all; most do not."""
+@cache
+def _file(path: Path, keys: tuple[str, ...], time: int, size: int) -> "SettingsFile | None":
+    """A settings file as it was at a time; None for a project's file that says nothing to us."""
     try:
-        return b"overlapse" in project.read_bytes()
+        # Most projects do not mention us; theirs need not be taken apart.
+        if keys and b"overlapse" not in path.read_bytes():
+            return None
     except OSError as problem:
-        raise SettingsError(f"{project}: {problem.strerror or problem}") from None
+        raise SettingsError(f"{path}: {problem.strerror or problem}") from None
+    if keys and table_of(path, keys) is None:
+        return None
+    # The validating library is imported only where there is something to validate.
+    from overlapse.lint.settingsfile import read
+
+    return read(path, keys)
 
 
 def table_of(path: Path, keys: tuple[str, ...]) -> dict[str, Any] | None:
