@@ -401,7 +401,10 @@ class Remark(NamedTuple):
 
 @dataclass(frozen=True, slots=True)
 class Fault:
-    """Something about the form of the text that the reader had to say; becomes a finding."""
+    """Something about the form of the text that the reader had to say; becomes a finding.
+
+    edits: spans of the text and what to put there, which would mend it.
+    """
 
     rule: str
     message: str
@@ -413,6 +416,7 @@ class Fault:
     limit: float | str | None = None
     expected: float | str | None = None
     remedy: str = ""
+    edits: tuple[tuple[Span, str], ...] = ()
 
 
 @dataclass(frozen=True, eq=False)

@@ -3,6 +3,7 @@
 import sys
 from collections.abc import Iterator
 from contextlib import contextmanager
+from io import TextIOWrapper
 from pathlib import Path
 from typing import TextIO
 
@@ -44,13 +45,26 @@ def a_layout(context: click.Context, parameter: click.Parameter, value: str | No
 
 @contextmanager
 def output(path: Path | None) -> Iterator[TextIO]:
-    """Standard output, or a file that appears only when it is complete."""
+    """A stream whose content appears, on standard output or as a file, only when it is complete."""
+    import shutil
+    import tempfile
+
+    from overlapse.lint.atomic import replacing
+
     if path is None:
-        yield sys.stdout
+        with tempfile.SpooledTemporaryFile(
+            8_000_000, "w+", encoding="utf-8", newline="", errors="backslashreplace"
+        ) as kept:
+            yield kept  # type: ignore[misc]
+            kept.seek(0)
+            shutil.copyfileobj(kept, sys.stdout)
+        sys.stdout.flush()
         return
     try:
-        opened = click.open_file(str(path), "w", encoding="utf-8", atomic=True)
+        with replacing(path) as stream:
+            text = TextIOWrapper(stream, encoding="utf-8", newline="", errors="backslashreplace")
+            yield text
+            text.flush()
+            text.detach()
     except OSError as problem:
         raise click.UsageError(f"{path}: {problem.strerror or problem}") from problem
-    with opened as stream:
-        yield stream  # type: ignore[misc]

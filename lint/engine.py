@@ -1,20 +1,24 @@
 """The audit: from paths to findings.  Nothing here prints."""
 
 import os
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator, Mapping
 from dataclasses import dataclass, field, replace
 from pathlib import Path
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
+from overlapse.grammar import plugins
 from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read_bytes, read_source
 from overlapse.grammar.source import Source
+from overlapse.lint.fingerprint import marked
 from overlapse.lint.settings import Settings, settings_for
+from overlapse.rules.acceptance import acceptances_of
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
-from overlapse.rules.registry import rules
+from overlapse.rules.registry import Rule, rules
 
 LEVELS = ("note", "warning", "error")  # rising
+EXCERPT = 160  # characters of a line that are kept for a report
 # Text that may quote basis sets without being one; folders are searched without them.
 _NOT_SEARCHED = frozenset(
     ".py .pyi .ipynb .md .rst .html .htm .css .js .ts .c .cc .cpp .h .hpp .f .f90 .rs .go .java "
@@ -22,13 +26,46 @@ _NOT_SEARCHED = frozenset(
 )
 
 
+class Excerpt(NamedTuple):
+    """A stretch of a line of text; ``start`` is the 0-based place of its first character."""
+
+    text: str
+    start: int
+
+
+@dataclass(frozen=True)
+class Options:
+    """What the caller asks for, over what files and settings say.
+
+    label: what the sets are called.  layout: read as this layout instead of finding it by content.
+    settings: used for all files instead of those found above them.
+    """
+
+    label: str | None = None
+    layout: str | None = None
+    settings: Settings | None = None
+
+
+class Accepted(NamedTuple):
+    """A finding that was looked at and accepted: why, and where that is said."""
+
+    finding: Finding
+    reason: str
+    where: str
+
+
 @dataclass(frozen=True)
 class FileAudit:
     """What was found in one file.
 
-    document: None for a file that could not be opened; problem says why.  label: the claimed label
-    that weighs most, with where it was found.  passed_over: no layout was recognised and that was
-    allowed.
+    document: None for a file that could not be opened (problem says why), and where it was judged
+    in another process or at another time; layout, elements, blocks and excerpts are there all the
+    same.  label: the claimed label that weighs most, with where it was found.  passed_over: no
+    layout was recognised and that was allowed.  layout: "" for none.  elements, blocks: counts.
+    excerpts: what stands around each place that a finding points at, by line and column.
+    accepted: findings that do not count, because the file or the settings say why.  known:
+    findings that do not count, because a ledger holds them; gone: its entries that were found no
+    more.  absent: the file is only in the ledger.
     """
 
     path: str
@@ -39,6 +76,14 @@ class FileAudit:
     problem: str = ""
     passed_over: bool = False
     settings: Settings = field(default_factory=Settings)
+    layout: str = ""
+    elements: int = 0
+    blocks: int = 0
+    excerpts: Mapping[tuple[int, int], Excerpt] = field(default_factory=dict)
+    accepted: tuple[Accepted, ...] = ()
+    known: tuple[Finding, ...] = ()
+    gone: tuple[Mapping[str, Any], ...] = ()
+    absent: bool = False
 
     @property
     def fails(self) -> bool:
@@ -108,12 +153,24 @@ def audit_file(
     try:
         data = target.path.read_bytes()
     except OSError as problem:
-        return FileAudit(name, problem=f"{name}: {problem.strerror or problem}")
-    effective = settings if settings is not None else settings_for(target.path)
-    document = read_bytes(data, name, layout=layout)
-    if target.searched and not document.layout:
+        return unopened(name, problem)
+    return audit_bytes(data, name, Options(label, layout, settings), searched=target.searched)
+
+
+def unopened(name: str, problem: OSError) -> FileAudit:
+    """The audit of a file that could not be opened."""
+    return FileAudit(name, problem=f"{name}: {problem.strerror or problem}")
+
+
+def audit_bytes(data: bytes, name: str, options: Options, *, searched: bool = False) -> FileAudit:
+    """Judge the bytes of a file; ``searched``: pass over a text that shows no layout."""
+    effective = options.settings
+    if effective is None:
+        effective = settings_for(Path(name).absolute())
+    document = read_bytes(data, name, layout=options.layout or effective.layout)
+    if searched and not document.layout:
         return FileAudit(name, document, settings=effective, passed_over=True)
-    return judge(document, label=label, settings=effective)
+    return judge(document, label=options.label, settings=effective)
 
 
 def audit_text(
@@ -126,29 +183,78 @@ def audit_text(
 ) -> FileAudit:
     """Judge a text at hand under a declared file name."""
     effective = settings if settings is not None else settings_for(Path(name).absolute())
-    document = read_source(Source(text, name), layout=layout)
+    document = read_source(Source(text, name), layout=layout or effective.layout)
     return judge(document, label=label, settings=effective)
 
 
 def judge(document: Document, *, label: str | None = None, settings: Settings) -> FileAudit:
-    """Run all rules over a document."""
-    case = Case(document, label)
-    findings: list[Finding] = []
-    for name, rule in rules().items():
-        level = settings.severity.get(name)
-        if level == "off":
-            continue
-        found = case.judge(rule, settings.limits.get(name))
-        if level is not None:
-            found = [replace(finding, severity=level) for finding in found]  # type: ignore[arg-type]
-        findings += found
+    """Run all rules over a document; sort out what is accepted."""
+    case = Case(document, label if label is not None else settings.label)
+    for name, rule in sorted(rules().items(), key=lambda item: item[1].last):
+        if not settings.is_off(name):
+            case.found[name] = list(_judged(case, rule, settings))
+    findings = [finding for found in case.found.values() for finding in found]
     findings.sort(key=lambda f: (f.line, f.column, -LEVELS.index(f.severity), f.rule))
+    findings = list(marked(findings, document.source))
+    accepted = tuple(_accepted(case, findings, settings))
+    taken = {id(item.finding) for item in accepted}
     claims = next((claims for claims in case.claims.values() if claims), [])
     return FileAudit(
         document.path,
         document,
-        tuple(findings),
+        tuple(finding for finding in findings if id(finding) not in taken),
         claims[0].label if claims else None,
         claims[0].where if claims else "",
         settings=settings,
+        layout=document.layout,
+        elements=len({block.atomic_number for block in document.blocks}),
+        blocks=len(document.blocks),
+        excerpts=_excerpts(findings, document.source),
+        accepted=accepted,
     )
+
+
+def _judged(case: Case, rule: Rule, settings: Settings) -> Iterator[Finding]:
+    """Findings of one rule, at the levels and with the limits that hold for their elements."""
+    variants = settings.variants_of(rule.name)
+    for limits in variants:
+        for finding in _found(case, rule, limits):
+            if len(variants) > 1 and settings.limits_of(rule.name, finding.element) != limits:
+                continue
+            level = settings.level_of(rule.name, finding.element)
+            if level is None:
+                yield finding
+            elif level != "off":
+                yield replace(finding, severity=level)  # type: ignore[arg-type]
+
+
+def _found(case: Case, rule: Rule, limits: dict[str, float]) -> list[Finding]:
+    """What one rule finds; a rule of another package that fails is told of and finds nothing."""
+    try:
+        return case.judge(rule, limits)
+    except Exception as problem:
+        if not rule.is_foreign:
+            raise
+        plugins.note(f"rule {rule.name!r} fails: {type(problem).__name__}: {problem}")
+        return []
+
+
+def _accepted(case: Case, findings: list[Finding], settings: Settings) -> Iterator[Accepted]:
+    """The findings that the file or the settings accept, each with the reason given."""
+    acceptances = [*acceptances_of(case)[0], *settings.acceptances]
+    for finding in findings if acceptances else ():
+        covering = next((each for each in acceptances if each.covers(finding)), None)
+        if covering is not None:
+            yield Accepted(finding, covering.reason, covering.where)
+
+
+def _excerpts(findings: Iterable[Finding], source: Source) -> dict[tuple[int, int], Excerpt]:
+    """Lines that findings point at; of a long line what stands around the place."""
+    found: dict[tuple[int, int], Excerpt] = {}
+    for finding in findings:
+        if source.text:
+            line = source.lines[finding.line - 1]
+            start = max(0, finding.column - 1 - EXCERPT // 2) if len(line) > EXCERPT else 0
+            place = finding.line, finding.column
+            found[place] = Excerpt(line[start : start + EXCERPT], start)
+    return found

@@ -9,7 +9,7 @@ from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import number_of, occupied, replaced_by, symbol_of
 from overlapse.grammar.model import BasisSet, Block, Document, Function, Severity, Span
 from overlapse.rules.claims import Claim, claims_of
-from overlapse.rules.finding import Finding
+from overlapse.rules.finding import Edit, Finding
 from overlapse.rules.norms import Norm, norms_of
 from overlapse.rules.registry import Rule
 from overlapse.rules.rows import Row, Suspect, rows_of, suspects_of
@@ -24,6 +24,7 @@ class Case:
         # Rules reason over normalised primitives; where the text does not, its numbers are turned.
         self.document = over_normalised(document)
         self.given_label = label
+        self.found: dict[str, list[Finding]] = {}  # by rule, for the rules that come last
         self._rule = ""
         self._shared: dict[str, Any] = {}
 
@@ -102,6 +103,7 @@ class Case:
                     limit=fault.limit,
                     expected=fault.expected,
                     remedy=fault.remedy,
+                    edits=tuple(Edit(span, words) for span, words in fault.edits),
                 )
 
     def at_span(self, span: Span, severity: Severity, message: str, **details: Any) -> Finding:

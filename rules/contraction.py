@@ -4,14 +4,15 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from overlapse.grammar.model import Block, Function, letter_of
+from overlapse.grammar.model import Block, Function, Shell, letter_of
 from overlapse.rules.case import Case
 from overlapse.rules.families.expected import unnormalised_as_published
-from overlapse.rules.finding import Finding
+from overlapse.rules.finding import Edit, Finding
 from overlapse.rules.norms import NORMALISED, Culprit, Norm, culprit, look_alike, rounding
 from overlapse.rules.physics.onecentre import contracted_overlap
 from overlapse.rules.physics.trends import quantile
 from overlapse.rules.registry import rule
+from overlapse.rules.repair import rescaled, without_row
 from overlapse.rules.rows import Row, rows_of
 
 
@@ -195,6 +196,7 @@ def _odd_one(case: Case, group: list[Norm], sound: list[Norm], rows: list[Row]) 
         limit=1.0,
         expected=expected,
         witnesses=tuple(witnesses),
+        edits=() if published else _renormalised(shell, group),
         remedy=(
             "nothing to do: programs rescale it"
             if published
@@ -202,6 +204,12 @@ def _odd_one(case: Case, group: list[Norm], sound: list[Norm], rows: list[Row]) 
             f"{factor:.8g} on its coefficients would restore the norm but hide a slip"
         ),
     )
+
+
+def _renormalised(shell: Shell, group: list[Norm]) -> tuple[Edit, ...]:
+    """Edits that make the self-overlap of each of the functions one; all of them or none."""
+    each = [rescaled(shell, n.function, float(1.0 / np.sqrt(n.overlap))) for n in group]
+    return tuple(edit for edits in each for edit in edits) if all(each) else ()
 
 
 def _short(value: float) -> str:
@@ -281,6 +289,7 @@ def idle(case: Case) -> Iterator[Finding]:
                     "other than zero",
                     row=int(row),
                     measured=0.0,
+                    edits=without_row(shell, int(row)),
                     remedy="restore its coefficient, or take the row out",
                 )
 

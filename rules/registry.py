@@ -18,6 +18,7 @@ from importlib.resources import files
 from textwrap import dedent
 from typing import Any, NamedTuple
 
+from overlapse.grammar import plugins
 from overlapse.rules.finding import Finding
 
 RuleFunction = Callable[..., Iterator[Finding]]
@@ -38,10 +39,19 @@ class Explanation(NamedTuple):
 
 @dataclass(frozen=True)
 class Rule:
-    """A rule: its name, "group.rule", and its function."""
+    """A rule: its name, "group.rule", and its function.
+
+    last: whether it looks at what the other rules have found (`Case.found`).
+    """
 
     name: str
     function: RuleFunction
+    last: bool = False
+
+    @property
+    def is_foreign(self) -> bool:
+        """Whether another package brought the rule."""
+        return not self.function.__module__.startswith("overlapse.")
 
     @cached_property
     def limits(self) -> dict[str, float]:
@@ -58,11 +68,11 @@ class Rule:
 _RULES: dict[str, Rule] = {}
 
 
-def rule(name: str) -> Callable[[RuleFunction], RuleFunction]:
-    """Register the decorated function as the rule ``name``."""
+def rule(name: str, *, last: bool = False) -> Callable[[RuleFunction], RuleFunction]:
+    """Register the decorated function as the rule ``name``; ``last``: it looks at all findings."""
 
     def register(function: RuleFunction) -> RuleFunction:
-        _RULES[name] = Rule(name, function)
+        _RULES[name] = Rule(name, function, last)
         return function
 
     return register
@@ -70,11 +80,17 @@ def rule(name: str) -> Callable[[RuleFunction], RuleFunction]:
 
 @cache
 def rules() -> dict[str, Rule]:
-    """All rules by name, in alphabetical order."""
+    """All rules by name, in alphabetical order; those of other packages among them."""
     for entry in files("overlapse.rules").iterdir():
         # A look at the text spares the import of modules that hold no rule.
         if entry.name.endswith(".py") and b"\n@rule(" in entry.read_bytes():
             import_module(f"overlapse.rules.{entry.name.removesuffix('.py')}")
+    own = dict(_RULES)
+    for entry_point in plugins.entries(plugins.RULES):
+        if plugins.load(entry_point) is not None:
+            for name in {name for name in own if _RULES[name] is not own[name]}:
+                plugins.trouble(entry_point, f"the rule {name} is there already")
+        _RULES.update(own)
     return dict(sorted(_RULES.items()))
 
 

@@ -1,7 +1,7 @@
 """``overlapse audit``: judge files, folders and standard input."""
 
 import sys
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -11,10 +11,13 @@ import click
 from overlapse.lint.common import CLEAN, FOUND, SEVERITIES, UNREADABLE, a_layout, a_report, output
 
 if TYPE_CHECKING:
-    from overlapse.lint.engine import FileAudit, Target
+    from overlapse.lint.engine import FileAudit, Options, Target
 
-# Below this much text an audit is over before a progress bar would be seen.
+# Below this much text an audit is over before a progress bar would be seen, before another process
+# has started, and before a kept result would have been found.
 _QUIET_BYTES = 1_500_000
+_SERIAL_BYTES = 1_000_000
+_UNKEPT_BYTES = 100_000
 
 
 @click.command()
@@ -27,6 +30,17 @@ _QUIET_BYTES = 1_500_000
 @click.option("--fail-at", type=SEVERITIES, help="Level from which the audit fails [warning].")
 @click.option("--least", type=SEVERITIES, default="note", help="Least level to show [note].")
 @click.option("--recognised-only", is_flag=True, help="Pass over files that show no layout.")
+@click.option(
+    "--write-ledger",
+    is_flag=True,
+    help="Record all findings as known; from then on only new ones count.",
+)
+@click.option(
+    "--ledger", type=click.Path(dir_okay=False, path_type=Path), help="The ledger to use."
+)
+@click.option("--without-ledger", is_flag=True, help="Let known findings count as well.")
+@click.option("--processes", type=click.IntRange(1), help="Judge on so many processors [all].")
+@click.option("--no-cache", is_flag=True, help="Judge anew, and keep no results.")
 def audit(
     paths: tuple[Path, ...],
     report: str,
@@ -37,14 +51,27 @@ def audit(
     fail_at: str | None,
     least: str,
     recognised_only: bool,
+    write_ledger: bool,
+    ledger: Path | None,
+    without_ledger: bool,
+    processes: int | None,
+    no_cache: bool,
 ) -> None:
     """Judge files, folders (searched by content) and standard input (-).
 
     Exit status: 0 nothing found at the failing level, 1 something found, 2 wrong use or settings,
     3 a file could not be read.
+
+    \b
+    Examples:
+      overlapse audit sets/
+      overlapse audit --report sarif --out found.sarif sets/
+      overlapse audit --write-ledger sets/
+      git show :carbon.basis | overlapse audit - --named carbon.basis
     """
-    from overlapse.lint.engine import LEVELS, FileAudit, Target, audit_file, targets
-    from overlapse.lint.reports import writer
+    from overlapse.lint.engine import FileAudit, Options, Target, targets
+    from overlapse.lint.ledger import Sieve
+    from overlapse.lint.reports import needs_documents, writer
 
     troubles: list[FileAudit] = []
 
@@ -56,58 +83,145 @@ def audit(
         found += [Target(path, False)] if path == Path("-") else targets([path], trouble)
     if recognised_only:
         found = [Target(target.path, True) for target in found]
-    audits: list[FileAudit] = []
-    with _progress(found) as steps:
-        for target in steps:
-            if target.path == Path("-"):
-                audits.append(_standard_input(named, label, layout))
-            else:
-                audits.append(audit_file(target, label=label, layout=layout))
-    audits += troubles
-    if fail_at is not None:
-        audits = [_failing_at(item, fail_at) for item in audits]
-    status = UNREADABLE if any(item.problem for item in audits) else CLEAN
-    if status == CLEAN and any(item.fails for item in audits):
-        status = FOUND
-    shown = [_at_least(item, LEVELS[LEVELS.index(least) :]) for item in audits]
-    with output(out) as stream:
-        writer(report)(shown, stream, out is None and stream.isatty())
-    sys.exit(status)
+    options = Options(label=label, layout=layout)
+    sieve = None if without_ledger or write_ledger else Sieve(ledger)
+    tally = _Tally()
+
+    def stream() -> Iterator[FileAudit]:
+        judged = _audits(found, options, named, processes, no_cache, needs_documents(report))
+        yield from judged
+        yield from troubles
+        if sieve is not None:
+            yield from sieve.absent(path for path in paths if path.is_dir())
+
+    if write_ledger:
+        _record(stream(), ledger, tally)
+    else:
+        with output(out) as written:
+            shown = _sifted(stream(), sieve, fail_at, least, tally)
+            writer(report)(shown, written, out is None and sys.stdout.isatty())
+    _tell_of_plugins()
+    sys.exit(tally.status)
 
 
-def _failing_at(item: "FileAudit", level: str) -> "FileAudit":
+class _Tally:
+    """The exit status that the audits seen so far give."""
+
+    def __init__(self) -> None:
+        self.status = CLEAN
+
+    def add(self, item: "FileAudit") -> None:
+        if item.problem:
+            self.status = UNREADABLE
+        elif item.fails and self.status == CLEAN:
+            self.status = FOUND
+
+
+def _sifted(
+    audits: "Iterable[FileAudit]", sieve: object, fail_at: str | None, least: str, tally: _Tally
+) -> "Iterator[FileAudit]":
+    """The audits as they are shown: without what is known, or below the least level."""
     from dataclasses import replace
 
-    return replace(item, settings=replace(item.settings, fail_at=level))
+    from overlapse.lint.engine import LEVELS
+    from overlapse.lint.ledger import Sieve
+
+    levels = LEVELS[LEVELS.index(least) :]
+    for item in audits:
+        if isinstance(sieve, Sieve):
+            item = sieve.sifted(item)
+        if fail_at is not None:
+            item = replace(item, settings=replace(item.settings, fail_at=fail_at))
+        tally.add(item)
+        if least != LEVELS[0]:
+            item = replace(item, findings=tuple(f for f in item.findings if f.severity in levels))
+        yield item
 
 
-def _at_least(item: "FileAudit", levels: Sequence[str]) -> "FileAudit":
+def _record(audits: "Iterable[FileAudit]", ledger: Path | None, tally: _Tally) -> None:
+    """Write ledgers of all findings and say so."""
     from dataclasses import replace
 
-    return replace(item, findings=tuple(f for f in item.findings if f.severity in levels))
+    from overlapse.lint.ledger import write
+
+    def seen() -> "Iterator[FileAudit]":
+        for item in audits:
+            # Known findings do not fail; files that could not be read still do.
+            tally.add(replace(item, findings=()))
+            if item.problem:
+                click.echo(f"error: {item.problem}", err=True)
+            yield item
+
+    try:
+        ledgers = write(seen(), ledger)
+    except OSError as problem:
+        raise click.UsageError(f"{problem.filename}: {problem.strerror or problem}") from problem
+    for each in ledgers:
+        files = len(each.files)
+        click.echo(
+            f"{each.path} holds {each.count} finding{'s' * (each.count != 1)} of "
+            f"{files} file{'s' * (files != 1)}; from now on only new ones count"
+        )
 
 
-def _standard_input(named: str, label: str | None, layout: str | None) -> "FileAudit":
-    from overlapse.grammar.reading import read_bytes
-    from overlapse.lint.engine import judge
-    from overlapse.lint.settings import settings_for
+def _audits(
+    found: "list[Target]",
+    options: "Options",
+    named: str,
+    processes: int | None,
+    no_cache: bool,
+    documents: bool,
+) -> "Iterator[FileAudit]":
+    from overlapse.lint import bulk
 
-    document = read_bytes(sys.stdin.buffer.read(), named, layout=layout)
-    return judge(document, label=label, settings=settings_for(Path(named).absolute()))
+    size = sum(bulk.size_of(target.path) for target in found)
+    if processes is None:
+        processes = bulk.cores() if size > _SERIAL_BYTES else 1
+    cache = None
+    if not no_cache and size > _UNKEPT_BYTES:
+        from overlapse.lint.cache import Cache
+
+        cache = Cache()
+    read = sys.stdin.buffer.read
+    with _progress(size, len(found)) as done:
+        yield from bulk.audits(
+            found,
+            options,
+            processes=min(processes, len(found)) or 1,
+            cache=cache,
+            documents=documents,
+            done=done,
+            standard_input=lambda: (named, read()),
+        )
 
 
 @contextmanager
-def _progress(found: "Sequence[Target]") -> "Iterator[Iterator[Target]]":
-    """A bar on the terminal where more than a moment's work is ahead."""
-    sizes = [t.path.stat().st_size if t.path.is_file() else 0 for t in found]
-    if sum(sizes) < _QUIET_BYTES or not sys.stderr.isatty():
-        yield iter(found)
+def _progress(size: int, files: int) -> "Iterator[Callable[[int], None]]":
+    """A bar with rate and remaining time, where more than a moment's work is ahead."""
+    if size < _QUIET_BYTES or not sys.stderr.isatty():
+        yield lambda size: None
         return
+    from time import monotonic
 
-    def steps() -> "Iterator[Target]":
-        for target, size in zip(found, sizes, strict=True):
-            yield target
-            bar.update(size)
+    started, count = monotonic(), 0
 
-    with click.progressbar(length=sum(sizes), label="auditing", file=sys.stderr) as bar:
-        yield steps()
+    def rate(item: object) -> str:
+        return f"{count}/{files} files, {count / max(monotonic() - started, 1e-3):.0f} a second"
+
+    with click.progressbar(
+        length=size, label="auditing", file=sys.stderr, item_show_func=rate
+    ) as bar:
+
+        def done(size: int) -> None:
+            nonlocal count
+            count += 1
+            bar.update(size, current_item=size)
+
+        yield done
+
+
+def _tell_of_plugins() -> None:
+    from overlapse.grammar import plugins
+
+    for message in plugins.troubles:
+        click.echo(f"warning: {message}", err=True)
