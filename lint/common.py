@@ -26,10 +26,14 @@ class Refused(click.ClickException):
 
 def a_report(context: click.Context, parameter: click.Parameter, value: str) -> str:
     """Check the name of a report; which there are is found by presence, when it is needed."""
-    from overlapse.lint.reports import names
+    from overlapse.lint.reports import names, writer
 
     if value not in names():
         raise click.BadParameter(f"{value!r} is not one of {', '.join(names())}")
+    try:
+        writer(value)  # before the work, not after it
+    except ImportError as problem:
+        raise click.UsageError(str(problem)) from problem
     return value
 
 

@@ -10,12 +10,8 @@ from overlapse.lint.engine import FileAudit
 DOCUMENTS = True
 
 
-class PageError(Exception):
-    """Why there is no page, in words for the user."""
-
-
 if not (find_spec("jinja2") and find_spec("matplotlib")):
-    raise PageError("the report html needs its libraries: pip install 'overlapse[report]'")
+    raise ImportError("the report html needs its libraries: pip install 'overlapse[report]'")
 
 
 def write(audits: Iterable[FileAudit], out: TextIO, colour: bool) -> None:

@@ -2,7 +2,7 @@
 
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
-from math import ceil, floor, lgamma, log, log10
+from math import ceil, floor, lgamma, log, log10, nan
 from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
@@ -76,16 +76,27 @@ def ladder(
     if len(kept) > _MOST_LINES:
         kept = sorted({*(k for k in kept if k in suspects), *kept[:_MOST_LINES]})
     figure, axes = _figure(0.6 + 0.19 * len(kept))
+    # All that looks alike is one line with gaps: the library takes its time for each.
+    plain, whole, grey = _Dots(), _Dots(), _Dots()
     for line, k in enumerate(kept):
         shell = block.shells[k]
-        if k in suspects:
+        here = [spot for spot in spots if spot.shell == k]
+        if here:
             axes.axhspan(line - 0.5, line + 0.5, facecolor=roles.GROUND, edgecolor="none")
         for other in beside:
-            shift = -0.3 if other.atomic_number < block.atomic_number else 0.3
             if twin := _twin(other, block.names[k], shell):
-                at = twin.exponents[twin.exponents > 0]
-                axes.plot(at, [line + shift] * len(at), "|", color=roles.BESIDE, markersize=3)
-        _rung(axes, line, shell, [spot for spot in spots if spot.shell == k])
+                lighter = other.atomic_number < block.atomic_number
+                grey.add(twin, line + (-0.3 if lighter else 0.3), False)
+        suspect = bool(here) and all(spot.row is None for spot in here)
+        joined = bool((np.count_nonzero(shell.coefficients, axis=0) > 1).any())
+        (whole if suspect else plain).add(shell, line, joined)
+        _point_at(axes, line, shell, here)
+    if grey.marks[0]:
+        axes.plot(*grey.marks, "|", color=roles.BESIDE, markersize=3)
+    for dots, colour in ((plain, roles.MAIN), (whole, roles.SUSPECT)):
+        if dots.marks[0]:
+            axes.plot(*dots.marks, "o", color=colour, markersize=3.6)
+            axes.plot(*dots.joints, "-", color=colour, linewidth=1.0)
     axes.set_xscale("log")
     _decades(axes)
     axes.set_yticks(range(len(kept)), [block.names[k] for k in kept])
@@ -102,18 +113,35 @@ def _twin(block: Block, name: str, shell: Shell) -> Shell | None:
     return found if found is not None and len(found.exponents) == len(shell.exponents) else None
 
 
-def _rung(axes: "Axes", line: int, shell: Shell, spots: list[Spot]) -> None:
-    at = shell.exponents[shell.exponents > 0].tolist()
-    colour = roles.SUSPECT if spots and all(s.row is None for s in spots) else roles.MAIN
-    joined = "-" if (np.count_nonzero(shell.coefficients, axis=0) > 1).any() else ""
-    axes.plot(at, [line] * len(at), joined + "o", color=colour, markersize=3.6, linewidth=1.0)
+class _Dots:
+    """Marks of many shells, and the lines that join the marks of one: x and y, with gaps."""
+
+    def __init__(self) -> None:
+        self.marks: tuple[list[float], list[float]] = [], []
+        self.joints: tuple[list[float], list[float]] = [], []
+
+    def add(self, shell: Shell, y: float, joined: bool) -> None:
+        at = shell.exponents[shell.exponents > 0].tolist()
+        self.marks[0].extend(at)
+        self.marks[1].extend([y] * len(at))
+        if joined:
+            self.joints[0].extend([*at, nan])
+            self.joints[1].extend([y] * (len(at) + 1))
+
+
+def _point_at(axes: "Axes", line: int, shell: Shell, spots: list[Spot]) -> None:
+    """A diamond around each number pointed at, a cross where another one is proposed."""
     for spot in spots:
         if spot.row is None or shell.exponents[spot.row] <= 0:
             continue
-        value = float(shell.exponents[spot.row])
         axes.plot(
-            [value], [line], "D", color=roles.SUSPECT, markersize=7.5, markerfacecolor="none"
-        )  # fmt: skip
+            [float(shell.exponents[spot.row])],
+            [line],
+            "D",
+            color=roles.SUSPECT,
+            markersize=7.5,
+            markerfacecolor="none",
+        )
         if spot.exponent and spot.proposed is not None and spot.proposed > 0:
             axes.plot([spot.proposed], [line], "x", color=roles.PROPOSED, markersize=6)
 

@@ -1,6 +1,6 @@
 """Which drawings a page gets.
 
-A drawing takes about a tenth of a second, and a page of thousands of files should stay small: so
+A drawing takes some hundredths of a second, and a page of thousands of files should stay small: so
 the worst findings get theirs, a few for each file.
 """
 
@@ -19,8 +19,8 @@ from overlapse.lint.webpage import drawings
 from overlapse.lint.webpage.drawings import Spot
 from overlapse.rules.finding import Finding
 
-MOST_SCENES = 120  # of a page
-_MOST_OF_A_FILE = 8
+MOST_SCENES = 100  # of a page
+_MOST_OF_A_FILE = 6
 
 
 class Drawn(NamedTuple):
@@ -65,7 +65,9 @@ class Gallery:
         names: dict[int, str] = {}
         found = sorted(_by_block(document, audit.findings), key=lambda pair: -_rank(pair[1]))
         for order, (block, findings) in enumerate(found):
-            if order >= _MOST_OF_A_FILE or not any(map(_has_ladder, block.shells)):
+            if not any(map(_has_ladder, block.shells)):
+                continue
+            if order >= _MOST_OF_A_FILE:
                 self.left_out += 1
                 continue
             name = f"p{file}-{order}"

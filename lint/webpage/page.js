@@ -3,6 +3,7 @@
 (() => {
   const LEVELS = ["error", "warning", "note"];
   const MARKS = { error: "◆", warning: "▲", note: "●" };
+  const UNDRAWN = "Only the worst findings of so many have drawings; audit this file alone for more.";
   const STEP = 60; // findings shown at a time
   const { files, findings } = JSON.parse(document.getElementById("data").textContent);
   const at = (id) => document.getElementById(id);
@@ -132,6 +133,7 @@
     body.append(facts);
     const scene = finding.scene && at(finding.scene);
     if (scene) body.append(make("div", { class: "drawings" }, scene.content.cloneNode(true)));
+    else if (finding.scene) body.append(make("p", { class: "soft" }, UNDRAWN));
     node.append(body);
   }
 
