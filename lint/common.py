@@ -46,6 +46,20 @@ def a_layout(context: click.Context, parameter: click.Parameter, value: str | No
     return value
 
 
+def like_a_report(context: click.Context, parameter: click.Parameter, begun: str) -> list[str]:
+    """Names of reports, for the completion of a command line."""
+    from overlapse.lint.reports import names
+
+    return [name for name in names() if name.startswith(begun)]
+
+
+def like_a_layout(context: click.Context, parameter: click.Parameter, begun: str) -> list[str]:
+    """Names of layouts, for the completion of a command line."""
+    from overlapse.grammar.layouts import names
+
+    return [name for name in names() if name.startswith(begun)]
+
+
 @contextmanager
 def output(path: Path | None) -> Iterator[TextIO]:
     """Standard output, or a file that appears only when it is complete."""

@@ -92,8 +92,14 @@ def targets(
         for folder, names, files in os.walk(path, onerror=stop):
             names[:] = sorted(name for name in names if not name.startswith("."))
             for name in sorted(files):
-                if not name.startswith(".") and Path(name).suffix.lower() not in _NOT_SEARCHED:
+                if is_searched(Path(name)):
                     yield Target(Path(folder, name), True)
+
+
+def is_searched(inside: Path) -> bool:
+    """Whether a search of a folder looks at a file; ``inside`` is its path from that folder."""
+    hidden = any(part.startswith(".") for part in inside.parts)
+    return not hidden and inside.suffix.lower() not in _NOT_SEARCHED
 
 
 def audit_file(
@@ -109,9 +115,22 @@ def audit_file(
         data = target.path.read_bytes()
     except OSError as problem:
         return FileAudit(name, problem=f"{name}: {problem.strerror or problem}")
-    effective = settings if settings is not None else settings_for(target.path)
+    return audit_bytes(data, name, label, layout, settings=settings, searched=target.searched)
+
+
+def audit_bytes(
+    data: bytes,
+    name: str,
+    label: str | None = None,
+    layout: str | None = None,
+    *,
+    settings: Settings | None = None,
+    searched: bool = False,
+) -> FileAudit:
+    """Judge the bytes of a file; ``searched``: pass over a text that shows no layout."""
+    effective = settings if settings is not None else settings_for(Path(name).absolute())
     document = read_bytes(data, name, layout=layout)
-    if target.searched and not document.layout:
+    if searched and not document.layout:
         return FileAudit(name, document, settings=effective, passed_over=True)
     return judge(document, label=label, settings=effective)
 

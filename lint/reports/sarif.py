@@ -51,6 +51,7 @@ def _invocation(audits: Sequence[FileAudit]) -> dict[str, Any]:
 def _rule(name: str) -> dict[str, Any]:
     text = rules()[name].explanation
     parts = [text.why, text.formula and f"Formula: {text.formula}"]
+    parts += [text.limits and f"Limits: {text.limits}"]
     parts += [f"Source: {text.source}", f"Remedy: {text.remedy}"]
     return {
         "id": name,
@@ -103,12 +104,21 @@ def _result(finding: Finding, order: dict[str, int], mark: str) -> dict[str, Any
                         "startColumn": finding.column,
                         "endColumn": finding.column + finding.length,
                     },
-                }
+                },
+                **_place_in_the_chemistry(finding),
             }
         ],
         "partialFingerprints": {"overlapsePlace/v1": mark},
         "properties": properties,
     }
+
+
+def _place_in_the_chemistry(finding: Finding) -> dict[str, Any]:
+    """Element and shell as the standard's logical location, where there are any."""
+    names = [name for name in (finding.element, finding.shell) if name]
+    if not names:
+        return {}
+    return {"logicalLocations": [{"name": names[-1], "fullyQualifiedName": " ".join(names)}]}
 
 
 def _uri(path: str) -> str:
