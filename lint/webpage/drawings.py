@@ -228,9 +228,10 @@ def spectra(lines: Sequence[tuple[str, Sequence[float]]], name: str, title: str)
     for level in LEVELS:
         axes.axvline(level, color=roles.SUSPECT, linewidth=0.7, linestyle=(0, (2, 2)))
     for row, (_, values) in enumerate(lines):
-        sound = [v for v in values if v > 0]
+        # Of eigenvalues too close to be seen apart one is drawn: a molecule has thousands.
+        sound = list({round(50 * log10(v)): v for v in values if v > 0}.values())
         axes.plot(sound, [row] * len(sound), "|", color=roles.MAIN, markersize=8)
-        lost = len(values) - len(sound)
+        lost = min(1, sum(v <= 0 for v in values))
         axes.plot([low] * lost, [row] * lost, "x", color=roles.SUSPECT, markersize=6)
     axes.set_xscale("log")
     axes.set_xlim(low / 1.5, max([*positive, 1.0]) * 3.0)

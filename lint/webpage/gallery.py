@@ -9,18 +9,30 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 from heapq import heappush, heappushpop
 from math import isfinite
-from typing import NamedTuple
+from typing import NamedTuple, Protocol
 
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import row_of
 from overlapse.grammar.model import Block, Document, Shell, letter_of
 from overlapse.lint.engine import LEVELS, FileAudit
+from overlapse.lint.reports.lines import one_line
 from overlapse.lint.webpage import drawings
 from overlapse.lint.webpage.drawings import Spot
 from overlapse.rules.finding import Finding
 
 MOST_SCENES = 100  # of a page
 _MOST_OF_A_FILE = 6
+_MOST_PROBES = 12  # in one drawing
+
+
+class Probed(Protocol):
+    """An overlap matrix that was made of a real geometry: what it is of, and its eigenvalues."""
+
+    @property
+    def where(self) -> str: ...
+
+    @property
+    def values(self) -> Sequence[float]: ...
 
 
 class Drawn(NamedTuple):
@@ -35,14 +47,13 @@ class Scene(NamedTuple):
     """One element of one file with what was found there.
 
     beside: the next lighter and next heavier element of the row, as far as the file has them.
-    probes: name and eigenvalues of overlap matrices that the audit made.
     """
 
     name: str
     block: Block
     beside: tuple[Block, ...]
     findings: tuple[Finding, ...]
-    probes: tuple[tuple[str, Sequence[float]], ...]
+    probes: tuple[Probed, ...]
 
 
 @dataclass
@@ -56,12 +67,13 @@ class Gallery:
     def add(self, file: int, audit: FileAudit) -> dict[int, str]:
         """Take in the scenes of a file; returns the scene's name by the id of each finding.
 
-        An audit that made overlap matrices of probes carries ``probes``: pairs of what a probe is
-        called and the eigenvalues.  They are drawn beside what was found about overlap.
+        Where an audit carries ``probes``, their eigenvalues are drawn beside what was found about
+        overlap.
         """
         assert audit.document is not None
         document = over_normalised(audit.document)
-        probes = tuple(getattr(audit, "probes", ()))
+        probes: Sequence[Probed] = getattr(audit, "probes", ())
+        worst = sorted((p for p in probes if len(p.values)), key=lambda p: min(p.values))
         names: dict[int, str] = {}
         found = sorted(_by_block(document, audit.findings), key=lambda pair: -_rank(pair[1]))
         for order, (block, findings) in enumerate(found):
@@ -72,7 +84,9 @@ class Gallery:
                 continue
             name = f"p{file}-{order}"
             names |= {id(finding): name for finding in findings}
-            scene = Scene(name, block, _beside(document, block), tuple(findings), probes)
+            scene = Scene(
+                name, block, _beside(document, block), tuple(findings), tuple(worst[:_MOST_PROBES])
+            )
             item = ((_rank(findings), -order, -file), scene)
             if len(self._kept) < self.most:
                 heappush(self._kept, item)
@@ -140,7 +154,11 @@ def _drawings(scene: Scene) -> Iterator[Drawn]:
         )
         yield _spectra(scene, "c", lines, title)
     if crowded and scene.probes:
-        yield _spectra(scene, "m", scene.probes, "Eigenvalues of the overlap of the probes")
+        measured = [(str(k), probe.values) for k, probe in enumerate(scene.probes, 1)]
+        names = "; ".join(f"{k}: {probe.where}" for k, probe in enumerate(scene.probes, 1))
+        yield _spectra(
+            scene, "m", measured, f"Eigenvalues of the overlap in geometries ({one_line(names)})"
+        )
 
 
 def _spectra(

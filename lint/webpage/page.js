@@ -95,14 +95,15 @@
     return make("section", { class: "file" }, title, make("p", { class: "soft" }, facts.join("; ")));
   }
 
+  const where = (finding) => [finding.element, finding.shell].filter(Boolean).join(" ");
+
   function entry(finding) {
-    const where = [finding.element, finding.shell].filter(Boolean).join(" ");
     const mark = make("span", { "aria-hidden": "true" }, MARKS[finding.severity]);
     const summary = make(
       "summary",
       {},
       make("span", { class: `badge ${finding.severity}` }, mark, ` ${finding.severity}`),
-      make("span", { class: "where" }, where),
+      make("span", { class: "where" }, where(finding)),
       make("span", { class: "message" }, finding.message),
       make("span", { class: "place" }, `${finding.rule}  line ${finding.line}:${finding.column}`),
     );
@@ -125,6 +126,9 @@
     }
     if (finding.witnesses) fact("because", ...finding.witnesses);
     if (finding.remedy) fact("to do", finding.remedy);
+    const place = where(finding) || "this file";
+    const words = `overlapse: accept ${finding.rule} for ${place} because REASON`;
+    fact("to accept", make("span", {}, make("code", {}, words), " in a comment of the file"));
     const about = make("a", { href: `#rule-${finding.rule}` }, "what this rule looks for, and why");
     about.addEventListener("click", () => {
       at(`rule-${finding.rule}`).open = true;

@@ -11,7 +11,7 @@ import xml.etree.ElementTree as ElementTree
 from collections.abc import Sequence
 from html.parser import HTMLParser
 from pathlib import Path
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 import pytest
@@ -168,14 +168,23 @@ def test_probes_of_an_audit_are_drawn_beside_what_is_found_about_overlap() -> No
     twice = "S 2 1.0\n 4.0 0.6\n 0.5 0.5\n" + "S 2 1.0\n 4.0 0.6\n 0.5 0.5005\n"
     text = f"C 0\n{twice}P 1 1.0\n 0.5 1.0\n****\n"
 
+    class Measured(NamedTuple):
+        where: str
+        values: tuple[float, ...]
+
     class Probed(FileAudit):
-        probes = (("pair at 2.6 bohr", [1e-9, -1e-12, 0.5, 1.8]),)
+        probes = (
+            Measured("<ring>.xyz, frame 1", (1e-9, -1e-12, 0.5, 1.8)),
+            Measured("not asked for", ()),
+        )
 
     plain = _audit(text)
     assert any(finding.rule == "overlap.centre" for finding in plain.findings)
     assert "functions on one centre" in _page([plain])
     probed = Probed(plain.path, plain.document, plain.findings)
-    assert "pair at 2.6 bohr" in _page([probed])
+    page = _page([probed])
+    assert "in geometries (1: &lt;ring&gt;.xyz, frame 1)" in page
+    assert page.count("<svg viewBox") == _page([plain]).count("<svg viewBox") + 1
 
 
 def test_what_has_no_room_is_counted_and_said() -> None:
