@@ -95,7 +95,7 @@ def _cell(z: int, tally: Tally | None) -> dict[str, object]:
         "state": tally.worst,
         "at": place,
         "count": tally.levels[tally.worst],
-        "told": f"{symbol}: {told or 'nothing found'} in {_files(len(tally.files))}",
+        "told": f"{told or 'nothing found'}; in {_files(len(tally.files))}",
     }
 
 
