@@ -27,10 +27,14 @@ class Refused(click.ClickException):
 
 def a_report(context: click.Context, parameter: click.Parameter, value: str) -> str:
     """Check the name of a report; which there are is found by presence, when it is needed."""
-    from overlapse.lint.reports import names
+    from overlapse.lint.reports import names, writer
 
     if value not in names():
         raise click.BadParameter(f"{value!r} is not one of {', '.join(names())}")
+    try:
+        writer(value)  # before the work, not after it
+    except ImportError as problem:
+        raise click.UsageError(str(problem)) from problem
     return value
 
 
@@ -41,6 +45,20 @@ def a_layout(context: click.Context, parameter: click.Parameter, value: str | No
     if value is not None and value not in layouts():
         raise click.BadParameter(f"{value!r} is not one of {', '.join(layouts())}")
     return value
+
+
+def like_a_report(context: click.Context, parameter: click.Parameter, begun: str) -> list[str]:
+    """Names of reports, for the completion of a command line."""
+    from overlapse.lint.reports import names
+
+    return [name for name in names() if name.startswith(begun)]
+
+
+def like_a_layout(context: click.Context, parameter: click.Parameter, begun: str) -> list[str]:
+    """Names of layouts, for the completion of a command line."""
+    from overlapse.grammar.layouts import names
+
+    return [name for name in names() if name.startswith(begun)]
 
 
 @contextmanager

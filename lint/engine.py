@@ -137,8 +137,14 @@ def targets(
         for folder, names, files in os.walk(path, onerror=stop):
             names[:] = sorted(name for name in names if not name.startswith("."))
             for name in sorted(files):
-                if not name.startswith(".") and Path(name).suffix.lower() not in _NOT_SEARCHED:
+                if is_searched(Path(name)):
                     yield Target(Path(folder, name), True)
+
+
+def is_searched(inside: Path) -> bool:
+    """Whether a search of a folder looks at a file; ``inside`` is its path from that folder."""
+    hidden = any(part.startswith(".") for part in inside.parts)
+    return not hidden and inside.suffix.lower() not in _NOT_SEARCHED
 
 
 def audit_file(

@@ -1,17 +1,29 @@
 """``overlapse audit``: judge files, folders and standard input."""
 
 import sys
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from contextlib import contextmanager
 from pathlib import Path
+from time import perf_counter
 from typing import TYPE_CHECKING
 
 import click
 
-from overlapse.lint.common import CLEAN, FOUND, SEVERITIES, UNREADABLE, a_layout, a_report, output
+from overlapse.lint.common import (
+    CLEAN,
+    FOUND,
+    SEVERITIES,
+    UNREADABLE,
+    a_layout,
+    a_report,
+    like_a_layout,
+    like_a_report,
+    output,
+)
 
 if TYPE_CHECKING:
     from overlapse.lint.engine import FileAudit, Options, Target
+    from overlapse.lint.ledger import Sieve
 
 # Below this much text an audit is over before a progress bar would be seen, before another process
 # has started, and before a kept result would have been found.
@@ -22,9 +34,20 @@ _UNKEPT_BYTES = 100_000
 
 @click.command()
 @click.argument("paths", nargs=-1, required=True, type=click.Path(allow_dash=True, path_type=Path))
-@click.option("--report", callback=a_report, default="text", help="text, lines, json or sarif.")
+@click.option(
+    "--report",
+    callback=a_report,
+    shell_complete=like_a_report,
+    default="text",
+    help="text, lines, json, sarif or html (extra: report).",
+)
 @click.option("--out", type=click.Path(path_type=Path), help="Write the report to this file.")
-@click.option("--layout", callback=a_layout, help="Read all files as this layout.")
+@click.option(
+    "--layout",
+    callback=a_layout,
+    shell_complete=like_a_layout,
+    help="Read all files as this layout.",
+)
 @click.option("--label", help="What the sets are called, over what the files say.")
 @click.option("--named", default="<stdin>", help="File name to report for standard input (-).")
 @click.option("--fail-at", type=SEVERITIES, help="Level from which the audit fails [warning].")
@@ -41,6 +64,9 @@ _UNKEPT_BYTES = 100_000
 @click.option("--without-ledger", is_flag=True, help="Let known findings count as well.")
 @click.option("--processes", type=click.IntRange(1), help="Judge on so many processors [all].")
 @click.option("--no-cache", is_flag=True, help="Judge anew, and keep no results.")
+@click.option("--staged", is_flag=True, help="Judge what is staged in git, not the working files.")
+@click.option("-q", "--quiet", is_flag=True, help="Say only what makes the audit fail.")
+@click.option("-v", "--verbose", is_flag=True, help="Tell of each file how it was taken.")
 def audit(
     paths: tuple[Path, ...],
     report: str,
@@ -56,6 +82,9 @@ def audit(
     without_ledger: bool,
     processes: int | None,
     no_cache: bool,
+    staged: bool,
+    quiet: bool,
+    verbose: bool,
 ) -> None:
     """Judge files, folders (searched by content) and standard input (-).
 
@@ -65,31 +94,39 @@ def audit(
     \b
     Examples:
       overlapse audit sets/
-      overlapse audit --report sarif --out found.sarif sets/
+      overlapse audit --report html --out page.html sets/
       overlapse audit --write-ledger sets/
-      git show :carbon.basis | overlapse audit - --named carbon.basis
+      overlapse audit --staged --quiet sets/
+      overlapse recast a.basis --layout stars | overlapse audit - --named a.basis
     """
     from overlapse.lint.engine import FileAudit, Options, Target, targets
     from overlapse.lint.ledger import Sieve
     from overlapse.lint.reports import needs_documents, writer
+    from overlapse.lint.terminal import coloured
 
+    if quiet and verbose:
+        raise click.UsageError("--quiet and --verbose exclude each other")
     troubles: list[FileAudit] = []
 
     def trouble(message: str) -> None:
         troubles.append(FileAudit(message.partition(":")[0], problem=message))
 
-    found: list[Target] = []
-    for path in paths:
-        found += [Target(path, False)] if path == Path("-") else targets([path], trouble)
-    if recognised_only:
-        found = [Target(target.path, True) for target in found]
     options = Options(label=label, layout=layout)
+    if staged:
+        judged = _staged(paths, options, recognised_only)
+    else:
+        found: list[Target] = []
+        for path in paths:
+            found += [Target(path, False)] if path == Path("-") else targets([path], trouble)
+        if recognised_only:
+            found = [Target(target.path, True) for target in found]
+        documents = needs_documents(report)
+        judged = _audits(found, options, named, processes, no_cache, documents, quiet or verbose)
     sieve = None if without_ledger or write_ledger else Sieve(ledger)
     tally = _Tally()
 
     def stream() -> Iterator[FileAudit]:
-        judged = _audits(found, options, named, processes, no_cache, needs_documents(report))
-        yield from judged
+        yield from _told(judged) if verbose else judged
         yield from troubles
         if sieve is not None:
             yield from sieve.absent(path for path in paths if path.is_dir())
@@ -97,9 +134,12 @@ def audit(
     if write_ledger:
         _record(stream(), ledger, tally)
     else:
-        with output(out) as written:
-            shown = _sifted(stream(), sieve, fail_at, least, tally)
-            writer(report)(shown, written, out is None and sys.stdout.isatty())
+        shown: Iterable[FileAudit] = _sifted(stream(), sieve, fail_at, least, quiet, tally)
+        if quiet and out is None:
+            shown = list(shown)  # only what fails, and whether anything does must be known first
+        if not (quiet and out is None and tally.status == CLEAN):
+            with output(out) as written:
+                writer(report)(shown, written, out is None and coloured(written))
     _tell_of_plugins()
     sys.exit(tally.status)
 
@@ -118,24 +158,59 @@ class _Tally:
 
 
 def _sifted(
-    audits: "Iterable[FileAudit]", sieve: object, fail_at: str | None, least: str, tally: _Tally
+    audits: "Iterable[FileAudit]",
+    sieve: "Sieve | None",
+    fail_at: str | None,
+    least: str,
+    quiet: bool,
+    tally: _Tally,
 ) -> "Iterator[FileAudit]":
     """The audits as they are shown: without what is known, or below the least level."""
     from dataclasses import replace
 
     from overlapse.lint.engine import LEVELS
-    from overlapse.lint.ledger import Sieve
 
-    levels = LEVELS[LEVELS.index(least) :]
     for item in audits:
-        if isinstance(sieve, Sieve):
+        if sieve is not None:
             item = sieve.sifted(item)
         if fail_at is not None:
             item = replace(item, settings=replace(item.settings, fail_at=fail_at))
         tally.add(item)
-        if least != LEVELS[0]:
+        if quiet and not item.fails and not item.problem:
+            continue
+        lowest = max(least, item.settings.fail_at, key=LEVELS.index) if quiet else least
+        if lowest != LEVELS[0]:
+            levels = LEVELS[LEVELS.index(lowest) :]
             item = replace(item, findings=tuple(f for f in item.findings if f.severity in levels))
         yield item
+
+
+def _told(audits: "Iterable[FileAudit]") -> "Iterator[FileAudit]":
+    """The audits as they come; of each is told on standard error how it was taken."""
+    from overlapse.lint.telling import told
+
+    start = perf_counter()
+    for item in audits:
+        click.echo(told(item, perf_counter() - start), err=True)
+        yield item
+        start = perf_counter()
+
+
+def _staged(
+    paths: Sequence[Path], options: "Options", recognised_only: bool
+) -> "Iterator[FileAudit]":
+    """Audits of what the next commit will hold."""
+    from overlapse.lint.engine import audit_bytes
+    from overlapse.lint.staged import StagedError, staged
+
+    if Path("-") in paths:
+        raise click.UsageError("standard input (-) is not staged")
+    try:
+        for target, data in staged(paths):
+            searched = target.searched or recognised_only
+            yield audit_bytes(data, str(target.path), options, searched=searched)
+    except StagedError as problem:
+        raise click.UsageError(str(problem)) from problem
 
 
 def _record(audits: "Iterable[FileAudit]", ledger: Path | None, tally: _Tally) -> None:
@@ -171,6 +246,7 @@ def _audits(
     processes: int | None,
     no_cache: bool,
     documents: bool,
+    silent: bool,
 ) -> "Iterator[FileAudit]":
     from overlapse.lint import bulk
 
@@ -183,7 +259,7 @@ def _audits(
 
         cache = Cache()
     read = sys.stdin.buffer.read
-    with _progress(size, len(found)) as done:
+    with _progress(size, len(found), silent) as done:
         yield from bulk.audits(
             found,
             options,
@@ -196,9 +272,9 @@ def _audits(
 
 
 @contextmanager
-def _progress(size: int, files: int) -> "Iterator[Callable[[int], None]]":
+def _progress(size: int, files: int, silent: bool) -> "Iterator[Callable[[int], None]]":
     """A bar with rate and remaining time, where more than a moment's work is ahead."""
-    if size < _QUIET_BYTES or not sys.stderr.isatty():
+    if silent or size < _QUIET_BYTES or not sys.stderr.isatty():
         yield lambda size: None
         return
     from time import monotonic

@@ -54,6 +54,7 @@ def _rule(name: str) -> dict[str, Any]:
         return {"id": name}
     text = rules()[name].explanation
     parts = [text.why, text.formula and f"Formula: {text.formula}"]
+    parts += [text.limits and f"Limits: {text.limits}"]
     parts += [f"Source: {text.source}", f"Remedy: {text.remedy}"]
     return {
         "id": name,
@@ -107,13 +108,22 @@ def _result(finding: Finding, order: dict[str, int], **more: Any) -> dict[str, A
                         "startColumn": finding.column,
                         "endColumn": finding.column + finding.length,
                     },
-                }
+                },
+                **_place_in_the_chemistry(finding),
             }
         ],
         "partialFingerprints": {"overlapsePlace/v1": finding.fingerprint},
         "properties": properties,
         **more,
     }
+
+
+def _place_in_the_chemistry(finding: Finding) -> dict[str, Any]:
+    """Element and shell as the standard's logical location, where there are any."""
+    names = [name for name in (finding.element, finding.shell) if name]
+    if not names:
+        return {}
+    return {"logicalLocations": [{"name": names[-1], "fullyQualifiedName": " ".join(names)}]}
 
 
 def _uri(path: str) -> str:

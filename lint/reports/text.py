@@ -8,29 +8,30 @@ from typing import TextIO
 
 from overlapse.lint.engine import FileAudit
 from overlapse.lint.reports.lines import one_line
+from overlapse.lint.terminal import width
 from overlapse.rules.finding import Finding, Number
 
 Paint = Callable[[str, str], str]
 
 _COLOURS = {"error": "31", "warning": "33", "note": "36"}
-_WIDTH = 96
-_EXCERPT = 88  # characters of a source line that are shown
+_GUTTER = 9  # before a source line, for its number
+_LEVEL = max(map(len, _COLOURS))  # so that what follows the level stands in one column
 
 
 def write(audits: Iterable[FileAudit], out: TextIO, colour: bool) -> None:
     paint = _painted if colour else _plain
-    tally = Tally()
+    tally, columns = Tally(), width(out)
     for audit in audits:
         tally.add(audit)
         if audit.passed_over:
             continue
         if audit.problem:
-            out.write(f"{paint('error', 'error')}  {one_line(audit.problem)}\n\n")
+            out.write(_headed("error", one_line(audit.problem), paint) + "\n\n")
         elif audit.findings or audit.accepted or audit.gone:
             out.write(_heading(audit, paint) + "\n\n")
             for finding in audit.findings:
-                out.write(_finding(finding, audit, paint) + "\n")
-            out.write("".join(f"{line}\n" for line in _set_apart(audit)))
+                out.write(_finding(finding, audit, paint, columns) + "\n")
+            out.write("".join(f"{line}\n" for line in _set_apart(audit, columns)))
     out.write(tally.sentence() + "\n")
 
 
@@ -53,12 +54,16 @@ def _heading(audit: FileAudit, paint: Paint) -> str:
     return f"{paint(one_line(audit.path), 'path')}  ({'; '.join(facts)})"
 
 
-def _finding(finding: Finding, audit: FileAudit, paint: Paint) -> str:
+def _headed(level: str, words: str, paint: Paint) -> str:
+    return f"{paint(level, level)}{' ' * (_LEVEL - len(level))}  {words}"
+
+
+def _finding(finding: Finding, audit: FileAudit, paint: Paint, columns: int) -> str:
     where = " ".join(filter(None, (finding.element, finding.shell)))
-    head = f"{paint(finding.severity, finding.severity)}  {where + '  ' if where else ''}"
-    lines = [f"{head}line {finding.line}, column {finding.column}  {finding.rule}"]
-    lines += _excerpt(finding, audit, paint)
-    lines.append(_wrapped(finding.message, "  "))
+    place = f"line {finding.line}, column {finding.column}  {finding.rule}"
+    lines = [_headed(finding.severity, f"{where}  {place}" if where else place, paint)]
+    lines += _excerpt(finding, audit, paint, columns - _GUTTER)
+    lines.append(_wrapped(finding.message, "  ", columns))
     numbers = [
         f"{name} {_number(value)}"
         for name, value in (
@@ -69,31 +74,30 @@ def _finding(finding: Finding, audit: FileAudit, paint: Paint) -> str:
         if value is not None
     ]
     if numbers:
-        lines.append(_wrapped(", ".join(numbers), "  "))
-    lines += [_wrapped(f"because: {witness}", "  ") for witness in finding.witnesses]
+        lines.append(_wrapped(", ".join(numbers), "  ", columns))
+    lines += [_wrapped(f"because: {witness}", "  ", columns) for witness in finding.witnesses]
     if finding.remedy:
-        lines.append(_wrapped(f"to do: {finding.remedy}", "  "))
+        lines.append(_wrapped(f"to do: {finding.remedy}", "  ", columns))
     return "\n".join(lines) + "\n"
 
 
-def _set_apart(audit: FileAudit) -> Iterator[str]:
+def _set_apart(audit: FileAudit, columns: int) -> Iterator[str]:
     """What does not count: accepted findings, and known ones that are gone."""
     for finding, reason, where in audit.accepted:
         place = " ".join(filter(None, (finding.element, finding.shell)))
-        yield _wrapped(
-            f"accepted  {place}  line {finding.line}  {finding.rule}: {reason} ({where})", ""
-        )
+        words = f"accepted  {place}  line {finding.line}  {finding.rule}: {reason} ({where})"
+        yield _wrapped(words, "", columns)
     for entry in audit.gone:
         place = " ".join(filter(None, (entry.get("element"), entry.get("shell"))))
-        yield _wrapped(f"gone  {place}  {entry['rule']}: {entry['message']}", "")
+        yield _wrapped(f"gone  {place}  {entry['rule']}: {entry['message']}", "", columns)
     if audit.accepted or audit.gone:
         yield ""
 
 
-def _wrapped(text: str, indent: str) -> str:
+def _wrapped(text: str, indent: str, columns: int) -> str:
     return fill(
         one_line(text),
-        _WIDTH,
+        columns,
         initial_indent=indent,
         subsequent_indent=indent + "  ",
         break_long_words=False,
@@ -105,16 +109,16 @@ def _number(value: Number) -> str:
     return f"{value:.8g}" if isinstance(value, float) else one_line(str(value))
 
 
-def _excerpt(finding: Finding, audit: FileAudit, paint: Paint) -> list[str]:
-    """The line a finding points at, and a pointer below it."""
+def _excerpt(finding: Finding, audit: FileAudit, paint: Paint, room: int) -> list[str]:
+    """The line a finding points at, as far as there is room, and a pointer below it."""
     excerpt = audit.excerpts.get((finding.line, finding.column))
     if excerpt is None:
         return []
     line = excerpt.text.replace("\t", " ")
     start = finding.column - 1 - excerpt.start
     # A long line is shown around the place, not from its beginning.
-    cut = max(0, start - _EXCERPT // 2) if len(line) > _EXCERPT else 0
-    shown = one_line(line[cut : cut + _EXCERPT].rstrip())
+    cut = max(0, start - room // 2) if len(line) > room else 0
+    shown = one_line(line[cut : cut + room].rstrip())
     if not shown.strip():
         return []
     length = max(1, min(finding.length, len(shown) - (start - cut)))
