@@ -35,7 +35,8 @@ _VERDICTS: dict[Sense, Verdict] = {
 class Relation:
     """How one element of a set is related to the same element of another.
 
-    verdict: the strongest that holds; "contained in" and "contains" are said of the first.
+    verdict: the strongest that holds; "contained in" and "contains" are said of the first.  lines:
+    of the two headings, None where the element is missing.
     reasons: what else is to be said, in words.  differences: all that differs, in the order of the
     first text; where some of it is more than rounding, that alone.  angle: largest principal angle
     between the spaces of one l, in radian, None where numbers decided.
@@ -43,8 +44,7 @@ class Relation:
 
     atomic_number: int
     verdict: Verdict
-    left: Block | None
-    right: Block | None
+    lines: tuple[int | None, int | None]
     reasons: tuple[str, ...] = ()
     differences: tuple[Difference, ...] = ()
     angle: float | None = None
@@ -82,8 +82,7 @@ def relate(left: Document, mine: Block, right: Document, theirs: Block) -> Relat
     return Relation(
         mine.atomic_number,
         verdict,
-        mine,
-        theirs,
+        (mine.line, theirs.line),
         tuple(reasons),
         tuple(sorted(real or found, key=_order)),
         max(angles, default=None),
@@ -223,5 +222,6 @@ def _relate_sets(left: Document, i: int, right: Document, j: int) -> list[Relati
             found.append(relate(left, one, right, other))
         else:
             verdict: Verdict = "only in first" if other is None else "only in second"
-            found.append(Relation(key[0], verdict, one, other))
+            lines = (one.line if one else None, other.line if other else None)
+            found.append(Relation(key[0], verdict, lines))
     return found

@@ -322,12 +322,3 @@ def test_elements_missing_on_either_side_are_told() -> None:
         ("C", "only in first"),
         ("N", "only in second"),
     ]
-
-
-def test_sets_of_one_file_find_their_partners() -> None:
-    small = 'basis "C_small" SPHERICAL\nC S\n 0.5 1.0\nend\n'
-    large = 'basis "C_large" SPHERICAL\nC S\n 0.7 1.0\nC S\n 0.2 1.0\nend\n'
-    both = read_text(small + large, layout="keyworded")
-    turned = read_text(large + small, layout="keyworded")
-    if len(both.sets) == 2:
-        assert {r.verdict for r in relations(both, turned)} <= {"equal text", "equal numbers"}
