@@ -18,6 +18,8 @@ def page(rule: Rule) -> str:
     if rule.limits:
         values = ", ".join(f"{name} = {value:g}" for name, value in rule.limits.items())
         parts.append(f"Values: {values}")
+    if text.beside:
+        parts.append(f"Beside:\n\n{_indented(text.beside)}")
     parts.append(f"Found in:\n\n{_indented(text.bad)}")
     parts.append(f"Not found in:\n\n{_indented(text.good)}")
     return "\n\n".join(filter(None, parts))

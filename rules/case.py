@@ -8,6 +8,7 @@ from typing import Any, TypeVar
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import number_of, occupied, replaced_by, symbol_of
 from overlapse.grammar.model import BasisSet, Block, Document, Function, Severity, Span
+from overlapse.rules.beside import Kin, SealedSet
 from overlapse.rules.claims import Claim, claims_of
 from overlapse.rules.finding import Finding
 from overlapse.rules.norms import Norm, norms_of
@@ -24,6 +25,10 @@ class Case:
         # Rules reason over normalised primitives; where the text does not, its numbers are turned.
         self.document = over_normalised(document)
         self.given_label = label
+        # What lies beside the document, for rules that compare; put here by whoever has files.
+        self.seals: tuple[SealedSet, ...] = ()
+        self.reference: Document | None = None
+        self.kin: tuple[Kin, ...] = ()
         self._rule = ""
         self._shared: dict[str, Any] = {}
 

@@ -16,6 +16,8 @@ Sense = Literal["numbers", "rounding", "span", "contained", "contains", "differe
 
 # The same of coefficients, as a share of the largest of their function.
 _COARSEST_COEFFICIENT = 0.005
+# Functions that overlap less than this are hardly meant to be one.
+_ALIKE = 0.3
 
 
 class Part(NamedTuple):
@@ -200,6 +202,26 @@ def _partners(
         [member for i, member in enumerate(mine) if i not in chosen],
         [member for j, member in enumerate(theirs) if j not in taken],
     )
+
+
+def nearest_difference(left: Side, right: Side, member: Member) -> Difference | None:
+    """How the likeliest counterpart of a function of the second block differs from it.
+
+    Looked for among functions of as many primitives that the second block does not have itself;
+    None where none is alike at all.
+    """
+    l, count = member.function.l, len(member.function.exponents)
+    strange, _ = _without_equal(left.members.get(l, []), right.members.get(l, []))
+    others = [other for other in strange if len(other.function.exponents) == count]
+    if not others:
+        return None
+    closeness = normalised_overlaps([member.function], [m.function for m in others])[0]
+    closeness = np.nan_to_num(np.abs(closeness))
+    best = int(np.argmax(closeness))
+    if closeness[best] < _ALIKE:
+        return None
+    found = differences_of(left, others[best], right, member)
+    return next((difference for difference in found if not difference.rounded), None)
 
 
 # ---- by span
