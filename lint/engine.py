@@ -9,6 +9,7 @@ from typing import NamedTuple
 from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read_bytes, read_source
 from overlapse.grammar.source import Source
+from overlapse.lint.neighbours import Beside, furnish
 from overlapse.lint.settings import Settings, settings_for
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
@@ -64,8 +65,10 @@ def audit(*paths: str | os.PathLike[str], label: str | None = None, layout: str 
     for settings that cannot be used.
     """
     findings: list[Finding] = []
-    for target in targets(map(Path, paths)):
-        result = audit_file(target, label=label, layout=layout, settings=settings)
+    found = list(targets(map(Path, paths)))
+    beside = Beside([target.path for target in found])
+    for target in found:
+        result = audit_file(target, label=label, layout=layout, settings=settings, beside=beside)
         if result.problem:
             raise OSError(result.problem)
         findings += result.findings
@@ -102,8 +105,12 @@ def audit_file(
     label: str | None = None,
     layout: str | None = None,
     settings: Settings | None = None,
+    beside: Beside | None = None,
 ) -> FileAudit:
-    """Judge one file.  A file that cannot be opened comes back with its problem."""
+    """Judge one file, in the light of those ``beside`` it in the same audit.
+
+    A file that cannot be opened comes back with its problem.
+    """
     name = os.fspath(target.path)
     try:
         data = target.path.read_bytes()
@@ -113,7 +120,7 @@ def audit_file(
     document = read_bytes(data, name, layout=layout)
     if target.searched and not document.layout:
         return FileAudit(name, document, settings=effective, passed_over=True)
-    return judge(document, label=label, settings=effective)
+    return judge(document, label=label, settings=effective, beside=beside)
 
 
 def audit_text(
@@ -130,9 +137,16 @@ def audit_text(
     return judge(document, label=label, settings=effective)
 
 
-def judge(document: Document, *, label: str | None = None, settings: Settings) -> FileAudit:
+def judge(
+    document: Document,
+    *,
+    label: str | None = None,
+    settings: Settings,
+    beside: Beside | None = None,
+) -> FileAudit:
     """Run all rules over a document."""
     case = Case(document, label)
+    furnish(case, settings, beside)
     findings: list[Finding] = []
     for name, rule in rules().items():
         level = settings.severity.get(name)

@@ -22,13 +22,15 @@ class SettingsError(ValueError):
 @dataclass(frozen=True)
 class Settings:
     """fail_at: level from which findings make the audit fail.  severity: level per rule, or "off".
-    limits: values per rule.  origin: the file they came from, None for the defaults.
+    limits: values per rule.  origin: the file they came from, None for the defaults.  reference:
+    folder of files to compare with.
     """
 
     fail_at: str = "warning"
     severity: dict[str, str] = field(default_factory=dict)
     limits: dict[str, dict[str, float]] = field(default_factory=dict)
     origin: Path | None = None
+    reference: Path | None = None
 
 
 def settings_for(path: Path) -> Settings:
@@ -71,7 +73,7 @@ def _table(path: Path, keys: list[str]) -> dict[str, Any] | None:
 
 
 def _settings(path: Path, table: dict[str, Any]) -> Settings:
-    known = ("fail-at", "severity", "limits")
+    known = ("fail-at", "severity", "limits", "reference")
     for key in table:
         if key not in known:
             raise SettingsError(f"{path}: {_unknown('key', key, known)}")
@@ -94,7 +96,18 @@ def _settings(path: Path, table: dict[str, Any]) -> Settings:
                 raise SettingsError(f"{path}: {_unknown(f'limit of {name}', key, allowed)}")
             if isinstance(value, bool) or not isinstance(value, int | float):
                 raise SettingsError(f"{path}: limit {key} of {name} = {value!r}; it is a number")
-    return Settings(fail_at, dict(severity), {n: dict(v) for n, v in limits.items()}, path)
+    reference = table.get("reference")
+    if reference is not None and not (
+        isinstance(reference, str) and (path.parent / reference).is_dir()
+    ):
+        raise SettingsError(f"{path}: reference = {reference!r}; it is a folder, seen from there")
+    return Settings(
+        fail_at,
+        dict(severity),
+        {n: dict(v) for n, v in limits.items()},
+        path,
+        path.parent / reference if reference is not None else None,
+    )
 
 
 def _check_rule(path: Path, name: str) -> None:

@@ -44,6 +44,7 @@ def audit(
     3 a file could not be read.
     """
     from overlapse.lint.engine import LEVELS, FileAudit, Target, audit_file, targets
+    from overlapse.lint.neighbours import Beside
     from overlapse.lint.reports import writer
 
     troubles: list[FileAudit] = []
@@ -57,12 +58,13 @@ def audit(
     if recognised_only:
         found = [Target(target.path, True) for target in found]
     audits: list[FileAudit] = []
+    beside = Beside([target.path for target in found if target.path != Path("-")])
     with _progress(found) as steps:
         for target in steps:
             if target.path == Path("-"):
                 audits.append(_standard_input(named, label, layout))
             else:
-                audits.append(audit_file(target, label=label, layout=layout))
+                audits.append(audit_file(target, label=label, layout=layout, beside=beside))
     audits += troubles
     if fail_at is not None:
         audits = [_failing_at(item, fail_at) for item in audits]

@@ -131,7 +131,7 @@ def test_folders_are_paired_by_name_label_and_content(tmp_path: Path) -> None:
     put(left, "sub/own.basis", SET)
     put(right, "sub/OWN.dat", recast(SET, "keyworded"))
     put(left, "6-31Gs.txt", other)
-    put(right, "6-31G*", recast(other, "dollar"))
+    put(right, "6-31Gs.d", recast(other, "dollar"))
     put(left, "first-name.txt", SET.replace("C 0", "B 0"))
     put(right, "second-name.txt", recast(SET.replace("C 0", "B 0"), "matrix"))
     put(left, "lonely.txt", SET.replace("N 0", "F 0").replace("C 0", "Ne 0"))
@@ -141,7 +141,7 @@ def test_folders_are_paired_by_name_label_and_content(tmp_path: Path) -> None:
         (Path(f.left.path).name, Path(f.right.path).name) for f in found if f.left and f.right
     }
     assert paired == {
-        ("own.basis", "OWN.dat"), ("6-31Gs.txt", "6-31G*"), ("first-name.txt", "second-name.txt"),
+        ("own.basis", "OWN.dat"), ("6-31Gs.txt", "6-31Gs.d"), ("first-name.txt", "second-name.txt"),
     }  # fmt: skip
     assert [Path(f.left.path).name for f in found if f.left and not f.right] == ["lonely.txt"]
     assert all(f.is_equal("numbers") for f in found if f.left and f.right)
