@@ -88,11 +88,12 @@ def _finding(case: Case, kin: Kin, lack: Lack) -> Finding:
     block = lack.own.block
     path = kin.source.path
     place = lack.parent.spot(first)
-    many = f"{len(names)} functions of {kin.parent}, {', '.join(names[:6])}" + (
-        " ..." if len(names) > 6 else ""
+    told = ", ".join(names[:6]) + (" ..." if len(names) > 6 else "")
+    what = f"{len(names)} functions" if len(names) > 1 else "a function"
+    message = (
+        f"{block.symbol} lacks {what} of {kin.parent}, which {kin.label} contains: {told} "
+        f"({path}:{place.line})"
     )
-    what = many if len(names) > 1 else f"the function {names[0]} of {kin.parent}"
-    message = f"{block.symbol} lacks {what} ({path}:{place.line}), though {kin.label} contains it"
     finding = case.at_line(
         block.line,
         "warning",

@@ -107,11 +107,21 @@ def _order(difference: Difference) -> tuple[bool, int, int]:
 
 
 def _same_text(left: Document, mine: Block, right: Document, theirs: Block) -> bool:
-    def lines(document: Document, block: Block) -> list[str]:
-        return [line.rstrip() for line in document.source.lines[block.line - 1 : block.end]]
+    if left.layout != right.layout or mine.functions != theirs.functions:
+        return False
+    return _own_lines(left, mine) == _own_lines(right, theirs)
 
-    alike = left.layout == right.layout and mine.functions == theirs.functions
-    return alike and lines(left, mine) == lines(right, theirs)
+
+def _own_lines(document: Document, block: Block) -> list[str]:
+    """The lines of a block's heading, shells and potential, which may stand in different places."""
+    spans = [(block.line - 1, block.line)]
+    for shell in block.shells:
+        spans.append((shell.line - 1, shell.cells.last if shell.cells else shell.line))
+    if block.potential is not None:
+        spans.append((block.potential.line - 1, block.potential.line))
+        spans += [(c.line - 1, c.line + len(c.powers)) for c in block.potential.channels]
+    lines = document.source.lines
+    return [line.rstrip() for first, last in spans for line in lines[first:last]]
 
 
 def _compare_kinds(mine: Block, theirs: Block) -> Part:

@@ -261,7 +261,8 @@ def test_a_decorated_set_beside_its_parent_must_contain_it(tmp_path: Path) -> No
     (finding,) = lacking(tmp_path)
     assert (finding.severity, finding.element, finding.shell) == ("warning", "H", "s-1")
     assert (finding.line, finding.expected) == (5, 0.23)
-    assert "s-1 of 6-31G" in finding.message and "small.basis:4" in finding.message
+    assert "a function of 6-31G, which 6-31G** contains: s-1 (" in finding.message
+    assert "small.basis:4)" in finding.message
     # Alone, or with its parent in no audit, it is not judged.
     assert not lacking(large)
 
@@ -270,7 +271,7 @@ def test_a_lost_shell_is_named(tmp_path: Path) -> None:
     (tmp_path / "6-31G.txt").write_text(SMALL)
     (tmp_path / "6-31Gss.txt").write_text(LARGE.replace("S 1 1.00\n 0.16 1.0\n", ""))
     (finding,) = lacking(tmp_path)
-    assert "lacks the function s-2 of 6-31G" in finding.message
+    assert "6-31G** contains: s-2 (" in finding.message
 
 
 def test_another_layout_and_normalisation_of_the_parent_do_not_matter(tmp_path: Path) -> None:

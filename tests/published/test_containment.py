@@ -57,7 +57,7 @@ def test_decorated_sets_contain_their_parents(family: list[str]) -> None:
 def test_manganese_has_lost_its_f_functions() -> None:
     (finding,) = lacking(["def2-qzvp.dat", "def2-qzvpd.dat"], "def2-qzvpd.dat")
     assert (finding.element, finding.measured) == ("Mn", 3)
-    assert "f-1, f-2, f-3 of def2-QZVP" in finding.message
+    assert "3 functions of def2-QZVP, which def2-QZVPD contains: f-1, f-2, f-3" in finding.message
 
 
 def test_a_minimally_augmented_set_is_made_of_a_smaller_one() -> None:
