@@ -6,7 +6,7 @@ small audits also by what its first lines say.  Only candidates are read, few ar
 
 import re
 from collections.abc import Iterable, Sequence
-from functools import lru_cache
+from functools import cache, lru_cache
 from pathlib import Path, PurePath
 
 from overlapse.grammar.designation import (
@@ -17,14 +17,40 @@ from overlapse.grammar.designation import (
 )
 from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read
-from overlapse.lint.sealing import sealed_sets
 from overlapse.lint.settings import Settings
 from overlapse.rules.case import Case
 
+SEAL = "overlapse.seal.json"
 # In larger audits a set is known by the name of its file alone.
 _FEW_FILES = 300
 _HEAD = 4000  # characters in which a file says what it is
 _QUOTED = re.compile(r"[\"'](?:[A-Za-z]{1,3}_)?([^\"'\s]+)[\"']")
+
+
+# ---- the seal
+
+
+def seal_for(path: Path) -> Path | None:
+    """The nearest seal file above a file or folder."""
+    folder = path if path.is_dir() else path.parent
+    return _nearest_seal(folder.resolve())
+
+
+# An audit asks for each of its files; most have no seal above them.
+@cache
+def _nearest_seal(folder: Path) -> Path | None:
+    own = folder / SEAL
+    if own.is_file():
+        return own
+    return _nearest_seal(folder.parent) if folder.parent != folder else None
+
+
+def forget_seals() -> None:
+    """Look anew for seal files, because one was written."""
+    _nearest_seal.cache_clear()
+
+
+# ---- the other files of an audit
 
 
 class Beside:
@@ -95,6 +121,9 @@ def document_at(path: Path) -> Document | None:
         return None
 
 
+# ---- the reference
+
+
 @lru_cache(maxsize=8)
 def _reference_files(folder: Path) -> dict[str, tuple[Path, ...]]:
     """The files of a reference folder by their names without endings."""
@@ -131,17 +160,26 @@ def _common_folders(one: PurePath, other: PurePath) -> int:
     return count
 
 
-def furnish(case: Case, settings: Settings, beside: Beside | None) -> None:
-    """Give a case what lies beside its file."""
-    from overlapse.rules.kinship import kin_among
+# ---- all of it
 
+
+def furnish(case: Case, settings: Settings, beside: Beside | None) -> None:
+    """Give a case what lies beside its file.
+
+    Raises SettingsError for a seal file that cannot be used.
+    """
     path = Path(case.document.path)
-    case.seals = sealed_sets(case.document, path)
+    if (seal := seal_for(path)) is not None:
+        from overlapse.lint.sealing import sealed_sets
+
+        case.seals = sealed_sets(case.document, path, seal)
     if settings.reference is not None:
         namesake = reference_of(path, settings.reference)
         if namesake is not None and namesake.resolve() != path.resolve():
             case.reference = document_at(namesake)
     others = [document_at(parent) for parent in beside.parents(path)] if beside else []
     if others or len(case.sets) > 1:
+        from overlapse.rules.kinship import kin_among
+
         documents = [document for document in others if document is not None]
         case.kin = tuple(kin_among(case.claims, case.sets, [case.document, *documents]))

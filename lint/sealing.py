@@ -9,18 +9,18 @@ import json
 import os
 from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass
-from functools import cache, lru_cache
+from functools import lru_cache
 from pathlib import Path
 from typing import Any, Literal, NamedTuple
 
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.model import Document
+from overlapse.lint.neighbours import SEAL, forget_seals, seal_for
 from overlapse.lint.settings import SettingsError
 from overlapse.rules.beside import Seal, SealedSet, belonging, seals_of
 from overlapse.rules.canonical import ElementKey
 
-NAME = "overlapse.seal.json"
 VERSION = 1
 
 
@@ -53,22 +53,7 @@ class SealFile:
             return None
 
 
-# ---- finding and reading
-
-
-def seal_for(path: Path) -> Path | None:
-    """The nearest seal file above a file or folder."""
-    folder = path if path.is_dir() else path.parent
-    return _nearest(folder.resolve())
-
-
-# An audit asks for each of its files; most have no seal above them.
-@cache
-def _nearest(folder: Path) -> Path | None:
-    own = folder / NAME
-    if own.is_file():
-        return own
-    return _nearest(folder.parent) if folder.parent != folder else None
+# ---- reading
 
 
 def load(path: Path) -> SealFile:
@@ -130,12 +115,12 @@ def entries_of(document: Document) -> Entries:
     )
 
 
-def sealed_sets(document: Document, path: Path) -> tuple[SealedSet, ...]:
-    """The sets of a document as the nearest seal file above its path has them; () without one."""
-    found = seal_for(path)
-    if found is None:
-        return ()
-    seals = load(found)
+def sealed_sets(document: Document, path: Path, seal: Path) -> tuple[SealedSet, ...]:
+    """The sets of a document as a seal file has them; () where it does not know the document.
+
+    Raises SealError for a seal file that cannot be used.
+    """
+    seals = load(seal)
     entries = seals.files.get(seals.key(path) or "", ())
     owners = belonging([entry.label for entry in entries], document.sets)
     return tuple(
@@ -225,7 +210,7 @@ def put(seals: SealFile) -> None:
 
     with output(seals.path) as stream:
         stream.write(written(seals.files))
-    _nearest.cache_clear()
+    forget_seals()
 
 
 def common_seal(paths: Iterable[Path]) -> Path | None:
@@ -245,4 +230,4 @@ def new_seal(paths: Iterable[Path]) -> Path:
     folders = [path.resolve() if path.is_dir() else path.resolve().parent for path in paths]
     common = Path(os.path.commonpath(folders))
     here = Path.cwd()
-    return (here if common.is_relative_to(here) else common) / NAME
+    return (here if common.is_relative_to(here) else common) / SEAL

@@ -3,17 +3,19 @@
 from collections.abc import Callable, Iterator
 from dataclasses import replace
 from functools import cached_property
-from typing import Any, TypeVar
+from typing import TYPE_CHECKING, Any, TypeVar
 
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import number_of, occupied, replaced_by, symbol_of
 from overlapse.grammar.model import BasisSet, Block, Document, Function, Severity, Span
-from overlapse.rules.beside import Kin, SealedSet
 from overlapse.rules.claims import Claim, claims_of
 from overlapse.rules.finding import Finding
 from overlapse.rules.norms import Norm, norms_of
 from overlapse.rules.registry import Rule
 from overlapse.rules.rows import Row, Suspect, rows_of, suspects_of
+
+if TYPE_CHECKING:
+    from overlapse.rules.beside import Kin, SealedSet
 
 Shared = TypeVar("Shared")
 

@@ -1,17 +1,22 @@
-"""Drift: numbers that are no longer what they were, or not what the reference holds."""
+"""Drift: numbers that are no longer what they were, or not what the reference holds.
+
+What comparing takes is imported where it is done, because most audits compare with nothing.
+"""
 
 from collections.abc import Iterator
 from dataclasses import replace
+from typing import TYPE_CHECKING
 
 from overlapse.grammar.elements import symbol_of
 from overlapse.grammar.model import Block, Severity
-from overlapse.rules.beside import Seal, SealedSet, seal_of
-from overlapse.rules.canonical import elements_of
 from overlapse.rules.case import Case, gathered
 from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rule
-from overlapse.rules.relation import Relation, relate_documents
-from overlapse.rules.sides import Difference
+
+if TYPE_CHECKING:
+    from overlapse.rules.beside import Seal, SealedSet
+    from overlapse.rules.relation import Relation
+    from overlapse.rules.sides import Difference
 
 
 @rule("drift.seal")
@@ -60,7 +65,10 @@ def seal(case: Case) -> Iterator[Finding]:
     yield from gathered(found)
 
 
-def _against_seal(case: Case, sealed: SealedSet) -> Iterator[Finding]:
+def _against_seal(case: Case, sealed: "SealedSet") -> Iterator[Finding]:
+    from overlapse.rules.beside import seal_of
+    from overlapse.rules.canonical import elements_of
+
     members = case.sets[sealed.own] if sealed.own >= 0 else None
     now = elements_of(members) if members is not None else {}
     for key, before in sealed.elements.items():
@@ -78,7 +86,7 @@ def _against_seal(case: Case, sealed: SealedSet) -> Iterator[Finding]:
             yield _broken(case, block, before, after)
 
 
-def _broken(case: Case, block: Block, before: Seal, after: Seal) -> Finding:
+def _broken(case: Case, block: Block, before: "Seal", after: "Seal") -> Finding:
     names = list(dict.fromkeys([*before.parts, *after.parts]))
     changed = [name for name in names if before.parts.get(name) != after.parts.get(name)]
     told = [
@@ -141,6 +149,8 @@ def reference(case: Case) -> Iterator[Finding]:
     """
     if case.reference is None:
         return
+    from overlapse.rules.relation import relate_documents
+
     for i, j, relations in relate_documents(case.document, case.reference):
         if i >= 0 and j >= 0:
             found = [f for relation in relations if (f := _differing(case, i, relation))]
@@ -166,7 +176,7 @@ _WORDS = {
 }
 
 
-def _differing(case: Case, index: int, relation: Relation) -> Finding | None:
+def _differing(case: Case, index: int, relation: "Relation") -> Finding | None:
     severity = _SEVERITIES.get(relation.verdict)
     if severity is None:
         return None
@@ -186,7 +196,7 @@ def _differing(case: Case, index: int, relation: Relation) -> Finding | None:
     return finding if first is None or first.left is None else _placed(finding, first)
 
 
-def _placed(finding: Finding, first: Difference) -> Finding:
+def _placed(finding: Finding, first: "Difference") -> Finding:
     """The finding at the first number that differs, with the reference's number as the expected."""
     spot = first.left
     assert spot is not None
@@ -204,7 +214,7 @@ def _placed(finding: Finding, first: Difference) -> Finding:
     )
 
 
-def _told(first: Difference, path: str) -> str:
+def _told(first: "Difference", path: str) -> str:
     here, there = first.left, first.right
     if here is None or there is None:
         spot = here or there

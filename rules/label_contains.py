@@ -1,14 +1,19 @@
-"""Labels: does a decorated set hold the set that it decorates?"""
+"""Labels: does a decorated set hold the set that it decorates?
+
+What comparing takes is imported where it is done, because most audits compare with nothing.
+"""
 
 from collections.abc import Iterator
 from dataclasses import replace
+from typing import TYPE_CHECKING
 
-from overlapse.rules.beside import Kin
 from overlapse.rules.case import Case, gathered
-from overlapse.rules.compared import nearest_difference
 from overlapse.rules.finding import Finding
-from overlapse.rules.kinship import Lack, lacks
 from overlapse.rules.registry import rule
+
+if TYPE_CHECKING:
+    from overlapse.rules.beside import Kin
+    from overlapse.rules.kinship import Lack
 
 
 @rule("label.contains")
@@ -74,6 +79,10 @@ def contains(case: Case) -> Iterator[Finding]:
           1.1 1.0
         ****
     """
+    if not case.kin:
+        return
+    from overlapse.rules.kinship import lacks
+
     told: set[tuple[str | None, str | None, int, int]] = set()
     for kin in case.kin:
         found = [_finding(case, kin, lack) for lack in lacks(case.document, kin)]
@@ -82,7 +91,9 @@ def contains(case: Case) -> Iterator[Finding]:
         yield from gathered(new)
 
 
-def _finding(case: Case, kin: Kin, lack: Lack) -> Finding:
+def _finding(case: Case, kin: "Kin", lack: "Lack") -> Finding:
+    from overlapse.rules.compared import nearest_difference
+
     first = lack.missing[0]
     names = [lack.parent.name(member) for member in lack.missing]
     block = lack.own.block

@@ -39,10 +39,11 @@ def seal(
     wrong use, or no seal yet; 3 a file could not be read.
     """
     from overlapse.lint import sealing
+    from overlapse.lint.neighbours import SEAL
 
     place = chosen or sealing.common_seal(paths)
     if place is None and not write:
-        raise click.UsageError(f"no {sealing.NAME} above these paths; --write makes one")
+        raise click.UsageError(f"no {SEAL} above these paths; --write makes one")
     place = place or sealing.new_seal(paths)
     seals = sealing.load(place) if place.exists() or not write else sealing.SealFile(place, {})
     work = _Work(seals)
