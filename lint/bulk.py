@@ -19,6 +19,7 @@ from overlapse.grammar import plugins
 from overlapse.grammar.reading import read_bytes
 from overlapse.lint.cache import Cache, begin, key_of, under
 from overlapse.lint.engine import FileAudit, Options, Target, audit_bytes, unopened
+from overlapse.lint.neighbours import Beside
 from overlapse.lint.settings import settings_for
 
 BATCH_BYTES = 250_000  # of text that a process judges between two words with its parent
@@ -66,7 +67,7 @@ def audits(
     """
     begin()
     jobs = (Job(target, size_of(target.path)) for target in targets)
-    pool = _Pool(processes) if processes > 1 else None
+    pool = _Pool(processes, options.beside) if processes > 1 else None
     try:
         for job, outcome in _in_order(jobs, options, pool, cache, standard_input):
             done(job.size)
@@ -186,6 +187,7 @@ def _finished(batch: _Batch, cache: Cache | None) -> Iterator[tuple[Job, FileAud
 
 
 def _judged(targets: list[Target], options: Options, with_keys: bool) -> _Answer:
+    options = replace(options, beside=_beside)
     outcomes = [_outcome(target, options, with_keys) for target in targets]
     outcomes = [o._replace(audit=replace(o.audit, document=None)) for o in outcomes]
     return _Answer(outcomes, list(plugins.troubles))
@@ -204,7 +206,12 @@ def _outcome(target: Target, options: Options, with_key: bool) -> Outcome:
     return Outcome(audit, key)
 
 
-def _quiet() -> None:
+_beside: Beside | None = None
+
+
+def _start(beside: Beside | None) -> None:
+    global _beside
+    _beside = beside
     # Ctrl-C is for the parent, which stops the others.
     signal.signal(signal.SIGINT, signal.SIG_IGN)
 
@@ -212,15 +219,17 @@ def _quiet() -> None:
 class _Pool:
     """Processes that judge batches of files."""
 
-    def __init__(self, processes: int) -> None:
+    def __init__(self, processes: int, beside: Beside | None) -> None:
         self.processes = processes
         # Forked processes have everything imported already; where that is not to be had or not
         # safe, new interpreters do.
         method = "fork" if sys.platform == "linux" else "spawn"
-        self._executor = ProcessPoolExecutor(processes, get_context(method), _quiet)
+        self._executor = ProcessPoolExecutor(processes, get_context(method), _start, (beside,))
 
     def submit(self, targets: list[Target], options: Options, with_keys: bool) -> "Future[_Answer]":
-        return self._executor.submit(_judged, targets, options, with_keys)
+        # What lies beside the files is known to the processes since they began.
+        asked = replace(options, beside=None)
+        return self._executor.submit(_judged, targets, asked, with_keys)
 
     def close(self) -> None:
         """End the processes; there is no work left."""

@@ -20,6 +20,7 @@ from pathlib import Path
 from typing import Any
 
 from overlapse.lint.engine import Accepted, Excerpt, FileAudit, Options
+from overlapse.lint.neighbours import looked_at
 from overlapse.lint.settings import Settings
 from overlapse.rules.finding import Edit, Finding
 
@@ -124,7 +125,8 @@ def key_of(data: bytes, name: str, options: Options, settings: Settings, searche
     """The key of a file's result: a digest of all that it depends on."""
     digest = hashlib.sha256(data)
     asked = repr((os.path.basename(name), replace(options, settings=None), searched))
-    for part in (asked, wishes(settings), code(), surroundings(settings)):
+    around = surroundings(looked_at(Path(name), settings, options.beside))
+    for part in (asked, wishes(settings), code(), around):
         digest.update(b"\0" + hashlib.sha256(part.encode("utf-8", "surrogateescape")).digest())
     return digest.hexdigest()
 
@@ -167,14 +169,13 @@ def _stamped(path: Path) -> str:
     return digest.hexdigest()
 
 
-def surroundings(settings: Settings) -> str:
-    """Digests of the geometries, the reference and the seal that a result may depend on."""
-    places = [settings.reference, settings.seal, *(probe.geometry for probe in settings.probes)]
-    return " ".join(_stamped(place) for place in places if place is not None)
+def surroundings(places: Iterable[Path]) -> str:
+    """Digests of the files and folders that a result depends on besides its own file."""
+    return " ".join(map(_stamped, places))
 
 
 def begin() -> None:
-    """Look anew at the files that settings point at; to be called before a run."""
+    """Look anew at the files that results depend on; to be called before a run."""
     _stamped.cache_clear()
 
 

@@ -11,6 +11,7 @@ from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read_bytes, read_source
 from overlapse.grammar.source import Source
 from overlapse.lint.fingerprint import marked
+from overlapse.lint.neighbours import Beside, furnish
 from overlapse.lint.settings import Settings, settings_for
 from overlapse.rules.acceptance import acceptances_of
 from overlapse.rules.case import Case
@@ -38,12 +39,15 @@ class Options:
     """What the caller asks for, over what files and settings say.
 
     label: what the sets are called.  layout: read as this layout instead of finding it by content.
-    settings: used for all files instead of those found above them.
+    settings: used for all files instead of those found above them.  beside: the files of the audit,
+    in whose light each is judged.  energies: whether the atoms are computed.
     """
 
     label: str | None = None
     layout: str | None = None
     settings: Settings | None = None
+    beside: Beside | None = field(default=None, repr=False)
+    energies: bool = False
 
 
 class Accepted(NamedTuple):
@@ -100,17 +104,20 @@ class Target(NamedTuple):
 
 
 def audit(*paths: str | os.PathLike[str], label: str | None = None, layout: str | None = None,
-          settings: Settings | None = None) -> list[Finding]:  # fmt: skip
+          settings: Settings | None = None, energies: bool = False) -> list[Finding]:  # fmt: skip
     """Judge files and folders; return all findings, in the order of the paths and of the text.
 
     label: what the sets are called, over what the files say.  layout: read as this layout instead
     of finding it by content.  settings: used for all files instead of those found above them.
+    energies: also compute the atoms, which takes seconds for a file of many elements.
     Raises OSError for a path that cannot be opened, ValueError for an unknown layout, SettingsError
     for settings that cannot be used.
     """
     findings: list[Finding] = []
-    for target in targets(map(Path, paths)):
-        result = audit_file(target, label=label, layout=layout, settings=settings)
+    found = list(targets(map(Path, paths)))
+    options = Options(label, layout, settings, Beside([t.path for t in found]), energies)
+    for target in found:
+        result = audited(target, options)
         if result.problem:
             raise OSError(result.problem)
         findings += result.findings
@@ -153,14 +160,20 @@ def audit_file(
     label: str | None = None,
     layout: str | None = None,
     settings: Settings | None = None,
+    energies: bool = False,
 ) -> FileAudit:
     """Judge one file.  A file that cannot be opened comes back with its problem."""
+    return audited(target, Options(label, layout, settings, energies=energies))
+
+
+def audited(target: Target, options: Options) -> FileAudit:
+    """As `audit_file`, with everything that may be asked for."""
     name = os.fspath(target.path)
     try:
         data = target.path.read_bytes()
     except OSError as problem:
         return unopened(name, problem)
-    return audit_bytes(data, name, Options(label, layout, settings), searched=target.searched)
+    return audit_bytes(data, name, options, searched=target.searched)
 
 
 def unopened(name: str, problem: OSError) -> FileAudit:
@@ -176,7 +189,13 @@ def audit_bytes(data: bytes, name: str, options: Options, *, searched: bool = Fa
     document = read_bytes(data, name, layout=options.layout or effective.layout)
     if searched and not document.layout:
         return FileAudit(name, document, settings=effective, passed_over=True)
-    return judge(document, label=options.label, settings=effective)
+    return judge(
+        document,
+        label=options.label,
+        settings=effective,
+        beside=options.beside,
+        energies=options.energies,
+    )
 
 
 def audit_text(
@@ -186,16 +205,27 @@ def audit_text(
     label: str | None = None,
     layout: str | None = None,
     settings: Settings | None = None,
+    energies: bool = False,
 ) -> FileAudit:
     """Judge a text at hand under a declared file name."""
     effective = settings if settings is not None else settings_for(Path(name).absolute())
     document = read_source(Source(text, name), layout=layout or effective.layout)
-    return judge(document, label=label, settings=effective)
+    return judge(document, label=label, settings=effective, energies=energies)
 
 
-def judge(document: Document, *, label: str | None = None, settings: Settings) -> FileAudit:
-    """Run all rules over a document; sort out what is accepted."""
+def judge(
+    document: Document,
+    *,
+    label: str | None = None,
+    settings: Settings,
+    beside: Beside | None = None,
+    energies: bool = False,
+) -> FileAudit:
+    """Run all rules over a document, in the light of what lies ``beside`` its file; sort out what
+    is accepted.  energies: whether rules may compute the atoms.
+    """
     case = Case(document, label if label is not None else settings.label)
+    furnish(case, settings, beside)
     for name, rule in sorted(rules().items(), key=lambda item: item[1].last):
         if not settings.is_off(name):
             case.found[name] = list(_judged(case, rule, settings))

@@ -21,6 +21,8 @@ def page(rule: Rule, width: int) -> str:
         first, *others = _paragraphs(words)
         parts.append(_filled(f"{name}: {first}", width, "  "))
         parts += [_filled(f"  {other}", width, "  ") for other in others]
+    if text.beside:
+        parts.append(f"Beside:\n\n{_indented(text.beside)}")
     parts.append(f"Found in:\n\n{_indented(text.bad)}")
     parts.append(f"Not found in:\n\n{_indented(text.good)}")
     return "\n\n".join(filter(None, parts))

@@ -3,7 +3,7 @@
 from collections.abc import Callable, Iterator
 from dataclasses import replace
 from functools import cached_property
-from typing import Any, TypeVar
+from typing import TYPE_CHECKING, Any, TypeVar
 
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import number_of, occupied, replaced_by, symbol_of
@@ -13,6 +13,9 @@ from overlapse.rules.finding import Edit, Finding
 from overlapse.rules.norms import Norm, norms_of
 from overlapse.rules.registry import Rule
 from overlapse.rules.rows import Row, Suspect, rows_of, suspects_of
+
+if TYPE_CHECKING:
+    from overlapse.rules.beside import Kin, SealedSet
 
 Shared = TypeVar("Shared")
 
@@ -25,6 +28,10 @@ class Case:
         self.document = over_normalised(document)
         self.given_label = label
         self.found: dict[str, list[Finding]] = {}  # by rule, for the rules that come last
+        # What lies beside the document, for rules that compare; put here by whoever has files.
+        self.seals: tuple[SealedSet, ...] = ()
+        self.reference: Document | None = None
+        self.kin: tuple[Kin, ...] = ()
         self._rule = ""
         self._shared: dict[str, Any] = {}
 

@@ -6,7 +6,8 @@ their defaults hold unless the settings say otherwise.
 
 The docstring is the rule's page.  Its first line says what is found; then follow paragraphs, of
 which those that begin with "Formula:", "Source:", "Limits:" and "Remedy:" have that meaning and the
-rest says why it matters; and two literal samples, "Bad::" and "Good::", which the tests run.
+rest says why it matters; and two literal samples, "Bad::" and "Good::", which the tests run.  Rules
+that compare have a third before them, "Beside::", of what lies beside both.
 """
 
 import inspect
@@ -35,6 +36,7 @@ class Explanation(NamedTuple):
     remedy: str
     bad: str
     good: str
+    beside: str = ""
 
 
 @dataclass(frozen=True)
@@ -98,8 +100,8 @@ _MARKED = ("Formula", "Source", "Limits", "Remedy")
 
 
 def _explain(text: str) -> Explanation:
-    prose, samples = text, {"Bad": "", "Good": ""}
-    for name in ("Good", "Bad"):
+    prose, samples = text, {"Bad": "", "Good": "", "Beside": ""}
+    for name in ("Good", "Bad", "Beside"):
         before, mark, sample = prose.partition(f"\n{name}::\n")
         if mark:
             prose, samples[name] = before, dedent(sample).strip("\n") + "\n"
@@ -121,4 +123,5 @@ def _explain(text: str) -> Explanation:
         parts["Remedy"],
         samples["Bad"],
         samples["Good"],
+        samples["Beside"],
     )

@@ -3,6 +3,7 @@
 import sys
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from contextlib import contextmanager
+from dataclasses import replace
 from pathlib import Path
 from time import perf_counter
 from typing import TYPE_CHECKING
@@ -101,6 +102,7 @@ def audit(
     """
     from overlapse.lint.engine import FileAudit, Options, Target, targets
     from overlapse.lint.ledger import Sieve
+    from overlapse.lint.neighbours import Beside
     from overlapse.lint.reports import needs_documents, writer
     from overlapse.lint.terminal import coloured
 
@@ -111,7 +113,7 @@ def audit(
     def trouble(message: str) -> None:
         troubles.append(FileAudit(message.partition(":")[0], problem=message))
 
-    options = Options(label=label, layout=layout)
+    options = Options(label, layout)
     if staged:
         judged = _staged(paths, options, recognised_only)
     else:
@@ -120,6 +122,8 @@ def audit(
             found += [Target(path, False)] if path == Path("-") else targets([path], trouble)
         if recognised_only:
             found = [Target(target.path, True) for target in found]
+        beside = Beside([target.path for target in found if target.path != Path("-")])
+        options = replace(options, beside=beside)
         documents = needs_documents(report)
         judged = _audits(found, options, named, processes, no_cache, documents, quiet or verbose)
     sieve = None if without_ledger or write_ledger else Sieve(ledger)
@@ -166,8 +170,6 @@ def _sifted(
     tally: _Tally,
 ) -> "Iterator[FileAudit]":
     """The audits as they are shown: without what is known, or below the least level."""
-    from dataclasses import replace
-
     from overlapse.lint.engine import LEVELS
 
     for item in audits:
@@ -215,8 +217,6 @@ def _staged(
 
 def _record(audits: "Iterable[FileAudit]", ledger: Path | None, tally: _Tally) -> None:
     """Write ledgers of all findings and say so."""
-    from dataclasses import replace
-
     from overlapse.lint.ledger import write
 
     def seen() -> "Iterator[FileAudit]":

@@ -2,11 +2,28 @@
 
 import pytest
 
+from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read_bytes, read_text
+from overlapse.rules.beside import SealedSet, seals_of
 from overlapse.rules.case import Case
-from overlapse.rules.registry import rules
+from overlapse.rules.kinship import kin_among
+from overlapse.rules.registry import Rule, rules
 
 RULES = sorted(rules())
+
+
+def case_of(rule: Rule, document: Document) -> Case:
+    """A sample under judgement, with what the rule's page says lies beside it."""
+    case = Case(document)
+    if rule.explanation.beside:
+        beside = read_text(rule.explanation.beside, "beside")
+        case.reference = beside
+        case.seals = tuple(
+            SealedSet(index, members.label, seals_of(members))
+            for index, members in enumerate(beside.sets)
+        )
+        case.kin = tuple(kin_among(case.claims, case.document.sets, [beside]))
+    return case
 
 
 @pytest.mark.parametrize("name", RULES)
@@ -25,7 +42,7 @@ def test_the_bad_sample_is_found(name: str) -> None:
     rule = rules()[name]
     # Samples go through bytes, as files do: one of them is about the bytes themselves.
     document = read_bytes(rule.explanation.bad.encode(), "sample")
-    found = Case(document).judge(rule)
+    found = case_of(rule, document).judge(rule)
     assert found
     for finding in found:
         assert finding.rule == name
@@ -39,7 +56,7 @@ def test_the_good_sample_is_not(name: str) -> None:
     rule = rules()[name]
     document = read_text(rule.explanation.good, "sample")
     assert document.layout
-    assert not [f for f in Case(document).judge(rule) if f.severity != "note"]
+    assert not [f for f in case_of(rule, document).judge(rule) if f.severity != "note"]
     assert not [fault for fault in document.faults if fault.severity == "error"]
 
 
