@@ -10,6 +10,7 @@ from typing import TextIO
 import click
 
 CLEAN, FOUND, MISUSED, UNREADABLE, BROKEN = 0, 1, 2, 3, 70
+STOPPED = 130  # 128 + SIGINT, as shells count
 SEVERITIES = click.Choice(["error", "warning", "note"])
 
 
