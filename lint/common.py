@@ -3,7 +3,7 @@
 import sys
 from collections.abc import Iterator
 from contextlib import contextmanager
-from io import TextIOWrapper
+from io import StringIO, TextIOWrapper
 from pathlib import Path
 from typing import TextIO
 
@@ -45,27 +45,38 @@ def a_layout(context: click.Context, parameter: click.Parameter, value: str | No
 
 
 @contextmanager
-def output(path: Path | None) -> Iterator[TextIO]:
-    """A stream whose content appears, on standard output or as a file, only when it is complete."""
-    import shutil
-    import tempfile
+def output(path: Path | None, large: bool = False) -> Iterator[TextIO]:
+    """A stream whose content appears, on standard output or as a file, only when it is complete.
 
-    from overlapse.lint.atomic import replacing
-
+    large: keep it on disk until then.
+    """
     if path is None:
-        with tempfile.SpooledTemporaryFile(
-            8_000_000, "w+", encoding="utf-8", newline="", errors="backslashreplace"
-        ) as kept:
-            yield kept  # type: ignore[misc]
+        with _kept(large) as kept:
+            yield kept
             kept.seek(0)
-            shutil.copyfileobj(kept, sys.stdout)
+            while piece := kept.read(1_000_000):
+                sys.stdout.write(piece)
         sys.stdout.flush()
         return
+    from overlapse.lint.atomic import replacing
+
     try:
         with replacing(path) as stream:
-            text = TextIOWrapper(stream, encoding="utf-8", newline="", errors="backslashreplace")
+            text = TextIOWrapper(stream, encoding="utf-8", newline="", errors=_UNKNOWN)
             yield text
             text.flush()
             text.detach()
     except OSError as problem:
         raise click.UsageError(f"{path}: {problem.strerror or problem}") from problem
+
+
+# What becomes of bytes in the name of a file that are no text.
+_UNKNOWN = "backslashreplace"
+
+
+def _kept(large: bool) -> TextIO:
+    if not large:
+        return StringIO(newline="")
+    from tempfile import TemporaryFile  # its import takes longer than most audits' reports
+
+    return TemporaryFile("w+", encoding="utf-8", newline="", errors=_UNKNOWN)

@@ -69,6 +69,7 @@ def audit(
       overlapse audit --write-ledger sets/
       git show :carbon.basis | overlapse audit - --named carbon.basis
     """
+    from overlapse.lint.bulk import size_of
     from overlapse.lint.engine import FileAudit, Options, Target, targets
     from overlapse.lint.ledger import Sieve
     from overlapse.lint.reports import needs_documents, writer
@@ -97,7 +98,8 @@ def audit(
     if write_ledger:
         _record(stream(), ledger, tally)
     else:
-        with output(out) as written:
+        size = sum(size_of(target.path) for target in found)
+        with output(out, size > _SERIAL_BYTES) as written:
             shown = _sifted(stream(), sieve, fail_at, least, tally)
             writer(report)(shown, written, out is None and sys.stdout.isatty())
     _tell_of_plugins()
