@@ -1,7 +1,6 @@
 """Writing files so that a reader, or a crash, meets the old content or the new, never a part."""
 
 import os
-import tempfile
 from collections.abc import Iterator
 from contextlib import contextmanager, suppress
 from pathlib import Path
@@ -30,9 +29,9 @@ def replacing(path: Path) -> Iterator[IO[bytes]]:
         with open(target, "wb") as stream:
             yield stream
         return
-    handle, name = tempfile.mkstemp(
-        prefix=f".{target.name[:100]}.", suffix=".tmp", dir=target.parent
-    )
+    from tempfile import mkstemp  # costly to import, and needed by those alone who write
+
+    handle, name = mkstemp(prefix=f".{target.name[:100]}.", suffix=".tmp", dir=target.parent)
     try:
         with os.fdopen(handle, "wb") as stream:
             yield stream

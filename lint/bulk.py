@@ -9,18 +9,20 @@ import signal
 import sys
 from collections import deque
 from collections.abc import Callable, Iterable, Iterator
-from concurrent.futures import Future, ProcessPoolExecutor
 from dataclasses import replace
-from multiprocessing import get_context
+from functools import partial
 from pathlib import Path
-from typing import NamedTuple
+from typing import TYPE_CHECKING, NamedTuple
 
 from overlapse.grammar import plugins
 from overlapse.grammar.reading import read_bytes
-from overlapse.lint.cache import Cache, begin, key_of, under
 from overlapse.lint.engine import FileAudit, Options, Target, audit_bytes, unopened
 from overlapse.lint.neighbours import Beside
 from overlapse.lint.settings import settings_for
+
+# What keeps results and starts processes is imported where it is used: a single file needs neither.
+if TYPE_CHECKING:
+    from overlapse.lint.cache import Cache
 
 BATCH_BYTES = 250_000  # of text that a process judges between two words with its parent
 BATCH_FILES = 32
@@ -53,7 +55,7 @@ def audits(
     options: Options,
     *,
     processes: int = 1,
-    cache: Cache | None = None,
+    cache: "Cache | None" = None,
     documents: bool = False,
     done: Callable[[int], None] = lambda size: None,
     standard_input: Callable[[], tuple[str, bytes]] | None = None,
@@ -65,7 +67,10 @@ def audits(
     (which is read again where it was judged elsewhere).  done: told of the size of each file that
     is finished, in bytes.  standard_input: gives the name and the bytes of the target "-".
     """
-    begin()
+    if cache is not None:
+        from overlapse.lint.cache import begin
+
+        begin()
     jobs = (Job(target, size_of(target.path)) for target in targets)
     pool = _Pool(processes, options.beside) if processes > 1 else None
     try:
@@ -99,21 +104,24 @@ def _with_document(audit: FileAudit, options: Options) -> FileAudit:
     return replace(audit, document=read_bytes(data, audit.path, layout=layout))
 
 
-# A batch under way: its jobs, and for each its audit if that was kept, else None; and what the
-# others will give.
-_Batch = tuple[list[Job], list[FileAudit | None], "Future[_Answer] | _Answer"]
-
-
 class _Answer(NamedTuple):
     outcomes: list[Outcome]
     troubles: list[str]
+
+
+class _Batch(NamedTuple):
+    """Files under way; for each its audit if that was kept, else None; what gives the others."""
+
+    jobs: list[Job]
+    kept: list[FileAudit | None]
+    answer: Callable[[], _Answer]
 
 
 def _in_order(
     jobs: Iterator[Job],
     options: Options,
     pool: "_Pool | None",
-    cache: Cache | None,
+    cache: "Cache | None",
     standard_input: Callable[[], tuple[str, bytes]] | None,
 ) -> Iterator[tuple[Job, FileAudit]]:
     under_way: deque[_Batch] = deque()
@@ -121,15 +129,13 @@ def _in_order(
     for batch in _batches(jobs, 1 if pool is None else BATCH_FILES):
         kept = [_sent(job, options, standard_input) or _kept(job, options, cache) for job in batch]
         left = [job.target for job, audit in zip(batch, kept, strict=True) if audit is None]
-        answer: Future[_Answer] | _Answer = _Answer([], [])
-        if left:
-            with_keys = cache is not None
-            if pool is not None:
-                answer = pool.submit(left, options, with_keys)
-            else:
-                answer = _Answer([_outcome(target, options, with_keys) for target in left], [])
-        under_way.append((batch, kept, answer))
-        while len(under_way) >= most or (under_way and under_way[0][1].count(None) == 0):
+        if pool is not None and left:
+            answer = pool.submit(left, options, cache is not None)
+        else:
+            here = [_outcome(target, options, cache is not None) for target in left]
+            answer = partial(_Answer, here, [])
+        under_way.append(_Batch(batch, kept, answer))
+        while len(under_way) >= most or (under_way and under_way[0].kept.count(None) == 0):
             yield from _finished(under_way.popleft(), cache)
     while under_way:
         yield from _finished(under_way.popleft(), cache)
@@ -156,10 +162,12 @@ def _sent(
     return audit_bytes(data, name, options, searched=job.target.searched)
 
 
-def _kept(job: Job, options: Options, cache: Cache | None) -> FileAudit | None:
+def _kept(job: Job, options: Options, cache: "Cache | None") -> FileAudit | None:
     """The result that was kept for a file, or None."""
     if cache is None:
         return None
+    from overlapse.lint.cache import key_of, under
+
     target = job.target
     try:
         data = target.path.read_bytes()
@@ -171,15 +179,14 @@ def _kept(job: Job, options: Options, cache: Cache | None) -> FileAudit | None:
     return None if found is None else under(found, path, settings)
 
 
-def _finished(batch: _Batch, cache: Cache | None) -> Iterator[tuple[Job, FileAudit]]:
-    jobs, kept, awaited = batch
-    answer = awaited.result() if isinstance(awaited, Future) else awaited
+def _finished(batch: _Batch, cache: "Cache | None") -> Iterator[tuple[Job, FileAudit]]:
+    answer = batch.answer()
     for trouble in answer.troubles:
         plugins.note(trouble)
     if cache is not None:
         cache.put((outcome.key, outcome.audit) for outcome in answer.outcomes if outcome.key)
     fresh = iter(answer.outcomes)
-    for job, audit in zip(jobs, kept, strict=True):
+    for job, audit in zip(batch.jobs, batch.kept, strict=True):
         yield job, next(fresh).audit if audit is None else audit
 
 
@@ -201,9 +208,12 @@ def _outcome(target: Target, options: Options, with_key: bool) -> Outcome:
         return Outcome(unopened(path, problem), "")
     settings = options.settings or settings_for(path)
     audit = audit_bytes(data, path, replace(options, settings=settings), searched=target.searched)
+    if not with_key:
+        return Outcome(audit, "")
+    from overlapse.lint.cache import key_of
+
     # The key is of the bytes that were judged: the file may have changed since it was looked up.
-    key = key_of(data, path, options, settings, target.searched) if with_key else ""
-    return Outcome(audit, key)
+    return Outcome(audit, key_of(data, path, options, settings, target.searched))
 
 
 _beside: Beside | None = None
@@ -220,16 +230,21 @@ class _Pool:
     """Processes that judge batches of files."""
 
     def __init__(self, processes: int, beside: Beside | None) -> None:
+        from concurrent.futures import ProcessPoolExecutor
+        from multiprocessing import get_context
+
         self.processes = processes
         # Forked processes have everything imported already; where that is not to be had or not
         # safe, new interpreters do.
         method = "fork" if sys.platform == "linux" else "spawn"
         self._executor = ProcessPoolExecutor(processes, get_context(method), _start, (beside,))
 
-    def submit(self, targets: list[Target], options: Options, with_keys: bool) -> "Future[_Answer]":
+    def submit(
+        self, targets: list[Target], options: Options, with_keys: bool
+    ) -> Callable[[], _Answer]:
         # What lies beside the files is known to the processes since they began.
         asked = replace(options, beside=None)
-        return self._executor.submit(_judged, targets, asked, with_keys)
+        return self._executor.submit(_judged, targets, asked, with_keys).result
 
     def close(self) -> None:
         """End the processes; there is no work left."""

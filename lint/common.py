@@ -3,13 +3,14 @@
 import sys
 from collections.abc import Iterator
 from contextlib import contextmanager
-from io import TextIOWrapper
+from io import StringIO, TextIOWrapper
 from pathlib import Path
 from typing import TextIO
 
 import click
 
 CLEAN, FOUND, MISUSED, UNREADABLE, BROKEN = 0, 1, 2, 3, 70
+STOPPED = 130  # 128 + SIGINT, as shells count
 SEVERITIES = click.Choice(["error", "warning", "note"])
 
 
@@ -62,27 +63,45 @@ def like_a_layout(context: click.Context, parameter: click.Parameter, begun: str
 
 
 @contextmanager
-def output(path: Path | None) -> Iterator[TextIO]:
-    """A stream whose content appears, on standard output or as a file, only when it is complete."""
-    import shutil
-    import tempfile
+def output(path: Path | None, large: bool = False) -> Iterator[TextIO]:
+    """A stream whose content appears, on standard output or as a file, only when it is complete.
 
-    from overlapse.lint.atomic import replacing
-
+    large: keep it on disk until then.
+    """
     if path is None:
-        with tempfile.SpooledTemporaryFile(
-            8_000_000, "w+", encoding="utf-8", newline="", errors="backslashreplace"
-        ) as kept:
-            yield kept  # type: ignore[misc]
+        with _kept(large) as kept:
+            yield kept
             kept.seek(0)
-            shutil.copyfileobj(kept, sys.stdout)
+            while piece := kept.read(1_000_000):
+                sys.stdout.write(piece)
         sys.stdout.flush()
         return
+    from overlapse.lint.atomic import replacing
+
     try:
         with replacing(path) as stream:
-            text = TextIOWrapper(stream, encoding="utf-8", newline="", errors="backslashreplace")
+            text = TextIOWrapper(stream, encoding="utf-8", newline="", errors=_UNKNOWN)
             yield text
             text.flush()
             text.detach()
     except OSError as problem:
         raise click.UsageError(f"{path}: {problem.strerror or problem}") from problem
+
+
+# What becomes of bytes in the name of a file that are no text.
+_UNKNOWN = "backslashreplace"
+
+
+class _Kept(StringIO):
+    """Text that is bound for standard output, and looks for those who write as if it were that."""
+
+    def isatty(self) -> bool:
+        return sys.stdout.isatty()
+
+
+def _kept(large: bool) -> TextIO:
+    if not large:
+        return _Kept(newline="")
+    from tempfile import TemporaryFile  # its import takes longer than most audits' reports
+
+    return TemporaryFile("w+", encoding="utf-8", newline="", errors=_UNKNOWN)

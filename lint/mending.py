@@ -1,9 +1,10 @@
 """Repairs: from the edits that findings propose to a mended text that says what it should.
 
 Safe repairs change no number: the mended text is read again, and its model must be the old one bit
-for bit (of elements given twice with the same numbers, one stays).  Numeric repairs change what the
-file says and are made only where their rule is named; of the model only the shell concerned may
-change, and the finding must be gone.  A mended text that does not pass is refused.
+for bit (of elements given twice with the same numbers one stays, and rows may be sorted).  Numeric
+repairs change what the file says and are made only where their rule is named; of the model only the
+shell concerned may change, and the finding must be gone.  A mended text that does not pass is
+refused.
 """
 
 import re
@@ -21,7 +22,14 @@ from overlapse.lint.engine import FileAudit, Options, judge
 from overlapse.lint.settings import Settings
 from overlapse.rules.finding import Edit, Finding
 
-SAFE = ("form.ending", "form.encoding", "form.number", "form.repeat", "form.index-column")
+SAFE = (
+    "form.encoding",
+    "form.ending",
+    "form.index-column",
+    "form.number",
+    "form.repeat",
+    "primitive.order",
+)
 NUMERIC = (
     "contraction.idle",
     "contraction.norm",
@@ -203,7 +211,9 @@ def _difference(before: FileAudit, after: FileAudit, repairs: list[Repair]) -> s
     if old.layout != new.layout:
         return f"it would be read as {new.layout or 'no layout'} instead of {old.layout}"
     changed = {
-        (r.element, (r.shell or "").partition("/")[0]): r.rule for r in repairs if r.rule in NUMERIC
+        (r.element, (r.shell or "").partition("/")[0]): r.rule
+        for r in repairs
+        if r.rule in (*NUMERIC, "primitive.order")
     }
     relabelled = any(repair.rule.startswith("label.") for repair in repairs)
     if content(old, changed, relabelled) != content(new, changed, relabelled):
@@ -269,6 +279,9 @@ def _numbers(shell: Shell, rule: str | None) -> tuple[bytes, ...]:
     """The bits of a shell's numbers, but for those that a rule's repair may change."""
     if rule == "contraction.norm":
         return (shell.exponents.tobytes(),)
+    if rule == "primitive.order":
+        rows = zip(shell.exponents, shell.coefficients, strict=True)
+        return tuple(sorted(e.tobytes() + c.tobytes() for e, c in rows))
     used = (
         (shell.coefficients != 0.0).any(axis=1)
         if rule == "contraction.idle"

@@ -7,7 +7,6 @@ file``.
 
 import re
 from collections.abc import Iterator
-from difflib import get_close_matches
 from typing import NamedTuple
 
 from overlapse.grammar.elements import number_of
@@ -99,6 +98,8 @@ def parsed(words: str, line: int) -> Acceptance:
 def check_rule(name: str) -> None:
     """Raise ValueError, with the nearest name, for a name that is no rule's."""
     if name not in rules():
+        from difflib import get_close_matches
+
         near = get_close_matches(name, rules(), 1)
         hint = f"; did you mean {near[0]}?" if near else "; `overlapse rules` lists them"
         raise ValueError(f"no rule is called {name!r}{hint}")

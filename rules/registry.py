@@ -92,7 +92,7 @@ def rules() -> dict[str, Rule]:
         if plugins.load(entry_point) is not None:
             for name in {name for name in own if _RULES[name] is not own[name]}:
                 plugins.trouble(entry_point, f"the rule {name} is there already")
-        _RULES.update(own)
+            _RULES.update(own)
     return dict(sorted(_RULES.items()))
 
 

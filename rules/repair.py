@@ -5,7 +5,7 @@ and one that does not say what it should is refused.
 """
 
 import re
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 
 from overlapse.grammar.model import Block, Document, Function, Shell
 from overlapse.grammar.numbers import NUMBER, plain
@@ -97,3 +97,20 @@ def replaced_words(
 def label_lines(blocks: Iterable[Block], label: str, line: int) -> list[int]:
     """The lines on which a set's label stands: its own, and the headings of its blocks."""
     return [line, *(block.line for block in blocks if block.label == label)]
+
+
+def reordered(shell: Shell, order: Sequence[int]) -> tuple[Edit, ...]:
+    """Put a shell's rows in another order, number by number; nothing where one is not written."""
+    if shell.cells is None:
+        return ()
+    columns = (None, *range(int(shell.coefficients.shape[1])))
+    places = [[shell.cells.span(row, column) for column in columns] for row in range(len(order))]
+    if len({span for row in places for span in row}) < len(order) * len(columns):
+        return ()
+    text = shell.cells.source.text
+    return tuple(
+        Edit(target, text[slice(*new)])
+        for at, row in enumerate(order)
+        for target, new in zip(places[at], places[row], strict=True)
+        if at != row
+    )

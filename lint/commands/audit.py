@@ -100,6 +100,7 @@ def audit(
       overlapse audit --staged --quiet sets/
       overlapse recast a.basis --layout stars | overlapse audit - --named a.basis
     """
+    from overlapse.lint.bulk import size_of
     from overlapse.lint.engine import FileAudit, Options, Target, targets
     from overlapse.lint.ledger import Sieve
     from overlapse.lint.neighbours import Beside
@@ -114,10 +115,10 @@ def audit(
         troubles.append(FileAudit(message.partition(":")[0], problem=message))
 
     options = Options(label, layout)
+    found: list[Target] = []
     if staged:
         judged = _staged(paths, options, recognised_only)
     else:
-        found: list[Target] = []
         for path in paths:
             found += [Target(path, False)] if path == Path("-") else targets([path], trouble)
         if recognised_only:
@@ -142,7 +143,7 @@ def audit(
         if quiet and out is None:
             shown = list(shown)  # only what fails, and whether anything does must be known first
         if not (quiet and out is None and tally.status == CLEAN):
-            with output(out) as written:
+            with output(out, sum(size_of(t.path) for t in found) > _SERIAL_BYTES) as written:
                 writer(report)(shown, written, out is None and coloured(written))
     _tell_of_plugins()
     sys.exit(tally.status)

@@ -52,6 +52,10 @@ SLIPS = {
     "lone carriage returns": (SOUND.replace("\n", "\r"), SOUND),
     "a byte-order mark": ("\ufeff" + SOUND, SOUND),
     "row numbers": (SOUND.replace(" 4.0", " 1 4.0").replace(" 0.5 0.5", " 2 0.5 0.5"), SOUND),
+    "rows in no order": (
+        SOUND.replace(" 0.5 0.55505", " 0.02  0.1\n 5.0e-1  0.55505").replace("S 2", "S 3"),
+        SOUND.replace(" 0.5 0.55505", " 5.0e-1  0.55505\n 0.02  0.1").replace("S 2", "S 3"),
+    ),
     "an element twice": (SOUND + "! here\n" + SOUND, SOUND + "! here\n"),
     "an element twice in between": (SOUND * 2 + "N" + SOUND[1:], SOUND + "N" + SOUND[1:]),
     "several at once": ("\ufeff" + SOUND.replace("\n", "\r\n", 1).replace("0.3", "O,3"), SOUND),
