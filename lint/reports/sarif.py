@@ -115,7 +115,25 @@ def _result(finding: Finding, order: dict[str, int], **more: Any) -> dict[str, A
         "partialFingerprints": {"overlapsePlace/v1": finding.fingerprint},
         "properties": properties,
         **more,
+        **_fixes(finding),
     }
+
+
+def _fixes(finding: Finding) -> dict[str, Any]:
+    """The changes of the text that the finding proposes, as the standard writes them."""
+    if not finding.edits:
+        return {}
+    replacements = [
+        {
+            "deletedRegion": {"charOffset": start, "charLength": end - start},
+            "insertedContent": {"text": edit.replacement},
+        }
+        for edit in finding.edits
+        for start, end in (edit.span,)
+    ]
+    change = {"artifactLocation": {"uri": _uri(finding.path)}, "replacements": replacements}
+    told = finding.remedy or finding.message
+    return {"fixes": [{"description": {"text": told}, "artifactChanges": [change]}]}
 
 
 def _place_in_the_chemistry(finding: Finding) -> dict[str, Any]:

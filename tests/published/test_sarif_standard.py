@@ -6,6 +6,7 @@
 
 import io
 import json
+from dataclasses import replace
 from importlib.resources import files
 from pathlib import Path
 from typing import Any
@@ -15,6 +16,7 @@ import pytest
 from overlapse.lint.engine import FileAudit, audit_file, audit_text, targets
 from overlapse.lint.reports import writer
 from overlapse.lint.settings import Settings
+from overlapse.rules.finding import Edit
 from overlapse.rules.registry import rules
 
 jsonschema = pytest.importorskip("jsonschema")
@@ -68,6 +70,23 @@ def test_findings_of_every_rule_are_reported_to_the_standard(schema: Any) -> Non
         region = result["locations"][0]["physicalLocation"]["region"]
         assert region["endColumn"] > region["startColumn"] >= 1
     _valid(schema, report)
+
+
+def test_proposed_changes_are_fixes_of_the_standard(schema: Any) -> None:
+    text = "C 0\nS 2 1.00\n 4.0 0.6\n O.5 0.5\n****\n"
+    audit = audit_text(text, "a.basis", settings=Settings())
+    at = text.index("O.5")
+    edits = (Edit((at, at + 3), "0.5"), Edit((0, 0), "! mended\n"))
+    finding = replace(audit.findings[0], edits=edits)
+    report = _report([replace(audit, findings=(finding,))])
+    _valid(schema, report)
+    (fix,) = report["runs"][0]["results"][0]["fixes"]
+    (change,) = fix["artifactChanges"]
+    for replacement in change["replacements"]:
+        start = replacement["deletedRegion"]["charOffset"]
+        end = start + replacement["deletedRegion"]["charLength"]
+        text = text[:start] + replacement["insertedContent"]["text"] + text[end:]
+    assert text == "! mended\nC 0\nS 2 1.00\n 4.0 0.6\n 0.5 0.5\n****\n"
 
 
 def test_odd_names_and_texts_are_reported_to_the_standard(schema: Any) -> None:
