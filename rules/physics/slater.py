@@ -171,7 +171,7 @@ def fit(orbitals: tuple[Orbital, ...], count: int, starts: int = 30) -> Expansio
     Raises ValueError if no start leads to a minimum with distinct primitives.
     """
     # Slow to import, and needed only to make the table.
-    from scipy.optimize import minimize  # type: ignore[import-untyped]
+    from scipy.optimize import minimize
 
     random = np.random.default_rng(count)
     best: tuple[float, Floats] | None = None
