@@ -1,0 +1,197 @@
+"""The atoms of a set: each block's energy, and how it changes with the block's numbers."""
+
+from dataclasses import dataclass, replace
+from functools import cached_property
+from typing import NamedTuple
+
+import numpy as np
+
+from overlapse.grammar.elements import number_of
+from overlapse.grammar.model import BasisSet, Block, Floats, Shell
+from overlapse.rules.physics.atom import Solution, solve, too_few
+from overlapse.rules.physics.configuration import Configuration, configuration, known
+from overlapse.rules.physics.onecentre import self_overlap
+from overlapse.rules.physics.radial import Integrals
+from overlapse.rules.physics.response import Handle, Response, response
+
+# More primitives of one l than this would take longer than an audit has.
+_MOST = 64
+
+
+class Number(NamedTuple):
+    """A printed number of a block: 0-based shell and row, and the column of a coefficient."""
+
+    shell: int
+    row: int
+    column: int | None = None
+
+
+@dataclass(eq=False)
+class Atom:
+    """A block whose atom can be computed.
+
+    exponents: for each occupied l the distinct ones, falling, bohr**-2.  functions: normalised
+    contractions over them, shape (nprim, ncontr).  owners: shell and column of each function.
+    start: orbitals over the functions to begin with, where some are at hand.
+    """
+
+    block: Block
+    shells: Configuration
+    exponents: dict[int, Floats]
+    functions: dict[int, Floats]
+    owners: dict[int, list[tuple[int, int]]]
+    start: dict[int, Floats] | None = None
+
+    def value(self, number: Number) -> float:
+        """A printed number's value in the model."""
+        shell = self.block.shells[number.shell]
+        if number.column is None:
+            return float(shell.exponents[number.row])
+        return float(shell.coefficients[number.row, number.column])
+
+    def changed(self, number: Number, value: float) -> "Atom | None":
+        """The same atom with another value for one number; None where none can be computed."""
+        old = self.block.shells[number.shell]
+        exponents, coefficients = old.exponents.copy(), old.coefficients.copy()
+        if number.column is None:
+            exponents[number.row] = value
+        else:
+            coefficients[number.row, number.column] = value
+        shells = list(self.block.shells)
+        shells[number.shell] = Shell(old.angular, exponents, coefficients, old.line)
+        made = atom_of(replace(self.block, shells=tuple(shells)))
+        if made is None or list(made.numbers) != list(self.numbers):
+            return None
+        if number.column is not None:
+            made.__dict__["integrals"] = self.integrals
+        if self.solution is not None and self.solution.converged:
+            made.start = self.solution.orbitals
+        return made
+
+    @cached_property
+    def integrals(self) -> Integrals:
+        return Integrals(self.exponents, self.shells)
+
+    @cached_property
+    def solution(self) -> Solution | None:
+        """The atom in the functions of the block; None where they are dependent or absurd."""
+        return self._solved(self.functions, self.start)
+
+    @cached_property
+    def uncontracted(self) -> Solution | None:
+        """The atom in the block's primitives, each by itself."""
+        return self._solved(self._identity)
+
+    @cached_property
+    def _identity(self) -> dict[int, Floats]:
+        return {l: np.eye(len(a)) for l, a in self.exponents.items()}
+
+    def _solved(
+        self, functions: dict[int, Floats], start: dict[int, Floats] | None = None
+    ) -> Solution | None:
+        try:
+            return solve(self.integrals, functions, start)
+        except (ValueError, np.linalg.LinAlgError, FloatingPointError):
+            return None
+
+    @property
+    def energy(self) -> float | None:
+        """Energy of the ground term in the block's functions, hartree, if it was found."""
+        found = self.solution
+        return found.energy if found is not None and found.converged else None
+
+    @cached_property
+    def loss(self) -> float | None:
+        """What contraction costs, hartree: the energy less that of the primitives by themselves."""
+        bare = self.uncontracted
+        if self.energy is None or bare is None or not bare.converged:
+            return None
+        return max(0.0, self.energy - bare.energy)
+
+    @cached_property
+    def numbers(self) -> dict[Number, Handle]:
+        """The printed numbers that the energy depends on."""
+        found: dict[Number, Handle] = {}
+        acting: dict[Number, dict[tuple[int, int], list[int]]] = {}
+        for l, owners in self.owners.items():
+            places = {value: at for at, value in enumerate(self.exponents[l].tolist())}
+            for function, (index, column) in enumerate(owners):
+                shell = self.block.shells[index]
+                used = np.flatnonzero(shell.coefficients[:, column]).tolist()
+                for row in used:
+                    place = places[float(shell.exponents[row])]
+                    parts = acting.setdefault(Number(index, row), {})
+                    parts.setdefault((l, place), []).append(function)
+                    if len(used) > 1:
+                        parts = acting.setdefault(Number(index, row, column), {})
+                        parts.setdefault((l, place), []).append(function)
+        for number, placed in acting.items():
+            parts_of = tuple((l, place, tuple(who)) for (l, place), who in placed.items())
+            found[number] = Handle(number.column is None, parts_of)
+        return found
+
+    @cached_property
+    def response(self) -> Response | None:
+        """Derivatives of the energy by all `numbers`."""
+        if self.energy is None or self.solution is None:
+            return None
+        handles = list(self.numbers.values())
+        return response(self.integrals, self.functions, self.solution.orbitals, handles)
+
+    @cached_property
+    def bare_response(self) -> Response | None:
+        """Derivatives of the energy of the uncontracted atom by its exponents, l by l."""
+        bare = self.uncontracted
+        if bare is None or not bare.converged:
+            return None
+        handles = [
+            Handle(True, ((l, at, (at,)),))
+            for l, a in self.exponents.items()
+            for at in range(len(a))
+        ]
+        return response(self.integrals, self._identity, bare.orbitals, handles)
+
+
+def atom_of(block: Block) -> Atom | None:
+    """The atom of a block, or None where there is none to compute.
+
+    There is none beyond krypton, beside a core potential, for a block that was not read whole or
+    lacks functions, and for numbers that no energy can be computed from.
+    """
+    z = block.atomic_number
+    if not known(z) or block.potential is not None or not block.complete:
+        return None
+    shells = configuration(z)
+    exponents: dict[int, Floats] = {}
+    functions: dict[int, Floats] = {}
+    owners: dict[int, list[tuple[int, int]]] = {}
+    for l in shells.electrons:
+        members = [(s, f) for s, f in block.functions_of(l) if len(f.exponents)]
+        if not members:
+            return None
+        every = np.concatenate([f.exponents for _, f in members])
+        if not (every.min() > 1e-8 and every.max() < 1e14):
+            return None
+        distinct = np.unique(every)[::-1]
+        table = np.zeros((len(distinct), len(members)))
+        for column, (_, f) in enumerate(members):
+            norm = self_overlap(f.exponents, f.coefficients, l)
+            if not (np.isfinite(norm) and norm > 0.0):
+                return None
+            # Positions in falling order; an exponent that stands twice adds up.
+            places = len(distinct) - 1 - np.searchsorted(distinct[::-1], f.exponents)
+            np.add.at(table[:, column], places, f.coefficients / np.sqrt(norm))
+        exponents[l], functions[l] = distinct, table
+        owners[l] = [(s, f.column) for s, f in members]
+    if too_few(functions, shells) is not None or max(map(len, exponents.values())) > _MOST:
+        return None
+    return Atom(block, shells, exponents, functions, owners)
+
+
+def atoms_of(members: BasisSet, faulty: set[tuple[int, str]] = frozenset()) -> list[Atom]:  # type: ignore[assignment]
+    """The atoms of a set, by rising atomic number; blocks with shells in doubt are left out."""
+    doubted = {z for z, _ in faulty}
+    found = [
+        atom_of(block) for block in members.blocks if block.atomic_number not in doubted
+    ]
+    return sorted((a for a in found if a is not None), key=lambda a: a.block.atomic_number)
