@@ -55,17 +55,20 @@ class Target(NamedTuple):
 
 
 def audit(*paths: str | os.PathLike[str], label: str | None = None, layout: str | None = None,
-          settings: Settings | None = None) -> list[Finding]:  # fmt: skip
+          settings: Settings | None = None, energies: bool = False) -> list[Finding]:  # fmt: skip
     """Judge files and folders; return all findings, in the order of the paths and of the text.
 
     label: what the sets are called, over what the files say.  layout: read as this layout instead
     of finding it by content.  settings: used for all files instead of those found above them.
+    energies: also compute the atoms, which takes seconds for a file of many elements.
     Raises OSError for a path that cannot be opened, ValueError for an unknown layout, SettingsError
     for settings that cannot be used.
     """
     findings: list[Finding] = []
     for target in targets(map(Path, paths)):
-        result = audit_file(target, label=label, layout=layout, settings=settings)
+        result = audit_file(
+            target, label=label, layout=layout, settings=settings, energies=energies
+        )
         if result.problem:
             raise OSError(result.problem)
         findings += result.findings
@@ -102,6 +105,7 @@ def audit_file(
     label: str | None = None,
     layout: str | None = None,
     settings: Settings | None = None,
+    energies: bool = False,
 ) -> FileAudit:
     """Judge one file.  A file that cannot be opened comes back with its problem."""
     name = os.fspath(target.path)
@@ -113,7 +117,7 @@ def audit_file(
     document = read_bytes(data, name, layout=layout)
     if target.searched and not document.layout:
         return FileAudit(name, document, settings=effective, passed_over=True)
-    return judge(document, label=label, settings=effective)
+    return judge(document, label=label, settings=effective, energies=energies)
 
 
 def audit_text(
@@ -123,16 +127,19 @@ def audit_text(
     label: str | None = None,
     layout: str | None = None,
     settings: Settings | None = None,
+    energies: bool = False,
 ) -> FileAudit:
     """Judge a text at hand under a declared file name."""
     effective = settings if settings is not None else settings_for(Path(name).absolute())
     document = read_source(Source(text, name), layout=layout)
-    return judge(document, label=label, settings=effective)
+    return judge(document, label=label, settings=effective, energies=energies)
 
 
-def judge(document: Document, *, label: str | None = None, settings: Settings) -> FileAudit:
-    """Run all rules over a document."""
-    case = Case(document, label)
+def judge(
+    document: Document, *, label: str | None = None, settings: Settings, energies: bool = False
+) -> FileAudit:
+    """Run all rules over a document; those about energies only where they are wanted."""
+    case = Case(document, label, energies)
     findings: list[Finding] = []
     for name, rule in rules().items():
         level = settings.severity.get(name)

@@ -98,9 +98,9 @@ class Usual:
     stiffness: Floats
     others: int
 
-    def chi(self, steps: Steps) -> Floats:
+    def chi(self, gradient: Floats) -> Floats:
         """Departures of an atom's steps in units of the scatter, shape (n,)."""
-        away: Floats = (-steps.gradient / self.stiffness - self.centre) / self.scatter
+        away: Floats = (-gradient / self.stiffness - self.centre) / self.scatter
         return away
 
 
@@ -124,13 +124,11 @@ def usual(own: Steps, others: Sequence[Steps], file: Sequence[Steps]) -> Usual:
         for other in others:
             spread = np.maximum(spread, 2.0 * np.abs(other.gradient / stiffness))
         blur = np.hypot(blur, _LONE / stiffness)
-    spread[_spare(own)] += 1.0
+        spread[_spare(own)] += 1.0
     return Usual(centre, np.sqrt(spread**2 + blur**2 + _FINEST**2), stiffness, len(others))
 
 
-def _along_row(
-    own: Steps, others: Sequence[Steps], stiffness: Floats
-) -> tuple[Floats, Floats]:
+def _along_row(own: Steps, others: Sequence[Steps], stiffness: Floats) -> tuple[Floats, Floats]:
     """Line through the neighbours by medians, and their scatter about it.
 
     Source: P. K. Sen, J. Am. Stat. Assoc. 63, 1379 (1968).
@@ -164,25 +162,17 @@ def _of_kind(own: Steps, file: Sequence[Steps]) -> Floats:
 
 
 def _spare(own: Steps) -> list[int]:
-    """Numbers of loosest functions that no occupied shell needs: they were made for molecules."""
+    """Lone functions of an l that only closed inner shells have: they were made for molecules."""
     atom = own.atom
-    found = []
-    for l, owners in atom.owners.items():
-        if l == 0 or len(owners) <= len(atom.shells.electrons[l]):
-            continue
-        loosest = float(atom.exponents[l][-1])
-        for at, number in enumerate(own.numbers):
-            shell = atom.block.shells[number.shell]
-            if (
-                l in shell.angular
-                and len(shell.exponents) == 1
-                and float(shell.exponents[number.row]) == loosest
-                and max(n for n in atom.shells.electrons[0]) > 0
-                and atom.shells.electrons[l][-1] == 4 * l + 2
-                and not atom.shells.text.endswith("p6")
-            ):
-                found.append(at)
-    return found
+    if atom.shells.text.endswith("p6"):
+        return []
+    inner = {l for l, held in atom.shells.electrons.items() if l and held[-1] == 4 * l + 2}
+    return [
+        at
+        for at, number in enumerate(own.numbers)
+        if len(atom.block.shells[number.shell].exponents) == 1
+        and inner.issuperset(atom.block.shells[number.shell].angular)
+    ]
 
 
 @dataclass(frozen=True, eq=False)
@@ -202,7 +192,7 @@ class Explanation:
 
 def explanations(own: Steps, expected: Usual) -> list[Explanation]:
     """All numbers as explanations, the best first."""
-    away = expected.chi(own)
+    away = expected.chi(own.gradient)
     patterns = own.curvature / (expected.stiffness * expected.scatter)[None, :]
     lengths = np.sqrt((patterns**2).sum(axis=1))
     along = patterns @ away
@@ -214,112 +204,3 @@ def explanations(own: Steps, expected: Usual) -> list[Explanation]:
         for number, a, length, s in zip(own.numbers, along, lengths, significance, strict=True)
     ]  # fmt: skip
     return sorted(found, key=lambda e: e.after)
-
-
-@dataclass(frozen=True, eq=False)
-class Verdict:
-    """A number that explains an atom's steps, worked out with the energy itself.
-
-    value: what it should be; error: standard error of ln|value|.  change: of ln|number|, or for a
-    change of sign of the number over itself.  significance, before, after: as in `Explanation`,
-    after at the new value.  count: numbers of the atom.  others: neighbours compared with.
-    """
-
-    own: Steps
-    number: Number
-    value: float
-    error: float
-    before: float
-    after: float
-    others: int
-
-    @property
-    def count(self) -> int:
-        return len(self.own.numbers)
-
-    @property
-    def change(self) -> float:
-        """The change over the printed number."""
-        return self.value / self.own.atom.value(self.number) - 1.0
-
-    @property
-    def significance(self) -> float:
-        return max(self.before - self.after, 0.0) ** 0.5
-
-
-_FURTHEST = 0.4  # change of a logarithm in one step
-_ROUNDS = 7
-
-
-def refined(own: Steps, expected: Usual, number: Number, start: float) -> Verdict | None:
-    """Follow one number to where it explains the steps best; None where that leads nowhere."""
-    at = own.numbers.index(number)
-    atom, value = own.atom, start
-    before = float((expected.chi(own) ** 2).sum())
-    best: Verdict | None = None
-    for _ in range(_ROUNDS):
-        moved = atom.changed(number, value)
-        steps = steps_of(moved) if moved is not None else None
-        if moved is None or steps is None:
-            return best
-        away = expected.chi(steps)
-        pattern = steps.curvature[at] / (expected.stiffness * expected.scatter)
-        length = max(float(pattern @ pattern), 1e-300)
-        after = float(away @ away)
-        error = length**-0.5
-        if best is None or after < best.after:
-            best = Verdict(own, number, value, error, before, after, expected.others)
-        step = float(np.clip((pattern @ away) / length, -_FURTHEST, _FURTHEST))
-        if abs(step) < max(2e-5, 0.05 * error):
-            break
-        atom = moved
-        value *= float(np.exp(step)) if number.column is None else 1.0 + step
-    return best
-
-
-def by_row(own: Steps, others: Sequence[Steps]) -> list[tuple[Number, float, float]]:
-    """Numbers that depart from the same place in the neighbours: number, expected value, how far.
-
-    How far in units of the neighbours' own scatter, the furthest first.
-    """
-    if len(others) < 3:
-        return []
-    z = np.log([float(other.atom.block.atomic_number) for other in others])
-    here = float(np.log(own.atom.block.atomic_number))
-    first, second = np.triu_indices(len(z), 1)
-    found = []
-    for number in own.numbers:
-        values = np.array([other.atom.value(number) for other in others])
-        value = own.atom.value(number)
-        logarithmic = bool((values > 0.0).all()) and value > 0.0
-        if logarithmic:
-            values, value = np.log(values), float(np.log(value))
-        slope = float(np.median((values[second] - values[first]) / (z[second] - z[first])))
-        level = float(np.median(values - slope * z))
-        away = np.sort(np.abs(values - slope * z - level))
-        scatter = 1.5 * float(away[-2]) + (2e-3 if logarithmic else 2e-3 * float(np.abs(values).max()))
-        expected = level + slope * here
-        far = abs(value - expected) / scatter
-        found.append((number, float(np.exp(expected)) if logarithmic else expected, far))
-    return sorted(found, key=lambda each: -each[2])
-
-
-def explain(own: Steps, others: Sequence[Steps], expected: Usual) -> Verdict | None:
-    """The single number that explains an atom's steps best, found with the energy itself."""
-    atom = own.atom
-    tries: dict[Number, list[float]] = {}
-    for guess in explanations(own, expected)[:3]:
-        step = float(np.clip(guess.change, -_FURTHEST, _FURTHEST))
-        value = atom.value(guess.number)
-        value *= float(np.exp(step)) if guess.number.column is None else 1.0 + step
-        tries.setdefault(guess.number, []).append(value)
-    for number, value, far in by_row(own, others)[:3]:
-        if far > 3.0 and value != 0.0:
-            tries.setdefault(number, []).append(value)
-    found = [
-        verdict
-        for number, starts in tries.items()
-        for start in starts
-        if (verdict := refined(own, expected, number, start)) is not None
-    ]
-    return min(found, key=lambda v: v.after, default=None)

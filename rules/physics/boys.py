@@ -20,14 +20,17 @@ _TERMS = 8
 
 def boys(top: int, x: Floats) -> Floats:
     """F_0 to F_top at x >= 0, shape (top + 1, *x.shape); accurate to 1e-14 relative."""
-    table = _table(top + _TERMS)
+    # One point's values lie side by side, so that each is fetched with its neighbours.
+    table = _table(top + _TERMS).T[:, top:].copy()
     near = np.minimum(x, _FAR)
     at = np.rint(near / _STEP).astype(np.intp)
     step = at * _STEP - near
     result = np.empty((top + 1, *x.shape))
-    highest = table[top + _TERMS - 1][at]
+    fetched = table[at]
+    highest = fetched[..., _TERMS - 1].copy()
     for n in range(_TERMS - 2, -1, -1):
-        highest = highest * (step / (n + 1)) + table[top + n][at]
+        highest *= step / (n + 1)
+        highest += fetched[..., n]
     far = x > _FAR
     if far.any():
         highest[far] = 0.5 * gamma(top + 0.5) * x[far] ** -(top + 0.5)

@@ -124,9 +124,10 @@ def _pair(
     a, b = integrals.exponents[l][:, None, None], integrals.exponents[m][None, :, None]
     square = radii * radii
     table = boys(l + m + 3, (a + b) * square)
-    scale = norms(integrals.exponents[l], l)[:, None, None] * norms(integrals.exponents[m], m)[
-        None, :, None
-    ]
+    scale = (
+        norms(integrals.exponents[l], l)[:, None, None]
+        * norms(integrals.exponents[m], m)[None, :, None]
+    )
     half_a, half_b = 0.5 * (l + 1.5), 0.5 * (m + 1.5)
     n, o = a.shape[0], b.shape[1]
     for k in SQUARES[l, m]:

@@ -86,6 +86,7 @@ class Integrals:
     def __init__(self, exponents: dict[int, Floats], shells: Configuration) -> None:
         self.exponents = exponents
         self.shells = shells
+        self.kept: object = None  # what `response` makes of the same primitives
         self.upper = {l: np.triu_indices(len(a)) for l, a in exponents.items()}
         self.places: dict[int, Indices] = {}
         self.parts: dict[int, slice] = {}
@@ -183,7 +184,9 @@ class Integrals:
     def exchange(self, l: int, m: int, weights: dict[int, float]) -> Floats:
         """Sum over k of weight * [R_k(ac, bd) + R_k(ad, bc)] / 2, rows ab of l, columns cd of m."""
         if l == m:
-            table = sum(w * self._slater(l, k) for k, w in weights.items())
+            table = np.zeros((len(self.upper[l][0]),) * 2)
+            for k, w in weights.items():
+                table += w * self._slater(l, k)
             pair = self.places[l]
         else:
             p = np.add.outer(self.exponents[l], self.exponents[m]).ravel()
@@ -196,10 +199,10 @@ class Integrals:
             table *= n
             pair = np.arange(len(p)).reshape(len(self.exponents[l]), -1)
         (a, b), (c, d) = self.upper[l], self.upper[m]
-        flat = np.asarray(table).ravel()
+        flat = table.ravel()
         width = len(table)
         ac, bd = pair[a[:, None], c], pair[b[:, None], d]
-        gathered = flat[ac * width + bd]
+        gathered: Floats = flat[ac * width + bd]
         ad, bc = pair[a[:, None], d], pair[b[:, None], c]
         gathered += flat[ad * width + bc]
         gathered *= 0.5

@@ -44,6 +44,13 @@ class Response(NamedTuple):
     curvature: Floats
 
 
+def _charges(integrals: Integrals) -> dict[tuple[int, int, int], Charges]:
+    """The charges of an atom's primitives, kept beside its other integrals."""
+    if integrals.kept is None:
+        integrals.kept = charges(integrals)
+    return integrals.kept  # type: ignore[return-value]
+
+
 class _Orbital(NamedTuple):
     l: int
     at: int  # among those of its l
@@ -68,15 +75,28 @@ def response(
         return _Work(integrals, functions, orbitals).response(handles)
 
 
+def gradient(
+    integrals: Integrals,
+    functions: dict[int, Floats],
+    orbitals: dict[int, Floats],
+    handles: list[Handle],
+) -> Floats:
+    """The first derivatives alone, as in `response`, several times as fast."""
+    with np.errstate(all="ignore"):
+        return _Work(integrals, functions, orbitals, bends=False).gradient(handles)
+
+
 class _Work:
     def __init__(
         self,
         integrals: Integrals,
         functions: dict[int, Floats],
         orbitals: dict[int, Floats],
+        bends: bool = True,
     ) -> None:
         self.integrals = integrals
         self.functions = functions
+        self.bends = bends
         pairs, self.weights = pair_weights(integrals.shells)
         self.orbitals: list[_Orbital] = []
         start = 0
@@ -92,7 +112,7 @@ class _Work:
         ls = list(integrals.exponents)
         self.one = {l: energies(integrals, l) for l in ls}
         self.metric = {l: overlaps(integrals, l) for l in ls}
-        self.charges = charges(integrals)
+        self.charges = _charges(integrals)
         self._contract()
         self._derive()
 
@@ -105,7 +125,9 @@ class _Work:
             for j, other in enumerate(self.orbitals):
                 if other.l == m:
                     first = np.einsum("xbg,b->xg", found.first[:, :n], other.vector)
-                    second = np.einsum("xbg,b->xg", found.second, other.vector)
+                    second = (
+                        np.einsum("xbg,b->xg", found.second, other.vector) if self.bends else first
+                    )
                     self.with_orbital[l, j, k] = (first, second)
         for i, orbital in enumerate(self.orbitals):
             n = len(orbital.vector)
@@ -117,7 +139,30 @@ class _Work:
 
     def _derive(self) -> None:
         """First and second derivatives of E by the orbitals, over (phi, phi') and (phi'')."""
-        self.slopes = [2.0 * o.electrons * self._over(self.one[o.l].first, o) for o in self.orbitals]
+        self.slopes = [
+            2.0 * o.electrons * self._over(self.one[o.l].first, o) for o in self.orbitals
+        ]
+        self._slope()
+        self.plain = [slope.copy() for slope in self.slopes]
+        if self.bends:
+            self._bend()
+
+    def _slope(self) -> None:
+        for i, orbital in enumerate(self.orbitals):
+            seen: dict[int, Floats] = {}
+            for k, (same, mixed) in self.weights.items():
+                for j in range(len(self.orbitals)):
+                    pair = (min(i, j), max(i, j))
+                    if weight := same.get(pair, 0.0):
+                        factor = (4.0 if i == j else 2.0) * weight
+                        seen[k] = seen.get(k, 0.0) + factor * self.of_pair[j, j, k]
+                    if weight := mixed.get(pair, 0.0):
+                        first = self.with_orbital[orbital.l, j, k][0]
+                        self.slopes[i] += 2.0 * weight * (first @ self.of_pair[i, j, k])
+            for k, field in seen.items():
+                self.slopes[i] += self.with_orbital[orbital.l, i, k][0] @ field
+
+    def _bend(self) -> None:
         self.further = [2.0 * o.electrons * self.one[o.l].second @ o.vector for o in self.orbitals]
         self.bent = np.zeros((self.size, self.size))
         for i, orbital in enumerate(self.orbitals):
@@ -132,16 +177,13 @@ class _Work:
                     if weight := mixed.get(pair, 0.0):
                         first, second = self.with_orbital[orbital.l, j, k]
                         charge = self.of_pair[i, j, k]
-                        self.slopes[i] += 2.0 * weight * (first @ charge)
                         self.further[i] += 2.0 * weight * (second @ charge)
                         own += 2.0 * weight * (first @ first.T)
                 if weight := same.get((i, i), 0.0):
                     first = self.with_orbital[orbital.l, i, k][0]
                     own += 8.0 * weight * (first @ first.T)
             for k, seen in field.items():
-                first, second = self.with_orbital[orbital.l, i, k]
-                self.slopes[i] += first @ seen
-                self.further[i] += second @ seen
+                self.further[i] += self.with_orbital[orbital.l, i, k][1] @ seen
                 own += self.charges[orbital.l, orbital.l, k].first @ seen
             self.bent[orbital.slot, orbital.slot] = own
             for j in range(i + 1, len(self.orbitals)):
@@ -170,17 +212,29 @@ class _Work:
         seen: Floats = matrix[:, : len(orbital.vector)] @ orbital.vector
         return seen
 
+    def gradient(self, handles: list[Handle]) -> Floats:
+        """First derivatives by the numbers, orthonormality kept."""
+        self._hold_orthonormal()
+        found: Floats = self._moves(handles) @ np.concatenate(self.slopes)
+        return found
+
+    def _moves(self, handles: list[Handle]) -> Floats:
+        """What each number does to the orbitals, over their phi and phi'."""
+        moves = np.zeros((len(handles), self.size))
+        of = {l: [o for o in self.orbitals if o.l == l] for l in self.functions}
+        for x, handle in enumerate(handles):
+            for l, a, columns in handle.parts:
+                shift = a + (len(self.integrals.exponents[l]) if handle.exponent else 0)
+                for column in columns:
+                    weight = self.functions[l][a, column]
+                    for o in of[l]:
+                        moves[x, o.slot.start + shift] += weight * o.over[column]
+        return moves
+
     def response(self, handles: list[Handle]) -> Response:
         """Derivatives by the numbers, orthonormality kept and orbitals relaxed."""
         self._hold_orthonormal()
-        moves = np.zeros((len(handles), self.size))
-        for x, handle in enumerate(handles):
-            for l, a, columns in handle.parts:
-                weights = self.functions[l][a, list(columns)]
-                shift = a + (len(self.integrals.exponents[l]) if handle.exponent else 0)
-                for o in self.orbitals:
-                    if o.l == l:
-                        moves[x, o.slot.start + shift] += float(weights @ o.over[list(columns)])
+        moves = self._moves(handles)
         slope = np.concatenate(self.slopes)
         direct = moves @ self.bent @ moves.T
         self._add_second_order(direct, handles)
@@ -209,9 +263,7 @@ class _Work:
                 n = len(left.vector)
                 one, two = self.metric[left.l].first, self.metric[left.l].second
                 # At the solution both estimates agree.
-                e = 0.25 * float(
-                    self.slopes_at[i][:n] @ right.vector + self.slopes_at[j][:n] @ left.vector
-                )
+                e = 0.25 * float(self.plain[i][:n] @ right.vector + self.plain[j][:n] @ left.vector)
                 row = np.zeros(self.size)
                 row[left.slot] += self._over(one, right)
                 row[right.slot] += self._over(one, left)
@@ -219,16 +271,11 @@ class _Work:
                 for a, b in {(i, j), (j, i)}:
                     first, second = self.orbitals[a], self.orbitals[b]
                     self.slopes[a] = self.slopes[a] - 2.0 * e * self._over(one, second)
+                    if not self.bends:
+                        continue
                     self.further[a] = self.further[a] - 2.0 * e * (two @ second.vector)
                     self.bent[first.slot, second.slot] -= 2.0 * e * one
         self.holds = np.array(holds)
-
-    @property
-    def slopes_at(self) -> list[Floats]:
-        """Derivatives of E itself, before any multiplier is taken off."""
-        if not hasattr(self, "_plain"):
-            self._plain = [slope.copy() for slope in self.slopes]
-        return self._plain
 
     def _add_second_order(self, direct: Floats, handles: list[Handle]) -> None:
         """Terms of the functions' own second derivatives."""
@@ -242,9 +289,7 @@ class _Work:
                 continue
             for l, a, columns in handle.parts:
                 n = len(self.integrals.exponents[l])
-                for o, slope, further in zip(
-                    self.orbitals, self.slopes, self.further, strict=True
-                ):
+                for o, slope, further in zip(self.orbitals, self.slopes, self.further, strict=True):
                     if o.l != l:
                         continue
                     for column in columns:
