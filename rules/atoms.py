@@ -1,8 +1,10 @@
 """The atoms of a set: each block's energy, and how it changes with the block's numbers."""
 
+from collections import OrderedDict
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 from functools import cached_property
-from typing import NamedTuple
+from typing import Any, NamedTuple, TypeVar
 
 import numpy as np
 
@@ -13,8 +15,16 @@ from overlapse.rules.physics.onecentre import self_overlap
 from overlapse.rules.physics.radial import Integrals, kinetic
 from overlapse.rules.physics.response import Handle, Response, gradient, response
 
+Found = TypeVar("Found")
+
 # More primitives of one l than this would take longer than an audit has.
 _MOST = 64
+
+
+# Results of the last atoms, by their numbers: a set is judged again after every keystroke in an
+# editor, and most of its elements are as they were.
+_MEMORY: OrderedDict[tuple[object, ...], dict[str, Any]] = OrderedDict()
+_REMEMBERED = 200
 
 
 class Number(NamedTuple):
@@ -71,19 +81,42 @@ class Atom:
     def integrals(self) -> Integrals:
         return Integrals(self.exponents, self.shells)
 
+    def forget(self) -> None:
+        """Give the integrals' memory back; they are made again where they are needed."""
+        self.__dict__.pop("integrals", None)
+
+    @cached_property
+    def _memory(self) -> dict[str, Any]:
+        """What was found for an atom of just these numbers."""
+        key = (
+            self.shells.charge,
+            *((l, a.tobytes(), self.functions[l].tobytes()) for l, a in self.exponents.items()),
+            *((shell.exponents.tobytes(), shell.coefficients.tobytes(), shell.angular)
+              for shell in self.block.shells),
+        )  # fmt: skip
+        memory = _MEMORY.setdefault(key, {})
+        _MEMORY.move_to_end(key)
+        while len(_MEMORY) > _REMEMBERED:
+            _MEMORY.popitem(last=False)
+        return memory
+
+    def _once(self, name: str, make: Callable[[], Found]) -> Found:
+        if name not in self._memory:
+            self._memory[name] = make()
+        return self._memory[name]  # type: ignore[no-any-return]
+
     @cached_property
     def solution(self) -> Solution | None:
         """The atom in the functions of the block; None where they are dependent or absurd."""
-        return self._solved(self.functions, self.start)
+        if self.start is not None:
+            return self._solved(self.functions, self.start)
+        return self._once("solution", lambda: self._solved(self.functions))
 
     @cached_property
     def uncontracted(self) -> Solution | None:
         """The atom in the block's primitives, each by itself."""
-        return self._solved(self._identity)
-
-    @cached_property
-    def _identity(self) -> dict[int, Floats]:
-        return {l: np.eye(len(a)) for l, a in self.exponents.items()}
+        each = {l: np.eye(len(a)) for l, a in self.exponents.items()}
+        return self._once("uncontracted", lambda: self._solved(each))
 
     def _solved(
         self, functions: dict[int, Floats], start: dict[int, Floats] | None = None
@@ -107,6 +140,18 @@ class Atom:
             return None
         return max(0.0, self.energy - bare.energy)
 
+    @property
+    def gap(self) -> float | None:
+        """How far the energy lies above the Hartree-Fock limit, as a share of it."""
+        if self.energy is None:
+            return None
+        return (self.energy - self.shells.limit) / abs(self.shells.limit)
+
+    @property
+    def share_lost(self) -> float | None:
+        """What contraction costs, as a share of the Hartree-Fock limit."""
+        return None if self.loss is None else self.loss / abs(self.shells.limit)
+
     @cached_property
     def scaling(self) -> float | None:
         """Factor on all lengths' inverse that would lower the energy most; 1 by the virial theorem.
@@ -115,6 +160,9 @@ class Atom:
         that were made for the nuclear charge Z' have f near Z / Z'.  Source: P.-O. Loewdin, J. Mol.
         Spectrosc. 3, 46 (1959).
         """
+        return self._once("scaling", self._scaling)
+
+    def _scaling(self) -> float | None:
         if self.energy is None or self.solution is None:
             return None
         moving = 0.0
@@ -149,10 +197,14 @@ class Atom:
     @cached_property
     def response(self) -> Response | None:
         """Derivatives of the energy by all `numbers`."""
-        if self.energy is None or self.solution is None:
+        found = self.solution
+        if self.energy is None or found is None:
             return None
         handles = list(self.numbers.values())
-        return response(self.integrals, self.functions, self.solution.orbitals, handles)
+        return self._once(
+            "response",
+            lambda: response(self.integrals, self.functions, found.orbitals, handles),
+        )
 
     @cached_property
     def gradient(self) -> Floats | None:

@@ -1,17 +1,18 @@
 """The atoms of a set together: who can be compared with whom."""
 
-from collections.abc import Callable
 from functools import cached_property
-from typing import TypeVar
 
 from overlapse.grammar.elements import row_of
 from overlapse.grammar.model import BasisSet
 from overlapse.rules.atoms import Atom, atom_of
 from overlapse.rules.case import Case, is_orbital
 from overlapse.rules.columns import Column, Stray, columns_of, strays
+from overlapse.rules.physics.trends import quantile
 from overlapse.rules.stationary import Steps, Usual, steps_of, usual
+from overlapse.rules.valence import innermost
 
-Found = TypeVar("Found")
+_FOREIGN = 0.5  # units of nuclear charge; published sets stay within 0.2
+_WHOLE = 0.9  # share of 1s that sets for all electrons describe, see `valence`
 
 
 class Ensemble:
@@ -44,10 +45,44 @@ class Ensemble:
             and self._pattern[id(other)] == own
         ]
 
+    def near(self, atom: Atom) -> list[Atom]:
+        """The other elements of the row up to three places away."""
+        z = atom.block.atomic_number
+        return [
+            other
+            for other in self.atoms
+            if 0 < abs(other.block.atomic_number - z) <= 3
+            and row_of(other.block.atomic_number) == row_of(z)
+        ]
+
+    def foreign(self, atom: Atom) -> int | None:
+        """The nuclear charge that a block seems made for, if it is another one by the energy."""
+        if atom.scaling is None:
+            return None
+        z = atom.block.atomic_number
+        near = [
+            (other.scaling - 1.0) * other.block.atomic_number
+            for other in self.near(atom)
+            if other.scaling is not None
+        ]
+        usual = quantile(near, 0.5) if len(near) >= 2 else 0.0
+        away = (atom.scaling - 1.0) * z - usual
+        if abs(away) < _FOREIGN:
+            return None
+        made_for = round(z / (1.0 + away / z))
+        return made_for if made_for != z and 1 <= made_for <= 118 else None
+
     @cached_property
     def _steps(self) -> dict[int, Steps]:
-        found = ((atom, steps_of(atom)) for atom in self.atoms)
-        return {id(atom): steps for atom, steps in found if steps is not None}
+        found = {}
+        for atom in self.atoms:
+            steps = steps_of(atom)
+            if steps is not None:
+                found[id(atom)] = steps
+            # All that the rules ask of the integrals; those of a whole set are too many to keep.
+            _ = atom.uncontracted
+            atom.forget()
+        return found
 
     def steps(self, atom: Atom) -> Steps | None:
         return self._steps.get(id(atom))
@@ -106,14 +141,7 @@ def _ensemble(case: Case, members: BasisSet) -> Ensemble:
         atom = atom_of(block)
         if atom is not None:
             atoms.append(atom)
+    # Sets that mostly leave out the core are fragments, or stand beside potentials elsewhere.
+    if sum(innermost(atom.block) > _WHOLE for atom in atoms) * 2 <= len(atoms):
+        atoms = []
     return Ensemble(members, sorted(atoms, key=lambda atom: atom.block.atomic_number))
-
-
-def each(case: Case, judge: Callable[[Ensemble, Atom], Found | None]) -> list[Found]:
-    """What a judge finds at the atoms of a document."""
-    return [
-        found
-        for ensemble in ensembles(case)
-        for atom in ensemble.atoms
-        if (found := judge(ensemble, atom)) is not None
-    ]

@@ -4,6 +4,7 @@ from math import floor, log10
 
 import numpy as np
 
+from overlapse.grammar.elements import symbol_of
 from overlapse.grammar.model import Block
 from overlapse.rules.atoms import Atom, Number
 from overlapse.rules.case import Case
@@ -69,6 +70,27 @@ def column_finding(case: Case, ensemble: Ensemble, stray: Stray, clear: float) -
         word,
         expected,
         tuple(witnesses),
+    )
+
+
+def charge_finding(case: Case, atom: Atom, charge: int) -> Finding:
+    """A finding about a block whose functions all suit another element."""
+    block = atom.block
+    return case.at_line(
+        block.line,
+        "warning",
+        f"suspect: the functions of {block.symbol} are made for a nuclear charge of about {charge} "
+        f"({symbol_of(charge)}), not {block.atomic_number}: the block of another element, or a "
+        "gross slip in its core",
+        element=block.symbol,
+        measured=charge,
+        limit=block.atomic_number,
+        expected=block.atomic_number,
+        witnesses=(
+            f"virial: the energy would be least with all exponents times "
+            f"{(atom.scaling or 1.0) ** 2:.4f}",
+        ),
+        remedy="compare the block with those of its neighbours and with the original publication",
     )
 
 

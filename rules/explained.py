@@ -43,11 +43,12 @@ class Verdict:
 
     @property
     def significance(self) -> float:
-        return max(self.before - self.after, 0.0) ** 0.5
+        return float(max(self.before - self.after, 0.0) ** 0.5)
 
 
 _FURTHEST = 0.4  # change of a logarithm in one step
 _ROUNDS = 7
+_LINEAR = 40.0  # root of chi squared up to which second derivatives foretell what a change does
 _NUDGE = 2e-3
 
 
@@ -71,7 +72,8 @@ class _Path:
 
     def further(self, value: float, step: float) -> float:
         """The value a step away: of its logarithm for an exponent, of itself for a coefficient."""
-        return value * (float(np.exp(step)) if self.number.column is None else 1.0 + step)
+        factor = float(np.exp(step)) if self.number.column is None else 1.0 + step
+        return value * factor
 
 
 def refined(own: Steps, expected: Usual, number: Number, start: float) -> Verdict | None:
@@ -166,6 +168,8 @@ def _candidates(
     """Numbers with the values to begin from."""
     atom = own.atom
     for guess in explanations(own, expected)[:most]:
+        if guess.before < _LINEAR**2 and guess.after > 0.6 * guess.before:
+            break  # small departures follow the second derivatives; the rest explain still less
         step = float(np.clip(guess.change, -_FURTHEST, _FURTHEST))
         value = atom.value(guess.number)
         yield (
@@ -173,7 +177,7 @@ def _candidates(
             value * (float(np.exp(step)) if guess.number.column is None else 1.0 + step),
         )
     for number, value, far in by_row(own, others)[:most]:
-        if far > 3.0 and value != 0.0:
+        if far > 5.0 and value != 0.0:
             yield number, value
     if most > 3 and len(others) < 3:
         yield from _cheapest_slips(own, most)

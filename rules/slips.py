@@ -1,6 +1,7 @@
 """Slips of the pen and the keyboard that make one number of another."""
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator
+from itertools import pairwise
 from typing import NamedTuple
 
 from overlapse.grammar.numbers import FORTRAN, NUMBER
@@ -39,14 +40,14 @@ def _changes(word: str) -> Iterator[tuple[str, str]]:
         turned = tail.replace("-", "+") if "-" in tail else tail[0] + "-" + tail[1:].lstrip("+")
         yield mantissa + turned, "the sign of the power of ten"
     inside = [at for at in digits if at < power]
-    for first, second in zip(inside, inside[1:], strict=False):
+    for first, second in pairwise(inside):
         if word[first] != word[second]:
             yield (
                 word[:first] + word[second] + word[first + 1 : second] + word[first]
                 + word[second + 1 :],
                 "two digits exchanged",
             )  # fmt: skip
-    for first, second in zip(inside, inside[1:], strict=False):
+    for first, second in pairwise(inside):
         if word[first] == word[second] and second == first + 1:
             yield word[:second] + word[second + 1 :], "a digit doubled"
     if abs(value) > 0.0:
@@ -75,13 +76,10 @@ def _moved(mantissa: str, factor: float) -> str:
 _CLEAR = ("the sign", "the decimal point", "the sign of the power of ten", "two digits exchanged")
 
 
-def likely(
-    word: str, value: float, error: float, near: Sequence[tuple[str, str]] = ()
-) -> Slip | None:
+def likely(word: str, value: float, error: float) -> Slip | None:
     """The slip that leads from the number meant to the word, where just one fits.
 
-    value: the number meant, with its relative standard error.  near: other words of the file with
-    where they stand; one of them may have been typed in the wrong row.
+    value: the number meant, with its relative standard error.
     """
     within = max(2.5 * error, 1e-6)
     if within > 0.02:

@@ -15,6 +15,8 @@ if TYPE_CHECKING:
 
 # Below this much text an audit is over before a progress bar would be seen.
 _QUIET_BYTES = 1_500_000
+# Up to this much text, energies are computed unless somebody says otherwise: some ten files.
+_ENERGETIC_BYTES = 1_000_000
 
 
 @click.command()
@@ -27,6 +29,11 @@ _QUIET_BYTES = 1_500_000
 @click.option("--fail-at", type=SEVERITIES, help="Level from which the audit fails [warning].")
 @click.option("--least", type=SEVERITIES, default="note", help="Least level to show [note].")
 @click.option("--recognised-only", is_flag=True, help="Pass over files that show no layout.")
+@click.option(
+    "--energies/--no-energies",
+    default=None,
+    help="Compute the atoms, H to Kr, or not.  [up to 1 MB of files, but not recognised-only]",
+)
 def audit(
     paths: tuple[Path, ...],
     report: str,
@@ -37,8 +44,12 @@ def audit(
     fail_at: str | None,
     least: str,
     recognised_only: bool,
+    energies: bool | None,
 ) -> None:
     """Judge files, folders (searched by content) and standard input (-).
+
+    Where energies are computed, each element takes some hundredths of a second, and one that looks
+    wrong a second; so large amounts of files and hooks go without them unless they are asked for.
 
     Exit status: 0 nothing found at the failing level, 1 something found, 2 wrong use or settings,
     3 a file could not be read.
@@ -56,13 +67,15 @@ def audit(
         found += [Target(path, False)] if path == Path("-") else targets([path], trouble)
     if recognised_only:
         found = [Target(target.path, True) for target in found]
+    if energies is None:
+        energies = not recognised_only and sum(_sizes(found)) <= _ENERGETIC_BYTES
     audits: list[FileAudit] = []
-    with _progress(found) as steps:
+    with _progress(found, _QUIET_BYTES // 20 if energies else _QUIET_BYTES) as steps:
         for target in steps:
             if target.path == Path("-"):
-                audits.append(_standard_input(named, label, layout))
+                audits.append(_standard_input(named, label, layout, energies))
             else:
-                audits.append(audit_file(target, label=label, layout=layout))
+                audits.append(audit_file(target, label=label, layout=layout, energies=energies))
     audits += troubles
     if fail_at is not None:
         audits = [_failing_at(item, fail_at) for item in audits]
@@ -87,20 +100,27 @@ def _at_least(item: "FileAudit", levels: Sequence[str]) -> "FileAudit":
     return replace(item, findings=tuple(f for f in item.findings if f.severity in levels))
 
 
-def _standard_input(named: str, label: str | None, layout: str | None) -> "FileAudit":
+def _standard_input(
+    named: str, label: str | None, layout: str | None, energies: bool
+) -> "FileAudit":
     from overlapse.grammar.reading import read_bytes
     from overlapse.lint.engine import judge
     from overlapse.lint.settings import settings_for
 
     document = read_bytes(sys.stdin.buffer.read(), named, layout=layout)
-    return judge(document, label=label, settings=settings_for(Path(named).absolute()))
+    settings = settings_for(Path(named).absolute())
+    return judge(document, label=label, settings=settings, energies=energies)
+
+
+def _sizes(found: "Sequence[Target]") -> list[int]:
+    return [t.path.stat().st_size if t.path.is_file() else 0 for t in found]
 
 
 @contextmanager
-def _progress(found: "Sequence[Target]") -> "Iterator[Iterator[Target]]":
+def _progress(found: "Sequence[Target]", quiet: int) -> "Iterator[Iterator[Target]]":
     """A bar on the terminal where more than a moment's work is ahead."""
-    sizes = [t.path.stat().st_size if t.path.is_file() else 0 for t in found]
-    if sum(sizes) < _QUIET_BYTES or not sys.stderr.isatty():
+    sizes = _sizes(found)
+    if sum(sizes) < quiet or not sys.stderr.isatty():
         yield iter(found)
         return
 

@@ -1,7 +1,8 @@
 """The integrals F_j(x) of t**(2j) exp(-x t**2) over t from 0 to 1, for arrays.
 
 Near a tabulated point, F_j(x) = sum_n F_(j+n)(x0) (x0 - x)**n / n!; downwards from the highest j,
-F_(j-1) = (2x F_j + exp(-x)) / (2j - 1), which is stable; for large x, Gamma(j+1/2) / (2 x**(j+1/2)).
+F_(j-1) = (2x F_j + exp(-x)) / (2j - 1), which is stable; for large x, F_j(x) =
+Gamma(j+1/2) / (2 x**(j+1/2)).
 
 Source: S. F. Boys, Proc. R. Soc. A 200, 542 (1950); I. Shavitt, Methods Comput. Phys. 2, 1 (1963).
 """

@@ -1,16 +1,16 @@
 """How an atom's energy changes with the numbers of its functions, its orbitals following.
 
-The orbitals are psi_i = sum_m u_im f_m, the functions f_m = sum_a c_am phi_a.  With multipliers e_ij
-that keep the orbitals orthonormal, L = E - sum_ij e_ij (<i|j> - d_ij) is stationary in all u and e
-at the solution.  So the derivative with respect to a printed number x is that of L at fixed
+The orbitals are psi_i = sum_m u_im f_m, the functions f_m = sum_a c_am phi_a.  With multipliers
+e_ij that keep the orbitals orthonormal, L = E - sum_ij e_ij (<i|j> - d_ij) is stationary in all u
+and e at the solution.  So the derivative with respect to a printed number x is that of L at fixed
 orbitals, and the second derivatives, orbitals relaxed, are
 
     E_xy = L_xy - L_xz (L_zz)**-1 L_zy,   z = (u, e).
 
 All second derivatives of L are those of the orbitals in the space of phi and phi' (`extended`).
 
-Source: P. Pulay, Mol. Phys. 17, 197 (1969) (derivatives); J. Gerratt, I. M. Mills, J. Chem. Phys. 49,
-1719 (1968) (relaxation of orbitals); derived here for equivalent orbitals.
+Source: P. Pulay, Mol. Phys. 17, 197 (1969) (derivatives); J. Gerratt, I. M. Mills, J. Chem. Phys.
+49, 1719 (1968) (relaxation of orbitals); derived here for equivalent orbitals.
 """
 
 from typing import NamedTuple
@@ -26,8 +26,8 @@ from overlapse.rules.physics.radial import Integrals
 class Handle(NamedTuple):
     """A printed number as what it does to the functions.
 
-    exponent: whether it is an exponent, else a coefficient.  parts: where it acts, as (l, primitive,
-    functions): an exponent on that primitive in those functions, a coefficient in that one.
+    exponent: whether it is an exponent, else a coefficient.  parts: where it acts, as (l,
+    primitive, functions); a coefficient acts in one function.
     """
 
     exponent: bool

@@ -25,7 +25,7 @@ def test_the_bad_sample_is_found(name: str) -> None:
     rule = rules()[name]
     # Samples go through bytes, as files do: one of them is about the bytes themselves.
     document = read_bytes(rule.explanation.bad.encode(), "sample")
-    found = Case(document).judge(rule)
+    found = Case(document, energies=True).judge(rule)
     assert found
     for finding in found:
         assert finding.rule == name
@@ -39,7 +39,7 @@ def test_the_good_sample_is_not(name: str) -> None:
     rule = rules()[name]
     document = read_text(rule.explanation.good, "sample")
     assert document.layout
-    assert not [f for f in Case(document).judge(rule) if f.severity != "note"]
+    assert not [f for f in Case(document, energies=True).judge(rule) if f.severity != "note"]
     assert not [fault for fault in document.faults if fault.severity == "error"]
 
 
@@ -47,6 +47,6 @@ def test_the_good_sample_is_not(name: str) -> None:
 def test_heuristic_rules_never_give_errors(name: str) -> None:
     rule = rules()[name]
     if rule.explanation.what.lower().startswith("suspect"):
-        found = Case(read_text(rule.explanation.bad, "sample")).judge(rule)
+        found = Case(read_text(rule.explanation.bad, "sample"), energies=True).judge(rule)
         assert {finding.severity for finding in found} <= {"warning", "note"}
         assert all("suspect" in finding.message for finding in found)
