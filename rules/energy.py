@@ -5,12 +5,14 @@ These rules compute Hartree-Fock atoms, so they run only where energies are want
 
 from collections.abc import Iterator
 
+from overlapse.rules.atoms import Atom
 from overlapse.rules.case import Case
 from overlapse.rules.energies import Ensemble, ensembles
 from overlapse.rules.energy_told import charge_finding, column_finding, number_finding
 from overlapse.rules.explained import Verdict, explain
 from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rule
+from overlapse.rules.stationary import Steps
 
 
 @rule("energy.bound")
@@ -274,21 +276,33 @@ def stationary(
         ****
     """
     for ensemble in ensembles(case):
-        found = _explained(ensemble, times, alone)
+        suspects = _suspects(ensemble, times, alone)
         for atom in ensemble.atoms:
-            told = set()
-            verdict = found.get(id(atom))
-            charge = ensemble.foreign(atom)
-            if verdict is not None and not (charge and verdict.after > 100.0 * verdict.count):
-                told.add(verdict.number)
-                yield number_finding(case, ensemble, verdict, clear)
-            elif charge:
-                yield charge_finding(case, atom, charge)
-                continue
-            for stray in ensemble.strays(atom):
-                enough = times if stray.others >= 3 else alone
-                if stray.times >= 1.5 * enough and stray.number not in told:
-                    yield column_finding(case, ensemble, stray, 2.0 * clear)
+            own = suspects.get(id(atom))
+            yield from at_atom(case, ensemble, atom, own, times, clear, alone)
+
+
+def at_atom(
+    case: Case,
+    ensemble: Ensemble,
+    atom: Atom,
+    own: Steps | None,
+    times: float,
+    clear: float,
+    alone: float,
+) -> Iterator[Finding]:
+    """What the energy says about the numbers of one atom; ``own`` if its gradient is unusual."""
+    verdict = _explained(ensemble, own, times, alone) if own is not None else None
+    charge = ensemble.foreign(atom)
+    if charge and (verdict is None or verdict.after > 100.0 * verdict.count):
+        yield charge_finding(case, atom, charge)
+        return
+    if verdict is not None:
+        yield number_finding(case, ensemble, verdict, clear)
+    for stray in ensemble.strays(atom):
+        enough = 1.5 * (times if stray.others >= 3 else alone)
+        if stray.times >= enough and (verdict is None or stray.number != verdict.number):
+            yield column_finding(case, ensemble, stray, 2.0 * clear)
 
 
 # Following more suspects than this in one set takes longer than an audit has; a set in which so
@@ -296,32 +310,29 @@ def stationary(
 _MOST = 12
 
 
-def _explained(ensemble: Ensemble, times: float, alone: float) -> dict[int, Verdict]:
-    """The atoms whose gradient a single number explains, by the atom's identity."""
-    suspects = []
+def _suspects(ensemble: Ensemble, times: float, alone: float) -> dict[int, Steps]:
+    """The atoms whose gradient is unusual, by the atom's identity; the most unusual ones."""
+    found = []
     for atom in ensemble.atoms:
         own = ensemble.steps(atom)
-        if own is None:
-            continue
-        expected = ensemble.usual(own)
-        away = float((expected.chi(own.gradient) ** 2).sum()) ** 0.5
-        enough = times if expected.others >= 3 else alone
-        if away >= enough:
-            suspects.append((away / enough, own, expected))
-    suspects.sort(key=lambda each: -each[0])
-    found = {}
-    for _, own, expected in suspects[:_MOST]:
-        verdict = explain(own, ensemble.others(own.atom), expected)
-        if verdict is None:
-            continue
-        enough = times if expected.others >= 3 else alone
-        if (
-            verdict.significance >= enough
-            and verdict.after < max(_LEFT * min(verdict.before, 1e4), 0.05 * verdict.before)
-            and abs(verdict.change) > 4.0 * verdict.error
-        ):
-            found[id(own.atom)] = verdict
-    return found
+        if own is not None:
+            expected = ensemble.usual(own)
+            away = float((expected.chi(own.gradient) ** 2).sum()) ** 0.5
+            found.append((away / (times if expected.others >= 3 else alone), own))
+    found = sorted((each for each in found if each[0] >= 1.0), key=lambda each: -each[0])
+    return {id(own.atom): own for _, own in found[:_MOST]}
+
+
+def _explained(ensemble: Ensemble, own: Steps, times: float, alone: float) -> Verdict | None:
+    """The single number that explains an atom's gradient, if one does well enough."""
+    expected = ensemble.usual(own)
+    verdict = explain(own, ensemble.others(own.atom), expected)
+    if verdict is None:
+        return None
+    is_clear = verdict.significance >= (times if expected.others >= 3 else alone)
+    explains = verdict.after < max(_LEFT * min(verdict.before, 1e4), 0.05 * verdict.before)
+    is_sharp = abs(verdict.change) > 4.0 * verdict.error
+    return verdict if is_clear and explains and is_sharp else None
 
 
 _LEFT = 0.35  # part of chi squared that a single number may leave unexplained

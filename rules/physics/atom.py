@@ -26,6 +26,8 @@ from overlapse.rules.physics.slater import slater_zetas
 # rounding decides the coefficients.
 DEPENDENT = 1e-9
 _CONVERGED = 1e-8  # largest element of the gradient, hartree per electron
+_STUCK = 1e-5  # the same where the energy no longer moves
+_SETTLED = 1e-14  # relative movement of an energy that stands still
 _CYCLES = 80
 _KEPT = 8  # matrices that DIIS combines
 
@@ -172,6 +174,7 @@ class _Iteration:
         vectors = self._begin(start)
         history: list[tuple[dict[int, Floats], Floats]] = []
         best = Solution(np.inf, False, {}, 0, np.inf)
+        before = [np.inf, np.inf]
         for cycle in range(1, _CYCLES + 1):
             occupied = {l: v[:, : len(self.shells.electrons[l])] for l, v in vectors.items()}
             energy, closed, opened = self.field({l: self.over[l] @ v for l, v in occupied.items()})
@@ -179,10 +182,14 @@ class _Iteration:
                 break
             effective, error = self._effective(vectors, closed, opened)
             size = float(np.abs(error).max()) if error.size else 0.0
-            if size < best.gradient:
+            # Among very tight functions rounding keeps the gradient from falling as far.
+            stuck = max(abs(energy - e) for e in before) < _SETTLED * abs(energy)
+            done = size < _CONVERGED or (stuck and size < _STUCK)
+            before = [before[1], energy]
+            if size < best.gradient or done:
                 orbitals = {l: self.bases[l] @ v for l, v in occupied.items()}
-                best = Solution(energy, size < _CONVERGED, orbitals, cycle, size)
-            if size < _CONVERGED:
+                best = Solution(energy, done, orbitals, cycle, size)
+            if done:
                 break
             history.append((effective, error))
             del history[:-_KEPT]

@@ -15,12 +15,12 @@ import numpy as np
 from overlapse.grammar.model import Floats
 
 _STEP = 0.125
-_FAR = 40.0
+_FAR = 50.0
 _TERMS = 8
 
 
 def boys(top: int, x: Floats) -> Floats:
-    """F_0 to F_top at x >= 0, shape (top + 1, *x.shape); accurate to 1e-14 relative."""
+    """F_0 to F_top at x >= 0, shape (top + 1, *x.shape); accurate to 1e-13 relative."""
     # One point's values lie side by side, so that each is fetched with its neighbours.
     table = _table(top + _TERMS).T[:, top:].copy()
     near = np.minimum(x, _FAR)
@@ -53,7 +53,7 @@ def _table(count: int) -> Floats:
     top = count - 1
     term = np.full(len(x), 1.0 / (2 * top + 1))
     total = term.copy()
-    for i in range(1, 250):
+    for i in range(1, 300):
         term *= 2.0 * x / (2 * top + 2 * i + 1)
         total += term
     table[top] = total * np.exp(-x)
