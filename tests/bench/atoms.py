@@ -14,17 +14,17 @@ from pathlib import Path
 
 os.environ["OMP_NUM_THREADS"] = "1"  # before numpy is loaded
 
-from pyscf import gto, lib  # noqa: E402
-from pyscf.scf import atom_hf  # noqa: E402
+from pyscf import gto, lib
+from pyscf.scf import atom_hf
 
-from overlapse.grammar.model import Block  # noqa: E402
-from overlapse.grammar.reading import read  # noqa: E402
-from overlapse.rules.atoms import _MEMORY, atom_of  # noqa: E402
-from overlapse.rules.case import Case  # noqa: E402
-from overlapse.rules.physics.atom import solve  # noqa: E402
-from overlapse.rules.physics.configuration import Coupling, configuration  # noqa: E402
-from overlapse.rules.physics.radial import Integrals  # noqa: E402
-from overlapse.rules.registry import rules  # noqa: E402
+from overlapse.grammar.model import Block
+from overlapse.grammar.reading import read
+from overlapse.rules.atoms import _MEMORY, atom_of
+from overlapse.rules.case import Case
+from overlapse.rules.physics.atom import solve
+from overlapse.rules.physics.configuration import Coupling, configuration
+from overlapse.rules.physics.radial import Integrals
+from overlapse.rules.registry import rules
 
 FOLDER = Path(gto.__file__).parent / "basis"
 
