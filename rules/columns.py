@@ -119,7 +119,8 @@ def strays(column: Column, others: Sequence[Column]) -> list[Stray]:
     times = np.abs(column.departure - centre) / scatter
     worst = int(np.argmax(times))
     rest = np.delete(times, worst)
-    sure = float(np.median(np.abs(column.departure))) < _CLOSE and spread[worst] < 4.0 * _CLOSE
+    close = _CLOSE if len(others) >= 3 else 0.1 * _CLOSE
+    sure = float(np.median(np.abs(column.departure))) < close and spread[worst] < 4.0 * _CLOSE
     if rest.max() > 0.25 * times[worst] or not sure:
         return []
     size = column.departure[worst] - centre[worst]

@@ -1,5 +1,6 @@
 """The atoms of a set together: who can be compared with whom."""
 
+import re
 from functools import cached_property
 
 from overlapse.grammar.elements import row_of
@@ -16,11 +17,15 @@ _WHOLE = 0.9  # share of 1s that sets for all electrons describe, see `valence`
 
 
 class Ensemble:
-    """The atoms of one set, by rising atomic number, and what is computed for them when asked."""
+    """The atoms of one set, by rising atomic number, and what is computed for them when asked.
 
-    def __init__(self, members: BasisSet, atoms: list[Atom]) -> None:
+    relativistic: the set was made for relativistic atoms, so ours can only compare neighbours.
+    """
+
+    def __init__(self, members: BasisSet, atoms: list[Atom], relativistic: bool = False) -> None:
         self.members = members
         self.atoms = atoms
+        self.relativistic = relativistic
 
     @cached_property
     def _pattern(self) -> dict[int, tuple[object, ...]]:
@@ -65,6 +70,8 @@ class Ensemble:
             for other in self.near(atom)
             if other.scaling is not None
         ]
+        if self.relativistic and len(near) < 2:
+            return None
         usual = quantile(near, 0.5) if len(near) >= 2 else 0.0
         away = (atom.scaling - 1.0) * z - usual
         if abs(away) < _FOREIGN:
@@ -127,13 +134,21 @@ def ensembles(case: Case) -> list[Ensemble]:
         return []
 
     def make() -> list[Ensemble]:
-        found = [_ensemble(case, members) for members in case.sets if is_orbital(members)]
+        found = [
+            _ensemble(case, members, index)
+            for index, members in enumerate(case.sets)
+            if is_orbital(members)
+        ]
         return [ensemble for ensemble in found if ensemble.atoms]
 
     return case.shared("atoms", make)
 
 
-def _ensemble(case: Case, members: BasisSet) -> Ensemble:
+# Labels of sets whose contractions come from relativistic atoms.
+_RELATIVISTIC = re.compile(r"DK|RCC|x2c|SARC|dyall|ZORA", re.IGNORECASE)
+
+
+def _ensemble(case: Case, members: BasisSet, index: int) -> Ensemble:
     atoms = []
     for block in members.blocks:
         if any(case.is_faulty(block, index) for index in range(len(block.shells))):
@@ -144,4 +159,9 @@ def _ensemble(case: Case, members: BasisSet) -> Ensemble:
     # Sets that mostly leave out the core are fragments, or stand beside potentials elsewhere.
     if sum(innermost(atom.block) > _WHOLE for atom in atoms) * 2 <= len(atoms):
         atoms = []
-    return Ensemble(members, sorted(atoms, key=lambda atom: atom.block.atomic_number))
+    labels = [claim.label for claim in case.claims.get(index, [])]
+    return Ensemble(
+        members,
+        sorted(atoms, key=lambda atom: atom.block.atomic_number),
+        any(_RELATIVISTIC.search(label) for label in labels),
+    )

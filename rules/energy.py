@@ -237,7 +237,8 @@ def stationary(
     are what they are for the neighbours in the row, often to a hundredth of a per cent.  A wrong
     number moves them all, in a pattern of its own; the number whose correction alone explains the
     pattern is named, with the value that it should have.  Functions that hold no electrons do not
-    show, and loose ones show little.  Where all functions would have to shrink or grow as those of
+    show, and loose ones show little.  Sets recontracted for relativistic atoms are compared with
+    their neighbours only.  Where all functions would have to shrink or grow as those of
     another element would, its block has come to stand here.
 
     Formula: step of a number x: -(dE/dx) / (d2E/dx2), orbitals relaxed, in units of the scatter of
@@ -326,6 +327,8 @@ def _suspects(ensemble: Ensemble, times: float, alone: float) -> dict[int, Steps
 def _explained(ensemble: Ensemble, own: Steps, times: float, alone: float) -> Verdict | None:
     """The single number that explains an atom's gradient, if one does well enough."""
     expected = ensemble.usual(own)
+    if ensemble.relativistic and expected.others < 3:
+        return None
     verdict = explain(own, ensemble.others(own.atom), expected)
     if verdict is None:
         return None

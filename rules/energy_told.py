@@ -12,8 +12,8 @@ from overlapse.rules.columns import Stray
 from overlapse.rules.energies import Ensemble
 from overlapse.rules.explained import Verdict, by_row
 from overlapse.rules.finding import Finding
+from overlapse.rules.meant import Slip, likely
 from overlapse.rules.physics.onecentre import self_overlap
-from overlapse.rules.slips import Slip, likely
 
 _REMEDY = "compare with the original publication"
 
