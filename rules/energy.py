@@ -228,7 +228,12 @@ def loss(
 
 @rule("energy.stationary")
 def stationary(
-    case: Case, *, times: float = 8.0, clear: float = 25.0, alone: float = 15.0
+    case: Case,
+    *,
+    times: float = 8.0,
+    clear: float = 25.0,
+    alone: float = 15.0,
+    least: float = 1e-3,
 ) -> Iterator[Finding]:
     """Suspect: the energy of an atom would fall if one number were another.
 
@@ -250,7 +255,7 @@ def stationary(
 
     Limits: times: how many standard errors a correction must be to be told, beside three
     neighbours or more.  clear: how many make it a warning without another witness.  alone: how many
-    an element without neighbours needs.
+    an element without neighbours needs.  least: the smallest relative change that is told.
 
     Remedy: compare the number with the original publication.
 
@@ -280,7 +285,7 @@ def stationary(
         suspects = _suspects(ensemble, times, alone)
         for atom in ensemble.atoms:
             own = suspects.get(id(atom))
-            yield from at_atom(case, ensemble, atom, own, times, clear, alone)
+            yield from at_atom(case, ensemble, atom, own, times, clear, alone, least)
 
 
 def at_atom(
@@ -291,6 +296,7 @@ def at_atom(
     times: float,
     clear: float,
     alone: float,
+    least: float,
 ) -> Iterator[Finding]:
     """What the energy says about the numbers of one atom; ``own`` if its gradient is unusual."""
     verdict = _explained(ensemble, own, times, alone) if own is not None else None
@@ -298,6 +304,8 @@ def at_atom(
     if charge and (verdict is None or verdict.after > 100.0 * verdict.count):
         yield charge_finding(case, atom, charge)
         return
+    if verdict is not None and abs(verdict.change) < least:
+        verdict = None
     if verdict is not None:
         yield number_finding(case, ensemble, verdict, clear)
     for stray in ensemble.strays(atom):
