@@ -224,7 +224,7 @@ def judge(
     """Run all rules over a document, in the light of what lies ``beside`` its file; sort out what
     is accepted.  energies: whether rules may compute the atoms.
     """
-    case = Case(document, label if label is not None else settings.label)
+    case = Case(document, label if label is not None else settings.label, energies=energies)
     furnish(case, settings, beside)
     for name, rule in sorted(rules().items(), key=lambda item: item[1].last):
         if not settings.is_off(name):

@@ -21,12 +21,18 @@ Shared = TypeVar("Shared")
 
 
 class Case:
-    """A document, the label it was given from outside (if any), and helpers to make findings."""
+    """A document, the label it was given from outside (if any), and helpers to make findings.
 
-    def __init__(self, document: Document, label: str | None = None) -> None:
+    energies: whether rules may compute the atoms of the document.
+    """
+
+    def __init__(
+        self, document: Document, label: str | None = None, energies: bool = False
+    ) -> None:
         # Rules reason over normalised primitives; where the text does not, its numbers are turned.
         self.document = over_normalised(document)
         self.given_label = label
+        self.energies = energies
         self.found: dict[str, list[Finding]] = {}  # by rule, for the rules that come last
         # What lies beside the document, for rules that compare; put here by whoever has files.
         self.seals: tuple[SealedSet, ...] = ()

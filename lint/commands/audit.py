@@ -31,6 +31,8 @@ if TYPE_CHECKING:
 _QUIET_BYTES = 1_500_000
 _SERIAL_BYTES = 1_000_000
 _UNKEPT_BYTES = 100_000
+# Up to this much text, energies are computed unless somebody says otherwise: some ten files.
+_ENERGETIC_BYTES = 1_000_000
 
 
 @click.command()
@@ -65,6 +67,11 @@ _UNKEPT_BYTES = 100_000
 @click.option("--without-ledger", is_flag=True, help="Let known findings count as well.")
 @click.option("--processes", type=click.IntRange(1), help="Judge on so many processors [all].")
 @click.option("--no-cache", is_flag=True, help="Judge anew, and keep no results.")
+@click.option(
+    "--energies/--no-energies",
+    default=None,
+    help="Compute the atoms, H to Kr, or not.  [up to 1 MB of files, but not recognised-only]",
+)
 @click.option("--staged", is_flag=True, help="Judge what is staged in git, not the working files.")
 @click.option("-q", "--quiet", is_flag=True, help="Say only what makes the audit fail.")
 @click.option("-v", "--verbose", is_flag=True, help="Tell of each file how it was taken.")
@@ -83,11 +90,15 @@ def audit(
     without_ledger: bool,
     processes: int | None,
     no_cache: bool,
+    energies: bool | None,
     staged: bool,
     quiet: bool,
     verbose: bool,
 ) -> None:
     """Judge files, folders (searched by content) and standard input (-).
+
+    Where energies are computed, each element takes some hundredths of a second, and one that looks
+    wrong a second; so large amounts of files and hooks go without them unless they are asked for.
 
     Exit status: 0 nothing found at the failing level, 1 something found, 2 wrong use or settings,
     3 a file could not be read.
@@ -100,7 +111,6 @@ def audit(
       overlapse audit --staged --quiet sets/
       overlapse recast a.basis --layout stars | overlapse audit - --named a.basis
     """
-    from overlapse.lint.bulk import size_of
     from overlapse.lint.engine import FileAudit, Options, Target, targets
     from overlapse.lint.ledger import Sieve
     from overlapse.lint.neighbours import Beside
@@ -114,7 +124,7 @@ def audit(
     def trouble(message: str) -> None:
         troubles.append(FileAudit(message.partition(":")[0], problem=message))
 
-    options = Options(label, layout)
+    options = Options(label, layout, energies=bool(energies))
     found: list[Target] = []
     if staged:
         judged = _staged(paths, options, recognised_only)
@@ -124,7 +134,9 @@ def audit(
         if recognised_only:
             found = [Target(target.path, True) for target in found]
         beside = Beside([target.path for target in found if target.path != Path("-")])
-        options = replace(options, beside=beside)
+        if energies is None:
+            energies = not recognised_only and _size(found) <= _ENERGETIC_BYTES
+        options = replace(options, beside=beside, energies=energies)
         documents = needs_documents(report)
         judged = _audits(found, options, named, processes, no_cache, documents, quiet or verbose)
     sieve = None if without_ledger or write_ledger else Sieve(ledger)
@@ -143,7 +155,7 @@ def audit(
         if quiet and out is None:
             shown = list(shown)  # only what fails, and whether anything does must be known first
         if not (quiet and out is None and tally.status == CLEAN):
-            with output(out, sum(size_of(t.path) for t in found) > _SERIAL_BYTES) as written:
+            with output(out, _size(found) > _SERIAL_BYTES) as written:
                 writer(report)(shown, written, out is None and coloured(written))
     _tell_of_plugins()
     sys.exit(tally.status)
@@ -186,6 +198,13 @@ def _sifted(
             levels = LEVELS[LEVELS.index(lowest) :]
             item = replace(item, findings=tuple(f for f in item.findings if f.severity in levels))
         yield item
+
+
+def _size(found: "Iterable[Target]") -> int:
+    """Bytes of all files together."""
+    from overlapse.lint.bulk import size_of
+
+    return sum(size_of(target.path) for target in found)
 
 
 def _told(audits: "Iterable[FileAudit]") -> "Iterator[FileAudit]":
@@ -251,15 +270,17 @@ def _audits(
 ) -> "Iterator[FileAudit]":
     from overlapse.lint import bulk
 
-    size = sum(bulk.size_of(target.path) for target in found)
+    # With energies every byte takes much longer.
+    size, weight = _size(found), 20 if options.energies else 1
     if processes is None:
-        processes = bulk.cores() if size > _SERIAL_BYTES else 1
+        processes = bulk.cores() if size * weight > _SERIAL_BYTES else 1
     cache = None
-    if not no_cache and size > _UNKEPT_BYTES:
+    if not no_cache and size * weight > _UNKEPT_BYTES:
         from overlapse.lint.cache import Cache
 
         cache = Cache()
     read = sys.stdin.buffer.read
+    silent = silent or size * weight < _QUIET_BYTES
     with _progress(size, len(found), silent) as done:
         yield from bulk.audits(
             found,
@@ -275,7 +296,7 @@ def _audits(
 @contextmanager
 def _progress(size: int, files: int, silent: bool) -> "Iterator[Callable[[int], None]]":
     """A bar with rate and remaining time, where more than a moment's work is ahead."""
-    if silent or size < _QUIET_BYTES or not sys.stderr.isatty():
+    if silent or not sys.stderr.isatty():
         yield lambda size: None
         return
     from time import monotonic

@@ -14,7 +14,7 @@ RULES = sorted(rules())
 
 def case_of(rule: Rule, document: Document) -> Case:
     """A sample under judgement, with what the rule's page says lies beside it."""
-    case = Case(document)
+    case = Case(document, energies=True)
     if rule.explanation.beside:
         beside = read_text(rule.explanation.beside, "beside")
         case.reference = beside
@@ -64,6 +64,6 @@ def test_the_good_sample_is_not(name: str) -> None:
 def test_heuristic_rules_never_give_errors(name: str) -> None:
     rule = rules()[name]
     if rule.explanation.what.lower().startswith("suspect"):
-        found = Case(read_text(rule.explanation.bad, "sample")).judge(rule)
+        found = Case(read_text(rule.explanation.bad, "sample"), energies=True).judge(rule)
         assert {finding.severity for finding in found} <= {"warning", "note"}
         assert all("suspect" in finding.message for finding in found)
