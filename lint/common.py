@@ -1,7 +1,7 @@
 """What several commands share: exit statuses, checks of options, the stream they write to."""
 
 import sys
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from io import StringIO, TextIOWrapper
 from pathlib import Path
@@ -105,3 +105,23 @@ def _kept(large: bool) -> TextIO:
     from tempfile import TemporaryFile  # its import takes longer than most audits' reports
 
     return TemporaryFile("w+", encoding="utf-8", newline="", errors=_UNKNOWN)
+
+
+def draw(path: Path, make: Callable[[str], bytes]) -> None:
+    """Write a picture; ``make`` gets its kind, the ending of the file's name.
+
+    Without the plotting library, or to a place that cannot be written, it is wrong use.
+    """
+    from overlapse.lint.picture import KINDS, PictureError
+
+    kind = path.suffix[1:].lower()
+    if kind not in KINDS:
+        raise click.UsageError(f"{path}: a picture's name ends in .{', .'.join(KINDS)}")
+    try:
+        drawn = make(kind)
+        with click.open_file(str(path), "wb", atomic=True) as stream:
+            stream.write(drawn)
+    except PictureError as problem:
+        raise click.UsageError(str(problem)) from problem
+    except OSError as problem:
+        raise click.UsageError(f"{path}: {problem.strerror or problem}") from problem

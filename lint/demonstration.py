@@ -12,6 +12,7 @@ import click
 
 from overlapse.lint.engine import FileAudit, audit_file, targets
 from overlapse.lint.reports import text
+from overlapse.lint.screening import screen_files
 from overlapse.lint.settings import Settings
 
 _STORY = (
@@ -37,29 +38,56 @@ def demonstrate(folder: Path | None, out: TextIO, colour: bool) -> None:
     shown = [audit for audit in audits if audit.findings][:2]
     out.write("Two of these files in full:\n\n")
     text.write(shown, out, colour)
+    out.write("\n" + _screens(folder) + "\n")
     out.write(
-        f"\nThe files are in {folder}. To go on:\n"
+        f"The files are in {folder}. To go on:\n"
         f"  overlapse audit {folder}            the whole report\n"
         "  overlapse rules contraction.norm      what a rule looks for, and why\n"
         "  overlapse audit YOUR-FILES            the same for your own files\n"
+        "  overlapse screen BASIS --on XYZ       the same for your own molecules\n"
     )
 
 
 def copy_to(folder: Path) -> None:
     """Write the scenario's files into a folder."""
     with as_file(files("overlapse.lint").joinpath("demo")) as source:
-        for entry in scenario():
-            target = folder / entry["path"]
+        paths = [entry["path"] for entry in scenario()]
+        for path in [*paths, *(entry["geometry"] for entry in screens())]:
+            target = folder / path
             target.parent.mkdir(parents=True, exist_ok=True)
-            shutil.copyfile(source / entry["path"], target)
+            shutil.copyfile(source / path, target)
 
 
 def scenario() -> list[dict[str, Any]]:
     """The files of the scenario: path, layout, what is planted, and the rule that finds it."""
+    return _data("scenario.json")
+
+
+def screens() -> list[dict[str, Any]]:
+    """The geometries of the scenario, each with a basis file and the outlook it gives."""
+    return _data("screens.json")
+
+
+def _data(name: str) -> list[dict[str, Any]]:
     found: list[dict[str, Any]] = json.loads(
-        files("overlapse.lint").joinpath("demo", "scenario.json").read_text("utf-8")
+        files("overlapse.lint").joinpath("demo", name).read_text("utf-8")
     )
     return found
+
+
+def _screens(folder: Path) -> str:
+    """What the basis files become in the scenario's geometries, one line each."""
+    from overlapse.rules.overlap_words import dropped, plain
+
+    told = "Two molecules of the lab, screened before a field is solved:\n\n"
+    for entry in screens():
+        basis, geometry = folder / entry["basis"], folder / entry["geometry"]
+        for probe in screen_files([basis], geometry).probes:
+            what = f"smallest eigenvalue {plain(probe.smallest)}, outlook {probe.outlook.level}"
+            if probe.drop:
+                what += f"; to drop: {dropped(probe.drop)}"
+            told += f"{entry['geometry']}  {entry['basis']}  {what}\n"
+    return told
 
 
 def _table(folder: Path, audits: list[FileAudit]) -> str:

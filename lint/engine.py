@@ -1,7 +1,7 @@
 """The audit: from paths to findings.  Nothing here prints."""
 
 import os
-from collections.abc import Callable, Iterable, Iterator, Mapping
+from collections.abc import Callable, Container, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import Any, NamedTuple
@@ -16,6 +16,7 @@ from overlapse.lint.settings import Settings, settings_for
 from overlapse.rules.acceptance import acceptances_of
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
+from overlapse.rules.probe import Probe
 from overlapse.rules.registry import Rule, rules
 
 LEVELS = ("note", "warning", "error")  # rising
@@ -69,7 +70,8 @@ class FileAudit:
     excerpts: what stands around each place that a finding points at, by line and column.
     accepted: findings that do not count, because the file or the settings say why.  known:
     findings that do not count, because a ledger holds them; gone: its entries that were found no
-    more.  absent: the file is only in the ledger.
+    more.  absent: the file is only in the ledger.  probes: what was measured
+    of it in geometries.
     """
 
     path: str
@@ -88,6 +90,7 @@ class FileAudit:
     known: tuple[Finding, ...] = ()
     gone: tuple[Mapping[str, Any], ...] = ()
     absent: bool = False
+    probes: tuple[Probe, ...] = ()
 
     @property
     def fails(self) -> bool:
@@ -220,14 +223,18 @@ def judge(
     settings: Settings,
     beside: Beside | None = None,
     energies: bool = False,
+    probes: Sequence[Probe] = (),
+    only: Container[str] | None = None,
 ) -> FileAudit:
     """Run all rules over a document, in the light of what lies ``beside`` its file; sort out what
-    is accepted.  energies: whether rules may compute the atoms.
+    is accepted.  energies: whether rules may compute the atoms.  probes: what was measured of it in
+    geometries.  only: names of the rules to run, all if None.
     """
-    case = Case(document, label if label is not None else settings.label, energies=energies)
+    claimed = label if label is not None else settings.label
+    case = Case(document, claimed, probes=probes, energies=energies)
     furnish(case, settings, beside)
     for name, rule in sorted(rules().items(), key=lambda item: item[1].last):
-        if not settings.is_off(name):
+        if not settings.is_off(name) and (only is None or name in only):
             case.found[name] = list(_judged(case, rule, settings))
     findings = [finding for found in case.found.values() for finding in found]
     findings.sort(key=lambda f: (f.line, f.column, -LEVELS.index(f.severity), f.rule))
@@ -247,6 +254,7 @@ def judge(
         blocks=len(document.blocks),
         excerpts=_excerpts(findings, document.source),
         accepted=accepted,
+        probes=case.probes,
     )
 
 

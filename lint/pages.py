@@ -25,6 +25,8 @@ def page(rule: Rule, width: int) -> str:
         parts.append(f"Beside:\n\n{_indented(text.beside)}")
     parts.append(f"Found in:\n\n{_indented(text.bad)}")
     parts.append(f"Not found in:\n\n{_indented(text.good)}")
+    if text.geometry:
+        parts.append(f"Both with the geometry:\n\n{_indented(text.geometry)}")
     return "\n\n".join(filter(None, parts))
 
 

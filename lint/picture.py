@@ -23,24 +23,24 @@ if TYPE_CHECKING:
 KINDS = ("svg", "png", "pdf")
 
 # Told apart by colour-blind eyes and dark enough on white; the marks differ as well.
-_COLOURS = ("#0072B2", "#C04A00", "#00795B", "#A0428A", "#7A5C00", "#3B3B98", "#222222")
+COLOURS = ("#0072B2", "#C04A00", "#00795B", "#A0428A", "#7A5C00", "#3B3B98", "#222222")
 _MARKS = "osD^vPX"
-_GREY = "#A6A6A6"
-_INK = "#303030"
+GREY = "#A6A6A6"
+INK = "#303030"
 _SHIFT = 0.32  # how far beside an element's own function its neighbours' stand
 _WIDEST, _NARROWEST = 27.0, 5.8  # of the whole picture, inches
 _LEFT = 0.75  # room for the scale, inches
 _GAP = 0.9  # between the lanes of two l, in functions
 # The library's own defaults are restored first: with a dark style the colours would be illegible.
-_STYLE: dict[Any, Any] = {
+STYLE: dict[Any, Any] = {
     "font.family": "DejaVu Sans",
     "font.size": 8.5,
     "axes.edgecolor": "#808080",
     "axes.linewidth": 0.6,
-    "text.color": _INK,
-    "axes.labelcolor": _INK,
-    "xtick.color": _INK,
-    "ytick.color": _INK,
+    "text.color": INK,
+    "axes.labelcolor": INK,
+    "xtick.color": INK,
+    "ytick.color": INK,
     "svg.fonttype": "none",
     "svg.hashsalt": "overlapse",
 }
@@ -93,7 +93,7 @@ def picture(description: Description, kind: str) -> bytes:
     out = BytesIO()
     with matplotlib.rc_context():
         matplotlib.rcdefaults()
-        matplotlib.rcParams.update(_STYLE)
+        matplotlib.rcParams.update(STYLE)
         figure = Figure(facecolor="white")
         FigureCanvasAgg(figure)
         _draw(figure, panels, sizes, _title(description))
@@ -131,7 +131,7 @@ def _title(description: Description) -> str:
     return f"{name}: exponents of the primitives"
 
 
-def _plain(text: str) -> str:
+def plain(text: str) -> str:
     """Text that is shown as it stands: a dollar sign would start a formula."""
     return one_line(text).replace("$", r"\$")
 
@@ -177,7 +177,7 @@ def _draw(figure: "Figure", panels: Sequence[_Panel], sizes: _Sizes, title: str)
             )
             _ladder(axes, panel, sizes.unit)
             _scale(axes, limits, across == 0)
-    figure.suptitle(_plain(title), x=0.5, y=1 - 0.1 / height, va="top", fontsize=11)
+    figure.suptitle(plain(title), x=0.5, y=1 - 0.1 / height, va="top", fontsize=11)
     figure.supxlabel("contracted functions of each angular momentum", y=(below - 0.3) / height)
     _legend(figure, panels, legend)
 
@@ -214,7 +214,7 @@ def _scale(axes: "Axes", limits: tuple[float, float], named: bool) -> None:
 
 def _ladder(axes: "Axes", panel: _Panel, unit: float) -> None:
     """Lanes of the angular momenta side by side; a place only neighbours fill stays grey."""
-    axes.set_title(_plain(panel.title), fontsize=10, fontweight="bold", pad=4)
+    axes.set_title(plain(panel.title), fontsize=10, fontweight="bold", pad=4)
     beside = [
         (block, x) for block, x in ((panel.lighter, -_SHIFT), (panel.heavier, _SHIFT)) if block
     ]
@@ -222,8 +222,8 @@ def _ladder(axes: "Axes", panel: _Panel, unit: float) -> None:
     start = 0.0
     ticks = []
     for l in letters:
-        mark, colour = _MARKS[min(l, 6)], _COLOURS[min(l, 6)]
-        ladders = [(_ordered(block, l), shift, _GREY) for block, shift in beside]
+        mark, colour = _MARKS[min(l, 6)], COLOURS[min(l, 6)]
+        ladders = [(_ordered(block, l), shift, GREY) for block, shift in beside]
         ladders.append((_ordered(panel.block, l), 0.0, colour))
         for functions, shift, paint in ladders:
             for place, function in enumerate(functions):
@@ -246,7 +246,7 @@ def _ordered(block: Block, l: int) -> list[Function]:
 def _rungs(axes: "Axes", x: float, function: Function, colour: str, mark: str, size: float) -> None:
     """One contracted function: its primitives joined; a lone primitive as an open mark."""
     exponents = sorted(e for e in function.exponents.tolist() if e > 0)
-    grey = colour == _GREY
+    grey = colour == GREY
     axes.plot(
         [x] * len(exponents),
         exponents,
@@ -270,12 +270,12 @@ def _legend(figure: "Figure", panels: Sequence[_Panel], lines: int) -> None:
         return line
 
     samples = [
-        (sample(_INK, 4.0, False), "contracted function: primitives joined"),
-        (sample(_INK, 4.0, True), "lone primitive"),
+        (sample(INK, 4.0, False), "contracted function: primitives joined"),
+        (sample(INK, 4.0, True), "lone primitive"),
     ]
     if any(panel.lighter or panel.heavier for panel in panels):
         told = "neighbours in the row: lighter on the left, heavier on the right"
-        samples.append((sample(_GREY, 2.2, False), told))
+        samples.append((sample(GREY, 2.2, False), told))
     figure.legend(
         [handle for handle, _ in samples],
         [words for _, words in samples],

@@ -1,6 +1,6 @@
 """One document under judgement, with the results that several rules share."""
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import replace
 from functools import cached_property
 from typing import TYPE_CHECKING, Any, TypeVar
@@ -11,6 +11,7 @@ from overlapse.grammar.model import BasisSet, Block, Document, Function, Severit
 from overlapse.rules.claims import Claim, claims_of
 from overlapse.rules.finding import Edit, Finding
 from overlapse.rules.norms import Norm, norms_of
+from overlapse.rules.probe import Probe
 from overlapse.rules.registry import Rule
 from overlapse.rules.rows import Row, Suspect, rows_of, suspects_of
 
@@ -23,11 +24,17 @@ Shared = TypeVar("Shared")
 class Case:
     """A document, the label it was given from outside (if any), and helpers to make findings.
 
-    energies: whether rules may compute the atoms of the document.
+    probes: what was measured of it in real geometries; none in a plain audit.  energies: whether
+    rules may compute the atoms of the document.
     """
 
     def __init__(
-        self, document: Document, label: str | None = None, energies: bool = False
+        self,
+        document: Document,
+        label: str | None = None,
+        *,
+        probes: Sequence[Probe] = (),
+        energies: bool = False,
     ) -> None:
         # Rules reason over normalised primitives; where the text does not, its numbers are turned.
         self.document = over_normalised(document)
@@ -38,6 +45,7 @@ class Case:
         self.seals: tuple[SealedSet, ...] = ()
         self.reference: Document | None = None
         self.kin: tuple[Kin, ...] = ()
+        self.probes = tuple(probes)
         self._rule = ""
         self._shared: dict[str, Any] = {}
 

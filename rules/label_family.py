@@ -2,11 +2,10 @@
 
 from collections.abc import Iterator
 
-from overlapse.grammar.designation import Designation
 from overlapse.grammar.model import Block
 from overlapse.rules.case import Case
 from overlapse.rules.composition import function_counts
-from overlapse.rules.families.counted import table
+from overlapse.rules.families.kinds import usual_kind
 from overlapse.rules.finding import Finding
 from overlapse.rules.label import differing
 from overlapse.rules.labelling import Judged, judged
@@ -141,7 +140,7 @@ def cartesian(case: Case) -> Iterator[Finding]:
         end
     """
     for claim in judged(case):
-        usual = _usual(claim.label)
+        usual = usual_kind(claim.label)
         blocks = [b for b in claim.members.blocks if b.functions and max(b.counts, default=0) > 1]
         other = [block for block in blocks if block.functions != usual]
         if usual and other and not claim.label_is_wrong:
@@ -164,13 +163,3 @@ def _marked(case: Case, claim: Judged, blocks: list[Block], usual: str) -> Findi
         expected=usual,
         remedy=f"mark it {usual}, or say with the results that it was not",
     )
-
-
-def _usual(label: Designation) -> str | None:
-    """The kind of functions that a family is used with, None where it is not known."""
-    if label.family == "N-MPG":
-        name = f"{label.core}-{''.join(map(str, label.valence))}"
-        found = table("pople")["sets"].get(name, {}).get("functions")
-    else:
-        found = table("functions")["families"].get(label.family)
-    return None if found is None else str(found)

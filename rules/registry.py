@@ -7,7 +7,8 @@ their defaults hold unless the settings say otherwise.
 The docstring is the rule's page.  Its first line says what is found; then follow paragraphs, of
 which those that begin with "Formula:", "Source:", "Limits:" and "Remedy:" have that meaning and the
 rest says why it matters; and two literal samples, "Bad::" and "Good::", which the tests run.  Rules
-that compare have a third before them, "Beside::", of what lies beside both.
+that compare have a third before them, "Beside::", of what lies beside both; rules about real
+geometries have the one, in XYZ, that both are run in: "With::".
 """
 
 import inspect
@@ -37,6 +38,7 @@ class Explanation(NamedTuple):
     bad: str
     good: str
     beside: str = ""
+    geometry: str = ""
 
 
 @dataclass(frozen=True)
@@ -100,8 +102,9 @@ _MARKED = ("Formula", "Source", "Limits", "Remedy")
 
 
 def _explain(text: str) -> Explanation:
-    prose, samples = text, {"Bad": "", "Good": "", "Beside": ""}
-    for name in ("Good", "Bad", "Beside"):
+    prose = text
+    samples = {"Bad": "", "Good": "", "Beside": "", "With": ""}
+    for name in ("With", "Good", "Bad", "Beside"):
         before, mark, sample = prose.partition(f"\n{name}::\n")
         if mark:
             prose, samples[name] = before, dedent(sample).strip("\n") + "\n"
@@ -124,4 +127,5 @@ def _explain(text: str) -> Explanation:
         samples["Bad"],
         samples["Good"],
         samples["Beside"],
+        samples["With"],
     )

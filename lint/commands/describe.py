@@ -2,14 +2,10 @@
 
 import sys
 from pathlib import Path
-from typing import TYPE_CHECKING
 
 import click
 
-from overlapse.lint.common import CLEAN, FOUND, Unreadable, a_layout, like_a_layout, output
-
-if TYPE_CHECKING:
-    from overlapse.lint.describe import Description
+from overlapse.lint.common import CLEAN, FOUND, Unreadable, a_layout, draw, like_a_layout, output
 
 
 def _some_elements(
@@ -81,24 +77,9 @@ def describe(
     if lack := facts.emptiness(description):
         raise click.UsageError(lack) if description.document.blocks else Unreadable(lack)
     if drawing is not None:
-        _draw(description, drawing)
+        from overlapse.lint.picture import picture
+
+        draw(drawing, lambda kind: picture(description, kind))
     with output(out) as stream:
         (facts.write_json if report == "json" else write_text)(description, stream)
     sys.exit(FOUND if description.broken else CLEAN)
-
-
-def _draw(description: "Description", path: Path) -> None:
-    """Write the picture; without its library, or to a place that cannot be written, wrong use."""
-    from overlapse.lint.picture import KINDS, PictureError, picture
-
-    kind = path.suffix[1:].lower()
-    if kind not in KINDS:
-        raise click.UsageError(f"{path}: a picture's name ends in .{', .'.join(KINDS)}")
-    try:
-        drawn = picture(description, kind)
-        with click.open_file(str(path), "wb", atomic=True) as stream:
-            stream.write(drawn)
-    except PictureError as problem:
-        raise click.UsageError(str(problem)) from problem
-    except OSError as problem:
-        raise click.UsageError(f"{path}: {problem.strerror or problem}") from problem

@@ -43,7 +43,7 @@ def solid_harmonics(vectors: Floats, top: int) -> list[Floats]:
 
 
 @cache
-def _sphere(degree: int) -> tuple[Floats, Floats]:
+def sphere(degree: int) -> tuple[Floats, Floats]:
     """Nodes (p, 3) and weights (p,) that integrate polynomials up to ``degree`` exactly."""
     height, weight = np.polynomial.legendre.leggauss(degree // 2 + 1)
     angle = 2.0 * pi * np.arange(degree + 1) / (degree + 1)
@@ -62,7 +62,7 @@ def _sphere(degree: int) -> tuple[Floats, Floats]:
 @cache
 def gaunt(left: int, right: int, third: int) -> Floats:
     """Integrals of Y_left,m Y_right,n Y_third,k over the sphere, one axis for each (2l+1 long)."""
-    nodes, weights = _sphere(left + right + third)
+    nodes, weights = sphere(left + right + third)
     values = solid_harmonics(nodes, max(left, right, third))
     product = (values[left] * weights)[:, None, :] * values[right][None, :, :]
     found: Floats = product @ values[third].T
@@ -82,7 +82,7 @@ def cartesian_parts(l: int) -> tuple[tuple[int, Floats], ...]:
 
     Pairs of an angular momentum k = l, l-2, ... and the expansion, shape (components, 2k+1).
     """
-    nodes, weights = _sphere(2 * l)
+    nodes, weights = sphere(2 * l)
     values = np.stack([np.prod(nodes ** np.array(p), axis=1) for p in powers(l)])
     values /= np.sqrt(values**2 @ weights)[:, None]
     harmonics = solid_harmonics(nodes, l)

@@ -21,7 +21,6 @@ from overlapse.rules.physics.placed import Functions, Ints, Placed
 from overlapse.rules.physics.spectrum import Matrix, largest, pivoted, smallest
 
 SHARE = 0.1  # of the tolerance: what the smallest eigenvalue of the kept functions is held to
-WHOLESALE = 0.5  # of its functions: from there a shell is dropped at once, not one after another
 
 
 class Drop(NamedTuple):
@@ -102,7 +101,10 @@ def shells_to_drop(
         if not len(lost):
             break
         share = np.bincount(owner[lost], minlength=len(sizes)) / sizes
-        gone = np.flatnonzero(share >= min(WHOLESALE, float(share.max())))
+        # Of twins one atom may lose the one and the next the other: only what is lost everywhere
+        # goes together, else the first of those that lose most, and the others get a second chance.
+        whole = np.flatnonzero(share >= 1.0)
+        gone = whole if len(whole) else np.array([int(np.argmax(share))])
         drops += _described(gone[np.argsort(-share[gone], kind="stable")], owner, functions, atoms)
         kept = kept[~np.isin(owner[kept], gone)]
     if per == "element":

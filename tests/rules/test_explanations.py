@@ -1,6 +1,7 @@
 """Every rule explains itself, and its own samples show that it works."""
 
 import pytest
+from probed import probed
 
 from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read_bytes, read_text
@@ -14,6 +15,8 @@ RULES = sorted(rules())
 
 def case_of(rule: Rule, document: Document) -> Case:
     """A sample under judgement, with what the rule's page says lies beside it."""
+    if rule.explanation.geometry:
+        return probed(document, rule.explanation.geometry)
     case = Case(document, energies=True)
     if rule.explanation.beside:
         beside = read_text(rule.explanation.beside, "beside")
@@ -64,6 +67,6 @@ def test_the_good_sample_is_not(name: str) -> None:
 def test_heuristic_rules_never_give_errors(name: str) -> None:
     rule = rules()[name]
     if rule.explanation.what.lower().startswith("suspect"):
-        found = Case(read_text(rule.explanation.bad, "sample"), energies=True).judge(rule)
+        found = case_of(rule, read_text(rule.explanation.bad, "sample")).judge(rule)
         assert {finding.severity for finding in found} <= {"warning", "note"}
         assert all("suspect" in finding.message for finding in found)

@@ -1,0 +1,250 @@
+"""Screening: basis files in real geometries, from paths to measurements and findings.
+
+Nothing here prints.
+"""
+
+import os
+from collections.abc import Iterable, Iterator, Sequence
+from dataclasses import dataclass, replace
+from pathlib import Path
+from typing import Any, NamedTuple
+
+import numpy as np
+
+from overlapse.grammar import geometry as geometries
+from overlapse.grammar.geometry import Frame, Geometry, Unit
+from overlapse.grammar.model import Document, Fault
+from overlapse.grammar.reading import read_bytes
+from overlapse.lint import memory
+from overlapse.lint.choices import Shelf, Use, shelf
+from overlapse.lint.engine import FileAudit, judge
+from overlapse.lint.settings import Settings, settings_for
+from overlapse.rules.finding import Finding
+from overlapse.rules.probe import Probe
+from overlapse.rules.probing import Label, Wanted, probe
+from overlapse.rules.registry import rules
+from overlapse.rules.site import Site, size
+
+
+class ScreenError(ValueError):
+    """Files that cannot be screened as they are; the message says where and why."""
+
+
+class TooLarge(ScreenError):
+    """A frame that needs more memory than is allowed."""
+
+
+class Task(NamedTuple):
+    """One frame to measure."""
+
+    geometry: str
+    frame: Frame
+    functions: int
+
+
+@dataclass(frozen=True)
+class Screening:
+    """What a run found.
+
+    probes: in the order of the frames.  by_frame: what the rules say of each alone.  audits: what
+    they say of all together, file by file.
+    """
+
+    probes: tuple[Probe, ...]
+    by_frame: tuple[tuple[Finding, ...], ...]
+    audits: tuple[FileAudit, ...]
+
+    def at_least(self, levels: Sequence[str]) -> "Screening":
+        """The same with only those findings."""
+        return replace(
+            self,
+            by_frame=tuple(tuple(f for f in g if f.severity in levels) for g in self.by_frame),
+            audits=tuple(
+                replace(a, findings=tuple(f for f in a.findings if f.severity in levels))
+                for a in self.audits
+            ),
+        )
+
+
+# ---- reading
+
+
+def read_basis(path: Path, data: bytes, layout: str | None = None) -> Document:
+    """Read a basis file.  Raises ScreenError for one in which no layout is recognised."""
+    document = read_bytes(data, os.fspath(path), layout=layout)
+    if not document.blocks:
+        told = [fault.message for fault in document.faults if fault.severity == "error"]
+        raise ScreenError(f"{path}: {(told or ['no element was found'])[0]}")
+    return document
+
+
+def geometry_files(paths: Iterable[Path]) -> Iterator[Path]:
+    """Files named, and in named folders the XYZ files, by name."""
+    for path in paths:
+        if not path.is_dir():
+            yield path
+            continue
+        inside = sorted(entry for entry in path.rglob("*") if entry.is_file())
+        yield from (e for e in inside if e.suffix.lower() in (".xyz", ".extxyz"))
+
+
+# ---- from frames to tasks
+
+
+def tasks(shelf: Shelf, read: Sequence[Geometry]) -> tuple[list[Task], list[FileAudit]]:
+    """Frames that can be measured, and what is wrong with the geometries.
+
+    Raises ScreenError where a block that is needed has a fault of form or an impossible function.
+    """
+    found: list[Task] = []
+    audits = []
+    seen: set[int] = set()
+    for geometry in read:
+        faults = list(geometry.faults)
+        for frame in geometry.frames:
+            sites, lacking = shelf.sites(frame)
+            faults += _lacks(shelf, geometry, lacking, faults)
+            for site in sites:
+                if id(site.block) not in seen:
+                    seen.add(id(site.block))
+                    _check(shelf, site)
+            if frame.complete and not lacking:
+                found.append(Task(geometry.path, frame, size(sites)))
+        if faults:
+            document = Document(geometry.source, geometry.layout, faults=tuple(faults))
+            names = {fault.rule for fault in faults}
+            settings = settings_for(Path(geometry.path).absolute())
+            audits.append(judge(document, settings=settings, only=names))
+    return found, audits
+
+
+def _lacks(
+    shelf: Shelf, geometry: Geometry, lacking: Sequence[geometries.Atom], faults: Sequence[Fault]
+) -> Iterator[Fault]:
+    """One fault for each element without functions, told once for all frames."""
+    told = {fault.element for fault in faults if fault.rule == "overlap.molecule"}
+    for atom in lacking:
+        if atom.symbol in told:
+            continue
+        told.add(atom.symbol)
+        source = geometry.source
+        start = source.starts[atom.line - 1] + atom.column - 1 if source.text else 0
+        yield Fault(
+            "overlap.molecule",
+            shelf.because(atom),
+            (start, start + len(atom.symbol)),
+            element=atom.symbol,
+            remedy=f"name a file that has {atom.symbol}: another one, or --use {atom.symbol}=FILE",
+        )
+
+
+def _check(shelf: Shelf, site: Site) -> None:
+    document = next(d for d in shelf.documents if d.path == site.path)
+    for fault in document.faults:
+        if fault.severity == "error" and fault.element == site.block.symbol:
+            place = document.source.place(fault.span[0])
+            raise ScreenError(
+                f"{site.path}:{place.line}:{place.column}: {fault.message}; mend the file first"
+            )
+    for name, shell in zip(site.block.names, site.block.shells, strict=True):
+        if not np.isfinite(shell.normalised()).all() or shell.exponents.min() <= 0.0:
+            raise ScreenError(
+                f"{site.path}:{shell.line}:1: {site.block.symbol} {name} holds a function that "
+                "cannot be normalised; mend the file first"
+            )
+
+
+def check_memory(found: Sequence[Task], limit: int | None) -> None:
+    """Raise TooLarge for a frame whose matrix needs more than ``limit`` bytes."""
+    for task in found:
+        wide = 2 if task.frame.cell is not None else 1
+        need = memory.needed(task.functions, wide=wide)
+        if limit is not None and need > limit:
+            raise TooLarge(
+                f"{task.geometry}, frame {task.frame.index}: {task.functions:,} functions need "
+                f"about {memory.told(need)} of memory, {memory.told(limit)} are allowed; "
+                "--memory allows more"
+            )
+
+
+# ---- measuring
+
+
+def measure(task: Task, shelf: Shelf, wanted: Wanted) -> Probe:
+    """Measure one frame."""
+    frame = task.frame
+    sites, _ = shelf.sites(frame)
+    label = Label(task.geometry, frame.index, frame.title)
+    if frame.cell is None:
+        return probe(sites, wanted, label)
+    # Crystals are the rarer case, and their sums need more libraries.
+    from overlapse.rules.probing_lattice import probe_lattice
+
+    return probe_lattice(sites, frame.cell, frame.periodic, wanted, label)
+
+
+# ---- judging
+
+
+def geometric_rules() -> frozenset[str]:
+    """Rules that judge measurements: those whose samples come with a geometry."""
+    return frozenset(name for name, rule in rules().items() if rule.explanation.geometry)
+
+
+def judged(
+    shelf: Shelf, probes: Sequence[Probe], settings: Settings | None = None
+) -> list[FileAudit]:
+    """What the rules say of the measurements, for each basis file that was used."""
+    used = {path for each in probes for path in each.files}
+    only = geometric_rules()
+    return [
+        judge(
+            document,
+            settings=settings or settings_for(Path(document.path).absolute()),
+            probes=probes,
+            only=only,
+        )
+        for document in shelf.documents
+        if document.path in used
+    ]
+
+
+def screened(shelf: Shelf, probes: Sequence[Probe], audits: Sequence[FileAudit] = ()) -> Screening:
+    """Measurements with what the rules say of them; ``audits`` are those of the geometries."""
+    by_frame = [
+        tuple(finding for audit in judged(shelf, [each]) for finding in audit.findings)
+        for each in probes
+    ]
+    return Screening(tuple(probes), tuple(by_frame), (*judged(shelf, probes), *audits))
+
+
+def screen_files(
+    basis: Sequence[Path],
+    geometry: Path,
+    *,
+    uses: Sequence[Use] = (),
+    wanted: Wanted = Wanted(),  # noqa: B008  it is a constant
+    label: str = "",
+    spherical: bool | None = None,
+    unit: Unit | None = None,
+) -> Screening:
+    """Screen basis files in one geometry, a file or a folder of XYZ files.
+
+    uses: files for elements or atoms; label: of the set to take where a file has several;
+    spherical: kind of the functions, None to follow the files.  Raises OSError for files that
+    cannot be opened, ScreenError, `overlapse.lint.choices.ChoiceError` or
+    `overlapse.grammar.geometry.GeometryError` for what cannot be screened.
+    """
+    documents = [read_basis(path, path.read_bytes()) for path in basis]
+    chosen = [(use, read_basis(use.path, use.path.read_bytes())) for use in uses]
+    made = shelf(documents, chosen, wanted=label, spherical=spherical)
+    read = [geometries.read(path, unit=unit) for path in geometry_files([geometry])]
+    found, audits = tasks(made, read)
+    check_memory(found, memory.allowed())
+    return screened(made, [measure(task, made, wanted) for task in found], audits)
+
+
+def probe_files(basis: Sequence[Path], geometry: Path, **options: Any) -> dict[str, list[Finding]]:
+    """Findings of basis files in one geometry, by the path of the file; as `screen_files`."""
+    audits = screen_files(basis, geometry, **options).audits
+    return {audit.path: list(audit.findings) for audit in audits}

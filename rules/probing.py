@@ -1,0 +1,175 @@
+"""Measuring: from atoms with their blocks to what is known of their overlap matrix."""
+
+from collections.abc import Iterable, Iterator, Sequence
+from typing import NamedTuple
+
+from overlapse.grammar.model import Floats
+from overlapse.rules.blaming import blame, described
+from overlapse.rules.physics.integrals import kinetic, overlap
+from overlapse.rules.physics.onecentre import eigenvalues
+from overlapse.rules.physics.outlook import LOOKED_AT, Outlook, foresee, outlook
+from overlapse.rules.physics.placed import Functions, lay_out
+from overlapse.rules.physics.pruning import Drop, shells_to_drop
+from overlapse.rules.physics.spectrum import LADDER, Matrix, Spectrum, spectrum
+from overlapse.rules.probe import NEAR, Dropped, Lattice, Left, Probe
+from overlapse.rules.site import Site, formula, kind_of
+
+
+class Wanted(NamedTuple):
+    """What to measure: removal threshold, tolerance of pruning, and whether it is atom by atom.
+
+    mesh: number of k points along each vector of a cell.  values: all eigenvalues are wanted.
+    charge, unpaired: of the molecule, for the outlook; unpaired electrons the fewest possible where
+    None.
+    """
+
+    threshold: float = 1e-6
+    tolerance: float = 1e-7
+    per_atom: bool = False
+    mesh: tuple[int, int, int] = (2, 2, 2)
+    values: bool = False
+    charge: int = 0
+    unpaired: int | None = None
+
+
+class Label(NamedTuple):
+    """Which frame it is: path of the geometry, place in it counted from 1, comment line."""
+
+    geometry: str = "<geometry>"
+    frame: int = 1
+    title: str = ""
+
+
+Pruned = tuple[tuple[Dropped, ...], Left | None]
+
+
+def probe(sites: Sequence[Site], wanted: Wanted, label: Label = Label()) -> Probe:  # noqa: B008
+    """Measure one molecule.
+
+    Raises `overlapse.rules.physics.placed.NotNormalisable` where a function has no norm.
+    """
+    placed = [site.placed for site in sites]
+    matrix = overlap(placed)
+    found = steps(matrix, wanted)
+    pruned = pruned_set(matrix, lay_out(placed), sites, wanted, found)
+    energies = kinetic(placed) if found.smallest < LOOKED_AT else None
+    turned = turned_spherical(sites)
+    counterpart = in_short(overlap([s.placed for s in turned])) if turned else None
+    return assembled(sites, wanted, label, matrix, found, pruned, energies, counterpart)
+
+
+def steps(matrix: Matrix, wanted: Wanted) -> Spectrum:
+    """The spectrum, with counts at the ladder and on both sides of the removal threshold."""
+    edges = (wanted.threshold / NEAR, wanted.threshold, wanted.threshold * NEAR)
+    return spectrum(matrix, tuple(sorted({*LADDER, *edges}, reverse=True)))
+
+
+def assembled(
+    sites: Sequence[Site],
+    wanted: Wanted,
+    label: Label,
+    matrix: Matrix,
+    found: Spectrum,
+    pruned: Pruned,
+    energies: Floats | None,
+    counterpart: Left | None,
+    lattice: Lattice | None = None,
+) -> Probe:
+    """All that is known of a matrix, in one piece."""
+    functions = lay_out([site.placed for site in sites])
+    low, step, high = wanted.threshold / NEAR, wanted.threshold, wanted.threshold * NEAR
+    return Probe(
+        geometry=label.geometry,
+        frame=label.frame,
+        title=label.title,
+        formula=formula(sites),
+        atoms=len(sites),
+        spherical=kind_of(sites),
+        spectrum=found._replace(below={rung: found.below[rung] for rung in LADDER}),
+        threshold=step,
+        kept=found.functions - found.below[step],
+        near=found.below[high] - found.below[low],
+        outlook=_outlook(sites, wanted, matrix, found, energies),
+        tolerance=wanted.tolerance,
+        blame=blame(matrix, functions, sites, found, high),
+        drop=pruned[0],
+        after=pruned[1],
+        counterpart=counterpart,
+        lattice=lattice,
+        fitting=any(site.fitting for site in sites),
+        files=tuple(dict.fromkeys(site.path for site in sites)),
+        values=tuple(eigenvalues(matrix).tolist()) if wanted.values else (),
+    )
+
+
+def _outlook(
+    sites: Sequence[Site],
+    wanted: Wanted,
+    matrix: Matrix,
+    found: Spectrum,
+    energies: Floats | None,
+) -> Outlook:
+    """The outlook; by the eigenvalue alone for crystals and for functions that are for fitting."""
+    if energies is None or any(site.fitting for site in sites):
+        return outlook(matrix, smallest=found.smallest)
+    placed = [site.placed for site in sites]
+    return foresee(
+        placed,
+        matrix,
+        energies,
+        lay_out(placed),
+        empty=[k for k, site in enumerate(sites) if site.atom.ghost],
+        charge=wanted.charge,
+        unpaired=wanted.unpaired,
+        smallest=found.smallest,
+    )
+
+
+def in_short(matrix: Matrix) -> Left:
+    """Number of functions, smallest eigenvalue and condition number."""
+    found = spectrum(matrix, ())
+    return Left(found.functions, found.smallest, found.condition)
+
+
+def turned_spherical(sites: Sequence[Site]) -> list[Site]:
+    """The same with spherical functions, where some are Cartesian; nothing where none are."""
+    if all(site.spherical or max(site.block.counts, default=0) < 2 for site in sites):
+        return []
+    return [site._replace(spherical=True) for site in sites]
+
+
+# ---- what to drop
+
+
+def pruned_set(
+    matrix: Matrix,
+    functions: Functions,
+    sites: Sequence[Site],
+    wanted: Wanted,
+    found: Spectrum,
+) -> Pruned:
+    """What the Cholesky choice takes away, and what it leaves.
+
+    A pivot is a diagonal element of a Schur complement, so it is never below the smallest
+    eigenvalue: above the tolerance nothing can go.
+    """
+    if found.smallest >= wanted.tolerance:
+        return (), None
+    pruning = shells_to_drop(
+        matrix,
+        functions,
+        [site.placed for site in sites],
+        wanted.tolerance,
+        "atom" if wanted.per_atom else "element",
+    )
+    if not pruning.drops:
+        return (), None
+    left = Left(len(pruning.kept), pruning.smallest, pruning.condition)
+    return tuple(as_dropped(pruning.drops, sites, wanted)), left
+
+
+def as_dropped(drops: Iterable[Drop], sites: Sequence[Site], wanted: Wanted) -> Iterator[Dropped]:
+    """What was chosen to be dropped, with its places in the files."""
+    for drop in drops:
+        function = described(sites[drop.like], drop.shell, drop.column, drop.exponent)
+        yield Dropped(function, drop.like + 1 if wanted.per_atom else 0)
