@@ -9,6 +9,7 @@ import re
 from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
+from itertools import pairwise
 
 from overlapse.grammar.elements import number_of, row_of
 from overlapse.grammar.model import Block, Document, Shell, Span
@@ -88,9 +89,8 @@ def cut(text: str) -> str:
         elif first.startswith("#BASIS"):
             kept.append(line)
             continue
-        if (inside and not (is_heavy and first and not first.startswith("#"))) or (
-            inside and first.upper() == "END"
-        ):
+        is_dropped = is_heavy and first and not first.startswith("#") and first.upper() != "END"
+        if inside and not is_dropped:
             kept.append(line)
     # The comment on the composition of a heavy element stands before its block.
     tidy = [
@@ -123,7 +123,7 @@ def exchanged_digits(word: str, dice: random.Random) -> str | None:
     digits = [at for at, sign in enumerate(body) if sign.isdigit()]
     while digits and body[digits[0]] == "0":
         digits.pop(0)
-    pairs = [(a, b) for a, b in zip(digits[:2], digits[1:3], strict=False) if body[a] != body[b]]
+    pairs = [(a, b) for a, b in pairwise(digits[:3]) if body[a] != body[b]]
     if not pairs:
         return None
     a, b = dice.choice(pairs)
