@@ -13,7 +13,7 @@ from overlapse.rules.finding import Edit, Finding
 from overlapse.rules.norms import Norm, norms_of
 from overlapse.rules.probe import Probe
 from overlapse.rules.registry import Rule
-from overlapse.rules.rows import Row, Suspect, rows_of, suspects_of
+from overlapse.rules.rows import Row, rows_of
 
 if TYPE_CHECKING:
     from overlapse.rules.beside import Kin, SealedSet
@@ -80,15 +80,6 @@ class Case:
     def norms(self) -> list[list[Norm]]:
         """For each set, the self-overlaps of its contractions of several primitives."""
         return [norms_of(members) for members in self.sets]
-
-    @cached_property
-    def suspect_exponents(self) -> list[Suspect]:
-        """Exponents that depart from their row, in all sets."""
-        return [
-            suspect
-            for members, rows in zip(self.sets, self.rows, strict=True)
-            for suspect in suspects_of(members, rows)
-        ]
 
     @property
     def sets(self) -> tuple[BasisSet, ...]:

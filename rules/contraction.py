@@ -68,7 +68,7 @@ def norm(case: Case, *, share: float = 0.9, floor: float = 3e-6) -> Iterator[Fin
           0.2 0.5
         ****
     """
-    for members, rows, found in zip(case.sets, case.rows, case.norms, strict=True):
+    for index, (members, found) in enumerate(zip(case.sets, case.norms, strict=True)):
         broken = [n for n in found if not (np.isfinite(n.overlap) and n.overlap > 0.0)]
         for off in broken:
             yield case.at_shell(
@@ -89,7 +89,7 @@ def norm(case: Case, *, share: float = 0.9, floor: float = 3e-6) -> Iterator[Fin
         if evident:
             sound = [n for n in sound if n not in evident]
             # The narrow rows first: where both hold a contraction they are the smoother ones.
-            yield from _odd_ones(case, evident, sound, [*rows, *rows_of(members, True)])
+            yield from _odd_ones(case, evident, sound, [*case.rows[index], *rows_of(members, True)])
         plain = [n for n in judged if n.deviation >= NORMALISED and n not in evident]
         if plain and len(sound) < share * len(judged):
             yield _throughout(case, plain, len(judged))
