@@ -143,7 +143,7 @@ def audit(
     tally = _Tally()
 
     def stream() -> Iterator[FileAudit]:
-        yield from _told(judged) if verbose else judged
+        yield from _probed(_told(judged) if verbose else judged)
         yield from troubles
         if sieve is not None:
             yield from sieve.absent(path for path in paths if path.is_dir())
@@ -159,6 +159,19 @@ def audit(
                 writer(report)(shown, written, out is None and coloured(written))
     _tell_of_plugins()
     sys.exit(tally.status)
+
+
+def _probed(audits: "Iterable[FileAudit]") -> "Iterator[FileAudit]":
+    """The audits with what the probes of their settings add, then those of the geometries."""
+    probing = None
+    for item in audits:
+        if item.settings.probes and probing is None:
+            from overlapse.lint.probetables import Probing  # it needs far more than a plain audit
+
+            probing = Probing()
+        yield probing.joined(item) if probing is not None else item
+    if probing is not None:
+        yield from probing.of_geometries()
 
 
 class _Tally:
