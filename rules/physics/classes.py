@@ -113,6 +113,8 @@ class GroupPair:
         reach = tail.reach(mu, {q: row * strength.ravel() for q, row in bounds.items()})
         order = np.argsort(-reach, kind="stable")
         self.reach, self.mu = reach[order], mu[order]
+        self._bounds = (mu, bounds)
+        self._spans: dict[float, Floats] = {}
         self.weights = _weights(left.weights, right.weights, order, rows)
         self.top = max(term.factor.third for term in self.terms)
 
@@ -125,19 +127,73 @@ class GroupPair:
         R_LM of the vectors from the right to the left atom.  shortest: the smallest distance.
         room: a buffer of at least the size of ``out``.
         """
-        keep = int(np.searchsorted(-self.reach, -shortest))
-        table = np.multiply.outer(-self.mu[:keep], square)
-        np.exp(table, out=table)
         n, c, m, d, p = out.shape
-        radial = (self.weights[:, :keep] @ table).reshape(-1, n, 1, m, 1, p)
+        keep = int(np.searchsorted(-self.reach, -shortest))
+        radial = (self.weights[:, :keep] @ self._table(keep, square)).reshape(-1, n, 1, m, 1, p)
+        self._combine(out, radial, (1, c, 1, d, p), square, harmonics, room)
+
+    def chosen(
+        self, pairs: Ints, square: Floats, harmonics: list[Floats], shortest: float
+    ) -> Floats:
+        """Overlaps of some pairs of contractions, shape (len(pairs), c, c', p).
+
+        pairs: their numbers in the order (n, n').  Otherwise as `fill`.
+        """
+        c, d, p = self.left.components, self.right.components, len(square)
+        keep = int(np.searchsorted(-self.reach, -shortest))
+        count = len(self.left.place) * len(self.right.place)
+        rows = (np.arange(self.weights.shape[0] // count)[:, None] * count + pairs).ravel()
+        radial = self.weights[rows][:, :keep] @ self._table(keep, square)
+        out = np.empty((len(pairs), c, d, p))
+        room = np.empty(out.size)
+        radial = radial.reshape(-1, len(pairs), 1, 1, p)
+        self._combine(out, radial, (1, c, d, p), square, harmonics, room)
+        return out
+
+    def spans(self, limit: float) -> Floats:
+        """Distances (bohr) from which the elements of each pair of contractions stay below a limit.
+
+        Shape (n * n',).  By the bound of the primitive pairs, each taken at its largest where it
+        still rises, on a grid of distances.
+        """
+        if limit not in self._spans:
+            mu, bounds = self._bounds
+            grid = np.linspace(0.0, float(self.reach[0]), 256)
+            x = np.multiply.outer(mu, grid**2)
+            total = np.zeros_like(x)
+            for q, row in bounds.items():
+                # x**(q/2) exp(-x) falls beyond x = q/2.
+                y = np.maximum(x, q / 2.0)
+                total += row[:, None] * y ** (q / 2.0) * np.exp(-y)
+            left, right = np.abs(self.left.weights), np.abs(self.right.weights)
+            total = np.tensordot(left, total.reshape(left.shape[1], right.shape[1], -1), 1)
+            total = np.einsum("jb,ibg->ijg", right, total, optimize=True).reshape(-1, len(grid))
+            # At the end of the grid everything is below the limit of all screening.
+            total[:, -1] = 0.0
+            self._spans[limit] = grid[(total <= limit).argmax(axis=1)]
+        return self._spans[limit]
+
+    def _table(self, keep: int, square: Floats) -> Floats:
+        table = np.multiply.outer(-self.mu[:keep], square)
+        return np.exp(table, out=table)
+
+    def _combine(
+        self,
+        out: Floats,
+        radial: Floats,
+        shape: tuple[int, ...],
+        square: Floats,
+        harmonics: list[Floats],
+        room: Floats,
+    ) -> None:
+        """Sum over L of g_L times the angular factor, the latter in the given shape."""
         room = room[: out.size].reshape(out.shape)
         for number, term in enumerate(self.terms):
             value = radial[term.first + term.rows - 1]
             for power in range(term.rows - 2, -1, -1):
                 value *= square
                 value += radial[term.first + power]
-            angular = term.factor.table @ harmonics[term.factor.third]
-            angular = angular.reshape(1, c, 1, d, p)
+            angular = (term.factor.table @ harmonics[term.factor.third]).reshape(shape)
             np.multiply(value, angular, out=room if number else out)
             if number:
                 out += room

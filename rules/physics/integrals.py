@@ -9,10 +9,9 @@ a list.  There is no loop over pairs of atoms or shells.
 """
 
 from collections.abc import Callable, Iterator, Sequence
-from typing import Any, NamedTuple
+from typing import NamedTuple
 
 import numpy as np
-from scipy import sparse
 
 from overlapse.grammar.model import Floats
 from overlapse.rules.physics.classes import Tail, group_pair
@@ -21,7 +20,6 @@ from overlapse.rules.physics.kinds import Kind, kinds
 from overlapse.rules.physics.placed import Ints, Placed
 
 LIMIT = 1e-15  # bound of what screening leaves out of a matrix element
-DROP = 1e-12  # elements of a sparse matrix below are not stored
 PANEL = 100_000  # pairs of atoms that are looked at together
 BATCH = 500_000  # elements that are worked out together
 WORKING = 64 * 2**20  # bytes that buffers take beside the matrix
@@ -37,17 +35,6 @@ class TooLarge(MemoryError):
             f"{what} needs {needed / 2**30:.2f} GiB and {allowed / 2**30:.2f} GiB may be used"
         )
         self.needed, self.allowed = needed, allowed
-
-
-class Sparse(NamedTuple):
-    """A sparse overlap matrix.
-
-    matrix: `scipy.sparse.csr_array`, shape (n, n).  bound: no eigenvalue differs by more from that
-    of the full matrix (the largest sum of what was left out of a row).
-    """
-
-    matrix: Any
-    bound: float
 
 
 class KindPair:
@@ -116,6 +103,20 @@ class Batch(NamedTuple):
     blocks: Floats
 
 
+class Pairs(NamedTuple):
+    """Pairs of atoms by rising distance.
+
+    left, right: indices, shape (p,).  vectors: from the right to the left atom, shape (p, 3), bohr.
+    square: their squared lengths.  share: elements of the matrix that these atoms have in all.
+    """
+
+    left: Ints
+    right: Ints
+    vectors: Floats
+    square: Floats
+    share: float
+
+
 class Frame:
     """Atoms sorted into kinds; where the functions of each atom begin."""
 
@@ -139,42 +140,48 @@ class Frame:
                 if not left.size * right.size:
                     continue
                 pair = KindPair(left, right, tail, kinetic)
-                for first in range(0, len(left.members), rows := _rows(right)):
-                    members = left.members[first : first + rows]
-                    yield from self._panel(pair, members, left is right)
-                    share = len(members) * left.size * len(right.members) * right.size / whole
-                    done += share if left is right else 2.0 * share
+                for some in self.pairs(left, right, pair.reach):
+                    yield from _batches(pair, some)
+                    done += some.share / whole
                     if progress is not None:
                         progress(min(1.0, done))
 
-    def _panel(self, pair: KindPair, members: Ints, same: bool) -> Iterator[Batch]:
-        left = np.repeat(members, len(pair.right.members))
-        right = np.tile(pair.right.members, len(members))
-        if same:
-            once = left <= right
-            left, right = left[once], right[once]
-        vectors = self.positions[left] - self.positions[right]
-        square = np.einsum("px,px->p", vectors, vectors)
-        order = np.flatnonzero(square < pair.reach**2)
-        order = order[np.argsort(square[order], kind="stable")]
-        step = batch_size(pair)
-        for start in range(0, len(order), step):
-            part = order[start : start + step]
-            blocks = pair.blocks(vectors[part])
-            yield Batch(
-                left[part],
-                right[part],
-                blocks.reshape(pair.left.size, pair.right.size, len(part)),
+    def pairs(self, left: Kind, right: Kind, reach: float) -> Iterator[Pairs]:
+        """Pairs of atoms closer than ``reach``, each once, so many at a time as memory likes."""
+        rows = max(1, PANEL // max(1, len(right.members)))
+        for first in range(0, len(left.members), rows):
+            members = left.members[first : first + rows]
+            one = np.repeat(members, len(right.members))
+            two = np.tile(right.members, len(members))
+            share = float(len(one) * left.size * right.size)
+            if left is right:
+                once = one <= two
+                one, two = one[once], two[once]
+            vectors = self.positions[one] - self.positions[two]
+            square = np.einsum("px,px->p", vectors, vectors)
+            order = np.flatnonzero(square < reach**2)
+            order = order[np.argsort(square[order], kind="stable")]
+            yield Pairs(
+                one[order],
+                two[order],
+                vectors[order],
+                square[order],
+                share if left is right else 2.0 * share,
             )
+
+
+def _batches(pair: KindPair, some: Pairs) -> Iterator[Batch]:
+    step = batch_size(pair)
+    for start in range(0, len(some.left), step):
+        part = slice(start, start + step)
+        blocks = pair.blocks(some.vectors[part])
+        shape = (pair.left.size, pair.right.size, -1)
+        yield Batch(some.left[part], some.right[part], blocks.reshape(shape))
 
 
 def batch_size(pair: KindPair) -> int:
     """How many pairs of atoms are best worked out together."""
     return int(np.clip(BATCH // pair.size, 16, 2000))
-
-
-def _rows(right: Kind) -> int:
-    return max(1, PANEL // max(1, len(right.members)))
 
 
 def memory_needed(functions: int) -> int:
@@ -230,46 +237,3 @@ def overlap(
 def kinetic(atoms: Sequence[Placed], *, memory: int | None = None) -> Floats:
     """Kinetic-energy matrix in hartree, shape (n, n), as `overlap`."""
     return _dense(atoms, True, memory)
-
-
-def sparse_overlap(
-    atoms: Sequence[Placed],
-    *,
-    drop: float = DROP,
-    memory: int | None = None,
-    progress: Progress | None = None,
-) -> Sparse:
-    """Overlap matrix of which only elements of at least ``drop`` are stored.
-
-    memory: bytes allowed.  Raises as `overlap`; memory is judged while the matrix grows.
-    """
-    frame = Frame(atoms)
-    missing = np.full(frame.size, 1e-3 * drop * frame.size)
-    held: list[tuple[Floats, Ints, Ints]] = []
-    stored = 0
-    for batch in frame.batches(Tail(1e-3 * drop), progress=progress):
-        blocks = batch.blocks
-        blocks[..., batch.left == batch.right] *= 0.5  # they are added to their own transposes
-        size = np.abs(blocks)
-        row, column, pair = np.nonzero(size >= drop)
-        at, to = frame.starts[batch.left], frame.starts[batch.right]
-        held.append(
-            (
-                blocks[row, column, pair],
-                (at[pair] + row).astype(np.int32),
-                (to[pair] + column).astype(np.int32),
-            )
-        )
-        size[row, column, pair] = 0.0
-        for start, sums in ((at, size.sum(axis=1)), (to, size.sum(axis=0))):
-            np.add.at(missing, start + np.arange(len(sums))[:, None], sums)
-        stored += len(row)
-        # Lists, one half, its transpose, and the whole: 16, 12, 12 and 24 bytes.
-        if memory is not None and 64 * stored + WORKING > memory:
-            raise TooLarge("A sparse matrix (so far)", 64 * stored + WORKING, memory)
-    shape = (frame.size, frame.size)
-    if not held:
-        return Sparse(sparse.csr_array(shape), 0.0)
-    values, rows, columns = (np.concatenate(part) for part in zip(*held, strict=True))
-    half = sparse.coo_array((values, (rows, columns)), shape=shape).tocsr()
-    return Sparse(half + half.T.tocsr(), float(missing.max()))

@@ -17,8 +17,9 @@ from typing import Literal, NamedTuple
 
 import numpy as np
 
+from overlapse.rules.physics.inertia import Matrix, pivoted
 from overlapse.rules.physics.placed import Functions, Ints, Placed
-from overlapse.rules.physics.spectrum import Matrix, largest, pivoted, smallest
+from overlapse.rules.physics.spectrum import largest, smallest
 
 SHARE = 0.1  # of the tolerance: what the smallest eigenvalue of the kept functions is held to
 

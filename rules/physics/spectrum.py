@@ -2,17 +2,9 @@
 
 Small matrices: all eigenvalues.  Large ones: the largest by Lanczos, the smallest by Lanczos on the
 inverse, applied through one Cholesky factor; functions below each step of the ladder are counted by
-inertia, and only where the smallest eigenvalue says that there are any.
+inertia (`inertia`), and only where the smallest eigenvalue says that there are any.
 
-Formula (inertia): with S split into a well-conditioned part K, chosen by pivoted Cholesky, and the
-rest R, the number of eigenvalues of S below t is that of the negative eigenvalues of
-
-    S_RR - t - S_RK (S_KK - t)**-1 S_KR,
-
-provided that S_KK - t has a Cholesky factor, so no negative eigenvalue: the law of inertia
-(J. J. Sylvester 1852), additive over a split (E. V. Haynsworth, Linear Algebra Appl. 1, 73, 1968).
-
-Formula (bound): the smallest eigenvalue of any principal submatrix is an upper bound of that of the
+Formula: the smallest eigenvalue of any principal submatrix is an upper bound of that of the
 matrix (interlacing; R. A. Horn, C. R. Johnson, Matrix Analysis, chapter 4).  The submatrix of the
 diffuse functions comes close to it and is small.
 
@@ -20,20 +12,18 @@ All functions take real symmetric and complex Hermitian matrices, shape (n, n).
 """
 
 from collections.abc import Callable, Sequence
-from typing import Any, NamedTuple
+from typing import NamedTuple
 
 import numpy as np
-import numpy.typing as npt
 from scipy.linalg import eigh, eigvalsh, get_lapack_funcs
 from scipy.sparse.linalg import ArpackError, LinearOperator, eigsh
 
 from overlapse.grammar.model import Floats
+from overlapse.rules.physics.inertia import Matrix, Part, counts_below, factored, shifted
 
 LADDER = (1e-4, 1e-5, 1e-6, 1e-7, 1e-8)
 SMALL = 700  # up to this size all eigenvalues are the cheapest way
 DIFFUSE = (0.3, 0.6)  # bohr**-2: functions below are tried first
-
-Matrix = npt.NDArray[Any]
 
 
 class Spectrum(NamedTuple):
@@ -106,18 +96,8 @@ def exceeds(matrix: Matrix, limit: float, exponents: Floats | None = None) -> Ve
     return Verdict(_definite(matrix, limit, order), "one Cholesky factor, diffuse functions first")
 
 
-def _definite(matrix: Matrix, limit: float, chosen: npt.NDArray[np.intp] | None) -> bool:
-    part = matrix.copy() if chosen is None else matrix[np.ix_(chosen, chosen)]
-    part.flat[:: len(part) + 1] -= limit
-    return _factor(part) is not None
-
-
-def _factor(work: Matrix) -> Matrix | None:
-    """Lower Cholesky factor, column-major, made in place of ``work``; None where there is none."""
-    (potrf,) = get_lapack_funcs(("potrf",), (work,))
-    # The transpose of a row-major matrix is column-major, and here its conjugate.
-    factor, info = potrf(work.T, lower=False, clean=False, overwrite_a=True)
-    return factor if info == 0 else None
+def _definite(matrix: Matrix, limit: float, chosen: Part | None) -> bool:
+    return factored(shifted(matrix, limit, chosen)) is not None
 
 
 def largest(matrix: Matrix) -> float:
@@ -149,9 +129,7 @@ def smallest(matrix: Matrix) -> float:
 def _inverse_lanczos(matrix: Matrix, count: int) -> tuple[Floats, Matrix] | None:
     n, shift = len(matrix), 0.0
     for shift in (0.0, 1e-11, 1e-8, 1e-4):
-        work = matrix.copy()
-        work.flat[:: n + 1] += shift
-        factor = _factor(work)
+        factor = factored(shifted(matrix, -shift))
         if factor is not None:
             break
     else:
@@ -182,60 +160,6 @@ def _solver(factor: Matrix) -> Callable[[Matrix], Matrix]:
 def _start(matrix: Matrix) -> Matrix:
     """A start without any symmetry that an eigenvector could be orthogonal to; always the same."""
     return np.random.default_rng(len(matrix)).normal(size=len(matrix)).astype(matrix.dtype)
-
-
-def counts_below(matrix: Matrix, steps: Sequence[float]) -> dict[float, int] | None:
-    """Number of eigenvalues below each of the steps, by inertia; None where that fails.
-
-    It fails only where no well-conditioned part of useful size exceeds a step.
-    """
-    if not len(steps):
-        return {}
-    order, pivots = pivoted(matrix)
-    counts: dict[float, int] = {}
-    for step in steps:
-        # Eigenvalues of what is kept are smaller than its pivots, mostly ten times, seldom more.
-        for margin in (30.0, 300.0):
-            rank = int(np.searchsorted(-pivots, -margin * step))
-            found = _negative(matrix, step, order[:rank], order[rank:])
-            if found is not None:
-                counts[step] = found
-                break
-        else:
-            return None
-    return counts
-
-
-def _negative(
-    matrix: Matrix, step: float, kept: npt.NDArray[np.intp], rest: npt.NDArray[np.intp]
-) -> int | None:
-    remainder = matrix[np.ix_(rest, rest)]
-    remainder.flat[:: len(rest) + 1] -= step
-    if len(kept):
-        work = matrix[np.ix_(kept, kept)]
-        work.flat[:: len(kept) + 1] -= step
-        factor = _factor(work)
-        if factor is None:
-            return None
-        (trtrs,) = get_lapack_funcs(("trtrs",), (factor,))
-        # The factor is conj(U): U**H U = S, and the columns wanted are U**-H S_KR.
-        across = np.asfortranarray(matrix[np.ix_(kept, rest)].conj())
-        across = trtrs(factor, across, lower=False, trans=2, overwrite_b=True)[0]
-        remainder -= across.T @ across.conj()
-    return int((eigvalsh(remainder, overwrite_a=True) < 0.0).sum()) if len(rest) else 0
-
-
-def pivoted(matrix: Matrix) -> tuple[npt.NDArray[np.intp], Floats]:
-    """Pivoted Cholesky: the order of the functions and their pivots, falling, shape (rank,).
-
-    A pivot is the squared norm of what a function adds to those before it.  The rank ends where
-    nothing is left above rounding; functions after it follow in no special order.
-    """
-    (pstrf,) = get_lapack_funcs(("pstrf",), (matrix,))
-    tolerance = 4.0 * len(matrix) * np.finfo(float).eps
-    factor, piv, rank, _ = pstrf(matrix.copy().T, tol=tolerance, lower=False, overwrite_a=True)
-    pivots = np.abs(np.diagonal(factor)[:rank]) ** 2
-    return np.asarray(piv, dtype=np.intp) - 1, np.asarray(pivots, dtype=float)
 
 
 def lowest(matrix: Matrix, below: float) -> tuple[Floats, Matrix]:

@@ -13,7 +13,8 @@ from pyscf import gto  # noqa: E402
 from pyscf.pbc import gto as periodic  # noqa: E402
 
 from overlapse.grammar.reading import read  # noqa: E402
-from overlapse.rules.physics.integrals import kinetic, overlap, sparse_overlap  # noqa: E402
+from overlapse.rules.physics.blocks import sparse_overlap  # noqa: E402
+from overlapse.rules.physics.integrals import kinetic, overlap  # noqa: E402
 from overlapse.rules.physics.lattice import lattice_overlap, monkhorst_pack  # noqa: E402
 from overlapse.rules.physics.placed import Placed  # noqa: E402
 

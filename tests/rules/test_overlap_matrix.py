@@ -7,12 +7,12 @@ import numpy as np
 import pytest
 
 from overlapse.grammar.model import Block, Shell
+from overlapse.rules.physics.blocks import sparse_overlap
 from overlapse.rules.physics.integrals import (
     TooLarge,
     kinetic,
     memory_needed,
     overlap,
-    sparse_overlap,
 )
 from overlapse.rules.physics.lattice import (
     lattice_of,
