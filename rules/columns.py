@@ -17,6 +17,7 @@ from overlapse.rules.norms import half_unit
 _LEAST = 4  # primitives of a column that is compared
 _ALIKE = 0.03  # median departure of a column that is an orbital
 _CLOSE = 3e-3  # median departure of a column that was printed as the orbital
+_GROSS = 0.3  # departure that counts without neighbours: sets add functions to the atom's own
 _FINEST = 3e-4
 
 
@@ -53,6 +54,8 @@ def columns_of(atom: Atom) -> list[Column]:
                 int(np.flatnonzero(atom.exponents[l] == shell.exponents[row])[0]) for row in rows
             ]
             own = atom.functions[l][places, function]
+            if np.count_nonzero(atom.functions[l][places], axis=1).mean() < 1.5:
+                continue  # a segmented contraction: its primitives are its own
             scale = float(shell.coefficients[rows[0], column] / own[0])
             best = _best(own, orbitals[places])
             if best is None:
@@ -119,9 +122,13 @@ def strays(column: Column, others: Sequence[Column]) -> list[Stray]:
     times = np.abs(column.departure - centre) / scatter
     worst = int(np.argmax(times))
     rest = np.delete(times, worst)
-    close = _CLOSE if len(others) >= 3 else 0.1 * _CLOSE
+    alone = len(others) < 3
+    close = 0.1 * _CLOSE if alone else _CLOSE
     sure = float(np.median(np.abs(column.departure))) < close and spread[worst] < 4.0 * _CLOSE
+    sure = sure and not (alone and np.delete(np.abs(column.departure), worst).max() > _CLOSE)
     if rest.max() > 0.25 * times[worst] or not sure:
+        return []
+    if alone and abs(column.departure[worst]) < _GROSS:
         return []
     size = column.departure[worst] - centre[worst]
     usual = max(abs(float(column.orbital[worst])), 1e-3 * float(np.abs(column.own).max()))

@@ -12,9 +12,10 @@ from overlapse.rules.columns import Stray
 from overlapse.rules.energies import Ensemble
 from overlapse.rules.explained import Verdict, by_row
 from overlapse.rules.finding import Finding
-from overlapse.rules.meant import Slip, likely
+from overlapse.rules.meant import TELLING, Slip, likely
 from overlapse.rules.physics.onecentre import self_overlap
 
+_SMALL = 5e-3  # relative changes below it are notes without a second witness
 _REMEDY = "compare with the original publication"
 
 
@@ -33,8 +34,11 @@ def number_finding(case: Case, ensemble: Ensemble, verdict: Verdict, clear: floa
     witnesses += others
     if slip is not None:
         witnesses.append(f"slip: {slip.told} in {slip.word} gives {word}")
-    is_sure = verdict.others >= 3 and verdict.significance >= clear
-    is_sure = is_sure or bool(others) or (slip is not None and slip.told != "one digit mistyped")
+    is_far = abs(verdict.change) >= _SMALL
+    is_sure = is_far and verdict.others >= 3 and verdict.significance >= clear
+    # A second witness may agree by chance where the first is weak.
+    agreed = bool(others) or (slip is not None and slip.told in TELLING)
+    is_sure = is_sure or (agreed and verdict.significance >= 0.5 * clear)
     what = "exponent" if number.column is None else "coefficient"
     return _at(
         case,
@@ -59,7 +63,8 @@ def column_finding(case: Case, ensemble: Ensemble, stray: Stray, clear: float) -
     witnesses += others
     if slip is not None:
         witnesses.append(f"slip: {slip.told} in {slip.word} gives {word}")
-    is_sure = bool(others) or stray.times >= clear
+    agreed = bool(others) or (slip is not None and slip.told in TELLING)
+    is_sure = stray.others >= 3 and (agreed or stray.times >= clear)
     return _at(
         case,
         stray.atom.block,

@@ -74,6 +74,8 @@ def _moved(mantissa: str, factor: float) -> str:
 
 # Slips in the order in which they are believed; the later kinds fit nearly anything.
 _CLEAR = ("the sign", "the decimal point", "the sign of the power of ten", "two digits exchanged")
+# Those that are evidence where they fit.
+TELLING = (*_CLEAR, "a digit doubled")
 
 
 def likely(word: str, value: float, error: float) -> Slip | None:
