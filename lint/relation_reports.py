@@ -21,12 +21,24 @@ _THING = {"row": "primitive", "function": "function"}
 
 def write_text(found: Sequence[FileRelation], out: TextIO, level: str) -> None:
     """Each pair of files with its elements by verdict; then one line that sums up."""
+    several = len(found) > 1
     for pair in found:
-        out.write("\n".join(_pair_lines(pair, level)) + "\n\n")
-    out.write(_summary(found, level) + "\n")
+        lines = _brief(pair, level) if several and pair.is_equal(level) else None
+        out.write("\n".join(lines or [*_pair_lines(pair), ""]) + "\n")
+    if several:
+        out.write("\n")
+    out.write(_summary(found) + "\n")
 
 
-def _pair_lines(pair: FileRelation, level: str) -> Iterator[str]:
+def _brief(pair: FileRelation, level: str) -> list[str]:
+    """A pair of files that are equal, among others, in few words."""
+    assert pair.left is not None and pair.right is not None
+    weakest = max((relation.verdict for relation in pair.elements), key=LEVELS[level].index)
+    names = f"{one_line(pair.left.path)} and {one_line(pair.right.path)}"
+    return _wrapped("", f"{names}: {weakest}, {ranges(pair.left.elements)}")
+
+
+def _pair_lines(pair: FileRelation) -> Iterator[str]:
     left, right = pair.left, pair.right
     if left is None or right is None:
         document, where = (left, "first") if left is not None else (right, "second")
@@ -39,7 +51,7 @@ def _pair_lines(pair: FileRelation, level: str) -> Iterator[str]:
         if len(pair.sets) > 1:
             names = [one_line(name) or "(none)" for name in (members.left, members.right)]
             yield f"  set {names[0]} and set {names[1]}"
-        yield from _set_lines(members, left, right, level)
+        yield from _set_lines(members, left, right)
 
 
 def _told(document: Compared) -> str:
@@ -48,7 +60,7 @@ def _told(document: Compared) -> str:
     return f"{one_line(document.path)}  (layout {document.layout or 'unknown'}{faults})"
 
 
-def _set_lines(members: SetRelation, left: Compared, right: Compared, level: str) -> Iterator[str]:
+def _set_lines(members: SetRelation, left: Compared, right: Compared) -> Iterator[str]:
     by_verdict: dict[str, list[Relation]] = {}
     for relation in members.elements:
         by_verdict.setdefault(relation.verdict, []).append(relation)
@@ -102,7 +114,7 @@ def _wrapped(head: str, text: str) -> list[str]:
     )  # fmt: skip
 
 
-def _summary(found: Sequence[FileRelation], level: str) -> str:
+def _summary(found: Sequence[FileRelation]) -> str:
     counts: dict[str, int] = {}
     for pair in found:
         for relation in pair.elements:

@@ -172,10 +172,11 @@ def _aligned(one: Member, other: Member) -> tuple[list[tuple[int, int]], list[in
     waiting = list(free)
     if len(rest) == len(waiting):
         return sorted([*rows, *zip(rest, waiting, strict=True)]), [], []
-    logs = np.log(np.abs(one.function.exponents)), np.log(np.abs(other.function.exponents))
+    with np.errstate(all="ignore"):
+        gaps = np.abs(np.log(np.abs(np.array(a)[:, None] / np.array(b)[None, :])))
+    gaps = np.nan_to_num(gaps, nan=np.inf)
     while rest and waiting:
-        gaps = np.abs(logs[0][rest][:, None] - logs[1][waiting][None, :])
-        i, j = divmod(int(np.argmin(gaps)), len(waiting))
+        i, j = divmod(int(np.argmin(gaps[np.ix_(rest, waiting)])), len(waiting))
         rows.append((rest.pop(i), waiting.pop(j)))
     return sorted(rows), rest, waiting
 
@@ -241,7 +242,7 @@ def _by_span(
         covers = lies_within(right, theirs, left, all_mine)
         functions = [[m.function for m in members] for members in (all_mine, all_theirs)]
         angles = principal_angles(*functions)
-    angle = float(angles.max()) if np.isfinite(angles).all() else None
+    angle = float(angles.max()) if len(angles) and np.isfinite(angles).all() else None
     if inside and covers:
         return Part("span", (), (_how(left, mine, right, theirs, letter, angle),), angle)
     counts = f"{letter} functions: {len(all_mine)} and {len(all_theirs)}"

@@ -18,6 +18,8 @@ if TYPE_CHECKING:
     from overlapse.rules.relation import Relation
     from overlapse.rules.sides import Difference
 
+_SHOWN = 16  # digits of a digest in a finding
+
 
 @rule("drift.seal")
 def seal(case: Case) -> Iterator[Finding]:
@@ -79,7 +81,7 @@ def _against_seal(case: Case, sealed: "SealedSet") -> Iterator[Finding]:
                 "warning",
                 f"{symbol_of(key[0])} was sealed here as {before.holds} and is gone",
                 element=symbol_of(key[0]),
-                limit=before.digest,
+                limit=before.digest[:_SHOWN],
                 remedy="restore the element, or seal anew: overlapse seal PATH --write",
             )
         elif (after := seal_of(block)).digest != before.digest:
@@ -92,14 +94,15 @@ def _broken(case: Case, block: Block, before: "Seal", after: "Seal") -> Finding:
     told = [
         "core potential" if name == "potential" else f"{name} functions" for name in changed
     ] or ["whole"]
-    holds = before.holds if before.holds == after.holds else f"{before.holds}, now {after.holds}"
+    holds = "" if before.holds == after.holds else f", and now {after.holds}"
     return case.at_line(
         block.line,
         "warning",
-        f"{block.symbol} is not what was sealed ({holds}): its {' and '.join(told)} changed",
+        f"{block.symbol} is not what was sealed: its {' and '.join(told)} changed; it was sealed "
+        f"as {before.holds}{holds}",
         element=block.symbol,
-        measured=after.digest,
-        limit=before.digest,
+        measured=after.digest[:_SHOWN],
+        limit=before.digest[:_SHOWN],
         remedy="compare with the version that was sealed (overlapse relate) and restore the "
         "number; where the change is meant, seal anew: overlapse seal PATH --write",
     )

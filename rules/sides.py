@@ -109,14 +109,15 @@ class Side:
         is off by x sqrt(l + 3/2) / 2, from the second derivative of the overlap of two primitives.
         """
         function = member.function
-        total = 0.0
-        for at in range(len(function.exponents)):
-            exponent, coefficient = self.exponent(member, at), self.coefficient(member, at)
-            slide = 0.5 * exponent.step / abs(exponent.value or 1.0)
-            total += (0.5 * coefficient.step) ** 2
-            total += (coefficient.value * slide) ** 2 * (function.l + 1.5) / 4
-        norm = self_overlap(function.exponents, function.coefficients, function.l)
-        return float(np.sqrt(total / norm)) if norm > 0 else float("nan")
+        numbers = range(len(function.exponents))
+        exponents = [self.exponent(member, at) for at in numbers]
+        with np.errstate(all="ignore"):
+            steps = np.array([self.coefficient(member, at).step for at in numbers])
+            slides = np.array([e.step for e in exponents]) / np.abs(function.exponents)
+            moved = function.coefficients * slides * (function.l + 1.5) ** 0.5 / 2
+            total = 0.25 * float(steps @ steps + moved @ moved)
+            norm = self_overlap(function.exponents, function.coefficients, function.l)
+            return float(np.sqrt(total / norm)) if norm > 0 else float("nan")
 
     def term_spot(self, channel: Channel, value: float, name: str) -> Spot:
         """Where a number of a potential's channel stands: the first of its value from there on."""

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, TextIO
 
 import click
 
-from overlapse.lint.common import CLEAN, FOUND, UNREADABLE, output
+from overlapse.lint.common import CLEAN, FOUND, UNREADABLE, Unreadable, output
 
 if TYPE_CHECKING:
     from overlapse.grammar.model import Document
@@ -49,6 +49,8 @@ def seal(
     work = _Work(seals)
     for path in paths:
         work.take(path)
+    if not (work.checked or work.refused or work.unread):
+        raise Unreadable("no file with an element was found there, nor was one sealed")
     if write:
         _write(seals, work)
     with output(out) as stream:
@@ -149,13 +151,17 @@ def _write_text(out: TextIO, seals: "SealFile", work: _Work, write: bool) -> Non
     for each in work.checked:
         counts[each.state] += 1
     if write:
-        total = len(work.checked) - counts["gone"]
-        files = sum(bool(entries) for entries in work.now.values())
+        total = _count(len(work.checked) - counts["gone"], "element")
+        files = _count(sum(bool(entries) for entries in work.now.values()), "file")
         new = f"{counts['not sealed']} new, {counts['changed']} changed, {counts['gone']} gone"
-        out.write(f"{one_line(str(seals.path))} holds {total} elements of {files} files: {new}\n")
+        out.write(f"sealed {total} of {files} in {one_line(str(seals.path))}: {new}\n")
     else:
         parts = [f"{count} {state}" for state, count in counts.items() if count]
         out.write((", ".join(parts) or "nothing to check") + f" in {one_line(str(seals.path))}\n")
+
+
+def _count(count: int, noun: str) -> str:
+    return f"{count} {noun}{'s' * (count != 1)}"
 
 
 def _told(each: "Checked") -> str:
@@ -166,10 +172,11 @@ def _told(each: "Checked") -> str:
     parts = [
         "core potential" if name == "potential" else f"{name} functions" for name in each.changed
     ]
-    holds = each.before.holds
-    if each.now.holds != holds:
-        holds += f", now {each.now.holds}"
-    return f"is not what was sealed ({holds}): its {' and '.join(parts)} changed"
+    now = "" if each.now.holds == each.before.holds else f", and now {each.now.holds}"
+    return (
+        f"is not what was sealed: its {' and '.join(parts)} changed; it was sealed as "
+        f"{each.before.holds}{now}"
+    )
 
 
 def _write_json(out: TextIO, seals: "SealFile", work: _Work, write: bool) -> None:

@@ -80,7 +80,8 @@ def projection(functions: Sequence[Function], others: Sequence[Function]) -> Pro
 def normalised_overlaps(left: Sequence[Function], right: Sequence[Function]) -> Floats:
     """Overlap of each normalised function with each of the other list; NaN where there is none."""
     first, second = _embedded([left, right])
-    overlaps: Floats = first.T @ second
+    with np.errstate(all="ignore"):
+        overlaps: Floats = first.T @ second
     return overlaps
 
 
@@ -109,22 +110,24 @@ def noise(functions: Sequence[Function]) -> float:
     """
     largest = 1.0
     for function in functions:
+        exponents, table = _table([function])
         with np.errstate(all="ignore"):
-            overlap = primitive_overlap(function.exponents, function.exponents, function.l)
-            norm = function.coefficients @ overlap @ function.coefficients
-            size = np.linalg.norm(function.coefficients) / np.sqrt(norm)
+            overlap = primitive_overlap(exponents, exponents, function.l)
+            size = np.linalg.norm(table) / np.sqrt(np.sum(table * (overlap @ table)))
         largest = max(largest, float(size)) if np.isfinite(size) else largest
     return 2e-8 * largest
 
 
 def _table(functions: Sequence[Function]) -> tuple[Floats, Floats]:
-    """Distinct exponents of all functions, and the coefficients over them, (nprim, nfunctions)."""
+    """Distinct exponents of all functions, and the coefficients over them, (nprim, nfunctions).
+
+    Each function is scaled to a largest coefficient of one, so that no square can overflow.
+    """
     exponents = np.unique(np.concatenate([function.exponents for function in functions]))
     table = np.zeros((len(exponents), len(functions)))
     for column, function in enumerate(functions):
-        np.add.at(
-            table[:, column], np.searchsorted(exponents, function.exponents), function.coefficients
-        )
+        scaled = function.coefficients / (np.abs(function.coefficients).max() or 1.0)
+        np.add.at(table[:, column], np.searchsorted(exponents, function.exponents), scaled)
     return exponents, table
 
 

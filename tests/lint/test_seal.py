@@ -37,7 +37,8 @@ def library(tmp_path: Path) -> Path:
     (tmp_path / "notes.txt").write_text("nothing of the kind\n")
     status, out = run(tmp_path, "--write")
     assert status == 0
-    assert "holds 4 elements of 2 files: 4 new, 0 changed, 0 gone" in out
+    assert "sealed 4 elements of 2 files in " in out
+    assert "4 new, 0 changed, 0 gone" in out
     return tmp_path
 
 
@@ -78,8 +79,8 @@ def test_a_changed_digit_breaks_it_and_says_where(library: Path) -> None:
     own.write_text(SET.replace("0.7 0.45", "0.7 0.46"))
     status, out = run(library / "sets")
     assert status == 1
-    assert "sets/own.basis: C is not what was sealed ((4s,2p) -> [2s,1p])" in out
-    assert "its p functions changed" in out
+    assert "sets/own.basis: C is not what was sealed: its p functions changed" in out
+    assert "it was sealed as (4s,2p) -> [2s,1p]" in out
     assert "1 changed" in out and "3 as sealed" in out
     (finding,) = drifted(own)
     assert (finding.rule, finding.severity, finding.element) == ("drift.seal", "warning", "C")
@@ -151,6 +152,9 @@ def test_wrong_use(tmp_path: Path) -> None:
     path.write_text(SET)
     assert run(path)[0] == 2
     assert run(tmp_path / "none", "--write")[0] == 3
+    (tmp_path / "prose").mkdir()
+    (tmp_path / "prose" / "notes.txt").write_text("nothing of the kind\n")
+    assert run(tmp_path / "prose", "--write")[0] == 3
     broken = tmp_path / "overlapse.seal.json"
     for text in ("{", "[]", '{"version": 99}', '{"version": 1, "files": {"a": [3]}}'):
         broken.write_text(text)

@@ -322,3 +322,21 @@ def test_elements_missing_on_either_side_are_told() -> None:
         ("C", "only in first"),
         ("N", "only in second"),
     ]
+
+
+ODD = "1.0 0.0 -1.0 1e300 1e-300 -3e155 4.0000001 4.0 4 0.40E1 7.7e7 1e-8 0.123456789012345".split()
+odd_rows = st.lists(
+    st.tuples(st.sampled_from(ODD), st.sampled_from(ODD)), min_size=1, max_size=3
+)  # fmt: skip
+odd_shells = st.lists(st.tuples(st.sampled_from("SPD"), odd_rows), min_size=1, max_size=3)
+
+
+@settings(max_examples=150, deadline=None)
+@given(odd_shells, odd_shells)
+def test_odd_numbers_get_a_verdict_that_does_not_depend_on_the_side(
+    one: list[tuple[str, list[tuple[str, str]]]], other: list[tuple[str, list[tuple[str, str]]]]
+) -> None:
+    there, back = only(stars(*one), stars(*other)), only(stars(*other), stars(*one))
+    turned = {"contained in": "contains", "contains": "contained in"}
+    assert back.verdict == turned.get(there.verdict, there.verdict)
+    assert only(stars(*one), stars(*one)).verdict == "equal text"
