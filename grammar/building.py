@@ -22,6 +22,7 @@ from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.making import Making
 from overlapse.grammar.model import Channel, Grid, letter_of
 from overlapse.grammar.numbers import FORTRAN, has_only_characters, read_number
+from overlapse.grammar.repairing import first_word_span
 from overlapse.grammar.source import Source
 
 _ONE = ("1.00", "1.0", "1.000000")  # usual spellings of a scale factor that changes nothing
@@ -233,6 +234,7 @@ class Build(Making):
             measured=run.rows[0][0],
             expected=run.rows[0][1],
             remedy="take the first column out; it was passed over here",
+            edits=tuple((first_word_span(self.source, index), "") for index in run.lines),
         )
 
     def _keep_indexed(

@@ -67,7 +67,8 @@ def _foreign(source: Source, comment: str) -> Iterator[Fault]:
         outside = True
         blank = _BLANKS.search(read)
         if blank is not None and any(c.isdigit() for c in read):
-            start = source.starts[index] + blank.start()
+            offset = source.starts[index]
+            start = offset + blank.start()
             yield Fault(
                 "form.number",
                 f"U+{ord(blank[0]):04X} stands between numbers; it looks like a blank, but many "
@@ -76,6 +77,10 @@ def _foreign(source: Source, comment: str) -> Iterator[Fault]:
                 measured=f"U+{ord(blank[0]):04X}",
                 expected="a blank",
                 remedy="put a plain blank in its place",
+                edits=tuple(
+                    ((offset + found.start(), offset + found.end()), " ")
+                    for found in _BLANKS.finditer(read)
+                ),
             )
     if source.encoding == "latin-1":
         first = next(at for at, c in enumerate(source.text) if not c.isascii())

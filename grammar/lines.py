@@ -300,4 +300,5 @@ class Lines:
             measured=shorten(word),
             expected=value,
             remedy=f"write {spelling}" if spelling else "restore the number from the source",
+            edits=((span, spelling),) if spelling else (),
         )

@@ -15,9 +15,11 @@ from overlapse.grammar.model import (
     Document,
     Floats,
     Shell,
+    Span,
     read_only,
 )
 from overlapse.grammar.numbers import FORTRAN, has_only_characters
+from overlapse.grammar.repairing import block_span
 
 MOST = 2_000  # primitives of a shell, or functions of an element; published sets stay below 500
 
@@ -245,5 +247,9 @@ class Making(Checks):
             element=block.symbol,
             measured=2,
             expected=1,
+            edits=((self._span_of(block), ""),) if equal else (),
             remedy="keep one of the two: a reader may add them up, or take either",
         )
+
+    def _span_of(self, block: Block) -> Span:
+        return block_span(self.source, self.bodies, block.line, block.end)

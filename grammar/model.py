@@ -105,6 +105,23 @@ class Cells:
         # A number that the layout leaves unwritten (a lone 1.0) has the place of its exponent.
         return spans[min(max(grid.e0 + row * grid.es, 0), len(spans) - 1)] if spans else (0, 0)
 
+    def at(self, line: int, column: int, shape: tuple[int, int]) -> tuple[int, int | None] | None:
+        """Row and coefficient column (None: the exponent) of the number at a place, if any.
+
+        line, column: counted from 1; ``shape`` is (nprim, ncontr).
+        """
+        if not self.first < line <= self.last:
+            return None
+        grid, offset = self.grid, self.source.starts[line - 1] + column - 1
+        found = [k for k, (start, end) in enumerate(self._spans()) if start <= offset < end]
+        for row in range(shape[0]):
+            if grid.e0 + row * grid.es in found:
+                return row, None
+            for j in range(shape[1]):
+                if grid.c0 + row * grid.ci + j * grid.cj in found:
+                    return row, j
+        return None
+
     def spelling(self, row: int, column: int | None = None) -> str:
         """The number as it was typed."""
         start, end = self.span(row, column)
@@ -401,7 +418,10 @@ class Remark(NamedTuple):
 
 @dataclass(frozen=True, slots=True)
 class Fault:
-    """Something about the form of the text that the reader had to say; becomes a finding."""
+    """Something about the form of the text that the reader had to say; becomes a finding.
+
+    edits: spans of the text and what to put there, which would mend it.
+    """
 
     rule: str
     message: str
@@ -413,6 +433,7 @@ class Fault:
     limit: float | str | None = None
     expected: float | str | None = None
     remedy: str = ""
+    edits: tuple[tuple[Span, str], ...] = ()
 
 
 @dataclass(frozen=True, eq=False)

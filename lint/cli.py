@@ -11,7 +11,17 @@ from overlapse.lint.common import BROKEN, CLEAN, MISUSED
 @click.command(cls=Commands, context_settings={"help_option_names": ["-h", "--help"]})
 @click.version_option(package_name="overlapse", prog_name="overlapse")
 def cli() -> None:
-    """Judge Gaussian basis-set files before cluster time is spent on them."""
+    """Judge Gaussian basis-set files before cluster time is spent on them.
+
+    \b
+    Examples:
+      overlapse demo                       the whole job on built-in files
+      overlapse audit sets/                judge a folder
+      overlapse rules contraction.norm     what a rule looks for, and why
+
+    `overlapse COMMAND --help` tells more, with examples; `overlapse completion --help` how to have
+    command lines completed. Colours are left out where NO_COLOR is set.
+    """
 
 
 def main() -> None:
@@ -19,7 +29,7 @@ def main() -> None:
     from overlapse.lint.settings import SettingsError
 
     try:
-        cli()
+        cli(prog_name="overlapse")
     except SettingsError as problem:
         click.echo(f"error: {problem}", err=True)
         sys.exit(MISUSED)

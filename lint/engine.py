@@ -1,21 +1,26 @@
 """The audit: from paths to findings.  Nothing here prints."""
 
 import os
-from collections.abc import Callable, Container, Iterable, Iterator, Sequence
+from collections.abc import Callable, Container, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from pathlib import Path
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
+from overlapse.grammar import plugins
 from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read_bytes, read_source
 from overlapse.grammar.source import Source
+from overlapse.lint.fingerprint import marked
+from overlapse.lint.neighbours import Beside, furnish
 from overlapse.lint.settings import Settings, settings_for
+from overlapse.rules.acceptance import acceptances_of
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
 from overlapse.rules.probe import Probe
-from overlapse.rules.registry import rules
+from overlapse.rules.registry import Rule, rules
 
 LEVELS = ("note", "warning", "error")  # rising
+EXCERPT = 160  # characters of a line that are kept for a report
 # Text that may quote basis sets without being one; folders are searched without them.
 _NOT_SEARCHED = frozenset(
     ".py .pyi .ipynb .md .rst .html .htm .css .js .ts .c .cc .cpp .h .hpp .f .f90 .rs .go .java "
@@ -23,13 +28,50 @@ _NOT_SEARCHED = frozenset(
 )
 
 
+class Excerpt(NamedTuple):
+    """A stretch of a line of text; ``start`` is the 0-based place of its first character."""
+
+    text: str
+    start: int
+
+
+@dataclass(frozen=True)
+class Options:
+    """What the caller asks for, over what files and settings say.
+
+    label: what the sets are called.  layout: read as this layout instead of finding it by content.
+    settings: used for all files instead of those found above them.  beside: the files of the audit,
+    in whose light each is judged.  energies: whether the atoms are computed.
+    """
+
+    label: str | None = None
+    layout: str | None = None
+    settings: Settings | None = None
+    beside: Beside | None = field(default=None, repr=False)
+    energies: bool = False
+
+
+class Accepted(NamedTuple):
+    """A finding that was looked at and accepted: why, and where that is said."""
+
+    finding: Finding
+    reason: str
+    where: str
+
+
 @dataclass(frozen=True)
 class FileAudit:
     """What was found in one file.
 
-    document: None for a file that could not be opened; problem says why.  label: the claimed label
-    that weighs most, with where it was found.  passed_over: no layout was recognised and that was
-    allowed.  probes: what was measured of it in geometries.
+    document: None for a file that could not be opened (problem says why), and where it was judged
+    in another process or at another time; layout, elements, blocks and excerpts are there all the
+    same.  label: the claimed label that weighs most, with where it was found.  passed_over: no
+    layout was recognised and that was allowed.  layout: "" for none.  elements, blocks: counts.
+    excerpts: what stands around each place that a finding points at, by line and column.
+    accepted: findings that do not count, because the file or the settings say why.  known:
+    findings that do not count, because a ledger holds them; gone: its entries that were found no
+    more.  absent: the file is only in the ledger.  probes: what was measured
+    of it in geometries.
     """
 
     path: str
@@ -40,6 +82,14 @@ class FileAudit:
     problem: str = ""
     passed_over: bool = False
     settings: Settings = field(default_factory=Settings)
+    layout: str = ""
+    elements: int = 0
+    blocks: int = 0
+    excerpts: Mapping[tuple[int, int], Excerpt] = field(default_factory=dict)
+    accepted: tuple[Accepted, ...] = ()
+    known: tuple[Finding, ...] = ()
+    gone: tuple[Mapping[str, Any], ...] = ()
+    absent: bool = False
     probes: tuple[Probe, ...] = ()
 
     @property
@@ -57,17 +107,20 @@ class Target(NamedTuple):
 
 
 def audit(*paths: str | os.PathLike[str], label: str | None = None, layout: str | None = None,
-          settings: Settings | None = None) -> list[Finding]:  # fmt: skip
+          settings: Settings | None = None, energies: bool = False) -> list[Finding]:  # fmt: skip
     """Judge files and folders; return all findings, in the order of the paths and of the text.
 
     label: what the sets are called, over what the files say.  layout: read as this layout instead
     of finding it by content.  settings: used for all files instead of those found above them.
+    energies: also compute the atoms, which takes seconds for a file of many elements.
     Raises OSError for a path that cannot be opened, ValueError for an unknown layout, SettingsError
     for settings that cannot be used.
     """
     findings: list[Finding] = []
-    for target in targets(map(Path, paths)):
-        result = audit_file(target, label=label, layout=layout, settings=settings)
+    found = list(targets(map(Path, paths)))
+    options = Options(label, layout, settings, Beside([t.path for t in found]), energies)
+    for target in found:
+        result = audited(target, options)
         if result.problem:
             raise OSError(result.problem)
         findings += result.findings
@@ -94,8 +147,14 @@ def targets(
         for folder, names, files in os.walk(path, onerror=stop):
             names[:] = sorted(name for name in names if not name.startswith("."))
             for name in sorted(files):
-                if not name.startswith(".") and Path(name).suffix.lower() not in _NOT_SEARCHED:
+                if is_searched(Path(name)):
                     yield Target(Path(folder, name), True)
+
+
+def is_searched(inside: Path) -> bool:
+    """Whether a search of a folder looks at a file; ``inside`` is its path from that folder."""
+    hidden = any(part.startswith(".") for part in inside.parts)
+    return not hidden and inside.suffix.lower() not in _NOT_SEARCHED
 
 
 def audit_file(
@@ -104,18 +163,42 @@ def audit_file(
     label: str | None = None,
     layout: str | None = None,
     settings: Settings | None = None,
+    energies: bool = False,
 ) -> FileAudit:
     """Judge one file.  A file that cannot be opened comes back with its problem."""
+    return audited(target, Options(label, layout, settings, energies=energies))
+
+
+def audited(target: Target, options: Options) -> FileAudit:
+    """As `audit_file`, with everything that may be asked for."""
     name = os.fspath(target.path)
     try:
         data = target.path.read_bytes()
     except OSError as problem:
-        return FileAudit(name, problem=f"{name}: {problem.strerror or problem}")
-    effective = settings if settings is not None else settings_for(target.path)
-    document = read_bytes(data, name, layout=layout)
-    if target.searched and not document.layout:
+        return unopened(name, problem)
+    return audit_bytes(data, name, options, searched=target.searched)
+
+
+def unopened(name: str, problem: OSError) -> FileAudit:
+    """The audit of a file that could not be opened."""
+    return FileAudit(name, problem=f"{name}: {problem.strerror or problem}")
+
+
+def audit_bytes(data: bytes, name: str, options: Options, *, searched: bool = False) -> FileAudit:
+    """Judge the bytes of a file; ``searched``: pass over a text that shows no layout."""
+    effective = options.settings
+    if effective is None:
+        effective = settings_for(Path(name).absolute())
+    document = read_bytes(data, name, layout=options.layout or effective.layout)
+    if searched and not document.layout:
         return FileAudit(name, document, settings=effective, passed_over=True)
-    return judge(document, label=label, settings=effective)
+    return judge(
+        document,
+        label=options.label,
+        settings=effective,
+        beside=options.beside,
+        energies=options.energies,
+    )
 
 
 def audit_text(
@@ -125,11 +208,12 @@ def audit_text(
     label: str | None = None,
     layout: str | None = None,
     settings: Settings | None = None,
+    energies: bool = False,
 ) -> FileAudit:
     """Judge a text at hand under a declared file name."""
     effective = settings if settings is not None else settings_for(Path(name).absolute())
-    document = read_source(Source(text, name), layout=layout)
-    return judge(document, label=label, settings=effective)
+    document = read_source(Source(text, name), layout=layout or effective.layout)
+    return judge(document, label=label, settings=effective, energies=energies)
 
 
 def judge(
@@ -137,30 +221,84 @@ def judge(
     *,
     label: str | None = None,
     settings: Settings,
+    beside: Beside | None = None,
+    energies: bool = False,
     probes: Sequence[Probe] = (),
     only: Container[str] | None = None,
 ) -> FileAudit:
-    """Run all rules, or ``only`` those named, over a document and what was probed of it."""
-    case = Case(document, label, probes)
-    findings: list[Finding] = []
-    for name, rule in rules().items():
-        if only is not None and name not in only:
-            continue
-        level = settings.severity.get(name)
-        if level == "off":
-            continue
-        found = case.judge(rule, settings.limits.get(name))
-        if level is not None:
-            found = [replace(finding, severity=level) for finding in found]  # type: ignore[arg-type]
-        findings += found
+    """Run all rules over a document, in the light of what lies ``beside`` its file; sort out what
+    is accepted.  energies: whether rules may compute the atoms.  probes: what was measured of it in
+    geometries.  only: names of the rules to run, all if None.
+    """
+    claimed = label if label is not None else settings.label
+    case = Case(document, claimed, probes=probes, energies=energies)
+    furnish(case, settings, beside)
+    for name, rule in sorted(rules().items(), key=lambda item: item[1].last):
+        if not settings.is_off(name) and (only is None or name in only):
+            case.found[name] = list(_judged(case, rule, settings))
+    findings = [finding for found in case.found.values() for finding in found]
     findings.sort(key=lambda f: (f.line, f.column, -LEVELS.index(f.severity), f.rule))
+    findings = list(marked(findings, document.source))
+    accepted = tuple(_accepted(case, findings, settings))
+    taken = {id(item.finding) for item in accepted}
     claims = next((claims for claims in case.claims.values() if claims), [])
     return FileAudit(
         document.path,
         document,
-        tuple(findings),
+        tuple(finding for finding in findings if id(finding) not in taken),
         claims[0].label if claims else None,
         claims[0].where if claims else "",
         settings=settings,
+        layout=document.layout,
+        elements=len({block.atomic_number for block in document.blocks}),
+        blocks=len(document.blocks),
+        excerpts=_excerpts(findings, document.source),
+        accepted=accepted,
         probes=case.probes,
     )
+
+
+def _judged(case: Case, rule: Rule, settings: Settings) -> Iterator[Finding]:
+    """Findings of one rule, at the levels and with the limits that hold for their elements."""
+    variants = settings.variants_of(rule.name)
+    for limits in variants:
+        for finding in _found(case, rule, limits):
+            if len(variants) > 1 and settings.limits_of(rule.name, finding.element) != limits:
+                continue
+            level = settings.level_of(rule.name, finding.element)
+            if level is None:
+                yield finding
+            elif level != "off":
+                yield replace(finding, severity=level)  # type: ignore[arg-type]
+
+
+def _found(case: Case, rule: Rule, limits: dict[str, float]) -> list[Finding]:
+    """What one rule finds; a rule of another package that fails is told of and finds nothing."""
+    try:
+        return case.judge(rule, limits)
+    except Exception as problem:
+        if not rule.is_foreign:
+            raise
+        plugins.note(f"rule {rule.name!r} fails: {type(problem).__name__}: {problem}")
+        return []
+
+
+def _accepted(case: Case, findings: list[Finding], settings: Settings) -> Iterator[Accepted]:
+    """The findings that the file or the settings accept, each with the reason given."""
+    acceptances = [*acceptances_of(case)[0], *settings.acceptances]
+    for finding in findings if acceptances else ():
+        covering = next((each for each in acceptances if each.covers(finding)), None)
+        if covering is not None:
+            yield Accepted(finding, covering.reason, covering.where)
+
+
+def _excerpts(findings: Iterable[Finding], source: Source) -> dict[tuple[int, int], Excerpt]:
+    """Lines that findings point at; of a long line what stands around the place."""
+    found: dict[tuple[int, int], Excerpt] = {}
+    for finding in findings:
+        if source.text:
+            line = source.lines[finding.line - 1]
+            start = max(0, finding.column - 1 - EXCERPT // 2) if len(line) > EXCERPT else 0
+            place = finding.line, finding.column
+            found[place] = Excerpt(line[start : start + EXCERPT], start)
+    return found

@@ -4,15 +4,16 @@ A table names basis files and a geometry.  Its files are measured together, so t
 take its elements from several of them, and each file gets the findings about its own shells.
 """
 
-from collections.abc import Sequence
 from dataclasses import replace
 from pathlib import Path
 from typing import NamedTuple
 
 from overlapse.grammar.geometry import GeometryError
 from overlapse.lint.choices import ChoiceError
-from overlapse.lint.engine import LEVELS, FileAudit
+from overlapse.lint.engine import LEVELS, FileAudit, targets
+from overlapse.lint.patterns import matches
 from overlapse.lint.screening import ScreenError, screen_files
+from overlapse.lint.settings import Probe as Setting
 from overlapse.rules.probing import Wanted
 
 
@@ -28,24 +29,64 @@ class Table(NamedTuple):
     spherical: bool | None = None
 
 
-def with_probes(audits: Sequence[FileAudit], tables: Sequence[Table]) -> list[FileAudit]:
-    """Audits with what the tables' measurements add to them, then those of geometries with faults.
+def table_of(probe: Setting, folder: Path) -> Table:
+    """The table that a setting stands for; its patterns are of paths below ``folder``."""
+    basis = (
+        target.path
+        for target in targets([folder], lambda trouble: None)
+        if any(
+            matches(target.path.relative_to(folder).as_posix(), pattern) for pattern in probe.basis
+        )
+    )
+    wanted = Wanted()
+    if probe.removal_threshold is not None:
+        wanted = wanted._replace(threshold=probe.removal_threshold)
+    if probe.mesh is not None:
+        wanted = wanted._replace(mesh=probe.mesh)
+    spherical = None if probe.cartesian is None else not probe.cartesian
+    return Table(tuple(basis), probe.geometry, wanted, spherical)
 
-    Only tables that name an audited file are measured.  A table that cannot be measured becomes
-    an audit of its geometry with the problem; faults in basis files are the audit's own business.
-    """
-    result = list(audits)
-    places = {Path(audit.path).resolve(): k for k, audit in enumerate(audits)}
-    for table in tables:
-        if not any(path.resolve() in places for path in table.basis):
-            continue
-        for audit in _screened(table):
-            at = places.get(Path(audit.path).resolve())
-            if at is not None:
-                result[at] = _joined(result[at], audit)
-            elif audit.problem or audit.path not in map(str, table.basis):
-                result.append(audit)
-    return result
+
+class Probing:
+    """Adds to audits what the probes of their settings find; each probe is measured once."""
+
+    def __init__(self) -> None:
+        self._measured: dict[Table, dict[Path, FileAudit]] = {}
+        self._tables: dict[tuple[Setting, Path], Table] = {}
+        self._told: list[FileAudit] = []
+
+    def joined(self, audit: FileAudit) -> FileAudit:
+        """An audit with what the probes of its settings add to it."""
+        origin = audit.settings.origin
+        for probe in audit.settings.probes if origin is not None and not audit.passed_over else ():
+            assert origin is not None
+            key = (probe, origin.parent)
+            if key not in self._tables:
+                self._tables[key] = table_of(*key)
+            audit = self.with_table(audit, self._tables[key])
+        return audit
+
+    def with_table(self, audit: FileAudit, table: Table) -> FileAudit:
+        """An audit with what one table's measurements add to it, if it is of one of its files."""
+        place = Path(audit.path).resolve()
+        if place not in {path.resolve() for path in table.basis}:
+            return audit
+        if table not in self._measured:
+            self._measured[table] = {}
+            for found in _screened(table):
+                if found.problem or found.path not in map(str, table.basis):
+                    self._told.append(found)
+                else:
+                    self._measured[table][Path(found.path).resolve()] = found
+        more = self._measured[table].get(place)
+        return audit if more is None else _joined(audit, more)
+
+    def of_geometries(self) -> list[FileAudit]:
+        """Audits of the geometries: their faults, or why a table could not be measured.
+
+        Faults in basis files are the business of their own audits.
+        """
+        return self._told
 
 
 def _screened(table: Table) -> list[FileAudit]:
@@ -64,7 +105,13 @@ def _screened(table: Table) -> list[FileAudit]:
 
 def _joined(audit: FileAudit, more: FileAudit) -> FileAudit:
     findings = sorted(
-        (*audit.findings, *more.findings),
+        (*audit.findings, *(replace(finding, path=audit.path) for finding in more.findings)),
         key=lambda f: (f.line, f.column, -LEVELS.index(f.severity), f.rule),
     )
-    return replace(audit, findings=tuple(findings), probes=(*audit.probes, *more.probes))
+    return replace(
+        audit,
+        findings=tuple(findings),
+        accepted=(*audit.accepted, *more.accepted),
+        excerpts={**audit.excerpts, **more.excerpts},
+        probes=(*audit.probes, *more.probes),
+    )

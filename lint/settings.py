@@ -1,110 +1,187 @@
-"""Settings: which level fails, which rules are quiet, which limits hold.
+"""Settings: which level fails, which rules are quiet, which limits hold, what is accepted.
 
 They are looked for from each checked file upwards: the nearest ``overlapse.toml``, or
-``[tool.overlapse]`` in a ``pyproject.toml``.
+``[tool.overlapse]`` in a ``pyproject.toml``.  Nothing in them is ever run.
 """
 
+import os
+import stat
 import sys
+from collections.abc import Mapping
 from dataclasses import dataclass, field
 from functools import cache
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
-from overlapse.rules.registry import rules
+from overlapse.grammar.elements import number_of, symbol_of
+from overlapse.rules.acceptance import Acceptance
+
+if TYPE_CHECKING:
+    from overlapse.lint.settingsfile import SettingsFile
 
 LEVELS = ("error", "warning", "note")
+Limits = Mapping[str, Mapping[str, float]]
 
 
 class SettingsError(ValueError):
-    """A settings file that cannot be used; the message names file and key."""
+    """A settings file that cannot be used; the message names file, line and key."""
+
+
+@dataclass(frozen=True)
+class Elementwise:
+    """Severity and limits that hold for some elements only.  numbers: atomic numbers."""
+
+    numbers: frozenset[int]
+    severity: Mapping[str, str] = field(default_factory=dict)
+    limits: Limits = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class Probe:
+    """A geometry on which basis files are to be tried.
+
+    basis: patterns of paths below the settings file's folder.  removal_threshold: eigenvalue of
+    the overlap matrix below which a program drops functions, None for the usual ladder.  cartesian:
+    whether d and higher functions are Cartesian, None for what the files say.  mesh: k-points along
+    the three directions of the reciprocal lattice, None for no lattice.
+    """
+
+    basis: tuple[str, ...]
+    geometry: Path
+    removal_threshold: float | None = None
+    cartesian: bool | None = None
+    mesh: tuple[int, int, int] | None = None
 
 
 @dataclass(frozen=True)
 class Settings:
-    """fail_at: level from which findings make the audit fail.  severity: level per rule, or "off".
-    limits: values per rule.  origin: the file they came from, None for the defaults.
+    """What holds for one file.
+
+    fail_at: level from which findings make the audit fail.  severity: level per rule, or "off".
+    limits: values per rule.  origin: the file they came from, None for the defaults.  label,
+    layout: used where the caller gives none.  elementwise: severity and limits of some elements;
+    the last one that holds wins.  acceptances: findings that are accepted.  probes: geometries to
+    try this file on.  reference: folder of files to compare with; seal: file of canonical digests;
+    ledger: file of findings that are known.
     """
 
     fail_at: str = "warning"
-    severity: dict[str, str] = field(default_factory=dict)
-    limits: dict[str, dict[str, float]] = field(default_factory=dict)
+    severity: Mapping[str, str] = field(default_factory=dict)
+    limits: Limits = field(default_factory=dict)
     origin: Path | None = None
+    label: str | None = None
+    layout: str | None = None
+    elementwise: tuple[Elementwise, ...] = ()
+    acceptances: tuple[Acceptance, ...] = ()
+    probes: tuple[Probe, ...] = ()
+    reference: Path | None = None
+    seal: Path | None = None
+    ledger: Path | None = None
+
+    def level_of(self, rule: str, element: str | None = None) -> str | None:
+        """The level that a rule's findings get, "off", or None for the rule's own."""
+        level = self.severity.get(rule)
+        for some in self._that_hold_for(element):
+            level = some.severity.get(rule, level)
+        return level
+
+    def limits_of(self, rule: str, element: str | None = None) -> dict[str, float]:
+        """The limits of a rule that are not the rule's own."""
+        limits = dict(self.limits.get(rule, {}))
+        for some in self._that_hold_for(element):
+            limits.update(some.limits.get(rule, {}))
+        return limits
+
+    def variants_of(self, rule: str) -> list[dict[str, float]]:
+        """All sets of limits under which a rule is to be judged, that of most elements first."""
+        found = [self.limits_of(rule)]
+        for some in self.elementwise:
+            for number in sorted(some.numbers) if rule in some.limits else ():
+                limits = self.limits_of(rule, symbol_of(number))
+                if limits not in found:
+                    found.append(limits)
+        return found
+
+    def is_off(self, rule: str) -> bool:
+        """Whether a rule is quiet for all elements."""
+        return self.severity.get(rule) == "off" and all(
+            some.severity.get(rule, "off") == "off" for some in self.elementwise
+        )
+
+    def _that_hold_for(self, element: str | None) -> list[Elementwise]:
+        if element is None or not self.elementwise:
+            return []
+        number = number_of(element)
+        return [some for some in self.elementwise if number in some.numbers]
 
 
-def settings_for(path: Path) -> Settings:
-    """Settings that hold for a file or folder: from the nearest settings file above it.
+def settings_for(path: str | os.PathLike[str]) -> Settings:
+    """Settings that hold for a file: from the nearest settings file above it.
 
     Raises SettingsError for a file that is no TOML or holds a wrong key or value.
     """
+    path = Path(path)
     folder = path if path.is_dir() else path.parent
-    return _nearest(folder.resolve())
+    found = file_for(folder.resolve())
+    if found is None:
+        return Settings()
+    return found.settings_for(folder.resolve() / path.name if folder != path else folder.resolve())
+
+
+def file_for(folder: Path) -> "SettingsFile | None":
+    """The settings file that holds in a (resolved) folder, or None for the defaults.
+
+    Raises SettingsError for one that cannot be used.
+    """
+    for place in (folder, *folder.parents):
+        for name, keys in (("overlapse.toml", ()), ("pyproject.toml", ("tool", "overlapse"))):
+            path = place / name
+            try:
+                seen = os.stat(path)
+            except OSError:
+                continue
+            if not stat.S_ISREG(seen.st_mode):
+                continue
+            found = _file(path, keys, seen.st_mtime_ns, seen.st_size)
+            if found is not None:
+                return found
+    return None
 
 
 @cache
-def _nearest(folder: Path) -> Settings:
-    own = folder / "overlapse.toml"
-    if own.is_file():
-        return _read(own, [])
-    project = folder / "pyproject.toml"
-    if project.is_file() and (found := _table(project, ["tool", "overlapse"])) is not None:
-        return _settings(project, found)
-    return _nearest(folder.parent) if folder.parent != folder else Settings()
+def _file(path: Path, keys: tuple[str, ...], time: int, size: int) -> "SettingsFile | None":
+    """A settings file as it was at a time; None for a project's file that says nothing to us."""
+    try:
+        # Most projects do not mention us; theirs need not be taken apart.
+        if keys and b"overlapse" not in path.read_bytes():
+            return None
+    except OSError as problem:
+        raise SettingsError(f"{path}: {problem.strerror or problem}") from None
+    if keys and table_of(path, keys) is None:
+        return None
+    # The validating library is imported only where there is something to validate.
+    from overlapse.lint.settingsfile import read
+
+    return read(path, keys)
 
 
-def _read(path: Path, keys: list[str]) -> Settings:
-    return _settings(path, _table(path, keys) or {})
+def table_of(path: Path, keys: tuple[str, ...]) -> dict[str, Any] | None:
+    """A table of a TOML file, the whole of it for no keys, or None where there is none.
 
-
-def _table(path: Path, keys: list[str]) -> dict[str, Any] | None:
-    # Imported here because most audits find no settings file.
+    Raises SettingsError for a text that is no TOML.
+    """
     if sys.version_info >= (3, 11):
         import tomllib
     else:
         import tomli as tomllib
     try:
-        table: Any = tomllib.loads(path.read_text("utf-8"))
-    except (tomllib.TOMLDecodeError, UnicodeDecodeError, OSError) as problem:
+        found: Any = tomllib.loads(path.read_text("utf-8"))
+    except tomllib.TOMLDecodeError as problem:
         raise SettingsError(f"{path}: {problem}") from None
+    except (UnicodeDecodeError, OSError) as problem:
+        raise SettingsError(f"{path}: {getattr(problem, 'strerror', '') or problem}") from None
     for key in keys:
-        table = table.get(key) if isinstance(table, dict) else None
-    return table if isinstance(table, dict) else None
-
-
-def _settings(path: Path, table: dict[str, Any]) -> Settings:
-    known = ("fail-at", "severity", "limits")
-    for key in table:
-        if key not in known:
-            raise SettingsError(f"{path}: {_unknown('key', key, known)}")
-    fail_at = table.get("fail-at", "warning")
-    if fail_at not in LEVELS:
-        raise SettingsError(f"{path}: fail-at = {fail_at!r}; it is one of {', '.join(LEVELS)}")
-    severity = table.get("severity", {})
-    for name, level in severity.items():
-        _check_rule(path, name)
-        if level not in (*LEVELS, "off"):
-            raise SettingsError(
-                f"{path}: severity of {name} = {level!r}; it is one of {', '.join(LEVELS)}, off"
-            )
-    limits = table.get("limits", {})
-    for name, values in limits.items():
-        _check_rule(path, name)
-        allowed = tuple(rules()[name].limits)
-        for key, value in values.items():
-            if key not in allowed:
-                raise SettingsError(f"{path}: {_unknown(f'limit of {name}', key, allowed)}")
-            if isinstance(value, bool) or not isinstance(value, int | float):
-                raise SettingsError(f"{path}: limit {key} of {name} = {value!r}; it is a number")
-    return Settings(fail_at, dict(severity), {n: dict(v) for n, v in limits.items()}, path)
-
-
-def _check_rule(path: Path, name: str) -> None:
-    if name not in rules():
-        raise SettingsError(f"{path}: {_unknown('rule', name, tuple(rules()))}")
-
-
-def _unknown(what: str, name: str, known: tuple[str, ...]) -> str:
-    from difflib import get_close_matches
-
-    near = get_close_matches(name, known, 1)
-    hint = f"; did you mean {near[0]}?" if near else f"; known: {', '.join(known) or 'none'}"
-    return f"no {what} is called {name!r}{hint}"
+        found = found.get(key) if isinstance(found, dict) else None
+    if found is not None and not isinstance(found, dict):
+        raise SettingsError(f"{path}: {'.'.join(keys)} is no table")
+    return found

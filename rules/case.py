@@ -3,17 +3,20 @@
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import replace
 from functools import cached_property
-from typing import Any, TypeVar
+from typing import TYPE_CHECKING, Any, TypeVar
 
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import number_of, occupied, replaced_by, symbol_of
 from overlapse.grammar.model import BasisSet, Block, Document, Function, Severity, Span
 from overlapse.rules.claims import Claim, claims_of
-from overlapse.rules.finding import Finding
+from overlapse.rules.finding import Edit, Finding
 from overlapse.rules.norms import Norm, norms_of
 from overlapse.rules.probe import Probe
 from overlapse.rules.registry import Rule
-from overlapse.rules.rows import Row, Suspect, rows_of, suspects_of
+from overlapse.rules.rows import Row, rows_of
+
+if TYPE_CHECKING:
+    from overlapse.rules.beside import Kin, SealedSet
 
 Shared = TypeVar("Shared")
 
@@ -21,15 +24,27 @@ Shared = TypeVar("Shared")
 class Case:
     """A document, the label it was given from outside (if any), and helpers to make findings.
 
-    probes: what was measured of it in real geometries; none in a plain audit.
+    probes: what was measured of it in real geometries; none in a plain audit.  energies: whether
+    rules may compute the atoms of the document.
     """
 
     def __init__(
-        self, document: Document, label: str | None = None, probes: Sequence[Probe] = ()
+        self,
+        document: Document,
+        label: str | None = None,
+        *,
+        probes: Sequence[Probe] = (),
+        energies: bool = False,
     ) -> None:
         # Rules reason over normalised primitives; where the text does not, its numbers are turned.
         self.document = over_normalised(document)
         self.given_label = label
+        self.energies = energies
+        self.found: dict[str, list[Finding]] = {}  # by rule, for the rules that come last
+        # What lies beside the document, for rules that compare; put here by whoever has files.
+        self.seals: tuple[SealedSet, ...] = ()
+        self.reference: Document | None = None
+        self.kin: tuple[Kin, ...] = ()
         self.probes = tuple(probes)
         self._rule = ""
         self._shared: dict[str, Any] = {}
@@ -66,15 +81,6 @@ class Case:
         """For each set, the self-overlaps of its contractions of several primitives."""
         return [norms_of(members) for members in self.sets]
 
-    @cached_property
-    def suspect_exponents(self) -> list[Suspect]:
-        """Exponents that depart from their row, in all sets."""
-        return [
-            suspect
-            for members, rows in zip(self.sets, self.rows, strict=True)
-            for suspect in suspects_of(members, rows)
-        ]
-
     @property
     def sets(self) -> tuple[BasisSet, ...]:
         return self.document.sets
@@ -109,6 +115,7 @@ class Case:
                     limit=fault.limit,
                     expected=fault.expected,
                     remedy=fault.remedy,
+                    edits=tuple(Edit(span, words) for span, words in fault.edits),
                 )
 
     def at_span(self, span: Span, severity: Severity, message: str, **details: Any) -> Finding:

@@ -4,14 +4,15 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from overlapse.grammar.model import Block, Function, letter_of
+from overlapse.grammar.model import Block, Function, Shell, letter_of
 from overlapse.rules.case import Case
 from overlapse.rules.families.expected import unnormalised_as_published
-from overlapse.rules.finding import Finding
+from overlapse.rules.finding import Edit, Finding
 from overlapse.rules.norms import NORMALISED, Culprit, Norm, culprit, look_alike, rounding
 from overlapse.rules.physics.onecentre import contracted_overlap
 from overlapse.rules.physics.trends import quantile
 from overlapse.rules.registry import rule
+from overlapse.rules.repair import rescaled, without_row
 from overlapse.rules.rows import Row, rows_of
 
 
@@ -67,7 +68,7 @@ def norm(case: Case, *, share: float = 0.9, floor: float = 3e-6) -> Iterator[Fin
           0.2 0.5
         ****
     """
-    for members, rows, found in zip(case.sets, case.rows, case.norms, strict=True):
+    for index, (members, found) in enumerate(zip(case.sets, case.norms, strict=True)):
         broken = [n for n in found if not (np.isfinite(n.overlap) and n.overlap > 0.0)]
         for off in broken:
             yield case.at_shell(
@@ -88,7 +89,7 @@ def norm(case: Case, *, share: float = 0.9, floor: float = 3e-6) -> Iterator[Fin
         if evident:
             sound = [n for n in sound if n not in evident]
             # The narrow rows first: where both hold a contraction they are the smoother ones.
-            yield from _odd_ones(case, evident, sound, [*rows, *rows_of(members, True)])
+            yield from _odd_ones(case, evident, sound, [*case.rows[index], *rows_of(members, True)])
         plain = [n for n in judged if n.deviation >= NORMALISED and n not in evident]
         if plain and len(sound) < share * len(judged):
             yield _throughout(case, plain, len(judged))
@@ -195,6 +196,7 @@ def _odd_one(case: Case, group: list[Norm], sound: list[Norm], rows: list[Row]) 
         limit=1.0,
         expected=expected,
         witnesses=tuple(witnesses),
+        edits=() if published else _renormalised(shell, group),
         remedy=(
             "nothing to do: programs rescale it"
             if published
@@ -202,6 +204,12 @@ def _odd_one(case: Case, group: list[Norm], sound: list[Norm], rows: list[Row]) 
             f"{factor:.8g} on its coefficients would restore the norm but hide a slip"
         ),
     )
+
+
+def _renormalised(shell: Shell, group: list[Norm]) -> tuple[Edit, ...]:
+    """Edits that make the self-overlap of each of the functions one; all of them or none."""
+    each = [rescaled(shell, n.function, float(1.0 / np.sqrt(n.overlap))) for n in group]
+    return tuple(edit for edits in each for edit in edits) if all(each) else ()
 
 
 def _short(value: float) -> str:
@@ -281,6 +289,7 @@ def idle(case: Case) -> Iterator[Finding]:
                     "other than zero",
                     row=int(row),
                     measured=0.0,
+                    edits=without_row(shell, int(row)),
                     remedy="restore its coefficient, or take the row out",
                 )
 

@@ -22,7 +22,9 @@ class Finding:
     rule: name, "group.rule".  line, column: counted from 1; length: characters to point at.
     element, shell: symbol and shell name ("C", "s-1"; a column of a general contraction "s-1/3")
     where they apply.  measured and limit: the number found and the one it broke.  expected: a
-    proposed value for the place pointed at.  witnesses: what supports the suspicion.
+    proposed value for the place pointed at.  witnesses: what supports the suspicion.  edits:
+    changes of the text that would mend it.  fingerprint: a digest that stays the same when other
+    parts of the file change; the engine sets it.
     """
 
     rule: str
@@ -40,3 +42,4 @@ class Finding:
     witnesses: tuple[str, ...] = ()
     remedy: str = ""
     edits: tuple[Edit, ...] = ()
+    fingerprint: str = ""

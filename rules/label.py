@@ -8,9 +8,10 @@ from overlapse.rules.case import Case, gathered, is_orbital
 from overlapse.rules.claims import Claim, CompositionClaim, composition_claim
 from overlapse.rules.composition import notation, primitives
 from overlapse.rules.families.counted import is_on_record
-from overlapse.rules.finding import Finding
+from overlapse.rules.finding import Edit, Finding
 from overlapse.rules.labelling import Judged, Kind, Verdict, best_label, fits, judged
 from overlapse.rules.registry import rule
+from overlapse.rules.repair import label_lines, replaced_words
 
 
 def differing(case: Case, kind: Kind) -> Iterator[Finding]:
@@ -69,8 +70,16 @@ def _wrong_label(case: Case, claim: Judged) -> Finding:
         measured=v.found,
         limit=v.promised,
         expected=best,
+        edits=_relabelled(case, claim, best) if best else (),
         remedy=f"call it {best}" if best else "correct the label, or restore what was lost",
     )
+
+
+def _relabelled(case: Case, claim: Judged, best: str) -> tuple[Edit, ...]:
+    """Edits that put the label that fits where the claimed one stands in the text."""
+    label = claim.claim.label
+    lines = label_lines(claim.members.blocks, label, claim.claim.line)
+    return replaced_words(case.document, lines, label, best)
 
 
 @rule("label.split")
@@ -232,6 +241,7 @@ def composition(case: Case) -> Iterator[Finding]:
                     element=block.symbol,
                     measured=notation(block),
                     limit=claim.text,
+                    edits=replaced_words(case.document, [claim.line], claim.text, notation(block)),
                     remedy="restore the row or shell that was lost, or correct the comment",
                 )
                 for block, claim in wrong

@@ -72,8 +72,8 @@ def rounding(norm: Norm) -> float:
     function = norm.function
     a, c = function.exponents, function.coefficients
     overlap = primitive_overlap(a, a, function.l)
-    half_c = np.array([_half_unit(coefficients[row][function.column]) for row in function.rows])
-    half_a = np.array([_half_unit(exponents[row]) for row in function.rows])
+    half_c = np.array([half_unit(coefficients[row][function.column]) for row in function.rows])
+    half_a = np.array([half_unit(exponents[row]) for row in function.rows])
     by_c = 2.0 * np.abs(overlap @ c) * half_c
     # d S_ij / d ln a_i = -(l + 3/2)/2 * (a_i - a_j)/(a_i + a_j) * S_ij
     tilt = (a[:, None] - a[None, :]) / (a[:, None] + a[None, :])
@@ -81,7 +81,7 @@ def rounding(norm: Norm) -> float:
     return float(by_c.sum() + by_a.sum())
 
 
-def _half_unit(word: str) -> float:
+def half_unit(word: str) -> float:
     """Half a unit in the last printed place of a number; zeros at its end may be mere padding."""
     if not NUMBER.fullmatch(word):
         return 0.0

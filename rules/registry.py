@@ -7,7 +7,8 @@ their defaults hold unless the settings say otherwise.
 The docstring is the rule's page.  Its first line says what is found; then follow paragraphs, of
 which those that begin with "Formula:", "Source:", "Limits:" and "Remedy:" have that meaning and the
 rest says why it matters; and two literal samples, "Bad::" and "Good::", which the tests run.  Rules
-about real geometries add the one, in XYZ, that both are run in: "With::".
+that compare have a third before them, "Beside::", of what lies beside both; rules about real
+geometries have the one, in XYZ, that both are run in: "With::".
 """
 
 import inspect
@@ -19,6 +20,7 @@ from importlib.resources import files
 from textwrap import dedent
 from typing import Any, NamedTuple
 
+from overlapse.grammar import plugins
 from overlapse.rules.finding import Finding
 
 RuleFunction = Callable[..., Iterator[Finding]]
@@ -35,15 +37,25 @@ class Explanation(NamedTuple):
     remedy: str
     bad: str
     good: str
+    beside: str = ""
     geometry: str = ""
 
 
 @dataclass(frozen=True)
 class Rule:
-    """A rule: its name, "group.rule", and its function."""
+    """A rule: its name, "group.rule", and its function.
+
+    last: whether it looks at what the other rules have found (`Case.found`).
+    """
 
     name: str
     function: RuleFunction
+    last: bool = False
+
+    @property
+    def is_foreign(self) -> bool:
+        """Whether another package brought the rule."""
+        return not self.function.__module__.startswith("overlapse.")
 
     @cached_property
     def limits(self) -> dict[str, float]:
@@ -60,11 +72,11 @@ class Rule:
 _RULES: dict[str, Rule] = {}
 
 
-def rule(name: str) -> Callable[[RuleFunction], RuleFunction]:
-    """Register the decorated function as the rule ``name``."""
+def rule(name: str, *, last: bool = False) -> Callable[[RuleFunction], RuleFunction]:
+    """Register the decorated function as the rule ``name``; ``last``: it looks at all findings."""
 
     def register(function: RuleFunction) -> RuleFunction:
-        _RULES[name] = Rule(name, function)
+        _RULES[name] = Rule(name, function, last)
         return function
 
     return register
@@ -72,11 +84,17 @@ def rule(name: str) -> Callable[[RuleFunction], RuleFunction]:
 
 @cache
 def rules() -> dict[str, Rule]:
-    """All rules by name, in alphabetical order."""
+    """All rules by name, in alphabetical order; those of other packages among them."""
     for entry in files("overlapse.rules").iterdir():
         # A look at the text spares the import of modules that hold no rule.
         if entry.name.endswith(".py") and b"\n@rule(" in entry.read_bytes():
             import_module(f"overlapse.rules.{entry.name.removesuffix('.py')}")
+    own = dict(_RULES)
+    for entry_point in plugins.entries(plugins.RULES):
+        if plugins.load(entry_point) is not None:
+            for name in {name for name in own if _RULES[name] is not own[name]}:
+                plugins.trouble(entry_point, f"the rule {name} is there already")
+            _RULES.update(own)
     return dict(sorted(_RULES.items()))
 
 
@@ -84,8 +102,9 @@ _MARKED = ("Formula", "Source", "Limits", "Remedy")
 
 
 def _explain(text: str) -> Explanation:
-    prose, samples = text, {"Bad": "", "Good": "", "With": ""}
-    for name in ("With", "Good", "Bad"):
+    prose = text
+    samples = {"Bad": "", "Good": "", "Beside": "", "With": ""}
+    for name in ("With", "Good", "Bad", "Beside"):
         before, mark, sample = prose.partition(f"\n{name}::\n")
         if mark:
             prose, samples[name] = before, dedent(sample).strip("\n") + "\n"
@@ -107,5 +126,6 @@ def _explain(text: str) -> Explanation:
         parts["Remedy"],
         samples["Bad"],
         samples["Good"],
+        samples["Beside"],
         samples["With"],
     )

@@ -9,11 +9,11 @@ from typing import NamedTuple
 import numpy as np
 
 from overlapse.grammar.model import BasisSet, Block, Floats, Function
-from overlapse.rules.physics.trends import FEWEST, Deviations, leave_one_out, quantile
+from overlapse.rules.physics.trends import FEWEST, Deviations, leave_one_out
 
 # Stretches over which a family keeps its pattern and its numbers run smoothly.  The s block is
 # left out: two elements show no trend, and their valence does not run on into the p block.
-_STRETCHES = (
+STRETCHES = (
     (5, 10), (13, 18), (21, 30), (31, 36), (39, 48), (49, 54), (58, 71), (72, 80), (81, 86),
     (90, 103), (104, 112), (113, 118),
 )  # fmt: skip
@@ -46,7 +46,8 @@ class Row(NamedTuple):
 _PERIODS = ((1, 2), (3, 10), (11, 18), (19, 36), (37, 54), (55, 86), (87, 118))
 
 
-def _stretch(z: int, stretches: tuple[tuple[int, int], ...]) -> int:
+def stretch(z: int, stretches: tuple[tuple[int, int], ...]) -> int:
+    """Index of the stretch that holds an element, -1 for none."""
     return next((at for at, (low, high) in enumerate(stretches) if low <= z <= high), -1)
 
 
@@ -56,10 +57,10 @@ def rows_of(members: BasisSet, whole_periods: bool = False) -> list[Row]:
     ``whole_periods`` joins the s and d blocks to the p block; their numbers run on less smoothly,
     so such a row is good for comparing the numbers of one shell, not for a suspicion.
     """
-    stretches = _PERIODS if whole_periods else _STRETCHES
+    stretches = _PERIODS if whole_periods else STRETCHES
     groups: dict[tuple[int, int, tuple[int, ...], int], dict[int, Member]] = {}
     for at, block in enumerate(members.blocks):
-        stretch = _stretch(block.atomic_number, stretches)
+        part = stretch(block.atomic_number, stretches)
         ordered = _in_order(block)
         lengths: dict[int, tuple[int, ...]] = {}
         for _, function in ordered:
@@ -69,7 +70,7 @@ def rows_of(members: BasisSet, whole_periods: bool = False) -> list[Row]:
             l = function.l
             seen[l] = seen.get(l, -1) + 1
             if (function.exponents > 0).all():
-                key = (stretch, l, lengths[l], seen[l])
+                key = (part, l, lengths[l], seen[l])
                 groups.setdefault(key, {}).setdefault(
                     block.atomic_number, Member(at, shell, function)
                 )
@@ -113,59 +114,3 @@ def _signed(function: Function) -> Floats:
     weights = np.abs(function.coefficients)
     large = np.flatnonzero(weights > 0.3 * weights.max())[-1]
     return np.asarray(np.sign(function.coefficients[large]) * function.coefficients)
-
-
-class Suspect(NamedTuple):
-    """A primitive that departs from its row while its companions do not.
-
-    departure: of ln(exponent).  reached: its size over the reach of the fit.  times: this over the
-    scatter and once more over the reach.  expected: the exponent
-    that the others suggest, bohr**-2.  row: of the shell, 0-based.  others: elements in the fit.
-    """
-
-    block: Block
-    shell: int
-    row: int
-    departure: float
-    reached: float
-    times: float
-    expected: float
-    others: int
-
-
-# Published exponents follow their row to a few per cent at best.
-_FINEST = 0.02
-
-
-def suspects_of(members: BasisSet, rows: list[Row], least: float = 0.05) -> list[Suspect]:
-    """Primitives whose exponent departs from its row by more than ``least`` in ln(exponent).
-
-    A contraction that departs as a whole is another matter and gives no suspect here.
-    """
-    found = []
-    for row in rows:
-        departure, scatter, reach = row.exponents
-        # An end of the row is extrapolated: both limits widen by as much as the fit has to reach.
-        times = np.abs(departure) / np.maximum(scatter, _FINEST) / reach**2
-        for at, member in enumerate(row.members):
-            size = np.abs(departure[at])
-            worst = int(np.argmax(times[at]))
-            companions = np.delete(size, worst)
-            if size[worst] < least or (
-                len(companions) and quantile(companions, 0.5) > 0.3 * size[worst]
-            ):
-                continue
-            function = member.function
-            found.append(
-                Suspect(
-                    members.blocks[member.block],
-                    member.shell,
-                    int(function.rows[worst]),
-                    float(departure[at, worst]),
-                    float(abs(departure[at, worst]) / reach[at, worst]),
-                    float(times[at, worst]),
-                    float(function.exponents[worst] * np.exp(-departure[at, worst])),
-                    len(row.members) - 1,
-                )
-            )
-    return found

@@ -12,6 +12,8 @@ from functools import cache
 from importlib import import_module
 from pathlib import Path
 
+from overlapse.grammar import plugins
+from overlapse.grammar.foreign import guarded
 from overlapse.grammar.layout import Layout
 
 _FOLDER = Path(__file__).parent
@@ -19,9 +21,28 @@ _SPOTTED_BY = "// spotted by: "
 
 
 @cache
+def _own() -> tuple[str, ...]:
+    return tuple(sorted(path.stem.replace("_", "-") for path in _FOLDER.glob("*.lark")))
+
+
+@cache
+def _foreign() -> dict[str, Layout]:
+    """Layouts that other packages bring, by name."""
+    found: dict[str, Layout] = {}
+    for entry in plugins.entries(plugins.LAYOUTS):
+        layout = plugins.load(entry)
+        if isinstance(layout, Layout) and layout.name not in (*_own(), *found):
+            found[layout.name] = guarded(layout)
+        elif layout is not None:
+            is_one = isinstance(layout, Layout)
+            plugins.trouble(entry, "the name is taken" if is_one else "it is no Layout")
+    return found
+
+
+@cache
 def names() -> tuple[str, ...]:
     """Names of all layouts, in alphabetical order."""
-    return tuple(sorted(path.stem.replace("_", "-") for path in _FOLDER.glob("*.lark")))
+    return tuple(sorted([*_own(), *_foreign()]))
 
 
 @cache
@@ -29,6 +50,8 @@ def layout_of(name: str) -> Layout:
     """The layout of a name; raises ValueError for an unknown one."""
     if name not in names():
         raise ValueError(f"no layout is called {name!r}; known: {', '.join(names())}")
+    if name in _foreign():
+        return _foreign()[name]
     found = import_module(f"{__name__}.{name.replace('-', '_')}").LAYOUT
     assert isinstance(found, Layout)
     return found
@@ -42,6 +65,8 @@ def layouts() -> dict[str, Layout]:
 
 @cache
 def _pattern(name: str) -> re.Pattern[str]:
+    if name in _foreign():  # which has been imported anyhow
+        return re.compile("")
     with open(_FOLDER / f"{name.replace('-', '_')}.lark", encoding="utf-8") as grammar:
         line = next((line for line in grammar if line.startswith(_SPOTTED_BY)), _SPOTTED_BY)
     return re.compile(line[len(_SPOTTED_BY) :].rstrip("\n"), re.MULTILINE | re.IGNORECASE)

@@ -9,7 +9,14 @@ import click
 @click.command()
 @click.argument("folder", required=False, type=click.Path(path_type=Path))
 def demo(folder: Path | None) -> None:
-    """Copy the built-in scenario into FOLDER (or a temporary one) and audit it."""
-    from overlapse.lint.demonstration import demonstrate
+    """Copy the built-in scenario into FOLDER (or a temporary one) and audit it.
 
-    demonstrate(folder, sys.stdout, sys.stdout.isatty())
+    \b
+    Examples:
+      overlapse demo
+      overlapse demo tarn-lab
+    """
+    from overlapse.lint.demonstration import demonstrate
+    from overlapse.lint.terminal import coloured
+
+    demonstrate(folder, sys.stdout, coloured(sys.stdout))

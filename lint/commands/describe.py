@@ -5,7 +5,7 @@ from pathlib import Path
 
 import click
 
-from overlapse.lint.common import CLEAN, FOUND, Unreadable, a_layout, draw, output
+from overlapse.lint.common import CLEAN, FOUND, Unreadable, a_layout, draw, like_a_layout, output
 
 
 def _some_elements(
@@ -37,7 +37,12 @@ def _some_elements(
     type=click.Path(path_type=Path),
     help="Draw the exponents into this file: .svg, .png or .pdf (extra: report).",
 )
-@click.option("--layout", callback=a_layout, help="Read the file as this layout.")
+@click.option(
+    "--layout",
+    callback=a_layout,
+    shell_complete=like_a_layout,
+    help="Read the file as this layout.",
+)
 @click.option("--named", default="<stdin>", help="File name to report for standard input (-).")
 def describe(
     path: Path,
@@ -52,6 +57,12 @@ def describe(
 
     Exit status: 0 described, 1 faults of form may have cost something, 2 wrong use, 3 the file
     could not be read.
+
+    \b
+    Examples:
+      overlapse describe sets/carbon.basis
+      overlapse describe --element C --element N sets/row.basis
+      overlapse describe --picture ladder.svg sets/row.basis
     """
     from overlapse.grammar.reading import read_bytes
     from overlapse.lint import describe as facts

@@ -1,29 +1,40 @@
 """One JSON object with all files and findings."""
 
 import json
-from collections.abc import Sequence
+from collections.abc import Iterable
 from dataclasses import asdict
+from textwrap import indent
 from typing import Any, TextIO
 
 from overlapse.lint.engine import FileAudit
 from overlapse.rules.finding import Finding
 
 
-def write(audits: Sequence[FileAudit], out: TextIO, colour: bool) -> None:
-    files = [as_object(audit) for audit in audits if not audit.passed_over]
-    json.dump({"files": files}, out, indent=1, allow_nan=False)
-    out.write("\n")
+def write(audits: Iterable[FileAudit], out: TextIO, colour: bool) -> None:
+    out.write('{\n "files": [')
+    comma = ""
+    for audit in audits:
+        if not audit.passed_over:
+            text = json.dumps(as_object(audit), indent=1, allow_nan=False)
+            out.write(f"{comma}\n{indent(text, '  ')}")
+            comma = ","
+    out.write("\n ]\n}\n")
 
 
 def as_object(audit: FileAudit) -> dict[str, Any]:
-    document = audit.document
     return {
         "path": audit.path,
-        "layout": document.layout or None if document else None,
+        "layout": audit.layout or None,
         "label": audit.label,
-        "blocks": len(document.blocks) if document else 0,
+        "blocks": audit.blocks,
         "problem": audit.problem or None,
         "findings": [finding_object(finding) for finding in audit.findings],
+        "accepted": [
+            {**finding_object(finding), "reason": reason, "where": where}
+            for finding, reason, where in audit.accepted
+        ],
+        "known": [finding_object(finding) for finding in audit.known],
+        "gone": [dict(entry) for entry in audit.gone],
     }
 
 

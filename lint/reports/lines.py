@@ -1,12 +1,12 @@
 """One line for each finding: path, line, column, level, rule, where, message."""
 
-from collections.abc import Sequence
+from collections.abc import Iterable
 from typing import TextIO
 
 from overlapse.lint.engine import FileAudit
 
 
-def write(audits: Sequence[FileAudit], out: TextIO, colour: bool) -> None:
+def write(audits: Iterable[FileAudit], out: TextIO, colour: bool) -> None:
     for audit in audits:
         for f in audit.findings:
             where = " ".join(filter(None, (f.element, f.shell)))

@@ -1,8 +1,7 @@
 """SARIF 2.1.0, the OASIS standard for results of static analysis."""
 
-import hashlib
 import json
-from collections.abc import Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from pathlib import PurePath
 from typing import Any, TextIO
 from urllib.parse import quote
@@ -17,19 +16,22 @@ SCHEMA = (
 )
 
 
-def write(audits: Sequence[FileAudit], out: TextIO, colour: bool) -> None:
-    judged = [audit for audit in audits if not audit.passed_over]
-    used = sorted({finding.rule for audit in judged for finding in audit.findings})
-    order = {name: index for index, name in enumerate(used)}
-    run = {
-        "tool": {"driver": {**_driver(), "rules": [_rule(name) for name in used]}},
-        "columnKind": "unicodeCodePoints",
-        "invocations": [_invocation(judged)],
-        "results": [r for audit in judged for r in _results(audit, order)],
-    }
-    document = {"$schema": SCHEMA, "version": "2.1.0", "runs": [run]}
-    json.dump(document, out, indent=1, allow_nan=False)
-    out.write("\n")
+def write(audits: Iterable[FileAudit], out: TextIO, colour: bool) -> None:
+    """Write one run, result by result; the rule table, which results refer to, comes after them."""
+    order: dict[str, int] = {}
+    problems: list[str] = []
+    out.write(f'{{"$schema": {json.dumps(SCHEMA)},\n "version": "2.1.0",\n "runs": [{{\n')
+    out.write('  "columnKind": "unicodeCodePoints",\n  "results": [')
+    comma = ""
+    for audit in audits:
+        if audit.problem:
+            problems.append(audit.problem)
+        for result in _results(audit, order):
+            out.write(f"{comma}\n   {json.dumps(result, allow_nan=False)}")
+            comma = ","
+    driver = {**_driver(), "rules": [_rule(name) for name in order]}
+    out.write(f'\n  ],\n  "invocations": [{json.dumps(_invocation(problems))}],\n')
+    out.write(f'  "tool": {{"driver": {json.dumps(driver, indent=1)}}}\n }}]}}\n')
 
 
 def _driver() -> dict[str, Any]:
@@ -38,8 +40,7 @@ def _driver() -> dict[str, Any]:
     return {"name": "overlapse", "version": version("overlapse")}
 
 
-def _invocation(audits: Sequence[FileAudit]) -> dict[str, Any]:
-    problems = [audit.problem for audit in audits if audit.problem]
+def _invocation(problems: Sequence[str]) -> dict[str, Any]:
     invocation: dict[str, Any] = {"executionSuccessful": not problems}
     if problems:
         invocation["toolExecutionNotifications"] = [
@@ -49,8 +50,11 @@ def _invocation(audits: Sequence[FileAudit]) -> dict[str, Any]:
 
 
 def _rule(name: str) -> dict[str, Any]:
+    if name not in rules():  # a ledger may be older than the program
+        return {"id": name}
     text = rules()[name].explanation
     parts = [text.why, text.formula and f"Formula: {text.formula}"]
+    parts += [text.limits and f"Limits: {text.limits}"]
     parts += [f"Source: {text.source}", f"Remedy: {text.remedy}"]
     return {
         "id": name,
@@ -60,30 +64,31 @@ def _rule(name: str) -> dict[str, Any]:
     }
 
 
-def _results(audit: FileAudit, order: dict[str, int]) -> list[dict[str, Any]]:
-    seen: dict[str, int] = {}
-    results = []
+def _results(audit: FileAudit, order: dict[str, int]) -> Iterator[dict[str, Any]]:
+    compared = bool(audit.known or audit.gone)
     for finding in audit.findings:
-        mark = fingerprint(audit, finding)
-        seen[mark] = seen.get(mark, 0) + 1
-        results.append(_result(finding, order, f"{mark}:{seen[mark]}"))
-    return results
+        yield _result(finding, order, **({"baselineState": "new"} if compared else {}))
+    for finding in audit.known:
+        yield _result(finding, order, baselineState="unchanged")
+    for finding, reason, where in audit.accepted:
+        kind = "inSource" if where.startswith("line ") else "external"
+        suppression = {"kind": kind, "status": "accepted", "justification": reason}
+        yield _result(finding, order, suppressions=[suppression])
+    for entry in audit.gone:
+        order.setdefault(entry["rule"], len(order))
+        yield {
+            "ruleId": entry["rule"],
+            "ruleIndex": order[entry["rule"]],
+            "level": entry["severity"],
+            "message": {"text": entry["message"]},
+            "locations": [{"physicalLocation": {"artifactLocation": {"uri": _uri(audit.path)}}}],
+            "partialFingerprints": {"overlapsePlace/v1": entry["fingerprint"]},
+            "baselineState": "absent",
+        }
 
 
-def fingerprint(audit: FileAudit, finding: Finding) -> str:
-    """A digest that stays the same when other parts of the file change.
-
-    It rests on the rule, the place in the chemistry (element, shell) and the words of the line,
-    not on the line's number.
-    """
-    line = ""
-    if audit.document is not None and finding.line <= len(audit.document.source.lines):
-        line = " ".join(audit.document.source.lines[finding.line - 1].split())
-    parts = (finding.rule, finding.element or "", finding.shell or "", line)
-    return hashlib.sha256("\x1f".join(parts).encode()).hexdigest()[:24]
-
-
-def _result(finding: Finding, order: dict[str, int], mark: str) -> dict[str, Any]:
+def _result(finding: Finding, order: dict[str, int], **more: Any) -> dict[str, Any]:
+    order.setdefault(finding.rule, len(order))
     plain = finding_object(finding)
     kept = ("element", "shell", "measured", "limit", "expected", "remedy")
     properties = {key: plain[key] for key in kept if plain[key] not in (None, "")}
@@ -103,12 +108,40 @@ def _result(finding: Finding, order: dict[str, int], mark: str) -> dict[str, Any
                         "startColumn": finding.column,
                         "endColumn": finding.column + finding.length,
                     },
-                }
+                },
+                **_place_in_the_chemistry(finding),
             }
         ],
-        "partialFingerprints": {"overlapsePlace/v1": mark},
+        "partialFingerprints": {"overlapsePlace/v1": finding.fingerprint},
         "properties": properties,
+        **more,
+        **_fixes(finding),
     }
+
+
+def _fixes(finding: Finding) -> dict[str, Any]:
+    """The changes of the text that the finding proposes, as the standard writes them."""
+    if not finding.edits:
+        return {}
+    replacements = [
+        {
+            "deletedRegion": {"charOffset": start, "charLength": end - start},
+            "insertedContent": {"text": edit.replacement},
+        }
+        for edit in finding.edits
+        for start, end in (edit.span,)
+    ]
+    change = {"artifactLocation": {"uri": _uri(finding.path)}, "replacements": replacements}
+    told = finding.remedy or finding.message
+    return {"fixes": [{"description": {"text": told}, "artifactChanges": [change]}]}
+
+
+def _place_in_the_chemistry(finding: Finding) -> dict[str, Any]:
+    """Element and shell as the standard's logical location, where there are any."""
+    names = [name for name in (finding.element, finding.shell) if name]
+    if not names:
+        return {}
+    return {"logicalLocations": [{"name": names[-1], "fullyQualifiedName": " ".join(names)}]}
 
 
 def _uri(path: str) -> str:

@@ -1,33 +1,38 @@
 """For people: each finding with the line it stands on, a pointer, the numbers and what to do."""
 
-from collections.abc import Callable, Sequence
+from collections import Counter
+from collections.abc import Callable, Iterable, Iterator
+from dataclasses import dataclass, field
 from textwrap import fill
 from typing import TextIO
 
-from overlapse.grammar.model import Document
 from overlapse.lint.engine import FileAudit
 from overlapse.lint.reports.lines import one_line
+from overlapse.lint.terminal import width
 from overlapse.rules.finding import Finding, Number
 
 Paint = Callable[[str, str], str]
 
 _COLOURS = {"error": "31", "warning": "33", "note": "36"}
-_WIDTH = 96
-_EXCERPT = 88  # characters of a source line that are shown
+_GUTTER = 9  # before a source line, for its number
+_LEVEL = max(map(len, _COLOURS))  # so that what follows the level stands in one column
 
 
-def write(audits: Sequence[FileAudit], out: TextIO, colour: bool) -> None:
+def write(audits: Iterable[FileAudit], out: TextIO, colour: bool) -> None:
     paint = _painted if colour else _plain
+    tally, columns = Tally(), width(out)
     for audit in audits:
+        tally.add(audit)
         if audit.passed_over:
             continue
         if audit.problem:
-            out.write(f"{paint('error', 'error')}  {one_line(audit.problem)}\n\n")
-        elif audit.findings:
+            out.write(_headed("error", one_line(audit.problem), paint) + "\n\n")
+        elif audit.findings or audit.accepted or audit.gone:
             out.write(_heading(audit, paint) + "\n\n")
             for finding in audit.findings:
-                out.write(_finding(finding, audit.document, paint) + "\n")
-    out.write(summary(audits) + "\n")
+                out.write(_finding(finding, audit, paint, columns) + "\n")
+            out.write("".join(f"{line}\n" for line in _set_apart(audit, columns)))
+    out.write(tally.sentence() + "\n")
 
 
 def _plain(text: str, kind: str) -> str:
@@ -39,23 +44,26 @@ def _painted(text: str, kind: str) -> str:
 
 
 def _heading(audit: FileAudit, paint: Paint) -> str:
-    document = audit.document
-    assert document is not None
-    elements = len({block.atomic_number for block in document.blocks})
-    facts = [f"layout {document.layout}" if document.layout else "no layout"]
-    if elements:
-        facts.append(f"{elements} element{'s' * (elements != 1)}")
+    if audit.absent:
+        return f"{paint(one_line(audit.path), 'path')}  (in the ledger only)"
+    facts = [f"layout {audit.layout}" if audit.layout else "no layout"]
+    if audit.elements:
+        facts.append(f"{audit.elements} element{'s' * (audit.elements != 1)}")
     if audit.label:
         facts.append(f"label {one_line(audit.label)} from {audit.label_from}")
     return f"{paint(one_line(audit.path), 'path')}  ({'; '.join(facts)})"
 
 
-def _finding(finding: Finding, document: Document | None, paint: Paint) -> str:
+def _headed(level: str, words: str, paint: Paint) -> str:
+    return f"{paint(level, level)}{' ' * (_LEVEL - len(level))}  {words}"
+
+
+def _finding(finding: Finding, audit: FileAudit, paint: Paint, columns: int) -> str:
     where = " ".join(filter(None, (finding.element, finding.shell)))
-    head = f"{paint(finding.severity, finding.severity)}  {where + '  ' if where else ''}"
-    lines = [f"{head}line {finding.line}, column {finding.column}  {finding.rule}"]
-    lines += _excerpt(finding, document, paint)
-    lines.append(_wrapped(finding.message, "  "))
+    place = f"line {finding.line}, column {finding.column}  {finding.rule}"
+    lines = [_headed(finding.severity, f"{where}  {place}" if where else place, paint)]
+    lines += _excerpt(finding, audit, paint, columns - _GUTTER)
+    lines.append(_wrapped(finding.message, "  ", columns))
     numbers = [
         f"{name} {_number(value)}"
         for name, value in (
@@ -66,17 +74,30 @@ def _finding(finding: Finding, document: Document | None, paint: Paint) -> str:
         if value is not None
     ]
     if numbers:
-        lines.append(_wrapped(", ".join(numbers), "  "))
-    lines += [_wrapped(f"because: {witness}", "  ") for witness in finding.witnesses]
+        lines.append(_wrapped(", ".join(numbers), "  ", columns))
+    lines += [_wrapped(f"because: {witness}", "  ", columns) for witness in finding.witnesses]
     if finding.remedy:
-        lines.append(_wrapped(f"to do: {finding.remedy}", "  "))
+        lines.append(_wrapped(f"to do: {finding.remedy}", "  ", columns))
     return "\n".join(lines) + "\n"
 
 
-def _wrapped(text: str, indent: str) -> str:
+def _set_apart(audit: FileAudit, columns: int) -> Iterator[str]:
+    """What does not count: accepted findings, and known ones that are gone."""
+    for finding, reason, where in audit.accepted:
+        place = " ".join(filter(None, (finding.element, finding.shell)))
+        words = f"accepted  {place}  line {finding.line}  {finding.rule}: {reason} ({where})"
+        yield _wrapped(words, "", columns)
+    for entry in audit.gone:
+        place = " ".join(filter(None, (entry.get("element"), entry.get("shell"))))
+        yield _wrapped(f"gone  {place}  {entry['rule']}: {entry['message']}", "", columns)
+    if audit.accepted or audit.gone:
+        yield ""
+
+
+def _wrapped(text: str, indent: str, columns: int) -> str:
     return fill(
         one_line(text),
-        _WIDTH,
+        columns,
         initial_indent=indent,
         subsequent_indent=indent + "  ",
         break_long_words=False,
@@ -88,15 +109,16 @@ def _number(value: Number) -> str:
     return f"{value:.8g}" if isinstance(value, float) else one_line(str(value))
 
 
-def _excerpt(finding: Finding, document: Document | None, paint: Paint) -> list[str]:
-    """The line a finding points at, and a pointer below it."""
-    if document is None or not document.source.text.strip():
+def _excerpt(finding: Finding, audit: FileAudit, paint: Paint, room: int) -> list[str]:
+    """The line a finding points at, as far as there is room, and a pointer below it."""
+    excerpt = audit.excerpts.get((finding.line, finding.column))
+    if excerpt is None:
         return []
-    line = document.source.lines[finding.line - 1].replace("\t", " ")
-    start = finding.column - 1
+    line = excerpt.text.replace("\t", " ")
+    start = finding.column - 1 - excerpt.start
     # A long line is shown around the place, not from its beginning.
-    cut = max(0, start - _EXCERPT // 2) if len(line) > _EXCERPT else 0
-    shown = one_line(line[cut : cut + _EXCERPT].rstrip())
+    cut = max(0, start - room // 2) if len(line) > room else 0
+    shown = one_line(line[cut : cut + room].rstrip())
     if not shown.strip():
         return []
     length = max(1, min(finding.length, len(shown) - (start - cut)))
@@ -107,19 +129,45 @@ def _excerpt(finding: Finding, document: Document | None, paint: Paint) -> list[
     ]
 
 
-def summary(audits: Sequence[FileAudit]) -> str:
-    """One sentence: how many files, how many findings of each level."""
-    judged = [audit for audit in audits if not audit.passed_over]
-    counts = {
-        level: sum(f.severity == level for audit in judged for f in audit.findings)
-        for level in ("error", "warning", "note")
-    }
-    told = [f"{count} {level}{'s' * (count != 1)}" for level, count in counts.items() if count]
-    unread = sum(bool(audit.problem) for audit in judged)
-    parts = [f"{len(judged)} file{'s' * (len(judged) != 1)}"]
-    parts.append(", ".join(told) if told else "nothing found")
-    if unread:
-        parts.append(f"{unread} could not be read")
-    if passed := len(audits) - len(judged):
-        parts.append(f"{passed} passed over because no layout was recognised")
-    return "; ".join(parts)
+@dataclass
+class Tally:
+    """How many files, how many findings of each level, how many that do not count."""
+
+    files: int = 0
+    unread: int = 0
+    passed: int = 0
+    accepted: int = 0
+    known: int = 0
+    gone: int = 0
+    levels: Counter[str] = field(default_factory=Counter)
+
+    def add(self, audit: FileAudit) -> None:
+        self.files += not (audit.passed_over or audit.absent)
+        self.passed += audit.passed_over
+        self.unread += bool(audit.problem)
+        self.accepted += len(audit.accepted)
+        self.known += len(audit.known)
+        self.gone += len(audit.gone)
+        self.levels.update(finding.severity for finding in audit.findings)
+
+    def sentence(self) -> str:
+        told = [
+            f"{count} {level}{'s' * (count != 1)}"
+            for level in ("error", "warning", "note")
+            if (count := self.levels[level])
+        ]
+        parts = [f"{self.files} file{'s' * (self.files != 1)}"]
+        new = " new" if self.known or self.gone else ""
+        parts.append(", ".join(told) + new * bool(told) if told else f"nothing{new} found")
+        for count, what in (
+            (self.accepted, "accepted"),
+            (self.known, "known from the ledger"),
+            (self.gone, "gone since"),
+        ):
+            if count:
+                parts.append(f"{count} {what}")
+        if self.unread:
+            parts.append(f"{self.unread} could not be read")
+        if self.passed:
+            parts.append(f"{self.passed} passed over because no layout was recognised")
+        return "; ".join(parts)

@@ -44,7 +44,7 @@ FEWEST = 6  # elements that a fit with one of them left out needs
 
 
 @lru_cache(maxsize=256)
-def _hat(numbers: tuple[int, ...], degree: int) -> tuple[Floats, Floats]:
+def fit_through(numbers: tuple[int, ...], degree: int) -> tuple[Floats, Floats]:
     x = np.log(np.array(numbers, dtype=float))
     x = (x - x.mean()) / (np.ptp(x) or 1.0)
     vandermonde = np.vander(x, degree + 1)
@@ -59,7 +59,7 @@ def leave_one_out(numbers: tuple[int, ...], values: Floats) -> Deviations:
     """
     count = len(numbers)
     degree = 2
-    hat, free = _hat(numbers, degree)
+    hat, free = fit_through(numbers, degree)
     residual = values - hat @ values
     departure = residual / free[:, None]
     total = (residual**2).sum(axis=0)

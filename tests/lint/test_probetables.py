@@ -5,7 +5,7 @@ from pathlib import Path
 import pytest
 
 from overlapse.lint.engine import FileAudit, Target, audit_file
-from overlapse.lint.probetables import Table, with_probes
+from overlapse.lint.probetables import Probing, Table
 from overlapse.lint.screening import probe_files
 from overlapse.lint.settings import Settings
 from overlapse.rules.probing import Wanted
@@ -29,6 +29,13 @@ def _audits(folder: Path, *names: str) -> list[FileAudit]:
 
 def _table(folder: Path, *names: str, wanted: Wanted = Wanted()) -> Table:  # noqa: B008
     return Table(tuple(folder / name for name in names), folder / "water.xyz", wanted)
+
+
+def with_probes(audits: list[FileAudit], tables: list[Table]) -> list[FileAudit]:
+    probing = Probing()
+    for table in tables:
+        audits = [probing.with_table(audit, table) for audit in audits]
+    return audits + probing.of_geometries()
 
 
 def test_each_file_gets_the_findings_about_its_own_shells(folder: Path) -> None:
@@ -79,3 +86,26 @@ def test_findings_by_path(folder: Path) -> None:
     assert set(found) == {str(folder / "h.basis"), str(folder / "o.basis")}
     assert found[str(folder / "h.basis")]
     assert not found[str(folder / "o.basis")]
+
+
+def test_a_probe_of_the_settings_makes_an_audit_fail(
+    folder: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """As a commit hook runs it: by file names, from the top of the repository."""
+    from click.testing import CliRunner
+
+    from overlapse.lint.cli import cli
+
+    monkeypatch.chdir(folder)
+    before = CliRunner().invoke(cli, ["audit", "--least", "warning", "h.basis", "o.basis"])
+    Path("overlapse.toml").write_text(
+        '[[probe]]\nbasis = ["*.basis"]\ngeometry = "water.xyz"\nremoval-threshold = 1e-6\n'
+    )
+    after = CliRunner().invoke(cli, ["audit", "--least", "warning", "h.basis", "o.basis"])
+    assert "overlap.molecule" not in before.output
+    assert after.exit_code == 1
+    assert "h.basis" in after.output and "overlap.molecule" in after.output
+    Path("water.xyz").unlink()
+    gone = CliRunner().invoke(cli, ["audit", "h.basis"])
+    assert gone.exit_code == 3
+    assert "water.xyz" in gone.output

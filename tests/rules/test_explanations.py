@@ -5,16 +5,28 @@ from probed import probed
 
 from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read_bytes, read_text
+from overlapse.rules.beside import SealedSet, seals_of
 from overlapse.rules.case import Case
+from overlapse.rules.kinship import kin_among
 from overlapse.rules.registry import Rule, rules
 
 RULES = sorted(rules())
 
 
-def _case(document: Document, rule: Rule) -> Case:
-    """A sample's case; in its geometry where the rule has one."""
-    geometry = rule.explanation.geometry
-    return probed(document, geometry) if geometry else Case(document)
+def case_of(rule: Rule, document: Document) -> Case:
+    """A sample under judgement, with what the rule's page says lies beside it."""
+    if rule.explanation.geometry:
+        return probed(document, rule.explanation.geometry)
+    case = Case(document, energies=True)
+    if rule.explanation.beside:
+        beside = read_text(rule.explanation.beside, "beside")
+        case.reference = beside
+        case.seals = tuple(
+            SealedSet(index, members.label, seals_of(members))
+            for index, members in enumerate(beside.sets)
+        )
+        case.kin = tuple(kin_among(case.claims, case.document.sets, [beside]))
+    return case
 
 
 @pytest.mark.parametrize("name", RULES)
@@ -33,7 +45,7 @@ def test_the_bad_sample_is_found(name: str) -> None:
     rule = rules()[name]
     # Samples go through bytes, as files do: one of them is about the bytes themselves.
     document = read_bytes(rule.explanation.bad.encode(), "sample")
-    found = _case(document, rule).judge(rule)
+    found = case_of(rule, document).judge(rule)
     assert found
     for finding in found:
         assert finding.rule == name
@@ -47,7 +59,7 @@ def test_the_good_sample_is_not(name: str) -> None:
     rule = rules()[name]
     document = read_text(rule.explanation.good, "sample")
     assert document.layout
-    assert not [f for f in _case(document, rule).judge(rule) if f.severity != "note"]
+    assert not [f for f in case_of(rule, document).judge(rule) if f.severity != "note"]
     assert not [fault for fault in document.faults if fault.severity == "error"]
 
 
@@ -55,6 +67,6 @@ def test_the_good_sample_is_not(name: str) -> None:
 def test_heuristic_rules_never_give_errors(name: str) -> None:
     rule = rules()[name]
     if rule.explanation.what.lower().startswith("suspect"):
-        found = _case(read_text(rule.explanation.bad, "sample"), rule).judge(rule)
+        found = case_of(rule, read_text(rule.explanation.bad, "sample")).judge(rule)
         assert {finding.severity for finding in found} <= {"warning", "note"}
         assert all("suspect" in finding.message for finding in found)

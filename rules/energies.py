@@ -1,0 +1,167 @@
+"""The atoms of a set together: who can be compared with whom."""
+
+import re
+from functools import cached_property
+
+from overlapse.grammar.elements import row_of
+from overlapse.grammar.model import BasisSet
+from overlapse.rules.atoms import Atom, atom_of
+from overlapse.rules.case import Case, is_orbital
+from overlapse.rules.columns import Column, Stray, columns_of, strays
+from overlapse.rules.physics.trends import quantile
+from overlapse.rules.stationary import Steps, Usual, steps_of, usual
+from overlapse.rules.valence import innermost
+
+_FOREIGN = 0.5  # units of nuclear charge; published sets stay within 0.2
+_WHOLE = 0.9  # share of 1s that sets for all electrons describe, see `valence`
+
+
+class Ensemble:
+    """The atoms of one set, by rising atomic number, and what is computed for them when asked.
+
+    relativistic: the set was made for relativistic atoms, so ours can only compare neighbours.
+    """
+
+    def __init__(self, members: BasisSet, atoms: list[Atom], relativistic: bool = False) -> None:
+        self.members = members
+        self.atoms = atoms
+        self.relativistic = relativistic
+
+    @cached_property
+    def _pattern(self) -> dict[int, tuple[object, ...]]:
+        """What atoms must share to be compared: row, occupation of s shells, numbers in place."""
+        return {
+            id(atom): (
+                row_of(atom.block.atomic_number),
+                atom.shells.electrons[0],
+                tuple(shell.angular for shell in atom.block.shells),
+                tuple(atom.numbers),
+            )
+            for atom in self.atoms
+        }
+
+    def neighbours(self, atom: Atom) -> list[Atom]:
+        """The other atoms of the row that have the same numbers in the same places."""
+        own = self._pattern[id(atom)]
+        return [
+            other
+            for other in self.atoms
+            if other.block.atomic_number != atom.block.atomic_number
+            and self._pattern[id(other)] == own
+        ]
+
+    def near(self, atom: Atom) -> list[Atom]:
+        """The other elements of the row up to three places away."""
+        z = atom.block.atomic_number
+        return [
+            other
+            for other in self.atoms
+            if 0 < abs(other.block.atomic_number - z) <= 3
+            and row_of(other.block.atomic_number) == row_of(z)
+        ]
+
+    def foreign(self, atom: Atom) -> int | None:
+        """The nuclear charge that a block seems made for, if it is another one by the energy."""
+        if atom.scaling is None:
+            return None
+        z = atom.block.atomic_number
+        near = [
+            (other.scaling - 1.0) * other.block.atomic_number
+            for other in self.near(atom)
+            if other.scaling is not None
+        ]
+        if self.relativistic and len(near) < 2:
+            return None
+        usual = quantile(near, 0.5) if len(near) >= 2 else 0.0
+        away = (atom.scaling - 1.0) * z - usual
+        if abs(away) < _FOREIGN:
+            return None
+        made_for = round(z / (1.0 + away / z))
+        return made_for if made_for != z and 1 <= made_for <= 118 else None
+
+    @cached_property
+    def _steps(self) -> dict[int, Steps]:
+        found = {}
+        for atom in self.atoms:
+            steps = steps_of(atom)
+            if steps is not None:
+                found[id(atom)] = steps
+            # All that the rules ask of the integrals; those of a whole set are too many to keep.
+            _ = atom.uncontracted
+            atom.forget()
+        return found
+
+    def steps(self, atom: Atom) -> Steps | None:
+        return self._steps.get(id(atom))
+
+    def others(self, atom: Atom) -> list[Steps]:
+        """Steps of the neighbours."""
+        return [s for other in self.neighbours(atom) if (s := self.steps(other)) is not None]
+
+    def usual(self, own: Steps) -> Usual:
+        """What the steps of an atom should be, by its neighbours or by the whole set."""
+        z = own.atom.block.atomic_number
+        file = [
+            steps
+            for other in self.atoms
+            if other.block.atomic_number != z and (steps := self.steps(other)) is not None
+        ]
+        return usual(own, self.others(own.atom), file)
+
+    @cached_property
+    def _columns(self) -> dict[int, list[Column]]:
+        return {id(atom): columns_of(atom) for atom in self.atoms}
+
+    def strays(self, atom: Atom) -> list[Stray]:
+        """Coefficients of an atom that are not their orbital's."""
+        return [stray for column, others in self.columns(atom) for stray in strays(column, others)]
+
+    def columns(self, atom: Atom) -> list[tuple[Column, list[Column]]]:
+        """The columns of an atom that are its orbitals, each with the same ones of neighbours."""
+        near = [
+            {column.numbers: column for column in self._columns[id(other)]}
+            for other in self.neighbours(atom)
+        ]
+        return [
+            (column, [table[column.numbers] for table in near if column.numbers in table])
+            for column in self._columns[id(atom)]
+        ]
+
+
+def ensembles(case: Case) -> list[Ensemble]:
+    """The sets of a document whose atoms can be computed; none unless energies are wanted."""
+    if not case.energies:
+        return []
+
+    def make() -> list[Ensemble]:
+        found = [
+            _ensemble(case, members, index)
+            for index, members in enumerate(case.sets)
+            if is_orbital(members)
+        ]
+        return [ensemble for ensemble in found if ensemble.atoms]
+
+    return case.shared("atoms", make)
+
+
+# Labels of sets whose contractions come from relativistic atoms.
+_RELATIVISTIC = re.compile(r"DK|RCC|x2c|SARC|dyall|ZORA", re.IGNORECASE)
+
+
+def _ensemble(case: Case, members: BasisSet, index: int) -> Ensemble:
+    atoms = []
+    for block in members.blocks:
+        if any(case.is_faulty(block, index) for index in range(len(block.shells))):
+            continue  # told already, and no number of the block is sure
+        atom = atom_of(block)
+        if atom is not None:
+            atoms.append(atom)
+    # Sets that mostly leave out the core are fragments, or stand beside potentials elsewhere.
+    if sum(innermost(atom.block) > _WHOLE for atom in atoms) * 2 <= len(atoms):
+        atoms = []
+    labels = [claim.label for claim in case.claims.get(index, [])]
+    return Ensemble(
+        members,
+        sorted(atoms, key=lambda atom: atom.block.atomic_number),
+        any(_RELATIVISTIC.search(label) for label in labels),
+    )

@@ -1,0 +1,101 @@
+"""Slips of the pen and the keyboard that make one number of another."""
+
+from collections.abc import Iterator
+from itertools import pairwise
+from typing import NamedTuple
+
+from overlapse.grammar.numbers import FORTRAN, NUMBER
+
+
+class Slip(NamedTuple):
+    """What may have stood there: the word as it would be typed, its value, and what happened."""
+
+    word: str
+    value: float
+    told: str
+
+
+def slips(word: str) -> Iterator[Slip]:
+    """All numbers of which a word could have been made by one slip."""
+    if not NUMBER.fullmatch(word):
+        return
+    seen = {word}
+    for changed, told in _changes(word):
+        if changed not in seen and NUMBER.fullmatch(changed):
+            seen.add(changed)
+            value = float(changed.translate(FORTRAN))
+            if value != 0.0:
+                yield Slip(changed, value, told)
+
+
+def _changes(word: str) -> Iterator[tuple[str, str]]:
+    digits = [at for at, sign in enumerate(word) if sign.isdigit()]
+    power = next((at for at, sign in enumerate(word) if sign in "EeDd"), len(word))
+    mantissa, tail = word[:power], word[power:]
+    yield (word[1:] if word[0] == "-" else "-" + word.lstrip("+")), "the sign"
+    value = float(word.translate(FORTRAN))
+    for factor in (10.0, 0.1, 100.0, 0.01):
+        yield _moved(mantissa, factor) + tail, "the decimal point"
+    if tail:
+        turned = tail.replace("-", "+") if "-" in tail else tail[0] + "-" + tail[1:].lstrip("+")
+        yield mantissa + turned, "the sign of the power of ten"
+    inside = [at for at in digits if at < power]
+    for first, second in pairwise(inside):
+        if word[first] != word[second]:
+            yield (
+                word[:first] + word[second] + word[first + 1 : second] + word[first]
+                + word[second + 1 :],
+                "two digits exchanged",
+            )  # fmt: skip
+    for first, second in pairwise(inside):
+        if word[first] == word[second] and second == first + 1:
+            yield word[:second] + word[second + 1 :], "a digit doubled"
+    if abs(value) > 0.0:
+        for at in inside:
+            for digit in "0123456789":
+                if digit != word[at]:
+                    yield word[:at] + digit + word[at + 1 :], "one digit mistyped"
+        for at in [*inside, power]:
+            for digit in "0123456789":
+                yield word[:at] + digit + word[at:], "a digit lost"
+
+
+def _moved(mantissa: str, factor: float) -> str:
+    """The digits of a number with its decimal point moved."""
+    sign = mantissa[: len(mantissa) - len(mantissa.lstrip("+-"))]
+    whole, _, fraction = mantissa.lstrip("+-").partition(".")
+    shift = {10.0: 1, 0.1: -1, 100.0: 2, 0.01: -2}[factor]
+    if shift > 0:
+        fraction = fraction.ljust(shift, "0")
+        return f"{sign}{(whole + fraction[:shift]).lstrip('0') or '0'}.{fraction[shift:]}"
+    whole = whole.rjust(-shift + 1, "0")
+    return f"{sign}{whole[:shift]}.{whole[shift:]}{fraction}"
+
+
+# Slips in the order in which they are believed; the later kinds fit nearly anything.
+_CLEAR = ("the sign", "the decimal point", "the sign of the power of ten", "two digits exchanged")
+# Those that are evidence where they fit.
+TELLING = (*_CLEAR, "a digit doubled")
+
+
+def likely(word: str, value: float, error: float) -> Slip | None:
+    """The slip that leads from the number meant to the word, where just one fits.
+
+    value: the number meant, with its relative standard error.
+    """
+    within = max(2.5 * error, 1e-6)
+    if within > 0.02:
+        return None
+
+    def fits(slip: Slip) -> bool:
+        return abs(slip.value / value - 1.0) < within
+
+    found = [slip for slip in slips(word) if fits(slip)]
+    for kinds in (_CLEAR, ("a digit doubled",), ("one digit mistyped",), ("a digit lost",)):
+        fitting = [slip for slip in found if slip.told in kinds]
+        distinct = {slip.value for slip in fitting}
+        if len(distinct) == 1:
+            return fitting[0]
+        if distinct:
+            return None
+    return None

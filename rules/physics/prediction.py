@@ -1,0 +1,113 @@
+"""What the other elements of a row suggest for every number of one: several predictions, weighed.
+
+Each column of a table (elements by places in a ladder of numbers) is predicted for each element
+from all the others: by a polynomial in ln Z, and by the same polynomial together with a companion,
+a neighbouring column of the same table.  Published numbers depart from their row in step: where an
+element goes its own way its neighbouring exponents go along, so that a companion predicts to a few
+tenths of a per cent where the polynomial alone scatters by ten.  A slip goes alone.
+
+Formula: residual e_k and leverage h_k of the fit with one companion (Frisch and Waugh: the
+companion's own residual joins the fit), departure e_k / (1 - h_k), variance without the element;
+scatters of few degrees of freedom are moderated by those of the other columns.
+Sources: R. D. Cook, S. Weisberg, Residuals and Influence in Regression, Chapman and Hall 1982; R.
+Frisch, F. V. Waugh, Econometrica 1, 387 (1933); moderation: G. K. Smyth, Stat. Appl. Genet. Mol.
+Biol. 3, article 3 (2004); from t to z: D. L. Wallace, Ann. Math. Statist. 30, 1124 (1959).
+"""
+
+from collections.abc import Sequence
+from typing import NamedTuple
+
+import numpy as np
+
+from overlapse.grammar.model import Floats
+from overlapse.rules.physics.trends import fit_through
+
+FEWEST = 5  # elements that a prediction needs
+_PRIOR = 8.0  # degrees of freedom that the other columns lend to the scatter of one
+
+
+class Predictions(NamedTuple):
+    """Weighed over all predictions, shapes (elements, places).
+
+    surprise: departure in units of the scatter, as a normal deviate.  departure: value less the
+    one suggested.  spread: uncertainty of the suggestion.
+    """
+
+    surprise: Floats
+    departure: Floats
+    spread: Floats
+
+
+def predictions(
+    numbers: tuple[int, ...],
+    values: Floats,
+    companions: Sequence[tuple[Floats, float]],
+    finest: float | Floats,
+    stiffness: float,
+) -> Predictions:
+    """Compare each value with what the other elements suggest.
+
+    numbers: atomic numbers, rising, at least `FEWEST`.  values: shape (elements, places).
+    companions: tables of the same shape (NaN in columns that have no companion), each with the
+    slope that is taken for granted until the elements tell otherwise.  finest: scatter below which
+    nothing is believed, for all places or shape (places,).  stiffness: how much is needed to tell.
+    """
+    count = len(numbers)
+    tables = np.array([np.zeros_like(values), *(np.nan_to_num(table) for table, _ in companions)])
+    slopes = np.array([0.0, *(slope for _, slope in companions)])[:, None, None]
+    missing = np.array(
+        [np.zeros(values.shape[1], bool), *(np.isnan(table[0]) for table, _ in companions)]
+    )
+    # A companion uses up a part of a degree of freedom, since its slope is held.
+    used = np.where(np.arange(len(tables)) > 0, 0.6, 0.0)
+    weights, surprises, departures = [], [], []
+    for degree in (1, 2, 3):
+        if count - degree < 4 and degree > 1:
+            break
+        free_degrees = count - 2 - degree - used
+        usable = (free_degrees >= 1.0)[:, None] & ~missing
+        projection, free = fit_through(numbers, degree)
+        residual = values - projection @ values
+        extra = tables - projection @ tables
+        size = (extra * extra).sum(axis=1, keepdims=True) + stiffness * count
+        slope = ((extra * residual).sum(axis=1, keepdims=True) + stiffness * count * slopes) / size
+        error = residual - slope * extra
+        left = np.maximum(free[None, :, None] - extra * extra / size, 1e-3)
+        departure = error / left
+        total = (error * error).sum(axis=1, keepdims=True)
+        total = total + stiffness * count * (slope - slopes) ** 2
+        degrees = np.maximum(free_degrees, 0.5)[:, None, None]
+        without = np.maximum(total - error * departure, 0.0) / degrees
+        usual = np.array(
+            [np.median(w[:, u]) if u.any() else 0.0 for w, u in zip(without, usable, strict=True)]
+        )
+        prior = np.maximum(
+            usual[:, None, None],
+            np.minimum(without, np.median(without, axis=1, keepdims=True)),
+        )
+        variance = (_PRIOR * prior + degrees * without) / (_PRIOR + degrees) + finest**2
+        # An end of the row is extrapolated, and less trusted than its leverage says.
+        t_squared = departure**2 * left**2 / variance
+        surprises.append(_normal(t_squared, degrees + _PRIOR))
+        departures.append(departure)
+        weights.append(usable[:, None, :] * left / (without + finest**2))
+    weight = np.concatenate(weights)
+    whole = np.maximum(weight.sum(axis=0), 1e-300)
+    return Predictions(
+        (weight * np.concatenate(surprises)).sum(axis=0) / whole,
+        (weight * np.concatenate(departures)).sum(axis=0) / whole,
+        1.0 / np.sqrt(weight.max(axis=0)),
+    )
+
+
+def _normal(t_squared: Floats, degrees: Floats) -> Floats:
+    """The normal deviate that is as rare as a t of so many degrees of freedom."""
+    factor = (8.0 * degrees + 1.0) / (8.0 * degrees + 3.0)
+    return np.asarray(factor * np.sqrt(degrees * np.log1p(t_squared / degrees)))
+
+
+def beside(values: Floats) -> list[Floats]:
+    """Each column's left and right neighbour, and their mean; NaN where there is none."""
+    left, right = np.full_like(values, np.nan), np.full_like(values, np.nan)
+    left[:, 1:], right[:, :-1] = values[:, :-1], values[:, 1:]
+    return [left, right, 0.5 * (left + right)]

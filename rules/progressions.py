@@ -1,0 +1,210 @@
+"""Numbers at one place in the blocks of a row, and those that fall out of their progression.
+
+Exponents are compared shell by shell along the ladder of all shells of one l, coefficients column
+by column.  Blocks are comparable where their shells of that letter have the same lengths and they
+lie in one stretch of the periodic table.
+"""
+
+from typing import Any, NamedTuple
+
+import numpy as np
+
+from overlapse.grammar.model import BasisSet, Block, Floats, Shell
+from overlapse.rules.physics.prediction import FEWEST, Predictions, beside, predictions
+from overlapse.rules.rows import STRETCHES, stretch
+
+# Exponents are believed to follow their companions to this, coefficients (in units of their size).
+_FINEST = 0.003
+
+
+class Oddity(NamedTuple):
+    """A number that departs from what the other elements of its row suggest.
+
+    column: of the shell, None for an exponent.  departure: of ln(exponent), or of the coefficient
+    in units of its usual size.  surprise: the departure as a normal deviate.  expected: the number
+    suggested; low and high bound it by twice its spread.  others: elements that suggest it.
+    """
+
+    block: Block
+    shell: int
+    row: int
+    column: int | None
+    departure: float
+    surprise: float
+    expected: float
+    low: float
+    high: float
+    others: int
+
+
+class _Cell(NamedTuple):
+    block: Block
+    shell: int
+    row: int
+
+
+def odd_exponents(members: BasisSet, least: float) -> list[Oddity]:
+    """Exponents whose surprise is at least ``least``; of a place in the row the oddest only."""
+    groups: dict[Any, dict[int, list[tuple[int, Shell]]]] = {}
+    blocks: dict[int, Block] = {}
+    for block in members.blocks:
+        z = block.atomic_number
+        if z in blocks or (at := stretch(z, STRETCHES)) < 0:
+            continue
+        blocks[z] = block
+        ladders: dict[int, list[tuple[int, Shell]]] = {}
+        for index, shell in enumerate(block.shells):
+            ladders.setdefault(shell.angular[0], []).append((index, shell))
+        for l, ladder in ladders.items():
+            lengths = tuple((len(s.angular), len(s.exponents)) for _, s in ladder)
+            groups.setdefault((at, l, lengths), {})[z] = ladder
+    found: list[Oddity] = []
+    for group in groups.values():
+        if len(group) < FEWEST:
+            continue
+        numbers = tuple(sorted(group))
+        values = np.array([np.concatenate([s.exponents for _, s in group[z]]) for z in numbers])
+        if not (values > 0.0).all():
+            continue
+        logs = np.log(values)
+        told = predictions(
+            numbers, logs, [(table, 1.0) for table in beside(logs)], _FINEST, _FINEST**2
+        )
+        for at, place in _oddest(told, least):
+            z = numbers[at]
+            cell = _cell(blocks[z], group[z], place)
+            departure, spread = float(told.departure[at, place]), float(told.spread[at, place])
+            expected = float(values[at, place] * np.exp(-departure))
+            found.append(
+                Oddity(
+                    *cell, None, departure, float(told.surprise[at, place]), expected,
+                    expected * float(np.exp(-2.0 * spread)),
+                    expected * float(np.exp(2.0 * spread)),
+                    len(numbers) - 1,
+                )
+            )  # fmt: skip
+    return found
+
+
+def _oddest(told: Predictions, least: float) -> list[tuple[int, int]]:
+    """(element, place) of the oddest element of each place, where it is odd enough."""
+    at = told.surprise.argmax(axis=0)
+    return [
+        (int(k), place) for place, k in enumerate(at) if float(told.surprise[k, place]) >= least
+    ]
+
+
+def _cell(block: Block, ladder: list[tuple[int, Shell]], place: int) -> _Cell:
+    for index, shell in ladder:
+        if place < len(shell.exponents):
+            return _Cell(block, index, place)
+        place -= len(shell.exponents)
+    raise IndexError(place)
+
+
+class _Column(NamedTuple):
+    """Coefficients at corresponding places: shapes (elements, rows used); rows are of the shell."""
+
+    numbers: tuple[int, ...]
+    column: int
+    rows: tuple[int, ...]
+    shells: list[tuple[Block, int]]
+    relative: Floats
+    logs: Floats
+    sizes: Floats
+    signs: Floats
+
+
+def odd_coefficients(members: BasisSet, least: float) -> list[Oddity]:
+    """As `odd_exponents`, for the coefficients of contractions."""
+    groups: dict[Any, dict[int, tuple[Block, int]]] = {}
+    for block in members.blocks:
+        z = block.atomic_number
+        if (at := stretch(z, STRETCHES)) < 0:
+            continue
+        lengths: dict[tuple[int, ...], tuple[int, ...]] = {}
+        for shell in block.shells:
+            lengths[shell.angular] = (*lengths.get(shell.angular, ()), len(shell.exponents))
+        seen: dict[tuple[int, ...], int] = {}
+        for index, shell in enumerate(block.shells):
+            kind = shell.angular
+            seen[kind] = seen.get(kind, -1) + 1
+            if len(shell.exponents) < 2 or not (shell.exponents > 0.0).all():
+                continue
+            used = (shell.coefficients != 0.0).tobytes()
+            key = (at, kind, lengths[kind], seen[kind], shell.coefficients.shape[1], used)
+            groups.setdefault(key, {}).setdefault(z, (block, index))
+    found: list[Oddity] = []
+    for group in groups.values():
+        if len(group) >= FEWEST:
+            columns = _columns(group)
+            for column in columns:
+                found += _of_column(column, columns, least)
+    return found
+
+
+def _columns(group: dict[int, tuple[Block, int]]) -> list[_Column]:
+    numbers = tuple(sorted(group))
+    shells = [group[z] for z in numbers]
+    exponents = np.log([block.shells[index].exponents for block, index in shells])
+    tables = np.array([block.shells[index].coefficients for block, index in shells])
+    found = []
+    for column in range(tables.shape[2]):
+        rows = np.flatnonzero(tables[0, :, column])
+        if len(rows) < 2:
+            continue
+        values = tables[:, rows, column]
+        # The sign of a whole function is free: turn all to that of their usual largest number.
+        largest = int(np.median(np.abs(values), axis=0).argmax())
+        signs = np.sign(values[:, largest])
+        usual = np.median(values * signs[:, None], axis=0)
+        lean = (values * np.sign(usual) * np.sqrt(np.abs(values))).sum(axis=1)
+        signs = np.where(lean < 0.0, -1.0, 1.0)
+        turned = values * signs[:, None]
+        sizes = np.median(np.abs(turned), axis=0)
+        found.append(
+            _Column(
+                numbers, column, tuple(rows.tolist()), shells, turned / sizes,
+                exponents[:, rows], sizes, signs,
+            )
+        )  # fmt: skip
+    return found
+
+
+def _of_column(column: _Column, columns: list[_Column], least: float) -> list[Oddity]:
+    relative = column.relative
+    companions = [(table, 0.0) for table in [*beside(relative), column.logs]]
+    for other in columns:
+        if abs(other.column - column.column) == 1:
+            table = np.full_like(relative, np.nan)
+            for at, row in enumerate(column.rows):
+                if row in other.rows:
+                    table[:, at] = other.relative[:, other.rows.index(row)]
+            companions.append((table, 0.5))
+    # Small coefficients are printed to few digits; six decimals are usual.
+    finest = _FINEST + 1e-6 / column.sizes
+    told = predictions(column.numbers, relative, companions, finest, 1e-5)
+    found = []
+    for at, place in _oddest(told, least):
+        block, index = column.shells[at]
+        unit = float(column.sizes[place] * column.signs[at])
+        departure, spread = float(told.departure[at, place]), float(told.spread[at, place])
+        expected = unit * (float(relative[at, place]) - departure)
+        low, high = sorted((expected - 2.0 * spread * unit, expected + 2.0 * spread * unit))
+        found.append(
+            Oddity(
+                block, index, column.rows[place], column.column, departure,
+                float(told.surprise[at, place]), expected, low, high, len(column.numbers) - 1,
+            )
+        )  # fmt: skip
+    return found
+
+
+def oddest_of_shells(found: list[Oddity]) -> list[Oddity]:
+    """Of each shell the oddest number; one slip makes its companions look odd as well."""
+    best: dict[tuple[int, int], Oddity] = {}
+    for oddity in found:
+        key = id(oddity.block), oddity.shell
+        if key not in best or oddity.surprise > best[key].surprise:
+            best[key] = oddity
+    return list(best.values())

@@ -1,0 +1,206 @@
+"""Which single number would explain that an atom's energy is not stationary.
+
+At the true numbers of a set that was made for the energy of atoms the gradient vanishes, or is what
+it is for the neighbours in the row.  A number that is off by e (of its logarithm) adds H e to the
+gradient, H the second derivatives; so the step of every number z, t_z = -g_z / H_zz, moves by
+-H_zy e / H_zz.  The steps are compared with those of the same places in the neighbours, in units of
+their scatter s_z, and the one number y whose correction leaves the least,
+
+    chi**2 = sum_z (d_z - x p_yz)**2,   d_z = (t_z - usual_z) / s_z,   p_yz = H_zy / (H_zz s_z),
+
+with the best x for each, is the suspect; x is what its logarithm has to change by.
+"""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from overlapse.grammar.model import Floats
+from overlapse.rules.atoms import Atom, Number
+from overlapse.rules.norms import half_unit
+from overlapse.rules.physics.trends import quantile
+
+_FINEST = 3e-4  # steps of the best published numbers
+_NOISE = 1e-7  # of a derivative, hartree: what optimisations of sets leave at best
+_LONE = 1e-5  # the same for an element that has no neighbours to compare with
+_SOFT = 1e-5  # second derivatives below it, hartree, tell nothing
+
+
+@dataclass(eq=False)
+class Steps:
+    """The first and second derivatives of an atom's energy by its numbers.
+
+    gradient: by ln|number|, hartree, shape (n,).  curvature: second derivatives, shape (n, n).
+    """
+
+    atom: Atom
+    numbers: tuple[Number, ...]
+    gradient: Floats
+    curvature: Floats
+
+    @cached_property
+    def stiffness(self) -> Floats:
+        """Size of the diagonal second derivatives, hartree, shape (n,)."""
+        return np.asarray(np.abs(np.diagonal(self.curvature)))
+
+    @cached_property
+    def blur(self) -> Floats:
+        """What printed digits and an unfinished iteration add to the gradient, shape (n,)."""
+        digits = np.array([_digits(self.atom, number) for number in self.numbers])
+        return np.asarray(np.sqrt((self.curvature**2) @ digits**2 + _NOISE**2))
+
+    @cached_property
+    def kinds(self) -> tuple[tuple[int, bool], ...]:
+        """For each number its l and whether it is an exponent."""
+        shells = self.atom.block.shells
+        return tuple((shells[n.shell].angular[0], n.column is None) for n in self.numbers)
+
+
+def _digits(atom: Atom, number: Number) -> float:
+    """Standard error of ln|number| from rounding to its printed digits."""
+    shell = atom.block.shells[number.shell]
+    exponents, coefficients = _spellings(atom)[number.shell]
+    if number.column is None:
+        word, value = exponents[number.row], float(shell.exponents[number.row])
+    else:
+        word = coefficients[number.row][number.column]
+        value = float(shell.coefficients[number.row, number.column])
+    return half_unit(word) / abs(value) / 3**0.5 if value else 0.0
+
+
+def _spellings(atom: Atom) -> list[tuple[list[str], list[list[str]]]]:
+    if not hasattr(atom, "_words"):
+        atom._words = [shell.spellings() for shell in atom.block.shells]  # type: ignore[attr-defined]
+    return atom._words  # type: ignore[attr-defined, no-any-return]
+
+
+def steps_of(atom: Atom) -> Steps | None:
+    """The steps of an atom, or None where it has no energy."""
+    found = atom.response
+    if found is None or not (
+        np.isfinite(found.gradient).all() and np.isfinite(found.curvature).all()
+    ):
+        return None
+    return Steps(atom, tuple(atom.numbers), found.gradient, found.curvature)
+
+
+@dataclass(frozen=True, eq=False)
+class Usual:
+    """What the steps of an atom should be: for each number a value, and its scatter.
+
+    stiffness: second derivatives that turn gradients into steps.  others: neighbours it rests on.
+    """
+
+    centre: Floats
+    scatter: Floats
+    stiffness: Floats
+    others: int
+
+    def chi(self, gradient: Floats) -> Floats:
+        """Departures of an atom's steps in units of the scatter, shape (n,)."""
+        away: Floats = (-gradient / self.stiffness - self.centre) / self.scatter
+        return away
+
+
+def usual(own: Steps, others: Sequence[Steps], file: Sequence[Steps]) -> Usual:
+    """From the neighbours of one pattern, or where they are few from the whole set.
+
+    others: steps of neighbours with the same numbers, this atom's not among them.  file: those of
+    all other atoms of the set.
+    """
+    alike = np.array([*(other.stiffness for other in others), own.stiffness])
+    stiffness = np.maximum(np.median(alike, axis=0), _SOFT)
+    blur = own.blur / stiffness
+    if len(others) >= 3:
+        centre, spread = _along_row(own, others, stiffness)
+        for kind in set(own.kinds):
+            places = [at for at, each in enumerate(own.kinds) if each == kind]
+            # A few neighbours may agree by chance.
+            spread[places] = np.hypot(spread[places], 0.5 * np.median(spread[places]))
+    else:
+        centre, spread = np.zeros(len(own.numbers)), _of_kind(own, file)
+        for other in others:
+            spread = np.maximum(spread, 2.0 * np.abs(other.gradient / stiffness))
+        blur = np.hypot(blur, _LONE / stiffness)
+        spread[_spare(own)] += 1.0
+    return Usual(centre, np.sqrt(spread**2 + blur**2 + _FINEST**2), stiffness, len(others))
+
+
+def _along_row(own: Steps, others: Sequence[Steps], stiffness: Floats) -> tuple[Floats, Floats]:
+    """Line through the neighbours by medians, and their scatter about it.
+
+    Source: P. K. Sen, J. Am. Stat. Assoc. 63, 1379 (1968).
+    """
+    table = np.array([-other.gradient / stiffness for other in others])
+    z = np.array([float(other.atom.block.atomic_number) for other in others])
+    first, second = np.triu_indices(len(z), 1)
+    slopes = (table[second] - table[first]) / (z[second] - z[first])[:, None]
+    slope = np.median(slopes, axis=0)
+    level = np.median(table - slope * z[:, None], axis=0)
+    here = own.atom.block.atomic_number
+    away = np.sort(np.abs(table - slope * z[:, None] - level), axis=0)
+    # One of them may be wrong itself.
+    spread = 1.5 * away[-2 if len(others) > 3 else -1]
+    beyond = max(0.0, z.min() - here, here - z.max())
+    return level + slope * here, spread * (1.0 + beyond) + 0.5 * beyond * np.abs(slope)
+
+
+def _of_kind(own: Steps, file: Sequence[Steps]) -> Floats:
+    """How large the steps of the same kind of number usually are in the set."""
+    pooled: dict[tuple[int, bool], list[float]] = {}
+    for other in file:
+        steps = np.abs(other.gradient) / np.maximum(other.stiffness, _SOFT)
+        for kind, step in zip(other.kinds, steps.tolist(), strict=True):
+            pooled.setdefault(kind, []).append(step)
+    spread = np.full(len(own.numbers), 0.05)
+    for at, kind in enumerate(own.kinds):
+        if len(pooled.get(kind, ())) >= 8:
+            spread[at] = 0.01 + 3.0 * quantile(pooled[kind], 0.9)
+    return spread
+
+
+def _spare(own: Steps) -> list[int]:
+    """Lone functions of an l that only closed inner shells have: they were made for molecules."""
+    atom = own.atom
+    if atom.shells.text.endswith("p6"):
+        return []
+    inner = {l for l, held in atom.shells.electrons.items() if l and held[-1] == 4 * l + 2}
+    return [
+        at
+        for at, number in enumerate(own.numbers)
+        if len(atom.block.shells[number.shell].exponents) == 1
+        and inner.issuperset(atom.block.shells[number.shell].angular)
+    ]
+
+
+@dataclass(frozen=True, eq=False)
+class Explanation:
+    """One number as the explanation of an atom's steps.
+
+    change: of ln|number|.  significance: of that change, in units of the scatter.  before, after:
+    chi squared without and with it.
+    """
+
+    number: Number
+    change: float
+    significance: float
+    before: float
+    after: float
+
+
+def explanations(own: Steps, expected: Usual) -> list[Explanation]:
+    """All numbers as explanations, the best first."""
+    away = expected.chi(own.gradient)
+    patterns = own.curvature / (expected.stiffness * expected.scatter)[None, :]
+    lengths = np.sqrt((patterns**2).sum(axis=1))
+    along = patterns @ away
+    significance = along / np.maximum(lengths, 1e-300)
+    before = float(away @ away)
+    found = [
+        Explanation(number, float(a / max(length * length, 1e-300)), float(abs(s)), before,
+                    float(max(before - s * s, 0.0)))
+        for number, a, length, s in zip(own.numbers, along, lengths, significance, strict=True)
+    ]  # fmt: skip
+    return sorted(found, key=lambda e: e.after)
