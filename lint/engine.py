@@ -137,8 +137,14 @@ def targets(
         for folder, names, files in os.walk(path, onerror=stop):
             names[:] = sorted(name for name in names if not name.startswith("."))
             for name in sorted(files):
-                if not name.startswith(".") and Path(name).suffix.lower() not in _NOT_SEARCHED:
+                if _may_be_one(name):
                     yield Target(Path(folder, name), True)
+
+
+def _may_be_one(name: str) -> bool:
+    """Whether a file found in a folder may be a basis file, by its name."""
+    is_ours = name.startswith("overlapse.") and name.endswith((".toml", ".json"))
+    return not (is_ours or name.startswith(".")) and Path(name).suffix.lower() not in _NOT_SEARCHED
 
 
 def audit_file(
