@@ -20,10 +20,11 @@ from pathlib import Path
 from typing import Any
 
 from overlapse.lint.engine import Accepted, Excerpt, FileAudit, Options
-from overlapse.lint.settings import Settings
+from overlapse.lint.settings import Settings, nearest
 from overlapse.rules.finding import Edit, Finding
 
 FILE = "results.sqlite"
+SEAL = "overlapse.seal.json"
 MOST_BYTES = 400_000_000
 _WAIT = 2.0  # seconds that a locked database is waited for
 
@@ -120,11 +121,22 @@ def clear(place: Path | None = None) -> int:
 # ---- keys
 
 
-def key_of(data: bytes, name: str, options: Options, settings: Settings, searched: bool) -> str:
-    """The key of a file's result: a digest of all that it depends on."""
+def key_of(
+    data: bytes,
+    name: str,
+    options: Options,
+    settings: Settings,
+    searched: bool,
+    beside: Iterable[Path] = (),
+) -> str:
+    """The key of a file's result: a digest of all that it depends on.
+
+    beside: other files whose content the result depends on.
+    """
     digest = hashlib.sha256(data)
     asked = repr((os.path.basename(name), replace(options, settings=None), searched))
-    for part in (asked, wishes(settings), code(), surroundings(settings)):
+    around = surroundings(settings, name, beside)
+    for part in (asked, wishes(settings), code(), around):
         digest.update(b"\0" + hashlib.sha256(part.encode("utf-8", "surrogateescape")).digest())
     return digest.hexdigest()
 
@@ -167,9 +179,11 @@ def _stamped(path: Path) -> str:
     return digest.hexdigest()
 
 
-def surroundings(settings: Settings) -> str:
+def surroundings(settings: Settings, name: str, beside: Iterable[Path]) -> str:
     """Digests of the geometries, the reference and the seal that a result may depend on."""
-    places = [settings.reference, settings.seal, *(probe.geometry for probe in settings.probes)]
+    geometries = [probe.geometry for probe in settings.probes]
+    seal = settings.seal or nearest(SEAL, name)
+    places = [settings.reference, seal, *geometries, *beside]
     return " ".join(_stamped(place) for place in places if place is not None)
 
 
