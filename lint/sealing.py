@@ -16,7 +16,7 @@ from typing import Any, Literal, NamedTuple
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.model import Document
-from overlapse.lint.neighbours import SEAL, forget_seals, seal_for
+from overlapse.lint.neighbours import SEAL, seal_for
 from overlapse.lint.settings import SettingsError
 from overlapse.rules.beside import Seal, SealedSet, belonging, seals_of
 from overlapse.rules.canonical import ElementKey
@@ -210,7 +210,6 @@ def put(seals: SealFile) -> None:
 
     with output(seals.path) as stream:
         stream.write(written(seals.files))
-    forget_seals()
 
 
 def common_seal(paths: Iterable[Path]) -> Path | None:

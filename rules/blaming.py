@@ -5,8 +5,9 @@ from collections.abc import Sequence
 import numpy as np
 
 from overlapse.grammar.model import Block, letter_of
+from overlapse.rules.physics.inertia import Matrix
 from overlapse.rules.physics.placed import Functions, Ints
-from overlapse.rules.physics.spectrum import LADDER, SMALL, Matrix, Spectrum, lowest
+from overlapse.rules.physics.spectrum import LADDER, SMALL, Spectrum, lowest
 from overlapse.rules.probe import Function, Share, Small
 from overlapse.rules.site import Site
 

@@ -5,12 +5,13 @@ from typing import NamedTuple
 
 from overlapse.grammar.model import Floats
 from overlapse.rules.blaming import blame, described
+from overlapse.rules.physics.inertia import Matrix
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.onecentre import eigenvalues
 from overlapse.rules.physics.outlook import LOOKED_AT, Outlook, foresee, outlook
 from overlapse.rules.physics.placed import Functions, lay_out
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
-from overlapse.rules.physics.spectrum import LADDER, Matrix, Spectrum, spectrum
+from overlapse.rules.physics.spectrum import LADDER, Spectrum, spectrum
 from overlapse.rules.probe import NEAR, Dropped, Lattice, Left, Probe
 from overlapse.rules.site import Site, formula, kind_of
 

@@ -6,10 +6,11 @@ import numpy as np
 
 from overlapse.grammar.model import Floats
 from overlapse.rules.blaming import described
+from overlapse.rules.physics.inertia import Matrix
 from overlapse.rules.physics.lattice import lattice_overlap, lattice_reach, monkhorst_pack
 from overlapse.rules.physics.placed import Functions, Ints, lay_out
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
-from overlapse.rules.physics.spectrum import Matrix, smallest
+from overlapse.rules.physics.spectrum import smallest
 from overlapse.rules.probe import AtPoint, Function, Lattice, Left, Probe
 from overlapse.rules.probing import (
     Label,
