@@ -12,6 +12,7 @@ from overlapse.rules.physics.outlook import LOOKED_AT, Outlook, foresee, outlook
 from overlapse.rules.physics.placed import Functions, lay_out
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
 from overlapse.rules.physics.spectrum import LADDER, Spectrum, spectrum
+from overlapse.rules.physics.superposed import affordable
 from overlapse.rules.probe import NEAR, Dropped, Lattice, Left, Probe
 from overlapse.rules.site import Site, formula, kind_of
 
@@ -53,7 +54,8 @@ def probe(sites: Sequence[Site], wanted: Wanted, label: Label = Label()) -> Prob
     matrix = overlap(placed)
     found = steps(matrix, wanted)
     pruned = pruned_set(matrix, lay_out(placed), sites, wanted, found)
-    energies = kinetic(placed) if found.smallest < LOOKED_AT else None
+    doubtful = found.smallest < LOOKED_AT and affordable(placed, len(matrix))
+    energies = kinetic(placed) if doubtful else None
     turned = turned_spherical(sites)
     counterpart = in_short(overlap([s.placed for s in turned])) if turned else None
     return assembled(sites, wanted, label, matrix, found, pruned, energies, counterpart)
@@ -110,7 +112,8 @@ def _outlook(
     found: Spectrum,
     energies: Floats | None,
 ) -> Outlook:
-    """The outlook; by the eigenvalue alone for crystals and for functions that are for fitting."""
+    """The outlook; by the eigenvalue alone for crystals, for functions that are for fitting, and
+    for molecules too large for a field."""
     if energies is None or any(site.fitting for site in sites):
         return outlook(matrix, smallest=found.smallest)
     placed = [site.placed for site in sites]

@@ -42,15 +42,17 @@ def shifted(matrix: Matrix, shift: float, part: Part | None = None) -> Matrix:
     return work
 
 
-def pivoted(matrix: Matrix) -> tuple[Part, Floats]:
+def pivoted(matrix: Matrix, *, overwrite: bool = False) -> tuple[Part, Floats]:
     """Pivoted Cholesky: the order of the functions and their pivots, falling, shape (rank,).
 
     A pivot is the squared norm of what a function adds to those before it.  The rank ends where
-    nothing is left above rounding; functions after it follow in no special order.
+    nothing is left above rounding; functions after it follow in no special order.  overwrite: the
+    matrix is no longer needed.
     """
     (pstrf,) = get_lapack_funcs(("pstrf",), (matrix,))
     tolerance = 4.0 * len(matrix) * np.finfo(float).eps
-    factor, piv, rank, _ = pstrf(matrix.copy().T, tol=tolerance, lower=False, overwrite_a=True)
+    work = matrix if overwrite else matrix.copy()
+    factor, piv, rank, _ = pstrf(work.T, tol=tolerance, lower=False, overwrite_a=True)
     pivots = np.abs(np.diagonal(factor)[:rank]) ** 2
     return np.asarray(piv, dtype=np.intp) - 1, np.asarray(pivots, dtype=float)
 

@@ -59,9 +59,10 @@ def chosen(matrix: Matrix, tolerance: float) -> Ints:
     matrix: real symmetric or complex Hermitian, shape (n, n), positive diagonal.
     """
     scale = 1.0 / np.sqrt(np.real(np.diagonal(matrix)))
-    unit = matrix * scale[:, None] * scale
-    first = np.argsort(np.abs(unit).sum(axis=1), kind="stable")
-    order, pivots = pivoted(unit[np.ix_(first, first)])
+    # Large matrices are not copied more often than they have to be.
+    unit = matrix if np.abs(scale - 1.0).max() < 1e-12 else matrix * scale[:, None] * scale
+    first = np.argsort([np.abs(row).sum() for row in unit], kind="stable")
+    order, pivots = pivoted(unit[np.ix_(first, first)], overwrite=True)
     picked = first[order]
     rank = int(np.searchsorted(-pivots, -tolerance))
     if not rank or _smallest_of(unit, picked[:rank]) >= SHARE * tolerance:
@@ -98,7 +99,8 @@ def shells_to_drop(
     kept = np.arange(len(functions.atom))
     drops: list[Drop] = []
     while len(kept):
-        lost = np.setdiff1d(kept, kept[chosen(matrix[np.ix_(kept, kept)], tolerance)])
+        part = matrix if len(kept) == len(matrix) else matrix[np.ix_(kept, kept)]
+        lost = np.setdiff1d(kept, kept[chosen(part, tolerance)])
         if not len(lost):
             break
         share = np.bincount(owner[lost], minlength=len(sizes)) / sizes
@@ -110,7 +112,7 @@ def shells_to_drop(
         kept = kept[~np.isin(owner[kept], gone)]
     if per == "element":
         drops = [drop._replace(atom=None) for drop in drops]
-    part = matrix[np.ix_(kept, kept)]
+    part = matrix if len(kept) == len(matrix) else matrix[np.ix_(kept, kept)]
     low, high = smallest(part), largest(part)
     return Pruning(kept, tuple(drops), low, high / low if low > 0.0 else float("inf"))
 
