@@ -17,7 +17,7 @@ from overlapse.grammar.designation import (
 )
 from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read
-from overlapse.lint.settings import Settings, nearest
+from overlapse.lint.settings import Settings, SettingsError, nearest
 from overlapse.rules.case import Case
 
 SEAL = "overlapse.seal.json"
@@ -114,6 +114,9 @@ def _reference_files(folder: Path) -> dict[str, tuple[Path, ...]]:
     """The files of a reference folder by their names without endings."""
     from overlapse.lint.engine import targets
 
+    if not folder.is_dir():
+        raise SettingsError(f"{folder}: the settings name it as the reference; it is no folder")
+
     found: dict[str, tuple[Path, ...]] = {}
     for target in targets([folder], lambda trouble: None):
         stem = target.path.stem.casefold()
@@ -159,7 +162,7 @@ def looked_at(path: Path, settings: Settings, beside: Beside | None) -> list[Pat
 def furnish(case: Case, settings: Settings, beside: Beside | None) -> None:
     """Give a case what lies beside its file.
 
-    Raises SettingsError for a seal file that cannot be used.
+    Raises SettingsError for a seal file that cannot be used, and for a reference that is no folder.
     """
     path = Path(case.document.path)
     if (seal := settings.seal or seal_for(path)) is not None:
