@@ -6,7 +6,7 @@ small audits also by what its first lines say.  Only candidates are read, few ar
 
 import re
 from collections.abc import Iterable, Sequence
-from functools import cache, lru_cache
+from functools import lru_cache
 from pathlib import Path, PurePath
 
 from overlapse.grammar.designation import (
@@ -17,7 +17,7 @@ from overlapse.grammar.designation import (
 )
 from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read
-from overlapse.lint.settings import Settings
+from overlapse.lint.settings import Settings, SettingsError, nearest
 from overlapse.rules.case import Case
 
 SEAL = "overlapse.seal.json"
@@ -32,22 +32,7 @@ _QUOTED = re.compile(r"[\"'](?:[A-Za-z]{1,3}_)?([^\"'\s]+)[\"']")
 
 def seal_for(path: Path) -> Path | None:
     """The nearest seal file above a file or folder."""
-    folder = path if path.is_dir() else path.parent
-    return _nearest_seal(folder.resolve())
-
-
-# An audit asks for each of its files; most have no seal above them.
-@cache
-def _nearest_seal(folder: Path) -> Path | None:
-    own = folder / SEAL
-    if own.is_file():
-        return own
-    return _nearest_seal(folder.parent) if folder.parent != folder else None
-
-
-def forget_seals() -> None:
-    """Look anew for seal files, because one was written."""
-    _nearest_seal.cache_clear()
+    return nearest(SEAL, path / SEAL if path.is_dir() else path)
 
 
 # ---- the other files of an audit
@@ -129,6 +114,9 @@ def _reference_files(folder: Path) -> dict[str, tuple[Path, ...]]:
     """The files of a reference folder by their names without endings."""
     from overlapse.lint.engine import targets
 
+    if not folder.is_dir():
+        raise SettingsError(f"{folder}: the settings name it as the reference; it is no folder")
+
     found: dict[str, tuple[Path, ...]] = {}
     for target in targets([folder], lambda trouble: None):
         stem = target.path.stem.casefold()
@@ -174,7 +162,7 @@ def looked_at(path: Path, settings: Settings, beside: Beside | None) -> list[Pat
 def furnish(case: Case, settings: Settings, beside: Beside | None) -> None:
     """Give a case what lies beside its file.
 
-    Raises SettingsError for a seal file that cannot be used.
+    Raises SettingsError for a seal file that cannot be used, and for a reference that is no folder.
     """
     path = Path(case.document.path)
     if (seal := settings.seal or seal_for(path)) is not None:

@@ -16,8 +16,8 @@ from typing import Any, Literal, NamedTuple
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.model import Document
-from overlapse.lint.neighbours import SEAL, forget_seals, seal_for
-from overlapse.lint.settings import SettingsError
+from overlapse.lint.neighbours import SEAL, seal_for
+from overlapse.lint.settings import SettingsError, settings_for
 from overlapse.rules.beside import Seal, SealedSet, belonging, seals_of
 from overlapse.rules.canonical import ElementKey
 
@@ -210,15 +210,15 @@ def put(seals: SealFile) -> None:
 
     with output(seals.path) as stream:
         stream.write(written(seals.files))
-    forget_seals()
 
 
 def common_seal(paths: Iterable[Path]) -> Path | None:
     """The one seal file that holds for all paths, or None where none of them has one.
 
-    Raises SealError where several hold.
+    A seal file that the settings name comes before the nearest one above.  Raises SealError where
+    several hold.
     """
-    found = {seal_for(path) for path in paths}
+    found = {settings_for(path).seal or seal_for(path) for path in paths}
     if len(found) > 1:
         told = ", ".join(sorted(str(path) if path else "none" for path in found))
         raise SealError(f"several seal files hold for these paths ({told}); name one with --seal")

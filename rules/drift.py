@@ -63,8 +63,14 @@ def seal(case: Case) -> Iterator[Finding]:
           4.00D+00 .6
         ****
     """
-    found = [finding for sealed in case.seals for finding in _against_seal(case, sealed)]
-    yield from gathered(found)
+    alike: dict[str, list[Finding]] = {}
+    for sealed in case.seals:
+        for finding in _against_seal(case, sealed):
+            # What changed at several elements is told once where it is the same.
+            _, _, change = finding.message.partition(" ")
+            alike.setdefault(change.partition(";")[0], []).append(finding)
+    for findings in alike.values():
+        yield from gathered(findings)
 
 
 def _against_seal(case: Case, sealed: "SealedSet") -> Iterator[Finding]:
@@ -79,7 +85,7 @@ def _against_seal(case: Case, sealed: "SealedSet") -> Iterator[Finding]:
             yield case.at_line(
                 members.line if members is not None else 1,
                 "warning",
-                f"{symbol_of(key[0])} was sealed here as {before.holds} and is gone",
+                f"{symbol_of(key[0])} was sealed here and is gone; it was sealed as {before.holds}",
                 element=symbol_of(key[0]),
                 limit=before.digest[:_SHOWN],
                 remedy="restore the element, or seal anew: overlapse seal PATH --write",

@@ -6,6 +6,7 @@ import numpy as np
 
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
+from overlapse.rules.gap import spacing_oddities
 from overlapse.rules.progressions import (
     Oddity,
     odd_coefficients,
@@ -112,9 +113,12 @@ def trend(case: Case, *, surprise: float = 4.3, loud: float = 6.0) -> Iterator[F
           0.44 1.0
         ****
     """
+    spaced = {odd.shell for odd in spacing_oddities(case)}
     for odd in _gather(case, surprise):
         if odd.column is None:
             is_far = odd.surprise >= loud and abs(odd.departure) >= np.log(2.0)
+            # Two witnesses that agree make a warning.
+            is_far = is_far or (id(odd.block), odd.shell) in spaced
             yield _finding(case, odd, "exponent", is_far, surprise)
 
 
@@ -206,7 +210,7 @@ def coefficients(case: Case, *, surprise: float = 4.3, loud: float = 6.0) -> Ite
     for odd in _gather(case, surprise):
         if odd.column is not None:
             value = float(odd.block.shells[odd.shell].coefficients[odd.row, odd.column])
-            is_far = odd.surprise >= loud and value * odd.expected < 0.0
+            is_far = odd.surprise >= loud and odd.low <= -value <= odd.high
             yield _finding(case, odd, "coefficient", is_far, surprise)
 
 

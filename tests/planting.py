@@ -291,8 +291,11 @@ def columns_exchanged(published: Published, dice: random.Random) -> Planted | No
         left, right = (shell.cells.span(row, column) for column in columns)
         edits.append((left, published.text[right[0] : right[1]]))
         edits.append((right, published.text[left[0] : left[1]]))
+    text = replaced(published.text, edits)
+    if text == published.text:
+        return None
     told = f"{block.symbol} {block.names[at]} columns {columns}"
-    return Planted(replaced(published.text, edits), (block.symbol,), told=told)
+    return Planted(text, (block.symbol,), told=told)
 
 
 def replaced(text: str, edits: list[tuple[Span, str]]) -> str:

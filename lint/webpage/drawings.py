@@ -6,8 +6,9 @@ from math import ceil, floor, lgamma, log, log10, nan
 from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
+import numpy.typing as npt
 
-from overlapse.grammar.model import Block, Floats, Shell, letter_of
+from overlapse.grammar.model import Block, Floats, Function, Shell, letter_of
 from overlapse.lint.webpage import vector as roles
 from overlapse.lint.webpage.vector import vector
 from overlapse.rules.physics.onecentre import contracted_overlap, eigenvalues
@@ -35,6 +36,21 @@ _STYLE: dict[Any, Any] = {
 _MOST_LINES = 40  # of a ladder; more would not be told apart
 # Levels at which programs drop functions, or a field fails.
 LEVELS = (1e-4, 1e-5, 1e-6, 1e-7, 1e-8)
+
+
+# Numbers beyond these are slips, and no scale could show them beside the others.
+_LEAST, _MOST = 1e-12, 1e18
+
+
+def on_scale(exponents: Floats) -> npt.NDArray[np.bool_]:
+    """Which exponents can be drawn, same shape."""
+    return (exponents >= _LEAST) & (exponents <= _MOST)
+
+
+def drawable(function: Function) -> bool:
+    """Whether a contracted function can be drawn over r."""
+    sound = len(function.exponents) > 0 and bool(on_scale(function.exponents).all())
+    return sound and float(np.abs(function.coefficients).max()) <= _MOST
 
 
 class Spot(NamedTuple):
@@ -71,7 +87,7 @@ def ladder(
     beside: the next lighter and the next heavier element of the row, as far as there are any;
     their exponents stand above and below, in grey.
     """
-    kept = [k for k, shell in enumerate(block.shells) if (shell.exponents > 0).any()]
+    kept = [k for k, shell in enumerate(block.shells) if on_scale(shell.exponents).any()]
     suspects = {spot.shell for spot in spots}
     if len(kept) > _MOST_LINES:
         kept = sorted({*(k for k in kept if k in suspects), *kept[:_MOST_LINES]})
@@ -121,7 +137,7 @@ class _Dots:
         self.joints: tuple[list[float], list[float]] = [], []
 
     def add(self, shell: Shell, y: float, joined: bool) -> None:
-        at = shell.exponents[shell.exponents > 0].tolist()
+        at = shell.exponents[on_scale(shell.exponents)].tolist()
         self.marks[0].extend(at)
         self.marks[1].extend([y] * len(at))
         if joined:
@@ -132,7 +148,7 @@ class _Dots:
 def _point_at(axes: "Axes", line: int, shell: Shell, spots: list[Spot]) -> None:
     """A diamond around each number pointed at, a cross where another one is proposed."""
     for spot in spots:
-        if spot.row is None or shell.exponents[spot.row] <= 0:
+        if spot.row is None or not on_scale(shell.exponents)[spot.row]:
             continue
         axes.plot(
             [float(shell.exponents[spot.row])],
@@ -142,7 +158,7 @@ def _point_at(axes: "Axes", line: int, shell: Shell, spots: list[Spot]) -> None:
             markersize=7.5,
             markerfacecolor="none",
         )
-        if spot.exponent and spot.proposed is not None and spot.proposed > 0:
+        if spot.exponent and spot.proposed is not None and _LEAST <= spot.proposed <= _MOST:
             axes.plot([spot.proposed], [line], "x", color=roles.PROPOSED, markersize=6)
 
 
@@ -151,7 +167,7 @@ def radial(block: Block, l: int, spots: Sequence[Spot], name: str) -> str:
 
     A suspect one is bold; where a number is proposed, it is drawn once more with that number.
     """
-    drawn = [(k, f) for k, f in block.functions_of(l) if len(f.exponents) and min(f.exponents) > 0]
+    drawn = [(k, f) for k, f in block.functions_of(l) if drawable(f)]
     meant = [(k, f, s) for k, f in drawn for s in spots if _meant(s, k, f.column)]
     mended = [m for k, f, s in meant if (m := _mended(block.shells[k], f.column, s)) is not None]
     figure, axes = _figure(2.2)
@@ -187,8 +203,9 @@ def _mended(shell: Shell, column: int, spot: Spot) -> tuple[Floats, Floats] | No
         return None
     exponents, coefficients = np.array(shell.exponents), np.array(shell.coefficients[:, column])
     (exponents if spot.exponent else coefficients)[spot.row] = spot.proposed
-    used = coefficients != 0
-    return (exponents[used], coefficients[used]) if (exponents[used] > 0).all() else None
+    used = np.flatnonzero(coefficients)
+    mended = Function(0, exponents[used], coefficients[used], used, column)
+    return (mended.exponents, mended.coefficients) if drawable(mended) else None
 
 
 def radial_function(exponents: Floats, coefficients: Floats, l: int, r: Floats) -> Floats:
@@ -247,7 +264,7 @@ def centre_spectra(block: Block) -> list[tuple[str, list[float]]]:
     lines = []
     for l in block.counts:
         functions = [f for _, f in block.functions_of(l) if len(f.exponents)]
-        if functions and all((f.exponents > 0).all() for f in functions):
+        if functions and all(map(drawable, functions)):
             overlap = contracted_overlap(functions)
             if np.isfinite(overlap).all():
                 lines.append((letter_of(l), eigenvalues(overlap).tolist()))

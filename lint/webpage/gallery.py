@@ -13,7 +13,7 @@ from typing import NamedTuple, Protocol
 
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import row_of
-from overlapse.grammar.model import Block, Document, Shell, letter_of
+from overlapse.grammar.model import Block, Document, letter_of
 from overlapse.lint.engine import LEVELS, FileAudit
 from overlapse.lint.reports.lines import one_line
 from overlapse.lint.webpage import drawings
@@ -77,7 +77,7 @@ class Gallery:
         names: dict[int, str] = {}
         found = sorted(_by_block(document, audit.findings), key=lambda pair: -_rank(pair[1]))
         for order, (block, findings) in enumerate(found):
-            if not any(map(_has_ladder, block.shells)):
+            if not any(drawings.on_scale(shell.exponents).any() for shell in block.shells):
                 continue
             if order >= _MOST_OF_A_FILE:
                 self.left_out += 1
@@ -104,10 +104,6 @@ class Gallery:
 
 def _rank(findings: Sequence[Finding]) -> int:
     return max(LEVELS.index(finding.severity) for finding in findings)
-
-
-def _has_ladder(shell: Shell) -> bool:
-    return bool((shell.exponents > 0).any())
 
 
 def _by_block(
@@ -143,7 +139,7 @@ def _drawings(scene: Scene) -> Iterator[Drawn]:
     yield Drawn(f"{scene.name}-e", _ladder_caption(scene, spots), svg)
     letters = sorted({l for spot in spots for l in block.shells[spot.shell].angular})
     for l in letters:
-        if any(len(f.exponents) and min(f.exponents) > 0 for _, f in block.functions_of(l)):
+        if any(drawings.drawable(function) for _, function in block.functions_of(l)):
             name = f"{scene.name}-r{l}"
             svg = drawings.radial(block, l, spots, name)
             yield Drawn(name, _radial_caption(block, l, spots), svg)
@@ -184,6 +180,8 @@ def _ladder_caption(scene: Scene, spots: Sequence[Spot]) -> str:
         words.append("diamond: the number pointed at")
     if any(spot.exponent and spot.proposed is not None for spot in spots):
         words.append("cross: proposed instead")
+    if not all(drawings.on_scale(shell.exponents).all() for shell in scene.block.shells):
+        words.append("impossible exponents are left out")
     return "; ".join(words) + "."
 
 

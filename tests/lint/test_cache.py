@@ -51,9 +51,10 @@ def test_a_key_holds_all_that_a_result_depends_on(
         options: Options = Options(),  # noqa: B008
         settings: Settings = plain_settings,
         searched: bool = False,
+        beside: tuple[Path, ...] = (),
     ) -> str:
         cache.begin()
-        return key_of(data, name, options, settings, searched)
+        return key_of(data, name, options, settings, searched, beside)
 
     keys = [
         key(),
@@ -74,6 +75,9 @@ def test_a_key_holds_all_that_a_result_depends_on(
     keys += [key(settings=probing), key(settings=comparing)]
     (reference / "b.basis").write_text(TEXT)
     keys += [key(settings=comparing)]
+    keys += [key(beside=(geometry,)), key(beside=(reference / "a.basis",))]
+    (tmp_path / cache.SEAL).write_text("{}")
+    keys += [key(name=str(tmp_path / "own.basis"))]
     monkeypatch.setattr(cache, "code", lambda: "another program")
     keys += [key()]
     assert len(set(keys)) == len(keys)

@@ -9,6 +9,7 @@ import subprocess
 import sys
 import xml.etree.ElementTree as ElementTree
 from collections.abc import Sequence
+from dataclasses import replace
 from html.parser import HTMLParser
 from pathlib import Path
 from typing import Any, NamedTuple
@@ -151,6 +152,22 @@ def test_the_suspect_exponent_is_found_and_drawn_with_the_proposed_number() -> N
     page = _page([audit])
     assert "s-suspect" in page and "s-proposed" in page
     assert "grey ticks: " in page
+
+
+@pytest.mark.filterwarnings("error")
+@pytest.mark.parametrize("odd", ["1e300", "5e-324", "-1.0", "0.0", "1e18", "1e-12"])
+def test_impossible_numbers_spoil_no_drawing(odd: str) -> None:
+    shells = f"S 2 1.00\n {odd} 0.5\n 1.0 {odd}\nSP 1 1.0\n {odd} 1.0 1.0\nG 1 1.0\n {odd} 1.0\n"
+    audit = _audit(f"C 0\nS 1 1.0\n 3.0 1.0\n{shells}****\n")
+    findings = tuple(
+        Finding("overlap.centre", "note", "m", "a", line, 2, element="C", shell=s, expected=e)
+        for s in ("s-1", "s-2", "sp-1", "g-1")
+        for line in range(2, 12)
+        for e in (float(odd), 2.0)
+    )
+    page = _page([replace(audit, findings=findings)])
+    assert page.count("<figure>") >= 2
+    assert ("impossible exponents are left out" in page) == (odd not in ("1e18", "1e-12"))
 
 
 def test_a_finding_without_a_number_is_no_spot_in_the_shell() -> None:

@@ -136,6 +136,18 @@ def test_a_label_may_change_and_a_set_be_moved(tmp_path: Path) -> None:
     assert status == 1 and "gone" in out
 
 
+def test_the_settings_may_name_the_seal_file(tmp_path: Path) -> None:
+    (tmp_path / "overlapse.toml").write_text('seal = "pinned.json"\n')
+    path = tmp_path / "own.basis"
+    path.write_text(SET)
+    assert run(path, "--write")[0] == 0
+    assert not (tmp_path / "overlapse.seal.json").exists()
+    assert "own.basis" in json.loads((tmp_path / "pinned.json").read_text())["files"]
+    path.write_text(SET.replace("40.5", "41.5"))
+    assert run(path)[0] == 1
+    assert drifted(path)
+
+
 def test_a_file_with_faults_is_not_sealed(library: Path) -> None:
     own = library / "sets" / "own.basis"
     own.write_text(SET.replace("40.5", "4O.5"))

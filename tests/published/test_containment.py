@@ -11,7 +11,7 @@ pyscf = pytest.importorskip(
 )
 from overlapse.grammar.layouts import layouts  # noqa: E402
 from overlapse.grammar.reading import read, read_text  # noqa: E402
-from overlapse.lint.engine import Target, audit_file  # noqa: E402
+from overlapse.lint.engine import Options, Target, audited  # noqa: E402
 from overlapse.lint.neighbours import Beside  # noqa: E402
 from overlapse.lint.settings import Settings  # noqa: E402
 from overlapse.rules.finding import Finding  # noqa: E402
@@ -22,10 +22,8 @@ FOLDER = Path(pyscf.__file__).parent / "gto" / "basis"
 
 def lacking(names: list[str], judged: str) -> list[Finding]:
     """What containment finds in one file beside others."""
-    paths = [FOLDER / name for name in names]
-    found = audit_file(
-        Target(FOLDER / judged, False), settings=Settings(), beside=Beside(paths)
-    ).findings
+    options = Options(settings=Settings(), beside=Beside([FOLDER / name for name in names]))
+    found = audited(Target(FOLDER / judged, False), options).findings
     return [finding for finding in found if finding.rule == "label.contains"]
 
 
