@@ -129,10 +129,11 @@ def _lacks(
         told.add(atom.symbol)
         source = geometry.source
         start = source.starts[atom.line - 1] + atom.column - 1 if source.text else 0
+        word = source.text[start : start + 40].split(maxsplit=1)[0] if source.text else ""
         yield Fault(
             "overlap.molecule",
             shelf.because(atom),
-            (start, start + len(atom.symbol)),
+            (start, start + len(word)),
             element=atom.symbol,
             remedy=f"name a file that has {atom.symbol}: another one, or --use {atom.symbol}=FILE",
         )
