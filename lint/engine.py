@@ -154,7 +154,8 @@ def targets(
 def is_searched(inside: Path) -> bool:
     """Whether a search of a folder looks at a file; ``inside`` is its path from that folder."""
     hidden = any(part.startswith(".") for part in inside.parts)
-    return not hidden and inside.suffix.lower() not in _NOT_SEARCHED
+    is_ours = inside.name.startswith("overlapse.") and inside.suffix in (".toml", ".json")
+    return not (hidden or is_ours) and inside.suffix.lower() not in _NOT_SEARCHED
 
 
 def audit_file(

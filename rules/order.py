@@ -4,6 +4,7 @@ from collections.abc import Iterator
 
 import numpy as np
 
+from overlapse.grammar.model import Function
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rule
@@ -42,21 +43,25 @@ def order(case: Case) -> Iterator[Finding]:
     """
     for block in case.document.blocks:
         for index, shell in enumerate(block.shells):
-            steps = np.diff(shell.exponents)
-            if len(steps) < 2 or (steps <= 0.0).all() or (steps >= 0.0).all():
+            row = next(filter(None, map(_out_of_line, shell.functions())), None)
+            if row is None:
                 continue
-            if all(len(function.exponents) < 2 for function in shell.functions()):
-                continue  # a list of single functions, not a contraction
-            row = int(np.argmax(steps > 0.0)) + 1
             yield case.at_shell(
                 block,
                 index,
                 "note",
                 "the exponents of this contraction neither fall nor rise throughout: "
-                f"{shell.spelling(row)} follows {shell.spelling(row - 1)}",
+                f"{shell.spelling(row)} stands after a smaller one",
                 row=row,
                 measured=float(shell.exponents[row]),
-                limit=float(shell.exponents[row - 1]),
                 remedy="compare it with its source; if it is right, sort the rows",
                 edits=reordered(shell, np.argsort(-shell.exponents, kind="stable").tolist()),
             )
+
+
+def _out_of_line(function: Function) -> int | None:
+    """The row (of the shell) of the first exponent above its forerunner, if others fall."""
+    steps = np.diff(function.exponents)
+    if (steps <= 0.0).all() or (steps >= 0.0).all():
+        return None
+    return int(function.rows[np.argmax(steps > 0.0) + 1])
