@@ -9,7 +9,7 @@ import signal
 import sys
 from collections import deque
 from collections.abc import Callable, Iterable, Iterator
-from dataclasses import replace
+from dataclasses import dataclass, replace
 from functools import partial
 from pathlib import Path
 from typing import TYPE_CHECKING, NamedTuple
@@ -17,8 +17,7 @@ from typing import TYPE_CHECKING, NamedTuple
 from overlapse.grammar import plugins
 from overlapse.grammar.reading import read_bytes
 from overlapse.lint.engine import FileAudit, Options, Target, audit_bytes, unopened
-from overlapse.lint.neighbours import Beside
-from overlapse.lint.settings import settings_for
+from overlapse.lint.settings import Settings, settings_for
 
 # What keeps results and starts processes is imported where it is used: a single file needs neither.
 if TYPE_CHECKING:
@@ -72,9 +71,10 @@ def audits(
 
         begin()
     jobs = (Job(target, size_of(target.path)) for target in targets)
-    pool = _Pool(processes, options.beside) if processes > 1 else None
+    judge = _Judge(options, cache is not None)
+    pool = _Pool(processes, judge) if processes > 1 else None
     try:
-        for job, outcome in _in_order(jobs, options, pool, cache, standard_input):
+        for job, outcome in _in_order(jobs, judge, pool, cache, standard_input):
             done(job.size)
             yield _with_document(outcome, options) if documents else outcome
     except BaseException:
@@ -119,7 +119,7 @@ class _Batch(NamedTuple):
 
 def _in_order(
     jobs: Iterator[Job],
-    options: Options,
+    judge: "_Judge",
     pool: "_Pool | None",
     cache: "Cache | None",
     standard_input: Callable[[], tuple[str, bytes]] | None,
@@ -127,13 +127,14 @@ def _in_order(
     under_way: deque[_Batch] = deque()
     most = pool.processes * AHEAD if pool is not None else 1
     for batch in _batches(jobs, 1 if pool is None else BATCH_FILES):
-        kept = [_sent(job, options, standard_input) or _kept(job, options, cache) for job in batch]
+        kept = [
+            _sent(job, judge.options, standard_input) or _kept(job, judge, cache) for job in batch
+        ]
         left = [job.target for job, audit in zip(batch, kept, strict=True) if audit is None]
         if pool is not None and left:
-            answer = pool.submit(left, options, cache is not None)
+            answer = pool.submit(left)
         else:
-            here = [_outcome(target, options, cache is not None) for target in left]
-            answer = partial(_Answer, here, [])
+            answer = partial(_Answer, list(map(judge.outcome, left)), [])
         under_way.append(_Batch(batch, kept, answer))
         while len(under_way) >= most or (under_way and under_way[0].kept.count(None) == 0):
             yield from _finished(under_way.popleft(), cache)
@@ -162,20 +163,19 @@ def _sent(
     return audit_bytes(data, name, options, searched=job.target.searched)
 
 
-def _kept(job: Job, options: Options, cache: "Cache | None") -> FileAudit | None:
+def _kept(job: Job, judge: "_Judge", cache: "Cache | None") -> FileAudit | None:
     """The result that was kept for a file, or None."""
     if cache is None:
         return None
-    from overlapse.lint.cache import key_of, under
+    from overlapse.lint.cache import under
 
-    target = job.target
+    path = os.fspath(job.target.path)
     try:
-        data = target.path.read_bytes()
+        data = job.target.path.read_bytes()
     except OSError:
         return None  # the judging tells of it
-    path = os.fspath(target.path)
-    settings = options.settings or settings_for(path)
-    found = cache.get(key_of(data, path, options, settings, target.searched))
+    settings = judge.settings_of(path)
+    found = cache.get(judge.key(data, job.target, settings))
     return None if found is None else under(found, path, settings)
 
 
@@ -193,43 +193,56 @@ def _finished(batch: _Batch, cache: "Cache | None") -> Iterator[tuple[Job, FileA
 # ---- in the processes
 
 
-def _judged(targets: list[Target], options: Options, with_keys: bool) -> _Answer:
-    options = replace(options, beside=_beside)
-    outcomes = [_outcome(target, options, with_keys) for target in targets]
-    outcomes = [o._replace(audit=replace(o.audit, document=None)) for o in outcomes]
-    return _Answer(outcomes, list(plugins.troubles))
+@dataclass(frozen=True)
+class _Judge:
+    """Judges files the way the caller asks; ``with_keys``: results are to be kept."""
+
+    options: Options
+    with_keys: bool
+
+    def outcome(self, target: Target) -> Outcome:
+        path = os.fspath(target.path)
+        try:
+            data = target.path.read_bytes()
+        except OSError as problem:
+            return Outcome(unopened(path, problem), "")
+        settings = self.settings_of(path)
+        asked = replace(self.options, settings=settings)
+        audit = audit_bytes(data, path, asked, searched=target.searched)
+        # The key is of the bytes that were judged: the file may have changed since it was looked
+        # up.
+        return Outcome(audit, self.key(data, target, settings) if self.with_keys else "")
+
+    def settings_of(self, path: str) -> Settings:
+        return self.options.settings or settings_for(path)
+
+    def key(self, data: bytes, target: Target, settings: Settings) -> str:
+        from overlapse.lint.cache import key_of
+
+        return key_of(data, os.fspath(target.path), self.options, settings, target.searched)
 
 
-def _outcome(target: Target, options: Options, with_key: bool) -> Outcome:
-    path = os.fspath(target.path)
-    try:
-        data = target.path.read_bytes()
-    except OSError as problem:
-        return Outcome(unopened(path, problem), "")
-    settings = options.settings or settings_for(path)
-    audit = audit_bytes(data, path, replace(options, settings=settings), searched=target.searched)
-    if not with_key:
-        return Outcome(audit, "")
-    from overlapse.lint.cache import key_of
-
-    # The key is of the bytes that were judged: the file may have changed since it was looked up.
-    return Outcome(audit, key_of(data, path, options, settings, target.searched))
+_judge: _Judge | None = None  # of this process, if it is one of the others
 
 
-_beside: Beside | None = None
-
-
-def _start(beside: Beside | None) -> None:
-    global _beside
-    _beside = beside
+def _begin(judge: _Judge) -> None:
+    global _judge
+    _judge = judge
     # Ctrl-C is for the parent, which stops the others.
     signal.signal(signal.SIGINT, signal.SIG_IGN)
+
+
+def _judged(targets: list[Target]) -> _Answer:
+    assert _judge is not None
+    outcomes = [_judge.outcome(target) for target in targets]
+    outcomes = [o._replace(audit=replace(o.audit, document=None)) for o in outcomes]
+    return _Answer(outcomes, list(plugins.troubles))
 
 
 class _Pool:
     """Processes that judge batches of files."""
 
-    def __init__(self, processes: int, beside: Beside | None) -> None:
+    def __init__(self, processes: int, judge: _Judge) -> None:
         from concurrent.futures import ProcessPoolExecutor
         from multiprocessing import get_context
 
@@ -237,14 +250,13 @@ class _Pool:
         # Forked processes have everything imported already; where that is not to be had or not
         # safe, new interpreters do.
         method = "fork" if sys.platform == "linux" else "spawn"
-        self._executor = ProcessPoolExecutor(processes, get_context(method), _start, (beside,))
+        context = get_context(method)
+        self._executor = ProcessPoolExecutor(processes, context, _begin, (judge,))
+        # They start with their first work; that must be before a database is open here.
+        self._executor.submit(int).result()
 
-    def submit(
-        self, targets: list[Target], options: Options, with_keys: bool
-    ) -> Callable[[], _Answer]:
-        # What lies beside the files is known to the processes since they began.
-        asked = replace(options, beside=None)
-        return self._executor.submit(_judged, targets, asked, with_keys).result
+    def submit(self, targets: list[Target]) -> Callable[[], _Answer]:
+        return self._executor.submit(_judged, targets).result
 
     def close(self) -> None:
         """End the processes; there is no work left."""

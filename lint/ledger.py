@@ -13,7 +13,7 @@ from typing import Any
 
 from overlapse.lint.atomic import write_bytes
 from overlapse.lint.engine import FileAudit
-from overlapse.lint.settings import Settings, SettingsError
+from overlapse.lint.settings import Settings, SettingsError, nearest
 from overlapse.rules.finding import Finding
 
 NAME = "overlapse.ledger.json"
@@ -107,12 +107,7 @@ def place_for(path: str, settings: Settings) -> Path | None:
     """The ledger that holds for a file: the one its settings name, else the nearest above it."""
     if settings.ledger is not None:
         return settings.ledger
-    return _nearest(Path(os.path.realpath(path)).parent)
-
-
-def _nearest(folder: Path) -> Path | None:
-    above = (place / NAME for place in (folder, *folder.parents))
-    return next((place for place in above if place.is_file()), None)
+    return nearest(NAME, path)
 
 
 class Sieve:
@@ -131,7 +126,7 @@ class Sieve:
         """One audit for each file below the folders that a ledger knows and that is no more."""
         roots = [os.path.realpath(folder) + os.sep for folder in folders]
         for root in roots:
-            self._ledger(self.given or _nearest(Path(root)))
+            self._ledger(self.given or nearest(NAME, root + NAME))
         for ledger in self._used.values():
             for name, entries in ledger.files.items():
                 path = ledger.path.parent / name

@@ -128,6 +128,12 @@ def settings_for(path: str | os.PathLike[str]) -> Settings:
     return found.settings_for(folder.resolve() / path.name if folder != path else folder.resolve())
 
 
+def nearest(name: str, path: str | os.PathLike[str]) -> Path | None:
+    """The nearest file of a name in the folders above a path, or None."""
+    above = Path(os.path.realpath(path)).parents
+    return next((folder / name for folder in above if (folder / name).is_file()), None)
+
+
 def file_for(folder: Path) -> "SettingsFile | None":
     """The settings file that holds in a (resolved) folder, or None for the defaults.
 
