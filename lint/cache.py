@@ -20,7 +20,7 @@ from pathlib import Path
 from typing import Any
 
 from overlapse.lint.engine import Accepted, Excerpt, FileAudit, Options
-from overlapse.lint.neighbours import forget_seals, looked_at
+from overlapse.lint.neighbours import looked_at
 from overlapse.lint.settings import Settings
 from overlapse.rules.finding import Edit, Finding
 
@@ -177,7 +177,6 @@ def surroundings(places: Iterable[Path]) -> str:
 def begin() -> None:
     """Look anew at the files that results depend on; to be called before a run."""
     _stamped.cache_clear()
-    forget_seals()
 
 
 @cache
