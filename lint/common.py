@@ -99,12 +99,19 @@ class _Kept(StringIO):
         return sys.stdout.isatty()
 
 
+class _KeptOnDisk(TextIOWrapper):
+    """The same, for more text than should be held in memory."""
+
+    def isatty(self) -> bool:
+        return sys.stdout.isatty()
+
+
 def _kept(large: bool) -> TextIO:
     if not large:
         return _Kept(newline="")
     from tempfile import TemporaryFile  # its import takes longer than most audits' reports
 
-    return TemporaryFile("w+", encoding="utf-8", newline="", errors=_UNKNOWN)
+    return _KeptOnDisk(TemporaryFile(), encoding="utf-8", newline="", errors=_UNKNOWN)
 
 
 def draw(path: Path, make: Callable[[str], bytes]) -> None:
@@ -112,15 +119,14 @@ def draw(path: Path, make: Callable[[str], bytes]) -> None:
 
     Without the plotting library, or to a place that cannot be written, it is wrong use.
     """
+    from overlapse.lint.atomic import write_bytes
     from overlapse.lint.picture import KINDS, PictureError
 
     kind = path.suffix[1:].lower()
     if kind not in KINDS:
         raise click.UsageError(f"{path}: a picture's name ends in .{', .'.join(KINDS)}")
     try:
-        drawn = make(kind)
-        with click.open_file(str(path), "wb", atomic=True) as stream:
-            stream.write(drawn)
+        write_bytes(path, make(kind))
     except PictureError as problem:
         raise click.UsageError(str(problem)) from problem
     except OSError as problem:

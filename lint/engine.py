@@ -153,10 +153,9 @@ def targets(
 
 def is_searched(inside: Path) -> bool:
     """Whether a search of a folder looks at a file; ``inside`` is its path from that folder."""
-    name = inside.name
-    is_ours = name.startswith("overlapse.") and name.endswith((".toml", ".json"))
     hidden = any(part.startswith(".") for part in inside.parts)
-    return not (is_ours or hidden) and inside.suffix.lower() not in _NOT_SEARCHED
+    is_ours = inside.name.startswith("overlapse.") and inside.suffix in (".toml", ".json")
+    return not (hidden or is_ours) and inside.suffix.lower() not in _NOT_SEARCHED
 
 
 def audit_file(

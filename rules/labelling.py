@@ -9,6 +9,7 @@ from overlapse.grammar.model import BasisSet, Block, letter_of
 from overlapse.rules.case import Case, is_orbital
 from overlapse.rules.claims import Claim
 from overlapse.rules.composition import lengths_of, primitives, show
+from overlapse.rules.digits import by_digits
 from overlapse.rules.families.candidates import candidates
 from overlapse.rules.families.counted import WITH_POTENTIALS, Counts, Expected, expected, plus
 from overlapse.rules.families.expected import Promise, promise
@@ -189,9 +190,14 @@ def _count_of_fits(blocks: list[Block], label: Designation) -> int:
 
 
 def best_label(members: BasisSet) -> Designation | None:
-    """The known label that fits a set best, if one fits most of its elements."""
+    """The known label that fits a set best, or one that its lengths spell, if it fits most."""
     labels = fitting_labels(members)
-    return labels[0][0] if labels else None
+    if labels:
+        return labels[0][0]
+    blocks = [block for block in members.blocks if block.complete and block.shells]
+    counts = {label: sum(fits(b, label) for b in blocks) for label in by_digits(blocks)}
+    best = max(counts, key=lambda label: counts[label], default=None)
+    return best if best is not None and counts[best] * 2 > len(blocks) else None
 
 
 # ---- all claims of a document

@@ -3,15 +3,13 @@
 A rule asks whether a claimed label is true; here nothing needs to be claimed.
 """
 
-from collections.abc import Iterator, Sequence
-from dataclasses import replace
+from collections.abc import Sequence
 from typing import NamedTuple
 
 from overlapse.grammar.designation import Designation
 from overlapse.grammar.model import BasisSet, Block
 from overlapse.rules.claims import Claim
-from overlapse.rules.composition import lengths_of
-from overlapse.rules.families.candidates import candidates
+from overlapse.rules.digits import by_digits
 from overlapse.rules.labelling import Verdict, fits, fitting_labels, verdict
 
 # Elements, or labels, that are told one by one; of the others only the number is.
@@ -43,7 +41,7 @@ class Ranking:
         self._claimed = [label for claim in claims for label in _meanings(claim)]
         # What fits a sample is counted over all elements; that is quick even for a hundred.
         known = [label for label, _, _ in fitting_labels(members)]
-        likely = [*known, *self._claimed, *_by_digits(self._blocks)]
+        likely = [*known, *self._claimed, *by_digits(self._blocks)]
         found = {label: sum(fits(block, label) for block in self._blocks) for label in likely}
         order = sorted(found, key=lambda label: (-found[label], label not in self._claimed))
         self._fits = {label: found[label] for label in order}
@@ -111,33 +109,6 @@ class Ranking:
 
 def _whole(members: BasisSet) -> list[Block]:
     return [block for block in members.blocks if block.complete and block.shells]
-
-
-def _by_digits(blocks: Sequence[Block]) -> list[Designation]:
-    """N-MPG labels with the digits that the contraction lengths of Li-Ne spell, known or not."""
-    spelled = {
-        digits for block in blocks if 3 <= block.atomic_number <= 10 for digits in _digits(block)
-    }
-    models = [c for c in candidates() if c.family == "N-MPG" and (c.core, c.valence) == (6, (3, 1))]
-    return [
-        replace(model, core=core, valence=valence)
-        for core, valence in sorted(spelled)
-        for model in models
-    ]
-
-
-def _digits(block: Block) -> Iterator[tuple[int, tuple[int, ...]]]:
-    """Digits that a block may spell: its loosest function is part of the valence, or diffuse."""
-    exponents = {
-        l: {e for _, f in block.functions_of(l) for e in f.exponents.tolist()} for l in (0, 1)
-    }
-    if not exponents[1] or not exponents[1] <= exponents[0]:
-        return
-    lengths = lengths_of(block)
-    for valence in (lengths[1], lengths[1][:-1]):
-        core, *rest = lengths[0]
-        if 1 < len(valence) < 4 and tuple(rest[: len(valence)]) == valence and core < 10:
-            yield core, valence
 
 
 def _meanings(claim: Claim) -> tuple[Designation, ...]:

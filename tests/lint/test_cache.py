@@ -11,6 +11,7 @@ import pytest
 from overlapse.lint import bulk, cache
 from overlapse.lint.cache import FILE, Cache, key_of, plain, restored, under
 from overlapse.lint.engine import FileAudit, Options, Target, audit_text
+from overlapse.lint.neighbours import SEAL, Beside
 from overlapse.lint.settings import Elementwise, Probe, Settings
 
 TEXT = "! overlapse: accept form.number for C because so\nC 0\nS 2 1.00\n 4.0 O.6\n 0.5 0.5\n****\n"
@@ -51,10 +52,9 @@ def test_a_key_holds_all_that_a_result_depends_on(
         options: Options = Options(),  # noqa: B008
         settings: Settings = plain_settings,
         searched: bool = False,
-        beside: tuple[Path, ...] = (),
     ) -> str:
         cache.begin()
-        return key_of(data, name, options, settings, searched, beside)
+        return key_of(data, name, options, settings, searched)
 
     keys = [
         key(),
@@ -75,9 +75,16 @@ def test_a_key_holds_all_that_a_result_depends_on(
     keys += [key(settings=probing), key(settings=comparing)]
     (reference / "b.basis").write_text(TEXT)
     keys += [key(settings=comparing)]
-    keys += [key(beside=(geometry,)), key(beside=(reference / "a.basis",))]
-    (tmp_path / cache.SEAL).write_text("{}")
+    keys += [key(options=Options(energies=True))]
+    seal = tmp_path / SEAL
+    seal.write_text("{}")
     keys += [key(name=str(tmp_path / "own.basis"))]
+    seal.write_text("[]")
+    keys += [key(name=str(tmp_path / "own.basis"))]
+    child, parent = tmp_path / "aug-cc-pvdz.basis", tmp_path / "cc-pvdz.basis"
+    for text in ("1", "2"):
+        parent.write_text(text)
+        keys += [key(name=str(child), options=Options(beside=Beside([child, parent])))]
     monkeypatch.setattr(cache, "code", lambda: "another program")
     keys += [key()]
     assert len(set(keys)) == len(keys)
