@@ -155,33 +155,43 @@ def _check(shelf: Shelf, site: Site) -> None:
             )
 
 
-def check_memory(found: Sequence[Task], limit: int | None) -> None:
-    """Raise TooLarge for a frame whose matrix needs more than ``limit`` bytes."""
-    for task in found:
-        wide = 2 if task.frame.cell is not None else 1
-        need = memory.needed(task.functions, wide=wide)
-        if limit is not None and need > limit:
-            raise TooLarge(
-                f"{task.geometry}, frame {task.frame.index}: {task.functions:,} functions need "
-                f"about {memory.told(need)} of memory, {memory.told(limit)} are allowed; "
-                "--memory allows more"
-            )
-
-
 # ---- measuring
 
 
-def measure(task: Task, shelf: Shelf, wanted: Wanted) -> Probe:
-    """Measure one frame."""
+def measure(task: Task, shelf: Shelf, wanted: Wanted, limit: int | None = None) -> Probe:
+    """Measure one frame within ``limit`` bytes, in sparse form where the dense matrix is too large.
+
+    Raises TooLarge where it does not fit in any form.
+    """
     frame = task.frame
     sites, _ = shelf.sites(frame)
     label = Label(task.geometry, frame.index, frame.title)
-    if frame.cell is None:
-        return probe(sites, wanted, label)
-    # Crystals are the rarer case, and their sums need more libraries.
-    from overlapse.rules.probing_lattice import probe_lattice
+    wide = 2 if frame.cell is not None else 1
+    fits = limit is None or memory.needed(task.functions, wide=wide) <= limit
+    if frame.cell is not None:
+        # Crystals are the rarer case, and their sums need more libraries.
+        from overlapse.rules.probing_lattice import probe_lattice
 
-    return probe_lattice(sites, frame.cell, frame.periodic, wanted, label)
+        if not fits:
+            raise _too_large(task, wide, limit or 0)
+        return probe_lattice(sites, frame.cell, frame.periodic, wanted, label)
+    if fits:
+        return probe(sites, wanted, label)
+    from overlapse.rules.physics.integrals import TooLarge as TooLargeInAnyForm
+    from overlapse.rules.probing_large import probe_large
+
+    try:
+        return probe_large(sites, wanted, label, limit or 0)
+    except TooLargeInAnyForm as problem:
+        raise _too_large(task, wide, limit or 0) from problem
+
+
+def _too_large(task: Task, wide: int, limit: int) -> TooLarge:
+    need = memory.needed(task.functions, wide=wide)
+    return TooLarge(
+        f"{task.geometry}, frame {task.frame.index}: {task.functions:,} functions need about "
+        f"{memory.told(need)} of memory, {memory.told(limit)} are allowed; --memory allows more"
+    )
 
 
 # ---- judging
@@ -241,8 +251,8 @@ def screen_files(
     made = shelf(documents, chosen, wanted=label, spherical=spherical)
     read = [geometries.read(path, unit=unit) for path in geometry_files([geometry])]
     found, audits = tasks(made, read)
-    check_memory(found, memory.allowed())
-    return screened(made, [measure(task, made, wanted) for task in found], audits)
+    limit = memory.allowed()
+    return screened(made, [measure(task, made, wanted, limit) for task in found], audits)
 
 
 def screen(*basis: str | os.PathLike[str], on: str | os.PathLike[str], **options: Any) -> Screening:
