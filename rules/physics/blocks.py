@@ -43,12 +43,14 @@ class Sparse(NamedTuple):
 class _Part(NamedTuple):
     """Overlaps of some pairs of contractions of some pairs of atoms.
 
-    values: shape (k, c, c', p).  rows, columns: the first function of each, shape (k, p).
+    values: shape (k, c, c', p).  rows, columns: the first function of each, shape (k, p).  own:
+    the pairs are of atoms with themselves, so that each element and its mirror are there.
     """
 
     values: Floats
     rows: Ints
     columns: Ints
+    own: bool
 
 
 def sparse_overlap(
@@ -71,24 +73,35 @@ def sparse_overlap(
         size = np.abs(part.values)
         keep = size >= drop
         k, c, d, p = np.nonzero(keep)
+        values = part.values[keep]
         rows = (part.rows[k, p] + c).astype(np.int32)
         columns = (part.columns[k, p] + d).astype(np.int32)
-        held.append((part.values[keep], rows, columns))
+        held.append((values, rows, columns))
         size[keep] = 0.0
         _, height, width, _ = size.shape
-        for first, count, axis in ((part.rows, height, 2), (part.columns, width, 1)):
+        sides = [(part.rows, height, 2)]
+        if not part.own:
+            held.append((values, columns, rows))
+            sides.append((part.columns, width, 1))
+        for first, count, axis in sides:
             where = first[:, None, :] + np.arange(count)[:, None]
             missing += np.bincount(where.ravel(), size.sum(axis=axis).ravel(), frame.size)
-        stored += len(rows)
-        # Lists, one half, its transpose, and the whole: 16, 12, 12 and 24 bytes.
-        if memory is not None and 64 * stored + WORKING > memory:
-            raise TooLarge("A sparse matrix (so far)", 64 * stored + WORKING, memory)
+        stored += len(rows) * (1 if part.own else 2)
+        # Lists, one column of them joined, and the matrix: 16, 8 and 12 bytes.
+        if memory is not None and 36 * stored + WORKING > memory:
+            raise TooLarge("A sparse matrix (so far)", 36 * stored + WORKING, memory)
     shape = (frame.size, frame.size)
-    if not held:
-        return Sparse(sparse.csr_array(shape), 0.0)
-    values, at, to = (np.concatenate(column) for column in zip(*held, strict=True))
-    half = sparse.coo_array((values, (at, to)), shape=shape).tocsr()
-    return Sparse(half + half.T.tocsr(), float(missing.max()))
+    columns_of = list(zip(*held, strict=True)) or [(), (), ()]
+    held.clear()
+    values, at, to = (_joined(columns_of) for _ in range(3))
+    matrix = sparse.coo_array((values, (at, to)), shape=shape)
+    matrix.has_canonical_format = True  # no element comes twice: that need not be looked for
+    return Sparse(matrix.tocsr(), float(missing.max(initial=0.0)))
+
+
+def _joined(columns: list[Any]) -> Any:
+    """The first of the columns in one piece, and its pieces forgotten."""
+    return np.concatenate([np.zeros(0, dtype=np.int32), *columns.pop(0)])
 
 
 def _parts(frame: Frame, drop: float, progress: Progress | None) -> Iterator[_Part]:
@@ -112,20 +125,20 @@ def _of_groups(frame: Frame, group: GroupPair, spans: Floats, some: Pairs) -> It
     spans = spans[order]
     first, second = np.divmod(order, len(group.right.place))
     one, two = group.left.place[first], group.right.place[second]
+    own = int(np.searchsorted(some.left != some.right, True))
     end = int(np.searchsorted(some.square, spans[0] ** 2))
     start = 0
     while start < end:
         shortest = float(np.sqrt(some.square[start]))
         active = max(1, int(np.searchsorted(-spans, -shortest)))
         size = active * group.left.components * group.right.components
-        part = slice(start, min(end, start + int(np.clip(BATCH // size, 16, 4000))))
+        stop = min(own if start < own else end, start + int(np.clip(BATCH // size, 16, 4000)))
+        part = slice(start, stop)
         near = solid_harmonics(some.vectors[part], group.top)
-        values = group.chosen(order[:active], some.square[part], near, shortest)
-        # Elements of an atom with itself are added to their own transposes.
-        values[..., some.left[part] == some.right[part]] *= 0.5
         yield _Part(
-            values,
+            group.chosen(order[:active], some.square[part], near, shortest),
             frame.starts[some.left[part]] + one[:active, None],
             frame.starts[some.right[part]] + two[:active, None],
+            start < own,
         )
-        start = part.stop
+        start = stop

@@ -22,7 +22,7 @@ from overlapse.rules.physics.placed import Ints, Placed
 LIMIT = 1e-15  # bound of what screening leaves out of a matrix element
 PANEL = 100_000  # pairs of atoms that are looked at together
 BATCH = 500_000  # elements that are worked out together
-WORKING = 64 * 2**20  # bytes that buffers take beside the matrix
+WORKING = 32 * 2**20  # bytes that buffers take beside the matrix
 
 Progress = Callable[[float], None]
 
@@ -104,7 +104,7 @@ class Batch(NamedTuple):
 
 
 class Pairs(NamedTuple):
-    """Pairs of atoms by rising distance.
+    """Pairs of atoms by rising distance, first those of an atom with itself.
 
     left, right: indices, shape (p,).  vectors: from the right to the left atom, shape (p, 3), bohr.
     square: their squared lengths.  share: elements of the matrix that these atoms have in all.
@@ -160,7 +160,9 @@ class Frame:
             vectors = self.positions[one] - self.positions[two]
             square = np.einsum("px,px->p", vectors, vectors)
             order = np.flatnonzero(square < reach**2)
-            order = order[np.argsort(square[order], kind="stable")]
+            # An atom with itself before others, even if another has the same place.
+            key = np.where(one == two, -1.0, square)[order]
+            order = order[np.argsort(key, kind="stable")]
             yield Pairs(
                 one[order],
                 two[order],

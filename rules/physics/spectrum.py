@@ -12,9 +12,10 @@ All functions take real symmetric and complex Hermitian matrices, shape (n, n).
 """
 
 from collections.abc import Callable, Sequence
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
+import numpy.typing as npt
 from scipy.linalg import eigh, eigvalsh, get_lapack_funcs
 from scipy.sparse.linalg import ArpackError, LinearOperator, eigsh
 
@@ -23,6 +24,7 @@ from overlapse.rules.physics.inertia import Matrix, Part, counts_below, factored
 
 LADDER = (1e-4, 1e-5, 1e-6, 1e-7, 1e-8)
 SMALL = 700  # up to this size all eigenvalues are the cheapest way
+COPIES = 2.5  # of a dense matrix: what its spectrum takes at most, itself included
 DIFFUSE = (0.3, 0.6)  # bohr**-2: functions below are tried first
 
 
@@ -65,6 +67,33 @@ def spectrum(matrix: Matrix, ladder: Sequence[float] = LADDER) -> Spectrum:
     return Spectrum(low, high, _condition(low, high), below, n, method)
 
 
+def spectrum_of_sparse(
+    matrix: Any, exponents: Floats, *, memory: int, ladder: Sequence[float] = LADDER
+) -> Spectrum:
+    """As `spectrum`, of a `scipy.sparse` matrix, within so many bytes.
+
+    Where the dense matrix and its factor fit, they are made: sparse factors fill up and are slower.
+    Else the most diffuse functions that fit are judged alone: then ``smallest`` is an upper bound,
+    ``below`` and ``condition`` are lower bounds, and ``method`` says so.  exponents: bohr**-2,
+    shape (n,), of `placed.Functions`.
+    """
+    n = matrix.shape[0]
+    fits = int((memory / (COPIES * 8)) ** 0.5)
+    if n <= fits:
+        return spectrum(matrix.toarray(), ladder)
+    order = np.sort(np.argsort(exponents, kind="stable")[:fits])
+    part = spectrum(matrix[order][:, order].toarray(), ladder)
+    high = _largest(matrix)
+    return Spectrum(
+        part.smallest,
+        high,
+        _condition(part.smallest, high),
+        part.below,
+        n,
+        f"bounds from the {fits} most diffuse of {n} functions, by {part.method}",
+    )
+
+
 def _from_all(values: Floats, ladder: Sequence[float]) -> Spectrum:
     below = {step: int(np.searchsorted(values, step)) for step in ladder}
     low, high = (float(values[0]), float(values[-1])) if len(values) else (1.0, 1.0)
@@ -105,12 +134,22 @@ def largest(matrix: Matrix) -> float:
     if len(matrix) > SMALL:
         try:
             found = eigsh(
-                matrix, 1, which="LA", v0=_start(matrix), tol=1e-6, return_eigenvectors=False
+                matrix,
+                1,
+                which="LA",
+                v0=_start(len(matrix), matrix.dtype),
+                tol=1e-6,
+                return_eigenvectors=False,
             )
             return float(found[0])
         except ArpackError:
             pass
     return float(eigvalsh(matrix)[-1]) if len(matrix) else 1.0
+
+
+def _largest(matrix: Any) -> float:
+    start = _start(matrix.shape[0], matrix.dtype)
+    return float(eigsh(matrix, 1, which="LA", v0=start, tol=1e-6, return_eigenvectors=False)[0])
 
 
 def smallest(matrix: Matrix) -> float:
@@ -137,7 +176,12 @@ def _inverse_lanczos(matrix: Matrix, count: int) -> tuple[Floats, Matrix] | None
     inverse = LinearOperator((n, n), matvec=_solver(factor), dtype=matrix.dtype)
     try:
         values, vectors = eigsh(
-            inverse, count, which="LM", v0=_start(matrix), tol=1e-7, ncv=max(20, 2 * count + 1)
+            inverse,
+            count,
+            which="LM",
+            v0=_start(len(matrix), matrix.dtype),
+            tol=1e-7,
+            ncv=max(20, 2 * count + 1),
         )
     except ArpackError:
         return None
@@ -157,9 +201,9 @@ def _solver(factor: Matrix) -> Callable[[Matrix], Matrix]:
     return solve
 
 
-def _start(matrix: Matrix) -> Matrix:
+def _start(n: int, dtype: npt.DTypeLike) -> Matrix:
     """A start without any symmetry that an eigenvector could be orthogonal to; always the same."""
-    return np.random.default_rng(len(matrix)).normal(size=len(matrix)).astype(matrix.dtype)
+    return np.random.default_rng(n).normal(size=n).astype(dtype)
 
 
 def lowest(matrix: Matrix, below: float) -> tuple[Floats, Matrix]:

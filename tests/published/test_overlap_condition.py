@@ -13,10 +13,18 @@ import pytest
 from overlapse.grammar.model import Block, Floats, Shell
 from overlapse.grammar.reading import read
 from overlapse.rules.physics import spectrum as condition
+from overlapse.rules.physics.blocks import sparse_overlap
 from overlapse.rules.physics.integrals import overlap
 from overlapse.rules.physics.placed import Placed, lay_out
 from overlapse.rules.physics.pruning import chosen, shells_to_drop
-from overlapse.rules.physics.spectrum import exceeds, largest, lowest, smallest, spectrum
+from overlapse.rules.physics.spectrum import (
+    exceeds,
+    largest,
+    lowest,
+    smallest,
+    spectrum,
+    spectrum_of_sparse,
+)
 
 ANGSTROM = 1.0 / 0.529177210903  # CODATA 2018
 
@@ -212,6 +220,36 @@ def test_large_overlap_matrices(monkeypatch: pytest.MonkeyPatch) -> None:
         assert not verdict.exceeds
         assert "bound from" in verdict.method
         monkeypatch.undo()
+
+
+def test_sparse_matrices_within_memory() -> None:
+    atoms = _chain(1.9, 60)
+    exponents = lay_out(atoms).exponent
+    found = sparse_overlap(atoms)
+    exact = np.linalg.eigvalsh(overlap(atoms))
+    whole = spectrum_of_sparse(found.matrix, exponents, memory=2**30)
+    assert whole.smallest == pytest.approx(exact[0], abs=found.bound + 1e-15)
+    part = spectrum_of_sparse(found.matrix, exponents, memory=3_000_000)
+    assert exact[0] < part.smallest < 20.0 * exact[0]
+    assert part.largest == pytest.approx(exact[-1], rel=1e-5)
+    assert "bounds from the 387 most diffuse of 540 functions" in part.method
+    for step, count in part.below.items():
+        assert count <= (exact < step).sum()
+
+
+def test_two_atoms_at_one_place() -> None:
+    """A ghost on top of its atom: every eigenvalue comes twice as large, and zero as often."""
+    atoms = _water("def2-svp.dat")
+    matrix = overlap([*atoms, *atoms])
+    single = np.linalg.eigvalsh(overlap(atoms))
+    values = np.linalg.eigvalsh(matrix)
+    assert values[24:] == pytest.approx(2.0 * single, abs=1e-13)
+    assert np.abs(values[:24]).max() < 1e-14
+    found = spectrum(matrix)
+    assert found.below == dict.fromkeys(condition.LADDER, 24)
+    assert len(chosen(matrix, 1e-7)) == 24
+    sparse = sparse_overlap([*atoms, *atoms], drop=1e-14).matrix.toarray()
+    assert np.abs(sparse - matrix).max() < 1e-13
 
 
 def test_no_functions_at_all() -> None:
