@@ -18,6 +18,8 @@ from overlapse.lint.common import (
     a_layout,
     a_report,
     draw,
+    like_a_layout,
+    like_a_report,
     output,
 )
 
@@ -158,9 +160,20 @@ def _a_fraction(context: click.Context, parameter: click.Parameter, value: float
     "--memory", "limit", callback=_a_size, help="Memory to use at most, 4G [3/4 of what is free]."
 )
 @click.option("--jobs", type=click.IntRange(1), help="Processes for many frames [one per core].")
-@click.option("--report", callback=a_report, default="text", help="text, lines, json or sarif.")
+@click.option(
+    "--report",
+    callback=a_report,
+    shell_complete=like_a_report,
+    default="text",
+    help="text, lines, json, sarif or html (extra: report).",
+)
 @click.option("--out", type=click.Path(path_type=Path), help="Write the report to this file.")
-@click.option("--layout", callback=a_layout, help="Read all basis files as this layout.")
+@click.option(
+    "--layout",
+    callback=a_layout,
+    shell_complete=like_a_layout,
+    help="Read all basis files as this layout.",
+)
 @click.option("--named", default="<stdin>", help="File name to report for standard input (-).")
 @click.option("--fail-at", type=SEVERITIES, help="Level from which the screening fails [warning].")
 @click.option("--least", type=SEVERITIES, default="note", help="Least level to show [note].")
@@ -195,6 +208,12 @@ def screen(
 
     Exit status: 0 nothing found at the failing level, 1 something found, 2 wrong use or settings,
     3 a file could not be read.
+
+    \b
+    Examples:
+      overlapse screen c.basis --on molecule.xyz
+      overlapse screen c.basis h.basis --on molecules/ --picture spectra.svg
+      overlapse screen --use C=c.basis --use H=h.basis --on crystal.extxyz
     """
     from overlapse.lint.engine import LEVELS
     from overlapse.lint.scanning import measure_all
