@@ -342,6 +342,9 @@ def _explained(ensemble: Ensemble, own: Steps, times: float, alone: float) -> Ve
         return None
     is_clear = verdict.significance >= (times if expected.others >= 3 else alone)
     explains = verdict.after < max(_LEFT * min(verdict.before, 1e4), 0.05 * verdict.before)
+    if expected.others < 3:
+        # Without neighbours the rest of the atom must be in order to be believed.
+        explains = verdict.after < 10.0 * verdict.count
     is_sharp = abs(verdict.change) > 4.0 * verdict.error
     return verdict if is_clear and explains and is_sharp else None
 

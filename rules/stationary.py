@@ -25,6 +25,7 @@ from overlapse.rules.physics.trends import quantile
 _FINEST = 3e-4  # steps of the best published numbers
 _NOISE = 1e-7  # of a derivative, hartree: what optimisations of sets leave at best
 _LONE = 1e-5  # the same for an element that has no neighbours to compare with
+_STRANGE = 4e-3  # added to the scatter of elements that are of the period, but not of the row
 _SOFT = 1e-5  # second derivatives below it, hartree, tell nothing
 
 
@@ -104,13 +105,15 @@ class Usual:
         return away
 
 
-def usual(own: Steps, others: Sequence[Steps], file: Sequence[Steps]) -> Usual:
-    """From the neighbours of one pattern, or where they are few from the whole set.
+def usual(
+    own: Steps, others: Sequence[Steps], mates: Sequence[Steps], file: Sequence[Steps]
+) -> Usual:
+    """From the neighbours of one pattern, or where they are few from the period or the whole set.
 
-    others: steps of neighbours with the same numbers, this atom's not among them.  file: those of
-    all other atoms of the set.
+    others: steps of neighbours with the same numbers, this atom's not among them.  mates: those of
+    the whole period with the same numbers.  file: those of all other atoms of the set.
     """
-    alike = np.array([*(other.stiffness for other in others), own.stiffness])
+    alike = np.array([*(other.stiffness for other in others or mates), own.stiffness])
     stiffness = np.maximum(np.median(alike, axis=0), _SOFT)
     blur = own.blur / stiffness
     if len(others) >= 3:
@@ -119,8 +122,13 @@ def usual(own: Steps, others: Sequence[Steps], file: Sequence[Steps]) -> Usual:
             places = [at for at, each in enumerate(own.kinds) if each == kind]
             # A few neighbours may agree by chance.
             spread[places] = np.hypot(spread[places], 0.5 * np.median(spread[places]))
+    elif len(mates) >= 3:
+        centre, spread = _along_row(own, mates, stiffness)
+        spread = 3.0 * spread + _STRANGE
+        blur = np.hypot(blur, _LONE / stiffness)
+        spread[_spare(own)] += 1.0
     else:
-        centre, spread = np.zeros(len(own.numbers)), _of_kind(own, file)
+        centre, spread = np.zeros(len(own.numbers)), _of_kind(own, file, stiffness)
         for other in others:
             spread = np.maximum(spread, 2.0 * np.abs(other.gradient / stiffness))
         blur = np.hypot(blur, _LONE / stiffness)
@@ -147,17 +155,26 @@ def _along_row(own: Steps, others: Sequence[Steps], stiffness: Floats) -> tuple[
     return level + slope * here, spread * (1.0 + beyond) + 0.5 * beyond * np.abs(slope)
 
 
-def _of_kind(own: Steps, file: Sequence[Steps]) -> Floats:
-    """How large the steps of the same kind of number usually are in the set."""
-    pooled: dict[tuple[int, bool], list[float]] = {}
+def _of_kind(own: Steps, file: Sequence[Steps], stiffness: Floats) -> Floats:
+    """How large the steps of the same kind of number can be by what the set shows elsewhere.
+
+    Either the steps or the gradients of other elements tell, whichever is the narrower: stiff
+    numbers have small steps, soft ones small gradients.
+    """
+    steps: dict[tuple[int, bool], list[float]] = {}
+    slopes: dict[tuple[int, bool], list[float]] = {}
     for other in file:
-        steps = np.abs(other.gradient) / np.maximum(other.stiffness, _SOFT)
-        for kind, step in zip(other.kinds, steps.tolist(), strict=True):
-            pooled.setdefault(kind, []).append(step)
+        sizes = np.abs(other.gradient)
+        ratios = sizes / np.maximum(other.stiffness, _SOFT)
+        for kind, size, ratio in zip(other.kinds, sizes.tolist(), ratios.tolist(), strict=True):
+            steps.setdefault(kind, []).append(ratio)
+            slopes.setdefault(kind, []).append(size)
     spread = np.full(len(own.numbers), 0.05)
     for at, kind in enumerate(own.kinds):
-        if len(pooled.get(kind, ())) >= 8:
-            spread[at] = 0.01 + 3.0 * quantile(pooled[kind], 0.9)
+        if len(steps.get(kind, ())) >= 8:
+            by_steps = 0.01 + 3.0 * quantile(steps[kind], 0.9)
+            by_slopes = 0.004 + 4.0 * quantile(slopes[kind], 0.9) / float(stiffness[at])
+            spread[at] = min(by_steps, by_slopes)
     return spread
 
 
