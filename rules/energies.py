@@ -99,14 +99,13 @@ class Ensemble:
         return [s for other in self.neighbours(atom) if (s := self.steps(other)) is not None]
 
     def mates(self, atom: Atom) -> list[Steps]:
-        """Steps of the other atoms of the period that have the same numbers in the same places."""
+        """Steps of the other atoms of the period."""
         z = atom.block.atomic_number
         return [
             steps
             for other in self.atoms
             if other.block.atomic_number != z
             and period_of(other.block.atomic_number) == period_of(z)
-            and self._pattern[id(other)][2:] == self._pattern[id(atom)][2:]
             and (steps := self.steps(other)) is not None
         ]
 
