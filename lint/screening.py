@@ -129,10 +129,11 @@ def _lacks(
         told.add(atom.symbol)
         source = geometry.source
         start = source.starts[atom.line - 1] + atom.column - 1 if source.text else 0
+        word = source.text[start : start + 40].split(maxsplit=1)[0] if source.text else ""
         yield Fault(
             "overlap.molecule",
             shelf.because(atom),
-            (start, start + len(atom.symbol)),
+            (start, start + len(word)),
             element=atom.symbol,
             remedy=f"name a file that has {atom.symbol}: another one, or --use {atom.symbol}=FILE",
         )
@@ -244,7 +245,9 @@ def screen_files(
     return screened(made, [measure(task, made, wanted) for task in found], audits)
 
 
-def probe_files(basis: Sequence[Path], geometry: Path, **options: Any) -> dict[str, list[Finding]]:
-    """Findings of basis files in one geometry, by the path of the file; as `screen_files`."""
-    audits = screen_files(basis, geometry, **options).audits
-    return {audit.path: list(audit.findings) for audit in audits}
+def screen(*basis: str | os.PathLike[str], on: str | os.PathLike[str], **options: Any) -> Screening:
+    """Measure basis files in the geometries of a file or folder, and judge what was measured.
+
+    ``options`` are those of `screen_files`, and so are the errors raised.
+    """
+    return screen_files([Path(path) for path in basis], Path(on), **options)

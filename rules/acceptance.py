@@ -172,7 +172,7 @@ def acceptance(case: Case) -> Iterator[Finding]:
         )
     for accepted in accepted_here:
         # Without the rules' findings (one rule tried alone) nothing can be said about their use.
-        judged = [name for name in accepted.rules if name in case.found]
+        judged = [name for name in accepted.rules if name in case.found and _can_find(case, name)]
         if judged and not any(accepted.covers(f) for name in judged for f in case.found[name]):
             yield case.at_line(
                 accepted.line,
@@ -180,3 +180,8 @@ def acceptance(case: Case) -> Iterator[Finding]:
                 f"{', '.join(accepted.rules)} found nothing here that this comment could accept",
                 remedy="take the comment out",
             )
+
+
+def _can_find(case: Case, name: str) -> bool:
+    """Whether a rule could find something: those about geometries need measurements."""
+    return bool(case.probes) or not rules()[name].explanation.geometry

@@ -5,9 +5,18 @@ from itertools import pairwise
 
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
-from overlapse.rules.overlap_words import at_culprit, groups_of, others, plain, remedy, witnesses
+from overlapse.rules.overlap_words import (
+    at_culprit,
+    first_remedy,
+    groups_of,
+    others,
+    plain,
+    witnesses,
+)
 from overlapse.rules.probe import NEAR, Probe
 from overlapse.rules.registry import rule
+
+_AWAY = "set the threshold away from the eigenvalue and state it with the results"
 
 
 @rule("overlap.edge")
@@ -71,7 +80,7 @@ def edge(case: Case) -> Iterator[Finding]:
             measured=_nearest(first),
             limit=first.threshold,
             witnesses=witnesses(first),
-            remedy=remedy(first),
+            remedy=f"{first_remedy(first)}; or {_AWAY}",
         )
 
 
@@ -113,5 +122,5 @@ def _crossing(case: Case, series: list[Probe], low: Probe, high: Probe) -> Findi
         measured=low.kept,
         limit=high.kept,
         witnesses=witnesses(low),
-        remedy=remedy(low),
+        remedy=f"{first_remedy(low)}; or {_AWAY}",
     )

@@ -10,6 +10,7 @@ from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
 from overlapse.rules.overlap_words import (
     at_culprit,
+    first_remedy,
     groups_of,
     ladder,
     others,
@@ -163,7 +164,7 @@ def outlook(case: Case) -> Iterator[Finding]:
             measured=worst.outlook.measure,
             limit=worst.outlook.limit,
             witnesses=witnesses(worst, 1),
-            remedy=remedy(worst),
+            remedy=f"{first_remedy(worst)}; or make sure that the program removes combinations",
         )
 
 

@@ -64,7 +64,7 @@ def pair(case: Case, *, strained: float = 1e-7, tight: float = 1e-6) -> Iterator
     Source: R. A. Horn, C. R. Johnson, Matrix Analysis, Cambridge University Press 1985, section
     4.3; radii: B. Cordero et al., Dalton Trans. 2008, 2832 (from memory).
 
-    Limits: strained: warning below it.  tight: note below it.
+    Limits: strained: warning below it for a pair.  tight: note below it for a pair or the cube.
 
     Remedy: leave out one of the functions named, or screen the molecules that are meant
     (overlapse screen) and drop what is named there.
@@ -115,7 +115,8 @@ def pair(case: Case, *, strained: float = 1e-7, tight: float = 1e-6) -> Iterator
             bound = min(worst.pair, worst.cube)
             if bound > _OWN * worst.own:
                 continue  # what one centre shows by itself has a rule of its own
-            if bound < strained <= worst.own and is_orbital(members):
+            # Eight like atoms so close are rare, two are not.
+            if worst.pair < strained <= worst.own and is_orbital(members):
                 found.append(_finding(case, worst, "warning", strained))
             elif bound < tight <= worst.own:
                 found.append(_finding(case, worst, "note", tight))
@@ -124,14 +125,14 @@ def pair(case: Case, *, strained: float = 1e-7, tight: float = 1e-6) -> Iterator
 
 def _finding(case: Case, worst: _Worst, severity: Severity, limit: float) -> Finding:
     atom, partner = worst.atom, worst.partner
-    by_cube = worst.cube < worst.pair
+    by_cube = worst.cube < worst.pair and severity == "note"
     distance = 2.0 * atom.radius if by_cube else atom.radius + partner.radius
     what = (
         f"a cube of eight {atom.block.symbol} atoms with edges of {distance:.2f} bohr"
         if by_cube
         else f"{atom.block.symbol} and {partner.block.symbol} at {distance:.2f} bohr"
     )
-    bound = min(worst.pair, worst.cube)
+    bound = worst.cube if by_cube else worst.pair
     exponents = [exponent for _, exponent in atom.functions]
     return case.at_shell(
         atom.block,

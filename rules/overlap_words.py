@@ -73,10 +73,18 @@ def others(group: Sequence[Probe], what: str) -> str:
 
 def remedy(probe: Probe) -> str:
     """What would help, the surest first."""
-    found = list(_remedies(probe))
+    return "; or ".join(_all_remedies(probe)) or "take one of the functions named out"
+
+
+def first_remedy(probe: Probe) -> str:
+    """The surest help alone, for findings beside the one that tells all."""
+    return next(_all_remedies(probe), "take one of the functions named out")
+
+
+def _all_remedies(probe: Probe) -> Iterator[str]:
+    yield from _remedies(probe)
     if not probe.drop and probe.kept < probe.spectrum.functions:
-        found.append(f"--prune {plain(10.0 * probe.threshold)} names functions to drop")
-    return "; or ".join(found) or "take one of the functions named out"
+        yield f"--prune {plain(10.0 * probe.threshold)} names functions to drop"
 
 
 def _remedies(probe: Probe) -> Iterator[str]:

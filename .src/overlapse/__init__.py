@@ -1,7 +1,8 @@
 """Overlapse judges Gaussian basis-set files before cluster time is spent on them.
 
 The public face is small: `read` turns a file into a `Document`, `audit` judges one and returns
-`Finding` objects.  Both are loaded on first use, so that importing the package stays cheap.
+`Finding` objects, `screen` measures its overlap in real geometries.  All are loaded on first use,
+so that importing the package stays cheap.
 """
 
 from typing import TYPE_CHECKING, Any
@@ -10,14 +11,16 @@ if TYPE_CHECKING:
     from overlapse.grammar.model import Document
     from overlapse.grammar.reading import read
     from overlapse.lint.engine import audit
+    from overlapse.lint.screening import screen
     from overlapse.rules.finding import Finding
 
-__all__ = ["Document", "Finding", "audit", "read"]
+__all__ = ["Document", "Finding", "audit", "read", "screen"]
 
 _HOME = {
     "Document": "overlapse.grammar.model",
     "read": "overlapse.grammar.reading",
     "audit": "overlapse.lint.engine",
+    "screen": "overlapse.lint.screening",
     "Finding": "overlapse.rules.finding",
 }
 

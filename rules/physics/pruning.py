@@ -52,34 +52,33 @@ class Pruning(NamedTuple):
     condition: float
 
 
-def chosen(matrix: Matrix, tolerance: float) -> Ints:
+def chosen(matrix: Matrix, tolerance: float, among: Ints | None = None) -> Ints:
     """Indices of the functions kept, rising; the smallest eigenvalue of their part of the matrix is
     at least a tenth of ``tolerance``.
 
-    matrix: real symmetric or complex Hermitian, shape (n, n), positive diagonal.
+    matrix: real symmetric or complex Hermitian, shape (n, n), positive diagonal.  among: choose
+    among these functions only, shape (m,).
     """
     scale = 1.0 / np.sqrt(np.real(np.diagonal(matrix)))
-    # Large matrices are not copied more often than they have to be.
+    # Large matrices are not copied more often than they have to be: one copy at a time.
     unit = matrix if np.abs(scale - 1.0).max() < 1e-12 else matrix * scale[:, None] * scale
-    first = np.argsort([np.abs(row).sum() for row in unit], kind="stable")
+    given = np.arange(len(unit)) if among is None else among
+    sums = [np.abs(unit[row, given]).sum() for row in given]
+    first = given[np.argsort(sums, kind="stable")]
     order, pivots = pivoted(unit[np.ix_(first, first)], overwrite=True)
     picked = first[order]
     rank = int(np.searchsorted(-pivots, -tolerance))
-    if not rank or _smallest_of(unit, picked[:rank]) >= SHARE * tolerance:
+    if not rank or smallest(unit, picked[:rank]) >= SHARE * tolerance:
         return np.sort(picked[:rank])
     # The smallest eigenvalue never rises when a function joins: halving finds the longest list.
     good, bad = 1, rank
     while bad - good > 1:
         middle = (good + bad + 1) // 2 if bad - good < 8 else bad - max(1, (bad - good) // 8)
-        if _smallest_of(unit, picked[:middle]) >= SHARE * tolerance:
+        if smallest(unit, picked[:middle]) >= SHARE * tolerance:
             good = middle
         else:
             bad = middle
     return np.sort(picked[:good])
-
-
-def _smallest_of(matrix: Matrix, kept: Ints) -> float:
-    return smallest(matrix[np.ix_(kept, kept)])
 
 
 def shells_to_drop(
@@ -99,8 +98,7 @@ def shells_to_drop(
     kept = np.arange(len(functions.atom))
     drops: list[Drop] = []
     while len(kept):
-        part = matrix if len(kept) == len(matrix) else matrix[np.ix_(kept, kept)]
-        lost = np.setdiff1d(kept, kept[chosen(part, tolerance)])
+        lost = np.setdiff1d(kept, chosen(matrix, tolerance, kept))
         if not len(lost):
             break
         share = np.bincount(owner[lost], minlength=len(sizes)) / sizes
@@ -112,8 +110,8 @@ def shells_to_drop(
         kept = kept[~np.isin(owner[kept], gone)]
     if per == "element":
         drops = [drop._replace(atom=None) for drop in drops]
-    part = matrix if len(kept) == len(matrix) else matrix[np.ix_(kept, kept)]
-    low, high = smallest(part), largest(part)
+    low = smallest(matrix, kept)
+    high = largest(matrix if len(kept) == len(matrix) else matrix[np.ix_(kept, kept)])
     return Pruning(kept, tuple(drops), low, high / low if low > 0.0 else float("inf"))
 
 

@@ -152,23 +152,28 @@ def _largest(matrix: Any) -> float:
     return float(eigsh(matrix, 1, which="LA", v0=start, tol=1e-6, return_eigenvectors=False)[0])
 
 
-def smallest(matrix: Matrix) -> float:
+def smallest(matrix: Matrix, among: Part | None = None) -> float:
     """The smallest eigenvalue; by Lanczos on the inverse where the matrix is large.
+
+    among: of the part with these rows and columns, of which one copy at a time is made.
 
     Where the matrix itself has no Cholesky factor (an eigenvalue at the limit of rounding, or a
     negative one) it is shifted up until it has; the shift costs no more digits than were there.
     """
-    if len(matrix) > SMALL:
-        found = _inverse_lanczos(matrix, 1)
+    if len(matrix if among is None else among) > SMALL:
+        found = _inverse_lanczos(matrix, 1, among)
         if found is not None:
             return float(found[0][0])
-    return float(eigvalsh(matrix)[0]) if len(matrix) else 1.0
+    part = matrix if among is None else matrix[np.ix_(among, among)]
+    return float(eigvalsh(part)[0]) if len(part) else 1.0
 
 
-def _inverse_lanczos(matrix: Matrix, count: int) -> tuple[Floats, Matrix] | None:
-    n, shift = len(matrix), 0.0
+def _inverse_lanczos(
+    matrix: Matrix, count: int, among: Part | None = None
+) -> tuple[Floats, Matrix] | None:
+    n, shift = len(matrix if among is None else among), 0.0
     for shift in (0.0, 1e-11, 1e-8, 1e-4):
-        factor = factored(shifted(matrix, -shift))
+        factor = factored(shifted(matrix, -shift, among))
         if factor is not None:
             break
     else:
@@ -179,7 +184,7 @@ def _inverse_lanczos(matrix: Matrix, count: int) -> tuple[Floats, Matrix] | None
             inverse,
             count,
             which="LM",
-            v0=_start(len(matrix), matrix.dtype),
+            v0=_start(n, matrix.dtype),
             tol=1e-7,
             ncv=max(20, 2 * count + 1),
         )

@@ -5,6 +5,8 @@ from pathlib import Path
 import numpy as np
 import pytest
 from broken import MARK
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
 from overlapse.grammar.atomnames import Name, name_of
 from overlapse.grammar.geometry import BOHR, Frame, Geometry, GeometryError, read, read_bytes
@@ -222,3 +224,37 @@ def test_a_flood_of_faults_is_cut_off() -> None:
     rows = "".join(f"Qq {k} 0 0\n" for k in range(500))
     geometry = _read(f"500\nx\n{rows}")
     assert len(geometry.faults) < 30
+
+
+CELL = 'Lattice="4 0 0 0 4 0 0 0 4" pbc="T T F" Properties=species:S:1:pos:R:3 units=bohr'
+
+
+@settings(deadline=None, max_examples=300)
+@given(
+    st.lists(
+        st.tuples(
+            st.integers(0, 10**6),
+            st.sampled_from(
+                ["", " ", "\n", "\t", '"', "=", ":", "9", "-", "e", "H", "\u2212", "\x00"]
+            ),
+            st.integers(0, 12),
+        ),
+        max_size=8,
+    )
+)
+def test_damaged_geometries_never_raise_anything_else(cuts: list[tuple[int, str, int]]) -> None:
+    """Pieces of a sound file are replaced; reading it finds faults, or says that it is none."""
+    text = WATER + "\n" + WATER.replace("water", CELL)
+    for at, piece, length in cuts:
+        at %= len(text) + 1
+        text = text[:at] + piece + text[at + length :]
+    try:
+        geometry = read_bytes(text.encode(), "sample.xyz")
+    except GeometryError:
+        return
+    for fault in geometry.faults:
+        assert 0 <= fault.span[0] <= len(text)
+        assert fault.message
+    for frame in geometry.frames:
+        assert frame.atoms
+        assert np.isfinite([atom.position for atom in frame.atoms]).all()

@@ -6,7 +6,6 @@ import pytest
 
 from overlapse.lint.engine import FileAudit, Target, audit_file
 from overlapse.lint.probetables import Probing, Table
-from overlapse.lint.screening import probe_files
 from overlapse.lint.settings import Settings
 from overlapse.rules.probing import Wanted
 
@@ -81,31 +80,13 @@ def test_missing_elements_are_found_in_the_geometry(folder: Path) -> None:
     assert geometry.fails
 
 
-def test_findings_by_path(folder: Path) -> None:
-    found = probe_files([folder / "h.basis", folder / "o.basis"], folder / "water.xyz")
+def test_the_same_as_a_call(folder: Path) -> None:
+    import overlapse
+
+    screening = overlapse.screen(folder / "h.basis", folder / "o.basis", on=folder / "water.xyz")
+    found = {audit.path: audit.findings for audit in screening.audits}
     assert set(found) == {str(folder / "h.basis"), str(folder / "o.basis")}
     assert found[str(folder / "h.basis")]
     assert not found[str(folder / "o.basis")]
-
-
-def test_a_probe_of_the_settings_makes_an_audit_fail(
-    folder: Path, monkeypatch: pytest.MonkeyPatch
-) -> None:
-    """As a commit hook runs it: by file names, from the top of the repository."""
-    from click.testing import CliRunner
-
-    from overlapse.lint.cli import cli
-
-    monkeypatch.chdir(folder)
-    before = CliRunner().invoke(cli, ["audit", "--least", "warning", "h.basis", "o.basis"])
-    Path("overlapse.toml").write_text(
-        '[[probe]]\nbasis = ["*.basis"]\ngeometry = "water.xyz"\nremoval-threshold = 1e-6\n'
-    )
-    after = CliRunner().invoke(cli, ["audit", "--least", "warning", "h.basis", "o.basis"])
-    assert "overlap.molecule" not in before.output
-    assert after.exit_code == 1
-    assert "h.basis" in after.output and "overlap.molecule" in after.output
-    Path("water.xyz").unlink()
-    gone = CliRunner().invoke(cli, ["audit", "h.basis"])
-    assert gone.exit_code == 3
-    assert "water.xyz" in gone.output
+    (probe,) = screening.probes
+    assert probe.spectrum.functions == 11

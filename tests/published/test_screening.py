@@ -78,3 +78,11 @@ def test_benzene_in_a_diffuse_set(tmp_path: Path) -> None:
     # What vanishes first are diffuse functions of carbon.
     assert probe.blame[0].kinds[0].function.element == "C"
     assert probe.blame[0].kinds[0].function.exponent < 0.2
+
+
+def test_blocks_with_core_potentials_bring_their_functions(tmp_path: Path) -> None:
+    iodide = "I 0 0 0; H 0 0 3.04"
+    probe = _screened(tmp_path, "def2-svp.dat", iodide)
+    molecule = gto.M(atom=iodide, unit="bohr", basis="def2-svp", ecp={"I": "def2-svp"}, verbose=0)
+    expected = np.linalg.eigvalsh(molecule.intor("int1e_ovlp")).tolist()
+    assert list(probe.values) == pytest.approx(expected, abs=1e-11)

@@ -222,3 +222,12 @@ def _cut(case: Case, value: float) -> Case:
     (probe,) = case.probes
     assert probe.lattice is not None
     return Case(case.document, probes=[replace(probe, lattice=replace(probe.lattice, cut=value))])
+
+
+def test_an_acceptance_of_what_only_a_geometry_shows_is_not_idle_without_one() -> None:
+    from overlapse.lint.engine import audit_text
+    from overlapse.lint.settings import Settings
+
+    accepted = "! overlapse: accept overlap.molecule for H because the twins are wanted\n"
+    found = audit_text(accepted + TWINS, "made.basis", settings=Settings())
+    assert not [f for f in found.findings if f.rule == "form.acceptance"]
