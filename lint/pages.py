@@ -21,12 +21,7 @@ def page(rule: Rule, width: int) -> str:
         first, *others = _paragraphs(words)
         parts.append(_filled(f"{name}: {first}", width, "  "))
         parts += [_filled(f"  {other}", width, "  ") for other in others]
-    if text.beside:
-        parts.append(f"Beside:\n\n{_indented(text.beside)}")
-    parts.append(f"Found in:\n\n{_indented(text.bad)}")
-    parts.append(f"Not found in:\n\n{_indented(text.good)}")
-    if text.geometry:
-        parts.append(f"Both with the geometry:\n\n{_indented(text.geometry)}")
+    parts += [f"{name}:\n\n{_indented(sample)}" for name, sample in _samples(rule)]
     return "\n\n".join(filter(None, parts))
 
 
@@ -78,7 +73,7 @@ def _section(rule: Rule) -> Iterator[str]:
         yield ""
         # Formulas hold signs that Markdown would take for its own.
         yield f"**{name}:** {_escaped(' '.join(words.split()))}"
-    for name, sample in (("Found in", text.bad), ("Not found in", text.good)):
+    for name, sample in _samples(rule):
         yield ""
         yield f"{name}:"
         yield ""
@@ -98,6 +93,18 @@ def _facts(rule: Rule) -> Iterator[tuple[str, str]]:
     ):
         if words:
             yield name, words
+
+
+def _samples(rule: Rule) -> Iterator[tuple[str, str]]:
+    text = rule.explanation
+    for name, sample in (
+        ("Beside", text.beside),
+        ("Found in", text.bad),
+        ("Not found in", text.good),
+        ("Both with the geometry", text.geometry),
+    ):
+        if sample:
+            yield name, sample
 
 
 def _paragraphs(text: str) -> list[str]:

@@ -11,12 +11,13 @@ def told(audit: FileAudit, seconds: float) -> str:
     """
     if audit.problem:
         return one_line(audit.problem)
-    document = audit.document
     facts = []
-    if document is not None and document.layout:
-        facts.append(f"layout {document.layout} ({document.reason})")
-    elif audit.passed_over:
+    if audit.passed_over:
         facts.append("passed over, no layout recognised")
+    elif audit.layout:
+        # The reason is not kept where the file was judged in another process or at another time.
+        reason = f" ({audit.document.reason})" if audit.document is not None else ""
+        facts.append(f"layout {audit.layout}{reason}")
     if audit.label:
         facts.append(f"label {audit.label} from {audit.label_from}")
     if audit.settings.origin is not None:

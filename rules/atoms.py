@@ -100,7 +100,8 @@ class Atom:
             _MEMORY.popitem(last=False)
         return memory
 
-    def _once(self, name: str, make: Callable[[], Found]) -> Found:
+    def once(self, name: str, make: Callable[[], Found]) -> Found:
+        """A result that is remembered for all atoms of the same numbers."""
         if name not in self._memory:
             self._memory[name] = make()
         return self._memory[name]  # type: ignore[no-any-return]
@@ -110,13 +111,13 @@ class Atom:
         """The atom in the functions of the block; None where they are dependent or absurd."""
         if self.start is not None:
             return self._solved(self.functions, self.start)
-        return self._once("solution", lambda: self._solved(self.functions))
+        return self.once("solution", lambda: self._solved(self.functions))
 
     @cached_property
     def uncontracted(self) -> Solution | None:
         """The atom in the block's primitives, each by itself."""
         each = {l: np.eye(len(a)) for l, a in self.exponents.items()}
-        return self._once("uncontracted", lambda: self._solved(each))
+        return self.once("uncontracted", lambda: self._solved(each))
 
     def _solved(
         self, functions: dict[int, Floats], start: dict[int, Floats] | None = None
@@ -160,7 +161,7 @@ class Atom:
         that were made for the nuclear charge Z' have f near Z / Z'.  Source: P.-O. Loewdin, J. Mol.
         Spectrosc. 3, 46 (1959).
         """
-        return self._once("scaling", self._scaling)
+        return self.once("scaling", self._scaling)
 
     def _scaling(self) -> float | None:
         if self.energy is None or self.solution is None:
@@ -201,7 +202,7 @@ class Atom:
         if self.energy is None or found is None:
             return None
         handles = list(self.numbers.values())
-        return self._once(
+        return self.once(
             "response",
             lambda: response(self.integrals, self.functions, found.orbitals, handles),
         )

@@ -3,7 +3,7 @@
 import re
 from functools import cached_property
 
-from overlapse.grammar.elements import row_of
+from overlapse.grammar.elements import period_of, row_of
 from overlapse.grammar.model import BasisSet
 from overlapse.rules.atoms import Atom, atom_of
 from overlapse.rules.case import Case, is_orbital
@@ -98,6 +98,17 @@ class Ensemble:
         """Steps of the neighbours."""
         return [s for other in self.neighbours(atom) if (s := self.steps(other)) is not None]
 
+    def mates(self, atom: Atom) -> list[Steps]:
+        """Steps of the other atoms of the period."""
+        z = atom.block.atomic_number
+        return [
+            steps
+            for other in self.atoms
+            if other.block.atomic_number != z
+            and period_of(other.block.atomic_number) == period_of(z)
+            and (steps := self.steps(other)) is not None
+        ]
+
     def usual(self, own: Steps) -> Usual:
         """What the steps of an atom should be, by its neighbours or by the whole set."""
         z = own.atom.block.atomic_number
@@ -106,7 +117,7 @@ class Ensemble:
             for other in self.atoms
             if other.block.atomic_number != z and (steps := self.steps(other)) is not None
         ]
-        return usual(own, self.others(own.atom), file)
+        return usual(own, self.others(own.atom), self.mates(own.atom), file)
 
     @cached_property
     def _columns(self) -> dict[int, list[Column]]:

@@ -4,6 +4,7 @@ These rules compute Hartree-Fock atoms, so they run only where energies are want
 """
 
 from collections.abc import Iterator
+from dataclasses import replace
 
 from overlapse.rules.atoms import Atom
 from overlapse.rules.case import Case
@@ -337,11 +338,19 @@ def _explained(ensemble: Ensemble, own: Steps, times: float, alone: float) -> Ve
     expected = ensemble.usual(own)
     if ensemble.relativistic and expected.others < 3:
         return None
-    verdict = explain(own, ensemble.others(own.atom), expected)
+    # Following a number takes long, and an edited file has few new ones.
+    verdict = own.atom.once(
+        f"explained against {expected.token}",
+        lambda: explain(own, ensemble.others(own.atom), expected),
+    )
     if verdict is None:
         return None
+    verdict = replace(verdict, own=own)
     is_clear = verdict.significance >= (times if expected.others >= 3 else alone)
     explains = verdict.after < max(_LEFT * min(verdict.before, 1e4), 0.05 * verdict.before)
+    if expected.others < 3:
+        # Without neighbours the rest of the atom must be in order to be believed.
+        explains = verdict.after < 10.0 * verdict.count
     is_sharp = abs(verdict.change) > 4.0 * verdict.error
     return verdict if is_clear and explains and is_sharp else None
 

@@ -12,13 +12,15 @@ from overlapse.rules.registry import rule
 
 
 class _Ladder(NamedTuple):
-    """Exponents of one contraction, or of the lone functions of one l, as they stand.
+    """Exponents of one shell, or of the lone functions of one l, as they stand.
 
-    places: (shell, row) of each.
+    kind: 0 for a single contraction, 1 for a matrix of several, 2 for lone functions.  ordinal: of
+    the shell among those of its l.  places: (shell, row) of each.
     """
 
     block: Block
     l: int
+    kind: int
     ordinal: int
     places: list[tuple[int, int]]
     logs: Floats
@@ -120,12 +122,16 @@ def spacing_oddities(case: Case, margin: float = 1.2, fewest: int = 12) -> list[
 
 def _of_set(members: BasisSet, margin: float, fewest: int) -> list[Odd]:
     ladders = list(_ladders(members))
-    broken = [ladder for ladder in ladders if not _falls(ladder)]
-    kept = len(ladders) - len(broken)
     found = []
-    # Few blocks, all in order but one: little evidence, but all there is.
-    if kept >= min(fewest, len(members.blocks) - 1) and kept >= 2 and 50 * len(broken) <= kept + 98:
-        found = [Odd(ladder, _misplaced(ladder), 0, True, kept) for ladder in broken]
+    # Contractions, matrices and series of lone functions each keep their own habits.
+    for kind in range(3):
+        alike = [ladder for ladder in ladders if ladder.kind == kind]
+        broken = [ladder for ladder in alike if not _falls(ladder)]
+        kept = len(alike) - len(broken)
+        is_habit = kept >= min(fewest, len(members.blocks) - 1) and kept >= 2
+        # One is a slip; more are one only among very many.
+        if is_habit and len(broken) <= max(1, 0.02 * kept):
+            found += [Odd(ladder, _misplaced(ladder), 0, True, kept) for ladder in broken]
     told = {odd.shell for odd in found}
     return found + [odd for odd in _gaps(ladders, margin) if odd.shell not in told]
 
@@ -143,11 +149,12 @@ def _ladders(members: BasisSet) -> Iterator[_Ladder]:
                 continue
             seen[l] = seen.get(l, -1) + 1
             places = [(index, row) for row in range(len(shell.exponents))]
-            yield _Ladder(block, l, seen[l], places, np.log(shell.exponents))
+            kind = int(shell.columns_per_l > 1)
+            yield _Ladder(block, l, kind, seen[l], places, np.log(shell.exponents))
         for l, places in lone.items():
             if len(places) > 1:
                 values = [float(block.shells[index].exponents[0]) for index, _ in places]
-                yield _Ladder(block, l, -1, places, np.log(values))
+                yield _Ladder(block, l, 2, 0, places, np.log(values))
 
 
 def _falls(ladder: _Ladder) -> bool:
@@ -170,7 +177,7 @@ def _out_of_order(case: Case, odd: Odd) -> Finding:
     index, row = ladder.places[odd.place]
     shell = ladder.block.shells[index]
     # Lone functions and rows added to a matrix may stand anywhere; a contraction is in order.
-    is_plain = ladder.ordinal >= 0 and shell.columns_per_l == 1
+    is_plain = ladder.kind == 0
     return case.at_shell(
         ladder.block,
         index,
@@ -185,14 +192,27 @@ def _out_of_order(case: Case, odd: Odd) -> Finding:
 
 
 def _gaps(ladders: list[_Ladder], margin: float) -> Iterator[Odd]:
-    groups: dict[tuple[int, int, int], list[_Ladder]] = {}
+    groups: dict[tuple[int, int, int, int], list[_Ladder]] = {}
     for ladder in ladders:
-        groups.setdefault((ladder.l, ladder.ordinal, len(ladder.logs)), []).append(ladder)
+        key = (ladder.l, ladder.kind, ladder.ordinal, len(ladder.logs))
+        groups.setdefault(key, []).append(ladder)
     for group in groups.values():
-        if len(group) < 4:
-            continue
         gaps = -np.diff(np.array([ladder.logs for ladder in group]), axis=1)
-        ranked = np.sort(gaps, axis=0)
+        if len(group) >= 4:
+            ranked = np.sort(gaps, axis=0)
+        elif group[0].kind == 2:
+            # Few series of this length: all gaps between lone functions of this l.
+            every = [
+                -np.diff(other.logs)
+                for other in ladders
+                if other.kind == 2 and other.l == group[0].l
+            ]
+            pool = np.sort(np.concatenate(every))
+            if len(pool) < 8:
+                continue
+            ranked = np.repeat(pool[:, None], gaps.shape[1], axis=1)
+        else:
+            continue
         # The range of the others: a value that is itself the extreme is left out.
         low = np.where(gaps == ranked[0], ranked[1], ranked[0])
         high = np.where(gaps == ranked[-1], ranked[-2], ranked[-1])
@@ -200,7 +220,7 @@ def _gaps(ladders: list[_Ladder], margin: float) -> Iterator[Odd]:
         worst = outside.argmax(axis=1)
         for ladder, far, at in zip(group, outside, worst.tolist(), strict=True):
             if far[at] > margin:
-                yield Odd(ladder, _at_fault(far, at, margin), at, False, len(group) - 1)
+                yield Odd(ladder, _at_fault(far, at, margin), at, False, len(ranked) - 1)
 
 
 def _at_fault(far: Floats, at: int, margin: float) -> int:
@@ -221,7 +241,7 @@ def _wide(case: Case, odd: Odd, margin: float) -> Finding:
         index,
         "note",
         f"suspect: the ratio of the exponents {first:.6g} and {second:.6g} is "
-        f"{first / second:.3g}, far outside what {odd.others} other elements have at this place",
+        f"{first / second:.3g}, far outside the {odd.others} others at such a place",
         row=row,
         measured=float(first / second),
         limit=margin,

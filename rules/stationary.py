@@ -14,6 +14,7 @@ with the best x for each, is the suspect; x is what its logarithm has to change 
 from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
+from hashlib import sha256
 
 import numpy as np
 
@@ -25,6 +26,7 @@ from overlapse.rules.physics.trends import quantile
 _FINEST = 3e-4  # steps of the best published numbers
 _NOISE = 1e-7  # of a derivative, hartree: what optimisations of sets leave at best
 _LONE = 1e-5  # the same for an element that has no neighbours to compare with
+_STRANGE = 4e-3  # added to the scatter of elements that are of the period, but not of the row
 _SOFT = 1e-5  # second derivatives below it, hartree, tell nothing
 
 
@@ -50,6 +52,15 @@ class Steps:
         """What printed digits and an unfinished iteration add to the gradient, shape (n,)."""
         digits = np.array([_digits(self.atom, number) for number in self.numbers])
         return np.asarray(np.sqrt((self.curvature**2) @ digits**2 + _NOISE**2))
+
+    @cached_property
+    def places(self) -> tuple[tuple[str, str, int, int | None], ...]:
+        """For each number the letters and the name of its shell, its row and its column."""
+        block = self.atom.block
+        return tuple(
+            (block.shells[n.shell].letters, block.names[n.shell], n.row, n.column)
+            for n in self.numbers
+        )
 
     @cached_property
     def kinds(self) -> tuple[tuple[int, bool], ...]:
@@ -98,43 +109,79 @@ class Usual:
     stiffness: Floats
     others: int
 
+    @property
+    def token(self) -> str:
+        """Equal where the same is expected."""
+        parts = b"".join(a.tobytes() for a in (self.centre, self.scatter, self.stiffness))
+        return sha256(parts).hexdigest()
+
     def chi(self, gradient: Floats) -> Floats:
         """Departures of an atom's steps in units of the scatter, shape (n,)."""
         away: Floats = (-gradient / self.stiffness - self.centre) / self.scatter
         return away
 
 
-def usual(own: Steps, others: Sequence[Steps], file: Sequence[Steps]) -> Usual:
-    """From the neighbours of one pattern, or where they are few from the whole set.
+def usual(
+    own: Steps, others: Sequence[Steps], mates: Sequence[Steps], file: Sequence[Steps]
+) -> Usual:
+    """From the neighbours of one pattern, or where they are few from the period or the whole set.
 
-    others: steps of neighbours with the same numbers, this atom's not among them.  file: those of
-    all other atoms of the set.
+    others: steps of neighbours with the same numbers, this atom's not among them.  mates: those of
+    the whole period.  file: those of all other atoms of the set.
     """
     alike = np.array([*(other.stiffness for other in others), own.stiffness])
     stiffness = np.maximum(np.median(alike, axis=0), _SOFT)
     blur = own.blur / stiffness
     if len(others) >= 3:
-        centre, spread = _along_row(own, others, stiffness)
+        table = np.array([other.gradient for other in others])
+        centre, spread = _along_row(own, _charges(others), -table / stiffness)
         for kind in set(own.kinds):
             places = [at for at, each in enumerate(own.kinds) if each == kind]
             # A few neighbours may agree by chance.
             spread[places] = np.hypot(spread[places], 0.5 * np.median(spread[places]))
     else:
-        centre, spread = np.zeros(len(own.numbers)), _of_kind(own, file)
+        centre, spread = np.zeros(len(own.numbers)), _of_kind(own, file, stiffness)
         for other in others:
             spread = np.maximum(spread, 2.0 * np.abs(other.gradient / stiffness))
+        _by_period(own, mates, stiffness, centre, spread)
         blur = np.hypot(blur, _LONE / stiffness)
         spread[_spare(own)] += 1.0
     return Usual(centre, np.sqrt(spread**2 + blur**2 + _FINEST**2), stiffness, len(others))
 
 
-def _along_row(own: Steps, others: Sequence[Steps], stiffness: Floats) -> tuple[Floats, Floats]:
-    """Line through the neighbours by medians, and their scatter about it.
+def _charges(others: Sequence[Steps]) -> Floats:
+    return np.array([float(other.atom.block.atomic_number) for other in others])
+
+
+def _by_period(
+    own: Steps, mates: Sequence[Steps], stiffness: Floats, centre: Floats, spread: Floats
+) -> None:
+    """Put in what the period tells, letter by letter, where shells of a letter have one pattern."""
+    for letters in {place[0] for place in own.places}:
+        here = [at for at, place in enumerate(own.places) if place[0] == letters]
+        wanted = [own.places[at] for at in here]
+        alike, rows = [], []
+        for mate in mates:
+            there = [at for at, place in enumerate(mate.places) if place[0] == letters]
+            if [mate.places[at] for at in there] == wanted:
+                alike.append(mate)
+                rows.append(-mate.gradient[there] / stiffness[here])
+        if len(alike) >= 3:
+            middle, away = _along_row(own, _charges(alike), np.array(rows))
+            away = 3.0 * away + _STRANGE
+            better = away < spread[here]
+            for at, value, size, is_better in zip(here, middle, away, better, strict=True):
+                if is_better:
+                    centre[at], spread[at] = value, size
+
+
+def _along_row(own: Steps, z: Floats, table: Floats) -> tuple[Floats, Floats]:
+    """Line through the steps of neighbours by medians, and their scatter about it.
+
+    z: nuclear charges, shape (m,).  table: their steps, shape (m, n).
 
     Source: P. K. Sen, J. Am. Stat. Assoc. 63, 1379 (1968).
     """
-    table = np.array([-other.gradient / stiffness for other in others])
-    z = np.array([float(other.atom.block.atomic_number) for other in others])
     first, second = np.triu_indices(len(z), 1)
     slopes = (table[second] - table[first]) / (z[second] - z[first])[:, None]
     slope = np.median(slopes, axis=0)
@@ -142,22 +189,31 @@ def _along_row(own: Steps, others: Sequence[Steps], stiffness: Floats) -> tuple[
     here = own.atom.block.atomic_number
     away = np.sort(np.abs(table - slope * z[:, None] - level), axis=0)
     # One of them may be wrong itself.
-    spread = 1.5 * away[-2 if len(others) > 3 else -1]
-    beyond = max(0.0, z.min() - here, here - z.max())
+    spread = 1.5 * away[-2 if len(z) > 3 else -1]
+    beyond = max(0.0, float(z.min()) - here, here - float(z.max()))
     return level + slope * here, spread * (1.0 + beyond) + 0.5 * beyond * np.abs(slope)
 
 
-def _of_kind(own: Steps, file: Sequence[Steps]) -> Floats:
-    """How large the steps of the same kind of number usually are in the set."""
-    pooled: dict[tuple[int, bool], list[float]] = {}
+def _of_kind(own: Steps, file: Sequence[Steps], stiffness: Floats) -> Floats:
+    """How large the steps of the same kind of number can be by what the set shows elsewhere.
+
+    Either the steps or the gradients of other elements tell, whichever is the narrower: stiff
+    numbers have small steps, soft ones small gradients.
+    """
+    steps: dict[tuple[int, bool], list[float]] = {}
+    slopes: dict[tuple[int, bool], list[float]] = {}
     for other in file:
-        steps = np.abs(other.gradient) / np.maximum(other.stiffness, _SOFT)
-        for kind, step in zip(other.kinds, steps.tolist(), strict=True):
-            pooled.setdefault(kind, []).append(step)
+        sizes = np.abs(other.gradient)
+        ratios = sizes / np.maximum(other.stiffness, _SOFT)
+        for kind, size, ratio in zip(other.kinds, sizes.tolist(), ratios.tolist(), strict=True):
+            steps.setdefault(kind, []).append(ratio)
+            slopes.setdefault(kind, []).append(size)
     spread = np.full(len(own.numbers), 0.05)
     for at, kind in enumerate(own.kinds):
-        if len(pooled.get(kind, ())) >= 8:
-            spread[at] = 0.01 + 3.0 * quantile(pooled[kind], 0.9)
+        if len(steps.get(kind, ())) >= 8:
+            by_steps = 0.01 + 3.0 * quantile(steps[kind], 0.9)
+            by_slopes = 0.004 + 4.0 * quantile(slopes[kind], 0.9) / float(stiffness[at])
+            spread[at] = min(by_steps, by_slopes)
     return spread
 
 

@@ -17,25 +17,28 @@ from overlapse.rules.registry import rule
 from overlapse.rules.slips import Slip, likeliest
 
 
-def _gather(case: Case, least: float) -> list[Oddity]:
-    """Odd numbers of all sets, of each shell the oddest."""
+def _gather(case: Case) -> list[Oddity]:
+    """Odd numbers of all sets, of each shell the oddest exponent or coefficient."""
     return case.shared(
-        f"oddities from {least:g}",
+        "oddities",
         lambda: oddest_of_shells(
             [
                 oddity
                 for members in case.sets
                 for oddity in (
-                    *odd_exponents(members, least),
-                    *odd_coefficients(members, least),
+                    *odd_exponents(members, _LEAST),
+                    *odd_coefficients(members, _LEAST),
                 )
             ]
         ),
     )
 
 
+_LEAST = 3.0  # deviates below which a number is not looked at
+
+
 @rule("primitive.trend")
-def trend(case: Case, *, surprise: float = 4.3, loud: float = 6.0) -> Iterator[Finding]:
+def trend(case: Case, *, surprise: float = 4.1, loud: float = 6.0) -> Iterator[Finding]:
     """Suspect: an exponent falls out of the progression of its row of the periodic table.
 
     Exponents of corresponding primitives run smoothly from element to element, and where an
@@ -114,8 +117,8 @@ def trend(case: Case, *, surprise: float = 4.3, loud: float = 6.0) -> Iterator[F
         ****
     """
     spaced = {odd.shell for odd in spacing_oddities(case)}
-    for odd in _gather(case, surprise):
-        if odd.column is None:
+    for odd in _gather(case):
+        if odd.column is None and odd.surprise >= surprise:
             is_far = odd.surprise >= loud and abs(odd.departure) >= np.log(2.0)
             # Two witnesses that agree make a warning.
             is_far = is_far or (id(odd.block), odd.shell) in spaced
@@ -123,7 +126,7 @@ def trend(case: Case, *, surprise: float = 4.3, loud: float = 6.0) -> Iterator[F
 
 
 @rule("contraction.trend")
-def coefficients(case: Case, *, surprise: float = 4.3, loud: float = 6.0) -> Iterator[Finding]:
+def coefficients(case: Case, *, surprise: float = 4.8, loud: float = 6.0) -> Iterator[Finding]:
     """Suspect: a coefficient falls out of the progression of its row of the periodic table.
 
     The coefficients at one place of corresponding contractions run smoothly from element to
@@ -207,8 +210,8 @@ def coefficients(case: Case, *, surprise: float = 4.3, loud: float = 6.0) -> Ite
           2.4 0.65
         ****
     """
-    for odd in _gather(case, surprise):
-        if odd.column is not None:
+    for odd in _gather(case):
+        if odd.column is not None and odd.surprise >= surprise:
             value = float(odd.block.shells[odd.shell].coefficients[odd.row, odd.column])
             is_far = odd.surprise >= loud and odd.low <= -value <= odd.high
             yield _finding(case, odd, "coefficient", is_far, surprise)

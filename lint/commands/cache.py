@@ -12,6 +12,11 @@ def cache(clear: bool) -> None:
 
     A result is used again only for a file with the same name and content, under the same settings
     and the same program. `overlapse audit --no-cache` goes without.
+
+    \b
+    Examples:
+      overlapse cache
+      overlapse cache --clear
     """
     from overlapse.lint import cache as results
 

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from overlapse.lint.common import CLEAN, FOUND, UNREADABLE, a_layout
+from overlapse.lint.common import CLEAN, FOUND, UNREADABLE, a_layout, like_a_layout
 
 if TYPE_CHECKING:
     from overlapse.lint.mending import Mended
@@ -36,7 +36,12 @@ def _rules(context: click.Context, parameter: click.Parameter, value: tuple[str,
     metavar="RULE",
     help="Make repairs of this rule that change what the file says; may be given several times.",
 )
-@click.option("--layout", callback=a_layout, help="Read all files as this layout.")
+@click.option(
+    "--layout",
+    callback=a_layout,
+    shell_complete=like_a_layout,
+    help="Read all files as this layout.",
+)
 @click.option("--label", help="What the sets are called, over what the files say.")
 @click.option("--named", default="<stdin>", help="File name to report for standard input (-).")
 def mend(

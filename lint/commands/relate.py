@@ -6,7 +6,15 @@ from typing import TYPE_CHECKING
 
 import click
 
-from overlapse.lint.common import CLEAN, FOUND, UNREADABLE, Unreadable, a_layout, output
+from overlapse.lint.common import (
+    CLEAN,
+    FOUND,
+    UNREADABLE,
+    Unreadable,
+    a_layout,
+    like_a_layout,
+    output,
+)
 
 if TYPE_CHECKING:
     from overlapse.grammar.model import Document
@@ -24,8 +32,18 @@ if TYPE_CHECKING:
 )
 @click.option("--report", type=click.Choice(["text", "json"]), default="text")
 @click.option("--out", type=click.Path(path_type=Path), help="Write the report to this file.")
-@click.option("--layout-a", callback=a_layout, help="Read A as this layout.")
-@click.option("--layout-b", callback=a_layout, help="Read B as this layout.")
+@click.option(
+    "--layout-a",
+    callback=a_layout,
+    shell_complete=like_a_layout,
+    help="Read A as this layout.",
+)
+@click.option(
+    "--layout-b",
+    callback=a_layout,
+    shell_complete=like_a_layout,
+    help="Read B as this layout.",
+)
 @click.option("--named", default="<stdin>", help="File name to report for standard input (-).")
 def relate(
     left: Path,
@@ -46,6 +64,11 @@ def relate(
 
     Exit status: 0 all equal in the sense of --equal, 1 something differs or is missing, 2 wrong
     use, 3 a file could not be read.
+
+    \b
+    Examples:
+      overlapse relate a.basis b.basis
+      overlapse relate --equal span published/ ours/
     """
     from overlapse.lint.relation_reports import write_json, write_text
 

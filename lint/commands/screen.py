@@ -208,6 +208,12 @@ def screen(
 
     Exit status: 0 nothing found at the failing level, 1 something found, 2 wrong use or settings,
     3 a file could not be read.
+
+    \b
+    Examples:
+      overlapse screen c.basis --on molecule.xyz
+      overlapse screen c.basis h.basis --on molecules/ --picture spectra.svg
+      overlapse screen --use C=c.basis --use H=h.basis --on crystal.extxyz
     """
     from overlapse.lint.engine import LEVELS
     from overlapse.lint.scanning import measure_all

@@ -37,6 +37,11 @@ def seal(
 
     Exit status: 0 as sealed, or sealed now; 1 something changed, is gone or cannot be sealed; 2
     wrong use, or no seal yet; 3 a file could not be read.
+
+    \b
+    Examples:
+      overlapse seal --write sets/
+      overlapse seal sets/
     """
     from overlapse.lint import sealing
     from overlapse.lint.neighbours import SEAL

@@ -20,6 +20,7 @@ ROOM = 9_000_000
 _AROUND = 2  # lines shown before and after the one a finding points at
 _SHOWN = 150  # characters of a line that are shown
 _LONGEST = 4000  # characters of a message or remedy that are kept
+_MOST_ACCEPTED = 500  # that are listed with their reasons
 
 
 @dataclass
@@ -39,6 +40,17 @@ class Tally:
         return next((level for level in reversed(LEVELS) if self.levels[level]), "clean")
 
 
+class AcceptedFacts(NamedTuple):
+    """An accepted finding: where, what, why, and where that is said."""
+
+    path: str
+    line: int
+    place: str
+    rule: str
+    reason: str
+    where: str
+
+
 class FileFacts(NamedTuple):
     """One file in the page's table."""
 
@@ -55,7 +67,8 @@ class Facts:
     """All that the page shows.  ``room``: characters that findings may take.
 
     elements: by atomic number, those without findings too.  unlisted: findings of each level that
-    are counted but not listed, because there was no room.
+    are counted but not listed, because there was no room.  accepted: as many as are listed.  apart:
+    how many findings are accepted, known from a ledger, and gone since.
     """
 
     room: int = ROOM
@@ -65,6 +78,8 @@ class Facts:
     levels: Counter[str] = field(default_factory=Counter)
     unlisted: Counter[str] = field(default_factory=Counter)
     passed_over: int = 0
+    accepted: list[AcceptedFacts] = field(default_factory=list)
+    apart: Counter[str] = field(default_factory=Counter)
     gallery: Gallery = field(default_factory=Gallery)
     _listed: dict[str, list[tuple[int, str]]] = field(
         default_factory=lambda: {level: [] for level in LEVELS}
@@ -75,6 +90,9 @@ class Facts:
         """Take in one file; of its document only what will be drawn is kept."""
         if audit.passed_over:
             self.passed_over += 1
+            return
+        self._set_apart(audit)
+        if audit.absent:
             return
         document, file = audit.document, len(self.files)
         blocks = document.blocks if document else ()
@@ -90,13 +108,23 @@ class Facts:
         self.files.append(
             FileFacts(
                 one_line(audit.path),
-                document.layout if document else "",
+                audit.layout,
                 one_line(audit.label or ""),
-                len({block.atomic_number for block in blocks}),
+                audit.elements,
                 one_line(audit.problem),
                 Counter(finding.severity for finding in audit.findings),
             )
         )
+
+    def _set_apart(self, audit: FileAudit) -> None:
+        """Count what does not count, and keep reasons."""
+        self.apart += Counter(
+            {"accepted": len(audit.accepted), "known": len(audit.known), "gone": len(audit.gone)}
+        )
+        for finding, reason, where in audit.accepted[: _MOST_ACCEPTED - len(self.accepted)]:
+            place = " ".join(filter(None, (finding.element, finding.shell)))
+            words = (_words(text) for text in (place, finding.rule, reason, where))
+            self.accepted.append(AcceptedFacts(one_line(audit.path), finding.line, *words))
 
     def _count(self, finding: Finding, file: int) -> None:
         self.levels[finding.severity] += 1

@@ -9,7 +9,7 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 from heapq import heappush, heappushpop
 from math import isfinite
-from typing import NamedTuple, Protocol
+from typing import NamedTuple
 
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import row_of
@@ -19,20 +19,11 @@ from overlapse.lint.reports.lines import one_line
 from overlapse.lint.webpage import drawings
 from overlapse.lint.webpage.drawings import Spot
 from overlapse.rules.finding import Finding
+from overlapse.rules.probe import Probe
 
 MOST_SCENES = 100  # of a page
 _MOST_OF_A_FILE = 6
 _MOST_PROBES = 12  # in one drawing
-
-
-class Probed(Protocol):
-    """An overlap matrix that was made of a real geometry: what it is of, and its eigenvalues."""
-
-    @property
-    def where(self) -> str: ...
-
-    @property
-    def values(self) -> Sequence[float]: ...
 
 
 class Drawn(NamedTuple):
@@ -53,7 +44,7 @@ class Scene(NamedTuple):
     block: Block
     beside: tuple[Block, ...]
     findings: tuple[Finding, ...]
-    probes: tuple[Probed, ...]
+    probes: tuple[Probe, ...]
 
 
 @dataclass
@@ -72,8 +63,8 @@ class Gallery:
         """
         assert audit.document is not None
         document = over_normalised(audit.document)
-        probes: Sequence[Probed] = getattr(audit, "probes", ())
-        worst = sorted((p for p in probes if len(p.values)), key=lambda p: min(p.values))
+        probed = (p for p in audit.probes if p.values and audit.path in p.files)
+        worst = sorted(probed, key=lambda p: p.values[0])
         names: dict[int, str] = {}
         found = sorted(_by_block(document, audit.findings), key=lambda pair: -_rank(pair[1]))
         for order, (block, findings) in enumerate(found):

@@ -22,7 +22,9 @@ The powers are those of a logistic fit to 108 calculations without removal, roun
 little below the formula's because the estimate of p has an error of a factor of two or three.
 
 Limits, from the same calculations: no field failed below m = 1.3e5 in any of four ways to do the
-arithmetic, and nearly all did above 2e6; between the two the noise of the program decides.  An
+arithmetic, and nearly all did above 2e6; between the two the noise of the program decides.  On 113
+systems that took no part, "fails" was said just where a field failed for 94 %, the outlook was not
+contradicted for 97 %, and no failure was called safe.  An
 eigenvalue that has nothing but symmetry to protect it (below 1e-10, where one-electron matrices
 lose their digits as well) is never called safe, and one within rounding of zero always fails.
 
@@ -98,7 +100,7 @@ def foresee(
     whole = all(atom.block.potential is None for atom in atoms) and electrons > 0
     doubtful = _rounding(overlap) <= smallest < LOOKED_AT
     if kinetic is not None and doubtful and whole and affordable(atoms, len(overlap)):
-        up = (electrons + (electrons % 2 if unpaired is None else unpaired)) // 2
+        up = min((electrons + (electrons % 2 if unpaired is None else unpaired)) // 2, electrons)
         pair = (up, electrons - up)
         field = Field(superposed_field(atoms, nuclei, overlap, kinetic, pair), pair)
     return outlook(overlap, kinetic, functions, field=field, smallest=smallest)

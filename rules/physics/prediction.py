@@ -18,6 +18,7 @@ from collections.abc import Sequence
 from typing import NamedTuple
 
 import numpy as np
+import numpy.typing as npt
 
 from overlapse.grammar.model import Floats
 from overlapse.rules.physics.trends import fit_through
@@ -78,9 +79,7 @@ def predictions(
         total = total + stiffness * count * (slope - slopes) ** 2
         degrees = np.maximum(free_degrees, 0.5)[:, None, None]
         without = np.maximum(total - error * departure, 0.0) / degrees
-        usual = np.array(
-            [np.median(w[:, u]) if u.any() else 0.0 for w, u in zip(without, usable, strict=True)]
-        )
+        usual = np.array([_usual(w, u) for w, u in zip(without, usable, strict=True)])
         prior = np.maximum(
             usual[:, None, None],
             np.minimum(without, np.median(without, axis=1, keepdims=True)),
@@ -98,6 +97,16 @@ def predictions(
         (weight * np.concatenate(departures)).sum(axis=0) / whole,
         1.0 / np.sqrt(weight.max(axis=0)),
     )
+
+
+def _usual(without: Floats, usable: npt.NDArray[np.bool_]) -> float:
+    """Variance that the columns of a table usually have, one of which may hold a slip."""
+    if not usable.any():
+        return 0.0
+    if usable.sum() >= 5:
+        return float(np.median(without[:, usable]))
+    # A slip is in all variances of its column but its own.
+    return 2.0 * float(np.median(without[:, usable].min(axis=0)))
 
 
 def _normal(t_squared: Floats, degrees: Floats) -> Floats:

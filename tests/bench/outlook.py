@@ -141,7 +141,7 @@ def report(title: str, rows: list[Row]) -> str:
             pair = (row.truth.removed, row.truth.removed_turned)
             ends = " and ".join(f"{run.energy:.6f}" if run.converged else "no end" for run in pair)
             text.append(
-                f"Left out, the field with removal has no single solution ({ends}): {row.name}."
+                f"Left out, the field with removal has no single solution ({ends}): {row.name}.  "
             )
     text += ["| judged by | " + " | ".join(counts(sound, lambda r: r.outlook.level)) + " |"]
     text += ["|---" * 6 + "|"]
@@ -161,14 +161,14 @@ def report(title: str, rows: list[Row]) -> str:
         + ".",
         "",
     ]
-    wrong = [
-        r
-        for r in sound
-        if r.outlook.level != "strained" and (r.outlook.level == "fails") != r.truth.failed
-    ]
+    wrong = [row for row in sound if (row.outlook.level == "fails") != row.truth.failed]
+    band = [row.name for row in wrong if row.outlook.level == "strained"]
+    if band:
+        text.append(f"Foretold strained, and the plain host fails: {'; '.join(band)}.  ")
     text += [
-        f"Against the plain host: {r.name}, foretold {r.outlook.level}: {r.outlook.reason}."
-        for r in wrong
+        f"Against the plain host: {row.name}, foretold {row.outlook.level}: {row.outlook.reason}.  "
+        for row in wrong
+        if row.outlook.level != "strained"
     ]
     return "\n".join(text)
 

@@ -78,6 +78,7 @@ class Outcome(NamedTuple):
     loud: bool
     named: bool
     near: bool
+    told: str = ""
 
 
 class Judge:
@@ -113,11 +114,16 @@ class Judge:
         name = wrong.block.names[number.shell]
         here = [f for f in found if (f.shell or name).partition("/")[0] == name]
         named = [f for f in here if f.measured == wrong.value(number)]
+        what = "exponent" if number.column is None else f"coefficient {number.column + 1}"
+        own = ensemble.steps(wrong)
+        others = len(ensemble.others(wrong)) if own is not None else 0
         return Outcome(
             bool(here),
             any(f.severity == "warning" for f in here),
             bool(named),
             any(abs(float(f.expected or 0.0) / true - 1.0) < 0.01 for f in named),
+            f"{wrong.block.symbol} {name} {what} of row {number.row + 1}, {true:g} made "
+            f"{wrong.value(number):g}; {others} neighbours; {departure(ensemble, own):.0f}",
         )
 
 
@@ -125,6 +131,13 @@ def steps(atom: Atom) -> Steps | None:
     from overlapse.rules.stationary import steps_of
 
     return steps_of(atom)
+
+
+def departure(ensemble: Ensemble, own: Steps | None) -> float:
+    """Root of chi squared of an atom's gradient."""
+    if own is None:
+        return float("nan")
+    return float((ensemble.usual(own).chi(own.gradient) ** 2).sum()) ** 0.5
 
 
 def changed(block: Block, number: Number, value: float) -> Block:
@@ -190,6 +203,8 @@ def main() -> None:
     parser.add_argument("--seed", type=int, default=1)
     parser.add_argument("--elements", default="C,O,Si,Fe,Zn,Kr", help="empty for all")
     parser.add_argument("--sets", default="", help="only these, separated by commas")
+    parser.add_argument("--kinds", default="", help="only kinds that contain one of these words")
+    parser.add_argument("--missed", action="store_true", help="list the changes not found")
     parser.add_argument("--sound", action="store_true")
     given = parser.parse_args()
     wanted = {name for name in given.sets.split(",") if name}
@@ -203,17 +218,20 @@ def main() -> None:
         )
         return
     dice = random.Random(given.seed)
+    kinds = [k for k in KINDS if any(word in k for word in given.kinds.split(","))]
     print(f"seed {given.seed}, {given.cases} changes of each kind in each set")
     outcomes: defaultdict[tuple[str, str], list[Outcome]] = defaultdict(list)
     start = time.perf_counter()
     for family, names in sets.items():
         for name in names:
             judge = Judge(name, {e for e in given.elements.split(",") if e})
-            for kind in KINDS:
+            for kind in kinds:
                 for _ in range(given.cases):
                     outcome = judge.planted(kind, dice)
                     if outcome is not None:
                         outcomes[kind, family].append(outcome)
+                        if given.missed and not outcome.found:
+                            print(f"  missed, {kind}: {outcome.told}")
             print(f"{name}: {time.perf_counter() - start:.0f} s", flush=True)
     print_table(outcomes)
 
