@@ -22,6 +22,8 @@ from overlapse.rules.overlap_words import (
 from overlapse.rules.probe import Probe
 from overlapse.rules.registry import rule
 
+_ALSO = "the smallest eigenvalue is below the limit"
+
 
 @rule("overlap.molecule")
 def molecule(case: Case, *, tight: float = 1e-5, vanishes: float = 1e-14) -> Iterator[Finding]:
@@ -85,7 +87,7 @@ def molecule(case: Case, *, tight: float = 1e-5, vanishes: float = 1e-14) -> Ite
             severity,
             f"{worst.where}: {removal(worst)}; smallest eigenvalue {worst.at_most}"
             f"{worst.smallest:.1e} ({ladder(worst)}), condition number "
-            f"{worst.spectrum.condition:.1e}; mostly {shares(worst.blame[0])}{others(group, 'the functions are as close')}",
+            f"{worst.spectrum.condition:.1e}; mostly {shares(worst.blame[0])}{others(group, _ALSO)}",
             measured=worst.smallest,
             limit=vanishes if severity == "error" else _limit(worst, tight),
             witnesses=witnesses(worst),
