@@ -31,7 +31,6 @@ from math import factorial, gamma, pi, sqrt
 from typing import Any, NamedTuple
 
 import numpy as np
-from scipy import sparse
 
 from overlapse.grammar.model import Floats
 from overlapse.rules.physics.harmonics import cartesian_parts, gaunt
@@ -208,6 +207,9 @@ def _weights(left: Floats, right: Floats, order: Ints, rows: list[Floats]) -> An
     if len(left) * len(right) * len(order) * len(rows) < 1e6:
         both = np.einsum("ia,jb->ijab", left, right).reshape(-1, len(order))[:, order]
         return np.concatenate([both * row[order] for row in rows])
+    # Only here, so that overlaps of ordinary sets need numpy alone.
+    from scipy import sparse
+
     large = sparse.kron(sparse.csr_array(left), sparse.csr_array(right)).tocsc()[:, order]
     stack = sparse.vstack([large @ sparse.diags(row[order]) for row in rows]).tocsr()
     return stack if stack.nnz < 0.2 * stack.shape[0] * stack.shape[1] else stack.toarray()

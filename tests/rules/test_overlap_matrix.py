@@ -1,5 +1,7 @@
 """Layout of functions, memory, screening, sums cut short: what no outside source is needed for."""
 
+import subprocess
+import sys
 import tracemalloc
 from collections.abc import Callable
 
@@ -71,6 +73,19 @@ def _cloud(count: int) -> list[Placed]:
     dice = np.random.default_rng(2)
     places = dice.uniform(0.0, 3.0 * count ** (1 / 3), (count, 3))
     return [Placed(MIXED, (float(x), float(y), float(z))) for x, y, z in places]
+
+
+def test_a_dense_matrix_needs_numpy_alone() -> None:
+    code = (
+        "import sys\n"
+        "from overlapse.rules.physics.integrals import overlap\n"
+        "from overlapse.rules.physics.placed import Placed\n"
+        "from overlapse.grammar.model import Block, Shell\n"
+        "block = Block(1, (Shell((0,), [1.0], [[1.0]]),))\n"
+        "print(overlap([Placed(block, (0.0, 0.0, 0.0))]), 'scipy' in sys.modules)\n"
+    )
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
+    assert done.stdout.strip() == "[[1.]] False"
 
 
 def test_memory_is_judged_before_it_is_used() -> None:
