@@ -170,6 +170,16 @@ def test_lattice_sums_keep_the_error_they_state(tolerance: float, dimension: int
     assert np.abs(found - exact).max() < tolerance
 
 
+def test_sums_of_one_tolerance_do_not_share_their_reach() -> None:
+    atoms, points = [Placed(MIXED, ORIGIN)], np.zeros((1, 3))
+    small = lattice_reach(atoms, CELL, tolerance=1e-8)
+    assert lattice_reach(atoms, CELL * 0.3, tolerance=1e-8) > small
+    whole = lattice_overlap(atoms, CELL, points, tolerance=1e-8)
+    lone = lattice_overlap(atoms, CELL, points, tolerance=1e-8, reach=1.0)
+    assert lone[0].real == pytest.approx(overlap(atoms), abs=1e-8)
+    assert np.abs(whole - lone).max() > 0.01
+
+
 def test_an_atom_may_lie_in_any_cell() -> None:
     """Moving an atom by a lattice vector turns phases, not eigenvalues."""
     points = np.array([[0.0, 0.0, 0.0], [0.2, 0.1, 0.4]])
