@@ -87,7 +87,8 @@ def molecule(case: Case, *, tight: float = 1e-5, vanishes: float = 1e-14) -> Ite
             severity,
             f"{worst.where}: {removal(worst)}; smallest eigenvalue {worst.at_most}"
             f"{worst.smallest:.1e} ({ladder(worst)}), condition number "
-            f"{worst.spectrum.condition:.1e}; mostly {shares(worst.blame[0])}{others(group, _ALSO)}",
+            f"{worst.spectrum.condition:.1e}; mostly {shares(worst.blame[0])}"
+            f"{others(group, _ALSO)}",
             measured=worst.smallest,
             limit=vanishes if severity == "error" else _limit(worst, tight),
             witnesses=witnesses(worst),
