@@ -19,6 +19,7 @@ from overlapse.lint import memory
 from overlapse.lint.choices import Shelf, Use, shelf
 from overlapse.lint.engine import FileAudit, judge
 from overlapse.lint.settings import Settings, settings_for
+from overlapse.rules.closeness import doubt
 from overlapse.rules.finding import Finding
 from overlapse.rules.probe import Probe
 from overlapse.rules.probing import Label, Wanted, probe
@@ -104,6 +105,8 @@ def tasks(shelf: Shelf, read: Sequence[Geometry]) -> tuple[list[Task], list[File
         for frame in geometry.frames:
             sites, lacking = shelf.sites(frame)
             faults += _lacks(shelf, geometry, lacking, faults)
+            if not any(fault.message.startswith("suspect") for fault in faults):
+                faults += _doubts(geometry, frame)
             for site in sites:
                 if id(site.block) not in seen:
                     seen.add(id(site.block))
@@ -127,16 +130,42 @@ def _lacks(
         if atom.symbol in told:
             continue
         told.add(atom.symbol)
-        source = geometry.source
-        start = source.starts[atom.line - 1] + atom.column - 1 if source.text else 0
-        word = source.text[start : start + 40].split(maxsplit=1)[0] if source.text else ""
         yield Fault(
             "overlap.molecule",
             shelf.because(atom),
-            (start, start + len(word)),
+            _span_of(geometry, atom),
             element=atom.symbol,
             remedy=f"name a file that has {atom.symbol}: another one, or --use {atom.symbol}=FILE",
         )
+
+
+def _doubts(geometry: Geometry, frame: Frame) -> Iterator[Fault]:
+    """Distances that no atoms have; in a scan told once."""
+    found = doubt(frame.atoms)
+    if found is None:
+        return
+    at, message = found
+    suspect = message.startswith("suspect")
+    far = "bonding distance" in message
+    yield Fault(
+        "overlap.molecule",
+        f"{message} ({geometry.unit}, says {geometry.unit_from})" if suspect else message,
+        _span_of(geometry, frame.atoms[at]),
+        "note" if far else "warning" if suspect else "error",
+        element=frame.atoms[at].symbol,
+        remedy="--unit bohr or --unit angstrom, or units=... in the comment line"
+        if suspect
+        else "take one of the two out, or make it a ghost",
+    )
+
+
+def _span_of(geometry: Geometry, atom: geometries.Atom) -> tuple[int, int]:
+    """Where the name of an atom stands in the text."""
+    source = geometry.source
+    if not source.text:
+        return 0, 0
+    start = source.starts[atom.line - 1] + atom.column - 1
+    return start, start + len(source.text[start : start + 40].split(maxsplit=1)[0])
 
 
 def _check(shelf: Shelf, site: Site) -> None:
