@@ -67,15 +67,18 @@ def _measured(
     if count < 2:
         yield (measure(task, shelf, wanted, limit) for task in tasks)
         return
+    others = set(active_children())
     before = {name: os.environ.get(name) for name in _ONE_THREAD}
     os.environ.update(dict.fromkeys(_ONE_THREAD, "1"))
     # Started afresh, not forked: the number of threads is read when the library is loaded.
     executor = ProcessPoolExecutor(count, get_context("spawn"), _begin, (shelf, wanted, limit))
     try:
-        yield executor.map(_one, tasks)
+        # Not by the executor's map, which cancels what it has handed out when it is interrupted:
+        # ending the processes then leaves the executor waiting for ever.
+        futures = [executor.submit(_one, task) for task in tasks]
+        yield (future.result() for future in futures)
     except BaseException:
-        executor.shutdown(wait=False, cancel_futures=True)
-        for process in active_children():
+        for process in set(active_children()) - others:
             process.terminate()
         raise
     finally:

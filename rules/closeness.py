@@ -8,7 +8,8 @@ import numpy as np
 from overlapse.grammar.geometry import BOHR, Atom
 from overlapse.rules.physics.radii import covalent_radius
 
-TOO_CLOSE, TOO_FAR = 0.6, 1.6  # of the sum of covalent radii; a wrong unit is a factor of 1.9
+# Of the sum of covalent radii; a wrong unit is a factor of 1.9.  Atoms farther still are lone ones.
+TOO_CLOSE, TOO_FAR = 0.6, (1.7, 2.2)
 _MANY = 2000  # atoms; the first of more tell enough
 
 
@@ -46,8 +47,10 @@ def nearest(atoms: Sequence[Atom]) -> Nearest | None:
 def doubt(atoms: Sequence[Atom]) -> tuple[int, str] | None:
     """What is odd about the distances, in words, with the index of the atom it is seen at."""
     found = nearest(atoms)
-    if found is None or TOO_CLOSE <= found.share <= TOO_FAR:
+    if found is None or TOO_CLOSE <= found.share < TOO_FAR[0] or found.share > TOO_FAR[1]:
         return None
+    if found.share > 1.0 and len(atoms) < 3:
+        return None  # two atoms that are drawn apart
     one, two = (f"{atoms[k].symbol} {k + 1}" for k in (found.one, found.two))
     if found.share < 1e-3:
         return found.two, f"{two} stands where {one} stands"

@@ -128,7 +128,7 @@ def test_sarif_carries_the_findings(folder: Path) -> None:
 
 
 def test_missing_elements_are_a_finding_in_the_geometry(folder: Path) -> None:
-    (folder / "odd.xyz").write_text(WATER.replace("\nO ", "\nFe") + WATER)
+    (folder / "odd.xyz").write_text(WATER.replace("\nO ", "\nS ") + WATER)
     done = run(
         folder / "sound.basis", "--on", folder / "odd.xyz", folder / "water.xyz", "--report", "json"
     )
@@ -143,8 +143,8 @@ def test_missing_elements_are_a_finding_in_the_geometry(folder: Path) -> None:
     assert finding["path"] == str(folder / "odd.xyz")
     assert (finding["line"], finding["column"]) == (3, 1)
     assert finding["severity"] == "error"
-    assert "no functions for Fe" in finding["message"]
-    assert "--use Fe=FILE" in finding["remedy"]
+    assert "no functions for S" in finding["message"]
+    assert "--use S=FILE" in finding["remedy"]
 
 
 def test_choices_by_hand(folder: Path) -> None:
