@@ -31,7 +31,6 @@ from math import factorial, gamma, pi, sqrt
 from typing import Any, NamedTuple
 
 import numpy as np
-from scipy import sparse
 
 from overlapse.grammar.model import Floats
 from overlapse.rules.physics.harmonics import cartesian_parts, gaunt
@@ -208,13 +207,25 @@ def _weights(left: Floats, right: Floats, order: Ints, rows: list[Floats]) -> An
     if len(left) * len(right) * len(order) * len(rows) < 1e6:
         both = np.einsum("ia,jb->ijab", left, right).reshape(-1, len(order))[:, order]
         return np.concatenate([both * row[order] for row in rows])
+    # Only here, so that overlaps of ordinary sets need numpy alone.
+    from scipy import sparse
+
     large = sparse.kron(sparse.csr_array(left), sparse.csr_array(right)).tocsc()[:, order]
     stack = sparse.vstack([large @ sparse.diags(row[order]) for row in rows]).tocsr()
     return stack if stack.nnz < 0.2 * stack.shape[0] * stack.shape[1] else stack.toarray()
 
 
-# Frame after frame of a trajectory needs the same ones.
-group_pair = lru_cache(maxsize=512)(GroupPair)
+def group_pair(left: Group, right: Group, tail: "Tail", kinetic: bool) -> GroupPair:
+    """Two groups as pairs of molecules need them again and again, or as one lattice does."""
+    if type(tail) is Tail:
+        return _remembered(left, right, tail.limit, kinetic)
+    return GroupPair(left, right, tail, kinetic)
+
+
+@lru_cache(maxsize=512)
+def _remembered(left: Group, right: Group, limit: float, kinetic: bool) -> GroupPair:
+    return GroupPair(left, right, Tail(limit), kinetic)
+
 
 Shape = tuple[tuple[int, int], tuple[int, int], int]  # degree and l of two parts, and L
 
@@ -264,7 +275,7 @@ def _laguerre(n: int, alpha: float, power: int) -> float:
     return float(value)
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Tail:
     """How far primitive pairs are followed: what is left out of an element stays below a limit.
 

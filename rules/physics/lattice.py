@@ -127,7 +127,8 @@ def lattice_reach(
     """The largest distance (bohr) that converged lattice sums have to follow."""
     tail = LatticeTail(tolerance, lattice_of(cell, periodic))
     groups = Frame(atoms).kinds
-    return max(KindPair(a, b, tail).reach for i, a in enumerate(groups) for b in groups[i:])
+    pairs = (KindPair(a, b, tail) for i, a in enumerate(groups) for b in groups[i:])
+    return max((pair.reach for pair in pairs), default=0.0)
 
 
 def lattice_overlap(

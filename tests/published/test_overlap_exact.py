@@ -1,5 +1,6 @@
 """Overlap and kinetic energy against integrals of 40 digits, for every pair of l up to 6."""
 
+import exact
 import numpy as np
 import pytest
 
@@ -7,8 +8,6 @@ from overlapse.grammar.model import Block, Shell
 from overlapse.rules.physics.harmonics import powers
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.placed import Placed
-
-exact = pytest.importorskip("exact", reason="needs mpmath, of the extra 'test'")
 
 # Exponents and the vector between the centres: alike and close, unlike, nearly equal and very
 # close, far apart, tight on diffuse, so far that all but the diffuse is nothing.
@@ -73,7 +72,7 @@ def test_cartesian_components_have_each_a_norm_of_one(l: int) -> None:
         case = CASES[k % len(CASES)]
         rows, columns = _some(len(powers(l)), k), _some(len(powers(k)), l)
         parts = [
-            [[(powers(n)[at], exact.mpf(1))] for at in some]
+            [((powers(n)[at], exact.mpf(1)),) for at in some]
             for n, some in ((l, rows), (k, columns))
         ]
         found = overlap(_pair(l, k, case, False))

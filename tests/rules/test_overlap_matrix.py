@@ -1,5 +1,7 @@
 """Layout of functions, memory, screening, sums cut short: what no outside source is needed for."""
 
+import subprocess
+import sys
 import tracemalloc
 from collections.abc import Callable
 
@@ -71,6 +73,19 @@ def _cloud(count: int) -> list[Placed]:
     dice = np.random.default_rng(2)
     places = dice.uniform(0.0, 3.0 * count ** (1 / 3), (count, 3))
     return [Placed(MIXED, (float(x), float(y), float(z))) for x, y, z in places]
+
+
+def test_a_dense_matrix_needs_numpy_alone() -> None:
+    code = (
+        "import sys\n"
+        "from overlapse.rules.physics.integrals import overlap\n"
+        "from overlapse.rules.physics.placed import Placed\n"
+        "from overlapse.grammar.model import Block, Shell\n"
+        "block = Block(1, (Shell((0,), [1.0], [[1.0]]),))\n"
+        "print(overlap([Placed(block, (0.0, 0.0, 0.0))]), 'scipy' in sys.modules)\n"
+    )
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
+    assert done.stdout.strip() == "[[1.]] False"
 
 
 def test_memory_is_judged_before_it_is_used() -> None:
@@ -153,6 +168,16 @@ def test_lattice_sums_keep_the_error_they_state(tolerance: float, dimension: int
     exact = lattice_overlap(atoms, CELL, points, tolerance=1e-14, periodic=flags)
     found = lattice_overlap(atoms, CELL, points, tolerance=tolerance, periodic=flags)
     assert np.abs(found - exact).max() < tolerance
+
+
+def test_sums_of_one_tolerance_do_not_share_their_reach() -> None:
+    atoms, points = [Placed(MIXED, ORIGIN)], np.zeros((1, 3))
+    small = lattice_reach(atoms, CELL, tolerance=1e-8)
+    assert lattice_reach(atoms, CELL * 0.3, tolerance=1e-8) > small
+    whole = lattice_overlap(atoms, CELL, points, tolerance=1e-8)
+    lone = lattice_overlap(atoms, CELL, points, tolerance=1e-8, reach=1.0)
+    assert lone[0].real == pytest.approx(overlap(atoms), abs=1e-8)
+    assert np.abs(whole - lone).max() > 0.01
 
 
 def test_an_atom_may_lie_in_any_cell() -> None:
