@@ -5,6 +5,7 @@ These rules compute Hartree-Fock atoms, so they run only where energies are want
 
 from collections.abc import Iterator
 from dataclasses import replace
+from math import inf
 
 from overlapse.rules.atoms import Atom
 from overlapse.rules.case import Case
@@ -231,9 +232,9 @@ def loss(
 def stationary(
     case: Case,
     *,
-    times: float = 8.0,
+    times: float = 7.5,
     clear: float = 25.0,
-    alone: float = 15.0,
+    alone: float = 10.0,
     least: float = 1e-3,
 ) -> Iterator[Finding]:
     """Suspect: the energy of an atom would fall if one number were another.
@@ -309,10 +310,16 @@ def at_atom(
         verdict = None
     if verdict is not None:
         yield number_finding(case, ensemble, verdict, clear)
-    for stray in ensemble.strays(atom):
-        enough = 1.5 * (times if stray.others >= 3 else alone)
-        if stray.times >= enough and (verdict is None or stray.number != verdict.number):
-            yield column_finding(case, ensemble, stray, 2.0 * clear)
+    told = verdict.number if verdict is not None else None
+    astray = [
+        stray
+        for stray in ensemble.strays(atom)
+        if stray.times >= 1.5 * (times if stray.others >= 3 else alone) and stray.number != told
+    ]
+    # One slip is one number: several that stray have another cause, and the first is a hint.
+    astray.sort(key=lambda stray: -stray.times)
+    for stray in astray[:1]:
+        yield column_finding(case, ensemble, stray, 2.0 * clear if len(astray) == 1 else inf)
 
 
 # Following more suspects than this in one set takes longer than an audit has; a set in which so
@@ -351,7 +358,7 @@ def _explained(ensemble: Ensemble, own: Steps, times: float, alone: float) -> Ve
     if expected.others < 3:
         # Without neighbours the rest of the atom must be in order to be believed.
         explains = verdict.after < 10.0 * verdict.count
-    is_sharp = abs(verdict.change) > 4.0 * verdict.error
+    is_sharp = verdict.error < min(0.05, 0.25 * abs(verdict.change))
     return verdict if is_clear and explains and is_sharp else None
 
 
