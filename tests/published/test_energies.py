@@ -6,6 +6,7 @@ exchange the number ourselves.
 
 import re
 from collections.abc import Iterator
+from dataclasses import replace
 from functools import cache
 from pathlib import Path
 
@@ -167,6 +168,19 @@ def test_nothing_is_computed_unless_it_is_wanted() -> None:
     case = Case(read_text(cut("def2-svp", ("C",)), "set.dat"))
     assert ensembles(case) == []
     assert case.judge(rules()["energy.stationary"]) == []
+
+
+def test_an_energy_below_the_limit_is_an_error() -> None:
+    # No functions give one unless rounding has taken over, so the broken result is put in by hand.
+    text = cut("cc-pvdz", ("Ne",))
+    case = Case(read_text(text, "set.dat"), energies=True)
+    (atom,) = ensembles(case)[0].atoms
+    sound = atom.solution
+    assert sound is not None
+    assert case.judge(rules()["energy.bound"]) == []
+    atom.__dict__["solution"] = replace(sound, energy=atom.shells.limit - 1e-4)
+    (finding,) = case.judge(rules()["energy.bound"])
+    assert (finding.severity, finding.limit) == ("error", atom.shells.limit)
 
 
 def test_near_twins_do_not_bring_an_energy_below_the_limit() -> None:
