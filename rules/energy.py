@@ -68,7 +68,9 @@ def loss(
     Elements of one row are described equally well: what the energy lies above the Hartree-Fock
     limit, and what it would fall if all primitives were let loose, changes smoothly along the row.
     A lost function or a wrong number raises one of both for one element.  Of 2400 published blocks
-    with neighbours in their row 4 exceed the first limit, 6 the second.
+    with neighbours in their row 4 exceed the first limit, 6 the second.  An element without
+    neighbours is held against the published set of its label: three times as far from the limit as
+    any element of the period is a note.
 
     Formula: (E - E_limit) / |E_limit| and (E - E_uncontracted) / |E_limit|, over the largest of
     the neighbours up to three places away in the row.

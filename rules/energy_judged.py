@@ -10,6 +10,7 @@ from overlapse.rules.energies import Ensemble, ensembles
 from overlapse.rules.energy_told import charge_finding, column_finding, number_finding
 from overlapse.rules.explained import Verdict, explain
 from overlapse.rules.finding import Finding
+from overlapse.rules.level import usual_gap
 from overlapse.rules.stationary import Steps
 
 
@@ -54,10 +55,12 @@ def losing(case: Case, gap: float, contracted: float, clear: float) -> Iterator[
                 ("lies above the Hartree-Fock limit", atom.gap, [a.gap for a in near], gap),
                 ("pays for contraction", atom.share_lost, [a.share_lost for a in near], contracted),
             ]
+            compared = False
             for told, own, others, most in found:
                 known = [other for other in others if other is not None]
                 if own is None or len(known) < 2:
                     continue
+                compared = True
                 times = own / (max(known) + 1e-6)
                 if times <= most:
                     continue
@@ -73,6 +76,31 @@ def losing(case: Case, gap: float, contracted: float, clear: float) -> Iterator[
                     remedy="look for a lost function or a wrong number in this block",
                 )
                 break
+            if not compared:
+                yield from _by_label(case, ensemble, atom, clear)
+
+
+_LEVEL = 3.0  # times the largest gap of the label's own elements that is worth a note
+
+
+def _by_label(case: Case, ensemble: Ensemble, atom: Atom, clear: float) -> Iterator[Finding]:
+    """An atom without neighbours, against what its set's label implies."""
+    if ensemble.label is None or ensemble.relativistic or atom.gap is None:
+        return
+    usual = usual_gap(ensemble.label, atom.block.atomic_number)
+    if usual is None or atom.gap <= _LEVEL * usual:
+        return
+    yield case.at_line(
+        atom.block.line,
+        "warning" if atom.gap > clear * usual else "note",
+        f"suspect: {atom.block.symbol} lies above the Hartree-Fock limit by {atom.gap:.2g} of its "
+        f"energy, where {ensemble.label} has at most {usual:.2g} in this period",
+        element=atom.block.symbol,
+        measured=atom.gap,
+        limit=_LEVEL * usual,
+        witnesses=(f"energy: {atom.energy:.6f} hartree",),
+        remedy="look for a lost function or a wrong number in this block, and at the label",
+    )
 
 
 def unsteady(

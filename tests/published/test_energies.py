@@ -131,6 +131,13 @@ def test_a_lost_function_costs_energy() -> None:
     assert "energy.loss" in {f.rule for f in found(planted) if f.element == "N"}
 
 
+def test_a_lone_element_is_held_against_its_label() -> None:
+    text = cut("def2-svp", ("O",))
+    assert [f for f in found(text, "def2-SVP.dat") if f.severity != "note"] == []
+    told = [f.message for f in found(text, "def2-QZVP.dat") if f.rule == "energy.loss"]
+    assert len(told) == 1 and "def2-QZVP" in told[0]
+
+
 def test_a_slip_in_the_published_file_itself() -> None:
     # Chlorine of this double-zeta set prints 0.1209560 where the self-overlap and the energy both
     # ask for 0.1290560; T. H. Dunning, P. J. Hay, Methods of Electronic Structure Theory, Plenum
