@@ -21,6 +21,7 @@ _ONE_THREAD = ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS")
 
 _shelf: Shelf
 _wanted: Wanted
+_limit: int | None
 
 
 def measure_all(
@@ -39,7 +40,8 @@ def measure_all(
     """
     count = workers(tasks, jobs, limit)
     probes = []
-    with _measured(tasks, shelf, wanted, count) as results:
+    each = None if limit is None else limit // count
+    with _measured(tasks, shelf, wanted, count, each) as results:
         for task, probe in zip(tasks, results, strict=True):
             probes.append(probe)
             done(task.functions)
@@ -60,15 +62,15 @@ def workers(tasks: Sequence[Task], jobs: int | None, limit: int | None) -> int:
 
 @contextmanager
 def _measured(
-    tasks: Sequence[Task], shelf: Shelf, wanted: Wanted, count: int
+    tasks: Sequence[Task], shelf: Shelf, wanted: Wanted, count: int, limit: int | None
 ) -> Iterator[Iterator[Probe]]:
     if count < 2:
-        yield (measure(task, shelf, wanted) for task in tasks)
+        yield (measure(task, shelf, wanted, limit) for task in tasks)
         return
     before = {name: os.environ.get(name) for name in _ONE_THREAD}
     os.environ.update(dict.fromkeys(_ONE_THREAD, "1"))
     # Started afresh, not forked: the number of threads is read when the library is loaded.
-    executor = ProcessPoolExecutor(count, get_context("spawn"), _begin, (shelf, wanted))
+    executor = ProcessPoolExecutor(count, get_context("spawn"), _begin, (shelf, wanted, limit))
     try:
         yield executor.map(_one, tasks)
     except BaseException:
@@ -82,12 +84,12 @@ def _measured(
             os.environ.pop(name) if value is None else os.environ.update({name: value})
 
 
-def _begin(shelf: Shelf, wanted: Wanted) -> None:
+def _begin(shelf: Shelf, wanted: Wanted, limit: int | None) -> None:
     """In a new process: an interrupt ends it without a word, the parent tells."""
-    global _shelf, _wanted
+    global _shelf, _wanted, _limit
     signal.signal(signal.SIGINT, signal.SIG_DFL)
-    _shelf, _wanted = shelf, wanted
+    _shelf, _wanted, _limit = shelf, wanted, limit
 
 
 def _one(task: Task) -> Probe:
-    return measure(task, _shelf, _wanted)
+    return measure(task, _shelf, _wanted, _limit)

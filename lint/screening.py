@@ -19,6 +19,7 @@ from overlapse.lint import memory
 from overlapse.lint.choices import Shelf, Use, shelf
 from overlapse.lint.engine import FileAudit, judge
 from overlapse.lint.settings import Settings, settings_for
+from overlapse.rules.closeness import doubt
 from overlapse.rules.finding import Finding
 from overlapse.rules.probe import Probe
 from overlapse.rules.probing import Label, Wanted, probe
@@ -104,6 +105,8 @@ def tasks(shelf: Shelf, read: Sequence[Geometry]) -> tuple[list[Task], list[File
         for frame in geometry.frames:
             sites, lacking = shelf.sites(frame)
             faults += _lacks(shelf, geometry, lacking, faults)
+            if not any(fault.message.startswith("suspect") for fault in faults):
+                faults += _doubts(geometry, frame)
             for site in sites:
                 if id(site.block) not in seen:
                     seen.add(id(site.block))
@@ -127,16 +130,42 @@ def _lacks(
         if atom.symbol in told:
             continue
         told.add(atom.symbol)
-        source = geometry.source
-        start = source.starts[atom.line - 1] + atom.column - 1 if source.text else 0
-        word = source.text[start : start + 40].split(maxsplit=1)[0] if source.text else ""
         yield Fault(
             "overlap.molecule",
             shelf.because(atom),
-            (start, start + len(word)),
+            _span_of(geometry, atom),
             element=atom.symbol,
             remedy=f"name a file that has {atom.symbol}: another one, or --use {atom.symbol}=FILE",
         )
+
+
+def _doubts(geometry: Geometry, frame: Frame) -> Iterator[Fault]:
+    """Distances that no atoms have; in a scan told once."""
+    found = doubt(frame.atoms)
+    if found is None:
+        return
+    at, message = found
+    suspect = message.startswith("suspect")
+    far = "bonding distance" in message
+    yield Fault(
+        "overlap.molecule",
+        f"{message} ({geometry.unit}, says {geometry.unit_from})" if suspect else message,
+        _span_of(geometry, frame.atoms[at]),
+        "note" if far else "warning" if suspect else "error",
+        element=frame.atoms[at].symbol,
+        remedy="--unit bohr or --unit angstrom, or units=... in the comment line"
+        if suspect
+        else "take one of the two out, or make it a ghost",
+    )
+
+
+def _span_of(geometry: Geometry, atom: geometries.Atom) -> tuple[int, int]:
+    """Where the name of an atom stands in the text."""
+    source = geometry.source
+    if not source.text:
+        return 0, 0
+    start = source.starts[atom.line - 1] + atom.column - 1
+    return start, start + len(source.text[start : start + 40].split(maxsplit=1)[0])
 
 
 def _check(shelf: Shelf, site: Site) -> None:
@@ -155,33 +184,43 @@ def _check(shelf: Shelf, site: Site) -> None:
             )
 
 
-def check_memory(found: Sequence[Task], limit: int | None) -> None:
-    """Raise TooLarge for a frame whose matrix needs more than ``limit`` bytes."""
-    for task in found:
-        wide = 2 if task.frame.cell is not None else 1
-        need = memory.needed(task.functions, wide=wide)
-        if limit is not None and need > limit:
-            raise TooLarge(
-                f"{task.geometry}, frame {task.frame.index}: {task.functions:,} functions need "
-                f"about {memory.told(need)} of memory, {memory.told(limit)} are allowed; "
-                "--memory allows more"
-            )
-
-
 # ---- measuring
 
 
-def measure(task: Task, shelf: Shelf, wanted: Wanted) -> Probe:
-    """Measure one frame."""
+def measure(task: Task, shelf: Shelf, wanted: Wanted, limit: int | None = None) -> Probe:
+    """Measure one frame within ``limit`` bytes, in sparse form where the dense matrix is too large.
+
+    Raises TooLarge where it does not fit in any form.
+    """
     frame = task.frame
     sites, _ = shelf.sites(frame)
     label = Label(task.geometry, frame.index, frame.title)
-    if frame.cell is None:
-        return probe(sites, wanted, label)
-    # Crystals are the rarer case, and their sums need more libraries.
-    from overlapse.rules.probing_lattice import probe_lattice
+    wide = 2 if frame.cell is not None else 1
+    fits = limit is None or memory.needed(task.functions, wide=wide) <= limit
+    if frame.cell is not None:
+        # Crystals are the rarer case, and their sums need more libraries.
+        from overlapse.rules.probing_lattice import probe_lattice
 
-    return probe_lattice(sites, frame.cell, frame.periodic, wanted, label)
+        if not fits:
+            raise _too_large(task, wide, limit or 0)
+        return probe_lattice(sites, frame.cell, frame.periodic, wanted, label)
+    if fits:
+        return probe(sites, wanted, label)
+    from overlapse.rules.physics.integrals import TooLarge as TooLargeInAnyForm
+    from overlapse.rules.probing_large import probe_large
+
+    try:
+        return probe_large(sites, wanted, label, limit or 0)
+    except TooLargeInAnyForm as problem:
+        raise _too_large(task, wide, limit or 0) from problem
+
+
+def _too_large(task: Task, wide: int, limit: int) -> TooLarge:
+    need = memory.needed(task.functions, wide=wide)
+    return TooLarge(
+        f"{task.geometry}, frame {task.frame.index}: {task.functions:,} functions need about "
+        f"{memory.told(need)} of memory, {memory.told(limit)} are allowed; --memory allows more"
+    )
 
 
 # ---- judging
@@ -241,8 +280,8 @@ def screen_files(
     made = shelf(documents, chosen, wanted=label, spherical=spherical)
     read = [geometries.read(path, unit=unit) for path in geometry_files([geometry])]
     found, audits = tasks(made, read)
-    check_memory(found, memory.allowed())
-    return screened(made, [measure(task, made, wanted) for task in found], audits)
+    limit = memory.allowed()
+    return screened(made, [measure(task, made, wanted, limit) for task in found], audits)
 
 
 def screen(*basis: str | os.PathLike[str], on: str | os.PathLike[str], **options: Any) -> Screening:

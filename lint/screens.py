@@ -45,8 +45,8 @@ def _frame(probe: Probe) -> Iterator[str]:
         yield from _item("title", one_line(probe.title.strip()))
     yield from _item(
         "overlap",
-        f"smallest eigenvalue {found.smallest:.3g}, largest {found.largest:.3g}, condition number "
-        f"{found.condition:.2g} ({found.method})",
+        f"smallest eigenvalue {probe.at_most}{found.smallest:.3g}, largest {found.largest:.3g}, "
+        f"condition number {found.condition:.2g} ({found.method})",
     )
     yield from _item(
         "ladder", ", ".join(f"{count} below {plain(step)}" for step, count in found.below.items())

@@ -56,7 +56,7 @@ def _draw(figure: "Figure", probes: Sequence[Probe]) -> None:
     rows = 2 if len(probes) > 1 else 1
     figure.set_size_inches(10.0, 4.6 * rows)
     grid = figure.add_gridspec(
-        rows, 2, width_ratios=(1.1, 1.0), wspace=0.3, hspace=0.5, left=0.08, right=0.97,
+        rows, 2, width_ratios=(1.1, 1.0), wspace=0.3, hspace=0.36, left=0.08, right=0.97,
         top=1.0 - 0.45 / (4.6 * rows), bottom=0.8 / (4.6 * rows),
     )  # fmt: skip
     if rows == 2:

@@ -87,7 +87,7 @@ def lattice(
             severity,
             f"{worst.where}, k ({k}): {removal(worst)}; smallest eigenvalue {worst.smallest:.1e} "
             f"({ladder(worst)}); mostly {shares(worst.blame[0])}; {_origin(worst, sums)}"
-            f"{others(group, 'the functions are as close')}",
+            f"{others(group, 'the smallest eigenvalue is below the limit')}",
             measured=worst.smallest,
             limit=tight if severity == "note" else worst.threshold,
             witnesses=witnesses(worst),

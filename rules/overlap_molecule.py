@@ -22,6 +22,8 @@ from overlapse.rules.overlap_words import (
 from overlapse.rules.probe import Probe
 from overlapse.rules.registry import rule
 
+_ALSO = "the smallest eigenvalue is below the limit"
+
 
 @rule("overlap.molecule")
 def molecule(case: Case, *, tight: float = 1e-5, vanishes: float = 1e-14) -> Iterator[Finding]:
@@ -83,9 +85,10 @@ def molecule(case: Case, *, tight: float = 1e-5, vanishes: float = 1e-14) -> Ite
             case,
             worst,
             severity,
-            f"{worst.where}: {removal(worst)}; smallest eigenvalue {worst.smallest:.1e} "
-            f"({ladder(worst)}), condition number {worst.spectrum.condition:.1e}; mostly "
-            f"{shares(worst.blame[0])}{others(group, 'the functions are as close')}",
+            f"{worst.where}: {removal(worst)}; smallest eigenvalue {worst.at_most}"
+            f"{worst.smallest:.1e} ({ladder(worst)}), condition number "
+            f"{worst.spectrum.condition:.1e}; mostly {shares(worst.blame[0])}"
+            f"{others(group, _ALSO)}",
             measured=worst.smallest,
             limit=vanishes if severity == "error" else _limit(worst, tight),
             witnesses=witnesses(worst),
@@ -100,7 +103,8 @@ def removal(probe: Probe) -> str:
         return f"all {count} functions stay at a removal threshold of {step}"
     gone = count - probe.kept
     functions = f"function{'s' * (gone != 1)}"
-    return f"{gone} {functions} of {count} will be removed at a threshold of {step}"
+    least = "at least " if probe.at_most else ""
+    return f"{least}{gone} {functions} of {count} will be removed at a threshold of {step}"
 
 
 def _limit(probe: Probe, tight: float) -> float:

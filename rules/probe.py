@@ -142,6 +142,11 @@ class Probe:
         return self.spectrum.smallest
 
     @property
+    def at_most(self) -> str:
+        """A word before the smallest eigenvalue, where only a bound of it is known."""
+        return "at most " if self.spectrum.method.startswith("bounds") else ""
+
+    @property
     def culprit(self) -> Function | None:
         """The function with the largest share in the smallest eigenvalue that was looked into."""
         return self.blame[0].kinds[0].function if self.blame else None

@@ -9,7 +9,7 @@ from overlapse.rules.physics.inertia import Matrix
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.onecentre import eigenvalues
 from overlapse.rules.physics.outlook import LOOKED_AT, Outlook, foresee, outlook
-from overlapse.rules.physics.placed import Functions, lay_out
+from overlapse.rules.physics.placed import Functions, Ints, lay_out
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
 from overlapse.rules.physics.spectrum import LADDER, Spectrum, spectrum
 from overlapse.rules.physics.superposed import affordable
@@ -61,10 +61,15 @@ def probe(sites: Sequence[Site], wanted: Wanted, label: Label = Label()) -> Prob
     return assembled(sites, wanted, label, matrix, found, pruned, energies, counterpart)
 
 
-def steps(matrix: Matrix, wanted: Wanted) -> Spectrum:
-    """The spectrum, with counts at the ladder and on both sides of the removal threshold."""
+def ladder_of(wanted: Wanted) -> tuple[float, ...]:
+    """Where eigenvalues are counted: the ladder, and on both sides of the removal threshold."""
     edges = (wanted.threshold / NEAR, wanted.threshold, wanted.threshold * NEAR)
-    return spectrum(matrix, tuple(sorted({*LADDER, *edges}, reverse=True)))
+    return tuple(sorted({*LADDER, *edges}, reverse=True))
+
+
+def steps(matrix: Matrix, wanted: Wanted) -> Spectrum:
+    """The spectrum with all counts."""
+    return spectrum(matrix, ladder_of(wanted))
 
 
 def assembled(
@@ -77,9 +82,11 @@ def assembled(
     energies: Floats | None,
     counterpart: Left | None,
     lattice: Lattice | None = None,
+    functions: Functions | None = None,
 ) -> Probe:
-    """All that is known of a matrix, in one piece."""
-    functions = lay_out([site.placed for site in sites])
+    """All that is known of a matrix, in one piece; ``functions`` are its own, all if None."""
+    if functions is None:
+        functions = lay_out([site.placed for site in sites])
     low, step, high = wanted.threshold / NEAR, wanted.threshold, wanted.threshold * NEAR
     return Probe(
         geometry=label.geometry,
@@ -177,3 +184,15 @@ def as_dropped(drops: Iterable[Drop], sites: Sequence[Site], wanted: Wanted) -> 
     for drop in drops:
         function = described(sites[drop.like], drop.shell, drop.column, drop.exponent)
         yield Dropped(function, drop.like + 1 if wanted.per_atom else 0)
+
+
+def some_of(functions: Functions, at: Ints) -> Functions:
+    """Some of the functions, by their indices."""
+    return Functions(
+        functions.atom[at],
+        functions.shell[at],
+        functions.column[at],
+        functions.l[at],
+        functions.component[at],
+        functions.exponent[at],
+    )

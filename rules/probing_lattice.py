@@ -8,7 +8,7 @@ from overlapse.grammar.model import Floats
 from overlapse.rules.blaming import described
 from overlapse.rules.physics.inertia import Matrix
 from overlapse.rules.physics.lattice import lattice_overlap, lattice_reach, monkhorst_pack
-from overlapse.rules.physics.placed import Functions, Ints, lay_out
+from overlapse.rules.physics.placed import lay_out
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
 from overlapse.rules.physics.spectrum import smallest
 from overlapse.rules.probe import AtPoint, Function, Lattice, Left, Probe
@@ -19,6 +19,7 @@ from overlapse.rules.probing import (
     as_dropped,
     assembled,
     in_short,
+    some_of,
     steps,
     turned_spherical,
 )
@@ -116,7 +117,7 @@ def _pruned(
         if left.smallest < wanted.tolerance:
             pruning = shells_to_drop(
                 part,
-                _some(functions, kept),
+                some_of(functions, kept),
                 placed,
                 wanted.tolerance,
                 "atom" if wanted.per_atom else "element",
@@ -129,14 +130,3 @@ def _pruned(
         return (), None
     low = min(lows, key=lambda left: left.smallest)
     return tuple(as_dropped(drops, sites, wanted)), low._replace(functions=len(kept))
-
-
-def _some(functions: Functions, at: Ints) -> Functions:
-    return Functions(
-        functions.atom[at],
-        functions.shell[at],
-        functions.column[at],
-        functions.l[at],
-        functions.component[at],
-        functions.exponent[at],
-    )

@@ -217,7 +217,7 @@ def screen(
     """
     from overlapse.lint.engine import LEVELS
     from overlapse.lint.scanning import measure_all
-    from overlapse.lint.screening import ScreenError, check_memory, screened, tasks
+    from overlapse.lint.screening import ScreenError, screened, tasks
     from overlapse.rules.probing import Wanted
 
     if not basis and not uses:
@@ -230,7 +230,6 @@ def screen(
     read = list(_geometries(geometry, unit, named))
     try:
         found, audits = tasks(shelf, read)
-        check_memory(found, limit)
         with _progress(found) as done:
             values = drawing is not None or report == "html"  # both draw all eigenvalues
             asked = Wanted(threshold, tolerance, per_atom, mesh, values, charge, unpaired)

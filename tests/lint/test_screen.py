@@ -175,6 +175,35 @@ def test_units(folder: Path) -> None:
     assert bohr["smallest"] < angstrom["smallest"]
 
 
+@pytest.mark.parametrize(
+    ("unit", "factor", "severity"),
+    [("bohr", 1.0, "warning"), ("angstrom", 1.8897, "note"), ("angstrom", 1.0, None)],
+)
+def test_a_wrong_unit_is_suspected(
+    folder: Path, unit: str, factor: float, severity: str | None
+) -> None:
+    rows = [line.split() for line in WATER.splitlines()[2:]]
+    text = "".join(f"{s} {' '.join(str(factor * float(x)) for x in r)}\n" for s, *r in rows)
+    (folder / "scaled.xyz").write_text(f"3\nx\n{text}" * 2)
+    arguments = [folder / "sound.basis", "--on", folder / "scaled.xyz", "--unit", unit]
+    found = json.loads(run(*arguments, "--report", "json").stdout)["files"]
+    findings = [f for file in found for f in file["findings"] if "unit" in f["message"]]
+    assert [f["severity"] for f in findings] == ([severity] if severity else [])
+    for finding in findings:
+        assert finding["path"] == str(folder / "scaled.xyz")
+        assert finding["line"] in (3, 4, 5)
+        assert "suspect" in finding["message"]
+
+
+def test_two_nuclei_in_one_place_are_an_error(folder: Path) -> None:
+    (folder / "twice.xyz").write_text(WATER.replace("3\n", "4\n") + "H 0 0.7572 -0.4692\n")
+    done = run(folder / "sound.basis", "--on", folder / "twice.xyz", "--report", "lines")
+    assert done.returncode == 1
+    assert (
+        f"{folder / 'twice.xyz'}:6:1: error: overlap.molecule: H: H 4 stands where" in done.stdout
+    )
+
+
 def test_a_folder_is_a_scan_whose_order_does_not_depend_on_the_processes(folder: Path) -> None:
     one = run(folder / "twins.basis", "--on", folder / "scan", "--report", "json", "--jobs", "1")
     two = run(folder / "twins.basis", "--on", folder / "scan", "--report", "json", "--jobs", "2")

@@ -231,3 +231,30 @@ def test_an_acceptance_of_what_only_a_geometry_shows_is_not_idle_without_one() -
     accepted = "! overlapse: accept overlap.molecule for H because the twins are wanted\n"
     found = audit_text(accepted + TWINS, "made.basis", settings=Settings())
     assert not [f for f in found.findings if f.rule == "form.acceptance"]
+
+
+def test_what_does_not_fit_is_judged_by_its_diffuse_functions(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    from overlapse.grammar.geometry import read_bytes
+    from overlapse.lint.choices import shelf
+    from overlapse.lint.screening import measure, tasks
+    from overlapse.rules.physics import blocks
+
+    monkeypatch.setattr(blocks, "WORKING", 2**20)  # buffers count little in a large molecule
+    text = "H 0\nS 1 1.0\n 1.5 1.0\nS 1 1.0\n 0.4 1.0\nS 1 1.0\n 0.08 1.0\n****\n"
+    rows = [f"H {2.0 * x:.2f} {2.0 * y:.2f} 0" for x in range(31) for y in range(30)]
+    geometry = f"{len(rows)}\nlayer\n" + "\n".join(rows) + "\n"
+    made = shelf([read_text(text)])
+    (task,), _ = tasks(made, [read_bytes(geometry.encode(), "layer.xyz")])
+    whole = measure(task, made, Wanted())
+    # So little that the dense matrix of 2790 functions does not fit, nor does that of all atoms.
+    bound = measure(task, made, Wanted(), 140 * 2**20)
+    assert bound.spectrum.functions == whole.spectrum.functions == 2790
+    assert "bounds from the 1915 most diffuse" in bound.spectrum.method
+    # A part of the matrix: its smallest eigenvalue can only be larger, its counts smaller.
+    assert whole.smallest <= bound.smallest * (1 + 1e-6) <= 3 * whole.smallest
+    for step, count in bound.spectrum.below.items():
+        assert count <= whole.spectrum.below[step]
+    assert bound.spectrum.largest == pytest.approx(whole.spectrum.largest, rel=1e-4)
+    assert bound.culprit == whole.culprit
