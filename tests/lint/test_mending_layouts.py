@@ -62,6 +62,6 @@ def test_a_contraction_off_its_norm(name: str) -> None:
         assert (old.exponents == new.exponents).all()
         if (old.coefficients != new.coefficients).any():
             changed += 1
-            # Seven decimals are printed.
-            assert new.coefficients == pytest.approx(old.coefficients / 1.1, abs=1.1e-7)
+            # At least six decimals are printed.
+            assert new.coefficients == pytest.approx(old.coefficients / 1.1, abs=6e-7)
     assert changed == 1
