@@ -182,7 +182,7 @@ def begin() -> None:
 @cache
 def code() -> str:
     """A digest of everything that judges: this program, its rules and layouts from elsewhere."""
-    from importlib.metadata import version
+    from importlib.metadata import PackageNotFoundError, version
 
     from overlapse.grammar import plugins
 
@@ -194,8 +194,9 @@ def code() -> str:
             if path.suffix in (".py", ".json", ".lark"):
                 digest.update(os.fsencode(path.relative_to(root.parent)) + b"\0")
                 digest.update(path.read_bytes())
-    for name in ("numpy", "lark"):
-        digest.update(version(name).encode())
+    for name in ("numpy", "lark", "scipy"):
+        with suppress(PackageNotFoundError):
+            digest.update(f"{name} {version(name)}\n".encode())
     digest.update(sys.version.encode())
     return digest.hexdigest()
 
@@ -211,6 +212,7 @@ def plain(audit: FileAudit) -> dict[str, Any]:
         "label": audit.label,
         "label_from": audit.label_from,
         "passed_over": audit.passed_over,
+        "silent": sorted(audit.silent),
         "layout": audit.layout,
         "elements": audit.elements,
         "blocks": audit.blocks,
@@ -241,6 +243,7 @@ def restored(data: dict[str, Any], path: str, settings: Settings) -> FileAudit:
         label=data["label"],
         label_from=data["label_from"],
         passed_over=data["passed_over"],
+        silent=frozenset(data["silent"]),
         layout=data["layout"],
         elements=data["elements"],
         blocks=data["blocks"],
