@@ -21,7 +21,7 @@ The measure is a sum over the combinations f of eigenvalues below 1e-6,
 The powers are those of a logistic fit to 108 calculations without removal, rounded; they lie a
 little below the formula's because the estimate of p has an error of a factor of two or three.
 
-Limits, from the same calculations: no field failed below m = 1.3e5 in any of four ways to do the
+Limits, from the same calculations: no field failed below m = 1.2e5 in any of four ways to do the
 arithmetic, and nearly all did above 2e6; between the two the noise of the program decides.  On 113
 systems that took no part, "fails" was said just where a field failed for 94 %, the outlook was not
 contradicted for 97 %, and no failure was called safe.
