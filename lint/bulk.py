@@ -167,16 +167,13 @@ def _kept(job: Job, judge: "_Judge", cache: "Cache | None") -> FileAudit | None:
     """The result that was kept for a file, or None."""
     if cache is None:
         return None
-    from overlapse.lint.cache import under
-
     path = os.fspath(job.target.path)
     try:
         data = job.target.path.read_bytes()
     except OSError:
         return None  # the judging tells of it
     settings = judge.settings_of(path)
-    found = cache.get(judge.key(data, job.target, settings))
-    return None if found is None else under(found, path, settings)
+    return cache.get(judge.key(data, job.target, settings), path, settings)
 
 
 def _finished(batch: _Batch, cache: "Cache | None") -> Iterator[tuple[Job, FileAudit]]:

@@ -14,7 +14,7 @@ import sys
 import time
 from collections.abc import Iterable
 from contextlib import suppress
-from dataclasses import asdict, fields, replace
+from dataclasses import fields, replace
 from functools import cache
 from pathlib import Path
 from typing import Any
@@ -44,12 +44,12 @@ class Cache:
         self._connection: sqlite3.Connection | None = None
         self._broken = False
 
-    def get(self, key: str) -> FileAudit | None:
-        """The result kept under a key, or None."""
+    def get(self, key: str, path: str, settings: Settings) -> FileAudit | None:
+        """The result kept under a key, as that of the file at a path, or None."""
         try:
             found = self._open().execute("SELECT result FROM results WHERE key = ?", (key,))
             row = found.fetchone()
-            return None if row is None else restored(json.loads(row[0]))
+            return None if row is None else restored(json.loads(row[0]), path, settings)
         except (OSError, sqlite3.Error, ValueError, KeyError, TypeError, IndexError) as problem:
             self._give_up(problem)
             return None
@@ -182,7 +182,7 @@ def begin() -> None:
 @cache
 def code() -> str:
     """A digest of everything that judges: this program, its rules and layouts from elsewhere."""
-    from importlib.metadata import version
+    from importlib.metadata import PackageNotFoundError, version
 
     from overlapse.grammar import plugins
 
@@ -194,8 +194,9 @@ def code() -> str:
             if path.suffix in (".py", ".json", ".lark"):
                 digest.update(os.fsencode(path.relative_to(root.parent)) + b"\0")
                 digest.update(path.read_bytes())
-    for name in ("numpy", "lark"):
-        digest.update(version(name).encode())
+    for name in ("numpy", "lark", "scipy"):
+        with suppress(PackageNotFoundError):
+            digest.update(f"{name} {version(name)}\n".encode())
     digest.update(sys.version.encode())
     return digest.hexdigest()
 
@@ -211,6 +212,7 @@ def plain(audit: FileAudit) -> dict[str, Any]:
         "label": audit.label,
         "label_from": audit.label_from,
         "passed_over": audit.passed_over,
+        "silent": sorted(audit.silent),
         "layout": audit.layout,
         "elements": audit.elements,
         "blocks": audit.blocks,
@@ -218,25 +220,30 @@ def plain(audit: FileAudit) -> dict[str, Any]:
     }
 
 
+_FIELDS = tuple(each.name for each in fields(Finding) if each.name not in ("path", "edits"))
+
+
 def _small(finding: Finding) -> dict[str, Any]:
-    return {
-        key: value
-        for key, value in asdict(finding).items()
-        if key != "path" and value is not None and value != () and value != ""
-    }
+    found = {name: getattr(finding, name) for name in _FIELDS}
+    found = {name: value for name, value in found.items() if value not in (None, (), "")}
+    if finding.edits:
+        found["edits"] = [[*edit.span, edit.replacement] for edit in finding.edits]
+    return found
 
 
-def restored(data: dict[str, Any]) -> FileAudit:
-    """The audit that `plain` made data of."""
+def restored(data: dict[str, Any], path: str, settings: Settings) -> FileAudit:
+    """The audit that `plain` made data of, as that of the file at a path."""
     return FileAudit(
-        "",
-        findings=tuple(map(_finding, data["findings"])),
+        path,
+        settings=settings,
+        findings=tuple(_finding(each, path) for each in data["findings"]),
         accepted=tuple(
-            Accepted(_finding(f), reason, where) for f, reason, where in data["accepted"]
+            Accepted(_finding(each, path), why, where) for each, why, where in data["accepted"]
         ),
         label=data["label"],
         label_from=data["label_from"],
         passed_over=data["passed_over"],
+        silent=frozenset(data["silent"]),
         layout=data["layout"],
         elements=data["elements"],
         blocks=data["blocks"],
@@ -244,26 +251,7 @@ def restored(data: dict[str, Any]) -> FileAudit:
     )
 
 
-def _finding(data: dict[str, Any]) -> Finding:
-    edits = tuple(Edit(tuple(e["span"]), e["replacement"]) for e in data.get("edits", ()))
-    return Finding(
-        **{
-            **data,
-            "path": "",
-            "witnesses": tuple(data.get("witnesses", ())),
-            "edits": edits,
-        }
-    )
-
-
-def under(audit: FileAudit, path: str, settings: Settings) -> FileAudit:
-    """A restored audit as that of the file at a path."""
-    return replace(
-        audit,
-        path=path,
-        settings=settings,
-        findings=tuple(replace(finding, path=path) for finding in audit.findings),
-        accepted=tuple(
-            item._replace(finding=replace(item.finding, path=path)) for item in audit.accepted
-        ),
-    )
+def _finding(data: dict[str, Any], path: str) -> Finding:
+    edits = tuple(Edit((start, end), words) for start, end, words in data.pop("edits", ()))
+    witnesses = tuple(data.pop("witnesses", ()))
+    return Finding(path=path, witnesses=witnesses, edits=edits, **data)

@@ -13,7 +13,7 @@ from overlapse.grammar.source import Source
 from overlapse.lint.fingerprint import marked
 from overlapse.lint.neighbours import Beside, furnish
 from overlapse.lint.settings import Settings, settings_for
-from overlapse.rules.acceptance import acceptances_of
+from overlapse.rules.acceptance import acceptances_of, can_find
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
 from overlapse.rules.probe import Probe
@@ -70,8 +70,8 @@ class FileAudit:
     excerpts: what stands around each place that a finding points at, by line and column.
     accepted: findings that do not count, because the file or the settings say why.  known:
     findings that do not count, because a ledger holds them; gone: its entries that were found no
-    more.  absent: the file is only in the ledger.  probes: what was measured
-    of it in geometries.
+    more.  absent: the file is only in the ledger.  probes: what was measured of it in geometries.
+    silent: rules that could find nothing, because they are off or lack what they need.
     """
 
     path: str
@@ -91,6 +91,7 @@ class FileAudit:
     gone: tuple[Mapping[str, Any], ...] = ()
     absent: bool = False
     probes: tuple[Probe, ...] = ()
+    silent: frozenset[str] = frozenset()
 
     @property
     def fails(self) -> bool:
@@ -256,6 +257,7 @@ def judge(
         excerpts=_excerpts(findings, document.source),
         accepted=accepted,
         probes=case.probes,
+        silent=frozenset(n for n in rules() if n not in case.found or not can_find(case, n)),
     )
 
 

@@ -48,14 +48,15 @@ class Ledger:
         # What was known and has been accepted since is not gone.
         for accepted in audit.accepted:
             left.pop(accepted.finding.fingerprint, None)
-        gone = tuple(left.values())
+        gone = tuple(entry for entry in left.values() if entry["rule"] not in audit.silent)
         return replace(audit, findings=tuple(new), known=tuple(known), gone=gone)
 
     def take(self, audit: FileAudit) -> None:
         """Know all findings of an audit from now on."""
-        found = [_entry(finding) for finding in audit.findings]
         name = self.name_of(audit.path)
-        self.files.pop(name, None)
+        found = [_entry(finding) for finding in audit.findings]
+        # What could not be looked for this time stays known.
+        found += [entry for entry in self.files.pop(name, ()) if entry["rule"] in audit.silent]
         if found:
             self.files[name] = found
 

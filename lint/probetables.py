@@ -114,4 +114,5 @@ def _joined(audit: FileAudit, more: FileAudit) -> FileAudit:
         accepted=(*audit.accepted, *more.accepted),
         excerpts={**audit.excerpts, **more.excerpts},
         probes=(*audit.probes, *more.probes),
+        silent=audit.silent & more.silent,
     )

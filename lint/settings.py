@@ -120,18 +120,27 @@ def settings_for(path: str | os.PathLike[str]) -> Settings:
 
     Raises SettingsError for a file that is no TOML or holds a wrong key or value.
     """
-    path = Path(path)
-    folder = path if path.is_dir() else path.parent
-    found = file_for(folder.resolve())
-    if found is None:
-        return Settings()
-    return found.settings_for(folder.resolve() / path.name if folder != path else folder.resolve())
+    name = os.fspath(path)
+    folder, last = (name, "") if os.path.isdir(name) else os.path.split(name)
+    resolved = Path(os.path.realpath(folder))
+    found = file_for(resolved)
+    return Settings() if found is None else found.settings_for(resolved / last)
 
 
 def nearest(name: str, path: str | os.PathLike[str]) -> Path | None:
     """The nearest file of a name in the folders above a path, or None."""
-    above = Path(os.path.realpath(path)).parents
-    return next((folder / name for folder in above if (folder / name).is_file()), None)
+    for folder in _above(os.path.dirname(os.path.realpath(path))):
+        place = os.path.join(folder, name)
+        if os.path.isfile(place):
+            return Path(place)
+    return None
+
+
+@cache
+def _above(folder: str) -> tuple[str, ...]:
+    """A folder and those above it.  Plain strings: an audit of many files asks for each."""
+    up = os.path.dirname(folder)
+    return (folder,) if up == folder else (folder, *_above(up))
 
 
 def file_for(folder: Path) -> "SettingsFile | None":
@@ -139,16 +148,16 @@ def file_for(folder: Path) -> "SettingsFile | None":
 
     Raises SettingsError for one that cannot be used.
     """
-    for place in (folder, *folder.parents):
+    for place in _above(str(folder)):
         for name, keys in (("overlapse.toml", ()), ("pyproject.toml", ("tool", "overlapse"))):
-            path = place / name
+            path = os.path.join(place, name)
             try:
                 seen = os.stat(path)
             except OSError:
                 continue
             if not stat.S_ISREG(seen.st_mode):
                 continue
-            found = _file(path, keys, seen.st_mtime_ns, seen.st_size)
+            found = _file(Path(path), keys, seen.st_mtime_ns, seen.st_size)
             if found is not None:
                 return found
     return None

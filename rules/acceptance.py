@@ -172,7 +172,7 @@ def acceptance(case: Case) -> Iterator[Finding]:
         )
     for accepted in accepted_here:
         # Without the rules' findings (one rule tried alone) nothing can be said about their use.
-        judged = [name for name in accepted.rules if name in case.found and _can_find(case, name)]
+        judged = [name for name in accepted.rules if name in case.found and can_find(case, name)]
         if judged and not any(accepted.covers(f) for name in judged for f in case.found[name]):
             yield case.at_line(
                 accepted.line,
@@ -182,6 +182,11 @@ def acceptance(case: Case) -> Iterator[Finding]:
             )
 
 
-def _can_find(case: Case, name: str) -> bool:
-    """Whether a rule could find something: those about geometries need measurements."""
-    return bool(case.probes) or not rules()[name].explanation.geometry
+def can_find(case: Case, name: str) -> bool:
+    """Whether a rule has what it needs to find anything."""
+    needs = rules()[name].needs
+    if needs == "geometry":
+        return bool(case.probes)
+    if needs == "company":
+        return bool(case.seals or case.reference or case.kin)
+    return case.energies or needs != "energies"

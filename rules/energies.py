@@ -3,6 +3,7 @@
 import re
 from functools import cached_property
 
+from overlapse.grammar.designated import Designation
 from overlapse.grammar.elements import period_of, row_of
 from overlapse.grammar.model import BasisSet
 from overlapse.rules.atoms import Atom, atom_of
@@ -20,10 +21,18 @@ class Ensemble:
     """The atoms of one set, by rising atomic number, and what is computed for them when asked.
 
     relativistic: the set was made for relativistic atoms, so ours can only compare neighbours.
+    label: what the set is claimed to be, where that is understood.
     """
 
-    def __init__(self, members: BasisSet, atoms: list[Atom], relativistic: bool = False) -> None:
+    def __init__(
+        self,
+        members: BasisSet,
+        atoms: list[Atom],
+        relativistic: bool = False,
+        label: Designation | None = None,
+    ) -> None:
         self.members = members
+        self.label = label
         self.atoms = atoms
         self.relativistic = relativistic
 
@@ -170,9 +179,10 @@ def _ensemble(case: Case, members: BasisSet, index: int) -> Ensemble:
     # Sets that mostly leave out the core are fragments, or stand beside potentials elsewhere.
     if sum(innermost(atom.block) > _WHOLE for atom in atoms) * 2 <= len(atoms):
         atoms = []
-    labels = [claim.label for claim in case.claims.get(index, [])]
+    claims = case.claims.get(index, [])
     return Ensemble(
         members,
         sorted(atoms, key=lambda atom: atom.block.atomic_number),
-        any(_RELATIVISTIC.search(label) for label in labels),
+        any(_RELATIVISTIC.search(claim.label) for claim in claims),
+        next((claim.designation for claim in claims if claim.designation is not None), None),
     )

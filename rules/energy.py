@@ -1,19 +1,14 @@
 """Atoms: is each block's energy possible, does contraction cost what it should, is it stationary?
 
-These rules compute Hartree-Fock atoms, so they run only where energies are wanted.
+These rules compute Hartree-Fock atoms, so they run only where energies are wanted; what they need
+is imported no sooner.
 """
 
 from collections.abc import Iterator
-from dataclasses import replace
 
-from overlapse.rules.atoms import Atom
 from overlapse.rules.case import Case
-from overlapse.rules.energies import Ensemble, ensembles
-from overlapse.rules.energy_told import charge_finding, column_finding, number_finding
-from overlapse.rules.explained import Verdict, explain
 from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rule
-from overlapse.rules.stationary import Steps
 
 
 @rule("energy.bound")
@@ -58,34 +53,10 @@ def bound(case: Case, *, above: float = 0.03) -> Iterator[Finding]:
           0.29758  1.0
         ****
     """
-    for ensemble in ensembles(case):
-        for atom in ensemble.atoms:
-            if atom.energy is None:
-                continue
-            gap = atom.gap or 0.0
-            most = above + 0.07 / atom.block.atomic_number**2
-            below = gap * abs(atom.shells.limit) < -_RESIDUE * max(1.0, abs(atom.shells.limit))
-            if not below and gap <= most:
-                continue
-            side = "below" if below else "above"
-            told = "which no functions can give" if below else "poorer than any published set"
-            yield case.at_line(
-                atom.block.line,
-                "error" if below else "warning",
-                f"the energy of {atom.block.symbol} ({atom.shells.text}, {atom.shells.term}) in "
-                f"these functions is {atom.energy:.6f} hartree, {abs(gap):.2%} {side} the "
-                f"Hartree-Fock limit, {told}",
-                element=atom.block.symbol,
-                measured=atom.energy,
-                limit=atom.shells.limit if below else atom.shells.limit * (1.0 - most),
-                remedy="take out one of two functions that nearly coincide"
-                if below
-                else "look at the innermost functions, and whose block this is",
-            )
+    if case.energies:
+        from overlapse.rules.energy_judged import bounded
 
-
-# The limits are known to six decimals; sums over thousands of hartree lose a few more digits.
-_RESIDUE = 2e-6
+        yield from bounded(case, above)
 
 
 @rule("energy.loss")
@@ -97,7 +68,9 @@ def loss(
     Elements of one row are described equally well: what the energy lies above the Hartree-Fock
     limit, and what it would fall if all primitives were let loose, changes smoothly along the row.
     A lost function or a wrong number raises one of both for one element.  Of 2400 published blocks
-    with neighbours in their row 4 exceed the first limit, 6 the second.
+    with neighbours in their row 4 exceed the first limit, 6 the second.  An element without
+    neighbours is held against the published set of its label: three times as far from the limit as
+    any element of the period is a note.
 
     Formula: (E - E_limit) / |E_limit| and (E - E_uncontracted) / |E_limit|, over the largest of
     the neighbours up to three places away in the row.
@@ -199,41 +172,19 @@ def loss(
           0.6464  1.0
         ****
     """
-    for ensemble in ensembles(case):
-        for atom in ensemble.atoms:
-            near = ensemble.near(atom)
-            found = [
-                ("lies above the Hartree-Fock limit", atom.gap, [a.gap for a in near], gap),
-                ("pays for contraction", atom.share_lost, [a.share_lost for a in near], contracted),
-            ]
-            for told, own, others, most in found:
-                known = [other for other in others if other is not None]
-                if own is None or len(known) < 2:
-                    continue
-                times = own / (max(known) + 1e-6)
-                if times <= most:
-                    continue
-                yield case.at_line(
-                    atom.block.line,
-                    "warning" if times >= clear else "note",
-                    f"suspect: {atom.block.symbol} {told} by {own:.2g} of its energy, "
-                    f"{times:.3g} times as much as any of {len(known)} neighbours in its row",
-                    element=atom.block.symbol,
-                    measured=own,
-                    limit=most * max(known),
-                    witnesses=(f"energy: {atom.energy:.6f} hartree",),
-                    remedy="look for a lost function or a wrong number in this block",
-                )
-                break
+    if case.energies:
+        from overlapse.rules.energy_judged import losing
+
+        yield from losing(case, gap, contracted, clear)
 
 
 @rule("energy.stationary")
 def stationary(
     case: Case,
     *,
-    times: float = 8.0,
+    times: float = 7.5,
     clear: float = 25.0,
-    alone: float = 15.0,
+    alone: float = 10.0,
     least: float = 1e-3,
 ) -> Iterator[Finding]:
     """Suspect: the energy of an atom would fall if one number were another.
@@ -282,77 +233,7 @@ def stationary(
           0.29758  1.0
         ****
     """
-    for ensemble in ensembles(case):
-        suspects = _suspects(ensemble, times, alone)
-        for atom in ensemble.atoms:
-            own = suspects.get(id(atom))
-            yield from at_atom(case, ensemble, atom, own, times, clear, alone, least)
+    if case.energies:
+        from overlapse.rules.energy_judged import unsteady
 
-
-def at_atom(
-    case: Case,
-    ensemble: Ensemble,
-    atom: Atom,
-    own: Steps | None,
-    times: float,
-    clear: float,
-    alone: float,
-    least: float,
-) -> Iterator[Finding]:
-    """What the energy says about the numbers of one atom; ``own`` if its gradient is unusual."""
-    verdict = _explained(ensemble, own, times, alone) if own is not None else None
-    charge = ensemble.foreign(atom)
-    if charge and (verdict is None or verdict.after > 100.0 * verdict.count):
-        yield charge_finding(case, atom, charge)
-        return
-    if verdict is not None and abs(verdict.change) < least:
-        verdict = None
-    if verdict is not None:
-        yield number_finding(case, ensemble, verdict, clear)
-    for stray in ensemble.strays(atom):
-        enough = 1.5 * (times if stray.others >= 3 else alone)
-        if stray.times >= enough and (verdict is None or stray.number != verdict.number):
-            yield column_finding(case, ensemble, stray, 2.0 * clear)
-
-
-# Following more suspects than this in one set takes longer than an audit has; a set in which so
-# many atoms are not stationary was not made for their energy.
-_MOST = 12
-
-
-def _suspects(ensemble: Ensemble, times: float, alone: float) -> dict[int, Steps]:
-    """The atoms whose gradient is unusual, by the atom's identity; the most unusual ones."""
-    found = []
-    for atom in ensemble.atoms:
-        own = ensemble.steps(atom)
-        if own is not None:
-            expected = ensemble.usual(own)
-            away = float((expected.chi(own.gradient) ** 2).sum()) ** 0.5
-            found.append((away / (times if expected.others >= 3 else alone), own))
-    found = sorted((each for each in found if each[0] >= 1.0), key=lambda each: -each[0])
-    return {id(own.atom): own for _, own in found[:_MOST]}
-
-
-def _explained(ensemble: Ensemble, own: Steps, times: float, alone: float) -> Verdict | None:
-    """The single number that explains an atom's gradient, if one does well enough."""
-    expected = ensemble.usual(own)
-    if ensemble.relativistic and expected.others < 3:
-        return None
-    # Following a number takes long, and an edited file has few new ones.
-    verdict = own.atom.once(
-        f"explained against {expected.token}",
-        lambda: explain(own, ensemble.others(own.atom), expected),
-    )
-    if verdict is None:
-        return None
-    verdict = replace(verdict, own=own)
-    is_clear = verdict.significance >= (times if expected.others >= 3 else alone)
-    explains = verdict.after < max(_LEFT * min(verdict.before, 1e4), 0.05 * verdict.before)
-    if expected.others < 3:
-        # Without neighbours the rest of the atom must be in order to be believed.
-        explains = verdict.after < 10.0 * verdict.count
-    is_sharp = abs(verdict.change) > 4.0 * verdict.error
-    return verdict if is_clear and explains and is_sharp else None
-
-
-_LEFT = 0.35  # part of chi squared that a single number may leave unexplained
+        yield from unsteady(case, times, clear, alone, least)

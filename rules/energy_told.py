@@ -1,6 +1,6 @@
 """Findings about numbers that an atom's energy suspects, with all that speaks for them."""
 
-from math import floor, log10
+from math import floor, inf, log10
 
 import numpy as np
 
@@ -54,7 +54,7 @@ def number_finding(case: Case, ensemble: Ensemble, verdict: Verdict, clear: floa
 
 
 def column_finding(case: Case, ensemble: Ensemble, stray: Stray, clear: float) -> Finding:
-    """A finding about a coefficient that is not its orbital's."""
+    """A finding about a coefficient that is not its orbital's; a note if ``clear`` is infinite."""
     word, slip, expected, spread = _proposal(stray.atom, stray.number, stray.value, stray.error)
     witnesses = [
         f"orbital: {stray.times:.0f} times the departure of its neighbours from the atom's orbital"
@@ -64,7 +64,7 @@ def column_finding(case: Case, ensemble: Ensemble, stray: Stray, clear: float) -
     if slip is not None:
         witnesses.append(f"slip: {slip.told} in {slip.word} gives {word}")
     agreed = bool(others) or (slip is not None and slip.told in TELLING)
-    is_sure = stray.others >= 3 and (agreed or stray.times >= clear)
+    is_sure = stray.others >= 3 and clear < inf and (agreed or stray.times >= clear)
     return _at(
         case,
         stray.atom.block,

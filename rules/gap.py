@@ -95,7 +95,8 @@ def gap(case: Case, *, margin: float = 1.2, fewest: int = 12) -> Iterator[Findin
 class Odd(NamedTuple):
     """An exponent out of order or beside an odd gap.
 
-    place, gap: indices into the ladder.  others: ladders that show what is usual.
+    place, gap: indices into the ladder.  others: ladders that show what is usual.  is_loud:
+    whether it is more than a note: lone functions stand in any order and far apart in good faith.
     """
 
     ladder: "_Ladder"
@@ -103,6 +104,7 @@ class Odd(NamedTuple):
     gap: int
     is_order: bool
     others: int
+    is_loud: bool
 
     @property
     def shell(self) -> tuple[int, int]:
@@ -131,7 +133,8 @@ def _of_set(members: BasisSet, margin: float, fewest: int) -> list[Odd]:
         is_habit = kept >= min(fewest, len(members.blocks) - 1) and kept >= 2
         # One is a slip; more are one only among very many.
         if is_habit and len(broken) <= max(1, 0.02 * kept):
-            found += [Odd(ladder, _misplaced(ladder), 0, True, kept) for ladder in broken]
+            loud = kind < 2 and len(broken) == 1
+            found += [Odd(ladder, _misplaced(ladder), 0, True, kept, loud) for ladder in broken]
     told = {odd.shell for odd in found}
     return found + [odd for odd in _gaps(ladders, margin) if odd.shell not in told]
 
@@ -176,12 +179,10 @@ def _out_of_order(case: Case, odd: Odd) -> Finding:
     ladder = odd.ladder
     index, row = ladder.places[odd.place]
     shell = ladder.block.shells[index]
-    # Lone functions and rows added to a matrix may stand anywhere; a contraction is in order.
-    is_plain = ladder.kind == 0
     return case.at_shell(
         ladder.block,
         index,
-        "warning" if is_plain else "note",
+        "warning" if odd.is_loud else "note",
         f"suspect: exponent {shell.spelling(row)} breaks the order of these "
         f"{letter_of(ladder.l)} exponents, which fall in {odd.others} other places of this set",
         row=row,
@@ -220,7 +221,8 @@ def _gaps(ladders: list[_Ladder], margin: float) -> Iterator[Odd]:
         worst = outside.argmax(axis=1)
         for ladder, far, at in zip(group, outside, worst.tolist(), strict=True):
             if far[at] > margin:
-                yield Odd(ladder, _at_fault(far, at, margin), at, False, len(ranked) - 1)
+                place = _at_fault(far, at, margin)
+                yield Odd(ladder, place, at, False, len(ranked) - 1, ladder.kind < 2)
 
 
 def _at_fault(far: Floats, at: int, margin: float) -> int:
@@ -239,7 +241,7 @@ def _wide(case: Case, odd: Odd, margin: float) -> Finding:
     return case.at_shell(
         ladder.block,
         index,
-        "note",
+        "warning" if odd.is_loud else "note",
         f"suspect: the ratio of the exponents {first:.6g} and {second:.6g} is "
         f"{first / second:.3g}, far outside the {odd.others} others at such a place",
         row=row,

@@ -162,10 +162,10 @@ def digits(case: Case, *, lost: int = 4, fewest: int = 4) -> Iterator[Finding]:
     for block in case.document.blocks:
         for index, shell in enumerate(block.shells):
             # Matrices hold lone functions as well, which are rounded in good faith.
-            if len(shell.exponents) < fewest or shell.columns_per_l > 1 or shell.cells is None:
+            # Matrices hold lone functions as well, which are rounded in good faith.
+            if len(shell.exponents) < fewest or shell.columns_per_l > 1:
                 continue
-            words, _ = shell.spellings()
-            counts = [significant(word) for word in words]
+            counts = [significant(repr(value)) for value in shell.exponents.tolist()]
             row = counts.index(min(counts))
             others = counts[:row] + counts[row + 1 :]
             usual = int(quantile(others, 0.5))
@@ -174,8 +174,9 @@ def digits(case: Case, *, lost: int = 4, fewest: int = 4) -> Iterator[Finding]:
                     block,
                     index,
                     "note",
-                    f"suspect: exponent {words[row]} has {counts[row]} significant digits, the "
-                    f"others of its contraction {min(others)} or more (usually {usual})",
+                    f"suspect: exponent {shell.spelling(row)} has {counts[row]} significant "
+                    f"digits, the others of its contraction {min(others)} or more, "
+                    f"usually {usual}",
                     row=row,
                     measured=counts[row],
                     limit=min(others),

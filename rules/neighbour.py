@@ -78,13 +78,14 @@ def neighbour(case: Case, *, likeness: float = 1e-3, share: float = 0.8) -> Iter
 
 def _copies(blocks: list[Block], likeness: float) -> Iterator[tuple[int, int]]:
     """Blocks whose contractions are nearly all those of an earlier one: (index, index of it)."""
-    seen: dict[tuple[float, ...], int] = {}
+    seen: dict[tuple[int, str, str], int] = {}
     for at, block in enumerate(blocks):
-        keys = [
-            tuple(float(f"{value:.2e}") for value in shell.exponents)
+        ends = [
+            (len(shell.exponents), float(shell.exponents[0]), float(shell.exponents[-1]))
             for shell in block.shells
             if len(shell.exponents) > 1
         ]
+        keys = [(count, f"{first:.2e}", f"{last:.2e}") for count, first, last in ends]
         # Blocks of lone primitives (fragments, fitting sets) share them in good faith.
         if not keys:
             continue

@@ -5,9 +5,11 @@ by column.  Blocks are comparable where their shells of that letter have the sam
 lie in one stretch of the periodic table.
 """
 
+from collections.abc import Iterator
 from typing import Any, NamedTuple
 
 import numpy as np
+import numpy.typing as npt
 
 from overlapse.grammar.model import BasisSet, Block, Floats, Shell
 from overlapse.rules.physics.prediction import FEWEST, Predictions, beside, predictions
@@ -15,6 +17,17 @@ from overlapse.rules.rows import STRETCHES, stretch
 
 # Exponents are believed to follow their companions to this, coefficients (in units of their size).
 _FINEST = 0.003
+_FINEST_LONE = 0.005
+# One s electron in the valence where the neighbours have two (or none): less is believed of these.
+# Source: ground-state configurations, NIST Atomic Spectra Database.
+_ODD_VALENCE = frozenset((24, 29, 41, 42, 44, 45, 46, 47, 78, 79))
+_ODD_WEIGHT = 0.75
+
+
+def _middle(values: Floats, axis: int) -> Floats:
+    """The median without interpolation; numpy's own takes much longer for small tables."""
+    ranked = np.sort(values, axis=axis)
+    return np.asarray(ranked.take(values.shape[axis] // 2, axis=axis))
 
 
 class Oddity(NamedTuple):
@@ -66,18 +79,24 @@ def odd_exponents(members: BasisSet, least: float) -> list[Oddity]:
         values = np.array([np.concatenate([s.exponents for _, s in group[z]]) for z in numbers])
         if not (values > 0.0).all():
             continue
+        ladder = group[numbers[0]]
+        lone = np.repeat([len(s.exponents) == 1 for _, s in ladder],
+                         [len(s.exponents) for _, s in ladder])  # fmt: skip
+        orders = _orders(np.log(values), np.flatnonzero(lone))
+        values = np.take_along_axis(values, orders, axis=1)
         logs = np.log(values)
+        finest = np.where(lone, _FINEST_LONE, _FINEST)
         told = predictions(
-            numbers, logs, [(table, 1.0) for table in beside(logs)], _FINEST, _FINEST**2
+            numbers, logs, [(table, 1.0) for table in beside(logs)], finest, _FINEST**2
         )
-        for at, place in _oddest(told, least):
+        for at, place, surprise in _oddest(numbers, told, least):
             z = numbers[at]
-            cell = _cell(blocks[z], group[z], place)
+            cell = _cell(blocks[z], group[z], int(orders[at, place]))
             departure, spread = float(told.departure[at, place]), float(told.spread[at, place])
             expected = float(values[at, place] * np.exp(-departure))
             found.append(
                 Oddity(
-                    *cell, None, departure, float(told.surprise[at, place]), expected,
+                    *cell, None, departure, surprise, expected,
                     expected * float(np.exp(-2.0 * spread)),
                     expected * float(np.exp(2.0 * spread)),
                     len(numbers) - 1,
@@ -86,12 +105,38 @@ def odd_exponents(members: BasisSet, least: float) -> list[Oddity]:
     return found
 
 
-def _oddest(told: Predictions, least: float) -> list[tuple[int, int]]:
-    """(element, place) of the oddest element of each place, where it is odd enough."""
-    at = told.surprise.argmax(axis=0)
-    return [
-        (int(k), place) for place, k in enumerate(at) if float(told.surprise[k, place]) >= least
-    ]
+def _orders(logs: Floats, lone: npt.NDArray[np.intp]) -> npt.NDArray[np.intp]:
+    """For each element the order of its places in which lone functions correspond to the others'.
+
+    Files list lone functions of one l in either order.  They are turned only where that makes
+    them fit much better than they stand.
+    """
+    orders = np.tile(np.arange(logs.shape[1]), (logs.shape[0], 1))
+    if len(lone) < 2:
+        return orders
+    usual = _middle(logs[:, lone], axis=0)
+    # The order of the usual values, applied to each element's own.
+    rank = np.argsort(np.argsort(-usual))
+    sorted_places = np.argsort(-logs[:, lone], axis=1)[:, rank]
+    turned = np.take_along_axis(logs[:, lone], sorted_places, axis=1)
+    # A block may be tighter or looser as a whole, but not by much.
+    shift = (turned - usual).mean(axis=1)
+    as_written = np.abs(logs[:, lone] - usual - shift[:, None]).sum(axis=1)
+    is_better = np.abs(turned - usual - shift[:, None]).sum(axis=1) < 0.5 * as_written - 0.1
+    is_better &= np.abs(shift) < 0.6
+    orders[np.ix_(is_better, lone)] = lone[sorted_places[is_better]]
+    return orders
+
+
+def _oddest(
+    numbers: tuple[int, ...], told: Predictions, least: float
+) -> Iterator[tuple[int, int, float]]:
+    """(element, place, surprise) of the oddest element of each place, where it is odd enough."""
+    weight = np.array([_ODD_WEIGHT if z in _ODD_VALENCE else 1.0 for z in numbers])
+    surprise = told.surprise * weight[:, None]
+    for place, at in enumerate(surprise.argmax(axis=0).tolist()):
+        if surprise[at, place] >= least:
+            yield at, place, float(surprise[at, place])
 
 
 def _cell(block: Block, ladder: list[tuple[int, Shell]], place: int) -> _Cell:
@@ -112,7 +157,7 @@ class _Column(NamedTuple):
     relative: Floats
     logs: Floats
     sizes: Floats
-    signs: Floats
+    units: Floats
 
 
 def odd_coefficients(members: BasisSet, least: float) -> list[Oddity]:
@@ -155,17 +200,22 @@ def _columns(group: dict[int, tuple[Block, int]]) -> list[_Column]:
             continue
         values = tables[:, rows, column]
         # The sign of a whole function is free: turn all to that of their usual largest number.
-        largest = int(np.median(np.abs(values), axis=0).argmax())
+        largest = int(_middle(np.abs(values), axis=0).argmax())
         signs = np.sign(values[:, largest])
-        usual = np.median(values * signs[:, None], axis=0)
+        usual = _middle(values * signs[:, None], axis=0)
         lean = (values * np.sign(usual) * np.sqrt(np.abs(values))).sum(axis=1)
         signs = np.where(lean < 0.0, -1.0, 1.0)
+        # So is its scale; some elements print whole contractions by a factor larger or smaller.
         turned = values * signs[:, None]
-        sizes = np.median(np.abs(turned), axis=0)
+        factors = _middle(turned / _middle(np.abs(turned), axis=0), axis=1)
+        factors = np.where((np.abs(np.abs(factors) - 1.0) > 0.3) & (factors != 0.0), factors, 1.0)
+        units = signs * (np.abs(factors) if len(rows) > 2 else 1.0)
+        turned = values / units[:, None]
+        sizes = _middle(np.abs(turned), axis=0)
         found.append(
             _Column(
                 numbers, column, tuple(rows.tolist()), shells, turned / sizes,
-                exponents[:, rows], sizes, signs,
+                exponents[:, rows], sizes, units,
             )
         )  # fmt: skip
     return found
@@ -185,16 +235,16 @@ def _of_column(column: _Column, columns: list[_Column], least: float) -> list[Od
     finest = _FINEST + 1e-6 / column.sizes
     told = predictions(column.numbers, relative, companions, finest, 1e-5)
     found = []
-    for at, place in _oddest(told, least):
+    for at, place, surprise in _oddest(column.numbers, told, least):
         block, index = column.shells[at]
-        unit = float(column.sizes[place] * column.signs[at])
+        unit = float(column.sizes[place] * column.units[at])
         departure, spread = float(told.departure[at, place]), float(told.spread[at, place])
         expected = unit * (float(relative[at, place]) - departure)
         low, high = sorted((expected - 2.0 * spread * unit, expected + 2.0 * spread * unit))
         found.append(
             Oddity(
                 block, index, column.rows[place], column.column, departure,
-                float(told.surprise[at, place]), expected, low, high, len(column.numbers) - 1,
+                surprise, expected, low, high, len(column.numbers) - 1,
             )
         )  # fmt: skip
     return found

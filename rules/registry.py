@@ -18,7 +18,7 @@ from functools import cache, cached_property
 from importlib import import_module
 from importlib.resources import files
 from textwrap import dedent
-from typing import Any, NamedTuple
+from typing import Any, Literal, NamedTuple
 
 from overlapse.grammar import plugins
 from overlapse.rules.finding import Finding
@@ -56,6 +56,18 @@ class Rule:
     def is_foreign(self) -> bool:
         """Whether another package brought the rule."""
         return not self.function.__module__.startswith("overlapse.")
+
+    @cached_property
+    def needs(self) -> Literal["geometry", "company", "energies", ""]:
+        """What a rule needs beside a document: measurements in a geometry, files beside it, atoms
+        that may be computed, or nothing.  Its samples tell.
+        """
+        text = self.function.__doc__ or ""
+        if "With::" in text:
+            return "geometry"
+        if "Beside::" in text:
+            return "company"
+        return "energies" if self.name.startswith("energy.") else ""
 
     @cached_property
     def limits(self) -> dict[str, float]:

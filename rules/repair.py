@@ -14,13 +14,14 @@ from overlapse.rules.finding import Edit
 _POWER = re.compile(r"[EeDd]")
 
 
-def respelled(word: str, value: float) -> str:
+def respelled(word: str, value: float, decimals: int = 0) -> str:
     """A value in the spelling of another number: as many decimals, the same letter, the same sign.
 
-    A sign that is written, or left out, stays so where the value allows it.
+    A sign that is written, or left out, stays so where the value allows it.  decimals: at least so
+    many, because numbers beside it have them.
     """
     mantissa, letter, power = _parts(word)
-    decimals = len(mantissa.partition(".")[2])
+    decimals = max(decimals, _decimals(word))
     if letter:
         digits, _, new = f"{value:.{max(decimals, 1)}e}".partition("e")
         width = len(power.lstrip("+-"))
@@ -33,6 +34,10 @@ def respelled(word: str, value: float) -> str:
     return "+" + text if word.startswith("+") and value >= 0.0 else text
 
 
+def _decimals(word: str) -> int:
+    return len(_parts(word)[0].partition(".")[2])
+
+
 def _parts(word: str) -> tuple[str, str, str]:
     """Mantissa, letter and power of a number; both "" where it has no power."""
     found = _POWER.search(word)
@@ -43,17 +48,22 @@ def _parts(word: str) -> tuple[str, str, str]:
 
 def rescaled(shell: Shell, function: Function, factor: float) -> tuple[Edit, ...]:
     """Multiply the coefficients of one function; nothing where they are not written so."""
-    edits = []
-    for row in function.rows.tolist():
-        if shell.cells is None:
-            return ()
-        word = shell.cells.spelling(row, function.column)
-        value = float(shell.coefficients[row, function.column])
+    if shell.cells is None:
+        return ()
+    rows = function.rows.tolist()
+    words = [shell.cells.spelling(row, function.column) for row in rows]
+    values = shell.coefficients[rows, function.column].tolist()
+    for word, value in zip(words, values, strict=True):
         if NUMBER.fullmatch(word) is None or plain(word) != value:
             return ()
-        span = shell.cells.span(row, function.column)
-        edits.append(Edit(span, respelled(word, value * factor)))
-    return tuple(edits)
+    decimals = max(map(_decimals, words))
+    return tuple(
+        Edit(
+            shell.cells.span(row, function.column),
+            respelled(word, value * factor, decimals),
+        )
+        for row, word, value in zip(rows, words, values, strict=True)
+    )
 
 
 def without_row(shell: Shell, row: int) -> tuple[Edit, ...]:

@@ -126,7 +126,7 @@ def trend(case: Case, *, surprise: float = 4.1, loud: float = 6.0) -> Iterator[F
 
 
 @rule("contraction.trend")
-def coefficients(case: Case, *, surprise: float = 4.8, loud: float = 6.0) -> Iterator[Finding]:
+def coefficients(case: Case, *, surprise: float = 5.2, loud: float = 6.0) -> Iterator[Finding]:
     """Suspect: a coefficient falls out of the progression of its row of the periodic table.
 
     The coefficients at one place of corresponding contractions run smoothly from element to

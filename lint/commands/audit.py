@@ -317,7 +317,7 @@ def _progress(size: int, files: int, silent: bool) -> "Iterator[Callable[[int], 
     started, count = monotonic(), 0
 
     def rate(item: object) -> str:
-        return f"{count}/{files} files, {count / max(monotonic() - started, 1e-3):.0f} a second"
+        return f"{count}/{files} files, {count / max(monotonic() - started, 1e-3):.3g} a second"
 
     with click.progressbar(
         length=size, label="auditing", file=sys.stderr, item_show_func=rate

@@ -16,4 +16,6 @@ def write(audits: Iterable[FileAudit], out: TextIO, colour: bool) -> None:
 
 def one_line(text: str) -> str:
     """Text without line ends and control characters, so that a hostile file stays on its line."""
+    if text.isprintable():
+        return text
     return "".join(c if c.isprintable() else "\N{REPLACEMENT CHARACTER}" for c in text)

@@ -79,11 +79,10 @@ def predictions(
         total = total + stiffness * count * (slope - slopes) ** 2
         degrees = np.maximum(free_degrees, 0.5)[:, None, None]
         without = np.maximum(total - error * departure, 0.0) / degrees
-        usual = np.array([_usual(w, u) for w, u in zip(without, usable, strict=True)])
-        prior = np.maximum(
-            usual[:, None, None],
-            np.minimum(without, np.median(without, axis=1, keepdims=True)),
-        )
+        ranked = np.sort(without, axis=1)
+        middle = ranked[:, count // 2]
+        usual = _usual(middle, ranked[:, 0], usable)
+        prior = np.maximum(usual[:, None, None], np.minimum(without, middle[:, None]))
         variance = (_PRIOR * prior + degrees * without) / (_PRIOR + degrees) + finest**2
         # An end of the row is extrapolated, and less trusted than its leverage says.
         t_squared = departure**2 * left**2 / variance
@@ -99,14 +98,17 @@ def predictions(
     )
 
 
-def _usual(without: Floats, usable: npt.NDArray[np.bool_]) -> float:
-    """Variance that the columns of a table usually have, one of which may hold a slip."""
-    if not usable.any():
-        return 0.0
-    if usable.sum() >= 5:
-        return float(np.median(without[:, usable]))
-    # A slip is in all variances of its column but its own.
-    return 2.0 * float(np.median(without[:, usable].min(axis=0)))
+def _usual(middle: Floats, least: Floats, usable: npt.NDArray[np.bool_]) -> Floats:
+    """Variance that the columns of each table usually have, one of which may hold a slip.
+
+    middle, least: of the variances of each column, shape (tables, places).
+    """
+    counts = usable.sum(axis=1)
+    # A slip is in all variances of its column but its own: with few columns the least ones tell.
+    telling = np.where((counts >= 5)[:, None], middle, 2.0 * least)
+    ranked = np.sort(np.where(usable, telling, np.inf), axis=1)
+    found = ranked[np.arange(len(ranked)), np.minimum(counts // 2, ranked.shape[1] - 1)]
+    return np.where(counts > 0, found, 0.0)
 
 
 def _normal(t_squared: Floats, degrees: Floats) -> Floats:

@@ -130,7 +130,7 @@ def keeping(kills: int, dice: random.Random, folder: Path) -> Toll:
 
 def _harm_in(folder: Path, wanted: object, kill: int) -> list[str]:
     cache = Cache(folder)
-    found: FileAudit | None = cache.get(f"key {kill * 1_000_000}")
+    found: FileAudit | None = cache.get(f"key {kill * 1_000_000}", "own.basis", Settings())
     cache.close()
     if found is not None and plain(found) != wanted:
         return ["a kept result is not what was put there"]

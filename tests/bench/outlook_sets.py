@@ -313,7 +313,7 @@ def judging() -> list[System]:
 
 
 def named() -> list[System]:
-    """Systems that were known before the measure was made: it had to explain these."""
+    """Systems that misled simple limits, and a cube that misled a first form of the measure."""
     found: list[System] = []
     for ratio in (1.1, 1.01, 1.001, 1.0001, 1.00001):
         base = twins(published("def2-svp", "O", "H"), "O H", 0, 0.3, ratio)
@@ -333,4 +333,6 @@ def named() -> list[System]:
     for distance in (0.7, 0.5, 0.42):
         base = published("aug-cc-pvdz", "N")
         found.append(System(f"chain of 4 N, {distance}", chain("NNNN", distance), base))
+    base = diffuse(published("aug-cc-pvdz", "He"), "He")
+    found.append(System("cube of 8 He, doubly diffuse, 0.9", cube("He", "He", 0.9), base))
     return found

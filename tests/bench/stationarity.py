@@ -26,7 +26,7 @@ from overlapse.grammar.reading import read
 from overlapse.rules.atoms import Atom, Number, atom_of
 from overlapse.rules.case import Case
 from overlapse.rules.energies import Ensemble, ensembles
-from overlapse.rules.energy import at_atom
+from overlapse.rules.energy_judged import at_atom
 from overlapse.rules.registry import rules
 from overlapse.rules.stationary import Steps
 

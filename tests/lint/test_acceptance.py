@@ -160,3 +160,10 @@ def test_reports_count_and_show_what_is_accepted() -> None:
     assert [result["suppressions"] for result in results] == [
         [{"kind": "inSource", "status": "accepted", "justification": "our own readers take it"}]
     ] * 2
+
+
+@pytest.mark.parametrize("rule", ["energy.bound", "drift.reference", "overlap.molecule"])
+def test_a_rule_that_lacks_what_it_needs_leaves_its_acceptances_alone(rule: str) -> None:
+    audit = _audit(ACCEPT.format(f"{rule} for C") + BODY)
+    assert "form.acceptance" not in {f.rule for f in audit.findings}
+    assert rule in audit.silent

@@ -1,17 +1,20 @@
 """Many files at once: the same audits in the same order, however they are judged."""
 
 import os
+import re
 import signal
 import subprocess
 import sys
 import time
 from dataclasses import replace
+from io import StringIO
 from pathlib import Path
 
 import pytest
 
 from overlapse.lint import bulk
 from overlapse.lint.cache import Cache
+from overlapse.lint.commands.audit import _progress
 from overlapse.lint.engine import FileAudit, Options, Target
 
 BODY = "C 0\nS 2 1.00\n 4.0 0.6\n {} 0.55505\nP 1 1.0\n 0.5 1.0\n****\n"
@@ -110,6 +113,27 @@ def test_few_audits_are_under_way_at_a_time(targets: list[Target]) -> None:
     next(stream)
     assert taken <= bulk.BATCH_FILES * bulk.AHEAD * 2 + bulk.BATCH_FILES
     stream.close()  # type: ignore[attr-defined]
+
+
+class _Terminal(StringIO):
+    def isatty(self) -> bool:
+        return True
+
+
+def test_a_bar_shows_rate_and_remaining_time(monkeypatch: pytest.MonkeyPatch) -> None:
+    shown = _Terminal()
+    monkeypatch.setattr("sys.stderr", shown)
+    with _progress(1000, 4, False) as done:
+        for _ in range(4):
+            time.sleep(0.45)  # the remaining time is told after a second
+            done(250)
+    assert "3/4 files" in shown.getvalue() and "a second" in shown.getvalue()
+    assert re.search(r"\d\d:\d\d:\d\d  3/4", shown.getvalue())
+    quiet = StringIO()
+    monkeypatch.setattr("sys.stderr", quiet)
+    with _progress(1000, 4, False) as done:
+        done(1000)
+    assert quiet.getvalue() == ""
 
 
 PROGRAM = "from overlapse.lint.cli import main; main()"

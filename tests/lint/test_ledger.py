@@ -146,3 +146,20 @@ def test_sarif_says_new_unchanged_or_absent(library: Path) -> None:
     results = json.loads(out.getvalue())["runs"][0]["results"]
     # SARIF 2.1.0, section 3.27.24: "new", "unchanged" and "absent" are values of baselineState.
     assert sorted(result["baselineState"] for result in results) == ["absent", "new", "unchanged"]
+
+
+def test_what_could_not_be_looked_for_is_not_gone(tmp_path: Path) -> None:
+    path = str(tmp_path / "x.basis")
+    quiet = Settings(severity={"form.number": "off"})
+    loud, silenced = (audit_text(BODY, path, settings=each) for each in (Settings(), quiet))
+    ledger = Ledger(tmp_path / NAME)
+    ledger.take(loud)
+    assert ledger.count == 1
+    assert not ledger.sifted(silenced).gone
+    ledger.take(silenced)
+    assert ledger.count == 1
+    mended = audit_text(BODY.replace("O", "0"), path, settings=Settings())
+    assert {"energy.bound", "drift.seal"} <= mended.silent
+    assert len(ledger.sifted(mended).gone) == 1
+    ledger.take(mended)
+    assert ledger.count == 0

@@ -6,6 +6,7 @@ exchange the number ourselves.
 
 import re
 from collections.abc import Iterator
+from dataclasses import replace
 from functools import cache
 from pathlib import Path
 
@@ -130,6 +131,13 @@ def test_a_lost_function_costs_energy() -> None:
     assert "energy.loss" in {f.rule for f in found(planted) if f.element == "N"}
 
 
+def test_a_lone_element_is_held_against_its_label() -> None:
+    text = cut("def2-svp", ("O",))
+    assert [f for f in found(text, "def2-SVP.dat") if f.severity != "note"] == []
+    told = [f.message for f in found(text, "def2-QZVP.dat") if f.rule == "energy.loss"]
+    assert len(told) == 1 and "def2-QZVP" in told[0]
+
+
 def test_a_slip_in_the_published_file_itself() -> None:
     # Chlorine of this double-zeta set prints 0.1209560 where the self-overlap and the energy both
     # ask for 0.1290560; T. H. Dunning, P. J. Hay, Methods of Electronic Structure Theory, Plenum
@@ -167,6 +175,19 @@ def test_nothing_is_computed_unless_it_is_wanted() -> None:
     case = Case(read_text(cut("def2-svp", ("C",)), "set.dat"))
     assert ensembles(case) == []
     assert case.judge(rules()["energy.stationary"]) == []
+
+
+def test_an_energy_below_the_limit_is_an_error() -> None:
+    # No functions give one unless rounding has taken over, so the broken result is put in by hand.
+    text = cut("cc-pvdz", ("Ne",))
+    case = Case(read_text(text, "set.dat"), energies=True)
+    (atom,) = ensembles(case)[0].atoms
+    sound = atom.solution
+    assert sound is not None
+    assert case.judge(rules()["energy.bound"]) == []
+    atom.__dict__["solution"] = replace(sound, energy=atom.shells.limit - 1e-4)
+    (finding,) = case.judge(rules()["energy.bound"])
+    assert (finding.severity, finding.limit) == ("error", atom.shells.limit)
 
 
 def test_near_twins_do_not_bring_an_energy_below_the_limit() -> None:
