@@ -40,7 +40,8 @@ def write_text(screening: Screening, out: TextIO, colour: bool) -> None:
 def _frame(probe: Probe) -> Iterator[str]:
     found = probe.spectrum
     kind = {True: "spherical", False: "Cartesian", None: "spherical and Cartesian"}[probe.spherical]
-    yield one_line(f"{probe.where}: {probe.formula}, {found.functions} {kind} functions")
+    norms = "" if probe.spherical else " (components share their radial norm)"
+    yield one_line(f"{probe.where}: {probe.formula}, {found.functions} {kind} functions{norms}")
     if probe.title.strip():
         yield from _item("title", one_line(probe.title.strip()))
     yield from _item(

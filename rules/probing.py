@@ -9,7 +9,7 @@ from overlapse.rules.physics.inertia import Matrix
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.onecentre import eigenvalues
 from overlapse.rules.physics.outlook import LOOKED_AT, Outlook, foresee, outlook
-from overlapse.rules.physics.placed import Functions, Ints, lay_out
+from overlapse.rules.physics.placed import Functions, Ints, Placed, lay_out, radial_norms
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
 from overlapse.rules.physics.spectrum import LADDER, Spectrum, spectrum
 from overlapse.rules.physics.superposed import affordable
@@ -51,14 +51,26 @@ def probe(sites: Sequence[Site], wanted: Wanted, label: Label = Label()) -> Prob
     Raises `overlapse.rules.physics.placed.NotNormalisable` where a function has no norm.
     """
     placed = [site.placed for site in sites]
-    matrix = overlap(placed)
+    plain = overlap(placed)
+    matrix = conventional(plain, placed)
     found = steps(matrix, wanted)
     pruned = pruned_set(matrix, lay_out(placed), sites, wanted, found)
     doubtful = found.smallest < LOOKED_AT and affordable(placed, len(matrix))
     energies = kinetic(placed) if doubtful else None
     turned = turned_spherical(sites)
     counterpart = in_short(overlap([s.placed for s in turned])) if turned else None
-    return assembled(sites, wanted, label, matrix, found, pruned, energies, counterpart)
+    return assembled(
+        sites, wanted, label, matrix, found, pruned, energies, counterpart, plain=plain
+    )
+
+
+def conventional(matrix: Matrix, placed: Sequence[Placed]) -> Matrix:
+    """An overlap matrix with the usual norms of Cartesian functions; the same one without any."""
+    norms = radial_norms(placed)
+    if (norms == 1.0).all():
+        return matrix
+    scaled: Matrix = matrix * norms[:, None] * norms
+    return scaled
 
 
 def ladder_of(wanted: Wanted) -> tuple[float, ...]:
@@ -83,8 +95,12 @@ def assembled(
     counterpart: Left | None,
     lattice: Lattice | None = None,
     functions: Functions | None = None,
+    plain: Matrix | None = None,
 ) -> Probe:
-    """All that is known of a matrix, in one piece; ``functions`` are its own, all if None."""
+    """All that is known of a matrix, in one piece; ``functions`` are its own, all if None.
+
+    plain: the same matrix with a norm of one for every function, where it is another.
+    """
     if functions is None:
         functions = lay_out([site.placed for site in sites])
     low, step, high = wanted.threshold / NEAR, wanted.threshold, wanted.threshold * NEAR
@@ -99,7 +115,13 @@ def assembled(
         threshold=step,
         kept=found.functions - found.below[step],
         near=found.below[high] - found.below[low],
-        outlook=_outlook(sites, wanted, matrix, found, energies),
+        outlook=_outlook(
+            sites,
+            wanted,
+            matrix if plain is None else plain,
+            found.smallest if plain is None or plain is matrix else None,
+            energies,
+        ),
         tolerance=wanted.tolerance,
         blame=blame(matrix, functions, sites, found, high),
         drop=pruned[0],
@@ -116,13 +138,13 @@ def _outlook(
     sites: Sequence[Site],
     wanted: Wanted,
     matrix: Matrix,
-    found: Spectrum,
+    lowest: float | None,
     energies: Floats | None,
 ) -> Outlook:
     """The outlook; by the eigenvalue alone for crystals, for functions that are for fitting, and
     for molecules too large for a field."""
     if energies is None or any(site.fitting for site in sites):
-        return outlook(matrix, smallest=found.smallest)
+        return outlook(matrix, smallest=lowest)
     placed = [site.placed for site in sites]
     return foresee(
         placed,
@@ -132,7 +154,7 @@ def _outlook(
         empty=[k for k, site in enumerate(sites) if site.atom.ghost],
         charge=wanted.charge,
         unpaired=wanted.unpaired,
-        smallest=found.smallest,
+        smallest=lowest,
     )
 
 

@@ -18,6 +18,7 @@ from overlapse.rules.probing import (
     Wanted,
     as_dropped,
     assembled,
+    conventional,
     in_short,
     some_of,
     steps,
@@ -53,7 +54,7 @@ def probe_lattice(
         )[0]
         # At points that are their own negative the matrix is real, and so cheaper.
         real = not np.any((2.0 * points[k]) % 1.0)
-        return np.asarray(np.ascontiguousarray(found.real) if real else found)
+        return conventional(np.ascontiguousarray(found.real) if real else found, placed)
 
     lowest = [smallest(at(sites, k)) for k in range(len(points))]
     worst = int(np.argmin(lowest))

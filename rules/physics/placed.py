@@ -6,7 +6,7 @@ spherical harmonics, or the Cartesian powers x**i y**j z**k with i falling first
 """
 
 from collections.abc import Sequence
-from math import prod, sqrt
+from math import pi, prod, sqrt
 from typing import NamedTuple
 
 import numpy as np
@@ -58,12 +58,16 @@ def components(l: int, spherical: bool) -> int:
     return 2 * l + 1 if spherical else (l + 1) * (l + 2) // 2
 
 
-def shared_norms(atoms: Sequence[Placed]) -> Floats:
-    """Norms of the functions where all components of a Cartesian shell share the factor of x**l.
+def radial_norms(atoms: Sequence[Placed]) -> Floats:
+    """Norms of the functions where the components of a Cartesian shell share one radial function.
 
-    Shape (n,), one for spherical functions.  The matrices here give each component a norm of one
-    of its own; times these factors for rows and columns they are in the other usual convention,
-    where x**i y**j z**k has the self-overlap (2i-1)!! (2j-1)!! (2k-1)!! / (2l-1)!!.
+    Shape (n,), one for spherical functions.  The matrices of this package give each component a
+    norm of its own, one; times these factors for rows and columns they are in the convention in
+    which x**i y**j z**k, i + j + k = l > 1, multiplies a radial function whose own norm is one,
+    and so has the self-overlap 4 pi (2i-1)!! (2j-1)!! (2k-1)!! / (2l+1)!!.  Eigenvalues of Cartesian
+    sets depend on such norms, and with them on the direction of the axes.
+
+    Source: PySCF, whose Cartesian functions have these norms; practice differs.
     """
     functions = lay_out(atoms)
     norms = np.ones(len(functions.l))
@@ -72,7 +76,7 @@ def shared_norms(atoms: Sequence[Placed]) -> Floats:
     ):
         if l > 1 and not atoms[atom].spherical:
             odd = [prod(range(1, 2 * power, 2)) for power in powers(int(l))[component]]
-            norms[at] = sqrt(prod(odd) / prod(range(1, 2 * int(l), 2)))
+            norms[at] = sqrt(4.0 * pi * prod(odd) / prod(range(1, 2 * int(l) + 2, 2)))
     return norms
 
 

@@ -15,7 +15,7 @@ from overlapse.grammar.model import Block, Floats, Shell
 from overlapse.grammar.reading import read
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.lattice import lattice_overlap
-from overlapse.rules.physics.placed import Placed, lay_out, shared_norms
+from overlapse.rules.physics.placed import Placed, radial_norms
 
 ORIGIN = (0.0, 0.0, 0.0)
 
@@ -170,9 +170,7 @@ def test_smallest_eigenvalues_of_small_molecules(column: int) -> None:
         placed = [
             Placed(blocks[number_of(symbol) or 0], place, column != 2) for symbol, place in atoms
         ]
-        norms = shared_norms(placed)
-        if column == 2:
-            norms[lay_out(placed).l == 2] *= sqrt(4.0 * pi / 5.0)
+        norms = radial_norms(placed)
         matrix = overlap(placed) * norms[:, None] * norms
         found[name] = round(float(np.linalg.eigvalsh(matrix)[0]), 5)
     assert found == {name: row[column] for name, row in SMALLEST.items()}
@@ -204,12 +202,12 @@ def test_the_spectrum_does_not_know_places_or_the_order_of_atoms() -> None:
         assert spectra[2] == pytest.approx(spectra[0], abs=2e-13)
 
 
-def test_shared_norms_of_cartesian_components() -> None:
-    """x**2 has norm one, xy a self-overlap of 1/3, xyz of 1/15: double factorials."""
+def test_radial_norms_of_cartesian_components() -> None:
+    """xy has a third of the self-overlap of x**2, xyz a fifteenth of that of x**3."""
     shells = (Shell((0,), [1.0], [[1.0]]), Shell((2,), [1.0], [[1.0]]), Shell((3,), [1.0], [[1.0]]))
-    found = shared_norms([Placed(Block(8, shells), ORIGIN, False)]) ** 2
+    found = radial_norms([Placed(Block(8, shells), ORIGIN, False)]) ** 2
     third, fifteenth = 1.0 / 3.0, 1.0 / 15.0
-    d = [1.0, third, third, 1.0, third, 1.0]
-    f = [1.0, 0.2, 0.2, 0.2, fifteenth, 0.2, 1.0, 0.2, 0.2, 1.0]
-    assert found == pytest.approx([1.0, *d, *f], abs=1e-15)
-    assert (shared_norms([Placed(Block(8, shells), ORIGIN)]) == 1.0).all()
+    d = np.array([1.0, third, third, 1.0, third, 1.0]) * 4.0 * pi / 5.0
+    f = np.array([1.0, 0.2, 0.2, 0.2, fifteenth, 0.2, 1.0, 0.2, 0.2, 1.0]) * 4.0 * pi / 7.0
+    assert found == pytest.approx([1.0, *d, *f], abs=1e-14)
+    assert (radial_norms([Placed(Block(8, shells), ORIGIN)]) == 1.0).all()
