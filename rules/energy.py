@@ -186,6 +186,7 @@ def stationary(
     clear: float = 25.0,
     alone: float = 10.0,
     least: float = 1e-3,
+    far: float = 40.0,
 ) -> Iterator[Finding]:
     """Suspect: the energy of an atom would fall if one number were another.
 
@@ -208,6 +209,8 @@ def stationary(
     Limits: times: how many standard errors a correction must be to be told, beside three
     neighbours or more.  clear: how many make it a warning without another witness.  alone: how many
     an element without neighbours needs.  least: the smallest relative change that is told.
+    far: root of chi**2 from which a gradient that no number explains well is told as well; half as
+    much again without neighbours.
 
     Remedy: compare the number with the original publication.
 
@@ -236,4 +239,4 @@ def stationary(
     if case.energies:
         from overlapse.rules.energy_judged import unsteady
 
-        yield from unsteady(case, times, clear, alone, least)
+        yield from unsteady(case, times, clear, alone, least, far)

@@ -7,7 +7,12 @@ from math import inf
 from overlapse.rules.atoms import Atom
 from overlapse.rules.case import Case
 from overlapse.rules.energies import Ensemble, ensembles
-from overlapse.rules.energy_told import charge_finding, column_finding, number_finding
+from overlapse.rules.energy_told import (
+    charge_finding,
+    column_finding,
+    number_finding,
+    puzzle_finding,
+)
 from overlapse.rules.explained import Verdict, explain
 from overlapse.rules.finding import Finding
 from overlapse.rules.level import usual_gap
@@ -104,14 +109,14 @@ def _by_label(case: Case, ensemble: Ensemble, atom: Atom, clear: float) -> Itera
 
 
 def unsteady(
-    case: Case, times: float, clear: float, alone: float, least: float
+    case: Case, times: float, clear: float, alone: float, least: float, far: float
 ) -> Iterator[Finding]:
     """Numbers that would lower an atom's energy if they were others."""
     for ensemble in ensembles(case):
         suspects = _suspects(ensemble, times, alone)
         for atom in ensemble.atoms:
             own = suspects.get(id(atom))
-            yield from at_atom(case, ensemble, atom, own, times, clear, alone, least)
+            yield from at_atom(case, ensemble, atom, own, times, clear, alone, least, far)
 
 
 def at_atom(
@@ -123,17 +128,23 @@ def at_atom(
     clear: float,
     alone: float,
     least: float,
+    far: float,
 ) -> Iterator[Finding]:
     """What the energy says about the numbers of one atom; ``own`` if its gradient is unusual."""
-    verdict = _explained(ensemble, own, times, alone) if own is not None else None
+    best = _explained(ensemble, own) if own is not None else None
+    verdict = None
+    if best is not None and _is_good(best, times if best.others >= 3 else alone):
+        verdict = best
     charge = ensemble.foreign(atom)
     if charge and (verdict is None or verdict.after > 100.0 * verdict.count):
         yield charge_finding(case, atom, charge)
         return
     if verdict is not None and abs(verdict.change) < least:
         verdict = None
-    if verdict is not None:
+    elif verdict is not None:
         yield number_finding(case, ensemble, verdict, clear)
+    elif best is not None and best.before**0.5 >= (far if best.others >= 3 else 1.5 * far):
+        yield puzzle_finding(case, best)
     told = verdict.number if verdict is not None else None
     astray = [
         stray
@@ -164,8 +175,8 @@ def _suspects(ensemble: Ensemble, times: float, alone: float) -> dict[int, Steps
     return {id(own.atom): own for _, own in found[:_MOST]}
 
 
-def _explained(ensemble: Ensemble, own: Steps, times: float, alone: float) -> Verdict | None:
-    """The single number that explains an atom's gradient, if one does well enough."""
+def _explained(ensemble: Ensemble, own: Steps) -> Verdict | None:
+    """The single number that explains an atom's gradient best."""
     expected = ensemble.usual(own)
     if ensemble.relativistic and expected.others < 3:
         return None
@@ -174,16 +185,19 @@ def _explained(ensemble: Ensemble, own: Steps, times: float, alone: float) -> Ve
         f"explained against {expected.token}",
         lambda: explain(own, ensemble.others(own.atom), expected),
     )
-    if verdict is None:
-        return None
-    verdict = replace(verdict, own=own)
-    is_clear = verdict.significance >= (times if expected.others >= 3 else alone)
+    own.atom.forget()
+    return replace(verdict, own=own) if verdict is not None else None
+
+
+def _is_good(verdict: Verdict, enough: float) -> bool:
+    """Whether a single number explains a gradient well enough to be held for wrong."""
+    is_clear = verdict.significance >= enough
     explains = verdict.after < max(_LEFT * min(verdict.before, 1e4), 0.05 * verdict.before)
-    if expected.others < 3:
+    if verdict.others < 3:
         # Without neighbours the rest of the atom must be in order to be believed.
         explains = verdict.after < 10.0 * verdict.count
     is_sharp = verdict.error < min(0.05, 0.25 * abs(verdict.change))
-    return verdict if is_clear and explains and is_sharp else None
+    return is_clear and explains and is_sharp
 
 
 _LEFT = 0.35  # part of chi squared that a single number may leave unexplained

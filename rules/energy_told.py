@@ -47,9 +47,28 @@ def number_finding(case: Case, ensemble: Ensemble, verdict: Verdict, clear: floa
         "warning" if is_sure else "note",
         f"suspect: {what} {word} should be {spread}: with it the atom's energy is stationary, "
         f"as it is with the other numbers",
-        word,
         expected,
         tuple(witnesses),
+    )
+
+
+def puzzle_finding(case: Case, verdict: Verdict) -> Finding:
+    """A finding about an atom whose gradient is large and that no single number explains well."""
+    atom, number = verdict.own.atom, verdict.number
+    word = atom.block.shells[number.shell].spelling(number.row, number.column)
+    what = "exponent" if number.column is None else "coefficient"
+    return _at(
+        case,
+        atom.block,
+        number,
+        "note",
+        f"suspect: the energy of {atom.block.symbol} is far from stationary, and no single number "
+        f"explains it well; the likeliest is {what} {word}, as if {verdict.value:.4g} were meant",
+        None,
+        (
+            f"stationarity: the gradient is {verdict.before**0.5:.0f} standard errors from what is "
+            f"usual in the set, {verdict.after**0.5:.0f} with that number",
+        ),
     )
 
 
@@ -72,7 +91,6 @@ def column_finding(case: Case, ensemble: Ensemble, stray: Stray, clear: float) -
         "warning" if is_sure else "note",
         f"suspect: coefficient {word} should be {spread}: the column is an orbital of the atom "
         "but for this number",
-        word,
         expected,
         tuple(witnesses),
     )
@@ -157,8 +175,7 @@ def _at(
     number: Number,
     severity: str,
     message: str,
-    word: str,
-    expected: float,
+    expected: float | None,
     witnesses: tuple[str, ...],
 ) -> Finding:
     shell = block.shells[number.shell]

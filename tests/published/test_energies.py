@@ -109,6 +109,17 @@ def test_exchanged_digits_give_the_very_number_back() -> None:
     assert any("two digits exchanged" in witness for witness in finding.witnesses)
 
 
+def test_several_wrong_numbers_are_told_as_a_puzzle() -> None:
+    text = cut("def2-svp", tuple(SECOND_ROW))
+    for row, factor in ((0, 1.2), (2, 0.8), (4, 1.3)):
+        shell = block_of(text, "O").shells[0]
+        word = f"{float(shell.exponents[row]) * factor:.8g}"
+        text = with_number(text, shell, row, None, word)
+    (finding,) = [f for f in found(text) if (f.element, f.rule) == ("O", "energy.stationary")]
+    assert (finding.severity, finding.expected) == ("note", None)
+    assert "no single number" in finding.message
+
+
 def test_a_neighbours_block_is_recognised_by_its_charge() -> None:
     text = cut("cc-pvdz", tuple(SECOND_ROW))
     lines = text.split("\n")
