@@ -1,11 +1,11 @@
 """Contractions: is each normalised, where the set shows that it should be?"""
 
-from collections import Counter
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
+from typing import NamedTuple
 
 import numpy as np
 
-from overlapse.grammar.model import Shell, letter_of
+from overlapse.grammar.model import Block, Shell, letter_of
 from overlapse.rules.case import Case
 from overlapse.rules.families.expected import unnormalised_as_published
 from overlapse.rules.finding import Edit, Finding
@@ -81,18 +81,59 @@ def norm(case: Case, *, share: float = 0.9, floor: float = 3e-6) -> Iterator[Fin
                 limit=0.0,
                 remedy="the coefficients cancel one another or are far out of range",
             )
-        # A shell whose form is at fault has been reported; its norm only follows from that.
-        judged = [n for n in found if n not in broken and not case.is_faulty(n.block, n.shell)]
-        sound = [n for n in judged if n.deviation < NORMALISED]
-        scale = _Scale(judged, sound, share, floor)
-        evident = [n for n in judged if n.deviation > floor and scale.is_evident(n)]
+        judged, sound, evident = norm_evidence(case, share, floor)[index]
         if evident:
-            sound = [n for n in sound if n not in evident]
             # The narrow rows first: where both hold a contraction they are the smoother ones.
             yield from _odd_ones(case, evident, sound, [*case.rows[index], *rows_of(members, True)])
         plain = [n for n in judged if n.deviation >= NORMALISED and n not in evident]
         if plain and len(sound) < share * len(judged):
             yield _throughout(case, plain, len(judged))
+
+
+class Evidence(NamedTuple):
+    """Contractions of a set whose norm can be judged, those in order, and those evidently off."""
+
+    judged: list[Norm]
+    sound: list[Norm]
+    evident: list[Norm]
+
+
+def norm_evidence(case: Case, share: float = 0.9, floor: float = 3e-6) -> list[Evidence]:
+    """For each set, what its norms tell; the limits are those of the rule `contraction.norm`."""
+
+    def of_set(norms: list[Norm]) -> Evidence:
+        # A shell whose form is at fault has been reported; its norm only follows from that.
+        judged = [
+            n
+            for n in norms
+            if np.isfinite(n.overlap) and n.overlap > 0.0 and not case.is_faulty(n.block, n.shell)
+        ]
+        sound = [n for n in judged if n.deviation < NORMALISED]
+        scale = _Scale(judged, sound, share, floor)
+        evident = [n for n in judged if n.deviation > floor and scale.is_evident(n)]
+        return Evidence(
+            judged, [n for n in sound if n not in evident] if evident else sound, evident
+        )
+
+    return case.shared(f"norms {share} {floor}", lambda: [of_set(norms) for norms in case.norms])
+
+
+def spoiled_shells(case: Case) -> set[tuple[int, int]]:
+    """Shells, by id of block and index, that a norm shows to hold a wrong number."""
+    found: set[tuple[int, int]] = set()
+    for evidence in norm_evidence(case):
+        shells = {(id(off.block), off.shell): off for off in evidence.evident}
+        found |= {key for key, off in shells.items() if not _is_throughout(off.block, shells)}
+    return found
+
+
+def _is_throughout(block: Block, shells: Iterable[tuple[int, int]]) -> bool:
+    """Whether so many shells of a block are off that it was printed unnormalised as a whole.
+
+    A slip spoils one shell.
+    """
+    off = sum(key == id(block) for key, _ in shells)
+    return off >= 3 and off >= 0.6 * sum(len(shell.exponents) > 1 for shell in block.shells)
 
 
 class _Scale:
@@ -146,18 +187,13 @@ def _odd_ones(
     shells: dict[tuple[int, int], list[Norm]] = {}
     for off in evident:
         shells.setdefault((id(off.block), off.shell), []).append(off)
-    several = Counter(block for block, _ in shells)
     told: set[int] = set()
     for (block, _), group in shells.items():
-        # A slip spoils one shell; an element of which many are off was printed unnormalised.
-        if several[block] < _SEVERAL:
+        if not _is_throughout(group[0].block, shells):
             yield _odd_one(case, group, sound, rows)
         elif block not in told:
             told.add(block)
             yield _element_throughout(case, [n for n in evident if id(n.block) == block])
-
-
-_SEVERAL = 3
 
 
 def _element_throughout(case: Case, off: list[Norm]) -> Finding:

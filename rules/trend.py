@@ -7,6 +7,7 @@ import numpy as np
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
 from overlapse.rules.gap import spacing_oddities
+from overlapse.rules.normalisation import spoiled_shells
 from overlapse.rules.progressions import (
     Oddity,
     odd_coefficients,
@@ -18,7 +19,10 @@ from overlapse.rules.slips import Slip, likeliest
 
 
 def _gather(case: Case) -> list[Oddity]:
-    """Odd numbers of all sets, of each shell the oddest exponent or coefficient."""
+    """Odd numbers of all sets, of each shell the oddest exponent or coefficient.
+
+    Where the form is at fault, that has been reported.
+    """
     return case.shared(
         "oddities",
         lambda: oddest_of_shells(
@@ -29,6 +33,7 @@ def _gather(case: Case) -> list[Oddity]:
                     *odd_exponents(members, _LEAST),
                     *odd_coefficients(members, _LEAST),
                 )
+                if not case.is_faulty(oddity.block, oddity.shell)
             ]
         ),
     )
@@ -210,7 +215,11 @@ def coefficients(case: Case, *, surprise: float = 5.2, loud: float = 6.0) -> Ite
           2.4 0.65
         ****
     """
+    spoiled = spoiled_shells(case)
     for odd in _gather(case):
+        # Where the norm tells of a wrong number, it names the culprit with the row's help.
+        if (id(odd.block), odd.shell) in spoiled:
+            continue
         if odd.column is not None and odd.surprise >= surprise:
             value = float(odd.block.shells[odd.shell].coefficients[odd.row, odd.column])
             is_far = odd.surprise >= loud and odd.low <= -value <= odd.high
