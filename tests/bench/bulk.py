@@ -39,6 +39,10 @@ finally:
 """
 
 
+# Small folders would be audited with energies, which large ones are not.
+_AUDIT = ("audit", "--report", "lines", "--no-energies")
+
+
 class Run(NamedTuple):
     """seconds: from start to end.  own, others: processor seconds of the parent and of the other
     processes.  memory: peak of the parent, in MB.  report: what it wrote.
@@ -85,7 +89,7 @@ def run(folder: Path, cache: Path, *arguments: str) -> Run:
     """One audit of the folder as a process of its own."""
     start = time.perf_counter()
     done = subprocess.run(
-        [sys.executable, "-c", _PROGRAM, "audit", "--report", "lines", *arguments, str(folder)],
+        [sys.executable, "-c", _PROGRAM, *_AUDIT, *arguments, str(folder)],
         env={**os.environ, "XDG_CACHE_HOME": str(cache)},
         capture_output=True,
         check=False,

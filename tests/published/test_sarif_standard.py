@@ -14,6 +14,7 @@ from typing import Any
 import pytest
 
 from overlapse.lint.engine import FileAudit, audit_file, audit_text, targets
+from overlapse.lint.ledger import Ledger
 from overlapse.lint.reports import writer
 from overlapse.lint.settings import Settings
 from overlapse.rules.finding import Edit
@@ -53,6 +54,20 @@ def test_the_demo_is_reported_to_the_standard(schema: Any) -> None:
     report = _report([audit_file(t, settings=Settings()) for t in targets([folder])])
     assert len(report["runs"][0]["results"]) > 10
     _valid(schema, report)
+
+
+def test_what_is_accepted_known_or_gone_is_reported_to_the_standard(schema: Any) -> None:
+    body = "C 0\nS 2 1.00\n 4.0 0.6\n O.5 0.55505\nP 1 1.0\n O.5 1.0\n****\n"
+    accept = "! overlapse: accept form.number for C p-1 because our own readers take it\n"
+    ledger = Ledger(Path("overlapse.ledger.json"))
+    ledger.take(audit_text(body.replace("4.0", "4.O"), "own.basis", settings=Settings()))
+    text = accept + body.replace("4.0", "4.l")
+    report = _report([ledger.sifted(audit_text(text, "own.basis", settings=Settings()))])
+    _valid(schema, report)
+    results = report["runs"][0]["results"]
+    states = {result.get("baselineState") for result in results}
+    assert {"new", "unchanged", "absent"} <= states
+    assert [r["suppressions"][0]["kind"] for r in results if "suppressions" in r] == ["inSource"]
 
 
 def test_findings_of_every_rule_are_reported_to_the_standard(schema: Any) -> None:
