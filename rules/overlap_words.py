@@ -105,7 +105,7 @@ def _remedies(probe: Probe) -> Iterator[str]:
 
 
 def dropped(parts: Sequence[Dropped], most: int = 6) -> str:
-    """Functions to drop, in a row: C s-4 (0.0469), H s-3 (0.0297) of atom 4.
+    """Functions to drop, in a row: C s-4 (0.0469), H s-3 (0.0297) of atoms 4, 5.
 
     A shared shell that goes with both its parts is told once.
     """
@@ -113,8 +113,15 @@ def dropped(parts: Sequence[Dropped], most: int = 6) -> str:
     for part in parts:
         key = (part.function.element, part.function.name, part.atom)
         groups.setdefault(key, []).append(part.function)
-    words = []
+    atoms: dict[Function, list[int]] = {}
     for (_, _, atom), members in groups.items():
         first = members[0] if len(members) == 1 else members[0]._replace(letter="")
-        words.append(str(first) + (f" of atom {atom}" if atom else ""))
-    return listed(words, most)
+        atoms.setdefault(first, []).append(atom)
+    return listed([f"{function}{_of(sorted(at))}" for function, at in atoms.items()], most)
+
+
+def _of(atoms: Sequence[int]) -> str:
+    """Of which atoms; nothing where it is all of their element."""
+    if 0 in atoms:
+        return ""
+    return f" of atom{'s' * (len(atoms) > 1)} {listed([str(atom) for atom in atoms], 8)}"

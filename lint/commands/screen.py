@@ -130,7 +130,11 @@ def _a_fraction(context: click.Context, parameter: click.Parameter, value: float
     callback=_a_fraction,
     help="Tolerance of the choice of functions to drop.",
 )
-@click.option("--per-atom", is_flag=True, help="Choose atom by atom, not for all of an element.")
+@click.option(
+    "--per-element",
+    is_flag=True,
+    help="Drop for all atoms of an element what one of them can spare, as --write has to.",
+)
 @click.option("--charge", default=0, help="Charge of the molecule, for the outlook [0].")
 @click.option(
     "--unpaired",
@@ -186,7 +190,7 @@ def screen(
     unit: "Unit | None",
     threshold: float,
     tolerance: float,
-    per_atom: bool,
+    per_element: bool,
     charge: int,
     unpaired: int | None,
     mesh: tuple[int, int, int],
@@ -222,8 +226,6 @@ def screen(
 
     if not basis and not uses:
         raise click.UsageError("name a basis file: overlapse screen BASIS... --on GEOMETRY...")
-    if folder is not None and per_atom:
-        raise click.UsageError("a basis file serves all atoms of an element: leave out --per-atom")
     if [*basis, *geometry].count(_STDIN) > 1:
         raise click.UsageError("standard input can stand for one file only")
     shelf = _shelf(basis, uses, layout, named, wanted, spherical)
@@ -232,6 +234,8 @@ def screen(
         found, audits = tasks(shelf, read)
         with _progress(found) as done:
             values = drawing is not None or report == "html"  # both draw all eigenvalues
+            # A basis file serves all atoms of its element.
+            per_atom = not per_element and folder is None
             asked = Wanted(threshold, tolerance, per_atom, mesh, values, charge, unpaired)
             probes = measure_all(found, shelf, asked, jobs=jobs, limit=limit, done=done)
     except ScreenError as problem:
@@ -359,3 +363,9 @@ def _write_pruned(shelf: "Shelf", probes: "Sequence[Probe]", folder: Path) -> No
         click.echo(f"written: {target}", err=True)
         for loss in losses:
             click.echo(f"not kept in {target}: {loss}", err=True)
+    if paths:
+        click.echo(
+            "functions are gone from all atoms of their elements, which may cost millihartrees: "
+            "compare an energy first",
+            err=True,
+        )

@@ -64,8 +64,8 @@ def radial_norms(atoms: Sequence[Placed]) -> Floats:
     Shape (n,), one for spherical functions.  The matrices of this package give each component a
     norm of its own, one; times these factors for rows and columns they are in the convention in
     which x**i y**j z**k, i + j + k = l > 1, multiplies a radial function whose own norm is one,
-    and so has the self-overlap 4 pi (2i-1)!! (2j-1)!! (2k-1)!! / (2l+1)!!.  Eigenvalues of Cartesian
-    sets depend on such norms, and with them on the direction of the axes.
+    and so has the self-overlap 4 pi (2i-1)!! (2j-1)!! (2k-1)!! / (2l+1)!!.  Eigenvalues of
+    Cartesian sets depend on such norms, and with them on the direction of the axes.
 
     Source: PySCF, whose Cartesian functions have these norms; practice differs.
     """

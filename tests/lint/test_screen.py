@@ -274,7 +274,6 @@ def test_files_with_faults_are_not_measured(folder: Path) -> None:
         (["sound.basis", "--on", "water.xyz", "--prune", "7"], 2, "between 0 and 1"),
         (["sound.basis", "--on", "water.xyz", "--memory", "much"], 2, "no size"),
         (["sound.basis", "--on", "water.xyz", "--set", "cc-pVDZ"], 2, "cc-pVDZ"),
-        (["sound.basis", "--on", "water.xyz", "--write", "x", "--per-atom"], 2, "--per-atom"),
         (["sound.basis", "--on", "water.xyz", "--picture", "x.doc"], 2, ".svg"),
         (["sound.basis", "--on", "empty"], 3, "no geometry"),
     ],
