@@ -99,11 +99,11 @@ def test_the_contract_of_the_object(folder: Path) -> None:
     counts = list(screen["below"].values())
     assert counts == sorted(counts, reverse=True)
     assert screen["removal"]["orbitals"] == 11 - screen["below"]["1e-6"]
-    (dropped,) = screen["drop"]
-    assert dropped["element"] == "H"
-    assert dropped["atom"] is None
-    assert dropped["shell"] in ("s-2", "s-3")
-    assert dropped["exponent"] in (0.05, 0.0502)
+    assert [dropped["atom"] for dropped in screen["drop"]] in ([2, 3], [3, 2])
+    for dropped in screen["drop"]:
+        assert dropped["element"] == "H"
+        assert dropped["shell"] in ("s-2", "s-3")
+        assert dropped["exponent"] in (0.05, 0.0502)
     assert screen["after"]["functions"] == 9
     assert screen["after"]["smallest"] > 1e-6
     assert screen["after"]["condition"] < screen["condition"]
@@ -117,6 +117,14 @@ def test_the_contract_of_the_object(folder: Path) -> None:
         assert finding["rule"].startswith("overlap.")
         assert finding["path"] == str(folder / "twins.basis")
         assert finding["line"] in (4, 6)
+
+
+def test_what_goes_for_all_atoms_of_an_element(folder: Path) -> None:
+    words = (folder / "twins.basis", "--on", folder / "water.xyz", "--prune", "1e-5")
+    (screen,) = _screens(*words, "--per-element")
+    (dropped,) = screen["drop"]
+    assert (dropped["element"], dropped["atom"]) == ("H", None)
+    assert screen["after"]["functions"] == 9
 
 
 def test_sarif_carries_the_findings(folder: Path) -> None:
