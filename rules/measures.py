@@ -23,7 +23,8 @@ def extent(case: Case, *, margin: float = 1.2, fewest: int = 8) -> Iterator[Find
 
     Formula: ln of the smallest exponent of l against the range in the other elements.
 
-    Source: common practice, no source; the limit is measured on published sets.
+    Source: common practice, no source; with this limit two exponents of 46 published sets of H-Kr
+    (1,536 element blocks) are noted.
 
     Limits: margin: by how much ln(exponent) may lie outside the range of the others (1.2 is a
     factor of 3.3).  fewest: other elements needed.
@@ -131,8 +132,8 @@ def digits(case: Case, *, lost: int = 4, fewest: int = 4) -> Iterator[Finding]:
 
     Formula: significant digits of an exponent against the fewest of the others in its contraction.
 
-    Source: common practice, no source; measured on 106 published sets of H-Kr: exponents that are
-    four digits shorter than all their companions are one in several thousand contractions.
+    Source: common practice, no source; no contraction of 46 published sets of H-Kr (1,536 element
+    blocks) has an exponent four digits shorter than all its companions.
 
     Limits: lost: digits by which it must be shorter than the shortest of the others.  fewest:
     exponents that a contraction must have.

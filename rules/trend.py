@@ -62,8 +62,8 @@ def trend(case: Case, *, surprise: float = 4.1, loud: float = 6.0) -> Iterator[F
     Chapman and Hall 1982; G. K. Smyth, Stat. Appl. Genet. Mol. Biol. 3, article 3 (2004).
 
     Limits: surprise: deviates from which on an exponent is noted.  loud: from which on, for
-    departures by more than a factor of two, it is a warning.  Measured on published sets of H-Kr:
-    two or three notes per 100 elements.
+    departures by more than a factor of two, it is a warning.  Measured: one note per 100 elements
+    in 25 published sets of H-Kr, three in 21 others.
 
     Remedy: compare the number with the original publication.
 
