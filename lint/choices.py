@@ -12,9 +12,9 @@ from overlapse.grammar.designation import parse_label
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.geometry import Atom, Frame
 from overlapse.grammar.model import BasisSet, Block, Document
-from overlapse.rules.claims import claims_of
-from overlapse.rules.kinds import Kinds
-from overlapse.rules.site import Site
+from overlapse.rules.labels.claims import claims_of
+from overlapse.rules.labels.kinds import Kinds
+from overlapse.rules.measured.site import Site
 
 _ATOMS = re.compile(r"(\d+)(?:-(\d+))?")
 

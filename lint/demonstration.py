@@ -77,7 +77,7 @@ def _data(name: str) -> list[dict[str, Any]]:
 
 def _screens(folder: Path) -> str:
     """What the basis files become in the scenario's geometries, one line each."""
-    from overlapse.rules.overlap_words import dropped, plain
+    from overlapse.rules.measured.overlap_words import dropped, plain
 
     told = "Two molecules of the lab, screened before a field is solved:\n\n"
     for entry in screens():

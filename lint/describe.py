@@ -9,15 +9,15 @@ from typing import Any, TextIO
 from overlapse.grammar.elements import symbol_of
 from overlapse.grammar.model import BasisSet, Block, Document, Potential, letter_of
 from overlapse.lint.reports.lines import one_line
-from overlapse.rules.claims import claims_of
-from overlapse.rules.composition import (
+from overlapse.rules.labels.claims import claims_of
+from overlapse.rules.labels.composition import (
     exponent_limits,
     function_counts,
     lengths_of,
     notation,
     primitives,
 )
-from overlapse.rules.naming import Naming, Ranking
+from overlapse.rules.labels.naming import Naming, Ranking
 
 
 @dataclass(frozen=True)

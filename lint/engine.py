@@ -16,7 +16,7 @@ from overlapse.lint.settings import Settings, settings_for
 from overlapse.rules.acceptance import acceptances_of, can_find
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
-from overlapse.rules.probe import Probe
+from overlapse.rules.measured.probe import Probe
 from overlapse.rules.registry import Rule, rules
 
 LEVELS = ("note", "warning", "error")  # rising

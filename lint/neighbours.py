@@ -175,7 +175,7 @@ def furnish(case: Case, settings: Settings, beside: Beside | None) -> None:
             case.reference = document_at(namesake)
     others = [document_at(parent) for parent in beside.parents(path)] if beside else []
     if others or len(case.sets) > 1:
-        from overlapse.rules.kinship import kin_among
+        from overlapse.rules.compare.kinship import kin_among
 
         documents = [document for document in others if document is not None]
         case.kin = tuple(kin_among(case.claims, case.sets, [case.document, *documents]))

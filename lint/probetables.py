@@ -14,7 +14,7 @@ from overlapse.lint.engine import LEVELS, FileAudit, targets
 from overlapse.lint.patterns import matches
 from overlapse.lint.screening import ScreenError, screen_files
 from overlapse.lint.settings import Probe as Setting
-from overlapse.rules.probing import Wanted
+from overlapse.rules.measured.probing import Wanted
 
 
 class Table(NamedTuple):

@@ -12,7 +12,7 @@ from overlapse.grammar.layouts import layout_of
 from overlapse.grammar.model import BasisSet, Block, Cells, Document, Shell, read_only
 from overlapse.grammar.reading import read_text
 from overlapse.lint.choices import Shelf
-from overlapse.rules.probe import Probe
+from overlapse.rules.measured.probe import Probe
 
 # Element, line and name of a shell, and the column of its coefficients.
 Marked = frozenset[tuple[str, int, str, int]]

@@ -10,8 +10,8 @@ from overlapse.grammar.designation import Designation, label_in_file_name, parse
 from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read
 from overlapse.lint.engine import targets
-from overlapse.rules.canonical import digest_of, elements_of
-from overlapse.rules.relation import EQUAL, Relation, Verdict, relate_documents
+from overlapse.rules.compare.canonical import digest_of, elements_of
+from overlapse.rules.compare.relation import EQUAL, Relation, Verdict, relate_documents
 
 # Which verdicts count as equal, by what the user calls equal.
 LEVELS: dict[str, tuple[Verdict, ...]] = {

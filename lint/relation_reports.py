@@ -8,8 +8,8 @@ from typing import Any, TextIO
 from overlapse.lint.describe import ranges
 from overlapse.lint.relating import LEVELS, Compared, FileRelation, SetRelation
 from overlapse.lint.reports.lines import one_line
-from overlapse.rules.relation import Relation
-from overlapse.rules.sides import Difference, Spot
+from overlapse.rules.compare.relation import Relation
+from overlapse.rules.compare.sides import Difference, Spot
 
 _WIDTH = 100
 _SHOWN = 5  # elements of one verdict that are told one by one

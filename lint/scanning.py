@@ -10,8 +10,8 @@ from multiprocessing import active_children, get_context
 from overlapse.lint import memory
 from overlapse.lint.choices import Shelf
 from overlapse.lint.screening import Task, measure
-from overlapse.rules.probe import Probe
-from overlapse.rules.probing import Wanted
+from overlapse.rules.measured.probe import Probe
+from overlapse.rules.measured.probing import Wanted
 
 # A new process takes about half a second to come up; less work than this (the cubes of the numbers
 # of functions, summed) is done sooner by one.

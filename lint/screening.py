@@ -19,12 +19,12 @@ from overlapse.lint import memory
 from overlapse.lint.choices import Shelf, Use, shelf
 from overlapse.lint.engine import FileAudit, judge
 from overlapse.lint.settings import Settings, settings_for
-from overlapse.rules.closeness import doubt
 from overlapse.rules.finding import Finding
-from overlapse.rules.probe import Probe
-from overlapse.rules.probing import Label, Wanted, probe
+from overlapse.rules.measured.closeness import doubt
+from overlapse.rules.measured.probe import Probe
+from overlapse.rules.measured.probing import Label, Wanted, probe
+from overlapse.rules.measured.site import Site, size
 from overlapse.rules.registry import rules
-from overlapse.rules.site import Site, size
 
 
 class ScreenError(ValueError):
@@ -199,15 +199,15 @@ def measure(task: Task, shelf: Shelf, wanted: Wanted, limit: int | None = None) 
     fits = limit is None or memory.needed(task.functions, wide=wide) <= limit
     if frame.cell is not None:
         # Crystals are the rarer case, and their sums need more libraries.
-        from overlapse.rules.probing_lattice import probe_lattice
+        from overlapse.rules.measured.probing_lattice import probe_lattice
 
         if not fits:
             raise _too_large(task, wide, limit or 0)
         return probe_lattice(sites, frame.cell, frame.periodic, wanted, label)
     if fits:
         return probe(sites, wanted, label)
+    from overlapse.rules.measured.probing_large import probe_large
     from overlapse.rules.physics.integrals import TooLarge as TooLargeInAnyForm
-    from overlapse.rules.probing_large import probe_large
 
     try:
         return probe_large(sites, wanted, label, limit or 0)

@@ -12,8 +12,8 @@ from overlapse.lint.reports.lines import one_line
 from overlapse.lint.reports.text import write as write_findings
 from overlapse.lint.screening import Screening
 from overlapse.rules.finding import Finding
-from overlapse.rules.overlap_words import dropped, plain, shares
-from overlapse.rules.probe import Function, Left, Probe, Share, Small
+from overlapse.rules.measured.overlap_words import dropped, plain, shares
+from overlapse.rules.measured.probe import Function, Left, Probe, Share, Small
 
 _WIDTH = 96
 _BLAMED = 6  # eigenvalues that are told; the object has all

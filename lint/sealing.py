@@ -2,7 +2,7 @@
 
 The file is plain JSON: ``version``; ``files``, by their path below the folder of the seal file;
 for each file its sets in order, with ``label`` and ``elements``; for each element ``digest``,
-``parts`` and ``holds`` (see `overlapse.rules.beside.Seal`).
+``parts`` and ``holds`` (see `overlapse.rules.compare.beside.Seal`).
 """
 
 import json
@@ -18,8 +18,8 @@ from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.model import Document
 from overlapse.lint.neighbours import SEAL, seal_for
 from overlapse.lint.settings import SettingsError, settings_for
-from overlapse.rules.beside import Seal, SealedSet, belonging, seals_of
-from overlapse.rules.canonical import ElementKey
+from overlapse.rules.compare.beside import Seal, SealedSet, belonging, seals_of
+from overlapse.rules.compare.canonical import ElementKey
 
 VERSION = 1
 

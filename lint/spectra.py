@@ -9,9 +9,9 @@ from pathlib import PurePath
 from typing import TYPE_CHECKING, Any
 
 from overlapse.lint.picture import COLOURS, GREY, STYLE, PictureError, plain
-from overlapse.rules.overlap_words import plain as in_words
+from overlapse.rules.measured.overlap_words import plain as in_words
+from overlapse.rules.measured.probe import Probe, Small
 from overlapse.rules.physics.spectrum import LADDER
-from overlapse.rules.probe import Probe, Small
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes

@@ -9,13 +9,13 @@ from overlapse.grammar.elements import period_of
 from overlapse.grammar.model import Block, Potential, letter_of
 from overlapse.lint.describe import Description, Portrait, SetPortrait, ranges
 from overlapse.lint.reports.lines import one_line
-from overlapse.rules.composition import (
+from overlapse.rules.labels.composition import (
     exponent_limits,
     function_counts,
     lengths_of,
     notation,
 )
-from overlapse.rules.naming import Naming, listed
+from overlapse.rules.labels.naming import Naming, listed
 
 WIDTH = 100
 _LETTERS_IN_A_ROW = 4  # of the table of exponents

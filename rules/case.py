@@ -8,15 +8,15 @@ from typing import TYPE_CHECKING, Any, TypeVar
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import number_of, occupied, replaced_by, symbol_of
 from overlapse.grammar.model import BasisSet, Block, Document, Function, Severity, Span
-from overlapse.rules.claims import Claim, claims_of
 from overlapse.rules.finding import Edit, Finding
-from overlapse.rules.norms import Norm, norms_of
-from overlapse.rules.probe import Probe
+from overlapse.rules.labels.claims import Claim, claims_of
+from overlapse.rules.measured.probe import Probe
 from overlapse.rules.registry import Rule
-from overlapse.rules.rows import Row, rows_of
+from overlapse.rules.rowwise.norms import Norm, norms_of
+from overlapse.rules.rowwise.rows import Row, rows_of
 
 if TYPE_CHECKING:
-    from overlapse.rules.beside import Kin, SealedSet
+    from overlapse.rules.compare.beside import Kin, SealedSet
 
 Shared = TypeVar("Shared")
 

@@ -5,8 +5,8 @@ from collections.abc import Iterator
 from overlapse.grammar.elements import replaced_by
 from overlapse.grammar.model import Block, Channel, Severity, letter_of
 from overlapse.rules.case import Case, gathered
-from overlapse.rules.cores import Carrier, carriers_of, neighbours, scalar_channels
 from overlapse.rules.finding import Finding
+from overlapse.rules.labels.cores import Carrier, carriers_of, neighbours, scalar_channels
 from overlapse.rules.registry import rule
 
 

@@ -14,9 +14,9 @@ from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rule
 
 if TYPE_CHECKING:
-    from overlapse.rules.beside import Seal, SealedSet
-    from overlapse.rules.relation import Relation
-    from overlapse.rules.sides import Difference
+    from overlapse.rules.compare.beside import Seal, SealedSet
+    from overlapse.rules.compare.relation import Relation
+    from overlapse.rules.compare.sides import Difference
 
 _SHOWN = 16  # digits of a digest in a finding
 
@@ -74,8 +74,8 @@ def seal(case: Case) -> Iterator[Finding]:
 
 
 def _against_seal(case: Case, sealed: "SealedSet") -> Iterator[Finding]:
-    from overlapse.rules.beside import seal_of
-    from overlapse.rules.canonical import elements_of
+    from overlapse.rules.compare.beside import seal_of
+    from overlapse.rules.compare.canonical import elements_of
 
     members = case.sets[sealed.own] if sealed.own >= 0 else None
     now = elements_of(members) if members is not None else {}
@@ -158,7 +158,7 @@ def reference(case: Case) -> Iterator[Finding]:
     """
     if case.reference is None:
         return
-    from overlapse.rules.relation import relate_documents
+    from overlapse.rules.compare.relation import relate_documents
 
     for i, j, relations in relate_documents(case.document, case.reference):
         if i >= 0 and j >= 0:

@@ -54,7 +54,7 @@ def bound(case: Case, *, above: float = 0.03) -> Iterator[Finding]:
         ****
     """
     if case.energies:
-        from overlapse.rules.energy_judged import bounded
+        from overlapse.rules.atomic.energy_judged import bounded
 
         yield from bounded(case, above)
 
@@ -173,7 +173,7 @@ def loss(
         ****
     """
     if case.energies:
-        from overlapse.rules.energy_judged import losing
+        from overlapse.rules.atomic.energy_judged import losing
 
         yield from losing(case, gap, contracted, clear)
 
@@ -237,6 +237,6 @@ def stationary(
         ****
     """
     if case.energies:
-        from overlapse.rules.energy_judged import unsteady
+        from overlapse.rules.atomic.energy_judged import unsteady
 
         yield from unsteady(case, times, clear, alone, least, far)

@@ -6,10 +6,10 @@ from typing import NamedTuple
 from overlapse.grammar.elements import symbol_of
 from overlapse.grammar.model import BasisSet, Block, letter_of
 from overlapse.rules.case import Case
-from overlapse.rules.claims import Claim
-from overlapse.rules.expanded import Departure, Limits, Match, departure, exchanged, matches
 from overlapse.rules.families.counted import table, within
 from overlapse.rules.finding import Finding
+from overlapse.rules.labels.claims import Claim
+from overlapse.rules.labels.expanded import Departure, Limits, Match, departure, exchanged, matches
 from overlapse.rules.registry import rule
 
 

@@ -5,11 +5,11 @@ from collections.abc import Iterator
 from overlapse.grammar.designation import Designation
 from overlapse.grammar.model import BasisSet, Block, letter_of
 from overlapse.rules.case import Case, gathered, is_orbital
-from overlapse.rules.claims import Claim, CompositionClaim, composition_claim
-from overlapse.rules.composition import notation, primitives
 from overlapse.rules.families.counted import is_on_record
 from overlapse.rules.finding import Edit, Finding
-from overlapse.rules.labelling import Judged, Kind, Verdict, best_label, fits, judged
+from overlapse.rules.labels.claims import Claim, CompositionClaim, composition_claim
+from overlapse.rules.labels.composition import notation, primitives
+from overlapse.rules.labels.labelling import Judged, Kind, Verdict, best_label, fits, judged
 from overlapse.rules.registry import rule
 from overlapse.rules.repair import label_lines, replaced_words
 

@@ -12,8 +12,8 @@ from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rule
 
 if TYPE_CHECKING:
-    from overlapse.rules.beside import Kin
-    from overlapse.rules.kinship import Lack
+    from overlapse.rules.compare.beside import Kin
+    from overlapse.rules.compare.kinship import Lack
 
 
 @rule("label.contains")
@@ -81,7 +81,7 @@ def contains(case: Case) -> Iterator[Finding]:
     """
     if not case.kin:
         return
-    from overlapse.rules.kinship import lacks
+    from overlapse.rules.compare.kinship import lacks
 
     told: set[tuple[str | None, str | None, int, int]] = set()
     for kin in case.kin:
@@ -92,7 +92,7 @@ def contains(case: Case) -> Iterator[Finding]:
 
 
 def _finding(case: Case, kin: "Kin", lack: "Lack") -> Finding:
-    from overlapse.rules.compared import nearest_difference
+    from overlapse.rules.compare.compared import nearest_difference
 
     first = lack.missing[0]
     names = [lack.parent.name(member) for member in lack.missing]

@@ -4,11 +4,11 @@ from collections.abc import Iterator
 
 from overlapse.grammar.model import Block
 from overlapse.rules.case import Case
-from overlapse.rules.composition import function_counts
 from overlapse.rules.families.kinds import usual_kind
 from overlapse.rules.finding import Finding
 from overlapse.rules.label import differing
-from overlapse.rules.labelling import Judged, judged
+from overlapse.rules.labels.composition import function_counts
+from overlapse.rules.labels.labelling import Judged, judged
 from overlapse.rules.registry import rule
 
 

@@ -9,11 +9,11 @@ from overlapse.grammar.model import Block, Shell, letter_of
 from overlapse.rules.case import Case
 from overlapse.rules.families.expected import unnormalised_as_published
 from overlapse.rules.finding import Edit, Finding
-from overlapse.rules.norms import NORMALISED, Culprit, Norm, culprit, look_alike, rounding
 from overlapse.rules.physics.trends import quantile
 from overlapse.rules.registry import rule
 from overlapse.rules.repair import rescaled
-from overlapse.rules.rows import Row, rows_of
+from overlapse.rules.rowwise.norms import NORMALISED, Culprit, Norm, culprit, look_alike, rounding
+from overlapse.rules.rowwise.rows import Row, rows_of
 
 
 @rule("contraction.norm")

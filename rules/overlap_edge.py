@@ -5,7 +5,7 @@ from itertools import pairwise
 
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
-from overlapse.rules.overlap_words import (
+from overlapse.rules.measured.overlap_words import (
     at_culprit,
     first_remedy,
     groups_of,
@@ -13,7 +13,7 @@ from overlapse.rules.overlap_words import (
     plain,
     witnesses,
 )
-from overlapse.rules.probe import NEAR, Probe
+from overlapse.rules.measured.probe import NEAR, Probe
 from overlapse.rules.registry import rule
 
 _AWAY = "set the threshold away from the eigenvalue and state it with the results"

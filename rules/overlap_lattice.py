@@ -5,9 +5,8 @@ from collections.abc import Iterator
 from overlapse.grammar.model import Severity
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
-from overlapse.rules.naming import listed
-from overlapse.rules.overlap_molecule import removal
-from overlapse.rules.overlap_words import (
+from overlapse.rules.labels.naming import listed
+from overlapse.rules.measured.overlap_words import (
     at_culprit,
     groups_of,
     ladder,
@@ -16,7 +15,8 @@ from overlapse.rules.overlap_words import (
     shares,
     witnesses,
 )
-from overlapse.rules.probe import Function, Lattice, Probe
+from overlapse.rules.measured.probe import Function, Lattice, Probe
+from overlapse.rules.overlap_molecule import removal
 from overlapse.rules.registry import rule
 
 

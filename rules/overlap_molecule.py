@@ -8,7 +8,7 @@ from collections.abc import Iterator
 from overlapse.grammar.model import Severity
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
-from overlapse.rules.overlap_words import (
+from overlapse.rules.measured.overlap_words import (
     at_culprit,
     first_remedy,
     groups_of,
@@ -19,7 +19,7 @@ from overlapse.rules.overlap_words import (
     shares,
     witnesses,
 )
-from overlapse.rules.probe import Probe
+from overlapse.rules.measured.probe import Probe
 from overlapse.rules.registry import rule
 
 _ALSO = "the smallest eigenvalue is below the limit"

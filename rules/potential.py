@@ -6,7 +6,8 @@ from typing import NamedTuple
 from overlapse.grammar.elements import occupied, replaced_by
 from overlapse.grammar.model import BasisSet, Block
 from overlapse.rules.case import Case, gathered, is_orbital
-from overlapse.rules.cores import (
+from overlapse.rules.finding import Finding
+from overlapse.rules.labels.cores import (
     Carrier,
     carriers_of,
     family_core,
@@ -17,9 +18,8 @@ from overlapse.rules.cores import (
     opens_f,
     possible_cores,
 )
-from overlapse.rules.finding import Finding
+from overlapse.rules.labels.valence import innermost, is_valence_set, likely_core, valence_blocks
 from overlapse.rules.registry import rule
-from overlapse.rules.valence import innermost, is_valence_set, likely_core, valence_blocks
 
 
 class Doubt(NamedTuple):

@@ -6,8 +6,14 @@ from overlapse.grammar.elements import core
 from overlapse.grammar.model import Block, letter_of
 from overlapse.rules.case import Case, gathered, is_orbital
 from overlapse.rules.finding import Finding
+from overlapse.rules.labels.valence import (
+    fitting_core,
+    is_valence_set,
+    lacking,
+    needed,
+    valence_blocks,
+)
 from overlapse.rules.registry import rule
-from overlapse.rules.valence import fitting_core, is_valence_set, lacking, needed, valence_blocks
 
 
 def _judged(case: Case) -> Iterator[list[Block]]:

@@ -5,11 +5,11 @@ from collections.abc import Iterator
 from overlapse.grammar.elements import occupied, row_of, symbol_of
 from overlapse.grammar.model import Block, letter_of
 from overlapse.rules.case import Case, gathered, is_orbital
-from overlapse.rules.composition import notation, primitives
 from overlapse.rules.families.counted import plus
 from overlapse.rules.finding import Finding
 from overlapse.rules.label import differing
-from overlapse.rules.labelling import Judged, judged
+from overlapse.rules.labels.composition import notation, primitives
+from overlapse.rules.labels.labelling import Judged, judged
 from overlapse.rules.registry import rule
 
 

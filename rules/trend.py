@@ -8,14 +8,14 @@ from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
 from overlapse.rules.gap import spacing_oddities
 from overlapse.rules.normalisation import spoiled_shells
-from overlapse.rules.progressions import (
+from overlapse.rules.registry import rule
+from overlapse.rules.rowwise.progressions import (
     Oddity,
     odd_coefficients,
     odd_exponents,
     oddest_of_shells,
 )
-from overlapse.rules.registry import rule
-from overlapse.rules.slips import Slip, likeliest
+from overlapse.rules.rowwise.slips import Slip, likeliest
 
 
 def _gather(case: Case) -> list[Oddity]:

@@ -5,7 +5,7 @@ from overlapse.grammar.model import Document
 from overlapse.lint.choices import shelf
 from overlapse.lint.screening import measure, tasks
 from overlapse.rules.case import Case
-from overlapse.rules.probing import Wanted
+from overlapse.rules.measured.probing import Wanted
 
 
 def probed(document: Document, geometry: str, wanted: Wanted = Wanted()) -> Case:  # noqa: B008

@@ -28,7 +28,7 @@ if TYPE_CHECKING:
     from overlapse.grammar.model import Document
     from overlapse.lint.choices import Shelf, Use
     from overlapse.lint.screening import Screening, Task
-    from overlapse.rules.probe import Probe
+    from overlapse.rules.measured.probe import Probe
 
 # Below this much work (cubes of the numbers of functions) no bar would be seen.
 _QUIET = 2e9
@@ -222,7 +222,7 @@ def screen(
     from overlapse.lint.engine import LEVELS
     from overlapse.lint.scanning import measure_all
     from overlapse.lint.screening import ScreenError, screened, tasks
-    from overlapse.rules.probing import Wanted
+    from overlapse.rules.measured.probing import Wanted
 
     if not basis and not uses:
         raise click.UsageError("name a basis file: overlapse screen BASIS... --on GEOMETRY...")

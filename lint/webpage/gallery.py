@@ -19,7 +19,7 @@ from overlapse.lint.reports.lines import one_line
 from overlapse.lint.webpage import drawings
 from overlapse.lint.webpage.drawings import Spot
 from overlapse.rules.finding import Finding
-from overlapse.rules.probe import Probe
+from overlapse.rules.measured.probe import Probe
 
 MOST_SCENES = 100  # of a page
 _MOST_OF_A_FILE = 6

@@ -19,7 +19,7 @@ from pyscf.scf import atom_hf
 
 from overlapse.grammar.model import Block
 from overlapse.grammar.reading import read
-from overlapse.rules.atoms import _MEMORY, atom_of
+from overlapse.rules.atomic.atoms import _MEMORY, atom_of
 from overlapse.rules.case import Case
 from overlapse.rules.physics.atom import solve
 from overlapse.rules.physics.configuration import Coupling, configuration

@@ -14,8 +14,8 @@ import pyscf
 from overlapse.grammar.designation import parse_label
 from overlapse.grammar.elements import period_of
 from overlapse.grammar.reading import read
-from overlapse.rules.atoms import atom_of
-from overlapse.rules.level import plain
+from overlapse.rules.atomic.atoms import atom_of
+from overlapse.rules.atomic.level import plain
 
 FOLDER = Path(pyscf.__file__).parent / "gto" / "basis"
 TARGET = Path(__file__).parents[2] / "rules" / "families" / "levels.json"

@@ -18,7 +18,7 @@ from overlapse.lint.choices import shelf
 from overlapse.lint.scanning import measure_all
 from overlapse.lint.screening import tasks
 from overlapse.rules.case import Case
-from overlapse.rules.probing import Wanted
+from overlapse.rules.measured.probing import Wanted
 from overlapse.rules.registry import rules
 
 FOLDER = Path(pyscf.__file__).parent / "gto" / "basis"

@@ -23,12 +23,12 @@ import pyscf
 
 from overlapse.grammar.model import Block, Document, Shell
 from overlapse.grammar.reading import read
-from overlapse.rules.atoms import Atom, Number, atom_of
+from overlapse.rules.atomic.atoms import Atom, Number, atom_of
+from overlapse.rules.atomic.energies import Ensemble, ensembles
+from overlapse.rules.atomic.energy_judged import at_atom
+from overlapse.rules.atomic.stationary import Steps
 from overlapse.rules.case import Case
-from overlapse.rules.energies import Ensemble, ensembles
-from overlapse.rules.energy_judged import at_atom
 from overlapse.rules.registry import rules
-from overlapse.rules.stationary import Steps
 
 FOLDER = Path(pyscf.__file__).parent / "gto" / "basis"
 FAMILIES = {
@@ -128,7 +128,7 @@ class Judge:
 
 
 def steps(atom: Atom) -> Steps | None:
-    from overlapse.rules.stationary import steps_of
+    from overlapse.rules.atomic.stationary import steps_of
 
     return steps_of(atom)
 

@@ -24,7 +24,7 @@ from overlapse.lint.engine import FileAudit, audit_text
 from overlapse.lint.settings import Settings
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
-from overlapse.rules.probing import Wanted
+from overlapse.rules.measured.probing import Wanted
 
 pytest.importorskip("matplotlib")
 pytest.importorskip("jinja2")

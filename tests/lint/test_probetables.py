@@ -7,7 +7,7 @@ import pytest
 from overlapse.lint.engine import FileAudit, Target, audit_file
 from overlapse.lint.probetables import Probing, Table
 from overlapse.lint.settings import Settings
-from overlapse.rules.probing import Wanted
+from overlapse.rules.measured.probing import Wanted
 
 HYDROGEN = "H 0\nS 1 1.00\n 0.5 1.0\nS 1 1.00\n 0.05 1.0\nS 1 1.00\n 0.0502 1.0\n****\n"
 OXYGEN = "O 0\nS 1 1.00\n 20.0 1.0\nS 1 1.00\n 1.0 1.0\nP 1 1.00\n 0.6 1.0\n****\n"

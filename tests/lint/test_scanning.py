@@ -15,7 +15,7 @@ from overlapse.lint import memory
 from overlapse.lint.choices import ChoiceError, parsed_use, shelf
 from overlapse.lint.scanning import measure_all, workers
 from overlapse.lint.screening import Task, tasks
-from overlapse.rules.probing import Wanted
+from overlapse.rules.measured.probing import Wanted
 
 BASIS = "H 0\nS 1 1.0\n 0.5 1.0\nS 1 1.0\n 0.05 1.0\n****\n"
 FRAMES = "".join(f"2\nframe {k}\nH 0 0 0\nH 0 0 {0.7 + 0.1 * k}\n" for k in range(7))

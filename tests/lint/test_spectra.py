@@ -7,8 +7,8 @@ from probed import probed
 
 from overlapse.grammar.reading import read_text
 from overlapse.lint.picture import PictureError
-from overlapse.rules.probe import Probe
-from overlapse.rules.probing import Wanted
+from overlapse.rules.measured.probe import Probe
+from overlapse.rules.measured.probing import Wanted
 
 pytest.importorskip("matplotlib", reason="install the extra 'report' to run this check")
 from overlapse.lint.spectra import spectra

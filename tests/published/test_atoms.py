@@ -16,7 +16,7 @@ import pytest
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.model import Block, Floats
 from overlapse.grammar.reading import read
-from overlapse.rules.atoms import Atom, atom_of
+from overlapse.rules.atomic.atoms import Atom, atom_of
 from overlapse.rules.physics.atom import solve
 from overlapse.rules.physics.boys import boys
 from overlapse.rules.physics.configuration import Configuration, configuration

@@ -14,8 +14,8 @@ from overlapse.grammar.reading import read, read_text  # noqa: E402
 from overlapse.lint.engine import Options, Target, audited  # noqa: E402
 from overlapse.lint.neighbours import Beside  # noqa: E402
 from overlapse.lint.settings import Settings  # noqa: E402
+from overlapse.rules.compare.relation import Relation, relate_documents  # noqa: E402
 from overlapse.rules.finding import Finding  # noqa: E402
-from overlapse.rules.relation import Relation, relate_documents  # noqa: E402
 
 FOLDER = Path(pyscf.__file__).parent / "gto" / "basis"
 

@@ -17,9 +17,9 @@ pyscf = pytest.importorskip(
 )
 from overlapse.grammar.model import Block, Shell  # noqa: E402
 from overlapse.grammar.reading import read_text  # noqa: E402
-from overlapse.rules.atoms import atom_of  # noqa: E402
+from overlapse.rules.atomic.atoms import atom_of  # noqa: E402
+from overlapse.rules.atomic.energies import ensembles  # noqa: E402
 from overlapse.rules.case import Case  # noqa: E402
-from overlapse.rules.energies import ensembles  # noqa: E402
 from overlapse.rules.finding import Finding  # noqa: E402
 from overlapse.rules.registry import rules  # noqa: E402
 

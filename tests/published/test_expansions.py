@@ -8,8 +8,8 @@ import pytest
 
 from overlapse.grammar.reading import read
 from overlapse.rules.case import Case
-from overlapse.rules.expanded import matches
 from overlapse.rules.finding import Finding
+from overlapse.rules.labels.expanded import matches
 from overlapse.rules.physics.onecentre import self_overlap
 from overlapse.rules.physics.slater import Expansion, expansions, fit, moments, slater_overlap
 from overlapse.rules.registry import rules

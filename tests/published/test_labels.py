@@ -14,8 +14,8 @@ from overlapse.grammar.reading import read  # noqa: E402
 from overlapse.lint.engine import Target, audit_file  # noqa: E402
 from overlapse.lint.settings import Settings  # noqa: E402
 from overlapse.rules.case import Case  # noqa: E402
-from overlapse.rules.composition import lengths_of, primitives  # noqa: E402
 from overlapse.rules.finding import Finding  # noqa: E402
+from overlapse.rules.labels.composition import lengths_of, primitives  # noqa: E402
 from overlapse.rules.registry import rules  # noqa: E402
 
 FOLDER = Path(pyscf.__file__).parent / "gto" / "basis"

@@ -9,10 +9,10 @@ pyscf = pytest.importorskip(
 )
 from overlapse.grammar.reading import read, read_text  # noqa: E402
 from overlapse.rules.case import Case  # noqa: E402
-from overlapse.rules.cores import family_core  # noqa: E402
 from overlapse.rules.finding import Finding  # noqa: E402
+from overlapse.rules.labels.cores import family_core  # noqa: E402
+from overlapse.rules.labels.valence import covered, innermost, likely_core  # noqa: E402
 from overlapse.rules.registry import rules  # noqa: E402
-from overlapse.rules.valence import covered, innermost, likely_core  # noqa: E402
 
 FOLDER = Path(pyscf.__file__).parent / "gto" / "basis"
 RULES = ["potential.core", "potential.missing", "potential.terms", "potential.channels"]

@@ -11,8 +11,8 @@ pyscf = pytest.importorskip(
 from pyscf import gto  # noqa: E402
 
 from overlapse.lint.screening import screen_files  # noqa: E402
-from overlapse.rules.probe import Probe  # noqa: E402
-from overlapse.rules.probing import Wanted  # noqa: E402
+from overlapse.rules.measured.probe import Probe  # noqa: E402
+from overlapse.rules.measured.probing import Wanted  # noqa: E402
 
 FOLDER = Path(pyscf.__file__).parent / "gto" / "basis"
 # Geometries of A. Szabo, N. S. Ostlund, Modern Quantum Chemistry, chapter 3, from memory; bohr.

@@ -12,7 +12,7 @@ from hypothesis import strategies as st
 from overlapse.grammar.layouts import layouts
 from overlapse.grammar.model import BasisSet, Block, Channel, Document, Potential, Shell
 from overlapse.grammar.reading import read_text
-from overlapse.rules.canonical import digest_of, elements_of
+from overlapse.rules.compare.canonical import digest_of, elements_of
 
 CALM = [HealthCheck.too_slow, HealthCheck.filter_too_much]
 

@@ -8,9 +8,9 @@ import pytest
 from overlapse.grammar.model import Floats
 from overlapse.grammar.reading import read_text
 from overlapse.rules.case import Case
-from overlapse.rules.expanded import matches
 from overlapse.rules.expansion import screening
 from overlapse.rules.finding import Finding
+from overlapse.rules.labels.expanded import matches
 from overlapse.rules.physics.slater import Expansion, expansions
 from overlapse.rules.registry import rules
 

@@ -5,9 +5,9 @@ from probed import probed
 
 from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read_bytes, read_text
-from overlapse.rules.beside import SealedSet, seals_of
 from overlapse.rules.case import Case
-from overlapse.rules.kinship import kin_among
+from overlapse.rules.compare.beside import SealedSet, seals_of
+from overlapse.rules.compare.kinship import kin_among
 from overlapse.rules.registry import Rule, rules
 
 RULES = sorted(rules())

@@ -6,8 +6,8 @@ import pytest
 from overlapse.grammar.model import BasisSet, Block, Channel, Document, Potential, Shell
 from overlapse.grammar.source import Source
 from overlapse.rules.case import Case
-from overlapse.rules.cores import is_closed, is_usual, local_charge, opens_f, possible_cores
 from overlapse.rules.finding import Finding
+from overlapse.rules.labels.cores import is_closed, is_usual, local_charge, opens_f, possible_cores
 from overlapse.rules.registry import rules
 
 S = Shell((0,), [0.5, 0.1], [[-0.3], [1.1]])

@@ -9,8 +9,8 @@ from probed import probed
 from overlapse.grammar.reading import read_text
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
-from overlapse.rules.probe import Probe
-from overlapse.rules.probing import Wanted
+from overlapse.rules.measured.probe import Probe
+from overlapse.rules.measured.probing import Wanted
 from overlapse.rules.registry import rules
 
 # Invented: lone functions, the third s nearly the second.

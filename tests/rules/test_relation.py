@@ -11,7 +11,7 @@ from hypothesis import strategies as st
 from overlapse.grammar.layouts import layouts
 from overlapse.grammar.model import Document, Floats
 from overlapse.grammar.reading import read_text
-from overlapse.rules.relation import Relation, relate_documents
+from overlapse.rules.compare.relation import Relation, relate_documents
 
 
 def relations(left: Document, right: Document) -> list[Relation]:

@@ -4,7 +4,7 @@ from collections.abc import Sequence
 
 from overlapse.grammar.designation import parse_label
 from overlapse.grammar.model import BasisSet
-from overlapse.rules.canonical import digest_of, elements_of
+from overlapse.rules.compare.canonical import digest_of, elements_of
 
 
 def paired_sets(left: Sequence[BasisSet], right: Sequence[BasisSet]) -> list[tuple[int, int]]:

@@ -6,11 +6,11 @@ from typing import Literal, NamedTuple
 import numpy as np
 
 from overlapse.grammar.model import letter_of
-from overlapse.rules.canonical import numbers_of
+from overlapse.rules.compare.canonical import numbers_of
+from overlapse.rules.compare.printed import is_rounded
+from overlapse.rules.compare.sides import Difference, Member, Side
+from overlapse.rules.compare.within import COARSEST_EXPONENT, factor, lies_within
 from overlapse.rules.physics.spans import normalised_overlaps, principal_angles
-from overlapse.rules.printed import is_rounded
-from overlapse.rules.sides import Difference, Member, Side
-from overlapse.rules.within import COARSEST_EXPONENT, factor, lies_within
 
 Sense = Literal["numbers", "rounding", "span", "contained", "contains", "different"]
 

@@ -6,13 +6,13 @@ import numpy as np
 
 from overlapse.grammar.elements import symbol_of
 from overlapse.grammar.model import Block
-from overlapse.rules.atoms import Atom, Number
+from overlapse.rules.atomic.atoms import Atom, Number
+from overlapse.rules.atomic.columns import Stray
+from overlapse.rules.atomic.energies import Ensemble
+from overlapse.rules.atomic.explained import Verdict, by_row
+from overlapse.rules.atomic.meant import TELLING, Slip, likely
 from overlapse.rules.case import Case
-from overlapse.rules.columns import Stray
-from overlapse.rules.energies import Ensemble
-from overlapse.rules.explained import Verdict, by_row
 from overlapse.rules.finding import Finding
-from overlapse.rules.meant import TELLING, Slip, likely
 from overlapse.rules.physics.onecentre import self_overlap
 
 _SMALL = 5e-3  # relative changes below it are notes without a second witness

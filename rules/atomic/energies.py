@@ -6,12 +6,12 @@ from functools import cached_property
 from overlapse.grammar.designated import Designation
 from overlapse.grammar.elements import period_of, row_of
 from overlapse.grammar.model import BasisSet
-from overlapse.rules.atoms import Atom, atom_of
+from overlapse.rules.atomic.atoms import Atom, atom_of
+from overlapse.rules.atomic.columns import Column, Stray, columns_of, strays
+from overlapse.rules.atomic.stationary import Steps, Usual, steps_of, usual
 from overlapse.rules.case import Case, is_orbital
-from overlapse.rules.columns import Column, Stray, columns_of, strays
+from overlapse.rules.labels.valence import innermost
 from overlapse.rules.physics.trends import quantile
-from overlapse.rules.stationary import Steps, Usual, steps_of, usual
-from overlapse.rules.valence import innermost
 
 _FOREIGN = 0.5  # units of nuclear charge; published sets stay within 0.2
 _WHOLE = 0.9  # share of 1s that sets for all electrons describe, see `valence`

@@ -4,19 +4,19 @@ from collections.abc import Iterator
 from dataclasses import replace
 from math import inf
 
-from overlapse.rules.atoms import Atom
-from overlapse.rules.case import Case
-from overlapse.rules.energies import Ensemble, ensembles
-from overlapse.rules.energy_told import (
+from overlapse.rules.atomic.atoms import Atom
+from overlapse.rules.atomic.energies import Ensemble, ensembles
+from overlapse.rules.atomic.energy_told import (
     charge_finding,
     column_finding,
     number_finding,
     puzzle_finding,
 )
-from overlapse.rules.explained import Verdict, explain
+from overlapse.rules.atomic.explained import Verdict, explain
+from overlapse.rules.atomic.level import usual_gap
+from overlapse.rules.atomic.stationary import Steps
+from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
-from overlapse.rules.level import usual_gap
-from overlapse.rules.stationary import Steps
 
 
 def bounded(case: Case, above: float) -> Iterator[Finding]:

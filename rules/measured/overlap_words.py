@@ -5,8 +5,8 @@ from collections.abc import Callable, Iterator, Sequence
 from overlapse.grammar.model import Severity
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
-from overlapse.rules.naming import listed
-from overlapse.rules.probe import Dropped, Function, Probe, Share, Small
+from overlapse.rules.labels.naming import listed
+from overlapse.rules.measured.probe import Dropped, Function, Probe, Share, Small
 
 _DIFFUSE = 0.4  # bohr**-2; outermost functions below this are what augmentation adds
 _SEASONAL = (

@@ -8,13 +8,13 @@ import numpy as np
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.designation import Designation
 from overlapse.grammar.model import BasisSet, Block, Document
-from overlapse.rules.beside import Kin
-from overlapse.rules.canonical import elements_of, numbers_of
-from overlapse.rules.claims import Claim, claims_of
+from overlapse.rules.compare.beside import Kin
+from overlapse.rules.compare.canonical import elements_of, numbers_of
+from overlapse.rules.compare.sides import Member, Side
+from overlapse.rules.compare.within import lies_within
 from overlapse.rules.families.kin import contains, may_contain
+from overlapse.rules.labels.claims import Claim, claims_of
 from overlapse.rules.physics.spans import projection
-from overlapse.rules.sides import Member, Side
-from overlapse.rules.within import lies_within
 
 # Files round in different ways: what agrees this far is one number.
 _EXPONENTS = 2e-6

@@ -11,8 +11,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from overlapse.grammar.model import Floats
-from overlapse.rules.atoms import Atom, Number
-from overlapse.rules.stationary import Steps, Usual, explanations
+from overlapse.rules.atomic.atoms import Atom, Number
+from overlapse.rules.atomic.stationary import Steps, Usual, explanations
 
 
 @dataclass(frozen=True, eq=False)

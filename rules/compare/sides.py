@@ -8,9 +8,9 @@ import numpy as np
 
 from overlapse.grammar.model import Block, Channel, Document, Function
 from overlapse.grammar.numbers import FORTRAN, NUMBER
-from overlapse.rules.canonical import in_order
+from overlapse.rules.compare.canonical import in_order
+from overlapse.rules.compare.printed import Printed, printed
 from overlapse.rules.physics.onecentre import self_overlap
-from overlapse.rules.printed import Printed, printed
 
 
 class Member(NamedTuple):

@@ -11,8 +11,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from overlapse.grammar.model import Floats
-from overlapse.rules.atoms import Atom, Number
-from overlapse.rules.norms import half_unit
+from overlapse.rules.atomic.atoms import Atom, Number
+from overlapse.rules.rowwise.norms import half_unit
 
 _LEAST = 4  # primitives of a column that is compared
 _ALIKE = 0.03  # median departure of a column that is an orbital

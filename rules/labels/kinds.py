@@ -3,9 +3,9 @@
 from typing import NamedTuple
 
 from overlapse.grammar.model import Block, Document
-from overlapse.rules.claims import claims_of
 from overlapse.rules.families.kinds import usual_kind
-from overlapse.rules.naming import Ranking
+from overlapse.rules.labels.claims import claims_of
+from overlapse.rules.labels.naming import Ranking
 
 
 class Kind(NamedTuple):

@@ -4,7 +4,9 @@ from collections.abc import Iterable, Iterator, Sequence
 from typing import NamedTuple
 
 from overlapse.grammar.model import Floats
-from overlapse.rules.blaming import blame, described
+from overlapse.rules.measured.blaming import blame, described
+from overlapse.rules.measured.probe import NEAR, Dropped, Lattice, Left, Probe
+from overlapse.rules.measured.site import Site, formula, kind_of
 from overlapse.rules.physics.inertia import Matrix
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.onecentre import eigenvalues
@@ -13,8 +15,6 @@ from overlapse.rules.physics.placed import Functions, Ints, Placed, lay_out, rad
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
 from overlapse.rules.physics.spectrum import LADDER, Spectrum, spectrum
 from overlapse.rules.physics.superposed import affordable
-from overlapse.rules.probe import NEAR, Dropped, Lattice, Left, Probe
-from overlapse.rules.site import Site, formula, kind_of
 
 
 class Wanted(NamedTuple):

@@ -16,7 +16,7 @@ from overlapse.grammar.model import BasisSet, Block, Floats, Function, Shell
 from overlapse.grammar.numbers import NUMBER
 from overlapse.rules.physics.onecentre import primitive_overlap, self_overlap
 from overlapse.rules.physics.trends import quantile
-from overlapse.rules.rows import Row
+from overlapse.rules.rowwise.rows import Row
 
 NORMALISED = 1e-3  # closer to one than this counts as meant to be normalised
 

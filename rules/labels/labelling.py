@@ -7,13 +7,13 @@ from overlapse.grammar.designation import Designation
 from overlapse.grammar.elements import occupied
 from overlapse.grammar.model import BasisSet, Block, letter_of
 from overlapse.rules.case import Case, is_orbital
-from overlapse.rules.claims import Claim
-from overlapse.rules.composition import lengths_of, primitives, show
-from overlapse.rules.digits import by_digits
 from overlapse.rules.families.candidates import candidates
 from overlapse.rules.families.counted import WITH_POTENTIALS, Counts, Expected, expected, plus
 from overlapse.rules.families.expected import Promise, promise
-from overlapse.rules.valence import fitting_core
+from overlapse.rules.labels.claims import Claim
+from overlapse.rules.labels.composition import lengths_of, primitives, show
+from overlapse.rules.labels.digits import by_digits
+from overlapse.rules.labels.valence import fitting_core
 
 # split, family: core or valence functions differ.  decoration: those differ that a decoration in
 # the label stands for.  polarization, diffuse: functions of that kind are missing.

@@ -5,8 +5,8 @@ from dataclasses import replace
 
 from overlapse.grammar.designation import Designation
 from overlapse.grammar.model import Block
-from overlapse.rules.composition import lengths_of
 from overlapse.rules.families.candidates import candidates
+from overlapse.rules.labels.composition import lengths_of
 
 
 def by_digits(blocks: Sequence[Block]) -> list[Designation]:

@@ -5,14 +5,9 @@ from collections.abc import Callable, Sequence
 import numpy as np
 
 from overlapse.grammar.model import Floats
-from overlapse.rules.blaming import described
-from overlapse.rules.physics.inertia import Matrix
-from overlapse.rules.physics.lattice import lattice_overlap, lattice_reach, monkhorst_pack
-from overlapse.rules.physics.placed import lay_out
-from overlapse.rules.physics.pruning import Drop, shells_to_drop
-from overlapse.rules.physics.spectrum import smallest
-from overlapse.rules.probe import AtPoint, Function, Lattice, Left, Probe
-from overlapse.rules.probing import (
+from overlapse.rules.measured.blaming import described
+from overlapse.rules.measured.probe import AtPoint, Function, Lattice, Left, Probe
+from overlapse.rules.measured.probing import (
     Label,
     Pruned,
     Wanted,
@@ -24,7 +19,12 @@ from overlapse.rules.probing import (
     steps,
     turned_spherical,
 )
-from overlapse.rules.site import Site
+from overlapse.rules.measured.site import Site
+from overlapse.rules.physics.inertia import Matrix
+from overlapse.rules.physics.lattice import lattice_overlap, lattice_reach, monkhorst_pack
+from overlapse.rules.physics.placed import lay_out
+from overlapse.rules.physics.pruning import Drop, shells_to_drop
+from overlapse.rules.physics.spectrum import smallest
 
 TOLERANCE = 1e-13  # bound of what is left out of an element of S(k)
 _LOOSE = 0.3  # bohr**-2: functions below are listed

@@ -8,12 +8,12 @@ from typing import Literal
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import symbol_of
 from overlapse.grammar.model import Block, Channel, Document, Potential, letter_of
-from overlapse.rules.canonical import channel_key, elements_of, terms_of
-from overlapse.rules.compared import Part, Sense, compare_functions
-from overlapse.rules.pairing import paired_sets
-from overlapse.rules.printed import is_rounded, printed
-from overlapse.rules.sides import Difference, Side, Spot
-from overlapse.rules.within import COARSEST_EXPONENT
+from overlapse.rules.compare.canonical import channel_key, elements_of, terms_of
+from overlapse.rules.compare.compared import Part, Sense, compare_functions
+from overlapse.rules.compare.pairing import paired_sets
+from overlapse.rules.compare.printed import is_rounded, printed
+from overlapse.rules.compare.sides import Difference, Side, Spot
+from overlapse.rules.compare.within import COARSEST_EXPONENT
 
 Verdict = Literal[
     "equal text", "equal numbers", "equal to rounding", "equal span", "contained in", "contains",

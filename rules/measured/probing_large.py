@@ -4,12 +4,12 @@ from collections.abc import Sequence
 
 import numpy as np
 
+from overlapse.rules.measured.probe import Probe
+from overlapse.rules.measured.probing import Label, Wanted, assembled, ladder_of, some_of
+from overlapse.rules.measured.site import Site
 from overlapse.rules.physics.blocks import sparse_overlap
 from overlapse.rules.physics.placed import lay_out
 from overlapse.rules.physics.spectrum import COPIES, spectrum_of_sparse
-from overlapse.rules.probe import Probe
-from overlapse.rules.probing import Label, Wanted, assembled, ladder_of, some_of
-from overlapse.rules.site import Site
 
 
 def probe_large(sites: Sequence[Site], wanted: Wanted, label: Label, memory: int) -> Probe:

@@ -8,14 +8,14 @@ from typing import NamedTuple
 
 from overlapse.grammar.designation import Designation
 from overlapse.grammar.model import BasisSet, Block, Document
-from overlapse.rules.canonical import ElementKey, digest_of, elements_of
-from overlapse.rules.composition import notation
+from overlapse.rules.compare.canonical import ElementKey, digest_of, elements_of
+from overlapse.rules.labels.composition import notation
 
 
 class Seal(NamedTuple):
     """What an element held when it was sealed.
 
-    digest, parts: see `overlapse.rules.canonical.Digest`.  holds: its composition.
+    digest, parts: see `overlapse.rules.compare.canonical.Digest`.  holds: its composition.
     """
 
     digest: str

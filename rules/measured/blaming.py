@@ -5,11 +5,11 @@ from collections.abc import Sequence
 import numpy as np
 
 from overlapse.grammar.model import Block, letter_of
+from overlapse.rules.measured.probe import Function, Share, Small
+from overlapse.rules.measured.site import Site
 from overlapse.rules.physics.inertia import Matrix
 from overlapse.rules.physics.placed import Functions, Ints
 from overlapse.rules.physics.spectrum import LADDER, SMALL, Spectrum, lowest
-from overlapse.rules.probe import Function, Share, Small
-from overlapse.rules.site import Site
 
 _BLAMED = 12  # eigenvalues whose combinations are looked into
 _TOLD = 12  # shares that are kept of each

@@ -4,10 +4,10 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from overlapse.rules.canonical import numbers_of
+from overlapse.rules.compare.canonical import numbers_of
+from overlapse.rules.compare.printed import Printed, is_rounded
+from overlapse.rules.compare.sides import Member, Side
 from overlapse.rules.physics.spans import difference, noise, normalised_overlaps, projection
-from overlapse.rules.printed import Printed, is_rounded
-from overlapse.rules.sides import Member, Side
 
 # An exponent printed more coarsely than this share of itself is not taken as another one rounded.
 COARSEST_EXPONENT = 0.010001

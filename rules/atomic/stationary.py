@@ -19,9 +19,9 @@ from hashlib import sha256
 import numpy as np
 
 from overlapse.grammar.model import Floats
-from overlapse.rules.atoms import Atom, Number
-from overlapse.rules.norms import half_unit
+from overlapse.rules.atomic.atoms import Atom, Number
 from overlapse.rules.physics.trends import quantile
+from overlapse.rules.rowwise.norms import half_unit
 
 _FINEST = 3e-4  # steps of the best published numbers
 _NOISE = 1e-7  # of a derivative, hartree: what optimisations of sets leave at best

@@ -8,9 +8,9 @@ from typing import NamedTuple
 
 from overlapse.grammar.designation import Designation
 from overlapse.grammar.model import BasisSet, Block
-from overlapse.rules.claims import Claim
-from overlapse.rules.digits import by_digits
-from overlapse.rules.labelling import Verdict, fits, fitting_labels, verdict
+from overlapse.rules.labels.claims import Claim
+from overlapse.rules.labels.digits import by_digits
+from overlapse.rules.labels.labelling import Verdict, fits, fitting_labels, verdict
 
 # Elements, or labels, that are told one by one; of the others only the number is.
 _TOLD = 3

@@ -13,7 +13,7 @@ import numpy.typing as npt
 
 from overlapse.grammar.model import BasisSet, Block, Floats, Shell
 from overlapse.rules.physics.prediction import FEWEST, Predictions, beside, predictions
-from overlapse.rules.rows import STRETCHES, stretch
+from overlapse.rules.rowwise.rows import STRETCHES, stretch
 
 # Exponents are believed to follow their companions to this, coefficients (in units of their size).
 _FINEST = 0.003

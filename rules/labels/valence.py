@@ -4,7 +4,7 @@ import numpy as np
 
 from overlapse.grammar.elements import occupied, replaced_by, subshells, usual_cores
 from overlapse.grammar.model import BasisSet, Block
-from overlapse.rules.cores import possible_cores
+from overlapse.rules.labels.cores import possible_cores
 from overlapse.rules.physics.onecentre import primitive_overlap
 from overlapse.rules.physics.slater import Orbital, slater_overlap, slater_zetas
 
