@@ -15,7 +15,7 @@ from overlapse.rules.rowwise.progressions import (
     odd_exponents,
     oddest_of_shells,
 )
-from overlapse.rules.rowwise.slips import Slip, likeliest
+from overlapse.rules.slips import Slip, likeliest
 
 
 def _gather(case: Case) -> list[Oddity]:
@@ -235,7 +235,7 @@ def _finding(case: Case, odd: Oddity, what: str, is_far: bool, limit: float) -> 
         f"{odd.expected:.4g} ({odd.low:.4g} to {odd.high:.4g})"
     )
     if slip is not None:
-        message += f"; {slip.what}: {slip.word} would fit"
+        message += f"; {slip.told}: {slip.word} would fit"
     table = shell.exponents if odd.column is None else shell.coefficients[:, odd.column]
     return case.at_shell(
         odd.block,

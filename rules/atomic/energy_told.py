@@ -10,10 +10,10 @@ from overlapse.rules.atomic.atoms import Atom, Number
 from overlapse.rules.atomic.columns import Stray
 from overlapse.rules.atomic.energies import Ensemble
 from overlapse.rules.atomic.explained import Verdict, by_row
-from overlapse.rules.atomic.meant import TELLING, Slip, likely
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
 from overlapse.rules.physics.onecentre import self_overlap
+from overlapse.rules.slips import TELLING, Slip, likely
 
 _SMALL = 5e-3  # relative changes below it are notes without a second witness
 _REMEDY = "compare with the original publication"

@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 
 from overlapse.rules.physics.prediction import beside, predictions
-from overlapse.rules.rowwise.slips import likeliest, slips
+from overlapse.rules.slips import likeliest, slips
 
 ROW = (5, 6, 7, 8, 9, 10)
 NONE: list[tuple[np.ndarray, float]] = []

@@ -32,32 +32,32 @@ def _changes(word: str) -> Iterator[tuple[str, str]]:
     digits = [at for at, sign in enumerate(word) if sign.isdigit()]
     power = next((at for at, sign in enumerate(word) if sign in "EeDd"), len(word))
     mantissa, tail = word[:power], word[power:]
-    yield (word[1:] if word[0] == "-" else "-" + word.lstrip("+")), "the sign"
+    yield (word[1:] if word[0] == "-" else "-" + word.lstrip("+")), "sign lost or added"
     value = float(word.translate(FORTRAN))
     for factor in (10.0, 0.1, 100.0, 0.01):
-        yield _moved(mantissa, factor) + tail, "the decimal point"
+        yield _moved(mantissa, factor) + tail, "decimal point moved"
     if tail:
         turned = tail.replace("-", "+") if "-" in tail else tail[0] + "-" + tail[1:].lstrip("+")
-        yield mantissa + turned, "the sign of the power of ten"
+        yield mantissa + turned, "sign of the power of ten lost or added"
     inside = [at for at in digits if at < power]
     for first, second in pairwise(inside):
         if word[first] != word[second]:
             yield (
                 word[:first] + word[second] + word[first + 1 : second] + word[first]
                 + word[second + 1 :],
-                "two digits exchanged",
+                "digits exchanged",
             )  # fmt: skip
     for first, second in pairwise(inside):
         if word[first] == word[second] and second == first + 1:
-            yield word[:second] + word[second + 1 :], "a digit doubled"
+            yield word[:second] + word[second + 1 :], "digit doubled"
     if abs(value) > 0.0:
         for at in inside:
             for digit in "0123456789":
                 if digit != word[at]:
-                    yield word[:at] + digit + word[at + 1 :], "one digit mistyped"
+                    yield word[:at] + digit + word[at + 1 :], "digit mistyped"
         for at in [*inside, power]:
             for digit in "0123456789":
-                yield word[:at] + digit + word[at:], "a digit lost"
+                yield word[:at] + digit + word[at:], "digit lost"
 
 
 def _moved(mantissa: str, factor: float) -> str:
@@ -73,9 +73,14 @@ def _moved(mantissa: str, factor: float) -> str:
 
 
 # Slips in the order in which they are believed; the later kinds fit nearly anything.
-_CLEAR = ("the sign", "the decimal point", "the sign of the power of ten", "two digits exchanged")
+_CLEAR = (
+    "sign lost or added",
+    "decimal point moved",
+    "sign of the power of ten lost or added",
+    "digits exchanged",
+)
 # Those that are evidence where they fit.
-TELLING = (*_CLEAR, "a digit doubled")
+TELLING = (*_CLEAR, "digit doubled")
 
 
 def likely(word: str, value: float, error: float) -> Slip | None:
@@ -91,7 +96,7 @@ def likely(word: str, value: float, error: float) -> Slip | None:
         return abs(slip.value / value - 1.0) < within
 
     found = [slip for slip in slips(word) if fits(slip)]
-    for kinds in (_CLEAR, ("a digit doubled",), ("one digit mistyped",), ("a digit lost",)):
+    for kinds in (_CLEAR, ("digit doubled",), ("digit mistyped",), ("digit lost",)):
         fitting = [slip for slip in found if slip.told in kinds]
         distinct = {slip.value for slip in fitting}
         if len(distinct) == 1:
@@ -99,3 +104,9 @@ def likely(word: str, value: float, error: float) -> Slip | None:
         if distinct:
             return None
     return None
+
+
+def likeliest(word: str, low: float, high: float, expected: float) -> Slip | None:
+    """The telling slip whose number lies within the bounds and nearest to what is expected."""
+    within = [slip for slip in slips(word) if slip.told in TELLING and low <= slip.value <= high]
+    return min(within, key=lambda slip: abs(slip.value - expected), default=None)
