@@ -53,8 +53,12 @@ _ROUNDING = 2e-9  # of the energy: sums over thousands of hartree lose a few dig
 
 def losing(case: Case, gap: float, contracted: float, clear: float) -> Iterator[Finding]:
     """Atoms that lie higher, or lose more by contraction, than their neighbours."""
+    # Of an atom beyond all bounds that much is known already.
+    told_of = {finding.element for finding in case.found.get("energy.bound", ())}
     for ensemble in ensembles(case):
         for atom in ensemble.atoms:
+            if atom.block.symbol in told_of:
+                continue
             near = ensemble.near(atom)
             found = [
                 ("lies above the Hartree-Fock limit", atom.gap, [a.gap for a in near], gap),
