@@ -3,7 +3,7 @@
 Needs the plotting library of the extra ``report``, which is imported only here.
 """
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from io import BytesIO
 from itertools import groupby
 from math import ceil
@@ -81,6 +81,15 @@ def picture(description: Description, kind: str) -> bytes:
     panels = [panel for each in description.sets for panel in _panels(each, several)]
     if not panels:
         raise PictureError("no element of this file has a function with a positive exponent")
+    sizes, title = _sizes(panels), _title(description)
+    return painted(kind, lambda figure: _draw(figure, panels, sizes, title))
+
+
+def painted(kind: str, draw: "Callable[[Figure], None]") -> bytes:
+    """What ``draw`` puts on an empty figure, as the bytes of a file of this kind.
+
+    Raises PictureError without the extra ``report``.
+    """
     try:
         import matplotlib
         from matplotlib.backends.backend_agg import FigureCanvasAgg
@@ -89,14 +98,13 @@ def picture(description: Description, kind: str) -> bytes:
         raise PictureError(
             "a picture needs the plotting library: pip install 'overlapse[report]'"
         ) from problem
-    sizes = _sizes(panels)
     out = BytesIO()
     with matplotlib.rc_context():
         matplotlib.rcdefaults()
         matplotlib.rcParams.update(STYLE)
         figure = Figure(facecolor="white")
         FigureCanvasAgg(figure)
-        _draw(figure, panels, sizes, _title(description))
+        draw(figure)
         metadata = {"svg": {"Date": None}, "pdf": {"CreationDate": None}}.get(kind, {})
         figure.savefig(out, format=kind, dpi=150, metadata=metadata)
     return out.getvalue()

@@ -4,11 +4,10 @@ Needs the plotting library of the extra ``report``, which is imported only here.
 """
 
 from collections.abc import Sequence
-from io import BytesIO
 from pathlib import PurePath
 from typing import TYPE_CHECKING, Any
 
-from overlapse.lint.picture import COLOURS, GREY, STYLE, PictureError, plain
+from overlapse.lint.picture import COLOURS, GREY, PictureError, painted, plain
 from overlapse.rules.measured.overlap_words import plain as in_words
 from overlapse.rules.measured.probe import Probe, Small
 from overlapse.rules.physics.spectrum import LADDER
@@ -31,24 +30,7 @@ def spectra(probes: Sequence[Probe], kind: str) -> bytes:
     """
     if not probes:
         raise PictureError("no frame was measured: there is nothing to draw")
-    try:
-        import matplotlib
-        from matplotlib.backends.backend_agg import FigureCanvasAgg
-        from matplotlib.figure import Figure
-    except ImportError as problem:
-        raise PictureError(
-            "a picture needs the plotting library: pip install 'overlapse[report]'"
-        ) from problem
-    out = BytesIO()
-    with matplotlib.rc_context():
-        matplotlib.rcdefaults()
-        matplotlib.rcParams.update(STYLE)
-        figure = Figure(facecolor="white")
-        FigureCanvasAgg(figure)
-        _draw(figure, probes)
-        metadata = {"svg": {"Date": None}, "pdf": {"CreationDate": None}}.get(kind, {})
-        figure.savefig(out, format=kind, dpi=150, metadata=metadata)
-    return out.getvalue()
+    return painted(kind, lambda figure: _draw(figure, probes))
 
 
 def _draw(figure: "Figure", probes: Sequence[Probe]) -> None:

@@ -1,26 +1,17 @@
 """Commands: one module each, named like the command it defines; found by presence."""
 
-from functools import cache
 from importlib import import_module
-from importlib.resources import files
 from typing import Any
 
 import click
 
 from overlapse.lint.common import STOPPED
+from overlapse.lint.presence import modules_of
 
 
-@cache
 def names() -> tuple[str, ...]:
     """Names of all commands, in alphabetical order."""
-    entries = (entry.name for entry in files(__name__).iterdir())
-    return tuple(
-        sorted(
-            name.removesuffix(".py")
-            for name in entries
-            if name.endswith(".py") and name != "__init__.py"
-        )
-    )
+    return modules_of(__name__)
 
 
 def command(name: str) -> click.Command:

@@ -6,27 +6,18 @@ get them without where the file was judged in another process or at another time
 """
 
 from collections.abc import Callable, Iterable
-from functools import cache
 from importlib import import_module
-from importlib.resources import files
 from typing import TextIO
 
 from overlapse.lint.engine import FileAudit
+from overlapse.lint.presence import modules_of
 
 Writer = Callable[[Iterable[FileAudit], TextIO, bool], None]
 
 
-@cache
 def names() -> tuple[str, ...]:
     """Names of all reports, in alphabetical order."""
-    entries = (entry.name for entry in files(__name__).iterdir())
-    return tuple(
-        sorted(
-            name.removesuffix(".py")
-            for name in entries
-            if name.endswith(".py") and name != "__init__.py"
-        )
-    )
+    return modules_of(__name__)
 
 
 def writer(name: str) -> Writer:
