@@ -79,7 +79,7 @@ def _measured(
         yield (future.result() for future in futures)
     except BaseException:
         for process in set(active_children()) - others:
-            process.terminate()
+            process.kill()
         raise
     finally:
         executor.shutdown()

@@ -150,14 +150,15 @@ def test_ctrl_c_leaves_no_half_output(tmp_path: Path) -> None:
         text = "".join(block.replace("C 0", f"{s} 0", 1) for s in symbols)
         (folder / f"{number:03d}.basis").write_text(text)
     for more in (["--out", str(out)], []):
-        command = [sys.executable, "-c", PROGRAM, "audit", "--report", "json", "--no-cache"]
+        command = [sys.executable, "-c", PROGRAM, "audit", "--report", "json", "--no-cache", "-v"]
         running = subprocess.Popen(
             [*command, "--processes", "2", *more, str(folder)],
             stdout=subprocess.PIPE,
             stderr=subprocess.PIPE,
             start_new_session=True,
         )
-        time.sleep(2.0)
+        assert running.stderr is not None
+        assert running.stderr.readline()  # the first file is judged
         assert running.poll() is None, "it was over too soon"
         os.killpg(running.pid, signal.SIGINT)  # what a terminal does: all processes get it
         shown, told = running.communicate(timeout=60)

@@ -65,7 +65,7 @@ def test_a_slip_is_recognised(wrong: str, meant: str, what: str) -> None:
     value = float(meant.replace("D", "E"))
     found = likeliest(wrong, *sorted((0.99 * value, 1.01 * value)), value)
     assert found is not None
-    assert (found.what, found.value) == (what, pytest.approx(value, rel=1e-12))
+    assert (found.told, found.value) == (what, pytest.approx(value, rel=1e-12))
 
 
 def test_no_slip_where_none_fits_and_none_of_a_word() -> None:
