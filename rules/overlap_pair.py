@@ -20,6 +20,7 @@ from overlapse.rules.physics.radii import covalent_radius
 from overlapse.rules.registry import rule
 
 _LOOSE = 0.8  # bohr**-2: tighter functions hardly reach a neighbour
+_LEAST = 1e-8  # bohr**-2: what is looser than that is a slip, and leaves the range of numbers
 _HIGHEST = 2  # f functions and above hardly change the bound
 _LIKELY = 300.0  # times the limit: only atoms whose own pair comes that close meet the others
 _OWN = 0.05  # of what the atoms have by themselves: the neighbour must matter
@@ -184,7 +185,7 @@ def _atoms(members: BasisSet) -> Iterator[_Atom]:
         for index, function in block.contracted:
             if len(function.exponents) == 1 and function.l <= _HIGHEST:
                 exponent = float(function.exponents[0])
-                if 0.0 < exponent < _LOOSE:
+                if _LEAST < exponent < _LOOSE:
                     # A function that is given twice has a rule of its own.
                     seen.setdefault((function.l, exponent), index)
         if radius is not None and seen:
