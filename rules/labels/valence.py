@@ -122,7 +122,7 @@ def covered(block: Block, orbital: Orbital, zeta: float) -> float:
     ]
     if not functions:
         return 0.0
-    exponents = np.unique(np.concatenate([f.exponents for f in functions]))
+    exponents = np.array(sorted({e for f in functions for e in f.exponents.tolist()}))
     weights = np.zeros((len(functions), len(exponents)))
     for row, f in enumerate(functions):
         np.add.at(weights[row], np.searchsorted(exponents, f.exponents), f.coefficients)

@@ -67,7 +67,8 @@ def two_centre(left: Lone, right: Lone, distances: Floats) -> Floats:
     )
     found = np.zeros(len(l))
     code = np.where((l == _NONE) | (k == _NONE), _NONE, l * 32 + k)
-    for one in np.unique(code[code != _NONE]).tolist():
+    # Not np.unique, whose first use imports a large part of numpy more.
+    for one in sorted(set(code[code != _NONE].tolist())):
         at = np.flatnonzero(code == one)
         found[at] = axial_overlap(one // 32, a[at], one % 32, b[at], far[at])
     return found.reshape(len(distances), left.l.shape[1], right.l.shape[1])
