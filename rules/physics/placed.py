@@ -67,7 +67,7 @@ def radial_norms(atoms: Sequence[Placed]) -> Floats:
     and so has the self-overlap 4 pi (2i-1)!! (2j-1)!! (2k-1)!! / (2l+1)!!.  Eigenvalues of
     Cartesian sets depend on such norms, and with them on the direction of the axes.
 
-    Source: PySCF, whose Cartesian functions have these norms; practice differs.
+    Source: common practice, no source; others give each component a norm of one.
     """
     functions = lay_out(atoms)
     norms = np.ones(len(functions.l))
