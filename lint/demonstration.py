@@ -39,13 +39,15 @@ def demonstrate(folder: Path | None, out: TextIO, colour: bool) -> None:
     out.write("Two of these files in full:\n\n")
     text.write(shown, out, colour)
     out.write("\n" + _screens(folder) + "\n")
-    out.write(
-        f"The files are in {folder}. To go on:\n"
-        f"  overlapse audit {folder}            the whole report\n"
-        "  overlapse rules contraction.norm      what a rule looks for, and why\n"
-        "  overlapse audit YOUR-FILES            the same for your own files\n"
-        "  overlapse screen BASIS --on XYZ       the same for your own molecules\n"
-    )
+    out.write(f"The files are in {folder}. To go on:\n")
+    steps = {
+        f"overlapse audit {folder}": "the whole report",
+        "overlapse rules contraction.norm": "what a rule looks for, and why",
+        "overlapse audit YOUR-FILES": "the same for your own files",
+        "overlapse screen BASIS --on XYZ": "the same for your own molecules",
+    }
+    width = max(map(len, steps))
+    out.writelines(f"  {step:<{width}}  {what}\n" for step, what in steps.items())
 
 
 def copy_to(folder: Path) -> None:
