@@ -45,7 +45,8 @@ def main() -> None:
     lines = [f"    {json.dumps(label)}: {json.dumps(found)}" for label, found in levels.items()]
     source = (
         "Computed by tests/bench/levels.py from published sets, in the files that the tests "
-        "compare with: for each period the largest share by which an atom's energy lies above its Hartree-Fock limit."
+        "compare with: for each period the largest share by which an atom's energy lies above "
+        "its Hartree-Fock limit."
     )
     TARGET.write_text(
         '{\n  "source": ' + json.dumps(source) + ',\n  "levels": {\n' + ",\n".join(lines)
