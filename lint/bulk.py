@@ -18,6 +18,7 @@ from overlapse.grammar import plugins
 from overlapse.grammar.reading import read_bytes
 from overlapse.lint.engine import FileAudit, Options, Target, audit_bytes, unopened
 from overlapse.lint.settings import Settings, settings_for
+from overlapse.lint.stopping import heed
 
 # What keeps results and starts processes is imported where it is used: a single file needs neither.
 if TYPE_CHECKING:
@@ -75,6 +76,7 @@ def audits(
     pool = _Pool(processes, judge) if processes > 1 else None
     try:
         for job, outcome in _in_order(jobs, judge, pool, cache, standard_input):
+            heed()
             done(job.size)
             yield _with_document(outcome, options) if documents else outcome
     except BaseException:

@@ -5,7 +5,8 @@ import sys
 import click
 
 from overlapse.lint.commands import Commands
-from overlapse.lint.common import BROKEN, CLEAN, MISUSED
+from overlapse.lint.common import BROKEN, CLEAN, MISUSED, STOPPED
+from overlapse.lint.stopping import Stopped, catching
 
 
 @click.command(cls=Commands, context_settings={"help_option_names": ["-h", "--help"]})
@@ -28,8 +29,12 @@ def main() -> None:
     """Entry point: errors that are nobody's finding get their own exit status."""
     from overlapse.lint.settings import SettingsError
 
+    before = catching()
     try:
         cli(prog_name="overlapse")
+    except Stopped:
+        click.echo("\nstopped; what was not finished was not written", err=True)
+        sys.exit(STOPPED)
     except SettingsError as problem:
         click.echo(f"error: {problem}", err=True)
         sys.exit(MISUSED)
@@ -44,3 +49,6 @@ def main() -> None:
             err=True,
         )
         sys.exit(BROKEN)
+    finally:
+        if before is not None:
+            catching(before)

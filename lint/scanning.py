@@ -10,6 +10,7 @@ from multiprocessing import active_children, get_context
 from overlapse.lint import memory
 from overlapse.lint.choices import Shelf
 from overlapse.lint.screening import Task, measure
+from overlapse.lint.stopping import heed
 from overlapse.rules.measured.probe import Probe
 from overlapse.rules.measured.probing import Wanted
 
@@ -43,6 +44,7 @@ def measure_all(
     each = None if limit is None else limit // count
     with _measured(tasks, shelf, wanted, count, each) as results:
         for task, probe in zip(tasks, results, strict=True):
+            heed()
             probes.append(probe)
             done(task.functions)
     return probes

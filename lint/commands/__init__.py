@@ -1,11 +1,9 @@
 """Commands: one module each, named like the command it defines; found by presence."""
 
 from importlib import import_module
-from typing import Any
 
 import click
 
-from overlapse.lint.common import STOPPED
 from overlapse.lint.presence import modules_of
 
 
@@ -28,11 +26,3 @@ class Commands(click.Group):
 
     def get_command(self, ctx: click.Context, cmd_name: str) -> click.Command | None:
         return command(cmd_name) if cmd_name in names() else None
-
-    def invoke(self, ctx: click.Context) -> Any:
-        """Run a command; Ctrl-C has a status of its own, since 1 means that something was found."""
-        try:
-            return super().invoke(ctx)
-        except KeyboardInterrupt:
-            click.echo("\nstopped; what was not finished was not written", err=True)
-            ctx.exit(STOPPED)
