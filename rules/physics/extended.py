@@ -27,7 +27,8 @@ import numpy as np
 from overlapse.grammar.model import Floats
 from overlapse.rules.physics.boys import boys
 from overlapse.rules.physics.configuration import SQUARES
-from overlapse.rules.physics.radial import Integrals, attraction, kinetic, norms
+from overlapse.rules.physics.onecentre import norms
+from overlapse.rules.physics.radial import Integrals, attraction, kinetic
 
 _STEP = 0.2  # of ln s; the error falls as exp(-4.9 / step)
 

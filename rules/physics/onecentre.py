@@ -11,21 +11,38 @@ Source: T. Helgaker, P. Jorgensen, J. Olsen, Molecular Electronic-Structure Theo
 chapters 6 and 8.
 """
 
+from math import gamma
+
 import numpy as np
+import numpy.typing as npt
 
 from overlapse.grammar.model import Floats, Function
 
 
-def primitive_overlap(left: Floats, right: Floats, l: int) -> Floats:
-    """Overlap of normalised primitives, shape (len(left), len(right)); exponents in bohr**-2.
+def norms(exponents: Floats, l: int) -> Floats:
+    """Factors N that normalise the radial parts N r**l exp(-a r**2), shape of the exponents.
 
-    Exponents must be positive; others give NaN.
+    N**2 = 2 (2a)**(l+3/2) / Gamma(l+3/2), a in bohr**-2.
+    """
+    root: Floats = np.sqrt(2.0 / gamma(l + 1.5)) * (2.0 * exponents) ** (0.5 * l + 0.75)
+    return root
+
+
+def overlap_of(left: Floats, right: Floats, l: int | npt.NDArray[np.intp]) -> Floats:
+    """Overlap of normalised primitives of one l; shapes of the three must broadcast.
+
+    Exponents (bohr**-2) must be positive; others give NaN.
     """
     with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
-        root = np.sqrt(left[:, None] / right[None, :])
+        root = np.sqrt(left / right)
         # Written with the ratio, so that neither product nor sum can overflow.
         overlap: Floats = (2.0 / (root + 1.0 / root)) ** (l + 1.5)
     return overlap
+
+
+def primitive_overlap(left: Floats, right: Floats, l: int) -> Floats:
+    """As `overlap_of`, of each on the left with each on the right, shape (left, right)."""
+    return overlap_of(left[:, None], right[None, :], l)
 
 
 def self_overlap(exponents: Floats, coefficients: Floats, l: int) -> float:

@@ -13,6 +13,7 @@ from typing import NamedTuple
 import numpy as np
 
 from overlapse.grammar.model import Floats
+from overlapse.rules.physics.onecentre import overlap_of
 from overlapse.rules.physics.placed import Ints
 from overlapse.rules.physics.twocentre import axial_overlap
 
@@ -46,8 +47,7 @@ def one_centre(atoms: Lone) -> Floats:
     """Overlaps on one centre, shape (atoms, width, width); empty places are orthonormal."""
     left, right = atoms.exponents[:, :, None], atoms.exponents[:, None, :]
     l, k = atoms.l[:, :, None], atoms.l[:, None, :]
-    root = np.sqrt(left / right)
-    found = np.where((l == k) & (l != _NONE), (2.0 / (root + 1.0 / root)) ** (l + 1.5), 0.0)
+    found = np.where((l == k) & (l != _NONE), overlap_of(left, right, l), 0.0)
     width = np.arange(atoms.l.shape[1])
     found[:, width, width] = 1.0
     return found

@@ -25,15 +25,9 @@ import numpy.typing as npt
 
 from overlapse.grammar.model import Floats
 from overlapse.rules.physics.configuration import SQUARES, Configuration
-from overlapse.rules.physics.onecentre import primitive_overlap
+from overlapse.rules.physics.onecentre import norms, primitive_overlap
 
 Indices = npt.NDArray[np.intp]
-
-
-def norms(exponents: Floats, l: int) -> Floats:
-    """Factors N of normalised primitives, shape (n,)."""
-    root: Floats = np.sqrt(2.0 / gamma(l + 1.5)) * (2.0 * exponents) ** (0.5 * l + 0.75)
-    return root
 
 
 def kinetic(left: Floats, right: Floats, l: int) -> Floats:

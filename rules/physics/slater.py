@@ -23,12 +23,12 @@ import json
 from dataclasses import dataclass
 from functools import cache
 from importlib.resources import files
-from math import erfc, exp, factorial, gamma, pi, sqrt
+from math import erfc, exp, factorial, pi, sqrt
 
 import numpy as np
 
 from overlapse.grammar.model import Floats, letter_of
-from overlapse.rules.physics.onecentre import primitive_overlap
+from overlapse.rules.physics.onecentre import norms, primitive_overlap
 
 Orbital = tuple[int, int]  # n and l
 
@@ -95,7 +95,7 @@ def slater_overlap(orbital: Orbital, exponents: Floats, zeta: float = 1.0) -> Fl
     """
     n, l = orbital
     alpha = exponents / zeta**2
-    overlap: Floats = _norm(n) * _norms(l, alpha) * moments(alpha, n + l + 1)[-1]
+    overlap: Floats = _norm(n) * norms(alpha, l) * moments(alpha, n + l + 1)[-1]
     return overlap
 
 
@@ -132,10 +132,6 @@ def _norm(n: int) -> float:
     return float(2.0 ** (n + 0.5) / sqrt(factorial(2 * n)))
 
 
-def _norms(l: int, alpha: Floats) -> Floats:
-    return np.asarray(np.sqrt(2.0 * (2.0 * alpha) ** (l + 1.5) / gamma(l + 1.5)))
-
-
 def _best(orbital: Orbital, logs: Floats) -> tuple[float, Floats, Floats]:
     """Greatest overlap with the Slater function for given ln(exponent), shape (N,).
 
@@ -144,7 +140,7 @@ def _best(orbital: Orbital, logs: Floats) -> tuple[float, Floats, Floats]:
     n, l = orbital
     alpha = np.exp(logs)
     integrals = moments(alpha, n + l + 3)
-    scale = _norm(n) * _norms(l, alpha)
+    scale = _norm(n) * norms(alpha, l)
     b = scale * integrals[n + l + 1]
     slope_b = (0.5 * l + 0.75) * b - alpha * scale * integrals[n + l + 3]
     overlap = primitive_overlap(alpha, alpha, l)

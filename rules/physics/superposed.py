@@ -17,7 +17,7 @@ Phys. Rev. 36, 57 (1930) for the first density; P. A. M. Dirac, Proc. Cambridge 
 """
 
 from collections.abc import Sequence
-from math import factorial, gamma, pi
+from math import factorial, pi
 
 import numpy as np
 
@@ -25,6 +25,7 @@ from overlapse.grammar.elements import subshells
 from overlapse.grammar.model import Floats
 from overlapse.rules.physics.harmonics import cartesian_parts, solid_harmonics, sphere
 from overlapse.rules.physics.kinds import Group, kinds
+from overlapse.rules.physics.onecentre import norms
 from overlapse.rules.physics.placed import Placed
 from overlapse.rules.physics.slater import slater_zetas
 
@@ -172,9 +173,8 @@ def _parts(group: Group) -> tuple[tuple[int, Floats], ...]:
 
 def _radial(group: Group, square: Floats) -> Floats:
     """Sums of normalised primitives less r**l, shape (functions, p)."""
-    power = group.l + 1.5
-    norm = np.sqrt(2.0 * (2.0 * group.exponents) ** power / gamma(power))
-    found: Floats = (group.weights * norm) @ np.exp(-np.outer(group.exponents, square))
+    weights = group.weights * norms(group.exponents, group.l)
+    found: Floats = weights @ np.exp(-np.outer(group.exponents, square))
     return found
 
 
