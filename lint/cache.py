@@ -175,8 +175,11 @@ def surroundings(places: Iterable[Path]) -> str:
 
 
 def begin() -> None:
-    """Look anew at the files that results depend on; to be called before a run."""
+    """Look anew at the files that results depend on; to be called before a run, and before other
+    processes are started, which then need not read the program's code for themselves.
+    """
     _stamped.cache_clear()
+    code()
 
 
 @cache

@@ -62,6 +62,14 @@ def like_a_layout(context: click.Context, parameter: click.Parameter, begun: str
     return [name for name in names() if name.startswith(begun)]
 
 
+def bytes_of(path: Path) -> bytes:
+    """What a file, or standard input (-), holds.  Raises Unreadable."""
+    try:
+        return sys.stdin.buffer.read() if path == Path("-") else path.read_bytes()
+    except OSError as problem:
+        raise Unreadable(f"{path}: {problem.strerror or problem}") from problem
+
+
 @contextmanager
 def output(path: Path | None, large: bool = False) -> Iterator[TextIO]:
     """A stream whose content appears, on standard output or as a file, only when it is complete.

@@ -99,6 +99,20 @@ class FileAudit:
         least = LEVELS.index(self.settings.fail_at)
         return any(LEVELS.index(finding.severity) >= least for finding in self.findings)
 
+    def failing_at(self, level: str) -> "FileAudit":
+        """The same, failing from this level on."""
+        return replace(self, settings=replace(self.settings, fail_at=level))
+
+    def at_least(self, level: str) -> "FileAudit":
+        """The same with only the findings of this level and above."""
+        return replace(self, findings=at_least(self.findings, level))
+
+
+def at_least(findings: Iterable[Finding], level: str) -> tuple[Finding, ...]:
+    """The findings of this level and above."""
+    least = LEVELS.index(level)
+    return tuple(finding for finding in findings if LEVELS.index(finding.severity) >= least)
+
 
 class Target(NamedTuple):
     """A file to audit; ``searched`` if it was found in a folder and may be no basis file."""
@@ -234,10 +248,12 @@ def judge(
     """
     claimed = label if label is not None else settings.label
     case = Case(document, claimed, probes=probes, energies=energies)
-    furnish(case, settings, beside)
-    for name, rule in sorted(rules().items(), key=lambda item: item[1].last):
-        if not settings.is_off(name) and (only is None or name in only):
-            case.found[name] = list(_judged(case, rule, settings))
+    wanted = [rule for name, rule in rules().items() if only is None or name in only]
+    if any(rule.needs == "company" for rule in wanted):
+        furnish(case, settings, beside)
+    for rule in sorted(wanted, key=lambda rule: rule.last):
+        if not settings.is_off(rule.name):
+            case.found[rule.name] = list(_judged(case, rule, settings))
     findings = [finding for found in case.found.values() for finding in found]
     findings.sort(key=lambda f: (f.line, f.column, -LEVELS.index(f.severity), f.rule))
     findings = list(marked(findings, document.source))

@@ -17,7 +17,7 @@ from overlapse.grammar.model import Document, Fault
 from overlapse.grammar.reading import read_bytes
 from overlapse.lint import memory
 from overlapse.lint.choices import Shelf, Use, shelf
-from overlapse.lint.engine import FileAudit, judge
+from overlapse.lint.engine import FileAudit, at_least, judge
 from overlapse.lint.settings import Settings, settings_for
 from overlapse.rules.finding import Finding
 from overlapse.rules.measured.closeness import doubt
@@ -55,15 +55,12 @@ class Screening:
     by_frame: tuple[tuple[Finding, ...], ...]
     audits: tuple[FileAudit, ...]
 
-    def at_least(self, levels: Sequence[str]) -> "Screening":
-        """The same with only those findings."""
+    def at_least(self, level: str) -> "Screening":
+        """The same with only the findings of this level and above."""
         return replace(
             self,
-            by_frame=tuple(tuple(f for f in g if f.severity in levels) for g in self.by_frame),
-            audits=tuple(
-                replace(a, findings=tuple(f for f in a.findings if f.severity in levels))
-                for a in self.audits
-            ),
+            by_frame=tuple(at_least(findings, level) for findings in self.by_frame),
+            audits=tuple(audit.at_least(level) for audit in self.audits),
         )
 
 
@@ -227,8 +224,8 @@ def _too_large(task: Task, wide: int, limit: int) -> TooLarge:
 
 
 def geometric_rules() -> frozenset[str]:
-    """Rules that judge measurements: those whose samples come with a geometry."""
-    return frozenset(name for name, rule in rules().items() if rule.explanation.geometry)
+    """Rules that judge measurements."""
+    return frozenset(name for name, rule in rules().items() if rule.needs == "geometry")
 
 
 def judged(

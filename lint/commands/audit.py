@@ -111,6 +111,7 @@ def audit(
       overlapse audit --staged --quiet sets/
       overlapse recast a.basis --layout stars | overlapse audit - --named a.basis
     """
+    from overlapse.lint.bulk import size_of
     from overlapse.lint.engine import FileAudit, Options, Target, targets
     from overlapse.lint.ledger import Sieve
     from overlapse.lint.neighbours import Beside
@@ -126,6 +127,7 @@ def audit(
 
     options = Options(label, layout, energies=bool(energies))
     found: list[Target] = []
+    size = 0  # bytes of all files together
     if staged:
         judged = _staged(paths, options, recognised_only)
     else:
@@ -133,12 +135,14 @@ def audit(
             found += [Target(path, False)] if path == Path("-") else targets([path], trouble)
         if recognised_only:
             found = [Target(target.path, True) for target in found]
+        size = sum(size_of(target.path) for target in found)
         beside = Beside([target.path for target in found if target.path != Path("-")])
         if energies is None:
-            energies = not recognised_only and _size(found) <= _ENERGETIC_BYTES
+            energies = not recognised_only and size <= _ENERGETIC_BYTES
         options = replace(options, beside=beside, energies=energies)
         documents = needs_documents(report)
-        judged = _audits(found, options, named, processes, no_cache, documents, quiet or verbose)
+        silent = quiet or verbose
+        judged = _audits(found, size, options, named, processes, no_cache, documents, silent)
     sieve = None if without_ledger or write_ledger else Sieve(ledger)
     tally = _Tally()
 
@@ -155,7 +159,7 @@ def audit(
         if quiet and out is None:
             shown = list(shown)  # only what fails, and whether anything does must be known first
         if not (quiet and out is None and tally.status == CLEAN):
-            with output(out, _size(found) > _SERIAL_BYTES) as written:
+            with output(out, size > _SERIAL_BYTES) as written:
                 writer(report)(shown, written, out is None and coloured(written))
     _tell_of_plugins()
     sys.exit(tally.status)
@@ -202,22 +206,12 @@ def _sifted(
         if sieve is not None:
             item = sieve.sifted(item)
         if fail_at is not None:
-            item = replace(item, settings=replace(item.settings, fail_at=fail_at))
+            item = item.failing_at(fail_at)
         tally.add(item)
         if quiet and not item.fails and not item.problem:
             continue
         lowest = max(least, item.settings.fail_at, key=LEVELS.index) if quiet else least
-        if lowest != LEVELS[0]:
-            levels = LEVELS[LEVELS.index(lowest) :]
-            item = replace(item, findings=tuple(f for f in item.findings if f.severity in levels))
-        yield item
-
-
-def _size(found: "Iterable[Target]") -> int:
-    """Bytes of all files together."""
-    from overlapse.lint.bulk import size_of
-
-    return sum(size_of(target.path) for target in found)
+        yield item if lowest == LEVELS[0] else item.at_least(lowest)
 
 
 def _told(audits: "Iterable[FileAudit]") -> "Iterator[FileAudit]":
@@ -274,6 +268,7 @@ def _record(audits: "Iterable[FileAudit]", ledger: Path | None, tally: _Tally) -
 
 def _audits(
     found: "list[Target]",
+    size: int,
     options: "Options",
     named: str,
     processes: int | None,
@@ -284,17 +279,16 @@ def _audits(
     from overlapse.lint import bulk
 
     # With energies every byte takes much longer.
-    size, weight = _size(found), 20 if options.energies else 1
+    work = size * 20 if options.energies else size
     if processes is None:
-        processes = bulk.cores() if size * weight > _SERIAL_BYTES else 1
+        processes = bulk.cores() if work > _SERIAL_BYTES else 1
     cache = None
-    if not no_cache and size * weight > _UNKEPT_BYTES:
+    if not no_cache and work > _UNKEPT_BYTES:
         from overlapse.lint.cache import Cache
 
         cache = Cache()
     read = sys.stdin.buffer.read
-    silent = silent or size * weight < _QUIET_BYTES
-    with _progress(size, len(found), silent) as done:
+    with _progress(size, len(found), silent or work < _QUIET_BYTES) as done:
         yield from bulk.audits(
             found,
             options,

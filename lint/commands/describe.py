@@ -5,7 +5,16 @@ from pathlib import Path
 
 import click
 
-from overlapse.lint.common import CLEAN, FOUND, Unreadable, a_layout, draw, like_a_layout, output
+from overlapse.lint.common import (
+    CLEAN,
+    FOUND,
+    Unreadable,
+    a_layout,
+    bytes_of,
+    draw,
+    like_a_layout,
+    output,
+)
 
 
 def _some_elements(
@@ -68,10 +77,7 @@ def describe(
     from overlapse.lint import describe as facts
     from overlapse.lint.tables import write_text
 
-    try:
-        data = sys.stdin.buffer.read() if path == Path("-") else path.read_bytes()
-    except OSError as problem:
-        raise Unreadable(f"{path}: {problem.strerror or problem}") from problem
+    data = bytes_of(path)
     name = named if path == Path("-") else str(path)
     description = facts.describe(read_bytes(data, name, layout=layout), elements)
     if lack := facts.emptiness(description):

@@ -4,7 +4,7 @@ from pathlib import Path
 
 import click
 
-from overlapse.lint.common import Refused, a_layout, like_a_layout, output
+from overlapse.lint.common import Refused, a_layout, bytes_of, like_a_layout, output
 
 
 @click.command()
@@ -36,9 +36,9 @@ def recast(path: Path, target: str, origin: str | None, out: Path | None) -> Non
       overlapse recast sets/carbon.basis --layout schema --out carbon.json
     """
     from overlapse.grammar.layouts import layouts
-    from overlapse.grammar.reading import read
+    from overlapse.grammar.reading import read_bytes
 
-    document = read(path, layout=origin)
+    document = read_bytes(bytes_of(path), str(path), layout=origin)
     broken = [fault for fault in document.faults if fault.severity == "error"]
     if broken:
         place = document.source.place(broken[0].span[0])

@@ -12,6 +12,7 @@ from overlapse.lint.common import (
     UNREADABLE,
     Unreadable,
     a_layout,
+    bytes_of,
     like_a_layout,
     output,
 )
@@ -99,11 +100,7 @@ def _read(path: Path, layout: str | None, named: str) -> "Document":
     from overlapse.grammar.reading import read_bytes
     from overlapse.lint.reports.lines import one_line
 
-    try:
-        data = sys.stdin.buffer.read() if path == Path("-") else path.read_bytes()
-    except OSError as problem:
-        raise Unreadable(f"{path}: {problem.strerror or problem}") from problem
-    document = read_bytes(data, named if path == Path("-") else str(path), layout=layout)
+    document = read_bytes(bytes_of(path), named if path == Path("-") else str(path), layout=layout)
     if not document.blocks:
         faults = [fault.message for fault in document.faults if fault.severity == "error"]
         lack = (faults or ["no element was found"])[0]

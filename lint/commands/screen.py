@@ -17,6 +17,7 @@ from overlapse.lint.common import (
     Unreadable,
     a_layout,
     a_report,
+    bytes_of,
     draw,
     like_a_layout,
     like_a_report,
@@ -219,7 +220,6 @@ def screen(
       overlapse screen c.basis h.basis --on molecules/ --picture spectra.svg
       overlapse screen --use C=c.basis --use H=h.basis --on crystal.extxyz
     """
-    from overlapse.lint.engine import LEVELS
     from overlapse.lint.scanning import measure_all
     from overlapse.lint.screening import ScreenError, screened, tasks
     from overlapse.rules.measured.probing import Wanted
@@ -246,21 +246,16 @@ def screen(
 
         draw(drawing, lambda kind: spectra(probes, kind))
     with output(out) as stream:
-        shown = screening.at_least(LEVELS[LEVELS.index(least) :])
-        _write(shown, report, stream, out is None and stream.isatty())
+        _write(screening.at_least(least), report, stream, out is None and stream.isatty())
     if folder is not None:
         _write_pruned(shelf, probes, folder)
     sys.exit(_status(screening, fail_at))
 
 
 def _status(screening: "Screening", fail_at: str | None) -> int:
-    from dataclasses import replace
-
     audits = screening.audits
     if fail_at is not None:
-        audits = tuple(
-            replace(audit, settings=replace(audit.settings, fail_at=fail_at)) for audit in audits
-        )
+        audits = tuple(audit.failing_at(fail_at) for audit in audits)
     if not screening.probes and not any(audit.fails for audit in audits):
         return UNREADABLE
     return FOUND if any(audit.fails for audit in audits) else CLEAN
@@ -306,12 +301,9 @@ def _shelf(
 def _document(path: Path, layout: str | None, named: str) -> "Document":
     from overlapse.lint.screening import ScreenError, read_basis
 
+    data = bytes_of(path)
     try:
-        if path == _STDIN:
-            return read_basis(Path(named), sys.stdin.buffer.read(), layout)
-        return read_basis(path, path.read_bytes(), layout)
-    except OSError as problem:
-        raise Unreadable(f"{path}: {problem.strerror or problem}") from problem
+        return read_basis(Path(named) if path == _STDIN else path, data, layout)
     except ScreenError as problem:
         raise Unreadable(str(problem)) from problem
 
