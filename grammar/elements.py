@@ -15,7 +15,8 @@ _NUMBERS |= {
     symbol: z for z, symbol in enumerate("uun uuu uub uut uuq uup uuh uus uuo".split(), 110)
 }
 
-_NOBLE = (2, 10, 18, 36, 54, 86, 118)
+# First and last atomic number of each period.
+PERIODS = ((1, 2), (3, 10), (11, 18), (19, 36), (37, 54), (55, 86), (87, 118))
 
 
 def symbol_of(z: int) -> str:
@@ -30,7 +31,7 @@ def number_of(symbol: str) -> int | None:
 
 def period_of(z: int) -> int:
     """Row of the periodic table, 1 to 7."""
-    return next(row for row, last in enumerate(_NOBLE, 1) if z <= last)
+    return next(row for row, (_, last) in enumerate(PERIODS, 1) if z <= last)
 
 
 @cache
@@ -136,7 +137,7 @@ def core(z: int) -> dict[int, int]:
     that filled within that period; behind the f block the f subshell alone.
     """
     period = period_of(z)
-    counts = dict(occupied(_NOBLE[period - 2])) if period > 1 else {}
+    counts = dict(occupied(PERIODS[period - 2][1])) if period > 1 else {}
     filled = occupied(z)
     in_p_block = any(low <= z <= high for low, high in ((31, 36), (49, 54), (81, 86), (113, 118)))
     behind_f_block = 72 <= z <= 86 or 104 <= z <= 118

@@ -30,9 +30,9 @@ _QUOTED = re.compile(r"[\"'](?:[A-Za-z]{1,3}_)?([^\"'\s]+)[\"']")
 # ---- the seal
 
 
-def seal_for(path: Path) -> Path | None:
-    """The nearest seal file above a file or folder."""
-    return nearest(SEAL, path / SEAL if path.is_dir() else path)
+def seal_for(path: Path, settings: Settings) -> Path | None:
+    """The seal file that holds for a file or folder: the settings', else the nearest above it."""
+    return settings.seal or nearest(SEAL, path / SEAL if path.is_dir() else path)
 
 
 # ---- the other files of an audit
@@ -153,7 +153,7 @@ def _common_folders(one: PurePath, other: PurePath) -> int:
 
 def looked_at(path: Path, settings: Settings, beside: Beside | None) -> list[Path]:
     """The files and folders besides its own that the judgement of a file depends on."""
-    seal = settings.seal or seal_for(path)
+    seal = seal_for(path, settings)
     parents = beside.parents(path) if beside else []
     geometries = [probe.geometry for probe in settings.probes]
     return [place for place in (seal, settings.reference, *geometries, *parents) if place]
@@ -165,7 +165,7 @@ def furnish(case: Case, settings: Settings, beside: Beside | None) -> None:
     Raises SettingsError for a seal file that cannot be used, and for a reference that is no folder.
     """
     path = Path(case.document.path)
-    if (seal := settings.seal or seal_for(path)) is not None:
+    if (seal := seal_for(path, settings)) is not None:
         from overlapse.lint.sealing import sealed_sets
 
         case.seals = sealed_sets(case.document, path, seal)

@@ -218,7 +218,7 @@ def common_seal(paths: Iterable[Path]) -> Path | None:
     A seal file that the settings name comes before the nearest one above.  Raises SealError where
     several hold.
     """
-    found = {settings_for(path).seal or seal_for(path) for path in paths}
+    found = {seal_for(path, settings_for(path)) for path in paths}
     if len(found) > 1:
         told = ", ".join(sorted(str(path) if path else "none" for path in found))
         raise SealError(f"several seal files hold for these paths ({told}); name one with --seal")

@@ -1,8 +1,7 @@
 """The periodic table as a grid of 18 columns: where each element stands."""
 
-from overlapse.grammar.elements import period_of
+from overlapse.grammar.elements import PERIODS, period_of
 
-_LAST = (0, 2, 10, 18, 36, 54, 86, 118)  # atomic number that ends each period
 _APART = ((57, 71, 9), (89, 103, 10))  # lanthanum and actinium series, in rows of their own
 COLUMNS = 18
 
@@ -17,6 +16,7 @@ def cell_of(z: int) -> tuple[int, int]:
         if first <= z <= last:
             return row, z - first + 4
     period = period_of(z)
-    place = z - _LAST[period - 1]
+    begin, end = PERIODS[period - 1]
+    place = z - begin + 1
     left = 1 if period == 1 else 2  # elements before the gap
-    return period, place if place <= left else COLUMNS - (_LAST[period] - z)
+    return period, place if place <= left else COLUMNS - (end - z)

@@ -46,7 +46,7 @@ def _respelled(value: float, draw: st.DrawFn) -> str:
         return f"{mantissa}{'' if '.' in mantissa else '.'}000D{power or '+00'}"
     if kind == 2:
         return f"{value:.17e}".upper()
-    return ("+" if value >= 0 else "") + word.upper()
+    return ("" if word.startswith("-") else "+") + word.upper()
 
 
 @st.composite
