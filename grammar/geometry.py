@@ -14,7 +14,6 @@ from overlapse.grammar.model import Fault, Floats, read_only
 from overlapse.grammar.source import Source
 
 Unit = Literal["angstrom", "bohr"]
-UNITS: tuple[Unit, ...] = ("angstrom", "bohr")
 # CODATA recommended value of 2022, in angstrom: E. Tiesinga et al., physics.nist.gov/constants.
 BOHR = 0.529177210544
 

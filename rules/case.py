@@ -13,7 +13,6 @@ from overlapse.rules.labels.claims import Claim, claims_of
 from overlapse.rules.measured.probe import Probe
 from overlapse.rules.registry import Rule
 from overlapse.rules.rowwise.norms import Norm, norms_of
-from overlapse.rules.rowwise.rows import Row, rows_of
 
 if TYPE_CHECKING:
     from overlapse.rules.compare.beside import Kin, SealedSet
@@ -70,11 +69,6 @@ class Case:
     def claims(self) -> dict[int, list[Claim]]:
         """What the label of each set (by its index) is claimed to be, and where."""
         return claims_of(self.document, self.given_label)
-
-    @cached_property
-    def rows(self) -> list[list[Row]]:
-        """For each set, its functions compared along the rows of the periodic table."""
-        return [rows_of(members) for members in self.sets]
 
     @cached_property
     def norms(self) -> list[list[Norm]]:

@@ -84,7 +84,8 @@ def norm(case: Case, *, share: float = 0.9, floor: float = 3e-6) -> Iterator[Fin
         judged, sound, evident = norm_evidence(case, share, floor)[index]
         if evident:
             # The narrow rows first: where both hold a contraction they are the smoother ones.
-            yield from _odd_ones(case, evident, sound, [*case.rows[index], *rows_of(members, True)])
+            rows = [*rows_of(members), *rows_of(members, True)]
+            yield from _odd_ones(case, evident, sound, rows)
         plain = [n for n in judged if n.deviation >= NORMALISED and n not in evident]
         if plain and len(sound) < share * len(judged):
             yield _throughout(case, plain, len(judged))

@@ -8,6 +8,7 @@ from typing import NamedTuple
 
 import numpy as np
 
+from overlapse.grammar.elements import PERIODS
 from overlapse.grammar.model import BasisSet, Block, Floats, Function
 from overlapse.rules.physics.trends import FEWEST, Deviations, leave_one_out
 
@@ -30,20 +31,14 @@ class Member(NamedTuple):
 class Row(NamedTuple):
     """Corresponding functions of several elements, by rising atomic number.
 
-    exponents: deviations of ln(exponent), shape (elements, primitives).  spacings: the same for
-    ln(exponent) less the mean of its two neighbours in the shell, in which the scaling with the
-    nuclear charge cancels; NaN at the ends of a shell.  coefficients: deviations of coefficients.
+    exponents: deviations of ln(exponent), shape (elements, primitives).  coefficients: those of the
+    coefficients.
     """
 
     numbers: tuple[int, ...]
     members: tuple[Member, ...]
     exponents: Deviations
-    spacings: Floats
     coefficients: Deviations
-
-
-# Whole periods, to find the number that departs most where something is known to be wrong.
-_PERIODS = ((1, 2), (3, 10), (11, 18), (19, 36), (37, 54), (55, 86), (87, 118))
 
 
 def stretch(z: int, stretches: tuple[tuple[int, int], ...]) -> int:
@@ -57,7 +52,7 @@ def rows_of(members: BasisSet, whole_periods: bool = False) -> list[Row]:
     ``whole_periods`` joins the s and d blocks to the p block; their numbers run on less smoothly,
     so such a row is good for comparing the numbers of one shell, not for a suspicion.
     """
-    stretches = _PERIODS if whole_periods else STRETCHES
+    stretches = PERIODS if whole_periods else STRETCHES
     groups: dict[tuple[int, int, tuple[int, ...], int], dict[int, Member]] = {}
     for at, block in enumerate(members.blocks):
         part = stretch(block.atomic_number, stretches)
@@ -92,18 +87,8 @@ def _row(group: dict[int, Member]) -> Row:
     numbers = tuple(sorted(group))
     members = tuple(group[z] for z in numbers)
     logs = np.log([member.function.exponents for member in members])
-    spacing = np.full(logs.shape, np.nan)
-    if logs.shape[1] > 2:
-        inner = logs[:, 1:-1] - 0.5 * (logs[:, :-2] + logs[:, 2:])
-        spacing[:, 1:-1] = leave_one_out(numbers, inner).departure
     coefficients = np.array([_signed(member.function) for member in members])
-    return Row(
-        numbers,
-        members,
-        leave_one_out(numbers, logs),
-        spacing,
-        leave_one_out(numbers, coefficients),
-    )
+    return Row(numbers, members, leave_one_out(numbers, logs), leave_one_out(numbers, coefficients))
 
 
 def _signed(function: Function) -> Floats:
