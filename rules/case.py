@@ -89,6 +89,11 @@ class Case:
             if (number := number_of(fault.element)) is not None
         }
 
+    def is_fitting(self, index: int) -> bool:
+        """Whether a set (by its index) is said to be a fitting set, by its layout or a label."""
+        claimed = any(c.designation and c.designation.fitting for c in self.claims[index])
+        return claimed or self.sets[index].role == "fitting"
+
     def is_faulty(self, block: Block, shell: int) -> bool:
         """Whether the reader found fault with a shell, so that its numbers are in doubt."""
         return (block.atomic_number, block.names[shell]) in self._faulty

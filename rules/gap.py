@@ -90,7 +90,7 @@ def gap(case: Case, *, margin: float = 1.2, fewest: int = 12) -> Iterator[Findin
         ****
     """
     for odd in spacing_oddities(case, margin, fewest):
-        yield _out_of_order(case, odd) if odd.is_order else _wide(case, odd, margin)
+        yield _out_of_order(case, odd) if odd.is_order else _wide(case, odd)
 
 
 class Odd(NamedTuple):
@@ -98,6 +98,7 @@ class Odd(NamedTuple):
 
     place, gap: indices into the ladder.  others: ladders that show what is usual.  is_loud:
     whether it is more than a note: lone functions stand in any order and far apart in good faith.
+    bound: the ratio of exponents that an odd gap goes beyond.
     """
 
     ladder: "_Ladder"
@@ -106,6 +107,7 @@ class Odd(NamedTuple):
     is_order: bool
     others: int
     is_loud: bool
+    bound: float | None = None
 
     @property
     def shell(self) -> tuple[int, int]:
@@ -220,10 +222,12 @@ def _gaps(ladders: list[_Ladder], margin: float) -> Iterator[Odd]:
         high = np.where(gaps == ranked[-1], ranked[-2], ranked[-1])
         outside = np.maximum(low - gaps, gaps - high)
         worst = outside.argmax(axis=1)
-        for ladder, far, at in zip(group, outside, worst.tolist(), strict=True):
+        for row, (ladder, far, at) in enumerate(zip(group, outside, worst.tolist(), strict=True)):
             if far[at] > margin:
-                place = _at_fault(far, at, margin)
-                yield Odd(ladder, place, at, False, len(ranked) - 1, ladder.kind < 2)
+                place, is_wide = _at_fault(far, at, margin), gaps[row, at] > high[row, at]
+                bound = np.exp(high[row, at] + margin if is_wide else low[row, at] - margin)
+                others, loud = len(ranked) - 1, ladder.kind < 2
+                yield Odd(ladder, place, at, False, others, loud, float(bound))
 
 
 def _at_fault(far: Floats, at: int, margin: float) -> int:
@@ -235,7 +239,7 @@ def _at_fault(far: Floats, at: int, margin: float) -> int:
     return at if at == 0 else at + 1
 
 
-def _wide(case: Case, odd: Odd, margin: float) -> Finding:
+def _wide(case: Case, odd: Odd) -> Finding:
     ladder = odd.ladder
     index, row = ladder.places[odd.place]
     first, second = np.exp(ladder.logs[odd.gap : odd.gap + 2])
@@ -247,7 +251,7 @@ def _wide(case: Case, odd: Odd, margin: float) -> Finding:
         f"{first / second:.3g}, far outside the {odd.others} others at such a place",
         row=row,
         measured=float(first / second),
-        limit=margin,
+        limit=odd.bound,
         witnesses=("spacing of the exponents",),
         remedy="compare with the original publication: the point or digits may have slipped",
     )

@@ -163,7 +163,6 @@ def digits(case: Case, *, lost: int = 4, fewest: int = 4) -> Iterator[Finding]:
     for block in case.document.blocks:
         for index, shell in enumerate(block.shells):
             # Matrices hold lone functions as well, which are rounded in good faith.
-            # Matrices hold lone functions as well, which are rounded in good faith.
             if len(shell.exponents) < fewest or shell.columns_per_l > 1:
                 continue
             counts = [significant(repr(value)) for value in shell.exponents.tolist()]
@@ -176,8 +175,8 @@ def digits(case: Case, *, lost: int = 4, fewest: int = 4) -> Iterator[Finding]:
                     index,
                     "note",
                     f"suspect: exponent {shell.spelling(row)} has {counts[row]} significant "
-                    f"digits, the others of its contraction {min(others)} or more, "
-                    f"usually {usual}",
+                    f"digit{'s' * (counts[row] != 1)}, the others of its contraction "
+                    f"{min(others)} or more, usually {usual}",
                     row=row,
                     measured=counts[row],
                     limit=min(others),

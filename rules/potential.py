@@ -258,8 +258,7 @@ def missing(case: Case) -> Iterator[Finding]:
         2 10.0 20.0
     """
     for index, members in enumerate(case.sets):
-        fitting = any(c.designation and c.designation.fitting for c in case.claims[index])
-        if members.role != "fitting" and not fitting:
+        if not case.is_fitting(index):
             yield from _without(case, index, members)
             yield from _beside(case, members)
 

@@ -237,6 +237,7 @@ def _finding(case: Case, odd: Oddity, what: str, is_far: bool, limit: float) -> 
     if slip is not None:
         message += f"; {slip.told}: {slip.word} would fit"
     table = shell.exponents if odd.column is None else shell.coefficients[:, odd.column]
+    value = float(table[odd.row])
     return case.at_shell(
         odd.block,
         odd.shell,
@@ -244,10 +245,10 @@ def _finding(case: Case, odd: Oddity, what: str, is_far: bool, limit: float) -> 
         message,
         row=odd.row,
         column=odd.column,
-        measured=float(table[odd.row]),
-        limit=limit,
+        measured=value,
+        limit=odd.high if value > odd.high else odd.low,
         expected=slip.value if slip is not None else float(f"{odd.expected:.4g}"),
-        witnesses=(f"{odd.surprise:.1f} deviates off the row, by {odd.departure:+.3g}",),
+        witnesses=(f"{odd.surprise:.1f} standard deviations off the row; {limit:g} are noted",),
         remedy="compare with the original publication: digits, sign or point may have slipped",
     )
 

@@ -157,7 +157,7 @@ def ensembles(case: Case) -> list[Ensemble]:
         found = [
             _ensemble(case, members, index)
             for index, members in enumerate(case.sets)
-            if is_orbital(members)
+            if is_orbital(members) and not case.is_fitting(index)
         ]
         return [ensemble for ensemble in found if ensemble.atoms]
 

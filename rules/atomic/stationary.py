@@ -183,8 +183,10 @@ def _along_row(own: Steps, z: Floats, table: Floats) -> tuple[Floats, Floats]:
     Source: P. K. Sen, J. Am. Stat. Assoc. 63, 1379 (1968).
     """
     first, second = np.triu_indices(len(z), 1)
+    apart = z[first] != z[second]  # an element may be given twice
+    first, second = first[apart], second[apart]
     slopes = (table[second] - table[first]) / (z[second] - z[first])[:, None]
-    slope = np.median(slopes, axis=0)
+    slope = np.median(slopes, axis=0) if len(slopes) else np.zeros(table.shape[1])
     level = np.median(table - slope * z[:, None], axis=0)
     here = own.atom.block.atomic_number
     away = np.sort(np.abs(table - slope * z[:, None] - level), axis=0)
