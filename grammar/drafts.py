@@ -85,6 +85,13 @@ class BlockDraft:
         return f"{letters}-{self._names[letters]}"
 
 
+def leading(node: Node) -> Token:
+    """The token that begins a node, for productions that always begin with one."""
+    first = node.children[0]
+    assert isinstance(first, Token)
+    return first
+
+
 def index_of(token: Token) -> int:
     """0-based line of a token."""
     return token.line or 0

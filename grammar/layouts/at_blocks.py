@@ -7,7 +7,7 @@ from difflib import SequenceMatcher
 from lark import Token, Tree
 
 from overlapse.grammar.building import Build
-from overlapse.grammar.drafts import BlockDraft, Node, Run, index_of, integer
+from overlapse.grammar.drafts import BlockDraft, Node, Run, index_of, integer, leading
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Document, Shell, letter_of
 from overlapse.grammar.pieces.slips import say_remark, say_unheaded
@@ -159,8 +159,7 @@ class _Reader:
         )
 
     def shells(self, block: BlockDraft, node: Node) -> None:
-        token = node.children[0]
-        assert isinstance(token, Token)
+        token = leading(node)
         build = self.build
         for heading, first, last in build.shells_in(token):
             words = build.bodies[heading].split()
@@ -169,8 +168,7 @@ class _Reader:
                 self.shell(block, heading, build.rows_between(first, last))
 
     def bare(self, block: BlockDraft, node: Node) -> None:
-        heading = node.children[0]
-        assert isinstance(heading, Token)
+        heading = leading(node)
         self.shell(block, index_of(heading), self.build.rows(None))
 
     def shell(self, block: BlockDraft, heading: int, run: Run) -> None:
@@ -222,20 +220,17 @@ class _Reader:
         )
 
     def unheaded(self, block: BlockDraft, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         block.complete = False
         say_unheaded(self.build, first, block.symbol, "S 3  1", "a letter and the number of rows")
 
     def remark(self, block: BlockDraft, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         block.complete = False
         say_remark(self.build, first, block.symbol, "S 3  1", "@END", "!")
 
     def stray(self, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         # Among our blocks a shell with rows has lost its element; elsewhere it is not ours.
         ours = first.type == "SHELLS" and (self.build.blocks or self.names)
         if self.homeless or not ours:

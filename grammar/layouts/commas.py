@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from lark import Token, Tree
 
 from overlapse.grammar.building import Build
-from overlapse.grammar.drafts import BlockDraft, Node, index_of, shorten
+from overlapse.grammar.drafts import BlockDraft, Node, index_of, leading, shorten
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, letter_of
 from overlapse.grammar.pieces.contractions import contractions, has_fields
@@ -122,8 +122,7 @@ class _Reader:
             )
 
     def stray(self, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         what = "contraction" if first.type == "COLUMN" else "numbers"
         wanted = "s, C, 4.0, 0.5"
         if self.last is not None:
@@ -139,8 +138,7 @@ class _Reader:
         )
 
     def remark(self, node: Node) -> None:
-        line = node.children[0]
-        assert isinstance(line, Token)
+        line = leading(node)
         if self.last is not None:
             self.last.complete = False
         fault_field(

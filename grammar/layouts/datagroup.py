@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from lark import Token, Tree
 
 from overlapse.grammar.building import Build
-from overlapse.grammar.drafts import BlockDraft, Node, index_of
+from overlapse.grammar.drafts import BlockDraft, Node, index_of, leading
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Shell, letter_of
 from overlapse.grammar.numbers import looks_numeric
@@ -164,21 +164,18 @@ class _Reader:
     # ---- what stands below an atom
 
     def shells(self, block: BlockDraft, node: Node) -> None:
-        token = node.children[0]
-        assert isinstance(token, Token)
+        token = leading(node)
         for index, first, last in self.build.shells_in(token):
             self.numbered.shell(block, index, first, last)
 
     def bare(self, block: BlockDraft, node: Node) -> None:
-        heading = node.children[0]
-        assert isinstance(heading, Token)
+        heading = leading(node)
         index = index_of(heading)
         self.numbered.shell(block, index, index + 1, index + 1)
 
     def card(self, block: BlockDraft, node: Node) -> None:
         """A set that is built into the program: said once for each element."""
-        card = node.children[0]
-        assert isinstance(card, Token)
+        card = leading(node)
         block.complete = False
         block.end = max(block.end, index_of(card))
         if (block.symbol, str(card)) not in self.named:
@@ -188,8 +185,7 @@ class _Reader:
             )
 
     def misnamed(self, block: BlockDraft, node: Node) -> None:
-        card = node.children[0]
-        assert isinstance(card, Token)
+        card = leading(node)
         block.complete = False
         self.build.fault_word(
             "form.letter",
@@ -210,8 +206,7 @@ class _Reader:
         self.misfit(block, node, f"{str(node.children[0])!r} is no shell heading, card or row")
 
     def misfit(self, block: BlockDraft, node: Node, message: str) -> None:
-        line = node.children[0]
-        assert isinstance(line, Token)
+        line = leading(node)
         block.complete = False
         self.build.fault_line(
             "form.syntax",

@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from lark import Token, Tree
 
 from overlapse.grammar.building import Build
-from overlapse.grammar.drafts import BlockDraft, Node, index_of, integer
+from overlapse.grammar.drafts import BlockDraft, Node, index_of, integer, leading
 from overlapse.grammar.elements import replaced_by, subshells, symbol_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, letter_of
@@ -116,8 +116,7 @@ class _Reader:
             )
 
     def stray(self, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         shells = self.build.shells_in(first) if first.type == "SHELLS" else []
         for index in [heading for heading, _, _ in shells] or [index_of(first)]:
             self.build.fault_line(
@@ -241,8 +240,7 @@ class _Reader:
 
     def misfit(self, block: BlockDraft, node: Node) -> None:
         """Rows or text where a shell heading belongs."""
-        line = node.children[0]
-        assert isinstance(line, Token)
+        line = leading(node)
         block.complete = False
         what = f"{str(line)!r} is" if node.data == "remark" else "rows without a heading:"
         self.build.fault_line(

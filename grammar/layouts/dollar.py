@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from lark import Token, Tree
 
 from overlapse.grammar.building import Build
-from overlapse.grammar.drafts import BlockDraft, Node, Role, Run, index_of
+from overlapse.grammar.drafts import BlockDraft, Node, Role, Run, index_of, leading
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Document, Fault, Shell, letter_of
@@ -181,8 +181,7 @@ class _Reader:
         return next((block for block in self.build.blocks if block.number == number), None)
 
     def shells(self, block: BlockDraft, node: Node) -> None:
-        token = node.children[0]
-        assert isinstance(token, Token)
+        token = leading(node)
         build = self.build
         for heading, first, last in build.shells_in(token):
             count, letters = build.bodies[heading].split()
@@ -190,8 +189,7 @@ class _Reader:
                 self.shell(block, heading, build.rows_between(first, last))
 
     def bare(self, block: BlockDraft, node: Node) -> None:
-        heading = node.children[0]
-        assert isinstance(heading, Token)
+        heading = leading(node)
         self.shell(block, index_of(heading), self.build.rows(None))
 
     def shell(self, block: BlockDraft, heading: int, run: Run) -> None:
@@ -205,8 +203,7 @@ class _Reader:
         self.loose(node, block.symbol)
 
     def loose(self, node: Node, element: str | None = None) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         wanted = (
             "a shell heading such as `3  s`" if element else "an element's heading between two `*`"
         )

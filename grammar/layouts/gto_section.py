@@ -7,7 +7,7 @@ from lark import Token, Tree
 
 from overlapse.grammar.building import Build
 from overlapse.grammar.convention import Count, count_normalised
-from overlapse.grammar.drafts import BlockDraft, Node, index_of, integer
+from overlapse.grammar.drafts import BlockDraft, Node, index_of, integer, leading
 from overlapse.grammar.layout import Evidence, Layout
 from overlapse.grammar.model import Document, Fault, letter_of
 from overlapse.grammar.pieces.atomlists import AtomList
@@ -220,32 +220,27 @@ class _Reader:
         return block
 
     def shells(self, block: BlockDraft, node: Node) -> None:
-        token = node.children[0]
-        assert isinstance(token, Token)
+        token = leading(node)
         self.build.scaled_shells(block, token)
 
     def bare(self, block: BlockDraft, node: Node) -> None:
-        heading = node.children[0]
-        assert isinstance(heading, Token)
+        heading = leading(node)
         words = heading.split()
         self.build.shell(
             block, words[0], index_of(heading), self.build.rows(None), announced=words[1]
         )
 
     def unheaded(self, block: BlockDraft, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         what = f"{str(first)!r} stands" if first.type == "TEXT" else "rows of numbers stand"
         self.misplaced(first, f"{what} where a shell heading belongs", block)
 
     def remark(self, block: BlockDraft, node: Node) -> None:
-        line = node.children[0]
-        assert isinstance(line, Token)
+        line = leading(node)
         self.misplaced(line, f"{str(line)!r} is no shell heading and no row of numbers", block)
 
     def loose(self, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         self.build.fault_line(
             "form.syntax",
             index_of(first),

@@ -7,7 +7,16 @@ from typing import Literal
 from lark import Token, Tree
 
 from overlapse.grammar.building import Build
-from overlapse.grammar.drafts import BlockDraft, FunctionType, Node, Role, Run, index_of, integer
+from overlapse.grammar.drafts import (
+    BlockDraft,
+    FunctionType,
+    Node,
+    Role,
+    Run,
+    index_of,
+    integer,
+    leading,
+)
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Channel, Document, Potential, Shell, letter_of
@@ -188,8 +197,7 @@ class _Reader:
         return self.open
 
     def shells(self, node: Node) -> None:
-        token = node.children[0]
-        assert isinstance(token, Token)
+        token = leading(node)
         build = self.build
         for heading, first, last in build.shells_in(token):
             symbol, letters = build.bodies[heading].split()
@@ -199,8 +207,7 @@ class _Reader:
                 build.shell(block, letters, heading, run, letters_word=1, general=True)
 
     def bare(self, node: Node) -> None:
-        heading = node.children[0]
-        assert isinstance(heading, Token)
+        heading = leading(node)
         self.build.shell(
             self.block(heading.split()[0], index_of(heading)),
             heading.split()[1],
@@ -210,8 +217,7 @@ class _Reader:
         )
 
     def unheaded(self, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         self.spoil()
         say_unheaded(
             self.build,
@@ -222,14 +228,12 @@ class _Reader:
         )
 
     def remark(self, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         self.spoil()
         say_remark(self.build, first, self.open.symbol if self.open else None, "C    S", "end", "#")
 
     def misplaced(self, node: Node) -> None:
-        line = node.children[0]
-        assert isinstance(line, Token)
+        line = leading(node)
         self.build.fault_line(
             "form.syntax",
             index_of(line),
@@ -281,8 +285,7 @@ class _Reader:
         return potentials[key]
 
     def electrons(self, node: Node, potentials: _Potentials) -> None:
-        line = node.children[0]
-        assert isinstance(line, Token)
+        line = leading(node)
         symbol, _, count = line.split()
         draft = self.draft(symbol, index_of(line), potentials)
         draft.electrons = integer(count)
@@ -300,8 +303,7 @@ class _Reader:
 
     def channels(self, node: Node, potentials: _Potentials) -> None:
         """Headings with their terms: `Hg ul` for the local part, `Hg S` for a projected one."""
-        line = node.children[0]
-        assert isinstance(line, Token)
+        line = leading(node)
         if node.data == "channels":
             for heading, first, last in self.build.shells_in(line):
                 self.channel(heading, self.build.rows_between(first, last), potentials)
@@ -346,8 +348,7 @@ class _Reader:
         return self.build.open_block(symbol, index, section="ecp")
 
     def potential_line(self, node: Node) -> None:
-        line = node.children[0]
-        assert isinstance(line, Token)
+        line = leading(node)
         self.build.fault_line(
             "form.syntax",
             index_of(line),

@@ -7,7 +7,7 @@ from itertools import pairwise
 from lark import Token, Tree
 
 from overlapse.grammar.building import Build
-from overlapse.grammar.drafts import BlockDraft, Node, Run, index_of, integer, shorten
+from overlapse.grammar.drafts import BlockDraft, Node, Run, index_of, integer, leading, shorten
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Remark
@@ -196,8 +196,7 @@ class _Reader:
 
     def amiss(self, block: BlockDraft, node: Node, message: str) -> None:
         block.complete = False
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         self.build.fault_line(
             "form.syntax",
             index_of(first),
@@ -248,8 +247,7 @@ class _Reader:
         for at, piece in enumerate(pieces):
             if 0 < wanted <= found:
                 break  # what follows belongs to somebody else's input
-            token = piece.children[0]
-            assert isinstance(token, Token)
+            token = leading(piece)
             if piece.data == "lists":
                 continue
             if piece.data == "numbers":

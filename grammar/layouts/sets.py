@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from lark import Token, Tree
 
 from overlapse.grammar.building import Build
-from overlapse.grammar.drafts import BlockDraft, Node, Run, index_of, integer, shorten
+from overlapse.grammar.drafts import BlockDraft, Node, Run, index_of, integer, leading, shorten
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Document, Fault, letter_of
@@ -186,8 +186,7 @@ class _Reader:
         return len(sets)
 
     def bare(self, block: BlockDraft, node: Node) -> None:
-        heading = node.children[0]
-        assert isinstance(heading, Token)
+        heading = leading(node)
         self.set(block, index_of(heading), self.build.rows(None))
 
     def set(self, block: BlockDraft, index: int, run: Run) -> None:
@@ -272,8 +271,7 @@ class _Reader:
 
     def amiss(self, block: BlockDraft, node: Node, what: str, expected: str) -> None:
         block.complete = False
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         self.build.fault_line(
             "form.syntax",
             index_of(first),
@@ -284,8 +282,7 @@ class _Reader:
         )
 
     def unnamed(self, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         self.nameless(index_of(first))
 
     def nameless(self, index: int) -> None:
@@ -299,8 +296,7 @@ class _Reader:
 
     def stray(self, node: Node) -> None:
         """Sets before any element; mere rows may belong to somebody else's input."""
-        token = node.children[0]
-        assert isinstance(token, Token)
+        token = leading(node)
         if token.type == "SHELL":
             self.nameless(index_of(token))
         elif token.type == "SHELLS":

@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from lark import Token, Tree
 
 from overlapse.grammar.building import Build
-from overlapse.grammar.drafts import BlockDraft, FunctionType, Node, index_of, integer
+from overlapse.grammar.drafts import BlockDraft, FunctionType, Node, index_of, integer, leading
 from overlapse.grammar.elements import number_of
 from overlapse.grammar.layout import Evidence, Layout, Written
 from overlapse.grammar.model import Block, Channel, Document, Potential, Shell, letter_of
@@ -157,21 +157,18 @@ class _Reader:
         )
 
     def shells(self, block: BlockDraft, node: Node) -> None:
-        token = node.children[0]
-        assert isinstance(token, Token)
+        token = leading(node)
         self.build.scaled_shells(block, token)
 
     def bare(self, block: BlockDraft, node: Node) -> None:
-        heading = node.children[0]
-        assert isinstance(heading, Token)
+        heading = leading(node)
         words = heading.split()
         self.build.shell(
             block, words[0], index_of(heading), self.build.rows(None), announced=words[1]
         )
 
     def unheaded(self, block: BlockDraft, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         block.complete = False
         say_unheaded(
             self.build,
@@ -182,8 +179,7 @@ class _Reader:
         )
 
     def remark(self, block: BlockDraft, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         block.complete = False
         say_remark(self.build, first, block.symbol, "S   3   1.00", "****", "!")
 
@@ -231,8 +227,7 @@ class _Reader:
         )
 
     def untold(self, block: BlockDraft, node: Node) -> None:
-        title = node.children[0]
-        assert isinstance(title, Token)
+        title = leading(node)
         self.build.fault_line(
             "form.count",
             index_of(title),
@@ -272,8 +267,7 @@ class _Reader:
         return self.build.channel(block, l, local, index_of(title), run, title=str(title))
 
     def stray(self, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         self.build.fault_line(
             "form.syntax",
             index_of(first),
@@ -292,8 +286,7 @@ class _Reader:
         if not open_ended or len(open_ended) > max(1, len(orbital) // 3):
             return
         for piece in open_ended:
-            heading = piece.children[0]
-            assert isinstance(heading, Token)
+            heading = leading(piece)
             last = piece is elements[-1]
             self.build.fault_line(
                 "form.syntax",

@@ -9,7 +9,7 @@ from collections.abc import Sequence
 from lark import Token, Tree
 
 from overlapse.grammar.building import Build
-from overlapse.grammar.drafts import BlockDraft, Node, Run, index_of
+from overlapse.grammar.drafts import BlockDraft, Node, Run, index_of, leading
 from overlapse.grammar.model import Channel, Potential, letter_of
 from overlapse.grammar.pieces.headings import count_of, spanning
 from overlapse.grammar.pieces.tables import Tables
@@ -81,8 +81,7 @@ def channels_of(
 
 
 def _first(node: Node) -> Token:
-    first = node.children[0]
-    assert isinstance(first, Token)
+    first = leading(node)
     return first
 
 

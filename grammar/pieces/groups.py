@@ -3,7 +3,7 @@
 from lark import Token
 
 from overlapse.grammar.building import Build
-from overlapse.grammar.drafts import Node, index_of
+from overlapse.grammar.drafts import Node, index_of, leading
 from overlapse.grammar.model import Remark
 from overlapse.grammar.pieces.atoms import is_atom
 
@@ -69,8 +69,7 @@ def say_built_in(build: Build, line: Token, symbol: str, what: str) -> None:
 
 def say_missing(build: Build, node: Node, wanted: str) -> None:
     """Lines before the first heading; what follows them up to it belongs to the same."""
-    line = node.children[0]
-    assert isinstance(line, Token)
+    line = leading(node)
     build.fault_line(
         "form.syntax",
         index_of(line),

@@ -11,7 +11,7 @@ from dataclasses import dataclass, field
 
 from lark import Token, Tree
 
-from overlapse.grammar.drafts import Node, shorten
+from overlapse.grammar.drafts import Node, leading, shorten
 from overlapse.grammar.model import Span
 from overlapse.grammar.numbers import read_number
 from overlapse.grammar.pieces.jsontokens import (
@@ -227,6 +227,5 @@ def pairs_in(node: Node) -> Iterator[tuple[Token, Value | None]]:
     """Keys and values of a node, without a word on what is wrong."""
     for child in node.children:
         if isinstance(child, Tree) and child.data == "pair":
-            key = child.children[0]
-            assert isinstance(key, Token)
+            key = leading(child)
             yield key, child.children[1] if len(child.children) > 1 else None

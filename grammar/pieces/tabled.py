@@ -11,7 +11,7 @@ from typing import ClassVar
 from lark import Token, Tree
 
 from overlapse.grammar.building import Build
-from overlapse.grammar.drafts import BlockDraft, Node, index_of
+from overlapse.grammar.drafts import BlockDraft, Node, index_of, leading
 from overlapse.grammar.model import Remark, Severity, letter_of
 from overlapse.grammar.numbers import looks_numeric
 from overlapse.grammar.pieces.tables import Tables
@@ -107,13 +107,11 @@ class TabledReader:
         self.next_table()
 
     def headless(self, block: BlockDraft, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         self.without_heading(block, first, "rows of numbers without a heading above them")
 
     def unheaded(self, block: BlockDraft, node: Node) -> None:
-        first = node.children[0]
-        assert isinstance(first, Token)
+        first = leading(node)
         what = (
             "rows of numbers without a heading above them"
             if first.type == "ROWS"

@@ -11,7 +11,7 @@ from itertools import zip_longest
 from lark import Token, Tree
 
 from overlapse.grammar.building import Build
-from overlapse.grammar.drafts import BlockDraft, Node, index_of, integer
+from overlapse.grammar.drafts import BlockDraft, Node, index_of, integer, leading
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.model import Channel, Potential, letter_of
 from overlapse.grammar.pieces.channels import ladder, rows_of
@@ -44,8 +44,7 @@ class Cores:
 
     def read(self, node: Node, entry: int) -> None:
         """One potential of the group; ``entry`` is its place, which is that of its atom."""
-        heading = node.children[0]
-        assert isinstance(heading, Token)
+        heading = leading(node)
         words = heading.split()
         letters = _LETTERS.match(words[0])
         z = number_of(letters[0]) if letters else None
@@ -190,8 +189,7 @@ def _rows(node: Node) -> Token | None:
 
 def _announced(node: Node) -> int:
     """The count before a channel's title; -1 where the title is lost."""
-    first = node.children[0]
-    assert isinstance(first, Token)
+    first = leading(node)
     return -1 if first.type == "ROWS" else integer(first.split()[0]) or 0
 
 
