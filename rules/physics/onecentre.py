@@ -77,18 +77,3 @@ def contracted_overlap(functions: list[Function]) -> Floats:
 def eigenvalues(overlap: Floats) -> Floats:
     """Eigenvalues of a symmetric matrix, rising, shape (n,)."""
     return np.asarray(np.linalg.eigvalsh(overlap), dtype=np.float64)
-
-
-def two_centre_s(
-    left: tuple[Floats, Floats], right: tuple[Floats, Floats], distance: float
-) -> float:
-    """Overlap of two contracted s functions, each (exponents, coefficients), ``distance`` in bohr.
-
-    For normalised primitives (4 a b / (a + b)**2)**(3/4) exp(-a b R**2 / (a + b)).
-    Source: A. Szabo, N. S. Ostlund, Modern Quantum Chemistry, appendix A.
-    """
-    (a, c), (b, d) = left, right
-    total = a[:, None] + b[None, :]
-    product = a[:, None] * b[None, :]
-    primitive = (4.0 * product / total**2) ** 0.75 * np.exp(-product / total * distance**2)
-    return float(c @ primitive @ d)

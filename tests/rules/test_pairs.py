@@ -11,7 +11,6 @@ from overlapse.grammar.reading import read_text
 from overlapse.lint.engine import audit_text
 from overlapse.lint.settings import Settings
 from overlapse.rules.physics.integrals import overlap
-from overlapse.rules.physics.onecentre import two_centre_s
 from overlapse.rules.physics.pairs import alike_bounds, cube_bounds, lone, mixed_bounds
 from overlapse.rules.physics.placed import Placed
 from overlapse.rules.physics.radii import covalent_radius
@@ -54,10 +53,11 @@ def _one(value: float) -> Floats:
 
 
 def test_two_s_functions() -> None:
-    # A. Szabo, N. S. Ostlund, Modern Quantum Chemistry, appendix A, as `two_centre_s` has it.
-    one = np.ones(1)
-    expected = two_centre_s((_one(0.7), one), (_one(0.2), one), 1.9)
-    assert axial_overlap(0, _one(0.7), 0, _one(0.2), _one(1.9))[0] == pytest.approx(expected)
+    # (4 a b / (a + b)**2)**(3/4) exp(-a b R**2 / (a + b)): A. Szabo, N. S. Ostlund, Modern Quantum
+    # Chemistry, appendix A.
+    a, b, distance = 0.7, 0.2, 1.9
+    expected = (4.0 * a * b / (a + b) ** 2) ** 0.75 * np.exp(-a * b / (a + b) * distance**2)
+    assert axial_overlap(0, _one(a), 0, _one(b), _one(distance))[0] == pytest.approx(expected)
 
 
 CARBON = [(0, 0.52), (0, 0.16), (0, 0.047), (1, 0.55), (1, 0.15), (1, 0.04), (2, 0.55), (2, 0.15)]
