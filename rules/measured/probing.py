@@ -15,6 +15,7 @@ from overlapse.rules.physics.placed import Functions, Ints, Placed, lay_out, rad
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
 from overlapse.rules.physics.spectrum import LADDER, Spectrum, spectrum
 from overlapse.rules.physics.superposed import affordable
+from overlapse.rules.physics.worth import Worth, worth_of
 
 
 class Wanted(NamedTuple):
@@ -27,7 +28,7 @@ class Wanted(NamedTuple):
 
     threshold: float = 1e-6
     tolerance: float = 1e-7
-    per_atom: bool = False
+    per_atom: bool = True
     mesh: tuple[int, int, int] = (2, 2, 2)
     values: bool = False
     charge: int = 0
@@ -54,7 +55,7 @@ def probe(sites: Sequence[Site], wanted: Wanted, label: Label = Label()) -> Prob
     plain = overlap(placed)
     matrix = conventional(plain, placed)
     found = steps(matrix, wanted)
-    pruned = pruned_set(matrix, lay_out(placed), sites, wanted, found)
+    pruned = pruned_set(matrix, plain, sites, wanted, found)
     doubtful = found.smallest < LOOKED_AT and affordable(placed, len(matrix))
     energies = kinetic(placed) if doubtful else None
     turned = turned_spherical(sites)
@@ -151,11 +152,16 @@ def _outlook(
         matrix,
         energies,
         lay_out(placed),
-        empty=[k for k, site in enumerate(sites) if site.atom.ghost],
+        empty=_empty(sites),
         charge=wanted.charge,
         unpaired=wanted.unpaired,
         smallest=lowest,
     )
+
+
+def _empty(sites: Sequence[Site]) -> list[int]:
+    """Indices of the atoms that only carry functions."""
+    return [k for k, site in enumerate(sites) if site.atom.ghost]
 
 
 def in_short(matrix: Matrix) -> Left:
@@ -175,30 +181,46 @@ def turned_spherical(sites: Sequence[Site]) -> list[Site]:
 
 
 def pruned_set(
-    matrix: Matrix,
-    functions: Functions,
-    sites: Sequence[Site],
-    wanted: Wanted,
-    found: Spectrum,
+    matrix: Matrix, plain: Floats, sites: Sequence[Site], wanted: Wanted, found: Spectrum
 ) -> Pruned:
     """What the Cholesky choice takes away, and what it leaves.
 
-    A pivot is a diagonal element of a Schur complement, so it is never below the smallest
-    eigenvalue: above the tolerance nothing can go.
+    plain: the matrix with a norm of one for every function.  A pivot is a diagonal element of a
+    Schur complement, so it is never below the smallest eigenvalue: above the tolerance nothing can
+    go.
     """
     if found.smallest >= wanted.tolerance:
         return (), None
+    placed = [site.placed for site in sites]
+    worth = _worth(plain, sites, wanted)
     pruning = shells_to_drop(
         matrix,
-        functions,
-        [site.placed for site in sites],
+        lay_out(placed),
+        placed,
         wanted.tolerance,
         "atom" if wanted.per_atom else "element",
+        None if worth is None else worth.loss,
     )
     if not pruning.drops:
         return (), None
-    left = Left(len(pruning.kept), pruning.smallest, pruning.condition)
+    loss = None if worth is None else worth.loss(pruning.kept)
+    left = Left(len(pruning.kept), pruning.smallest, pruning.condition, loss)
     return tuple(as_dropped(pruning.drops, sites, wanted)), left
+
+
+def _worth(plain: Floats, sites: Sequence[Site], wanted: Wanted) -> Worth | None:
+    """The field that tells what functions are worth; None where none is made."""
+    placed = [site.placed for site in sites]
+    if any(site.fitting for site in sites) or not affordable(placed, len(plain)):
+        return None
+    return worth_of(
+        placed,
+        plain,
+        kinetic(placed),
+        empty=_empty(sites),
+        charge=wanted.charge,
+        unpaired=wanted.unpaired,
+    )
 
 
 def as_dropped(drops: Iterable[Drop], sites: Sequence[Site], wanted: Wanted) -> Iterator[Dropped]:

@@ -66,14 +66,14 @@ def test_the_twin_is_blamed_and_dropped() -> None:
 
 
 def test_what_is_dropped_is_a_shell_on_all_atoms_or_on_one() -> None:
-    (whole,) = _probes(TWINS, H2, Wanted(tolerance=4e-6))
+    (whole,) = _probes(TWINS, H2, Wanted(tolerance=4e-6, per_atom=False))
     assert [(part.function.element, part.atom) for part in whole.drop] == [("H", 0)]
     assert whole.drop[0].function.shell in ("s-2", "s-3")
     assert whole.after is not None
     assert whole.after.functions == 10
     # What is left is a principal submatrix, so it cannot be worse; the choice makes it sound.
     assert whole.after.smallest > max(1e-5, whole.smallest)
-    (single,) = _probes(TWINS, H2, Wanted(tolerance=4e-6, per_atom=True))
+    (single,) = _probes(TWINS, H2, Wanted(tolerance=4e-6))
     assert len(single.drop) == 1
     assert single.drop[0].atom in (1, 2)
     assert single.after is not None
