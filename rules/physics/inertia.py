@@ -120,9 +120,12 @@ def _by_powers(
     for t in steps:
         remainder = shifted(matrix, t, rest) - grams[0]
         remainder -= t * grams[1] + t**2 * grams[2] + t**3 * grams[3]
-        least = _negative(remainder.copy())
-        more = 1.0 / (1.0 - t / larger) - 1.0
-        if least == _negative(remainder - more * t**3 * grams[3]):
+        values = eigvalsh(remainder)
+        least = int((values < 0.0).sum())
+        more = (1.0 / (1.0 - t / larger) - 1.0) * t**3
+        # The rest moves no eigenvalue by more than its norm, so by no more than its trace.
+        most = int((values < more * float(np.trace(grams[3]).real)).sum())
+        if least == most or least == _negative(remainder - more * grams[3]):
             counts[t] = least
     return counts
 

@@ -1,8 +1,9 @@
 """Condition of an overlap matrix, by the cheapest algorithm that is sufficient.
 
-Small matrices: all eigenvalues.  Large ones: the largest by Lanczos, the smallest by Lanczos on the
-inverse, applied through one Cholesky factor; functions below each step of the ladder are counted by
-inertia (`inertia`), and only where the smallest eigenvalue says that there are any.
+Small matrices: all eigenvalues, and of middling ones too where any are to be counted.  Large ones:
+the largest by Lanczos, the smallest by Lanczos on the inverse, applied through one Cholesky factor;
+functions below each step of the ladder are counted by inertia (`inertia`), and only where the
+smallest eigenvalue says that there are any.
 
 Formula: the smallest eigenvalue of any principal submatrix is an upper bound of that of the
 matrix (interlacing; R. A. Horn, C. R. Johnson, Matrix Analysis, chapter 4).  The submatrix of the
@@ -24,6 +25,7 @@ from overlapse.rules.physics.inertia import Matrix, Part, counts_below, factored
 
 LADDER = (1e-4, 1e-5, 1e-6, 1e-7, 1e-8)
 SMALL = 700  # up to this size all eigenvalues are the cheapest way
+MIDDLE = 1800  # up to this size they are where some have to be counted (tests/bench/overlap.py)
 COPIES = 2.5  # of a dense matrix: what its spectrum takes at most, itself included
 DIFFUSE = (0.3, 0.6)  # bohr**-2: functions below are tried first
 
@@ -53,7 +55,8 @@ class Verdict(NamedTuple):
 def spectrum(matrix: Matrix, ladder: Sequence[float] = LADDER) -> Spectrum:
     """Smallest and largest eigenvalue, condition number, and counts below each step."""
     n = len(matrix)
-    if n <= SMALL:
+    # One Cholesky factor, which is cheap, says whether there is anything to count.
+    if n <= SMALL or (n <= MIDDLE and ladder and not _definite(matrix, max(ladder), None)):
         return _from_all(eigvalsh(matrix), ladder)
     low, high = smallest(matrix), largest(matrix)
     needed = [step for step in ladder if step > low]
