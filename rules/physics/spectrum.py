@@ -13,7 +13,7 @@ All functions take real symmetric and complex Hermitian matrices, shape (n, n).
 """
 
 from collections.abc import Callable, Sequence
-from typing import Any, NamedTuple
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -21,6 +21,7 @@ from scipy.linalg import eigh, eigvalsh, get_lapack_funcs
 from scipy.sparse.linalg import ArpackError, LinearOperator, eigsh
 
 from overlapse.grammar.model import Floats
+from overlapse.rules.physics.blocks import Blocked
 from overlapse.rules.physics.inertia import Matrix, Part, counts_below, factored, shifted
 
 LADDER = (1e-4, 1e-5, 1e-6, 1e-7, 1e-8)
@@ -71,9 +72,9 @@ def spectrum(matrix: Matrix, ladder: Sequence[float] = LADDER) -> Spectrum:
 
 
 def spectrum_of_sparse(
-    matrix: Any, exponents: Floats, *, memory: int, ladder: Sequence[float] = LADDER
+    matrix: Blocked, exponents: Floats, *, memory: int, ladder: Sequence[float] = LADDER
 ) -> Spectrum:
-    """As `spectrum`, of a `scipy.sparse` matrix, within so many bytes.
+    """As `spectrum`, of a matrix in blocks, within so many bytes.
 
     Where the dense matrix and its factor fit, they are made: sparse factors fill up and are slower.
     Else the most diffuse functions that fit are judged alone: then ``smallest`` is an upper bound,
@@ -83,9 +84,9 @@ def spectrum_of_sparse(
     n = matrix.shape[0]
     fits = int((memory / (COPIES * 8)) ** 0.5)
     if n <= fits:
-        return spectrum(matrix.toarray(), ladder)
+        return spectrum(matrix.dense(), ladder)
     order = np.sort(np.argsort(exponents, kind="stable")[:fits])
-    part = spectrum(matrix[order][:, order].toarray(), ladder)
+    part = spectrum(matrix.dense(order), ladder)
     high = _largest(matrix)
     return Spectrum(
         part.smallest,
@@ -150,9 +151,10 @@ def largest(matrix: Matrix) -> float:
     return float(eigvalsh(matrix)[-1]) if len(matrix) else 1.0
 
 
-def _largest(matrix: Any) -> float:
-    start = _start(matrix.shape[0], matrix.dtype)
-    return float(eigsh(matrix, 1, which="LA", v0=start, tol=1e-6, return_eigenvectors=False)[0])
+def _largest(matrix: Blocked) -> float:
+    start = _start(matrix.shape[0], np.float64)
+    product = LinearOperator(matrix.shape, matvec=matrix.__matmul__, dtype=np.float64)
+    return float(eigsh(product, 1, which="LA", v0=start, tol=1e-6, return_eigenvectors=False)[0])
 
 
 def smallest(matrix: Matrix, among: Part | None = None) -> float:

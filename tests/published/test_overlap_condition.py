@@ -253,7 +253,7 @@ def test_two_atoms_at_one_place() -> None:
     found = spectrum(matrix)
     assert found.below == dict.fromkeys(condition.LADDER, 24)
     assert len(chosen(matrix, 1e-7)) == 24
-    sparse = sparse_overlap([*atoms, *atoms], drop=1e-14).matrix.toarray()
+    sparse = sparse_overlap([*atoms, *atoms], drop=1e-14).matrix.dense()
     assert np.abs(sparse - matrix).max() < 1e-13
 
 
