@@ -38,6 +38,5 @@ def probe_large(sites: Sequence[Site], wanted: Wanted, label: Label, memory: int
         found,
         ((), None),
         None,
-        None,
         functions=some_of(functions, diffuse),
     )

@@ -67,22 +67,25 @@ def chosen(matrix: Matrix, tolerance: float, among: Ints | None = None) -> Ints:
     matrix: real symmetric or complex Hermitian, shape (n, n), positive diagonal.  among: choose
     among these functions only, shape (m,).
     """
-    scale = 1.0 / np.sqrt(np.real(np.diagonal(matrix)))
     # Large matrices are not copied more often than they have to be: one copy at a time.
-    unit = matrix if np.abs(scale - 1.0).max() < 1e-12 else matrix * scale[:, None] * scale
-    given = np.arange(len(unit)) if among is None else among
-    sums = [np.abs(unit[row, given]).sum() for row in given]
+    scale = 1.0 / np.sqrt(np.real(np.diagonal(matrix)))
+    given = np.arange(len(matrix)) if among is None else among
+    sums = [scale[row] * (np.abs(matrix[row, given]) @ scale[given]) for row in given]
     first = given[np.argsort(sums, kind="stable")]
-    order, pivots = pivoted(unit[np.ix_(first, first)], overwrite=True)
+    unit = matrix[np.ix_(first, first)]
+    unit *= scale[first][:, None]
+    unit *= scale[first]
+    order, pivots = pivoted(unit, overwrite=True)
+    del unit
     picked = first[order]
     rank = int(np.searchsorted(-pivots, -tolerance))
-    if not rank or smallest(unit, picked[:rank]) >= SHARE * tolerance:
+    if not rank or smallest(matrix, picked[:rank]) >= SHARE * tolerance:
         return np.sort(picked[:rank])
     # The smallest eigenvalue never rises when a function joins: halving finds the longest list.
     good, bad = 1, rank
     while bad - good > 1:
         middle = (good + bad + 1) // 2 if bad - good < 8 else bad - max(1, (bad - good) // 8)
-        if smallest(unit, picked[:middle]) >= SHARE * tolerance:
+        if smallest(matrix, picked[:middle]) >= SHARE * tolerance:
             good = middle
         else:
             bad = middle

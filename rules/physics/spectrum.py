@@ -216,16 +216,23 @@ def _start(n: int, dtype: npt.DTypeLike) -> Matrix:
     return np.random.default_rng(n).normal(size=n).astype(dtype)
 
 
-def lowest(matrix: Matrix, below: float) -> tuple[Floats, Matrix]:
-    """All eigenvalues below a limit, rising, shape (k,), and their vectors, shape (n, k)."""
+def lowest(matrix: Matrix, below: float, count: int | None = None) -> tuple[Floats, Matrix]:
+    """Eigenvalues below a limit, rising, shape (k,), and their vectors, shape (n, k).
+
+    count: so many of them, the smallest, where it is known that there are that many; all if None.
+    """
     n = len(matrix)
     if n > SMALL:
-        counts = counts_below(matrix, [below])
-        if counts is not None and counts[below] == 0:
+        if count is None:
+            counts = counts_below(matrix, [below])
+            count = None if counts is None else counts[below]
+        if count == 0:
             return np.zeros(0), np.zeros((n, 0), dtype=matrix.dtype)
-        if counts is not None and counts[below] <= n // 60:
-            found = _inverse_lanczos(matrix, counts[below])
+        if count is not None and count <= n // 30:
+            found = _inverse_lanczos(matrix, count)
             if found is not None and found[0][-1] < below:
                 return found
-    values, vectors = eigh(matrix, subset_by_value=(-np.inf, below))
+    some = (-np.inf, below) if count is None else None
+    first = None if count is None else (0, count - 1)
+    values, vectors = eigh(matrix, subset_by_value=some, subset_by_index=first)
     return np.asarray(values, dtype=float), vectors
