@@ -1,18 +1,13 @@
 """Basis files without some of their functions, in the layout they came in."""
 
-import os
 from collections.abc import Collection, Sequence
 from dataclasses import dataclass, replace
-from pathlib import Path
 
-import click
 import numpy as np
 
 from overlapse.grammar.layouts import layout_of
 from overlapse.grammar.model import BasisSet, Block, Cells, Document, Shell, read_only
 from overlapse.grammar.reading import read_text
-from overlapse.lint.choices import Shelf
-from overlapse.rules.measured.probe import Probe
 
 # Element, line and name of a shell, and the column of its coefficients.
 Marked = frozenset[tuple[str, int, str, int]]
@@ -59,47 +54,10 @@ def pruned_text(document: Document, marked: Marked) -> tuple[str, tuple[str, ...
     return written.text, (*losses, *written.losses)
 
 
-def pruned_files(shelf: Shelf, probes: Sequence[Probe]) -> list[tuple[str, bytes, tuple[str, ...]]]:
-    """Path, new contents and losses of each file from which the probes drop something.
-
-    What any frame drops goes, so that the files serve all of them.  Raises PruneError as
-    `pruned_text` does.
-    """
-    marked: dict[str, set[tuple[str, int, str, int]]] = {}
-    for function in (part.function for probe in probes for part in probe.drop):
-        mark = (function.element, function.line, function.shell, function.column)
-        marked.setdefault(function.path, set()).add(mark)
-    made = []
-    for document in shelf.originals:
-        if document.path in marked:
-            text, losses = pruned_text(document, frozenset(marked[document.path]))
-            made.append((document.path, _encoded(document, text), losses))
-    return made
-
-
-def _encoded(document: Document, text: str) -> bytes:
+def encoded(document: Document, text: str) -> bytes:
     """A text in the encoding of the document it was made of."""
     mark = b"\xef\xbb\xbf" if document.source.marked else b""
     return mark + text.encode(document.source.encoding, "replace")
-
-
-def write_files(folder: Path, files: Sequence[tuple[str, bytes]]) -> list[Path]:
-    """Write files, each given with the path it was made of, into a folder under the same names.
-
-    Each appears only when it is complete.  Raises OSError, and PruneError where one would replace
-    the file it was made of, or two have one name.
-    """
-    folder.mkdir(parents=True, exist_ok=True)
-    targets = [folder / Path(path).name for path, _ in files]
-    for (path, _), target in zip(files, targets, strict=True):
-        if target.exists() and os.path.samefile(path, target):
-            raise PruneError(f"{target} is the file itself; name another folder")
-    if len(set(targets)) < len(targets):
-        raise PruneError("two of the files have the same name; prune them one after the other")
-    for (_, data), target in zip(files, targets, strict=True):
-        with click.open_file(str(target), "wb", atomic=True) as stream:
-            stream.write(data)
-    return targets
 
 
 def _without(document: Document, marked: Marked) -> Document:

@@ -12,7 +12,7 @@ from overlapse.lint.reports.lines import one_line
 from overlapse.lint.reports.text import write as write_findings
 from overlapse.lint.screening import Screening
 from overlapse.rules.finding import Finding
-from overlapse.rules.measured.overlap_words import dropped, plain, shares
+from overlapse.rules.measured.overlap_words import dropped, plain, shares, worth
 from overlapse.rules.measured.probe import Function, Left, Probe, Share, Small
 
 _WIDTH = 96
@@ -73,6 +73,8 @@ def _frame(probe: Probe) -> Iterator[str]:
         )
     if probe.after is not None:
         yield from _item("then", _left(probe.after))
+        if probe.after.loss is not None:
+            yield from _item("worth", f"a field {worth(probe.after.loss)}")
 
 
 def _left(left: Left) -> str:
@@ -166,7 +168,7 @@ def _screen_object(probe: Probe, findings: Sequence[Finding]) -> dict[str, Any]:
             {**_function_object(part.function), "atom": part.atom or None} for part in probe.drop
         ],
         "tolerance": probe.tolerance,
-        "after": _left_object(probe.after),
+        "after": _after_object(probe.after),
         "counterpart": _left_object(probe.counterpart),
         "lattice": _lattice_object(probe),
         "findings": [finding_object(finding) for finding in findings],
@@ -209,6 +211,13 @@ def _left_object(left: Left | None) -> dict[str, Any] | None:
         "smallest": _number(left.smallest),
         "condition": _number(left.condition),
     }
+
+
+def _after_object(left: Left | None) -> dict[str, Any] | None:
+    found = _left_object(left)
+    if left is None or found is None:
+        return None
+    return {**found, "loss": None if left.loss is None else _number(left.loss)}
 
 
 def _lattice_object(probe: Probe) -> dict[str, Any] | None:

@@ -134,7 +134,7 @@ def _a_fraction(context: click.Context, parameter: click.Parameter, value: float
 @click.option(
     "--per-element",
     is_flag=True,
-    help="Drop for all atoms of an element what one of them can spare, as --write has to.",
+    help="Drop from all atoms of an element, not from those alone that can spare a function.",
 )
 @click.option("--charge", default=0, help="Charge of the molecule, for the outlook [0].")
 @click.option(
@@ -153,7 +153,7 @@ def _a_fraction(context: click.Context, parameter: click.Parameter, value: float
     "--write",
     "folder",
     type=click.Path(file_okay=False, path_type=Path),
-    help="Write the pruned basis files into this folder.",
+    help="Write the pruned basis files, and variants for single atoms, into this folder.",
 )
 @click.option(
     "--picture",
@@ -234,9 +234,7 @@ def screen(
         found, audits = tasks(shelf, read)
         with _progress(found) as done:
             values = drawing is not None or report == "html"  # both draw all eigenvalues
-            # A basis file serves all atoms of its element.
-            per_atom = not per_element and folder is None
-            asked = Wanted(threshold, tolerance, per_atom, mesh, values, charge, unpaired)
+            asked = Wanted(threshold, tolerance, not per_element, mesh, values, charge, unpaired)
             probes = measure_all(found, shelf, asked, jobs=jobs, limit=limit, done=done)
     except ScreenError as problem:
         raise Refused(str(problem)) from problem
@@ -248,7 +246,7 @@ def screen(
     with output(out) as stream:
         _write(screening.at_least(least), report, stream, out is None and stream.isatty())
     if folder is not None:
-        _write_pruned(shelf, probes, folder)
+        _write_pruned(shelf, found, probes, folder)
     sys.exit(_status(screening, fail_at))
 
 
@@ -338,26 +336,19 @@ def _progress(found: "Sequence[Task]") -> Iterator[Callable[[int], None]]:
         yield lambda count: bar.update(count**3)
 
 
-def _write_pruned(shelf: "Shelf", probes: "Sequence[Probe]", folder: Path) -> None:
+def _write_pruned(
+    shelf: "Shelf", found: "Sequence[Task]", probes: "Sequence[Probe]", folder: Path
+) -> None:
     """Write the files that lose functions; what a file loses beside them is said."""
-    from overlapse.lint.pruned import PruneError, pruned_files, write_files
+    from overlapse.lint.pruned import PruneError
+    from overlapse.lint.variants import pruned_files, told, write_files
 
     try:
-        made = pruned_files(shelf, probes)
-        paths = write_files(folder, [(path, data) for path, data, _ in made])
+        made = pruned_files(shelf, found, probes)
+        paths = write_files(folder, made, [document.path for document in shelf.originals])
     except PruneError as problem:
         raise Refused(str(problem)) from problem
     except OSError as problem:
         raise click.UsageError(f"{folder}: {problem.strerror or problem}") from problem
-    if not paths:
-        click.echo("nothing to drop: no file was written", err=True)
-    for target, (_, _, losses) in zip(paths, made, strict=True):
-        click.echo(f"written: {target}", err=True)
-        for loss in losses:
-            click.echo(f"not kept in {target}: {loss}", err=True)
-    if paths:
-        click.echo(
-            "functions are gone from all atoms of their elements, which may cost millihartrees: "
-            "compare an energy first",
-            err=True,
-        )
+    for line in told(made, paths, probes):
+        click.echo(line, err=True)

@@ -27,13 +27,15 @@ def blame(
     """
     counts = {rung: n for rung, n in found.below.items() if n and rung <= max(least, LADDER[0])}
     few = [rung for rung, n in counts.items() if n <= _BLAMED]
+    count: int | None
     if counts:
         limit = max(few) if few else min(counts)
+        count = min(counts[limit], _BLAMED)
     elif found.functions <= SMALL:
-        limit = _above(found.smallest)
+        limit, count = _above(found.smallest), None
     else:
         return ()
-    values, vectors = lowest(matrix, limit)
+    values, vectors = lowest(matrix, limit, count)
     parts = _Parts(functions, sites)
     return tuple(parts.small(float(values[k]), vectors[:, k]) for k in np.argsort(values)[:_BLAMED])
 

@@ -9,6 +9,7 @@ from overlapse.rules.labels.naming import listed
 from overlapse.rules.measured.probe import Dropped, Function, Probe, Share, Small
 
 _DIFFUSE = 0.4  # bohr**-2; outermost functions below this are what augmentation adds
+HARMLESS = 1e-4  # hartree: what functions may be worth that are dropped without a second thought
 _SEASONAL = (
     "leave out outermost functions, those of H and of the highest l first (seasonal augmentation: "
     "E. Papajak, D. G. Truhlar, J. Chem. Theory Comput. 7, 10 (2011))"
@@ -96,12 +97,20 @@ def _remedies(probe: Probe) -> Iterator[str]:
         if probe.after is not None:
             left = probe.after
             told += f": {left.functions} functions stay, smallest eigenvalue {plain(left.smallest)}"
+            told += f"; a field {worth(left.loss)}" if left.loss is not None else ""
         yield told
     kinds: Sequence[Function] = [
         share.function for small in probe.blame[:3] for share in small.kinds if share.weight > 0.1
     ]
     if any(kind.outermost and kind.exponent < _DIFFUSE for kind in kinds):
         yield _SEASONAL
+
+
+def worth(loss: float) -> str:
+    """What a field loses without the functions that are dropped."""
+    if loss < 1e-6:
+        return "loses less than 1e-6 hartree, by an approximate one"
+    return f"loses about {loss:.0e} hartree, by an approximate one".replace("e-0", "e-")
 
 
 def dropped(parts: Sequence[Dropped], most: int = 6) -> str:

@@ -72,11 +72,16 @@ class Dropped(NamedTuple):
 
 
 class Left(NamedTuple):
-    """Another matrix in short: number of functions, smallest eigenvalue, condition number."""
+    """Another matrix in short: number of functions, smallest eigenvalue, condition number.
+
+    loss: energy that a field loses with these functions alone, hartree, as an approximate field has
+    it (`overlapse.rules.physics.worth`); None where none was made.
+    """
 
     functions: int
     smallest: float
     condition: float
+    loss: float | None = None
 
 
 class AtPoint(NamedTuple):

@@ -13,8 +13,9 @@ from overlapse.rules.physics.onecentre import eigenvalues
 from overlapse.rules.physics.outlook import LOOKED_AT, Outlook, foresee, outlook
 from overlapse.rules.physics.placed import Functions, Ints, Placed, lay_out, radial_norms
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
-from overlapse.rules.physics.spectrum import LADDER, Spectrum, spectrum
+from overlapse.rules.physics.spectrum import LADDER, Spectrum, smallest, spectrum
 from overlapse.rules.physics.superposed import affordable
+from overlapse.rules.physics.worth import Worth, worth_of
 
 
 class Wanted(NamedTuple):
@@ -27,7 +28,7 @@ class Wanted(NamedTuple):
 
     threshold: float = 1e-6
     tolerance: float = 1e-7
-    per_atom: bool = False
+    per_atom: bool = True
     mesh: tuple[int, int, int] = (2, 2, 2)
     values: bool = False
     charge: int = 0
@@ -50,27 +51,32 @@ def probe(sites: Sequence[Site], wanted: Wanted, label: Label = Label()) -> Prob
 
     Raises `overlapse.rules.physics.placed.NotNormalisable` where a function has no norm.
     """
-    placed = [site.placed for site in sites]
-    plain = overlap(placed)
-    matrix = conventional(plain, placed)
-    found = steps(matrix, wanted)
-    pruned = pruned_set(matrix, lay_out(placed), sites, wanted, found)
-    doubtful = found.smallest < LOOKED_AT and affordable(placed, len(matrix))
-    energies = kinetic(placed) if doubtful else None
+    # One large matrix at a time, and no more than one copy of it.
     turned = turned_spherical(sites)
     counterpart = in_short(overlap([s.placed for s in turned])) if turned else None
-    return assembled(
-        sites, wanted, label, matrix, found, pruned, energies, counterpart, plain=plain
-    )
+    placed = [site.placed for site in sites]
+    matrix = overlap(placed)
+    norms = conventional(matrix, placed)
+    found = steps(matrix, wanted)
+    pruned = pruned_set(matrix, norms, sites, wanted, found)
+    return assembled(sites, wanted, label, matrix, found, pruned, counterpart, norms=norms)
 
 
-def conventional(matrix: Matrix, placed: Sequence[Placed]) -> Matrix:
-    """An overlap matrix with the usual norms of Cartesian functions; the same one without any."""
+def conventional(matrix: Matrix, placed: Sequence[Placed]) -> Floats | None:
+    """Give an overlap matrix, in place, the usual norms of Cartesian functions.
+
+    The norms, shape (n,); None without any such function.
+    """
     norms = radial_norms(placed)
     if (norms == 1.0).all():
-        return matrix
-    scaled: Matrix = matrix * norms[:, None] * norms
-    return scaled
+        return None
+    _scaled(matrix, norms)
+    return norms
+
+
+def _scaled(matrix: Matrix, norms: Floats) -> None:
+    matrix *= norms[:, None]
+    matrix *= norms
 
 
 def ladder_of(wanted: Wanted) -> tuple[float, ...]:
@@ -91,19 +97,24 @@ def assembled(
     matrix: Matrix,
     found: Spectrum,
     pruned: Pruned,
-    energies: Floats | None,
     counterpart: Left | None,
     lattice: Lattice | None = None,
     functions: Functions | None = None,
-    plain: Matrix | None = None,
+    norms: Floats | None = None,
 ) -> Probe:
     """All that is known of a matrix, in one piece; ``functions`` are its own, all if None.
 
-    plain: the same matrix with a norm of one for every function, where it is another.
+    norms: as of `conventional`; they are taken out of the matrix, which is lost.
     """
     if functions is None:
         functions = lay_out([site.placed for site in sites])
     low, step, high = wanted.threshold / NEAR, wanted.threshold, wanted.threshold * NEAR
+    small = blame(matrix, functions, sites, found, high)
+    values = tuple(eigenvalues(matrix).tolist()) if wanted.values else ()
+    if norms is not None:
+        _scaled(matrix, 1.0 / norms)
+    known = found.smallest if norms is None else None
+    molecule = lattice is None and len(matrix) == found.functions
     return Probe(
         geometry=label.geometry,
         frame=label.frame,
@@ -115,47 +126,46 @@ def assembled(
         threshold=step,
         kept=found.functions - found.below[step],
         near=found.below[high] - found.below[low],
-        outlook=_outlook(
-            sites,
-            wanted,
-            matrix if plain is None else plain,
-            found.smallest if plain is None or plain is matrix else None,
-            energies,
-        ),
+        outlook=_outlook(sites, wanted, matrix, known, molecule),
         tolerance=wanted.tolerance,
-        blame=blame(matrix, functions, sites, found, high),
+        blame=small,
         drop=pruned[0],
         after=pruned[1],
         counterpart=counterpart,
         lattice=lattice,
         fitting=any(site.fitting for site in sites),
         files=tuple(dict.fromkeys(site.path for site in sites)),
-        values=tuple(eigenvalues(matrix).tolist()) if wanted.values else (),
+        values=values,
     )
 
 
 def _outlook(
-    sites: Sequence[Site],
-    wanted: Wanted,
-    matrix: Matrix,
-    lowest: float | None,
-    energies: Floats | None,
+    sites: Sequence[Site], wanted: Wanted, matrix: Matrix, lowest: float | None, molecule: bool
 ) -> Outlook:
-    """The outlook; by the eigenvalue alone for crystals, for functions that are for fitting, and
-    for molecules too large for a field."""
-    if energies is None or any(site.fitting for site in sites):
-        return outlook(matrix, smallest=lowest)
+    """The outlook; by the eigenvalue alone where no field can be made of a whole molecule, and for
+    functions that are for fitting."""
     placed = [site.placed for site in sites]
+    if not molecule or any(site.fitting for site in sites) or not affordable(placed, len(matrix)):
+        return outlook(matrix, smallest=lowest)
+    if lowest is None:
+        lowest = smallest(matrix)
+    if lowest >= LOOKED_AT:
+        return outlook(matrix, smallest=lowest)
     return foresee(
         placed,
         matrix,
-        energies,
+        kinetic(placed),
         lay_out(placed),
-        empty=[k for k, site in enumerate(sites) if site.atom.ghost],
+        empty=_empty(sites),
         charge=wanted.charge,
         unpaired=wanted.unpaired,
         smallest=lowest,
     )
+
+
+def _empty(sites: Sequence[Site]) -> list[int]:
+    """Indices of the atoms that only carry functions."""
+    return [k for k, site in enumerate(sites) if site.atom.ghost]
 
 
 def in_short(matrix: Matrix) -> Left:
@@ -175,30 +185,51 @@ def turned_spherical(sites: Sequence[Site]) -> list[Site]:
 
 
 def pruned_set(
-    matrix: Matrix,
-    functions: Functions,
-    sites: Sequence[Site],
-    wanted: Wanted,
-    found: Spectrum,
+    matrix: Matrix, norms: Floats | None, sites: Sequence[Site], wanted: Wanted, found: Spectrum
 ) -> Pruned:
     """What the Cholesky choice takes away, and what it leaves.
 
-    A pivot is a diagonal element of a Schur complement, so it is never below the smallest
-    eigenvalue: above the tolerance nothing can go.
+    norms: as of `conventional`.  A pivot is a diagonal element of a
+    Schur complement, so it is never below the smallest eigenvalue: above the tolerance nothing can
+    go.
     """
     if found.smallest >= wanted.tolerance:
         return (), None
+    placed = [site.placed for site in sites]
+    worth = _worth(matrix, norms, sites, wanted)
     pruning = shells_to_drop(
         matrix,
-        functions,
-        [site.placed for site in sites],
+        lay_out(placed),
+        placed,
         wanted.tolerance,
         "atom" if wanted.per_atom else "element",
+        None if worth is None else worth.loss,
     )
     if not pruning.drops:
         return (), None
-    left = Left(len(pruning.kept), pruning.smallest, pruning.condition)
+    loss = None if worth is None else worth.loss(pruning.kept)
+    left = Left(len(pruning.kept), pruning.smallest, pruning.condition, loss)
     return tuple(as_dropped(pruning.drops, sites, wanted)), left
+
+
+def _worth(
+    matrix: Matrix, norms: Floats | None, sites: Sequence[Site], wanted: Wanted
+) -> Worth | None:
+    """The field that tells what functions are worth; None where none is made."""
+    placed = [site.placed for site in sites]
+    if any(site.fitting for site in sites) or not affordable(placed, len(matrix)):
+        return None
+    plain = matrix.copy()
+    if norms is not None:
+        _scaled(plain, 1.0 / norms)
+    return worth_of(
+        placed,
+        plain,
+        kinetic(placed),
+        empty=_empty(sites),
+        charge=wanted.charge,
+        unpaired=wanted.unpaired,
+    )
 
 
 def as_dropped(drops: Iterable[Drop], sites: Sequence[Site], wanted: Wanted) -> Iterator[Dropped]:

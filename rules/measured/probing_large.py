@@ -29,7 +29,7 @@ def probe_large(sites: Sequence[Site], wanted: Wanted, label: Label, memory: int
     )
     fits = int((memory // 2 / (COPIES * 8)) ** 0.5)
     diffuse = np.sort(np.argsort(functions.exponent, kind="stable")[:fits])
-    part = held.matrix[diffuse][:, diffuse].toarray()
+    part = held.matrix.dense(diffuse)
     return assembled(
         sites,
         wanted,
@@ -37,7 +37,6 @@ def probe_large(sites: Sequence[Site], wanted: Wanted, label: Label, memory: int
         part,
         found,
         ((), None),
-        None,
         None,
         functions=some_of(functions, diffuse),
     )

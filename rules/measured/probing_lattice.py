@@ -19,7 +19,7 @@ from overlapse.rules.measured.probing import (
     steps,
     turned_spherical,
 )
-from overlapse.rules.measured.site import Site
+from overlapse.rules.measured.site import Site, size
 from overlapse.rules.physics.inertia import Matrix
 from overlapse.rules.physics.lattice import lattice_overlap, lattice_reach, monkhorst_pack
 from overlapse.rules.physics.placed import lay_out
@@ -54,12 +54,18 @@ def probe_lattice(
         )[0]
         # At points that are their own negative the matrix is real, and so cheaper.
         real = not np.any((2.0 * points[k]) % 1.0)
-        return conventional(np.ascontiguousarray(found.real) if real else found, placed)
+        matrix = np.ascontiguousarray(found.real) if real else found
+        conventional(matrix, placed)
+        return matrix
 
     lowest = [smallest(at(sites, k)) for k in range(len(points))]
     worst = int(np.argmin(lowest))
-    matrix = at(sites, worst)
-    found = steps(matrix, wanted)
+    # One large matrix at a time, and no more than one copy of it.
+    pruned: Pruned = ((), None)
+    if lowest[worst] < wanted.tolerance:
+        pruned = _pruned(sites, at, np.argsort(lowest).tolist(), wanted)
+    turned = turned_spherical(sites)
+    counterpart = in_short(at(turned, worst)) if turned else None
     placed = [site.placed for site in sites]
     reach = lattice_reach(placed, cell, tolerance=TOLERANCE, periodic=periodic)
     lattice = Lattice(
@@ -67,18 +73,15 @@ def probe_lattice(
             AtPoint((float(k[0]), float(k[1]), float(k[2])), value)
             for k, value in zip(points, lowest, strict=True)
         ),
-        TOLERANCE * len(matrix),
+        TOLERANCE * size(sites),
         reach,
         smallest(at(sites, worst, reach * _CUT)),
         reach * _CUT,
         tuple(_loose(sites)),
     )
-    pruned: Pruned = ((), None)
-    if found.smallest < wanted.tolerance:
-        pruned = _pruned(sites, at, np.argsort(lowest).tolist(), wanted)
-    turned = turned_spherical(sites)
-    counterpart = in_short(at(turned, worst)) if turned else None
-    return assembled(sites, wanted, label, matrix, found, pruned, None, counterpart, lattice)
+    matrix = at(sites, worst)
+    found = steps(matrix, wanted)
+    return assembled(sites, wanted, label, matrix, found, pruned, counterpart, lattice)
 
 
 def _points(mesh: Sequence[int], periodic: Sequence[bool]) -> Floats:

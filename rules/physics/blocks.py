@@ -1,6 +1,12 @@
-"""Overlap matrices in sparse form, screened contraction by contraction."""
+"""Overlap matrices in sparse form, screened contraction by contraction.
+
+The matrix is held in blocks of some thousand rows and columns, one of each pair of mirror images.
+Sorting elements into rows costs more the more rows there are to write to at a time; so the cost of
+an element does not grow with the matrix.
+"""
 
 from collections.abc import Iterator, Sequence
+from itertools import pairwise
 from typing import Any, NamedTuple
 
 import numpy as np
@@ -20,23 +26,72 @@ from overlapse.rules.physics.integrals import (
     Progress,
     TooLarge,
 )
+from overlapse.rules.physics.kinds import Kind
 from overlapse.rules.physics.placed import Ints, Placed
 
 DROP = 1e-12  # elements below are not stored
 BOUNDED = 1e-2  # of that: what a bound holds an element below is not even worked out
+ROWS = 3000  # functions of a block's side, about
 
 
 Indices = npt.NDArray[np.int32]
 
 
+class Blocked:
+    """A symmetric matrix in blocks.
+
+    starts: first row of each panel of rows, and the number of rows, rising.  blocks: by numbers
+    i <= j of two panels a `scipy.sparse.csr_array`; those of i < j stand for their mirror images
+    too.
+    """
+
+    def __init__(self, starts: Sequence[int], blocks: dict[tuple[int, int], Any]) -> None:
+        self._starts, self._blocks = starts, blocks
+
+    @property
+    def shape(self) -> tuple[int, int]:
+        return self._starts[-1], self._starts[-1]
+
+    @property
+    def nnz(self) -> int:
+        """Number of elements, mirror images counted."""
+        return sum(block.nnz * (1 if i == j else 2) for (i, j), block in self._blocks.items())
+
+    def __matmul__(self, vector: Floats) -> Floats:
+        """The product with a vector, shape (n,)."""
+        found = np.zeros(len(vector))
+        parts = [slice(first, stop) for first, stop in pairwise(self._starts)]
+        for (i, j), block in self._blocks.items():
+            found[parts[i]] += block @ vector[parts[j]]
+            if i != j:
+                found[parts[j]] += block.T @ vector[parts[i]]
+        return found
+
+    def dense(self, among: Ints | None = None) -> Floats:
+        """All of it, or the part with the given rows and columns, rising, as a full array."""
+        chosen = np.arange(self._starts[-1]) if among is None else among
+        limits = np.searchsorted(chosen, self._starts)
+        inside = [
+            chosen[first:stop] - start
+            for (first, stop), start in zip(pairwise(limits), self._starts, strict=False)
+        ]
+        found = np.zeros((len(chosen), len(chosen)))
+        for (i, j), block in self._blocks.items():
+            part = block[inside[i]][:, inside[j]].toarray()
+            rows, columns = (slice(limits[k], limits[k + 1]) for k in (i, j))
+            found[rows, columns] = part
+            found[columns, rows] = part.T
+        return found
+
+
 class Sparse(NamedTuple):
     """A sparse overlap matrix.
 
-    matrix: `scipy.sparse.csr_array`, shape (n, n).  bound: no eigenvalue differs by more from that
-    of the full matrix (the largest sum of what was left out of a row).
+    bound: no eigenvalue differs by more from that of the full matrix (the largest sum of what was
+    left out of a row).
     """
 
-    matrix: Any
+    matrix: Blocked
     bound: float
 
 
@@ -67,57 +122,128 @@ def sparse_overlap(
     """
     frame = Frame(atoms)
     missing = np.full(frame.size, BOUNDED * drop * frame.size)
-    held: list[tuple[Floats, Indices, Indices]] = []
-    stored = 0
-    for part in _parts(frame, drop, progress):
-        size = np.abs(part.values)
-        keep = size >= drop
-        k, c, d, p = np.nonzero(keep)
-        values = part.values[keep]
-        rows = (part.rows[k, p] + c).astype(np.int32)
-        columns = (part.columns[k, p] + d).astype(np.int32)
-        held.append((values, rows, columns))
-        size[keep] = 0.0
-        _, height, width, _ = size.shape
-        sides = [(part.rows, height, 2)]
-        if not part.own:
-            held.append((values, columns, rows))
-            sides.append((part.columns, width, 1))
-        for first, count, axis in sides:
-            where = first[:, None, :] + np.arange(count)[:, None]
-            missing += np.bincount(where.ravel(), size.sum(axis=axis).ravel(), frame.size)
-        stored += len(rows) * (1 if part.own else 2)
-        # Lists, one column of them joined, and the matrix: 16, 8 and 12 bytes.
-        if memory is not None and 36 * stored + WORKING > memory:
-            raise TooLarge("A sparse matrix (so far)", 36 * stored + WORKING, memory)
-    shape = (frame.size, frame.size)
-    columns_of = list(zip(*held, strict=True)) or [(), (), ()]
-    held.clear()
-    values, at, to = (_joined(columns_of) for _ in range(3))
-    matrix = sparse.coo_array((values, (at, to)), shape=shape)
-    matrix.has_canonical_format = True  # no element comes twice: that need not be looked for
-    return Sparse(matrix.tocsr(), float(missing.max(initial=0.0)))
-
-
-def _joined(columns: list[Any]) -> Any:
-    """The first of the columns in one piece, and its pieces forgotten."""
-    return np.concatenate([np.zeros(0, dtype=np.int32), *columns.pop(0)])
-
-
-def _parts(frame: Frame, drop: float, progress: Progress | None) -> Iterator[_Part]:
-    done, whole = 0.0, float(frame.size) ** 2
-    for number, left in enumerate(frame.kinds):
-        for right in frame.kinds[number:]:
-            pair = KindPair(left, right, Tail(LIMIT))
-            groups = [one for row in pair.pairs for one in row]
-            spans = [group.spans(BOUNDED * drop) for group in groups]
-            longest = max((float(span.max()) for span in spans), default=0.0)
-            for some in frame.pairs(left, right, longest):
-                for group, span in zip(groups, spans, strict=True):
-                    yield from _of_groups(frame, group, span, some)
-                done += some.share / whole
+    panels = _panels(frame)
+    blocks: dict[tuple[int, int], Any] = {}
+    pairs = _KindPairs(drop)
+    done, stored = 0.0, 0
+    for i, one in enumerate(panels):
+        for j, two in enumerate(panels[i:], i):
+            lists: list[tuple[Floats, Indices, Indices]] = []
+            for some, parts in _parts(frame, one, two, pairs):
+                for part in parts:
+                    lists += _kept(part, drop, missing, (one, two), i == j)
+                done += some.share / float(frame.size) ** 2
                 if progress is not None:
                     progress(min(1.0, done))
+            blocks[i, j] = _assembled(lists, (one.size, two.size))
+            stored += blocks[i, j].nnz
+            # Of the last block there are the lists as well.
+            needed = 12 * stored + 28 * blocks[i, j].nnz + WORKING
+            if memory is not None and needed > memory:
+                raise TooLarge("A sparse matrix (so far)", needed, memory)
+    starts = [panel.first for panel in panels] + [frame.size]
+    return Sparse(Blocked(starts, blocks), float(missing.max(initial=0.0)))
+
+
+class _Panel(NamedTuple):
+    """Some atoms in a row: their kinds with these members alone, first function, and how many."""
+
+    kinds: tuple[Kind, ...]
+    first: int
+    size: int
+
+
+def _panels(frame: Frame) -> list[_Panel]:
+    """The atoms in panels of about the same number of functions."""
+    count = max(1, round(frame.size / ROWS))
+    limits = np.searchsorted(frame.starts, np.linspace(0, frame.size, count + 1)).tolist()
+    limits[-1] = len(frame.starts) - 1
+    found = []
+    for first, stop in pairwise(limits):
+        kinds = []
+        for kind in frame.kinds:
+            inside = kind.members[(kind.members >= first) & (kind.members < stop)]
+            kinds.append(kind._replace(members=inside))
+        start = int(frame.starts[first])
+        found.append(_Panel(tuple(kinds), start, int(frame.starts[stop]) - start))
+    return found
+
+
+class _KindPairs:
+    """Pairs of kinds, by their places in the list of kinds, with what all their panels share."""
+
+    def __init__(self, drop: float) -> None:
+        self._known: dict[tuple[int, int], tuple[list[GroupPair], list[Floats]]] = {}
+        self._drop = drop
+
+    def of(self, key: tuple[int, int], left: Kind, right: Kind) -> "_Shared":
+        """Pairs of groups, and the distances from which their elements are not worked out."""
+        if key not in self._known:
+            groups = [one for row in KindPair(left, right, Tail(LIMIT)).pairs for one in row]
+            self._known[key] = groups, [one.spans(BOUNDED * self._drop) for one in groups]
+        return self._known[key]
+
+
+_Shared = tuple[list[GroupPair], list[Floats]]
+
+
+def _parts(
+    frame: Frame, one: _Panel, two: _Panel, shared: _KindPairs
+) -> Iterator[tuple[Pairs, Iterator[_Part]]]:
+    """All elements of two panels, each pair of atoms once."""
+    for i, left in enumerate(one.kinds):
+        for j, right in enumerate(two.kinds):
+            if (one is two and j < i) or not (len(left.members) and len(right.members)):
+                continue
+            groups, spans = shared.of((i, j), left, right)
+            longest = max((float(span.max()) for span in spans), default=0.0)
+            for some in frame.pairs(left, right, longest):
+                yield (
+                    some,
+                    (
+                        part
+                        for group, span in zip(groups, spans, strict=True)
+                        for part in _of_groups(frame, group, span, some)
+                    ),
+                )
+
+
+def _kept(
+    part: _Part, drop: float, missing: Floats, panels: tuple[_Panel, _Panel], mirrored: bool
+) -> Iterator[tuple[Floats, Indices, Indices]]:
+    """The elements that are stored: values, rows and columns within their block.
+
+    What is left out is added to ``missing``.  mirrored: elements of other atoms come with their
+    mirror images.
+    """
+    size = np.abs(part.values)
+    keep = size >= drop
+    values = part.values[keep]
+    _, height, width, _ = size.shape
+    down, across = np.arange(height)[:, None], np.arange(width)[:, None]
+    rows = part.rows[:, None, :] + down
+    columns = part.columns[:, None, :] + across
+    at = (rows - panels[0].first).astype(np.int32)[:, :, None, :]
+    to = (columns - panels[1].first).astype(np.int32)[:, None, :, :]
+    at, to = (np.broadcast_to(index, size.shape)[keep] for index in (at, to))
+    yield values, at, to
+    if mirrored and not part.own:
+        yield values, to, at
+    size[keep] = 0.0
+    missing += np.bincount(rows.ravel(), size.sum(axis=2).ravel(), len(missing))
+    if not part.own:
+        missing += np.bincount(columns.ravel(), size.sum(axis=1).ravel(), len(missing))
+
+
+def _assembled(lists: list[tuple[Floats, Indices, Indices]], shape: tuple[int, int]) -> Any:
+    """One block of the elements, whose lists are lost."""
+    columns: list[Any] = list(zip(*lists, strict=True)) or [(), (), ()]
+    lists.clear()
+    none = np.zeros(0, dtype=np.int32)
+    values, at, to = (np.concatenate([none, *columns.pop(0)]) for _ in range(3))
+    matrix = sparse.coo_array((values, (at, to)), shape=shape)
+    matrix.has_canonical_format = True  # no element comes twice: that need not be looked for
+    return matrix.tocsr()
 
 
 def _of_groups(frame: Frame, group: GroupPair, spans: Floats, some: Pairs) -> Iterator[_Part]:

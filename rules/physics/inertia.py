@@ -49,12 +49,17 @@ def pivoted(matrix: Matrix, *, overwrite: bool = False) -> tuple[Part, Floats]:
     nothing is left above rounding; functions after it follow in no special order.  overwrite: the
     matrix is no longer needed.
     """
-    (pstrf,) = get_lapack_funcs(("pstrf",), (matrix,))
-    tolerance = 4.0 * len(matrix) * np.finfo(float).eps
-    work = matrix if overwrite else matrix.copy()
+    order, pivots, _ = _with_pivots(matrix if overwrite else matrix.copy())
+    return order, pivots
+
+
+def _with_pivots(work: Matrix) -> tuple[Part, Floats, Matrix]:
+    """As `pivoted`, and the factor, made in place of ``work`` as that of `factored` is."""
+    (pstrf,) = get_lapack_funcs(("pstrf",), (work,))
+    tolerance = 4.0 * len(work) * np.finfo(float).eps
     factor, piv, rank, _ = pstrf(work.T, tol=tolerance, lower=False, overwrite_a=True)
     pivots = np.abs(np.diagonal(factor)[:rank]) ** 2
-    return np.asarray(piv, dtype=np.intp) - 1, np.asarray(pivots, dtype=float)
+    return np.asarray(piv, dtype=np.intp) - 1, np.asarray(pivots, dtype=float), factor
 
 
 def counts_below(matrix: Matrix, steps: Sequence[float]) -> dict[float, int] | None:
@@ -64,18 +69,22 @@ def counts_below(matrix: Matrix, steps: Sequence[float]) -> dict[float, int] | N
     """
     if not len(steps):
         return {}
-    order, pivots = pivoted(matrix)
     first, *others = sorted(steps, reverse=True)
     # Eigenvalues of what is kept are smaller than its pivots, mostly ten times, seldom more.
     for margin in (30.0, 300.0):
+        order, pivots, factor = _with_pivots(matrix.copy())
         rank = int(np.searchsorted(-pivots, -margin * first))
         kept, rest = order[:rank], order[rank:]
+        low = [step for step in others if step <= 0.1 * first]
+        # The factor tells S_KR, S_KK and its own solutions: all that smaller steps need.
+        grams = _grams(factor[:, :rank], factor[:rank, rank:].copy("F"), 4) if low else []
+        del factor  # it is as large as the matrix
         found = _count(matrix, first, kept, rest)
         if found is not None:
             break
     else:
         return None
-    counts = {first: found, **_by_powers(matrix, others, first, kept, rest)}
+    counts = {first: found, **_by_powers(matrix, low, first, rest, grams)}
     for step in others:
         if step not in counts:
             again = _count(matrix, step, kept, rest)
@@ -86,12 +95,20 @@ def counts_below(matrix: Matrix, steps: Sequence[float]) -> dict[float, int] | N
 
 
 def _count(matrix: Matrix, step: float, kept: Part, rest: Part) -> int | None:
-    grams = _grams(matrix, step, kept, rest, 1)
-    return None if grams is None else _negative(shifted(matrix, step, rest) - grams[0])
+    """Number of eigenvalues below a step; None where S_KK less the step has no factor."""
+    remainder = shifted(matrix, step, rest)
+    if len(kept):
+        factor = factored(shifted(matrix, step, kept))
+        if factor is None:
+            return None
+        # conj(S_KR), because the factor is that of the conjugate.
+        right = np.asfortranarray(matrix[np.ix_(kept, rest)].conj())
+        remainder -= _grams(factor, _solved(factor, right, 2), 1)[0]
+    return _negative(remainder)
 
 
 def _by_powers(
-    matrix: Matrix, steps: Sequence[float], larger: float, kept: Part, rest: Part
+    matrix: Matrix, steps: Sequence[float], larger: float, rest: Part, grams: Sequence[Matrix]
 ) -> dict[float, int]:
     """Counts for steps well below one at which the kept part is definite, from one factor for all.
 
@@ -99,17 +116,16 @@ def _by_powers(
     on add up to at least t**3 G_4 and at most 1 / (1 - t / larger) times that.  A step at which
     the bounds differ by a function is left out.
     """
-    steps = [step for step in steps if step <= 0.1 * larger]
-    grams = _grams(matrix, 0.0, kept, rest, 4) if steps else None
-    if grams is None:
-        return {}
-    whole = matrix[np.ix_(rest, rest)] - grams[0]
     counts = {}
     for t in steps:
-        remainder = shifted(whole, t) - t * grams[1] - t**2 * grams[2] - t**3 * grams[3]
-        least = _negative(remainder)
-        more = 1.0 / (1.0 - t / larger) - 1.0
-        if least == _negative(remainder - more * t**3 * grams[3]):
+        remainder = shifted(matrix, t, rest) - grams[0]
+        remainder -= t * grams[1] + t**2 * grams[2] + t**3 * grams[3]
+        values = eigvalsh(remainder)
+        least = int((values < 0.0).sum())
+        more = (1.0 / (1.0 - t / larger) - 1.0) * t**3
+        # The rest moves no eigenvalue by more than its norm, so by no more than its trace.
+        most = int((values < more * float(np.trace(grams[3]).real)).sum())
+        if least == most or least == _negative(remainder - more * grams[3]):
             counts[t] = least
     return counts
 
@@ -118,18 +134,20 @@ def _negative(matrix: Matrix) -> int:
     return int((eigvalsh(matrix, overwrite_a=True) < 0.0).sum()) if len(matrix) else 0
 
 
-def _grams(matrix: Matrix, shift: float, kept: Part, rest: Part, count: int) -> list[Matrix] | None:
-    """S_RK (S_KK - shift)**-q S_KR for q = 1 ... count; None where S_KK - shift has no factor."""
-    if not len(kept):
-        return [np.zeros((len(rest), len(rest)), dtype=matrix.dtype)] * count
-    factor = factored(shifted(matrix, shift, kept))
-    if factor is None:
-        return None
+def _solved(factor: Matrix, right: Matrix, trans: int) -> Matrix:
+    """U**-1 right, or with ``trans`` 2 U**-H right, in place; of U only the first rows count."""
+    if not factor.shape[1]:
+        return right
     (trtrs,) = get_lapack_funcs(("trtrs",), (factor,))
-    # conj(S_KR) to the left, because the factor is that of the conjugate.
-    right = np.asfortranarray(matrix[np.ix_(kept, rest)].conj())
-    grams = []
-    for power in range(count):
-        right = trtrs(factor, right, lower=False, trans=0 if power % 2 else 2, overwrite_b=True)[0]
+    found: Matrix = trtrs(factor, right, lower=False, trans=trans, overwrite_b=True)[0]
+    return found
+
+
+def _grams(factor: Matrix, right: Matrix, count: int) -> list[Matrix]:
+    """S_RK S_KK**-q S_KR for q = 1 ... count, from the factor U of conj(S_KK), shape (any, k), and
+    ``right`` = U**-H conj(S_KR), column-major, shape (k, r), which is lost."""
+    grams = [right.T @ right.conj()]
+    for power in range(1, count):
+        right = _solved(factor, right, 0 if power % 2 else 2)
         grams.append(right.T @ right.conj())
     return grams

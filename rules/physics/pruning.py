@@ -8,20 +8,28 @@ two twins the one that overlaps less with the others stays.
 What is left has a smallest eigenvalue of about a tenth of the tolerance.  That is verified, and
 where it is smaller still the last picks are given up until it holds.
 
+Where a function can only be dropped on all atoms of an element, many more go than are dependent,
+and which of them matters.  Then those that vanishing combinations are made of are tried in turn,
+and the one goes that costs least for each dependence it lifts.
+
 Source: S. Lehtola, J. Chem. Phys. 151, 241102 (2019); the ordering: S. Lehtola, Phys. Rev. A 101,
 032504 (2020).
 """
 
-from collections.abc import Iterator, Sequence
+from collections import Counter
+from collections.abc import Callable, Iterator, Sequence
 from typing import Literal, NamedTuple
 
 import numpy as np
 
 from overlapse.rules.physics.inertia import Matrix, pivoted
 from overlapse.rules.physics.placed import Functions, Ints, Placed
-from overlapse.rules.physics.spectrum import largest, smallest
+from overlapse.rules.physics.spectrum import SMALL, largest, lowest, smallest
 
 SHARE = 0.1  # of the tolerance: what the smallest eigenvalue of the kept functions is held to
+PARTY = 0.02  # share in the vanishing combinations from which a function is tried
+TRIED = 10  # functions at most, those with the largest shares
+SWAPPED = 40  # functions of single atoms, for which one of their like is tried instead
 
 
 class Drop(NamedTuple):
@@ -59,22 +67,25 @@ def chosen(matrix: Matrix, tolerance: float, among: Ints | None = None) -> Ints:
     matrix: real symmetric or complex Hermitian, shape (n, n), positive diagonal.  among: choose
     among these functions only, shape (m,).
     """
-    scale = 1.0 / np.sqrt(np.real(np.diagonal(matrix)))
     # Large matrices are not copied more often than they have to be: one copy at a time.
-    unit = matrix if np.abs(scale - 1.0).max() < 1e-12 else matrix * scale[:, None] * scale
-    given = np.arange(len(unit)) if among is None else among
-    sums = [np.abs(unit[row, given]).sum() for row in given]
+    scale = 1.0 / np.sqrt(np.real(np.diagonal(matrix)))
+    given = np.arange(len(matrix)) if among is None else among
+    sums = [scale[row] * (np.abs(matrix[row, given]) @ scale[given]) for row in given]
     first = given[np.argsort(sums, kind="stable")]
-    order, pivots = pivoted(unit[np.ix_(first, first)], overwrite=True)
+    unit = matrix[np.ix_(first, first)]
+    unit *= scale[first][:, None]
+    unit *= scale[first]
+    order, pivots = pivoted(unit, overwrite=True)
+    del unit
     picked = first[order]
     rank = int(np.searchsorted(-pivots, -tolerance))
-    if not rank or smallest(unit, picked[:rank]) >= SHARE * tolerance:
+    if not rank or smallest(matrix, picked[:rank]) >= SHARE * tolerance:
         return np.sort(picked[:rank])
     # The smallest eigenvalue never rises when a function joins: halving finds the longest list.
     good, bad = 1, rank
     while bad - good > 1:
         middle = (good + bad + 1) // 2 if bad - good < 8 else bad - max(1, (bad - good) // 8)
-        if smallest(unit, picked[:middle]) >= SHARE * tolerance:
+        if smallest(matrix, picked[:middle]) >= SHARE * tolerance:
             good = middle
         else:
             bad = middle
@@ -87,12 +98,14 @@ def shells_to_drop(
     atoms: Sequence[Placed],
     tolerance: float,
     per: Literal["element", "atom"] = "element",
+    cost: Callable[[Ints], float] | None = None,
 ) -> Pruning:
     """Whole contracted functions to drop, on every atom that carries them or atom by atom.
 
     The choice of single functions is made, then the contracted function that loses most of its
     components is dropped with all of them, and the choice is made again among what is left, until
-    nothing more is chosen.
+    nothing more is chosen.  cost: of keeping only some functions, given by their indices; what goes
+    from all atoms of an element is then chosen by it.
     """
     owner, sizes = _owners(functions, atoms, per)
     kept = np.arange(len(functions.atom))
@@ -101,6 +114,13 @@ def shells_to_drop(
         lost = np.setdiff1d(kept, chosen(matrix, tolerance, kept))
         if not len(lost):
             break
+        if cost is not None and per == "element":
+            cheapest = _cheapest(matrix, kept, len(lost), owner, tolerance, cost)
+            if cheapest is not None:
+                gone = np.array([cheapest])
+                drops += _described(gone, owner, functions, atoms)
+                kept = kept[owner[kept] != cheapest]
+                continue
         share = np.bincount(owner[lost], minlength=len(sizes)) / sizes
         # Of twins one atom may lose the one and the next the other: only what is lost everywhere
         # goes together, else the first of those that lose most, and the others get a second chance.
@@ -108,11 +128,79 @@ def shells_to_drop(
         gone = whole if len(whole) else np.array([int(np.argmax(share))])
         drops += _described(gone[np.argsort(-share[gone], kind="stable")], owner, functions, atoms)
         kept = kept[~np.isin(owner[kept], gone)]
+    if per == "atom" and len(matrix) <= SMALL:
+        kept, drops = _alike(matrix, kept, drops, functions, atoms, tolerance)
     if per == "element":
         drops = [drop._replace(atom=None) for drop in drops]
     low = smallest(matrix, kept)
     high = largest(matrix if len(kept) == len(matrix) else matrix[np.ix_(kept, kept)])
     return Pruning(kept, tuple(drops), low, high / low if low > 0.0 else float("inf"))
+
+
+def _cheapest(
+    matrix: Matrix,
+    kept: Ints,
+    lost: int,
+    owner: Ints,
+    tolerance: float,
+    cost: Callable[[Ints], float],
+) -> int | None:
+    """What is dropped together at the least cost for each function that need not be lost then.
+
+    None where nothing that can be tried lifts any of the ``lost`` dependences.
+    """
+    _, vectors = lowest(matrix[np.ix_(kept, kept)], tolerance)
+    weights = np.bincount(owner[kept], (np.abs(vectors) ** 2).sum(axis=1))
+    tried = [k for k in np.argsort(-weights, kind="stable")[:TRIED].tolist() if weights[k] > PARTY]
+    found: tuple[float, int] | None = None
+    for number in tried:
+        rest = kept[owner[kept] != number]
+        lifted = lost - (len(rest) - len(chosen(matrix, tolerance, rest))) if len(rest) else 0
+        if lifted > 0:
+            price = cost(rest) / lifted
+            if found is None or price < found[0]:
+                found = price, number
+    return None if found is None else found[1]
+
+
+def _alike(
+    matrix: Matrix,
+    kept: Ints,
+    drops: list[Drop],
+    functions: Functions,
+    atoms: Sequence[Placed],
+    tolerance: float,
+) -> tuple[Ints, list[Drop]]:
+    """The same with one function dropped on like atoms instead of its twin on some of them.
+
+    So it is where that does as well: which of twins goes is a matter of chance.
+    """
+    contents = [_content(atom) for atom in atoms]
+    counts = Counter((contents[drop.like], drop.shell, drop.column) for drop in drops)
+    found = list(drops)
+    for place, drop in enumerate(drops[:SWAPPED]):
+        content = contents[drop.like]
+        if counts[content, drop.shell, drop.column] == contents.count(content):
+            continue  # it goes everywhere
+        on = functions.atom == drop.like
+        gone = on & (functions.shell == drop.shell) & (functions.column == drop.column)
+        for (other, shell, column), count in counts.most_common():
+            if other != content or count < counts[content, drop.shell, drop.column]:
+                continue
+            twin = on & (functions.shell == shell) & (functions.column == column)
+            if not np.isin(np.flatnonzero(twin), kept).all():
+                continue  # gone from this atom already
+            if functions.l[twin][0] != functions.l[gone][0]:
+                continue
+            rest = np.union1d(np.setdiff1d(kept, np.flatnonzero(twin)), np.flatnonzero(gone))
+            if len(chosen(matrix, tolerance, rest)) == len(rest):
+                exponent = float(functions.exponent[twin][0])
+                found[place] = drop._replace(shell=shell, column=column, exponent=exponent)
+                counts[content, drop.shell, drop.column] -= 1
+                counts[content, shell, column] += 1
+                kept = rest
+                break
+    return kept, found
 
 
 def _owners(functions: Functions, atoms: Sequence[Placed], per: str) -> tuple[Ints, Ints]:

@@ -1,8 +1,9 @@
 """Condition of an overlap matrix, by the cheapest algorithm that is sufficient.
 
-Small matrices: all eigenvalues.  Large ones: the largest by Lanczos, the smallest by Lanczos on the
-inverse, applied through one Cholesky factor; functions below each step of the ladder are counted by
-inertia (`inertia`), and only where the smallest eigenvalue says that there are any.
+Small matrices: all eigenvalues, and of middling ones too where any are to be counted.  Large ones:
+the largest by Lanczos, the smallest by Lanczos on the inverse, applied through one Cholesky factor;
+functions below each step of the ladder are counted by inertia (`inertia`), and only where the
+smallest eigenvalue says that there are any.
 
 Formula: the smallest eigenvalue of any principal submatrix is an upper bound of that of the
 matrix (interlacing; R. A. Horn, C. R. Johnson, Matrix Analysis, chapter 4).  The submatrix of the
@@ -12,7 +13,7 @@ All functions take real symmetric and complex Hermitian matrices, shape (n, n).
 """
 
 from collections.abc import Callable, Sequence
-from typing import Any, NamedTuple
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -20,10 +21,12 @@ from scipy.linalg import eigh, eigvalsh, get_lapack_funcs
 from scipy.sparse.linalg import ArpackError, LinearOperator, eigsh
 
 from overlapse.grammar.model import Floats
+from overlapse.rules.physics.blocks import Blocked
 from overlapse.rules.physics.inertia import Matrix, Part, counts_below, factored, shifted
 
 LADDER = (1e-4, 1e-5, 1e-6, 1e-7, 1e-8)
 SMALL = 700  # up to this size all eigenvalues are the cheapest way
+MIDDLE = 1800  # up to this size they are where some have to be counted (tests/bench/overlap.py)
 COPIES = 2.5  # of a dense matrix: what its spectrum takes at most, itself included
 DIFFUSE = (0.3, 0.6)  # bohr**-2: functions below are tried first
 
@@ -53,7 +56,8 @@ class Verdict(NamedTuple):
 def spectrum(matrix: Matrix, ladder: Sequence[float] = LADDER) -> Spectrum:
     """Smallest and largest eigenvalue, condition number, and counts below each step."""
     n = len(matrix)
-    if n <= SMALL:
+    # One Cholesky factor, which is cheap, says whether there is anything to count.
+    if n <= SMALL or (n <= MIDDLE and ladder and not _definite(matrix, max(ladder), None)):
         return _from_all(eigvalsh(matrix), ladder)
     low, high = smallest(matrix), largest(matrix)
     needed = [step for step in ladder if step > low]
@@ -68,9 +72,9 @@ def spectrum(matrix: Matrix, ladder: Sequence[float] = LADDER) -> Spectrum:
 
 
 def spectrum_of_sparse(
-    matrix: Any, exponents: Floats, *, memory: int, ladder: Sequence[float] = LADDER
+    matrix: Blocked, exponents: Floats, *, memory: int, ladder: Sequence[float] = LADDER
 ) -> Spectrum:
-    """As `spectrum`, of a `scipy.sparse` matrix, within so many bytes.
+    """As `spectrum`, of a matrix in blocks, within so many bytes.
 
     Where the dense matrix and its factor fit, they are made: sparse factors fill up and are slower.
     Else the most diffuse functions that fit are judged alone: then ``smallest`` is an upper bound,
@@ -80,9 +84,9 @@ def spectrum_of_sparse(
     n = matrix.shape[0]
     fits = int((memory / (COPIES * 8)) ** 0.5)
     if n <= fits:
-        return spectrum(matrix.toarray(), ladder)
+        return spectrum(matrix.dense(), ladder)
     order = np.sort(np.argsort(exponents, kind="stable")[:fits])
-    part = spectrum(matrix[order][:, order].toarray(), ladder)
+    part = spectrum(matrix.dense(order), ladder)
     high = _largest(matrix)
     return Spectrum(
         part.smallest,
@@ -147,9 +151,10 @@ def largest(matrix: Matrix) -> float:
     return float(eigvalsh(matrix)[-1]) if len(matrix) else 1.0
 
 
-def _largest(matrix: Any) -> float:
-    start = _start(matrix.shape[0], matrix.dtype)
-    return float(eigsh(matrix, 1, which="LA", v0=start, tol=1e-6, return_eigenvectors=False)[0])
+def _largest(matrix: Blocked) -> float:
+    start = _start(matrix.shape[0], np.float64)
+    product = LinearOperator(matrix.shape, matvec=matrix.__matmul__, dtype=np.float64)
+    return float(eigsh(product, 1, which="LA", v0=start, tol=1e-6, return_eigenvectors=False)[0])
 
 
 def smallest(matrix: Matrix, among: Part | None = None) -> float:
@@ -211,16 +216,23 @@ def _start(n: int, dtype: npt.DTypeLike) -> Matrix:
     return np.random.default_rng(n).normal(size=n).astype(dtype)
 
 
-def lowest(matrix: Matrix, below: float) -> tuple[Floats, Matrix]:
-    """All eigenvalues below a limit, rising, shape (k,), and their vectors, shape (n, k)."""
+def lowest(matrix: Matrix, below: float, count: int | None = None) -> tuple[Floats, Matrix]:
+    """Eigenvalues below a limit, rising, shape (k,), and their vectors, shape (n, k).
+
+    count: so many of them, the smallest, where it is known that there are that many; all if None.
+    """
     n = len(matrix)
     if n > SMALL:
-        counts = counts_below(matrix, [below])
-        if counts is not None and counts[below] == 0:
+        if count is None:
+            counts = counts_below(matrix, [below])
+            count = None if counts is None else counts[below]
+        if count == 0:
             return np.zeros(0), np.zeros((n, 0), dtype=matrix.dtype)
-        if counts is not None and counts[below] <= n // 60:
-            found = _inverse_lanczos(matrix, counts[below])
+        if count is not None and count <= n // 30:
+            found = _inverse_lanczos(matrix, count)
             if found is not None and found[0][-1] < below:
                 return found
-    values, vectors = eigh(matrix, subset_by_value=(-np.inf, below))
+    some = (-np.inf, below) if count is None else None
+    first = None if count is None else (0, count - 1)
+    values, vectors = eigh(matrix, subset_by_value=some, subset_by_index=first)
     return np.asarray(values, dtype=float), vectors

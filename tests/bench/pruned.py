@@ -21,9 +21,10 @@ import outlook_sets
 from builders import System, placed, places
 from hosts import TOLERANCE, Run, field_of, general, removed, solved
 
-from overlapse.rules.physics.integrals import overlap
+from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.placed import lay_out
 from overlapse.rules.physics.pruning import chosen, shells_to_drop
+from overlapse.rules.physics.worth import worth_of
 
 PRUNING = 1e-7
 SETS = {
@@ -75,10 +76,15 @@ def ways_of(system: System) -> list[Pruned]:
     eri = molecule.intor("int2e", aosym="s8")
     reference = removed(system, molecule, eri)[0]
     whole = general(system, molecule, eri)
+    worth = worth_of(
+        atoms, matrix, kinetic(atoms), charge=system.charge, unpaired=system.spin or None
+    )
     ways = {
         "functions": chosen(matrix, PRUNING),
         "shells, atom by atom": shells_to_drop(matrix, functions, atoms, PRUNING, "atom").kept,
-        "shells of the element": shells_to_drop(matrix, functions, atoms, PRUNING).kept,
+        "shells of the element": shells_to_drop(
+            matrix, functions, atoms, PRUNING, cost=None if worth is None else worth.loss
+        ).kept,
     }
     found: list[Pruned] = []
     for way, kept in ways.items():
@@ -94,6 +100,7 @@ def ways_of(system: System) -> list[Pruned]:
             f"{end.energy:.6f}" if end.converged else "-",
             f"{end.energy - reference.energy:+.1e}",
             f"{end.energy - whole.energy:+.1e}" if whole.converged else "-",
+            f"{worth.loss(kept):.1e}" if worth is not None else "-",
         )
         against = whole if whole.converged else reference
         moved = abs(end.energy - against.energy)
@@ -103,7 +110,7 @@ def ways_of(system: System) -> list[Pruned]:
 
 HEAD = (
     "| system | pruned by | functions | smallest before | after | energy "
-    "| less that with removal | less that of all functions |\n" + "|---" * 8 + "|"
+    "| less that with removal | less that of all functions | foretold |\n" + "|---" * 9 + "|"
 )
 
 

@@ -1,13 +1,11 @@
 """Pruned files: every layout loses the functions that are named and nothing else."""
 
-from pathlib import Path
-
 import pytest
 
 from overlapse.grammar.layouts import layouts
 from overlapse.grammar.model import Block, Document
 from overlapse.grammar.reading import read_bytes, read_text
-from overlapse.lint.pruned import Marked, PruneError, pruned_text, write_files
+from overlapse.lint.pruned import Marked, PruneError, encoded, pruned_text
 
 TEXT = """! an invented set, made for this test
 ! its second comment
@@ -100,21 +98,7 @@ def test_an_element_is_never_emptied() -> None:
 
 
 def test_other_encodings_are_kept() -> None:
-    from overlapse.lint.pruned import _encoded
-
     data = TEXT.replace("invented", "erfundenes, für Tests").encode("latin-1")
     document = read_bytes(data, "latin.basis")
     pruned, _ = pruned_text(document, _marks(document, "H", "s-2", 0))
-    assert _encoded(document, pruned) == data.replace(b"S 1 1.00\n  0.0300 1.0\n", b"")
-
-
-def test_files_are_never_written_over_what_they_come_from(tmp_path: Path) -> None:
-    original = tmp_path / "c.basis"
-    original.write_text(TEXT)
-    with pytest.raises(PruneError, match="another folder"):
-        write_files(tmp_path, [(str(original), b"x")])
-    with pytest.raises(PruneError, match="same name"):
-        write_files(tmp_path / "new", [("a/c.basis", b"x"), ("b/c.basis", b"y")])
-    assert original.read_text() == TEXT
-    (written,) = write_files(tmp_path / "new", [(str(original), b"x")])
-    assert written.read_bytes() == b"x"
+    assert encoded(document, pruned) == data.replace(b"S 1 1.00\n  0.0300 1.0\n", b"")

@@ -235,7 +235,9 @@ def test_pruned_files_are_written_and_sound(folder: Path) -> None:
     done = run(*arguments, "--write", folder / "pruned")
     assert done.returncode == 1
     written = folder / "pruned" / "twins.basis"
-    assert str(written) in done.stderr
+    assert [path.name for path in written.parent.iterdir()] == ["twins.basis"]  # of both atoms
+    assert f"written: {written}, without H s-" in done.stderr
+    assert "hartree" in done.stderr
     lines = written.read_text().splitlines()
     assert len(lines) == len(BASIS.splitlines()) - 2
     (screen,) = _screens(written, "--on", folder / "water.xyz")

@@ -188,7 +188,11 @@ def test_large_matrices(
     matrix = _made(values, complex_)
     exact = np.linalg.eigvalsh(matrix)
     monkeypatch.setattr(condition, "SMALL", 0)
+    middling = spectrum(matrix)
+    assert (middling.method == "all eigenvalues") == (exact[0] < 1e-4)
+    monkeypatch.setattr(condition, "MIDDLE", 0)
     found = spectrum(matrix)
+    assert found.below == middling.below
     assert found.smallest == pytest.approx(exact[0], rel=1e-4, abs=3e-15)
     assert found.largest == pytest.approx(exact[-1], rel=1e-6)
     assert found.below == {step: int((exact < step).sum()) for step in condition.LADDER}
@@ -210,6 +214,7 @@ def test_large_overlap_matrices(monkeypatch: pytest.MonkeyPatch) -> None:
         matrix = overlap(atoms)
         exact = np.linalg.eigvalsh(matrix)
         monkeypatch.setattr(condition, "SMALL", 0)
+        monkeypatch.setattr(condition, "MIDDLE", 0)
         found = spectrum(matrix)
         assert found.method.startswith("Cholesky")
         assert found.below == {step: int((exact < step).sum()) for step in condition.LADDER}
@@ -248,7 +253,7 @@ def test_two_atoms_at_one_place() -> None:
     found = spectrum(matrix)
     assert found.below == dict.fromkeys(condition.LADDER, 24)
     assert len(chosen(matrix, 1e-7)) == 24
-    sparse = sparse_overlap([*atoms, *atoms], drop=1e-14).matrix.toarray()
+    sparse = sparse_overlap([*atoms, *atoms], drop=1e-14).matrix.dense()
     assert np.abs(sparse - matrix).max() < 1e-13
 
 

@@ -76,7 +76,7 @@ def test_sparse_form() -> None:
     molecule = gto.M(atom=chain, basis="cc-pvdz", unit="B", verbose=0)
     ours = placed(molecule)
     found = sparse_overlap(ours, drop=1e-8)
-    full = found.matrix.toarray()
+    full = found.matrix.dense()
     expected = unit_diagonal(molecule.intor("int1e_ovlp"), molecule)
     assert found.matrix.nnz < 0.5 * full.size
     assert np.abs(in_its_order(full, molecule, ours) - expected).max() < 1e-8

@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 
 from overlapse.grammar.model import Block, Shell
+from overlapse.rules.physics import blocks
 from overlapse.rules.physics.blocks import sparse_overlap
 from overlapse.rules.physics.integrals import (
     TooLarge,
@@ -73,6 +74,28 @@ def _cloud(count: int) -> list[Placed]:
     dice = np.random.default_rng(2)
     places = dice.uniform(0.0, 3.0 * count ** (1 / 3), (count, 3))
     return [Placed(MIXED, (float(x), float(y), float(z))) for x, y, z in places]
+
+
+@pytest.mark.parametrize("rows", [5, 100, 3000])
+def test_blocks_of_any_size_hold_one_matrix(rows: int, monkeypatch: pytest.MonkeyPatch) -> None:
+    atoms = [*_cloud(30), Placed(Block(1, (Shell((0,), [1.0], [[1.0]]),)), ORIGIN)]
+    atoms.insert(7, Placed(Block(2, ()), (1.0, 0.0, 0.0)))  # a centre without functions
+    full = overlap(atoms)
+    monkeypatch.setattr(blocks, "ROWS", rows)
+    seen: list[float] = []
+    found = sparse_overlap(atoms, drop=1e-6, progress=seen.append)
+    assert seen[-1] == pytest.approx(1.0)
+    dense = found.matrix.dense()
+    assert np.array_equal(dense, np.where(np.abs(full) >= 1e-6, dense, 0.0))
+    assert dense == pytest.approx(full, abs=1e-6)
+    assert found.matrix.nnz == np.count_nonzero(dense)
+    assert found.matrix.shape == full.shape
+    left_out = np.abs(np.where(dense == 0.0, full, 0.0)).sum(axis=1)
+    assert left_out.max() <= found.bound
+    some = np.array([0, 3, 12, 110, 200, 330])
+    assert np.array_equal(found.matrix.dense(some), dense[np.ix_(some, some)])
+    vector = np.random.default_rng(1).normal(size=len(full))
+    assert found.matrix @ vector == pytest.approx(dense @ vector, abs=1e-12)
 
 
 def test_a_dense_matrix_needs_numpy_alone() -> None:

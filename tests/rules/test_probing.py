@@ -66,14 +66,14 @@ def test_the_twin_is_blamed_and_dropped() -> None:
 
 
 def test_what_is_dropped_is_a_shell_on_all_atoms_or_on_one() -> None:
-    (whole,) = _probes(TWINS, H2, Wanted(tolerance=4e-6))
+    (whole,) = _probes(TWINS, H2, Wanted(tolerance=4e-6, per_atom=False))
     assert [(part.function.element, part.atom) for part in whole.drop] == [("H", 0)]
     assert whole.drop[0].function.shell in ("s-2", "s-3")
     assert whole.after is not None
     assert whole.after.functions == 10
     # What is left is a principal submatrix, so it cannot be worse; the choice makes it sound.
     assert whole.after.smallest > max(1e-5, whole.smallest)
-    (single,) = _probes(TWINS, H2, Wanted(tolerance=4e-6, per_atom=True))
+    (single,) = _probes(TWINS, H2, Wanted(tolerance=4e-6))
     assert len(single.drop) == 1
     assert single.drop[0].atom in (1, 2)
     assert single.after is not None
@@ -258,3 +258,48 @@ def test_what_does_not_fit_is_judged_by_its_diffuse_functions(
         assert count <= whole.spectrum.below[step]
     assert bound.spectrum.largest == pytest.approx(whole.spectrum.largest, rel=1e-4)
     assert bound.culprit == whole.culprit
+
+
+@pytest.mark.parametrize(
+    ("kind", "cell", "per_atom", "peak"),
+    [
+        ("spherical", "", True, 2.5),
+        ("spherical", "", False, 2.5),
+        ("cartesian", "", True, 2.5),
+        # Two of the three are complex, twice as wide.
+        ("cartesian", 'Lattice="41 0 0 0 41 0 0 0 60"', True, 5.0),
+    ],
+)
+def test_no_more_memory_than_is_told_on_any_path(
+    kind: str, cell: str, per_atom: bool, peak: float, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """From the matrix to eigenvalues, shares, what to drop and the spherical counterpart."""
+    import tracemalloc
+
+    from overlapse.rules.measured import probing
+    from overlapse.rules.physics import integrals, lattice, spectrum
+
+    monkeypatch.setattr(spectrum, "SMALL", 200)  # the ways of large matrices
+    monkeypatch.setattr(spectrum, "MIDDLE", 200)
+    monkeypatch.setattr(probing, "affordable", lambda *_: False)
+    monkeypatch.setattr(lattice, "IMAGES", 10_000)  # buffers count little where much is done
+    monkeypatch.setattr(integrals, "BATCH", 50_000)
+    shells = "".join(f"S 1 1.0\n {a} 1.0\n" for a in (1.0, 0.4, 0.16, 0.06))
+    shells += "".join(f"{l} 1 1.0\n {a} 1.0\n" for l in "PD" for a in (0.8, 0.2))
+    document = read_text(f"H 0\n{shells}****\n")
+    (members,) = document.sets
+    blocks = tuple(replace(block, functions=kind) for block in members.blocks)
+    document = replace(document, sets=(replace(members, blocks=blocks),))
+    rows = [f"H {1.7 * x:.2f} {1.7 * y:.2f} 0" for x in range(7) for y in range(7)]
+    geometry = f"{len(rows)}\n{cell or 'layer'}\n" + "\n".join(rows) + "\n"
+    wanted = Wanted(tolerance=1e-4, per_atom=per_atom, mesh=(2, 1, 1), values=True)
+    small = f"2\n{cell or 'layer'}\n" + "\n".join(rows[:2]) + "\n"
+    probed(document, small, wanted)  # tables that stay
+    tracemalloc.start()
+    (probe,) = probed(document, geometry, wanted).probes
+    found = tracemalloc.get_traced_memory()[1]
+    tracemalloc.stop()
+    assert probe.drop
+    assert (probe.counterpart is None) == (kind == "spherical")
+    size = probe.spectrum.functions
+    assert found < peak * 8 * size**2, found / 8 / size**2
