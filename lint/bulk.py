@@ -167,7 +167,7 @@ def _sent(
 
 def _kept(job: Job, judge: "_Judge", cache: "Cache | None") -> FileAudit | None:
     """The result that was kept for a file, or None."""
-    if cache is None:
+    if cache is None or not job.size:  # what has no size may be a pipe, which is read but once
         return None
     path = os.fspath(job.target.path)
     try:

@@ -36,7 +36,8 @@ def main() -> None:
         click.echo("\nstopped; what was not finished was not written", err=True)
         sys.exit(STOPPED)
     except SettingsError as problem:
-        click.echo(f"error: {problem}", err=True)
+        for line in str(problem).split("\n"):
+            click.echo(f"error: {line}", err=True)
         sys.exit(MISUSED)
     except BrokenPipeError:
         # The reader of our output has gone, which is its right.

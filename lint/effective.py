@@ -5,19 +5,24 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any, NamedTuple
 
 from overlapse.grammar.elements import symbol_of
-from overlapse.lint.settings import file_for
+from overlapse.lint.ledger import NAME
+from overlapse.lint.neighbours import SEAL
+from overlapse.lint.settings import file_for, nearest
 from overlapse.rules.registry import rules
 
 if TYPE_CHECKING:
     from overlapse.lint.settingsfile import Assignment, SettingsFile
 
 DEFAULT = "default"
+NEAREST = "the nearest above"
+_BY_NAME = {"seal": SEAL, "ledger": NAME}
 
 
 class Effective(NamedTuple):
     """A setting that holds: its name, its value, the elements it is for, where it came from.
 
-    elements: symbols, empty for all.  origin: file and line, or "default".
+    elements: symbols, empty for all.  origin: file and line, "default", or
+    "the nearest above" for a file that holds by its name.
     """
 
     name: str
@@ -40,7 +45,7 @@ def effective(path: Path) -> list[Effective]:
             name = ".".join(one.key)
             made.pop((name, one.elements), None)
             made[name, one.elements] = one, file.where(one.at)
-    found = [*_plain(file), *_lists(file, resolved), *_of_rules()]
+    found = [*_plain(file, folder / path.name), *_lists(file, resolved), *_of_rules()]
     for (name, numbers), (one, origin) in made.items():
         symbols = tuple(map(symbol_of, sorted(numbers or ())))
         replaced = [at for at, old in enumerate(found) if old.name == name and not old.elements]
@@ -52,16 +57,18 @@ def effective(path: Path) -> list[Effective]:
     return found
 
 
-def _plain(file: "SettingsFile | None") -> Iterator[Effective]:
+def _plain(file: "SettingsFile | None", path: Path) -> Iterator[Effective]:
     yield Effective("fail-at", "warning", (), DEFAULT)
     yield Effective("label", None, (), DEFAULT)
     yield Effective("layout", None, (), DEFAULT)
     for name in ("reference", "seal", "ledger"):
         value = getattr(file.keys, name) if file is not None else None
-        if file is None or value is None:
-            yield Effective(name, None, (), DEFAULT)
-        else:
+        if file is not None and value is not None:
             yield Effective(name, str(file.folder / value), (), file.where(name))
+        elif name in _BY_NAME and (place := nearest(_BY_NAME[name], path)) is not None:
+            yield Effective(name, str(place), (), NEAREST)
+        else:
+            yield Effective(name, None, (), DEFAULT)
 
 
 def _lists(file: "SettingsFile | None", path: Path) -> Iterator[Effective]:

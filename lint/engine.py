@@ -10,6 +10,7 @@ from overlapse.grammar import plugins
 from overlapse.grammar.model import Document
 from overlapse.grammar.reading import read_bytes, read_source
 from overlapse.grammar.source import Source
+from overlapse.lint import tree
 from overlapse.lint.fingerprint import marked
 from overlapse.lint.neighbours import Beside, furnish
 from overlapse.lint.settings import Settings, settings_for
@@ -71,7 +72,8 @@ class FileAudit:
     accepted: findings that do not count, because the file or the settings say why.  known:
     findings that do not count, because a ledger holds them; gone: its entries that were found no
     more.  absent: the file is only in the ledger.  probes: what was measured of it in geometries.
-    silent: rules that could find nothing, because they are off or lack what they need.
+    silent: rules that could find nothing, because they are off or lack what they need.  is_basis:
+    False for a settings file.
     """
 
     path: str
@@ -92,6 +94,7 @@ class FileAudit:
     absent: bool = False
     probes: tuple[Probe, ...] = ()
     silent: frozenset[str] = frozenset()
+    is_basis: bool = True
 
     @property
     def fails(self) -> bool:
@@ -125,17 +128,21 @@ def audit(*paths: str | os.PathLike[str], label: str | None = None, layout: str 
           settings: Settings | None = None, energies: bool = False) -> list[Finding]:  # fmt: skip
     """Judge files and folders; return all findings, in the order of the paths and of the text.
 
+    Last come acceptances of settings files that were of no use.
+
     label: what the sets are called, over what the files say.  layout: read as this layout instead
     of finding it by content.  settings: used for all files instead of those found above them.
     energies: also compute the atoms, which takes seconds for a file of many elements.
     Raises OSError for a path that cannot be opened, ValueError for an unknown layout, SettingsError
     for settings that cannot be used.
     """
+    from overlapse.lint.unused import with_unused
+
     findings: list[Finding] = []
     found = list(targets(map(Path, paths)))
     options = Options(label, layout, settings, Beside([t.path for t in found]), energies)
-    for target in found:
-        result = audited(target, options)
+    folders = [path for path in map(Path, paths) if path.is_dir()]
+    for result in with_unused((audited(target, options) for target in found), folders):
         if result.problem:
             raise OSError(result.problem)
         findings += result.findings
@@ -156,13 +163,18 @@ def targets(
         trouble(f"{problem.filename}: {problem.strerror}")
 
     for path in paths:
-        if not path.is_dir():
+        if not tree.is_folder(path):
             yield Target(path, False)
+            continue
+        if (stage := tree.stage()) is not None:
+            yield from (
+                Target(path / file, True) for file in stage.below(path) if is_searched(file)
+            )
             continue
         for folder, names, files in os.walk(path, onerror=stop):
             names[:] = sorted(name for name in names if not name.startswith("."))
             for name in sorted(files):
-                if is_searched(Path(name)):
+                if is_searched(Path(name)) and not tree.is_special(os.path.join(folder, name)):
                     yield Target(Path(folder, name), True)
 
 
@@ -270,7 +282,7 @@ def judge(
         layout=document.layout,
         elements=len({block.atomic_number for block in document.blocks}),
         blocks=len(document.blocks),
-        excerpts=_excerpts(findings, document.source),
+        excerpts=excerpts(findings, document.source),
         accepted=accepted,
         probes=case.probes,
         silent=frozenset(n for n in rules() if n not in case.found or not can_find(case, n)),
@@ -311,7 +323,7 @@ def _accepted(case: Case, findings: list[Finding], settings: Settings) -> Iterat
             yield Accepted(finding, covering.reason, covering.where)
 
 
-def _excerpts(findings: Iterable[Finding], source: Source) -> dict[tuple[int, int], Excerpt]:
+def excerpts(findings: Iterable[Finding], source: Source) -> dict[tuple[int, int], Excerpt]:
     """Lines that findings point at; of a long line what stands around the place."""
     found: dict[tuple[int, int], Excerpt] = {}
     for finding in findings:

@@ -11,9 +11,10 @@ from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import Any
 
+from overlapse.lint import tree
 from overlapse.lint.atomic import write_bytes
-from overlapse.lint.engine import FileAudit
-from overlapse.lint.settings import Settings, SettingsError, nearest
+from overlapse.lint.engine import FileAudit, Target
+from overlapse.lint.settings import Settings, SettingsError, nearest, settings_for
 from overlapse.rules.finding import Finding
 
 NAME = "overlapse.ledger.json"
@@ -24,10 +25,14 @@ Entry = Mapping[str, Any]
 
 @dataclass
 class Ledger:
-    """Known findings by file (paths relative to the ledger's folder, with forward slashes)."""
+    """Known findings by file (paths relative to the ledger's folder, with forward slashes).
+
+    energies: whether the atoms of all files were computed when they were recorded.
+    """
 
     path: Path
     files: dict[str, list[Entry]] = field(default_factory=dict)
+    energies: bool = True
 
     def name_of(self, file: str) -> str:
         """How a file is called in this ledger."""
@@ -37,7 +42,7 @@ class Ledger:
 
     def sifted(self, audit: FileAudit) -> FileAudit:
         """The audit with known findings set apart, and those that are gone listed."""
-        if audit.problem:
+        if audit.problem or not audit.is_basis:
             return audit
         entries = self.files.get(self.name_of(audit.path), [])
         left = {entry["fingerprint"]: entry for entry in entries}
@@ -69,9 +74,11 @@ class Ledger:
 
     def write(self) -> None:
         """Write the ledger, atomically and in an order that does not change by itself."""
-        table = {"version": VERSION, "files": dict(sorted(self.files.items()))}
+        files = dict(sorted(self.files.items()))
+        table = {"version": VERSION, "energies": self.energies, "files": files}
         text = json.dumps(table, indent=1, ensure_ascii=False)
-        write_bytes(self.path, (text + "\n").encode("utf-8", "surrogateescape"))
+        # What becomes of bytes in a name that are no text is an escape of JSON as well.
+        write_bytes(self.path, (text + "\n").encode("utf-8", "backslashreplace"))
 
     @property
     def count(self) -> int:
@@ -85,13 +92,16 @@ def _entry(finding: Finding) -> Entry:
 def read(path: Path) -> Ledger:
     """Read a ledger; raises SettingsError for a file that is none."""
     try:
-        table = json.loads(path.read_text("utf-8"))
+        table = json.loads(tree.text(path))
         if table["version"] != VERSION:
             raise SettingsError(f"{path}: a ledger of version {table['version']}, not {VERSION}")
         files: dict[str, list[Entry]] = {
             str(name): [{**entry, "fingerprint": str(entry["fingerprint"])} for entry in entries]
             for name, entries in table["files"].items()
         }
+        energies = table.get("energies", True)
+        if not isinstance(energies, bool):
+            raise ValueError("energies is neither true nor false")
     except OSError as problem:
         raise SettingsError(f"{path}: {problem.strerror or problem}") from None
     except (ValueError, KeyError, TypeError, AttributeError) as problem:
@@ -101,7 +111,7 @@ def read(path: Path) -> Ledger:
             f"{path}: this is no ledger ({type(problem).__name__}: {problem}); "
             "`overlapse audit --write-ledger` makes a new one"
         ) from None
-    return Ledger(path, files)
+    return Ledger(path, files, energies)
 
 
 def place_for(path: str, settings: Settings) -> Path | None:
@@ -123,6 +133,26 @@ class Sieve:
         ledger = self._ledger(self.given or place_for(audit.path, audit.settings))
         return audit if ledger is None else ledger.sifted(audit)
 
+    def without_energies(self, targets: Iterable[Target]) -> bool:
+        """Whether a file's ledger was written without computing the atoms.
+
+        What they would show may have been there all along, and is not new.
+        """
+        for target in targets:
+            # What comes by standard input has no ledger yet; its name is told later.
+            if target.path == Path("-"):
+                continue
+            path = os.fspath(target.path)
+            ledger = self._ledger(self.given or place_for(path, settings_for(path)))
+            if ledger is not None and not ledger.energies:
+                return True
+        return False
+
+    @property
+    def ledgers(self) -> tuple[Ledger, ...]:
+        """Those that were used."""
+        return tuple(self._used.values())
+
     def absent(self, folders: Iterable[Path]) -> Iterator[FileAudit]:
         """One audit for each file below the folders that a ledger knows and that is no more."""
         roots = [os.path.realpath(folder) + os.sep for folder in folders]
@@ -132,26 +162,29 @@ class Sieve:
             for name, entries in ledger.files.items():
                 path = ledger.path.parent / name
                 below = os.path.realpath(path).startswith(tuple(roots))
-                if below and not path.exists():
+                if below and not tree.is_file(path):
                     yield FileAudit(str(path), absent=True, gone=tuple(entries))
 
     def _ledger(self, place: Path | None) -> Ledger | None:
-        if place is None or not (place == self.given or place.is_file()):
+        if place is None or not (place == self.given or tree.is_file(place)):
             return None
         if place not in self._used:
             self._used[place] = read(place)
         return self._used[place]
 
 
-def write(audits: Iterable[FileAudit], given: Path | None = None) -> list[Ledger]:
+def write(
+    audits: Iterable[FileAudit], given: Path | None = None, *, energies: bool = True
+) -> list[Ledger]:
     """Record all findings in the ledgers that hold for their files, ``given`` or new ones.
 
     A new ledger is made beside the settings file, or where there is none in the current folder.
-    Raises OSError where one cannot be written.
+    energies: whether the atoms were computed.  Raises OSError where one cannot be written.
     """
     ledgers: dict[Path, Ledger] = {}
+    left: dict[Path, set[str]] = {}  # what they held of files that are not recorded anew
     for audit in audits:
-        if audit.problem or audit.path == "<stdin>":
+        if audit.problem or audit.path == "<stdin>" or not audit.is_basis:
             continue
         place = given or place_for(audit.path, audit.settings)
         if place is None:
@@ -159,8 +192,11 @@ def write(audits: Iterable[FileAudit], given: Path | None = None) -> list[Ledger
             place = (origin.parent if origin is not None else Path.cwd()) / NAME
         if place not in ledgers:
             ledgers[place] = read(place) if place.is_file() else Ledger(place)
+            left[place] = set(ledgers[place].files)
         ledgers[place].take(audit)
-    for ledger in ledgers.values():
-        ledger.without_lost_files()
+        left[place].discard(ledgers[place].name_of(audit.path))
+    for place, ledger in ledgers.items():
+        left[place].difference_update(ledger.without_lost_files())
+        ledger.energies = energies and (ledger.energies or not left[place])
         ledger.write()
     return list(ledgers.values())

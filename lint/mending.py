@@ -105,6 +105,12 @@ def mend(
     return Mended(work.encoded(), tuple(work.done), tuple(work.refused.values()), work.audit)
 
 
+def is_safe(finding: Finding) -> bool:
+    """Whether a finding proposes a repair that changes no number."""
+    textual = finding.rule in ("form.ending", "form.encoding")
+    return finding.rule in SAFE and bool(finding.edits or textual)
+
+
 def _repairs(audit: FileAudit, also: Collection[str]) -> list[Repair]:
     """The repairs that an audit's findings propose; the safe ones first and alone."""
     assert audit.document is not None

@@ -4,8 +4,9 @@ Sets of other files are found by label before anything is read: by the name of t
 small audits also by what its first lines say.  Only candidates are read, few are kept.
 """
 
+import os
 import re
-from collections.abc import Iterable, Sequence
+from collections.abc import Hashable, Iterable, Sequence
 from functools import lru_cache
 from pathlib import Path, PurePath
 
@@ -16,7 +17,8 @@ from overlapse.grammar.designation import (
     parse_label,
 )
 from overlapse.grammar.model import Document
-from overlapse.grammar.reading import read
+from overlapse.grammar.reading import read_bytes
+from overlapse.lint import tree
 from overlapse.lint.settings import Settings, SettingsError, nearest
 from overlapse.rules.case import Case
 
@@ -32,7 +34,7 @@ _QUOTED = re.compile(r"[\"'](?:[A-Za-z]{1,3}_)?([^\"'\s]+)[\"']")
 
 def seal_for(path: Path, settings: Settings) -> Path | None:
     """The seal file that holds for a file or folder: the settings', else the nearest above it."""
-    return settings.seal or nearest(SEAL, path / SEAL if path.is_dir() else path)
+    return settings.seal or nearest(SEAL, path / SEAL if tree.is_folder(path) else path)
 
 
 # ---- the other files of an audit
@@ -80,9 +82,10 @@ def _designations(path: Path, closely: bool) -> Iterable[Designation]:
 
 def _labels_in_head(path: Path) -> list[str | None]:
     """Labels that the first lines of a file name, by themselves or in a heading's quotes."""
+    if not tree.is_file(path):
+        return []  # of a pipe nothing would be left for the audit
     try:
-        with path.open("rb") as stream:
-            head = stream.read(_HEAD).decode("utf-8", "replace")
+        head = tree.content(path, _HEAD).decode("utf-8", "replace")
     except OSError:
         return []  # the audit tells of it
     found: list[str | None] = [match[1] for match in _QUOTED.finditer(head)]
@@ -93,15 +96,14 @@ def _labels_in_head(path: Path) -> list[str | None]:
 
 
 @lru_cache(maxsize=4)
-def _document(path: Path, changed: int, size: int) -> Document:
-    return read(path)
+def _document(path: Path, stamp: Hashable) -> Document:
+    return read_bytes(tree.content(path), os.fspath(path))
 
 
 def document_at(path: Path) -> Document | None:
     """A file's document, kept for the next who asks; None where it cannot be opened."""
     try:
-        stamp = path.stat()
-        return _document(path, stamp.st_mtime_ns, stamp.st_size)
+        return _document(path, tree.stamp(path))
     except OSError:
         return None
 
@@ -110,11 +112,11 @@ def document_at(path: Path) -> Document | None:
 
 
 @lru_cache(maxsize=8)
-def _reference_files(folder: Path) -> dict[str, tuple[Path, ...]]:
-    """The files of a reference folder by their names without endings."""
+def _reference_files(folder: Path, stage: Hashable) -> dict[str, tuple[Path, ...]]:
+    """The files of a reference folder by their names without endings; ``stage``: of the tree."""
     from overlapse.lint.engine import targets
 
-    if not folder.is_dir():
+    if not tree.is_folder(folder):
         raise SettingsError(f"{folder}: the settings name it as the reference; it is no folder")
 
     found: dict[str, tuple[Path, ...]] = {}
@@ -131,7 +133,7 @@ def reference_of(path: PurePath, folder: Path) -> Path | None:
     names before others.
     """
     ranked: dict[tuple[bool, int], list[Path]] = {}
-    for file in _reference_files(folder).get(path.stem.casefold(), ()):
+    for file in _reference_files(folder, tree.stage()).get(path.stem.casefold(), ()):
         same_name = file.name.casefold() == path.name.casefold()
         ranked.setdefault((same_name, _common_folders(path, file)), []).append(file)
     best = ranked[max(ranked)] if ranked else []

@@ -15,7 +15,7 @@ from overlapse.grammar import geometry as geometries
 from overlapse.grammar.geometry import Frame, Geometry, Unit
 from overlapse.grammar.model import Document, Fault
 from overlapse.grammar.reading import read_bytes
-from overlapse.lint import memory
+from overlapse.lint import memory, tree
 from overlapse.lint.choices import Shelf, Use, shelf
 from overlapse.lint.engine import FileAudit, at_least, judge
 from overlapse.lint.settings import Settings, settings_for
@@ -272,10 +272,13 @@ def screen_files(
     cannot be opened, ScreenError, `overlapse.lint.choices.ChoiceError` or
     `overlapse.grammar.geometry.GeometryError` for what cannot be screened.
     """
-    documents = [read_basis(path, path.read_bytes()) for path in basis]
-    chosen = [(use, read_basis(use.path, use.path.read_bytes())) for use in uses]
+    documents = [read_basis(path, tree.content(path)) for path in basis]
+    chosen = [(use, read_basis(use.path, tree.content(use.path))) for use in uses]
     made = shelf(documents, chosen, wanted=label, spherical=spherical)
-    read = [geometries.read(path, unit=unit) for path in geometry_files([geometry])]
+    read = [
+        geometries.read_bytes(tree.content(path), os.fspath(path), unit=unit)
+        for path in geometry_files([geometry])
+    ]
     found, audits = tasks(made, read)
     limit = memory.allowed()
     return screened(made, [measure(task, made, wanted, limit) for task in found], audits)

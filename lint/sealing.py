@@ -7,7 +7,7 @@ for each file its sets in order, with ``label`` and ``elements``; for each eleme
 
 import json
 import os
-from collections.abc import Iterable, Iterator, Mapping
+from collections.abc import Hashable, Iterable, Iterator, Mapping
 from dataclasses import dataclass
 from functools import lru_cache
 from pathlib import Path
@@ -16,6 +16,7 @@ from typing import Any, Literal, NamedTuple
 from overlapse.grammar.convention import over_normalised
 from overlapse.grammar.elements import number_of, symbol_of
 from overlapse.grammar.model import Document
+from overlapse.lint import tree
 from overlapse.lint.neighbours import SEAL, seal_for
 from overlapse.lint.settings import SettingsError, settings_for
 from overlapse.rules.compare.beside import Seal, SealedSet, belonging, seals_of
@@ -58,17 +59,13 @@ class SealFile:
 
 def load(path: Path) -> SealFile:
     """Read a seal file.  Raises SealError for one that cannot be read or is none."""
-    try:
-        stamp = path.stat()
-    except OSError as problem:
-        raise SealError(f"{path}: {problem.strerror or problem}") from None
-    return _loaded(path, stamp.st_mtime_ns, stamp.st_size)
+    return _loaded(path, tree.stamp(path))
 
 
 @lru_cache(maxsize=8)
-def _loaded(path: Path, changed: int, size: int) -> SealFile:
+def _loaded(path: Path, stamp: Hashable) -> SealFile:
     try:
-        plain = json.loads(path.read_text("utf-8"))
+        plain = json.loads(tree.text(path))
         version = plain["version"]
         if version != VERSION:
             raise SealError(f"{path}: version {version!r} of a seal; this program reads {VERSION}")

@@ -5,15 +5,16 @@ They are looked for from each checked file upwards: the nearest ``overlapse.toml
 """
 
 import os
-import stat
+import re
 import sys
-from collections.abc import Mapping
+from collections.abc import Hashable, Mapping
 from dataclasses import dataclass, field
 from functools import cache
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from overlapse.grammar.elements import number_of, symbol_of
+from overlapse.lint import tree
 from overlapse.rules.acceptance import Acceptance
 
 if TYPE_CHECKING:
@@ -121,7 +122,7 @@ def settings_for(path: str | os.PathLike[str]) -> Settings:
     Raises SettingsError for a file that is no TOML or holds a wrong key or value.
     """
     name = os.fspath(path)
-    folder, last = (name, "") if os.path.isdir(name) else os.path.split(name)
+    folder, last = (name, "") if tree.is_folder(name) else os.path.split(name)
     resolved = Path(os.path.realpath(folder))
     found = file_for(resolved)
     return Settings() if found is None else found.settings_for(resolved / last)
@@ -131,7 +132,7 @@ def nearest(name: str, path: str | os.PathLike[str]) -> Path | None:
     """The nearest file of a name in the folders above a path, or None."""
     for folder in _above(os.path.dirname(os.path.realpath(path))):
         place = os.path.join(folder, name)
-        if os.path.isfile(place):
+        if tree.is_file(place):
             return Path(place)
     return None
 
@@ -151,24 +152,19 @@ def file_for(folder: Path) -> "SettingsFile | None":
     for place in _above(str(folder)):
         for name, keys in (("overlapse.toml", ()), ("pyproject.toml", ("tool", "overlapse"))):
             path = os.path.join(place, name)
-            try:
-                seen = os.stat(path)
-            except OSError:
-                continue
-            if not stat.S_ISREG(seen.st_mode):
-                continue
-            found = _file(Path(path), keys, seen.st_mtime_ns, seen.st_size)
+            stamp = tree.stamp(path)
+            found = _file(Path(path), keys, stamp) if stamp is not None else None
             if found is not None:
                 return found
     return None
 
 
 @cache
-def _file(path: Path, keys: tuple[str, ...], time: int, size: int) -> "SettingsFile | None":
-    """A settings file as it was at a time; None for a project's file that says nothing to us."""
+def _file(path: Path, keys: tuple[str, ...], stamp: Hashable) -> "SettingsFile | None":
+    """A settings file, read once for each stamp; None for a project's that says nothing to us."""
     try:
         # Most projects do not mention us; theirs need not be taken apart.
-        if keys and b"overlapse" not in path.read_bytes():
+        if keys and b"overlapse" not in tree.content(path):
             return None
     except OSError as problem:
         raise SettingsError(f"{path}: {problem.strerror or problem}") from None
@@ -178,6 +174,18 @@ def _file(path: Path, keys: tuple[str, ...], time: int, size: int) -> "SettingsF
     from overlapse.lint.settingsfile import read
 
     return read(path, keys)
+
+
+_PLACE = re.compile(r"(.*) \(at (?:line (\d+), column (\d+)|end of document)\)", re.DOTALL)
+
+
+def _told(path: Path, problem: str) -> str:
+    """What a library says of a text that is no TOML, with its place in front."""
+    match = _PLACE.fullmatch(problem)
+    if match is None:
+        return f"{path}: {problem}"
+    line, column = match[2] or tree.text(path).count("\n") + 1, match[3] or 1
+    return f"{path}:{line}:{column}: this is no TOML: {match[1][:1].lower()}{match[1][1:]}"
 
 
 def table_of(path: Path, keys: tuple[str, ...]) -> dict[str, Any] | None:
@@ -190,11 +198,14 @@ def table_of(path: Path, keys: tuple[str, ...]) -> dict[str, Any] | None:
     else:
         import tomli as tomllib
     try:
-        found: Any = tomllib.loads(path.read_text("utf-8"))
+        found: Any = tomllib.loads(tree.text(path))
     except tomllib.TOMLDecodeError as problem:
-        raise SettingsError(f"{path}: {problem}") from None
-    except (UnicodeDecodeError, OSError) as problem:
-        raise SettingsError(f"{path}: {getattr(problem, 'strerror', '') or problem}") from None
+        raise SettingsError(_told(path, str(problem))) from None
+    except UnicodeDecodeError as problem:
+        line = problem.object.count(b"\n", 0, problem.start) + 1
+        raise SettingsError(f"{path}:{line}:1: this is no text in UTF-8") from None
+    except OSError as problem:
+        raise SettingsError(f"{path}: {problem.strerror or problem}") from None
     for key in keys:
         found = found.get(key) if isinstance(found, dict) else None
     if found is not None and not isinstance(found, dict):

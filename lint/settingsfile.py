@@ -12,6 +12,8 @@ from typing import Any, NamedTuple
 
 from pydantic import ValidationError
 
+from overlapse.grammar.source import Place
+from overlapse.lint import tree
 from overlapse.lint.patterns import matches
 from overlapse.lint.settings import Elementwise, Probe, Settings, SettingsError, table_of
 from overlapse.lint.settingskeys import Accept, Choices, Keys, told
@@ -54,6 +56,11 @@ class SettingsFile:
         found = _nearest(self.places, at)
         return f"{self.path}:{found.key.line}" if found else str(self.path)
 
+    def place_of(self, at: str) -> Place:
+        """Line and column of a key."""
+        found = _nearest(self.places, at)
+        return found.key if found else Place(1, 1)
+
     def settings_for(self, path: Path) -> Settings:
         """What holds for a file below this one's folder."""
         plain: dict[tuple[str, ...], Any] = {}
@@ -85,7 +92,7 @@ class SettingsFile:
         """The settings that the file makes for a path, in order: a later one wins."""
         yield from _assignments(self.keys, None, "")
         for index, choice in enumerate(self.keys.where):
-            if not choice.paths or self._is_among(path, choice.paths):
+            if not choice.paths or self.is_among(path, choice.paths):
                 numbers = choice.numbers if choice.elements else None
                 yield from _assignments(choice, numbers, f"where.{index}.")
 
@@ -104,15 +111,20 @@ class SettingsFile:
 
     def _probes(self, path: Path) -> Iterator[Probe]:
         for probe in self.probes_of():
-            if self._is_among(path, probe.basis):
+            if self.is_among(path, probe.basis):
                 yield probe
 
     def _acceptances(self, path: Path) -> Iterator[Acceptance]:
         for index, accept in enumerate(self.keys.accept):
-            if self._is_among(path, accept.paths):
-                yield _acceptance(accept, f"{self.path.name}, accept {index + 1}")
+            if self.is_among(path, accept.paths):
+                yield _acceptance(accept, self.name_of(index))
 
-    def _is_among(self, path: Path, patterns: Sequence[str]) -> bool:
+    def name_of(self, index: int) -> str:
+        """How reports call an acceptance, counted from 0."""
+        return f"{self.path.name}, accept {index + 1}"
+
+    def is_among(self, path: Path, patterns: Sequence[str]) -> bool:
+        """Whether a (resolved) path fits one of the patterns."""
         relative = os.path.relpath(path, self.folder).replace(os.sep, "/")
         return any(matches(relative, pattern) for pattern in patterns)
 
@@ -175,7 +187,7 @@ def _places(path: Path, table: tuple[str, ...]) -> dict[str, KeyPlaces]:
     prefix = "".join(f"{name}." for name in table)
     return {
         key.removeprefix(prefix): place
-        for key, place in places(path.read_text("utf-8")).items()
+        for key, place in places(tree.text(path)).items()
         if key.startswith(prefix)
     }
 

@@ -68,6 +68,12 @@ def _limits(limits: dict[str, dict[str, float]]) -> dict[str, dict[str, float]]:
     return limits
 
 
+def _reason(words: str) -> str:
+    if not words.strip():
+        raise ValueError("it gives no reason")
+    return words
+
+
 def _list(value: Any) -> Any:
     return [value] if isinstance(value, str) else value
 
@@ -134,7 +140,7 @@ class Accept(_Model):
     paths: Strings
     elements: Elements = []
     shell: str | None = None
-    because: Annotated[str, Field(min_length=1)]
+    because: Annotated[str, AfterValidator(_reason)]
 
     @property
     def numbers(self) -> frozenset[int]:
@@ -187,7 +193,24 @@ def told(wrong: ValidationError, table: Table) -> Iterator[Told]:
         elif kind == "value_error" and isinstance(error["input"], dict):
             yield Told(_culprit(at, error), _words(error), True)
         else:
-            yield Told(at, f"{at} = {error['input']!r}: {_words(error)}", False)
+            yield Told(at, f"{at} = {_shown(error['input'])}: {_words(error)}", False)
+
+
+_KINDS = {
+    "string_type": "a text, in quotes",
+    "list_type": "a list",
+    "dict_type": "a table",
+    "model_type": "a table",
+    "bool_type": "true or false",
+    "int_type": "a whole number",
+}
+
+
+def _shown(value: Any) -> str:
+    """A value as a settings file has it."""
+    if isinstance(value, bool):
+        return str(value).lower()
+    return "a table" if isinstance(value, dict) else repr(value)
 
 
 def _words(error: ErrorDetails) -> str:
@@ -198,10 +221,14 @@ def _words(error: ErrorDetails) -> str:
         return "it is one of " + str(context["expected"]).replace("'", "").replace(" or ", ", ")
     if kind in ("float_type", "finite_number"):
         return "it is a number"
-    if kind == "string_too_short":
+    if kind == "string_too_short" or (kind == "too_short" and not context["actual_length"]):
         return "it must not be empty"
     if kind in ("too_short", "too_long"):
         return f"it has {context['actual_length']} members, not {next(iter(_lengths(context)))}"
+    if kind == "list_type" and error["loc"][-1] in ("where", "accept", "probe"):
+        return f"write [[{error['loc'][-1]}]] above it, in two brackets"
+    if kind in _KINDS:
+        return f"it should be {_KINDS[kind]}"
     return error["msg"].replace("Input should be", "it should be")
 
 

@@ -171,9 +171,10 @@ def acceptance(case: Case) -> Iterator[Finding]:
             remedy="write overlapse: accept RULE for ELEMENT SHELL because REASON",
         )
     for accepted in accepted_here:
-        # Without the rules' findings (one rule tried alone) nothing can be said about their use.
-        judged = [name for name in accepted.rules if name in case.found and can_find(case, name)]
-        if judged and not any(accepted.covers(f) for name in judged for f in case.found[name]):
+        # Without the findings of all its rules nothing can be said about an acceptance's use.
+        names = accepted.rules
+        judged = all(name in case.found and can_find(case, name) for name in names)
+        if judged and not any(accepted.covers(f) for name in names for f in case.found[name]):
             yield case.at_line(
                 accepted.line,
                 "note",

@@ -1,12 +1,10 @@
 """``overlapse audit``: judge files, folders and standard input."""
 
 import sys
-from collections.abc import Callable, Iterable, Iterator, Sequence
-from contextlib import contextmanager
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import replace
 from pathlib import Path
-from time import perf_counter
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import click
 
@@ -23,14 +21,9 @@ from overlapse.lint.common import (
 )
 
 if TYPE_CHECKING:
-    from overlapse.lint.engine import FileAudit, Options, Target
+    from overlapse.lint.engine import FileAudit
     from overlapse.lint.ledger import Sieve
 
-# Below this much text an audit is over before a progress bar would be seen, before another process
-# has started, and before a kept result would have been found.
-_QUIET_BYTES = 1_500_000
-_SERIAL_BYTES = 1_000_000
-_UNKEPT_BYTES = 100_000
 # Up to this much text, energies are computed unless somebody says otherwise: some ten files.
 _ENERGETIC_BYTES = 1_000_000
 
@@ -115,67 +108,102 @@ def audit(
     from overlapse.lint.engine import FileAudit, Options, Target, targets
     from overlapse.lint.ledger import Sieve
     from overlapse.lint.neighbours import Beside
-    from overlapse.lint.reports import needs_documents, writer
-    from overlapse.lint.terminal import coloured
+    from overlapse.lint.reports import needs_documents
+    from overlapse.lint.tree import is_folder
+    from overlapse.lint.underway import SERIAL_BYTES, in_tree, of_files, of_staged, probed, told_of
+    from overlapse.lint.unused import with_unused
 
     if quiet and verbose:
         raise click.UsageError("--quiet and --verbose exclude each other")
+    if staged and write_ledger:
+        raise click.UsageError("--write-ledger records working files, not what is --staged")
     troubles: list[FileAudit] = []
 
     def trouble(message: str) -> None:
         troubles.append(FileAudit(message.partition(":")[0], problem=message))
 
-    options = Options(label, layout, energies=bool(energies))
-    found: list[Target] = []
-    size = 0  # bytes of all files together
-    if staged:
-        judged = _staged(paths, options, recognised_only)
-    else:
-        for path in paths:
-            found += [Target(path, False)] if path == Path("-") else targets([path], trouble)
+    sieve = None if without_ledger or write_ledger else Sieve(ledger)
+    with in_tree(staged, paths):
+        if staged:
+            from overlapse.lint.staged import staged_targets
+
+            found = staged_targets(paths)
+        else:
+            found = []
+            for path in paths:
+                found += [Target(path, False)] if path == Path("-") else targets([path], trouble)
         if recognised_only:
             found = [Target(target.path, True) for target in found]
-        size = sum(size_of(target.path) for target in found)
-        beside = Beside([target.path for target in found if target.path != Path("-")])
+        size = 0 if staged else sum(size_of(target.path) for target in found)
         if energies is None:
-            energies = not recognised_only and size <= _ENERGETIC_BYTES
-        options = replace(options, beside=beside, energies=energies)
-        documents = needs_documents(report)
-        silent = quiet or verbose
-        judged = _audits(found, size, options, named, processes, no_cache, documents, silent)
-    sieve = None if without_ledger or write_ledger else Sieve(ledger)
-    tally = _Tally()
+            small = not staged and not recognised_only and size <= _ENERGETIC_BYTES
+            energies = small and not (sieve is not None and sieve.without_energies(found))
+        beside = Beside([target.path for target in found if target.path != Path("-")])
+        options = Options(label, layout, beside=beside, energies=energies)
+        if staged:
+            judged = of_staged(paths, options, recognised_only)
+        else:
+            documents, silent = needs_documents(report), quiet or verbose
+            judged = of_files(found, size, options, named, processes, no_cache, documents, silent)
+        folders = [path for path in paths if is_folder(path)]
+        tally = _Tally()
 
-    def stream() -> Iterator[FileAudit]:
-        yield from _probed(_told(judged) if verbose else judged)
-        yield from troubles
-        if sieve is not None:
-            yield from sieve.absent(path for path in paths if path.is_dir())
+        def stream() -> Iterator[FileAudit]:
+            yield from with_unused(probed(told_of(judged) if verbose else judged), folders)
+            yield from troubles
+            if sieve is not None:
+                yield from sieve.absent(folders)
 
-    if write_ledger:
-        _record(stream(), ledger, tally)
-    else:
-        shown: Iterable[FileAudit] = _sifted(stream(), sieve, fail_at, least, quiet, tally)
-        if quiet and out is None:
-            shown = list(shown)  # only what fails, and whether anything does must be known first
-        if not (quiet and out is None and tally.status == CLEAN):
-            with output(out, size > _SERIAL_BYTES) as written:
-                writer(report)(shown, written, out is None and coloured(written))
+        if write_ledger:
+            _record(stream(), ledger, energies, tally)
+        else:
+            shown = _sifted(stream(), sieve, fail_at, least, quiet, tally)
+            below = None if quiet or recognised_only else _Below(paths, sieve, energies)
+            _write(shown, report, out, size > SERIAL_BYTES, quiet, below, tally)
     _tell_of_plugins()
     sys.exit(tally.status)
 
 
-def _probed(audits: "Iterable[FileAudit]") -> "Iterator[FileAudit]":
-    """The audits with what the probes of their settings add, then those of the geometries."""
-    probing = None
-    for item in audits:
-        if item.settings.probes and probing is None:
-            from overlapse.lint.probetables import Probing  # it needs far more than a plain audit
+class _Below(NamedTuple):
+    """What the lines below a report rest on."""
 
-            probing = Probing()
-        yield probing.joined(item) if probing is not None else item
-    if probing is not None:
-        yield from probing.of_geometries()
+    paths: Sequence[Path]
+    sieve: "Sieve | None"
+    energies: bool
+
+
+def _write(
+    audits: "Iterable[FileAudit]",
+    report: str,
+    out: Path | None,
+    large: bool,
+    quiet: bool,
+    below: _Below | None,
+    tally: "_Tally",
+) -> None:
+    """Write the report; ``below``: what to say below one for people."""
+    from overlapse.lint.closing import Shown, closing
+    from overlapse.lint.reports import writer
+    from overlapse.lint.terminal import coloured, width
+
+    shown = Shown()
+
+    def seen() -> "Iterator[FileAudit]":
+        for item in audits:
+            shown.add(item)
+            yield item
+
+    passing = seen()
+    if quiet and out is None:
+        passing = iter(list(passing))  # whether anything fails must be known first
+        if tally.status == CLEAN:
+            return
+    with output(out, large) as written:
+        writer(report)(passing, written, out is None and coloured(written))
+        if below is not None and report == "text":
+            ledgers = below.sieve.ledgers if below.sieve is not None else ()
+            lines = closing(shown, below.paths, ledgers, below.energies, width(written))
+            written.writelines(f"{line}\n" for line in lines)
 
 
 class _Tally:
@@ -214,35 +242,9 @@ def _sifted(
         yield item if lowest == LEVELS[0] else item.at_least(lowest)
 
 
-def _told(audits: "Iterable[FileAudit]") -> "Iterator[FileAudit]":
-    """The audits as they come; of each is told on standard error how it was taken."""
-    from overlapse.lint.telling import told
-
-    start = perf_counter()
-    for item in audits:
-        click.echo(told(item, perf_counter() - start), err=True)
-        yield item
-        start = perf_counter()
-
-
-def _staged(
-    paths: Sequence[Path], options: "Options", recognised_only: bool
-) -> "Iterator[FileAudit]":
-    """Audits of what the next commit will hold."""
-    from overlapse.lint.engine import audit_bytes
-    from overlapse.lint.staged import StagedError, staged
-
-    if Path("-") in paths:
-        raise click.UsageError("standard input (-) is not staged")
-    try:
-        for target, data in staged(paths):
-            searched = target.searched or recognised_only
-            yield audit_bytes(data, str(target.path), options, searched=searched)
-    except StagedError as problem:
-        raise click.UsageError(str(problem)) from problem
-
-
-def _record(audits: "Iterable[FileAudit]", ledger: Path | None, tally: _Tally) -> None:
+def _record(
+    audits: "Iterable[FileAudit]", ledger: Path | None, energies: bool, tally: _Tally
+) -> None:
     """Write ledgers of all findings and say so."""
     from overlapse.lint.ledger import write
 
@@ -255,7 +257,7 @@ def _record(audits: "Iterable[FileAudit]", ledger: Path | None, tally: _Tally) -
             yield item
 
     try:
-        ledgers = write(seen(), ledger)
+        ledgers = write(seen(), ledger, energies=energies)
     except OSError as problem:
         raise click.UsageError(f"{problem.filename}: {problem.strerror or problem}") from problem
     for each in ledgers:
@@ -264,65 +266,8 @@ def _record(audits: "Iterable[FileAudit]", ledger: Path | None, tally: _Tally) -
             f"{each.path} holds {each.count} finding{'s' * (each.count != 1)} of "
             f"{files} file{'s' * (files != 1)}; from now on only new ones count"
         )
-
-
-def _audits(
-    found: "list[Target]",
-    size: int,
-    options: "Options",
-    named: str,
-    processes: int | None,
-    no_cache: bool,
-    documents: bool,
-    silent: bool,
-) -> "Iterator[FileAudit]":
-    from overlapse.lint import bulk
-
-    # With energies every byte takes much longer.
-    work = size * 20 if options.energies else size
-    if processes is None:
-        processes = bulk.cores() if work > _SERIAL_BYTES else 1
-    cache = None
-    if not no_cache and work > _UNKEPT_BYTES:
-        from overlapse.lint.cache import Cache
-
-        cache = Cache()
-    read = sys.stdin.buffer.read
-    with _progress(size, len(found), silent or work < _QUIET_BYTES) as done:
-        yield from bulk.audits(
-            found,
-            options,
-            processes=min(processes, len(found)) or 1,
-            cache=cache,
-            documents=documents,
-            done=done,
-            standard_input=lambda: (named, read()),
-        )
-
-
-@contextmanager
-def _progress(size: int, files: int, silent: bool) -> "Iterator[Callable[[int], None]]":
-    """A bar with rate and remaining time, where more than a moment's work is ahead."""
-    if silent or not sys.stderr.isatty():
-        yield lambda size: None
-        return
-    from time import monotonic
-
-    started, count = monotonic(), 0
-
-    def rate(item: object) -> str:
-        return f"{count}/{files} files, {count / max(monotonic() - started, 1e-3):.3g} a second"
-
-    with click.progressbar(
-        length=size, label="auditing", file=sys.stderr, item_show_func=rate
-    ) as bar:
-
-        def done(size: int) -> None:
-            nonlocal count
-            count += 1
-            bar.update(size, current_item=size)
-
-        yield done
+    if not energies and ledgers:
+        click.echo("atoms were not computed, nor will later audits unless asked: see --energies")
 
 
 def _tell_of_plugins() -> None:

@@ -1,4 +1,7 @@
-"""One line for each finding: path, line, column, level, rule, where, message."""
+"""One line for each finding: path, line, column, level, rule, where, message.
+
+Of a file that could not be read, a line tells why.
+"""
 
 from collections.abc import Iterable
 from typing import TextIO
@@ -8,6 +11,9 @@ from overlapse.lint.engine import FileAudit
 
 def write(audits: Iterable[FileAudit], out: TextIO, colour: bool) -> None:
     for audit in audits:
+        if audit.problem:
+            reason = audit.problem.removeprefix(f"{audit.path}: ")
+            out.write(f"{one_line(audit.path)}: error: {one_line(reason)}\n")
         for f in audit.findings:
             where = " ".join(filter(None, (f.element, f.shell)))
             prefix = f"{one_line(f.path)}:{f.line}:{f.column}: {f.severity}: {f.rule}: "

@@ -46,6 +46,8 @@ def _painted(text: str, kind: str) -> str:
 def _heading(audit: FileAudit, paint: Paint) -> str:
     if audit.absent:
         return f"{paint(one_line(audit.path), 'path')}  (in the ledger only)"
+    if not audit.is_basis:
+        return f"{paint(one_line(audit.path), 'path')}  (settings)"
     facts = [f"layout {audit.layout}" if audit.layout else "no layout"]
     if audit.elements:
         facts.append(f"{audit.elements} element{'s' * (audit.elements != 1)}")
@@ -142,7 +144,7 @@ class Tally:
     levels: Counter[str] = field(default_factory=Counter)
 
     def add(self, audit: FileAudit) -> None:
-        self.files += not (audit.passed_over or audit.absent)
+        self.files += audit.is_basis and not (audit.passed_over or audit.absent)
         self.passed += audit.passed_over
         self.unread += bool(audit.problem)
         self.accepted += len(audit.accepted)
@@ -151,14 +153,14 @@ class Tally:
         self.levels.update(finding.severity for finding in audit.findings)
 
     def sentence(self) -> str:
+        new = "new " if self.known or self.gone else ""
         told = [
-            f"{count} {level}{'s' * (count != 1)}"
+            f"{count} {new}{level}{'s' * (count != 1)}"
             for level in ("error", "warning", "note")
             if (count := self.levels[level])
         ]
         parts = [f"{self.files} file{'s' * (self.files != 1)}"]
-        new = " new" if self.known or self.gone else ""
-        parts.append(", ".join(told) + new * bool(told) if told else f"nothing{new} found")
+        parts.append(", ".join(told) or f"nothing {new}found")
         for count, what in (
             (self.accepted, "accepted"),
             (self.known, "known from the ledger"),

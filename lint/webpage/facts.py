@@ -60,6 +60,7 @@ class FileFacts(NamedTuple):
     elements: int
     problem: str
     levels: Counter[str]
+    is_basis: bool = True
 
 
 @dataclass
@@ -113,6 +114,7 @@ class Facts:
                 audit.elements,
                 one_line(audit.problem),
                 Counter(finding.severity for finding in audit.findings),
+                audit.is_basis,
             )
         )
 

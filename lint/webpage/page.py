@@ -35,7 +35,7 @@ def page(facts: Facts) -> str:
     worst_first = sorted(
         facts.files, key=lambda f: (not f.problem, *(-f.levels[level] for level in _ORDER))
     )
-    count = len(facts.files)
+    count = sum(each.is_basis for each in facts.files)
     return template.render(
         facts=facts,
         title=f"Audit of {count} basis-set file{'' if count == 1 else 's'}",
@@ -46,6 +46,7 @@ def page(facts: Facts) -> str:
         script=Markup(script),
         marks=MARKS,
         order=_ORDER,
+        count=count,
         clean=sum(not each.levels and not each.problem for each in facts.files),
         unread=sum(bool(each.problem) for each in facts.files),
         cells=[_cell(z, facts.elements.get(z)) for z in range(1, 119)],

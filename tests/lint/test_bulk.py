@@ -14,8 +14,8 @@ import pytest
 
 from overlapse.lint import bulk
 from overlapse.lint.cache import Cache
-from overlapse.lint.commands.audit import _progress
 from overlapse.lint.engine import FileAudit, Options, Target
+from overlapse.lint.progress import progress
 
 BODY = "C 0\nS 2 1.00\n 4.0 0.6\n {} 0.55505\nP 1 1.0\n 0.5 1.0\n****\n"
 
@@ -123,7 +123,7 @@ class _Terminal(StringIO):
 def test_a_bar_shows_rate_and_remaining_time(monkeypatch: pytest.MonkeyPatch) -> None:
     shown = _Terminal()
     monkeypatch.setattr("sys.stderr", shown)
-    with _progress(1000, 4, False) as done:
+    with progress(1000, 4, False) as done:
         for _ in range(4):
             time.sleep(0.45)  # the remaining time is told after a second
             done(250)
@@ -131,7 +131,7 @@ def test_a_bar_shows_rate_and_remaining_time(monkeypatch: pytest.MonkeyPatch) ->
     assert re.search(r"\d\d:\d\d:\d\d  3/4", shown.getvalue())
     quiet = StringIO()
     monkeypatch.setattr("sys.stderr", quiet)
-    with _progress(1000, 4, False) as done:
+    with progress(1000, 4, False) as done:
         done(1000)
     assert quiet.getvalue() == ""
 

@@ -13,6 +13,7 @@ from overlapse.lint.engine import FileAudit, audit_text
 from overlapse.lint.ledger import NAME, Ledger, Sieve, read, write
 from overlapse.lint.reports import writer
 from overlapse.lint.settings import Settings, SettingsError
+from overlapse.rules.registry import rules
 
 BODY = "C 0\nS 2 1.00\n 4.0 0.6\n O.5 0.55505\nS 1 1.00\n 0.3 1.0\nP 1 1.0\n 0.5 1.0\n****\n"
 SECOND = BODY.replace("C 0", "N 0").replace("4.0", "5.l")
@@ -163,3 +164,79 @@ def test_what_could_not_be_looked_for_is_not_gone(tmp_path: Path) -> None:
     assert len(ledger.sifted(mended).gone) == 1
     ledger.take(mended)
     assert ledger.count == 0
+
+
+# The sample on the rule's own page.
+WRONG_ATOM = rules()["energy.bound"].explanation.bad
+
+
+@pytest.fixture
+def loose(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
+    """A folder with an atom whose energy tells of a slip."""
+    monkeypatch.chdir(tmp_path)
+    (tmp_path / "sets").mkdir()
+    for name in ("a", "b"):
+        (tmp_path / "sets" / f"{name}.basis").write_text(WRONG_ATOM)
+    return tmp_path
+
+
+def _energetic(*arguments: str) -> list[str]:
+    files = _found("--no-cache", *arguments)
+    return [f["rule"] for file in files for f in file["findings"] if "energy" in f["rule"]]
+
+
+def test_a_ledger_without_energies_is_met_by_audits_without(loose: Path) -> None:
+    assert _energetic("sets", "--without-ledger")
+    told = _run("audit", "--no-energies", "--write-ledger", "sets").stdout
+    assert "atoms were not computed" in told
+    assert json.loads((loose / NAME).read_text())["energies"] is False
+    for path in ("sets", "sets/a.basis"):
+        done = _run("audit", path)
+        assert done.exit_code == 0
+        assert "nothing new found" in done.stdout
+        assert "atoms were not computed, as they were not when" in done.stdout
+    # Asked for, they are shown, and it is said why they count.
+    done = _run("audit", "--energies", "sets/a.basis")
+    assert done.exit_code == 1
+    assert "written without computing the atoms; so what energy.* found counts" in " ".join(
+        done.stdout.split()
+    )
+
+
+def test_energies_recorded_once_for_all_are_computed_from_then_on(loose: Path) -> None:
+    _run("audit", "--no-energies", "--write-ledger", "sets")
+    _run("audit", "--write-ledger", "sets/a.basis")  # of one file they are known now
+    assert not _energetic("sets")
+    assert not _energetic("--energies", "sets/a.basis")
+    assert _energetic("--energies", "sets/b.basis")
+    _run("audit", "--write-ledger", "sets")
+    assert json.loads((loose / NAME).read_text())["energies"] is True
+    assert not _energetic("sets")
+    path = loose / "sets" / "c.basis"
+    path.write_text(WRONG_ATOM)
+    assert _energetic("sets")
+    # What was known of energies stays known where they are not computed.
+    _run("audit", "--no-energies", "--write-ledger", "sets")
+    assert json.loads((loose / NAME).read_text())["energies"] is False
+    assert not _energetic("--energies", "sets/a.basis")
+
+
+def test_a_ledger_says_yes_or_no_of_energies(library: Path) -> None:
+    table = json.loads((library / NAME).read_text())
+    (library / NAME).write_text(json.dumps(table | {"energies": 1}))
+    with pytest.raises(SettingsError, match="energies"):
+        _run("audit", "sets")
+    del table["energies"]  # as older ledgers have it
+    (library / NAME).write_text(json.dumps(table))
+    assert _run("audit", "sets").exit_code == 0
+
+
+def test_a_name_that_is_no_text_is_known_again(library: Path) -> None:
+    name = b"sets/\xff\n.basis"
+    try:
+        with open(name, "w") as file:
+            file.write(BODY)
+    except OSError:
+        pytest.skip("this system knows no such names")
+    assert "holds 4 findings of 3 files" in _run("audit", "--write-ledger", "sets").stdout
+    assert _run("audit", "sets").exit_code == 0

@@ -57,7 +57,7 @@ def test_limits_reach_their_rule(tmp_path: Path) -> None:
         ("[severity]\n'contraction.nrom' = 'note'", "did you mean contraction.norm"),
         ("[severity]\n'contraction.norm' = 'loud'", "off"),
         ("[limits.'contraction.norm']\nshare = 'all'", "it is a number"),
-        ("fail-at = \nx", "line 1"),
+        ("fail-at = \nx", "toml:1:11: this is no TOML"),
     ],
 )
 def test_a_wrong_key_or_value_is_named(tmp_path: Path, text: str, told: str) -> None:

@@ -18,7 +18,7 @@ TEXT = "H 0\nS 1 1.0\n 1.0 1.0\nS 1 1.0\n 0.2 1.0\n****\nSc 0\nS 1 1.0\n 1.0 1.0
 
 
 def _file(folder: Path, settings: str, name: str = "own.basis", text: str = TEXT) -> Path:
-    (folder / "overlapse.toml").write_text(settings)
+    (folder / "overlapse.toml").write_bytes(settings.encode("utf-8", "surrogateescape"))
     path = folder / name
     path.parent.mkdir(parents=True, exist_ok=True)
     path.write_text(text)
@@ -134,10 +134,17 @@ WRONG = [
     ("[[where]]\nelements = ['C', 'Zn-Sc']", "2:18: where.0.elements.1 = 'Zn-Sc': 'Zn-Sc' runs"),
     ("layout = 'starz'", "1:10: layout = 'starz': no layout is called 'starz'; did you mean stars"),
     ("[[accept]]\nrules = 'form.count'\npaths = 'x'", "1:3: 'because' is missing here"),
-    ("[[accept]]\nrules = []\npaths = 'x'\nbecause = 'y'", "2:9: accept.0.rules = []: it has 0"),
+    ("[[accept]]\nrules = []\npaths = 'x'\nbecause = 'y'", "2:9: accept.0.rules = []: it must"),
     ("[[probe]]\nbasis = 'x'\ngeometry = 'y'\nmesh = [0, 1, 1]", "4:9: probe.0.mesh.0 = 0: it"),
     ("[[probe]]\nbasis = 'x'\ngeometry = ''", "3:12: probe.0.geometry = '': it must not be empty"),
-    ("reference = 3", "1:13: reference = 3: it should be a valid string"),
+    ("reference = 3", "1:13: reference = 3: it should be a text, in quotes"),
+    ("reference = true", "1:13: reference = true: it should be a text, in quotes"),
+    ("severity = 'off'", "1:12: severity = 'off': it should be a table"),
+    ("[accept]\nrules = 'x'", "1:2: accept = a table: write [[accept]] above it, in two brackets"),
+    ("[[accept]]\nrules='form.count'\npaths='x'\nbecause=' '", "4:9: accept.0.because = ' ': it"),
+    ("x = [1\n y", "2:2: this is no TOML: "),
+    ("a = 1\nfail-at = [1", "2:1: this is no TOML: "),
+    ("a = 1\n# caf\udce9", "2:1: this is no text in UTF-8"),
     ("severity = 'off'", "1:12: severity = 'off'"),
 ]
 
@@ -148,6 +155,14 @@ def test_a_mistake_is_told_with_its_place(tmp_path: Path, text: str, told: str) 
     with pytest.raises(SettingsError) as raised:
         settings_for(path)
     assert f"{tmp_path / 'overlapse.toml'}:{told}" in str(raised.value)
+
+
+def test_a_mark_of_the_encoding_and_other_line_ends_do_no_harm(tmp_path: Path) -> None:
+    path = _file(tmp_path, "\ufefffail-at = 'error'\r\n[severity]\r\nlabel.unknown = 'off'\r\n")
+    assert settings_for(path).fail_at == "error"
+    path = _file(tmp_path, "\ufefffail-at = 'error'\r\n[severty]\r\n")
+    with pytest.raises(SettingsError, match="2:2: no key is called 'severty'"):
+        settings_for(path)
 
 
 def test_all_mistakes_are_told_in_the_order_of_the_file(tmp_path: Path) -> None:
@@ -197,3 +212,16 @@ def test_the_command_prints_values_and_where_they_came_from(tmp_path: Path) -> N
         "accept",
         "severity.label.unknown",
     ]
+
+
+def test_what_holds_by_its_name_is_printed_too(tmp_path: Path) -> None:
+    path = _file(tmp_path, "[[where]]\nelements = ['C-F', 'H']\nseverity.shell.core = 'note'\n")
+    for name in ("overlapse.seal.json", "overlapse.ledger.json"):
+        (tmp_path / name).write_text("{}")
+    lines = [
+        re.split(r"  +", line) for line in _settings("--changed", str(path)).stdout.split("\n")
+    ]
+    found = {line[0]: line[1:] for line in lines}
+    assert found["seal"] == [str(tmp_path / "overlapse.seal.json"), "the nearest above"]
+    assert found["ledger"] == [str(tmp_path / "overlapse.ledger.json"), "the nearest above"]
+    assert found["severity.shell.core for H, C-F"] == ["note", f"{tmp_path}/overlapse.toml:3"]
