@@ -9,12 +9,12 @@ from overlapse.rules.measured.probe import NEAR, Dropped, Lattice, Left, Probe
 from overlapse.rules.measured.site import Site, formula, kind_of
 from overlapse.rules.physics.inertia import Matrix
 from overlapse.rules.physics.integrals import kinetic, overlap
+from overlapse.rules.physics.molecule import affordable
 from overlapse.rules.physics.onecentre import eigenvalues
 from overlapse.rules.physics.outlook import LOOKED_AT, Outlook, foresee, outlook
 from overlapse.rules.physics.placed import Functions, Ints, Placed, lay_out, radial_norms
 from overlapse.rules.physics.pruning import Drop, shells_to_drop
 from overlapse.rules.physics.spectrum import LADDER, Spectrum, smallest, spectrum
-from overlapse.rules.physics.superposed import affordable
 from overlapse.rules.physics.worth import Worth, worth_of
 
 

@@ -3,35 +3,35 @@
 A unit eigenvector v of S with a small eigenvalue lambda stands for the normalised combination
 f = v / sqrt(lambda).  Rounding of two-electron integrals, of relative size eps, is blown up by
 lambda**-2 in the repulsion (ff|ff), but the field only notices as far as f is occupied.  If p
-electrons are in f, energy and gradient carry a noise of about
+electrons are in f, energy and gradient carry a noise (hartree) of about
 
-    eps sqrt(T) p**2 / lambda**2    and    eps sqrt(T) (p / lambda)**(3/2) / sqrt(lambda),
+    E = sum over f of  k eps sqrt(T) (p / lambda)**2 / sqrt(g),
+    G = sum over f of  sqrt(k) eps sqrt(T) p**(3/2) / lambda**2 / sqrt(g).
 
-T = v' T v / lambda being the kinetic energy of f, whose root measures how compact f is.  So the
-same small eigenvalue can be harmless (tight twins that hold little, combinations that no occupied
-orbital has the symmetry of) or fatal.  In the approximate field of `superposed` the occupied spin
-orbitals i are found among all combinations above 1e-9, and
+T = v' T v / lambda in hartree is the kinetic energy of f, whose root measures how compact f is.  g
+is the gap in hartree between occupied and empty levels: the smaller, the more the orbitals follow
+the noise.  k is 1 where f vanishes within the functions of each centre by itself (near-twins, whose
+integrals share their rounding), 10 where it vanishes between centres.  So the same small eigenvalue
+can be harmless (tight twins that hold little, combinations that no occupied orbital has the
+symmetry of) or fatal.
+
+The electrons in f are those that the field of `molecule` puts there.  Its occupied spin orbitals i
+are found among all combinations above 1e-9, and
 
     p = sum over i of  <f|i>**2,   below 1e-9, for want of digits,  (F_fi / (F_ff - e_i))**2.
 
-The measure is a sum over the combinations f of eigenvalues below 1e-6,
+Limits: a field is strained above E = 2e-8 and fails above G = 1e-4.  A program asks for an energy
+to about 1e-9 hartree and for gradients to about its root, 3e-5, so noise begins to matter there.
+The powers of p, lambda and T are those of the formulas (a free fit gives 1.0 and 0.76 in place of
+1 and 3/4); the root of the gap, k and the two limits were chosen on some 240 fields.
 
-    m = sum of  p**(2/3) (T / hartree)**(1/4) / lambda.
-
-The powers are those of a logistic fit to 108 calculations without removal, rounded; they lie a
-little below the formula's because the estimate of p has an error of a factor of two or three.
-
-Limits, from the same calculations: no field failed below m = 1.2e5 in any of four ways to do the
-arithmetic, and nearly all did above 2e6; between the two the noise of the program decides.  On 113
-systems that took no part, "fails" was said just where a field failed for 94 %, the outlook was not
-contradicted for 97 %, and no failure was called safe.
-
-An eigenvalue below 2e-9 that is felt by no orbital, by the symmetry of the molecule as a rule, is
+An eigenvalue below 1e-10 that is felt by no orbital, by the symmetry of the molecule as a rule, is
 called strained all the same: a slight distortion or another filling of the levels undoes that.  One
 within rounding of zero always fails.
 
-Without a field (too many functions, a core potential) only lambda is judged: fails below 5e-10,
-strained below 1e-7.  That is much coarser.
+Where the field is that of the electron gas (many atoms and electrons), p comes out too high, in
+diffuse functions by a factor of ten.  Without a field (too many functions, a core potential) only
+lambda is judged: fails below 5e-10, strained below 1e-7.  That is much coarser.
 
 Source: the perturbation formula is that of single excitations, A. Szabo, N. S. Ostlund, Modern
 Quantum Chemistry, chapter 6; calibration and judgement: tests/bench/outlook.py and its figures.
@@ -41,40 +41,38 @@ from collections.abc import Sequence
 from typing import Literal, NamedTuple
 
 import numpy as np
+import numpy.typing as npt
 
 from overlapse.grammar.model import Floats, letter_of
+from overlapse.rules.physics.molecule import Field, affordable, molecular_field
 from overlapse.rules.physics.placed import Functions, Placed
-from overlapse.rules.physics.superposed import affordable, in_order, superposed_field
 
 Level = Literal["safe", "strained", "fails"]
 
-STRAINED, FAILS = 8e4, 2e6  # of the measure m, with a field
+STRAINED, FAILS = 2e-8, 1e-4  # hartree: noise of energy and of gradient, with a field
+GAS = 0.3  # times these limits, where exchange is that of the electron gas
+BETWEEN = 10.0  # factor k between centres, where integrals do not share their rounding
 SMALL, TINY = 1e-7, 5e-10  # of the smallest eigenvalue, without a field
-UNPROTECTED = 2e-9  # eigenvalue below which symmetry alone is no comfort
+UNPROTECTED = 1e-10  # eigenvalue below which symmetry alone is no comfort
 LOOKED_AT = 1e-6  # eigenvalues below are looked into
 LARGE = 700  # functions, from which other algorithms than full diagonalisation are cheaper
 DIGITS = 1e-9  # eigenvalue from which a combination can be treated like any other
 GAP = 0.1  # hartree: smallest denominator, so that a degeneracy does not blow up the estimate
+APART = 10.0  # times the eigenvalue: norm of the parts on single centres, from which it is between
+NARROW, WIDE = 0.05, 1.0  # hartree: gaps beyond these count as these
 
 
 class Outlook(NamedTuple):
     """The outlook, the measure behind it, the limit that it was compared with, and why in words.
 
-    The measure is m where a field was made (it fails above its limits), else the smallest
-    eigenvalue of S (it fails below them).
+    The measure is noise in hartree where a field was made: of the gradient where it fails, else of
+    the energy.  Without a field it is the smallest eigenvalue of S, which fails below its limits.
     """
 
     level: Level
     measure: float
     limit: float
     reason: str
-
-
-class Field(NamedTuple):
-    """Potential-energy matrix, hartree, shape (n, n), and the electrons of either spin."""
-
-    potential: Floats
-    electrons: tuple[int, int]
 
 
 def foresee(
@@ -87,12 +85,14 @@ def foresee(
     charge: int = 0,
     unpaired: int | None = None,
     smallest: float | None = None,
+    exchange: bool = True,
 ) -> Outlook:
     """The outlook for placed atoms; a field is made where it is needed and can be afforded.
 
     overlap, kinetic: their matrices, shape (n, n), hartree.  empty: indices of atoms that only
     carry functions.  charge: of the molecule.  unpaired: electrons, the fewest possible where None.
-    smallest: eigenvalue of the overlap, where it is known already.
+    smallest: eigenvalue of the overlap, where it is known already.  exchange: as in
+    `molecule.molecular_field`.
     """
     field = None
     if smallest is None:
@@ -103,8 +103,9 @@ def foresee(
     doubtful = _rounding(overlap) <= smallest < LOOKED_AT
     if kinetic is not None and doubtful and whole and affordable(atoms, len(overlap)):
         up = min((electrons + (electrons % 2 if unpaired is None else unpaired)) // 2, electrons)
-        pair = (up, electrons - up)
-        field = Field(superposed_field(atoms, nuclei, overlap, kinetic, pair), pair)
+        field = molecular_field(
+            atoms, nuclei, overlap, kinetic, (up, electrons - up), exchange=exchange
+        )
     return outlook(overlap, kinetic, functions, field=field, smallest=smallest)
 
 
@@ -118,8 +119,8 @@ def outlook(
 ) -> Outlook:
     """The outlook for an overlap matrix, shape (n, n), symmetric with ones on its diagonal.
 
-    kinetic: matrix of the kinetic energy, hartree; needed where there is a field.  functions: only
-    to say in words what kind of combination it is.  smallest: as in `foresee`.
+    kinetic: matrix of the kinetic energy, hartree, and functions: needed where there is a field,
+    else only to say in words what kind of combination it is.  smallest: as in `foresee`.
     """
     if smallest is None:
         smallest = _smallest(overlap)
@@ -127,27 +128,28 @@ def outlook(
         what = "S is not positive" if smallest <= 0.0 else "S is singular"
         reason = f"{what} within rounding (smallest eigenvalue {smallest:.1e})"
         return Outlook("fails", smallest, _rounding(overlap), reason)
-    if smallest >= LOOKED_AT or kinetic is None or field is None:
+    if smallest >= LOOKED_AT or kinetic is None or functions is None or field is None:
         return _by_eigenvalue(smallest, overlap, kinetic, functions)
-    values, vectors = np.linalg.eigh(overlap)
-    low = int(np.searchsorted(values, LOOKED_AT))
-    held, height = _occupations(values, vectors, low, kinetic, field)
-    measures = held ** (2 / 3) * height**0.25 / values[:low]
-    worst = int(np.argmax(measures))
-    measure = float(measures.sum())
-    kind = f", {described(vectors[:, worst], functions)}" if functions is not None else ""
+    seen = _seen(overlap, kinetic, functions, field)
+    energy, gradient = seen.noise
+    worst = int(np.argmax(gradient if gradient.sum() > FAILS else energy))
     reason = (
-        f"a combination of eigenvalue {values[worst]:.1e} and kinetic energy "
-        f"{height[worst]:.2g} hartree{kind} would hold about {held[worst]:.0e} electrons"
+        f"a combination of eigenvalue {seen.values[worst]:.1e} and kinetic energy "
+        f"{seen.height[worst]:.2g} hartree, {described(seen.vectors[:, worst], functions)} would "
+        f"hold about {seen.held[worst]:.0e} electrons"
     )
-    if measure > FAILS:
-        return Outlook("fails", measure, FAILS, reason)
-    if measure > STRAINED:
-        return Outlook("strained", measure, STRAINED, reason)
+    scale = 1.0 if field.exact else GAS
+    if gradient.sum() > scale * FAILS:
+        reason = f"noise of about {gradient.sum():.0e} hartree in the gradient; {reason}"
+        return Outlook("fails", float(gradient.sum()), scale * FAILS, reason)
+    measure, limit = float(energy.sum()), scale * STRAINED
+    told = f"noise of about {measure:.0e} hartree in the energy; {reason}"
+    if measure > limit:
+        return Outlook("strained", measure, limit, told)
     if smallest < UNPROTECTED:
         reason = f"the eigenvalue {smallest:.1e} may yet be felt; {reason}"
         return Outlook("strained", smallest, UNPROTECTED, reason)
-    return Outlook("safe", measure, STRAINED, reason)
+    return Outlook("safe", measure, limit, told)
 
 
 def _rounding(overlap: Floats) -> float:
@@ -191,24 +193,52 @@ def _by_eigenvalue(
     return Outlook("safe", smallest, SMALL, reason)
 
 
-def _occupations(
-    values: Floats, vectors: Floats, low: int, kinetic: Floats, field: Field
-) -> tuple[Floats, Floats]:
-    """Electrons in each of the ``low`` first combinations, and their kinetic energies, hartree."""
-    fock = kinetic + field.potential
+class _Seen(NamedTuple):
+    """Combinations of small eigenvalues: vectors (n, low), electrons held, kinetic energies, gap.
+
+    between: whether they vanish between centres.  Energies in hartree.
+    """
+
+    values: Floats
+    vectors: Floats
+    between: npt.NDArray[np.bool_]
+    held: Floats
+    height: Floats
+    gap: float
+
+    @property
+    def noise(self) -> tuple[Floats, Floats]:
+        """Noise that each brings into energy and gradient, hartree."""
+        factor = np.where(self.between, BETWEEN, 1.0)
+        scale = np.finfo(float).eps * np.sqrt(self.height / np.clip(self.gap, NARROW, WIDE))
+        energy = factor * scale * (self.held / self.values) ** 2
+        gradient = np.sqrt(factor) * scale * self.held**1.5 / self.values**2
+        return energy, gradient
+
+
+def _seen(overlap: Floats, kinetic: Floats, functions: Functions, field: Field) -> _Seen:
+    values, vectors = np.linalg.eigh(overlap)
+    low = int(np.searchsorted(values, LOOKED_AT))
     least = int(np.searchsorted(values[:low], DIGITS))
     x = vectors[:, least:] / np.sqrt(values[least:])
-    energies, orbitals = in_order(x, kinetic, fock)
-    combinations = vectors[:, :low] / np.sqrt(values[:low])
+    values, vectors = values[:low], vectors[:, :low]
+    combinations = vectors / np.sqrt(values)
     height = np.einsum("nf,nm,mf->f", combinations, kinetic, combinations)
     outside = combinations[:, :least]
-    levels = np.einsum("nf,nm,mf->f", outside, fock, outside)
-    gaps = np.maximum(levels[:, None] - energies, GAP)
-    shares = np.concatenate(
-        [(outside.T @ fock @ x @ orbitals / gaps) ** 2, orbitals[: low - least] ** 2]
-    )
-    held: Floats = sum(shares[:, :n].sum(axis=1) for n in field.electrons)
-    return held, np.maximum(height, 0.0)
+    held, gap = np.zeros(low), np.inf
+    for spin, (fock, count) in enumerate(zip(field.focks, field.electrons, strict=True)):
+        energies, orbitals = field.orbitals(spin, x, kinetic)
+        if 0 < count < len(energies):
+            gap = min(gap, float(energies[count] - energies[count - 1]))
+        energies, orbitals = energies[:count], orbitals[:, :count]
+        levels = np.einsum("nf,nm,mf->f", outside, fock, outside)
+        gaps = np.maximum(levels[:, None] - energies, GAP)
+        mixed = outside.T @ fock @ (x @ orbitals) / gaps
+        held += (np.concatenate([mixed, orbitals[: low - least]]) ** 2).sum(axis=1)
+    centre = np.asarray(functions.atom)
+    alone = np.where(centre[:, None] == centre, overlap, 0.0)
+    between = np.einsum("nf,nm,mf->f", vectors, alone, vectors) > APART * values
+    return _Seen(values, vectors, between, held, np.maximum(height, 0.0), gap)
 
 
 DIFFUSE, TIGHT = 0.1, 30.0  # bohr**-2: below and above, exponents are called so

@@ -7,7 +7,8 @@ that are kept.  The loss is the difference of the sums of their energies,
 
 to second order in what is missing that of the energy itself, but for the response of the field.
 Where empty orbitals lie below occupied ones (`superposed.in_order` says why), F is lowered in the
-space of the latter, so that they are the lowest and the loss is never negative.
+space of the latter, so that they are the lowest and the loss is never negative.  The field is that
+of the electron gas: it costs less, and what is asked for is a factor of a few.
 
 It is a measure of what is harmless, no correction.  Of outermost functions, which are worth less
 than a millihartree, it was mostly right within a factor of five beside real fields, and never too
@@ -21,27 +22,25 @@ from collections.abc import Sequence
 import numpy as np
 
 from overlapse.grammar.model import Floats
+from overlapse.rules.physics.molecule import Field, affordable, molecular_field
 from overlapse.rules.physics.outlook import DIGITS, GAP
 from overlapse.rules.physics.placed import Ints, Placed
-from overlapse.rules.physics.superposed import affordable, in_order, superposed_field
 
 
 class Worth:
     """The approximate field of one molecule, ready to tell what is lost without some functions.
 
-    overlap, kinetic: matrices, shape (n, n), hartree, in the order of `placed.lay_out`.  potential:
-    as of `superposed.superposed_field`.  electrons: of either spin.
+    overlap, kinetic: matrices, shape (n, n), hartree, in the order of `placed.lay_out`.
     """
 
-    def __init__(
-        self, overlap: Floats, kinetic: Floats, potential: Floats, electrons: tuple[int, int]
-    ) -> None:
+    def __init__(self, overlap: Floats, kinetic: Floats, field: Field) -> None:
         self._overlap = overlap
-        fock = kinetic + potential
         x = _independent(overlap)
-        energies, orbitals = in_order(x, kinetic, fock)
         self._spins = []
-        for count in filter(None, electrons):
+        for spin, (fock, count) in enumerate(zip(field.focks, field.electrons, strict=True)):
+            if count == 0:
+                continue
+            energies, orbitals = field.orbitals(spin, x, kinetic)
             occupied = overlap @ (x @ orbitals[:, :count])
             top, bottom = energies[:count].max(), energies[count:].min(initial=np.inf)
             lowered = 0.0 if top < bottom else top - bottom + GAP
@@ -97,4 +96,5 @@ def worth_of(
     pair = (up, electrons - up)
     if (np.linalg.eigvalsh(overlap) > DIGITS).sum() < up:
         return None
-    return Worth(overlap, kinetic, superposed_field(atoms, nuclei, overlap, kinetic, pair), pair)
+    field = molecular_field(atoms, nuclei, overlap, kinetic, pair, exchange=False)
+    return Worth(overlap, kinetic, field)

@@ -64,16 +64,6 @@ class Truth:
         return {name: run.failed(highest, lowest) for name, run in self.runs.items()}
 
     @property
-    def failed(self) -> bool:
-        """Whether the plain host, the generalised solver, failed."""
-        return self.failures["general"]
-
-    @property
-    def divided(self) -> bool:
-        """Whether some hosts fail and others do not."""
-        return len(set(self.failures.values())) > 1
-
-    @property
     def laboured(self) -> bool:
         """Whether a run converged with clearly more cycles than the one with removal."""
         most = max((run.cycles for run in self.runs.values() if run.converged), default=0)

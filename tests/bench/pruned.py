@@ -17,9 +17,9 @@ from pathlib import Path
 from typing import Any, NamedTuple
 
 import numpy as np
-import outlook_sets
 from builders import System, placed, places
 from hosts import TOLERANCE, Run, field_of, general, removed, solved
+from outlook_calibration import calibration
 
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.placed import lay_out
@@ -118,11 +118,7 @@ def main() -> None:
     parser = argparse.ArgumentParser(description=__doc__.split("\n")[0])
     parser.add_argument("--out", type=Path)
     arguments = parser.parse_args()
-    known = {
-        system.name: system
-        for make in (outlook_sets.calibration, outlook_sets.judging, outlook_sets.named)
-        for system in make()
-    }
+    known = {system.name: system for system in calibration()}
     text = [f"Pruning at {PRUNING:g}, fields to {TOLERANCE:g} hartree."]
     for title, names in SETS.items():
         text += ["", f"### {title}", "", HEAD]

@@ -1,14 +1,14 @@
-"""Outlooks and the approximate field behind them against PySCF's integrals and fields."""
+"""Outlooks and the rough fields behind them against PySCF's integrals and fields."""
 
 import numpy as np
 import pytest
 
 from overlapse.grammar.model import Block, Shell
-from overlapse.rules.physics import superposed
+from overlapse.rules.physics.grid import Grid, Potentials
 from overlapse.rules.physics.integrals import kinetic, overlap
+from overlapse.rules.physics.molecule import molecular_field
 from overlapse.rules.physics.outlook import foresee
 from overlapse.rules.physics.placed import Placed, lay_out
-from overlapse.rules.physics.superposed import superposed_field
 
 pyscf = pytest.importorskip(
     "pyscf", reason="PySCF has no wheel here; install the extra 'oracle' to run this check"
@@ -43,14 +43,31 @@ def test_the_grid_gives_overlaps_and_the_attraction_of_nuclei() -> None:
     atoms, sets = [("O", 0.0), ("C", 1.13)], {s: gto.basis.load("def2-svp", s) for s in "CO"}
     ours = placed(atoms, sets)
     positions = np.array([atom.position for atom in ours])
-    grid = superposed._Grid(positions)
-    values = superposed._values(grid.points, positions, ours)
+    grid = Grid(positions)
+    values = grid.values(ours)
     assert (values * grid.weights) @ values.T == pytest.approx(overlap(ours), abs=1e-2)
     bare = grid.classical(np.zeros(len(grid.points)), [8, 6])
     found = np.linalg.eigvalsh((values * (grid.weights * bare)) @ values.T)
     # Eigenvalues, because the two order the components of p functions differently.
     expected = np.linalg.eigvalsh(molecule(atoms, sets).intor("int1e_nuc"))
     assert found == pytest.approx(expected, rel=1e-2)
+
+
+def test_potentials_of_pairs_give_repulsion_and_exchange() -> None:
+    atoms, sets = [("O", 0.0), ("C", 1.13)], {s: gto.basis.load("sto-3g", s) for s in "CO"}
+    ours = placed(atoms, sets)
+    grid = Grid(np.array([atom.position for atom in ours]))
+    values = grid.values(ours)
+    # s functions alone, whose order is the same: of each centre and of both.
+    mole = molecule(atoms, sets)
+    s = [k for k, label in enumerate(mole.ao_labels()) if "p" not in label]
+    phi = values[s]
+    left, right = np.triu_indices(len(s))
+    pairs = phi[left] * phi[right]
+    found = (pairs * grid.weights) @ Potentials(grid)(pairs).T
+    all_four = mole.intor("int2e")[np.ix_(s, s, s, s)]
+    expected = all_four[left, right][:, left, right]
+    assert found == pytest.approx(expected, rel=0.02, abs=0.01)
 
 
 @pytest.mark.parametrize(("symbol", "electrons"), [("He", 1), ("Ne", 5), ("Ar", 9)])
@@ -60,12 +77,34 @@ def test_levels_of_atoms_are_those_of_the_exchange_of_the_electron_gas(
     atoms, sets = [(symbol, 0.0)], {symbol: gto.basis.load("cc-pvdz", symbol)}
     ours = placed(atoms, sets)
     s, t = overlap(ours), kinetic(ours)
-    v = superposed_field(ours, [gto.charge(symbol)], s, t, (electrons, electrons))
-    found = scipy.linalg.eigvalsh(t + v, s)[:electrons]
-    field = dft.RKS(molecule(atoms, sets), xc="lda,")
-    field.kernel()
+    pair = (electrons, electrons)
+    field = molecular_field(ours, [gto.charge(symbol)], s, t, pair, exchange=False)
+    assert not field.exact
+    found = scipy.linalg.eigvalsh(field.focks[0], s)[:electrons]
+    gas = dft.RKS(molecule(atoms, sets), xc="lda,")
+    gas.kernel()
     # Three renewals of the density leave a few hundredths of a hartree.
-    assert found == pytest.approx(field.mo_energy[:electrons], rel=0.03, abs=0.03)
+    assert found == pytest.approx(gas.mo_energy[:electrons], rel=0.03, abs=0.03)
+
+
+@pytest.mark.parametrize(
+    ("atoms", "spin"),
+    [([("Ne", 0.0)], 0), ([("C", 0.0), ("O", 1.13)], 0), ([("O", 0.0), ("H", 0.97)], 1)],
+)
+def test_levels_are_those_of_hartree_fock(atoms: list[tuple[str, float]], spin: int) -> None:
+    sets = {symbol: gto.basis.load("def2-svp", symbol) for symbol, _ in atoms}
+    ours = placed(atoms, sets)
+    s, t = overlap(ours), kinetic(ours)
+    nuclei = [gto.charge(symbol) for symbol, _ in atoms]
+    pair = ((sum(nuclei) + spin) // 2, (sum(nuclei) - spin) // 2)
+    field = molecular_field(ours, nuclei, s, t, pair)
+    assert field.exact
+    mole = gto.M(atom=[(a, (0.0, 0.0, z)) for a, z in atoms], basis=sets, spin=spin, verbose=0)
+    exact = scf.UHF(mole)
+    exact.kernel()
+    for fock, count, energies in zip(field.focks, pair, exact.mo_energy, strict=True):
+        found = scipy.linalg.eigvalsh(fock, s)[:count]
+        assert found == pytest.approx(np.sort(energies)[:count], rel=0.003, abs=0.01)
 
 
 def plain(atoms: list[tuple[str, float]], sets: dict[str, Shells]) -> scf.hf.SCF:

@@ -1,4 +1,4 @@
-"""The systems on which outlooks are calibrated, those on which they are judged, and named ones."""
+"""The systems on which limits of the outlook were chosen."""
 
 from typing import Any
 
@@ -22,10 +22,17 @@ from builders import (
     twins,
     water,
 )
+from outlook_irregular import irregular
 
 
 def calibration() -> list[System]:
-    """The systems on which limits are chosen."""
+    """All of them, each once."""
+    found = {s.name: s for s in [*_dense(), *_others(), *irregular(), *_misleading()]}
+    return list(found.values())
+
+
+def _dense() -> list[System]:
+    """Systems of many kinds, dense near the limits."""
     found: list[System] = []
 
     def add(name: str, atoms: Atoms, basis: Basis, **more: Any) -> None:
@@ -163,8 +170,8 @@ def calibration() -> list[System]:
     return found
 
 
-def judging() -> list[System]:
-    """Systems that take no part in the calibration."""
+def _others() -> list[System]:
+    """Other systems of the same kinds."""
     found: list[System] = []
 
     def add(name: str, atoms: Atoms, basis: Basis, **more: Any) -> None:
@@ -312,8 +319,8 @@ def judging() -> list[System]:
     return found
 
 
-def named() -> list[System]:
-    """Systems that misled simple limits, and a cube that misled a first form of the measure."""
+def _misleading() -> list[System]:
+    """Systems that misled simple limits."""
     found: list[System] = []
     for ratio in (1.1, 1.01, 1.001, 1.0001, 1.00001):
         base = twins(published("def2-svp", "O", "H"), "O H", 0, 0.3, ratio)

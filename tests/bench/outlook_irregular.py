@@ -1,4 +1,4 @@
-"""A second set on which outlooks are judged: other molecules, and few of them symmetric."""
+"""Systems for the calibration of the outlook, few of them symmetric."""
 
 import random
 
@@ -51,8 +51,8 @@ PEROXIDE: Atoms = [
 ]  # fmt: skip
 
 
-def second() -> list[System]:
-    """Systems made after the limits were chosen and the first judgement was known."""
+def irregular() -> list[System]:
+    """Rings and heaps with chance positions, and molecules."""
     found: list[System] = []
 
     def add(name: str, atoms: Atoms, basis: Basis, **more: object) -> None:
