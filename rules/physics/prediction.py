@@ -4,17 +4,19 @@ Each column of a table (elements by places in a ladder of numbers) is predicted 
 from all the others: by a polynomial in ln Z, and by the same polynomial together with a companion,
 a neighbouring column of the same table.  Published numbers depart from their row in step: where an
 element goes its own way its neighbouring exponents go along, so that a companion predicts to a few
-tenths of a per cent where the polynomial alone scatters by ten.  A slip goes alone.
+tenths of a per cent where the polynomial alone scatters by ten.  A slip goes alone: put right, it
+leaves nothing odd behind.
 
 Formula: residual e_k and leverage h_k of the fit with one companion (Frisch and Waugh: the
-companion's own residual joins the fit), departure e_k / (1 - h_k), variance without the element;
-scatters of few degrees of freedom are moderated by those of the other columns.
+companion's own residual joins the fit), departure e_k / (1 - h_k), variance s**2 / (1 - h_k) with
+s**2 without the element; scatters of few degrees of freedom are moderated by those of the other
+columns.
 Sources: R. D. Cook, S. Weisberg, Residuals and Influence in Regression, Chapman and Hall 1982; R.
 Frisch, F. V. Waugh, Econometrica 1, 387 (1933); moderation: G. K. Smyth, Stat. Appl. Genet. Mol.
-Biol. 3, article 3 (2004); from t to z: D. L. Wallace, Ann. Math. Statist. 30, 1124 (1959).
+Biol. 3, article 3 (2004).
 """
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from typing import NamedTuple
 
 import numpy as np
@@ -30,8 +32,8 @@ _PRIOR = 8.0  # degrees of freedom that the other columns lend to the scatter of
 class Predictions(NamedTuple):
     """Weighed over all predictions, shapes (elements, places).
 
-    surprise: departure in units of the scatter, as a normal deviate.  departure: value less the
-    one suggested.  spread: uncertainty of the suggestion.
+    surprise: departure in units of its spread.  departure: value less the one suggested.  spread:
+    uncertainty of the suggestion.
     """
 
     surprise: Floats
@@ -61,7 +63,7 @@ def predictions(
     )
     # A companion uses up a part of a degree of freedom, since its slope is held.
     used = np.where(np.arange(len(tables)) > 0, 0.6, 0.0)
-    weights, surprises, departures = [], [], []
+    weights, departures = [], []
     for degree in (1, 2, 3):
         if count - degree < 4 and degree > 1:
             break
@@ -84,18 +86,38 @@ def predictions(
         usual = _usual(middle, ranked[:, 0], usable)
         prior = np.maximum(usual[:, None, None], np.minimum(without, middle[:, None]))
         variance = (_PRIOR * prior + degrees * without) / (_PRIOR + degrees) + finest**2
-        # An end of the row is extrapolated, and less trusted than its leverage says.
-        t_squared = departure**2 * left**2 / variance
-        surprises.append(_normal(t_squared, degrees + _PRIOR))
         departures.append(departure)
-        weights.append(usable[:, None, :] * left / (without + finest**2))
+        weights.append(usable[:, None, :] * left / variance)
     weight = np.concatenate(weights)
-    whole = np.maximum(weight.sum(axis=0), 1e-300)
-    return Predictions(
-        (weight * np.concatenate(surprises)).sum(axis=0) / whole,
-        (weight * np.concatenate(departures)).sum(axis=0) / whole,
-        1.0 / np.sqrt(weight.max(axis=0)),
+    spread = 1.0 / np.sqrt(np.maximum(weight.max(axis=0), 1e-300))
+    # The predictions are much alike: the best of them count more than their weight alone says.
+    share = weight**1.5
+    departed = (share * np.concatenate(departures)).sum(axis=0) / np.maximum(
+        share.sum(axis=0), 1e-300
     )
+    return Predictions(np.abs(departed) / spread, departed, spread)
+
+
+def alone(
+    predict: Callable[[Floats], Predictions], values: Floats, told: Predictions, at: int
+) -> tuple[int, float]:
+    """The place of an element whose correction leaves the least surprise, and what it leaves.
+
+    told: the predictions of the values as they stand.  An element that goes its own way stays odd
+    whichever number is put right.
+    """
+    surprise = told.surprise[at]
+    order = np.argsort(-surprise)[:_TRIED]
+    found = []
+    for place in order[surprise[order] > 0.4 * surprise[order[0]]].tolist():
+        mended = values.copy()
+        mended[at, place] -= told.departure[at, place]
+        found.append((float(predict(mended).surprise[at].max()), place))
+    rest, place = min(found)
+    return place, rest
+
+
+_TRIED = 3  # places of an element that are tried
 
 
 def _usual(middle: Floats, least: Floats, usable: npt.NDArray[np.bool_]) -> Floats:
@@ -109,12 +131,6 @@ def _usual(middle: Floats, least: Floats, usable: npt.NDArray[np.bool_]) -> Floa
     ranked = np.sort(np.where(usable, telling, np.inf), axis=1)
     found = ranked[np.arange(len(ranked)), np.minimum(counts // 2, ranked.shape[1] - 1)]
     return np.where(counts > 0, found, 0.0)
-
-
-def _normal(t_squared: Floats, degrees: Floats) -> Floats:
-    """The normal deviate that is as rare as a t of so many degrees of freedom."""
-    factor = (8.0 * degrees + 1.0) / (8.0 * degrees + 3.0)
-    return np.asarray(factor * np.sqrt(degrees * np.log1p(t_squared / degrees)))
 
 
 def beside(values: Floats) -> list[Floats]:

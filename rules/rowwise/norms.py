@@ -81,6 +81,29 @@ def rounding(norm: Norm) -> float:
     return float(by_c.sum() + by_a.sum())
 
 
+def is_vouched(
+    norms: Iterable[Norm], block: Block, shell: int, row: int, column: int | None, expected: float
+) -> bool:
+    """Whether a norm speaks for a number that is suspected to stand for another one.
+
+    A contraction that is normalised as it stands, and would not be with the number expected, holds
+    no single wrong number.
+    """
+    for norm in norms:
+        function = norm.function
+        if norm.block is not block or norm.shell != shell or norm.deviation > 1e-4:
+            continue
+        if row not in function.rows or column not in (None, function.column):
+            continue
+        exponents, coefficients = function.exponents.copy(), function.coefficients.copy()
+        at = int(np.flatnonzero(function.rows == row)[0])
+        (exponents if column is None else coefficients)[at] = expected
+        mended = abs(self_overlap(exponents, coefficients, function.l) - 1.0)
+        if not mended < 3.0 * max(norm.deviation, 1e-5):
+            return True
+    return False
+
+
 def half_unit(word: str) -> float:
     """Half a unit in the last printed place of a number; zeros at its end may be mere padding."""
     if not NUMBER.fullmatch(word):
