@@ -9,7 +9,7 @@ from overlapse.rules.finding import Finding
 from overlapse.rules.gap import spacing_oddities
 from overlapse.rules.registry import rule
 from overlapse.rules.rowwise.alongside import Step
-from overlapse.rules.rowwise.odd_told import REMEDY, borrowed, oddities, steps, told
+from overlapse.rules.rowwise.odd_told import REMEDY, borrowed, oddities, slip_of, steps, told
 from overlapse.rules.slips import likeliest
 
 
@@ -42,10 +42,10 @@ def trend(
 
     Limits: surprise: departure from the row, in units of its spread, from which on an exponent is
     noted; it rises with the part of the set's elements that hold such exponents, and where row and
-    shell agree four are enough.  step: the same for the shell.  loud: from which on, for departures
-    by more than a factor of two, it is a warning.  Drawn from 46 published sets of H-Kr: of their
-    elements one in 100 holds an exponent that is noted, and of exponents changed by 10 % in rows
-    five in six are.
+    shell agree five are enough.  step: the same for the shell.  loud: from which on, for departures
+    by more than a factor of two that one slip explains, it is a warning.  Drawn from 46 published
+    sets of H-Kr: of their elements one in 60 holds an exponent that is noted, and of exponents
+    changed by 10 % in rows five in six are.
 
     Remedy: compare the number with the original publication.
 
@@ -114,12 +114,13 @@ def trend(
         if odd.surprise < surprise * odd.strictness and not is_confirmed:
             continue
         beside.pop(key, None)
-        # Two witnesses that agree make a warning.
+        # Two witnesses that agree make a warning; one of them may be a slip that fits.
         is_far = odd.surprise >= loud * odd.strictness and abs(odd.departure) >= np.log(2.0)
-        is_far = is_far or key in spaced or (is_confirmed and abs(odd.departure) > 0.2)
+        is_loud = is_far and slip_of(odd) is not None
+        is_loud = is_loud or key in spaced or (is_confirmed and abs(odd.departure) > 0.2)
         agreed = ("the steps to the neighbouring elements along the shell agree",)
         yield told(
-            case, odd, "warning" if is_far else "note", surprise, agreed if is_confirmed else ()
+            case, odd, "warning" if is_loud else "note", surprise, agreed if is_confirmed else ()
         )
     for key, odd_step in beside.items():
         yield _out_of_step(case, odd_step, key in spaced, step)

@@ -73,19 +73,23 @@ class Step(NamedTuple):
 
 
 def odd_steps(members: BasisSet, least: float) -> list[Step]:
-    """Exponents that surprise by ``least`` beside each neighbour; of each ladder at most one."""
-    ladders: dict[tuple[int, tuple[int, ...]], dict[int, Ladder]] = {}
+    """Exponents that surprise by ``least`` beside each neighbour; of each shell at most one."""
+    ladders: dict[tuple[int, tuple[int, ...], bool], dict[int, Ladder]] = {}
     seen: set[int] = set()
     for block in members.blocks:
         if block.atomic_number not in seen:
             seen.add(block.atomic_number)
             for ladder in _ladders(block):
-                row = ladders.setdefault((ladder.l, ladder.lengths), {})
+                is_whole = bool(np.isfinite(ladder.ease[-1]))
+                row = ladders.setdefault((ladder.l, ladder.lengths, is_whole), {})
                 row[block.atomic_number] = ladder
-    found: list[Step] = []
+    found: dict[tuple[int, int], Step] = {}
     for row in ladders.values():
-        found += _of_row(row, least)
-    return found
+        for step in _of_row(row, least):
+            key = id(step.block), step.shell
+            if key not in found or step.surprise > found[key].surprise:
+                found[key] = step
+    return list(found.values())
 
 
 def _ladders(block: Block) -> Iterator[Ladder]:
@@ -93,17 +97,28 @@ def _ladders(block: Block) -> Iterator[Ladder]:
     for index, shell in enumerate(block.shells):
         shells.setdefault(shell.angular[0], []).append(index)
     for l, indices in shells.items():
-        exponents = [block.shells[index].exponents for index in indices]
-        logs = np.concatenate(exponents)
-        if len(logs) < FEWEST or not (logs > 0.0).all():
-            continue
-        lengths = tuple(len(part) for part in exponents)
-        places = tuple(
-            (index, at)
-            for index, count in zip(indices, lengths, strict=True)
-            for at in range(count)
-        )
-        yield Ladder(block, l, lengths, places, np.log(logs), _ease(lengths))
+        several = [index for index in indices if len(block.shells[index].exponents) > 1]
+        yield from _ladder(block, l, indices)
+        # Neighbours often have the same contractions and other lone functions.
+        if several and several != indices:
+            yield from _ladder(block, l, several, is_whole=False)
+
+
+def _ladder(block: Block, l: int, indices: list[int], is_whole: bool = True) -> Iterator[Ladder]:
+    parts = [block.shells[index].exponents for index in indices]
+    exponents = np.concatenate(parts)
+    if len(exponents) < FEWEST or not (exponents > 0.0).all():
+        return
+    lengths = tuple(len(part) for part in parts)
+    places = tuple(
+        (index, at) for index, count in zip(indices, lengths, strict=True) for at in range(count)
+    )
+    ease = _ease(lengths)
+    if not is_whole:
+        # What follows the last of these is not the same in the neighbours.
+        ease = ease.copy()
+        ease[-2:] = np.inf
+    yield Ladder(block, l, lengths, places, np.log(exponents), ease)
 
 
 @lru_cache(maxsize=256)
@@ -117,51 +132,55 @@ def _ease(lengths: tuple[int, ...]) -> Floats:
 
 
 def unevenness(steps: Floats) -> tuple[Floats, Floats]:
-    """Departure of each step from those around it, and its scale, shapes (n,), n at least 4.
+    """Departure of each step from those around it, and its scale, shapes (..., n), n at least 4.
 
     Inside: the cubic through two steps on either side; next to an end the mean of the neighbours;
     at an end the line through the next two, drawn half as far.  The scale is a part of the range of
     those that were used.
     """
-    n = len(steps)
-    expected = np.empty(n)
-    scale = np.empty(n)
-    expected[1:-1] = 0.5 * (steps[:-2] + steps[2:])
-    if n > 4:
-        around = np.array([steps[:-4], steps[1:-3], steps[3:-1], steps[4:]])
+    step = steps.T
+    expected = np.empty_like(step)
+    scale = np.empty_like(step)
+    expected[1:-1] = 0.5 * (step[:-2] + step[2:])
+    if len(step) > 4:
+        around = np.array([step[:-4], step[1:-3], step[3:-1], step[4:]])
         expected[2:-2] = (4.0 * (around[1] + around[2]) - around[0] - around[3]) / 6.0
-        scale[2:-2] = 0.35 * np.ptp(around, axis=0)
-    scale[1] = 0.35 * np.ptp(steps[[0, 2, 3]])
-    scale[-2] = 0.35 * np.ptp(steps[[-4, -3, -1]])
-    expected[0] = 1.5 * steps[1] - 0.5 * steps[2]
-    expected[-1] = 1.5 * steps[-2] - 0.5 * steps[-3]
-    scale[0] = 0.7 * np.ptp(steps[1:4])
-    scale[-1] = np.ptp(steps[-4:-1])
-    return steps - expected, scale + _FLOOR
+        scale[2:-2] = 0.35 * (around.max(axis=0) - around.min(axis=0))
+    expected[0] = 1.5 * step[1] - 0.5 * step[2]
+    expected[-1] = 1.5 * step[-2] - 0.5 * step[-3]
+    for at, others, part in (
+        (0, [1, 2, 3], 0.7), (1, [0, 2, 3], 0.35),
+        (-2, [-4, -3, -1], 0.35), (-1, [-4, -3, -2], 1.0),
+    ):  # fmt: skip
+        used = step[others]
+        scale[at] = part * (used.max(axis=0) - used.min(axis=0))
+    return steps - expected.T, scale.T + _FLOOR
 
 
 def _of_row(row: dict[int, Ladder], least: float) -> Iterator[Step]:
     """Judge each ladder against its nearest neighbours of one period."""
     near = {z: nearest(z, row) for z in row}
     pairs: dict[tuple[int, int], tuple[Floats, Floats, Floats]] = {}
-    for z, others in near.items():
-        for other in others:
-            if (other, z) in pairs:
-                departure, spread, surprise = pairs[other, z]
-                pairs[z, other] = -departure, spread, surprise
-            else:
-                departure, spread = unevenness(row[z].logs - row[other].logs)
-                spread = spread * row[z].ease
-                pairs[z, other] = departure, spread, np.abs(departure) / spread
+    both = [(z, other) for z, others in near.items() for other in others]
+    if both:
+        departures, spreads = unevenness(
+            np.array([row[z].logs - row[other].logs for z, other in both])
+        )
+        spreads = spreads * next(iter(row.values())).ease
+        told_of = zip(departures, spreads, np.abs(departures) / spreads, strict=True)
+        pairs = dict(zip(both, told_of, strict=True))
     for z, others in near.items():
         ladder = row[z]
         if not others:
             yield from _by_itself(ladder)
             continue
         told = [pairs[z, other] for other in others]
-        surprise = np.min([part[2] for part in told], axis=0)
+        surprise = told[0][2]
         if len(told) == 2:
-            surprise[told[0][0] * told[1][0] < 0.0] = 0.0
+            same = told[0][0] * told[1][0] > 0.0
+            surprise = np.minimum(surprise, told[1][2]) * same
+        if surprise.max() < least:
+            continue
         at = _oddest(ladder, [row[other] for other in others], surprise, told, least)
         if at is None:
             continue

@@ -128,6 +128,43 @@ def root_coefficient(norm: Norm, at: int, near: float) -> float | None:
     return min(roots, key=lambda root: abs(root - near))
 
 
+class LeftOut(NamedTuple):
+    """A primitive that a segmented form left out of a contraction, since it also stands alone.
+
+    shell: name of the function that stands alone.  coefficient: with which it makes the norm one.
+    """
+
+    shell: str
+    exponent: float
+    coefficient: float
+
+
+def left_out(norm: Norm) -> LeftOut | None:
+    """The lone primitive that restores the norm of a contraction, where one is near enough.
+
+    It follows on the loosest exponent of the contraction, in steps like those inside it, and its
+    coefficient is no larger than the largest.
+    """
+    function = norm.function
+    loosest = float(function.exponents.min())
+    ratio = (float(function.exponents.max()) / loosest) ** (1.0 / (len(function.exponents) - 1))
+    for index, other in norm.block.functions_of(function.l):
+        if len(other.exponents) > 1 or norm.overlap >= 1.0:
+            continue
+        exponent = float(other.exponents[0])
+        if not loosest / (ratio * ratio) < exponent < loosest:
+            continue
+        lone = np.array([exponent])
+        half = float((primitive_overlap(lone, function.exponents, function.l)
+                      @ function.coefficients)[0])  # fmt: skip
+        reach = sqrt(half * half + 1.0 - norm.overlap)
+        largest = float(np.abs(function.coefficients).max())
+        coefficient = min(-half + reach, -half - reach, key=abs)
+        if abs(coefficient) < 1.2 * largest:
+            return LeftOut(norm.block.names[index], exponent, coefficient)
+    return None
+
+
 def culprit(norm: Norm, rows: Sequence[Row], finest: float = 2e-3) -> Culprit | None:
     """Find the number that put a contraction off its norm.
 

@@ -72,7 +72,7 @@ def told(
     what = "exponent" if odd.column is None else "coefficient"
     shell = odd.block.shells[odd.shell]
     word = shell.spelling(odd.row, odd.column)
-    slip = _slip(odd, word)
+    slip = slip_of(odd)
     message = (
         f"suspect: {what} {word} falls out of its row, where {odd.others} other elements suggest "
         f"{odd.expected:.4g} ({odd.low:.4g} to {odd.high:.4g})"
@@ -101,8 +101,9 @@ def told(
     )
 
 
-def _slip(odd: Oddity, word: str) -> Slip | None:
+def slip_of(odd: Oddity) -> Slip | None:
     """The slip that explains a departure; a wrong sign goes before all others."""
+    word = odd.block.shells[odd.shell].spelling(odd.row, odd.column)
     number = likeliest(word, odd.low, odd.high, odd.expected)
     if odd.column is not None:
         turned = turned_word(word)

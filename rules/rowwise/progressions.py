@@ -70,6 +70,7 @@ class Oddity(NamedTuple):
 # four.
 _REST = 2.5
 _REST_SHARE = 0.3
+_TRIED = 5.0  # surprise from which on it is tried what a correction leaves
 
 
 # Published sets hold such numbers in none to a third of their elements; where they are many a
@@ -183,9 +184,11 @@ def _oddest(
     weight = np.array([_ODD_WEIGHT if z in _ODD_VALENCE else 1.0 for z in numbers])
     surprise = told.surprise * weight[:, None]
     for at in np.flatnonzero(surprise.max(axis=1) >= least).tolist():
-        place, rest = alone(predict, values, told, at)
-        if surprise[at, place] >= least:
-            yield at, place, float(surprise[at, place]), rest
+        place, rest = int(surprise[at].argmax()), np.inf
+        # Below this they are counted only.
+        if surprise[at, place] >= _TRIED:
+            place, rest = alone(predict, values, told, at, _REST_SHARE)
+        yield at, place, float(surprise[at, place]), rest
 
 
 def _cell(block: Block, ladder: list[tuple[int, Shell]], place: int) -> _Cell:
@@ -254,7 +257,10 @@ def _columns(group: dict[int, tuple[Block, int]]) -> list[_Column]:
         largest = int(_middle(np.abs(values), axis=0).argmax())
         signs = np.sign(values[:, largest])
         usual = _middle(values * signs[:, None], axis=0)
-        lean = (values * np.sign(usual) * np.sqrt(np.abs(values))).sum(axis=1)
+        # By their number, so that one wrong sign does not turn all others; by size where even.
+        large = np.abs(values) > 0.02 * np.abs(values).max(axis=1, keepdims=True)
+        same = np.sign(values) * np.sign(usual)
+        lean = (same * large).sum(axis=1) + 0.5 * np.tanh((same * np.abs(values)).sum(axis=1))
         signs = np.where(lean < 0.0, -1.0, 1.0)
         # So is its scale; some elements print whole contractions by a factor larger or smaller.
         turned = values * signs[:, None]
