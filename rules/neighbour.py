@@ -188,8 +188,9 @@ def _pairs(case: Case, blocks: list[Block], told: set[int], share: float) -> Ite
         if rises is None or len(rises) < 3:
             continue
         judged += 1
-        # Exchanged exponents fall as steeply as they ought to rise.
-        is_steep = -1.6 * _USUAL_STEP < quantile(rises.tolist(), 0.5) < -0.6 * _USUAL_STEP
+        # Exchanged exponents fall as steeply as they ought to rise; half of all published
+        # neighbours rise by more than 2.4, one in a hundred by more than 5.
+        is_steep = -2.2 * _USUAL_STEP < quantile(rises.tolist(), 0.5) < -0.6 * _USUAL_STEP
         if is_steep and (rises < 0.0).mean() >= share and not {at, at + 1} & told:
             falling.append((left, right, float((rises < 0.0).mean()), len(rises)))
     if not falling or len(falling) > max(1, judged // 8):
@@ -242,7 +243,8 @@ def _columns(case: Case, members: BasisSet) -> Iterator[Finding]:
     for row in places.values():
         for z, shape in row.items():
             near = sorted((y for y in row if y != z and abs(y - z) <= 8), key=lambda y: abs(y - z))
-            pair = _crossed(shape, [row[y] for y in near[:4]])
+            alike = [y for y in near if row[y].coefficients.shape == shape.coefficients.shape]
+            pair = _crossed(shape, [row[y] for y in (alike if len(alike) > 1 else near)[:4]])
             if pair is None and strict:
                 pair = _lone_crossed(shape)
             if pair is not None:

@@ -12,7 +12,15 @@ from overlapse.rules.finding import Edit, Finding
 from overlapse.rules.physics.trends import quantile
 from overlapse.rules.registry import rule
 from overlapse.rules.repair import rescaled
-from overlapse.rules.rowwise.norms import NORMALISED, Culprit, Norm, culprit, look_alike, rounding
+from overlapse.rules.rowwise.norms import (
+    NORMALISED,
+    Culprit,
+    Norm,
+    culprit,
+    left_out,
+    look_alike,
+    rounding,
+)
 from overlapse.rules.rowwise.rows import Row, rows_of
 
 
@@ -26,6 +34,8 @@ def norm(case: Case, *, share: float = 0.9, floor: float = 3e-6) -> Iterator[Fin
     of all published contractions are printed unnormalised: so a self-overlap other than one counts
     where the same contraction of the neighbours in the row is normalised, or nearly all
     contractions of the set are.  A set that is printed unnormalised throughout gets one note.
+    Segmented forms of general contractions leave out the primitive that also stands alone; where
+    that one would restore the norm it is named, and the contraction is a note.
 
     Formula: <f|f> = sum_ij c_i c_j (2 sqrt(a_i a_j) / (a_i + a_j)) ** (l + 3/2) for coefficients
     over normalised primitives; the factor that mends it is 1 / sqrt(<f|f>).
@@ -248,10 +258,19 @@ def _odd_one(case: Case, group: list[Norm], sound: list[Norm], rows: list[Row]) 
         witnesses.append(guess.why)
     elif told:
         message += f"; {told}"
+    absent = left_out(off) if guess is None and not told and not published else None
+    if absent is not None:
+        message += (
+            f"; it would be one with the primitive of exponent {absent.exponent:.6g} in it, which "
+            f"stands alone as {absent.shell}, at a coefficient of about {absent.coefficient:.3g}: "
+            "segmented forms leave such a primitive out"
+        )
+        witnesses.append(f"{absent.shell} follows on the exponents of this contraction")
+    is_minor = off.deviation < 1e-4 and not is_clear
     return case.at_shell(
         off.block,
         off.shell,
-        "note" if published or (off.deviation < 1e-4 and not is_clear) else "warning",
+        "note" if published or is_minor or absent is not None else "warning",
         message,
         function=off.function,
         **place,

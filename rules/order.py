@@ -7,6 +7,7 @@ import numpy as np
 from overlapse.grammar.model import Function
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
+from overlapse.rules.gap import spacing_oddities
 from overlapse.rules.registry import rule
 from overlapse.rules.repair import reordered
 
@@ -41,10 +42,12 @@ def order(case: Case) -> Iterator[Finding]:
           0.3 0.3
         ****
     """
+    # A set that keeps an order everywhere else says more about the one that breaks it.
+    told = {odd.shell for odd in spacing_oddities(case) if odd.is_order}
     for block in case.document.blocks:
         for index, shell in enumerate(block.shells):
             row = next(filter(None, map(_out_of_line, shell.functions())), None)
-            if row is None:
+            if row is None or (id(block), index) in told:
                 continue
             yield case.at_shell(
                 block,

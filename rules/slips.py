@@ -1,6 +1,6 @@
 """Slips of the pen and the keyboard that make one number of another."""
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from itertools import pairwise
 from typing import NamedTuple
 
@@ -110,3 +110,28 @@ def likeliest(word: str, low: float, high: float, expected: float) -> Slip | Non
     """The telling slip whose number lies within the bounds and nearest to what is expected."""
     within = [slip for slip in slips(word) if slip.told in TELLING and low <= slip.value <= high]
     return min(within, key=lambda slip: abs(slip.value - expected), default=None)
+
+
+def is_size_of_a_slip(value: float, expected: float) -> bool:
+    """Whether one slip of the pen can make one number of the other: a factor of ten, or the sign.
+
+    What lies farther off, or has another sign and another size, is another number.
+    """
+    ratio = value / expected if expected else 0.0
+    return 1.0 / 12.0 < ratio < 12.0 or abs(ratio + 1.0) < 0.25
+
+
+def copied(word: str, others: Iterable[tuple[str, str]]) -> str:
+    """Where the same number stands that should not: one of the places told, or "" for none.
+
+    others: (word, place) of the numbers from which an eye may have slipped: the rows above and
+    below, the same place of the elements beside.  Numbers of one or two digits prove nothing.
+    """
+    digits = word.translate(FORTRAN).upper().partition("E")[0].replace(".", "").strip("+-0")
+    if len(digits) < 3:
+        return ""
+    value = float(word.translate(FORTRAN))
+    for other, place in others:
+        if NUMBER.fullmatch(other) and float(other.translate(FORTRAN)) == value:
+            return place
+    return ""

@@ -81,6 +81,29 @@ def rounding(norm: Norm) -> float:
     return float(by_c.sum() + by_a.sum())
 
 
+def is_vouched(
+    norms: Iterable[Norm], block: Block, shell: int, row: int, column: int | None, expected: float
+) -> bool:
+    """Whether a norm speaks for a number that is suspected to stand for another one.
+
+    A contraction that is normalised as it stands, and would not be with the number expected, holds
+    no single wrong number.
+    """
+    for norm in norms:
+        function = norm.function
+        if norm.block is not block or norm.shell != shell or norm.deviation > 1e-4:
+            continue
+        if row not in function.rows or column not in (None, function.column):
+            continue
+        exponents, coefficients = function.exponents.copy(), function.coefficients.copy()
+        at = int(np.flatnonzero(function.rows == row)[0])
+        (exponents if column is None else coefficients)[at] = expected
+        mended = abs(self_overlap(exponents, coefficients, function.l) - 1.0)
+        if not mended < 3.0 * max(norm.deviation, 1e-5):
+            return True
+    return False
+
+
 def half_unit(word: str) -> float:
     """Half a unit in the last printed place of a number; zeros at its end may be mere padding."""
     if not NUMBER.fullmatch(word):
@@ -103,6 +126,43 @@ def root_coefficient(norm: Norm, at: int, near: float) -> float | None:
     reach = sqrt(inside)
     roots = (-half + reach, -half - reach)
     return min(roots, key=lambda root: abs(root - near))
+
+
+class LeftOut(NamedTuple):
+    """A primitive that a segmented form left out of a contraction, since it also stands alone.
+
+    shell: name of the function that stands alone.  coefficient: with which it makes the norm one.
+    """
+
+    shell: str
+    exponent: float
+    coefficient: float
+
+
+def left_out(norm: Norm) -> LeftOut | None:
+    """The lone primitive that restores the norm of a contraction, where one is near enough.
+
+    It follows on the loosest exponent of the contraction, in steps like those inside it, and its
+    coefficient is no larger than the largest.
+    """
+    function = norm.function
+    loosest = float(function.exponents.min())
+    ratio = (float(function.exponents.max()) / loosest) ** (1.0 / (len(function.exponents) - 1))
+    for index, other in norm.block.functions_of(function.l):
+        if len(other.exponents) > 1 or norm.overlap >= 1.0:
+            continue
+        exponent = float(other.exponents[0])
+        if not loosest / (ratio * ratio) < exponent < loosest:
+            continue
+        lone = np.array([exponent])
+        half = float((primitive_overlap(lone, function.exponents, function.l)
+                      @ function.coefficients)[0])  # fmt: skip
+        reach = sqrt(half * half + 1.0 - norm.overlap)
+        largest = float(np.abs(function.coefficients).max())
+        coefficient = min(-half + reach, -half - reach, key=abs)
+        if abs(coefficient) < 1.2 * largest:
+            return LeftOut(norm.block.names[index], exponent, coefficient)
+    return None
 
 
 def culprit(norm: Norm, rows: Sequence[Row], finest: float = 2e-3) -> Culprit | None:

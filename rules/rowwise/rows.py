@@ -4,6 +4,7 @@ Functions correspond when they have the same l and the same place in blocks of o
 stretch of the periodic table whose functions of that l have the same contraction lengths.
 """
 
+from collections.abc import Container
 from typing import NamedTuple
 
 import numpy as np
@@ -44,6 +45,17 @@ class Row(NamedTuple):
 def stretch(z: int, stretches: tuple[tuple[int, int], ...]) -> int:
     """Index of the stretch that holds an element, -1 for none."""
     return next((at for at, (low, high) in enumerate(stretches) if low <= z <= high), -1)
+
+
+def nearest(z: int, group: Container[int], farthest: int = 2) -> list[int]:
+    """The nearest element of a group on either side in the same period, where there is one."""
+    found = []
+    for side in (-1, 1):
+        steps = (z + side * far for far in range(1, farthest + 1))
+        other = next((other for other in steps if other in group), None)
+        if other is not None and stretch(other, PERIODS) == stretch(z, PERIODS):
+            found.append(other)
+    return found
 
 
 def rows_of(members: BasisSet, whole_periods: bool = False) -> list[Row]:
