@@ -138,6 +138,11 @@ def audit(
         if energies is None:
             small = not staged and not recognised_only and size <= _ENERGETIC_BYTES
             energies = small and not (sieve is not None and sieve.without_energies(found))
+            if not (small or staged or recognised_only or quiet):
+                click.echo(
+                    f"energies are left out of {size / 1e6:.1f} MB; --energies asks for them",
+                    err=True,
+                )
         beside = Beside([target.path for target in found if target.path != Path("-")])
         options = Options(label, layout, beside=beside, energies=energies)
         if staged:
