@@ -182,8 +182,8 @@ def loss(
 def stationary(
     case: Case,
     *,
-    times: float = 8.5,
-    clear: float = 20.0,
+    times: float = 6.0,
+    clear: float = 13.0,
     alone: float = 10.0,
     least: float = 1e-3,
     far: float = 40.0,
@@ -209,10 +209,10 @@ def stationary(
     Huzinaga, J. Chem. Phys. 42, 1293 (1965) (exponents by the energy of atoms).
 
     Limits: times: how many standard errors a correction must be to be told, beside three
-    neighbours or more.  clear: how many make it a warning without another witness, twice as many
-    without neighbours.  alone: how many an element without neighbours needs.  least: the smallest
-    relative change that is told.  far: root of chi**2 from which a gradient that no number explains
-    well is told as well; half as much again without neighbours.
+    neighbours or more.  clear: how many make it a warning without another witness, two and a
+    half times as many without neighbours.  alone: how many an element without neighbours needs.
+    least: the smallest relative change that is told.  far: root of chi**2 from which a gradient
+    that no number explains well is told as well; half as much again without neighbours.
 
     Remedy: compare the number with the original publication.
 

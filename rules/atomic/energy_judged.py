@@ -137,7 +137,7 @@ def at_atom(
     """What the energy says about the numbers of one atom; ``own`` if its gradient is unusual."""
     best = _explained(ensemble, own, times, alone) if own is not None else None
     verdict = None
-    if best is not None and _is_good(best, times if best.others >= 3 else alone):
+    if best is not None and _is_good(best, times if best.others >= 3 else alone, far):
         verdict = best
     charge = ensemble.foreign(atom)
     if charge and (verdict is None or verdict.after > 100.0 * verdict.count):
@@ -153,7 +153,8 @@ def at_atom(
     astray = [
         stray
         for stray in ensemble.strays(atom)
-        if stray.times >= (times if stray.others >= 3 else 1.5 * alone) and stray.number != told
+        if stray.times >= (1.15 * times if stray.others >= 3 else 1.5 * alone)
+        and stray.number != told
     ]
     # One slip is one number: several that stray have another cause, and the first is a hint.
     astray.sort(key=lambda stray: -stray.times)
@@ -194,8 +195,12 @@ def _explained(ensemble: Ensemble, own: Steps, times: float, alone: float) -> Ve
     return replace(verdict, own=own) if verdict is not None else None
 
 
-def _is_good(verdict: Verdict, enough: float) -> bool:
+def _is_good(verdict: Verdict, enough: float, far: float) -> bool:
     """Whether a single number explains a gradient well enough to be held for wrong."""
     is_clear = verdict.significance >= enough
+    explains = verdict.after < max(far**2, _LEFT * verdict.before)
     is_sharp = verdict.error < min(0.05, 0.25 * abs(verdict.change))
-    return is_clear and is_sharp
+    return is_clear and explains and is_sharp
+
+
+_LEFT = 0.05  # part of a large chi squared that a single number may leave unexplained

@@ -35,7 +35,7 @@ def number_finding(case: Case, ensemble: Ensemble, verdict: Verdict, clear: floa
     if slip is not None:
         witnesses.append(f"slip: {slip.told} in {slip.word} gives {word}")
     is_far = abs(verdict.change) >= _SMALL
-    enough = clear if verdict.others >= 3 else 2.0 * clear
+    enough = clear if verdict.others >= 3 else 2.5 * clear
     is_sure = is_far and verdict.significance >= enough
     # A slip may fit by chance; another witness that agrees is enough.
     fits = slip is not None and slip.told in TELLING and verdict.significance >= 0.5 * clear
@@ -84,7 +84,8 @@ def column_finding(case: Case, ensemble: Ensemble, stray: Stray, clear: float) -
     if slip is not None:
         witnesses.append(f"slip: {slip.told} in {slip.word} gives {word}")
     agreed = bool(others) or (slip is not None and slip.told in TELLING)
-    is_sure = stray.others >= 3 and clear < inf and (agreed or stray.times >= clear)
+    enough = 0.5 * clear if agreed else clear
+    is_sure = stray.others >= 3 and clear < inf and stray.times >= enough
     return _at(
         case,
         stray.atom.block,

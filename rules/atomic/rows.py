@@ -46,3 +46,11 @@ def by_squares(here: int, z: Floats, table: Floats) -> tuple[Floats, Floats]:
     spread = _spread(np.abs(table - powers @ fitted) / free[:, None])
     reach = max(1.0, float(np.linalg.norm(inverse[-1])))
     return fitted[-1], spread * reach
+
+
+def by_both(here: int, z: Floats, table: Floats) -> tuple[Floats, Floats]:
+    """Between line and parabola, whose difference adds to the scatter; arguments as above."""
+    line, parabola = by_medians(here, z, table), by_squares(here, z, table)
+    centre = 0.5 * (line[0] + parabola[0])
+    spread = np.hypot(0.5 * (line[1] + parabola[1]), 0.5 * np.abs(line[0] - parabola[0]))
+    return centre, spread

@@ -20,7 +20,7 @@ import numpy as np
 
 from overlapse.grammar.model import Floats
 from overlapse.rules.atomic.atoms import Atom, Number
-from overlapse.rules.atomic.rows import by_medians
+from overlapse.rules.atomic.rows import by_both, by_medians
 from overlapse.rules.rowwise.norms import half_unit
 
 _FINEST = 3e-4  # steps of the best published numbers
@@ -52,8 +52,16 @@ class Steps:
 
     @cached_property
     def effort(self) -> Floats:
-        """Size of the gradient over the root of the stiffness, shape (n,)."""
-        return np.asarray(np.abs(self.gradient) / np.sqrt(np.maximum(self.stiffness, _SOFT)))
+        """What is gained by each number: size of the gradient over the root of the stiffness,
+        by that of the atom's size, shape (n,).
+        """
+        stiffness = np.maximum(self.stiffness, _SOFT)
+        return np.asarray(np.abs(self.gradient) / np.sqrt(stiffness) / self.size)
+
+    @property
+    def size(self) -> float:
+        """The scale of efforts: they grow from atom to atom, but less than the energy."""
+        return float(abs(self.atom.shells.limit) ** 0.25)
 
     def places_of(self, names: str) -> dict[tuple[object, ...], list[int]]:
         """Where the numbers of each kind, or each role, are."""
@@ -182,7 +190,7 @@ def usual(
     here = own.atom.block.atomic_number
     if len(others) >= 3:
         table = np.array([other.gradient for other in others])
-        centre, spread = by_medians(here, _charges(others), -table / stiffness)
+        centre, spread = by_both(here, _charges(others), -table / stiffness)
         for kind in set(own.kinds):
             places = [at for at, each in enumerate(own.kinds) if each == kind]
             # A few neighbours may agree by chance.
@@ -191,8 +199,9 @@ def usual(
         centre, spread = np.zeros(len(own.numbers)), _by_role(own, file, stiffness)
         for other in others:
             spread = np.maximum(spread, 2.0 * np.abs(other.gradient / stiffness))
+        spread = np.hypot(spread, np.hypot(blur, _LONE / stiffness))
         _by_period(own, mates, stiffness, centre, spread)
-        blur = np.hypot(blur, _LONE / stiffness)
+        blur = np.zeros(len(own.numbers))
     spread[_spare(own)] += 1.0
     return Usual(centre, np.sqrt(spread**2 + blur**2 + _FINEST**2), stiffness, len(others))
 
@@ -240,7 +249,7 @@ def _by_role(own: Steps, file: Sequence[Steps], stiffness: Floats) -> Floats:
             known = np.sort(np.concatenate(sizes.get(role, [np.zeros(0)])))
             if len(known) >= _ENOUGH:
                 usual = float(known[int(_MOSTLY * len(known))])
-                spread[places] = _AMPLE * usual / np.sqrt(stiffness[places])
+                spread[places] = _AMPLE * usual * own.size / np.sqrt(stiffness[places])
     return spread
 
 
