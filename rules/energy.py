@@ -178,12 +178,12 @@ def loss(
         yield from losing(case, gap, contracted, clear)
 
 
-@rule("energy.stationary")
+@rule("energy.stationary", last=True)
 def stationary(
     case: Case,
     *,
-    times: float = 7.5,
-    clear: float = 25.0,
+    times: float = 6.0,
+    clear: float = 13.0,
     alone: float = 10.0,
     least: float = 1e-3,
     far: float = 40.0,
@@ -197,20 +197,22 @@ def stationary(
     pattern is named, with the value that it should have.  Functions that hold no electrons do not
     show, and loose ones show little.  Sets recontracted for relativistic atoms are compared with
     their neighbours only.  Where all functions would have to shrink or grow as those of
-    another element would, its block has come to stand here.
+    another element would, its block has come to stand here.  Of chromium and copper the
+    configuration is taken, 4s1 or 4s2, in which the block goes with its row.
 
     Formula: step of a number x: -(dE/dx) / (d2E/dx2), orbitals relaxed, in units of the scatter of
-    the same place in the neighbours; chi**2 is their sum of squares.  All lengths at once:
+    the same place in the neighbours; chi**2 is their sum of squares.  A correction's standard error
+    is that of the scatter, or of what it leaves unexplained if that is more.  All lengths at once:
     f = -V / 2T, near Z / Z' for the block of Z'.
 
     Source: P. Pulay, Mol. Phys. 17, 197 (1969) (derivatives of the energy by the functions); S.
     Huzinaga, J. Chem. Phys. 42, 1293 (1965) (exponents by the energy of atoms).
 
     Limits: times: how many standard errors a correction must be to be told, beside three
-    neighbours or more.  clear: how many make it a warning without another witness.  alone: how many
-    an element without neighbours needs.  least: the smallest relative change that is told.
-    far: root of chi**2 from which a gradient that no number explains well is told as well; half as
-    much again without neighbours.
+    neighbours or more.  clear: how many make it a warning without another witness, two and a
+    half times as many without neighbours.  alone: how many an element without neighbours needs.
+    least: the smallest relative change that is told.  far: root of chi**2 from which a gradient
+    that no number explains well is told as well; half as much again without neighbours.
 
     Remedy: compare the number with the original publication.
 

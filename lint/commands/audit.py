@@ -21,7 +21,7 @@ from overlapse.lint.common import (
 )
 
 if TYPE_CHECKING:
-    from overlapse.lint.engine import FileAudit
+    from overlapse.lint.engine import FileAudit, Target
     from overlapse.lint.ledger import Sieve
 
 # Up to this much text, energies are computed unless somebody says otherwise: some ten files.
@@ -136,8 +136,11 @@ def audit(
             found = [Target(target.path, True) for target in found]
         size = 0 if staged else sum(size_of(target.path) for target in found)
         if energies is None:
-            small = not staged and not recognised_only and size <= _ENERGETIC_BYTES
-            energies = small and not (sieve is not None and sieve.without_energies(found))
+            is_hook = staged or recognised_only
+            reason = "" if is_hook else _left_out(size, sieve, found)
+            energies = not is_hook and not reason
+            if reason and not quiet:
+                click.echo(f"energies are left out, {reason}; --energies asks for them", err=True)
         beside = Beside([target.path for target in found if target.path != Path("-")])
         options = Options(label, layout, beside=beside, energies=energies)
         if staged:
@@ -204,6 +207,15 @@ def _write(
             ledgers = below.sieve.ledgers if below.sieve is not None else ()
             lines = closing(shown, below.paths, ledgers, below.energies, width(written))
             written.writelines(f"{line}\n" for line in lines)
+
+
+def _left_out(size: int, sieve: "Sieve | None", found: "Sequence[Target]") -> str:
+    """Why energies are not computed unless they are asked for; "" if they are."""
+    if size > _ENERGETIC_BYTES:
+        return f"as {size / 1e6:.1f} MB of files would take long"
+    if sieve is not None and sieve.without_energies(found):
+        return "as the ledger was written without them"
+    return ""
 
 
 class _Tally:

@@ -4,13 +4,14 @@ from collections import OrderedDict
 from collections.abc import Callable
 from dataclasses import dataclass, replace
 from functools import cached_property
+from hashlib import sha256
 from typing import Any, NamedTuple, TypeVar
 
 import numpy as np
 
 from overlapse.grammar.model import Block, Floats, Shell
-from overlapse.rules.physics.atom import Solution, solve, too_few
-from overlapse.rules.physics.configuration import Configuration, configuration, known
+from overlapse.rules.physics.atom import CYCLES, Solution, solve, too_few
+from overlapse.rules.physics.configuration import Configuration, configuration, filled, known
 from overlapse.rules.physics.onecentre import self_overlap
 from overlapse.rules.physics.radial import Integrals, kinetic
 from overlapse.rules.physics.response import Handle, Response, gradient, response
@@ -19,12 +20,38 @@ Found = TypeVar("Found")
 
 # More primitives of one l than this would take longer than an audit has.
 _MOST = 64
+_TRIAL = 4  # iterations that tell which of several changes lowers the energy
 
 
-# Results of the last atoms, by their numbers: a set is judged again after every keystroke in an
-# editor, and most of its elements are as they were.
-_MEMORY: OrderedDict[tuple[object, ...], dict[str, Any]] = OrderedDict()
-_REMEMBERED = 200
+class _Memory:
+    """Results of atoms by their numbers; those unused for longest are forgotten first.
+
+    A set is judged again after every keystroke in an editor, and most of its elements are as they
+    were.  most: bytes of second derivatives, by far the largest part, that are kept.
+    """
+
+    def __init__(self, most: int) -> None:
+        self.most = most
+        self.size = 0
+        self._kept: OrderedDict[bytes, tuple[int, dict[str, Any]]] = OrderedDict()
+
+    def of(self, key: bytes, size: int) -> dict[str, Any]:
+        """The results under a key, where about ``size`` bytes may come to be kept."""
+        if key in self._kept:
+            self._kept.move_to_end(key)
+        else:
+            self._kept[key] = (size, {})
+            self.size += size
+            while self.size > self.most and len(self._kept) > 1:
+                self.size -= self._kept.popitem(last=False)[1][0]
+        return self._kept[key][1]
+
+    def clear(self) -> None:
+        self._kept.clear()
+        self.size = 0
+
+
+MEMORY = _Memory(96_000_000)
 
 
 class Number(NamedTuple):
@@ -68,14 +95,34 @@ class Atom:
             coefficients[number.row, number.column] = value
         shells = list(self.block.shells)
         shells[number.shell] = Shell(old.angular, exponents, coefficients, old.line)
-        made = atom_of(replace(self.block, shells=tuple(shells)))
-        if made is None or list(made.numbers) != list(self.numbers):
+        made = atom_of(replace(self.block, shells=tuple(shells)), self.shells)
+        if made is None:
+            return None
+        if self._same_places(made):
+            made.__dict__["numbers"] = self.numbers
+        elif list(made.numbers) != list(self.numbers):
             return None
         if number.column is not None:
             made.__dict__["integrals"] = self.integrals
         if self.solution is not None and self.solution.converged:
             made.start = self.solution.orbitals
         return made
+
+    def _same_places(self, made: "Atom") -> bool:
+        """Whether an atom with one number changed has every primitive in its old place."""
+        return made.owners == self.owners and all(
+            len(made.exponents[l]) == len(old) and np.count_nonzero(made.exponents[l] != old) < 2
+            for l, old in self.exponents.items()
+        )
+
+    def tried(self, number: Number, value: float) -> float | None:
+        """About the energy with another value for one number: a few iterations from our orbitals.
+
+        hartree; None where there is no such atom.
+        """
+        made = self.changed(number, value)
+        found = made and made._solved(made.functions, made.start, _TRIAL)
+        return found.energy if found else None
 
     @cached_property
     def integrals(self) -> Integrals:
@@ -88,17 +135,14 @@ class Atom:
     @cached_property
     def _memory(self) -> dict[str, Any]:
         """What was found for an atom of just these numbers."""
-        key = (
-            self.shells.charge,
-            *((l, a.tobytes(), self.functions[l].tobytes()) for l, a in self.exponents.items()),
-            *((shell.exponents.tobytes(), shell.coefficients.tobytes(), shell.angular)
-              for shell in self.block.shells),
-        )  # fmt: skip
-        memory = _MEMORY.setdefault(key, {})
-        _MEMORY.move_to_end(key)
-        while len(_MEMORY) > _REMEMBERED:
-            _MEMORY.popitem(last=False)
-        return memory
+        digest = sha256(f"{self.shells.charge} {self.shells.text}".encode())
+        numbers = 0
+        for shell in self.block.shells:
+            digest.update(repr((shell.angular, shell.coefficients.shape)).encode())
+            digest.update(shell.exponents.tobytes())
+            digest.update(shell.coefficients.tobytes())
+            numbers += len(shell.exponents) + int(np.count_nonzero(shell.coefficients))
+        return MEMORY.of(digest.digest(), 4000 + 8 * numbers**2)
 
     def once(self, name: str, make: Callable[[], Found]) -> Found:
         """A result that is remembered for all atoms of the same numbers."""
@@ -120,10 +164,13 @@ class Atom:
         return self.once("uncontracted", lambda: self._solved(each))
 
     def _solved(
-        self, functions: dict[int, Floats], start: dict[int, Floats] | None = None
+        self,
+        functions: dict[int, Floats],
+        start: dict[int, Floats] | None = None,
+        cycles: int = CYCLES,
     ) -> Solution | None:
         try:
-            return solve(self.integrals, functions, start)
+            return solve(self.integrals, functions, start, cycles)
         except (ValueError, np.linalg.LinAlgError, FloatingPointError):
             return None
 
@@ -174,6 +221,12 @@ class Atom:
         return (moving - self.energy) / (2.0 * moving) if moving > 0.0 else None
 
     @cached_property
+    def filled(self) -> "Atom | None":
+        """The same functions with a full 4s shell, where the ground state has it half empty."""
+        shells = filled(self.shells.charge)
+        return None if shells is None else atom_of(self.block, shells)
+
+    @cached_property
     def numbers(self) -> dict[Number, Handle]:
         """The printed numbers that the energy depends on."""
         found: dict[Number, Handle] = {}
@@ -216,8 +269,9 @@ class Atom:
         return gradient(self.integrals, self.functions, self.solution.orbitals, handles)
 
 
-def atom_of(block: Block) -> Atom | None:
-    """The atom of a block, or None where there is none to compute.
+def atom_of(block: Block, shells: Configuration | None = None) -> Atom | None:
+    """The atom of a block, or None where there is none to compute; ``shells``: not those of its
+    ground state.
 
     There is none beyond krypton, beside a core potential, for a block that was not read whole or
     lacks functions, and for numbers that no energy can be computed from.
@@ -225,7 +279,7 @@ def atom_of(block: Block) -> Atom | None:
     z = block.atomic_number
     if not known(z) or block.potential is not None or not block.complete:
         return None
-    shells = configuration(z)
+    shells = shells or configuration(z)
     exponents: dict[int, Floats] = {}
     functions: dict[int, Floats] = {}
     owners: dict[int, list[tuple[int, int]]] = {}

@@ -12,11 +12,13 @@ import numpy as np
 
 from overlapse.grammar.model import Floats
 from overlapse.rules.atomic.atoms import Atom, Number
+from overlapse.rules.atomic.rows import by_medians, by_squares
 from overlapse.rules.rowwise.norms import half_unit
 
 _LEAST = 4  # primitives of a column that is compared
 _ALIKE = 0.03  # median departure of a column that is an orbital
-_CLOSE = 3e-3  # median departure of a column that was printed as the orbital
+_CLOSE = 3e-4  # median departure of a column that was printed as the orbital
+_CLOSEST = 3e-3  # and its largest but one
 _GROSS = 0.3  # departure that counts without neighbours: sets add functions to the atom's own
 _FINEST = 3e-4
 
@@ -107,33 +109,44 @@ class Stray:
 def strays(column: Column, others: Sequence[Column]) -> list[Stray]:
     """At most one coefficient of a column that departs by itself.
 
-    others: the same column of the neighbours.
+    others: the same column of the neighbours.  Two ways along the row must agree: some columns bend
+    along it, and in others single neighbours fall out.
     """
-    if len(others) >= 3:
-        table = np.array([other.departure for other in others])
-        centre = np.median(table, axis=0)
-        away = np.sort(np.abs(table - centre), axis=0)
-        spread = 1.5 * away[-2 if len(others) > 3 else -1]
+    if len(others) < 3:
+        return _alone(column, others)
+    here = column.atom.block.atomic_number
+    z = np.array([float(other.atom.block.atomic_number) for other in others])
+    table = np.array([other.departure for other in others])
+    found = []
+    for fit in (by_medians, by_squares):
+        centre, spread = fit(here, z, table)
         spread = np.hypot(spread, 0.5 * float(np.median(spread)))
-    else:
-        centre = np.zeros(len(column.numbers))
-        spread = np.full(len(centre), 2e-3 + 4.0 * float(np.median(np.abs(column.departure))))
+        found.append(_worst(column, len(others), centre, spread))
+    weaker = min(found, key=lambda stray: stray.times)
+    return [weaker] if found[0].number == found[1].number else []
+
+
+def _alone(column: Column, others: Sequence[Column]) -> list[Stray]:
+    """The same without neighbours: only a column that is an orbital to the last digits tells."""
+    centre = np.zeros(len(column.numbers))
+    spread = np.full(len(centre), 2e-3 + 4.0 * float(np.median(np.abs(column.departure))))
+    stray = _worst(column, len(others), centre, spread)
+    sizes = np.abs(column.departure)
+    worst = column.numbers.index(stray.number)
+    rest = np.delete(sizes, worst)
+    sure = float(np.median(sizes)) < _CLOSE and float(rest.max()) < _CLOSEST
+    return [stray] if sure and sizes[worst] >= _GROSS else []
+
+
+def _worst(column: Column, others: int, centre: Floats, spread: Floats) -> Stray:
+    """The coefficient that departs most, over what the others of the column depart by."""
     scatter = np.sqrt(spread**2 + (2.0 * column.blur) ** 2 + _FINEST**2)
-    times = np.abs(column.departure - centre) / scatter
-    worst = int(np.argmax(times))
-    rest = np.delete(times, worst)
-    alone = len(others) < 3
-    close = 0.1 * _CLOSE if alone else _CLOSE
-    sure = float(np.median(np.abs(column.departure))) < close and spread[worst] < 4.0 * _CLOSE
-    sure = sure and not (alone and np.delete(np.abs(column.departure), worst).max() > _CLOSE)
-    if rest.max() > 0.25 * times[worst] or not sure:
-        return []
-    if alone and abs(column.departure[worst]) < _GROSS:
-        return []
+    away = np.abs(column.departure - centre) / scatter
+    worst = int(np.argmax(away))
+    rest = float(np.median(np.delete(away, worst)))
     size = column.departure[worst] - centre[worst]
     usual = max(abs(float(column.orbital[worst])), 1e-3 * float(np.abs(column.own).max()))
     value = float(column.own[worst] - size * usual)
     error = float(scatter[worst] * usual / max(abs(value), 1e-300))
-    return [
-        Stray(column.atom, column.numbers[worst], value, error, float(times[worst]), len(others))
-    ]
+    times = float(away[worst] / np.hypot(1.0, rest))
+    return Stray(column.atom, column.numbers[worst], value, error, times, others)

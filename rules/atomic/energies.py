@@ -1,6 +1,7 @@
 """The atoms of a set together: who can be compared with whom."""
 
 import re
+from collections.abc import Iterable
 from functools import cached_property
 
 from overlapse.grammar.designated import Designation
@@ -8,12 +9,13 @@ from overlapse.grammar.elements import period_of, row_of
 from overlapse.grammar.model import BasisSet
 from overlapse.rules.atomic.atoms import Atom, atom_of
 from overlapse.rules.atomic.columns import Column, Stray, columns_of, strays
-from overlapse.rules.atomic.stationary import Steps, Usual, steps_of, usual
+from overlapse.rules.atomic.stationary import Steps, Usual, explanations, steps_of, usual
 from overlapse.rules.case import Case, is_orbital
 from overlapse.rules.labels.valence import innermost
 from overlapse.rules.physics.trends import quantile
 
 _FOREIGN = 0.5  # units of nuclear charge; published sets stay within 0.2
+_ORDINARY = 1.3  # mean square of steps that are like those of the row
 _WHOLE = 0.9  # share of 1s that sets for all electrons describe, see `valence`
 
 
@@ -37,27 +39,40 @@ class Ensemble:
         self.relativistic = relativistic
 
     @cached_property
-    def _pattern(self) -> dict[int, tuple[object, ...]]:
+    def _pattern(self) -> dict[int, tuple[object, tuple[int, ...], int]]:
         """What atoms must share to be compared: row, occupation of s shells, numbers in place."""
-        return {
-            id(atom): (
+        forms: dict[tuple[object, ...], int] = {}
+        found: dict[int, tuple[object, tuple[int, ...], int]] = {}
+        for atom in self.atoms:
+            form = (tuple(shell.angular for shell in atom.block.shells), tuple(atom.numbers))
+            found[id(atom.block)] = (
                 row_of(atom.block.atomic_number),
                 atom.shells.electrons[0],
-                tuple(shell.angular for shell in atom.block.shells),
-                tuple(atom.numbers),
+                forms.setdefault(form, len(forms)),
             )
-            for atom in self.atoms
-        }
+        return found
 
     def neighbours(self, atom: Atom) -> list[Atom]:
-        """The other atoms of the row that have the same numbers in the same places."""
-        own = self._pattern[id(atom)]
+        """The other atoms of the row that have the same numbers in the same places.
+
+        An atom that was found to go with its row beside another configuration has it as well.
+        """
+        found = self._alike(atom)
+        joined = id(atom.block) in self._joined
+        return [a for a in found if joined or self._occupied(a) == self._occupied(atom)]
+
+    def _alike(self, atom: Atom) -> list[Atom]:
+        """The atoms of the row with the same numbers, whatever they hold."""
+        row, _, form = self._pattern[id(atom.block)]
         return [
             other
             for other in self.atoms
             if other.block.atomic_number != atom.block.atomic_number
-            and self._pattern[id(other)] == own
+            and self._pattern[id(other.block)][::2] == (row, form)
         ]
+
+    def _occupied(self, atom: Atom) -> object:
+        return self._pattern[id(atom.block)][1]
 
     def near(self, atom: Atom) -> list[Atom]:
         """The other elements of the row up to three places away."""
@@ -89,23 +104,61 @@ class Ensemble:
         return made_for if made_for != z and 1 <= made_for <= 118 else None
 
     @cached_property
-    def _steps(self) -> dict[int, Steps]:
+    def ground_steps(self) -> dict[int, Steps]:
+        """Steps of the ground states, by the identity of the block."""
+        return self._computed(self.atoms)
+
+    def _computed(self, atoms: Iterable[Atom]) -> dict[int, Steps]:
         found = {}
-        for atom in self.atoms:
+        for atom in atoms:
             steps = steps_of(atom)
             if steps is not None:
-                found[id(atom)] = steps
+                found[id(atom.block)] = steps
             # All that the rules ask of the integrals; those of a whole set are too many to keep.
             _ = atom.uncontracted
             atom.forget()
         return found
 
+    @cached_property
+    def _joined(self) -> dict[int, Steps]:
+        """Steps of atoms that go with their row, by the identity of the block.
+
+        Of chromium and copper some sets are made for the ground state, others for the configuration
+        of their neighbours.  The whole block decides: that one is taken which a single wrong number
+        at most leaves with steps like those of the row.
+        """
+        found = {}
+        for atom in self.atoms:
+            other = atom.filled
+            ground = self.ground_steps.get(id(atom.block))
+            if other is None or ground is None:
+                continue
+            row = [
+                self.ground_steps[id(a.block)]
+                for a in self._alike(atom)
+                if a.filled is None and id(a.block) in self.ground_steps
+            ]
+            if len(row) < 3:
+                continue
+            tried = []
+            for steps in (ground, *self._computed([other]).values()):
+                best = explanations(steps, usual(steps, row, [], []))[0]
+                tried.append((best.after, steps))
+            least, steps = min(tried, key=lambda each: each[0])
+            if least < _ORDINARY * len(steps.numbers):
+                found[id(atom.block)] = steps
+        return found
+
     def steps(self, atom: Atom) -> Steps | None:
-        return self._steps.get(id(atom))
+        """What an atom's energy does with its numbers, in the configuration it was made for."""
+        return self._joined.get(id(atom.block)) or self.ground_steps.get(id(atom.block))
 
     def others(self, atom: Atom) -> list[Steps]:
         """Steps of the neighbours."""
-        return [s for other in self.neighbours(atom) if (s := self.steps(other)) is not None]
+        near = self.neighbours(atom)
+        if id(atom.block) in self._joined:
+            near = [other for other in near if other.filled is None]
+        return [s for other in near if (s := self.steps(other)) is not None]
 
     def mates(self, atom: Atom) -> list[Steps]:
         """Steps of the other atoms of the period."""
@@ -130,7 +183,11 @@ class Ensemble:
 
     @cached_property
     def _columns(self) -> dict[int, list[Column]]:
-        return {id(atom): columns_of(atom) for atom in self.atoms}
+        found = {}
+        for atom in self.atoms:
+            steps = self.steps(atom)
+            found[id(atom.block)] = columns_of(steps.atom if steps is not None else atom)
+        return found
 
     def strays(self, atom: Atom) -> list[Stray]:
         """Coefficients of an atom that are not their orbital's."""
@@ -139,12 +196,12 @@ class Ensemble:
     def columns(self, atom: Atom) -> list[tuple[Column, list[Column]]]:
         """The columns of an atom that are its orbitals, each with the same ones of neighbours."""
         near = [
-            {column.numbers: column for column in self._columns[id(other)]}
+            {column.numbers: column for column in self._columns[id(other.block)]}
             for other in self.neighbours(atom)
         ]
         return [
             (column, [table[column.numbers] for table in near if column.numbers in table])
-            for column in self._columns[id(atom)]
+            for column in self._columns[id(atom.block)]
         ]
 
 

@@ -119,7 +119,7 @@ def unsteady(
     for ensemble in ensembles(case):
         suspects = _suspects(ensemble, times, alone)
         for atom in ensemble.atoms:
-            own = suspects.get(id(atom))
+            own = suspects.get(id(atom.block))
             yield from at_atom(case, ensemble, atom, own, times, clear, alone, least, far)
 
 
@@ -135,9 +135,9 @@ def at_atom(
     far: float,
 ) -> Iterator[Finding]:
     """What the energy says about the numbers of one atom; ``own`` if its gradient is unusual."""
-    best = _explained(ensemble, own) if own is not None else None
+    best = _explained(ensemble, own, times, alone) if own is not None else None
     verdict = None
-    if best is not None and _is_good(best, times if best.others >= 3 else alone):
+    if best is not None and _is_good(best, times if best.others >= 3 else alone, far):
         verdict = best
     charge = ensemble.foreign(atom)
     if charge and (verdict is None or verdict.after > 100.0 * verdict.count):
@@ -153,7 +153,8 @@ def at_atom(
     astray = [
         stray
         for stray in ensemble.strays(atom)
-        if stray.times >= 1.5 * (times if stray.others >= 3 else alone) and stray.number != told
+        if stray.times >= (1.15 * times if stray.others >= 3 else 1.5 * alone)
+        and stray.number != told
     ]
     # One slip is one number: several that stray have another cause, and the first is a hint.
     astray.sort(key=lambda stray: -stray.times)
@@ -176,32 +177,30 @@ def _suspects(ensemble: Ensemble, times: float, alone: float) -> dict[int, Steps
             away = float((expected.chi(own.gradient) ** 2).sum()) ** 0.5
             found.append((away / (times if expected.others >= 3 else alone), own))
     found = sorted((each for each in found if each[0] >= 1.0), key=lambda each: -each[0])
-    return {id(own.atom): own for _, own in found[:_MOST]}
+    return {id(own.atom.block): own for _, own in found[:_MOST]}
 
 
-def _explained(ensemble: Ensemble, own: Steps) -> Verdict | None:
+def _explained(ensemble: Ensemble, own: Steps, times: float, alone: float) -> Verdict | None:
     """The single number that explains an atom's gradient best."""
     expected = ensemble.usual(own)
     if ensemble.relativistic and expected.others < 3:
         return None
     # Following a number takes long, and an edited file has few new ones.
+    enough = times if expected.others >= 3 else alone
     verdict = own.atom.once(
-        f"explained against {expected.token}",
-        lambda: explain(own, ensemble.others(own.atom), expected),
+        f"explained against {expected.token} by {enough}",
+        lambda: explain(own, ensemble.others(own.atom), expected, enough),
     )
     own.atom.forget()
     return replace(verdict, own=own) if verdict is not None else None
 
 
-def _is_good(verdict: Verdict, enough: float) -> bool:
+def _is_good(verdict: Verdict, enough: float, far: float) -> bool:
     """Whether a single number explains a gradient well enough to be held for wrong."""
     is_clear = verdict.significance >= enough
-    explains = verdict.after < max(_LEFT * min(verdict.before, 1e4), 0.05 * verdict.before)
-    if verdict.others < 3:
-        # Without neighbours the rest of the atom must be in order to be believed.
-        explains = verdict.after < 10.0 * verdict.count
+    explains = verdict.after < max(far**2, _LEFT * verdict.before)
     is_sharp = verdict.error < min(0.05, 0.25 * abs(verdict.change))
     return is_clear and explains and is_sharp
 
 
-_LEFT = 0.35  # part of chi squared that a single number may leave unexplained
+_LEFT = 0.05  # part of a large chi squared that a single number may leave unexplained

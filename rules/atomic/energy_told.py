@@ -30,15 +30,16 @@ def number_finding(case: Case, ensemble: Ensemble, verdict: Verdict, clear: floa
         f"stationarity: a change of {verdict.change:+.2%} explains the gradient, "
         f"{verdict.significance:.0f} standard errors from {against}"
     ]
-    others = _others(ensemble, atom, number, verdict.value, verdict.error)
-    witnesses += others
+    others = _others(case, ensemble, atom, number, verdict.value)
+    witnesses += others + _costly(case, atom)
     if slip is not None:
         witnesses.append(f"slip: {slip.told} in {slip.word} gives {word}")
     is_far = abs(verdict.change) >= _SMALL
-    is_sure = is_far and verdict.others >= 3 and verdict.significance >= clear
-    # A second witness may agree by chance where the first is weak.
-    agreed = bool(others) or (slip is not None and slip.told in TELLING)
-    is_sure = is_sure or (agreed and verdict.significance >= 0.5 * clear)
+    enough = clear if verdict.others >= 3 else 2.5 * clear
+    is_sure = is_far and verdict.significance >= enough
+    # A slip may fit by chance; another witness that agrees is enough.
+    fits = slip is not None and slip.told in TELLING and verdict.significance >= 0.5 * clear
+    is_sure = is_sure or bool(others) or fits
     what = "exponent" if number.column is None else "coefficient"
     return _at(
         case,
@@ -78,12 +79,13 @@ def column_finding(case: Case, ensemble: Ensemble, stray: Stray, clear: float) -
     witnesses = [
         f"orbital: {stray.times:.0f} times the departure of its neighbours from the atom's orbital"
     ]
-    others = _others(ensemble, stray.atom, stray.number, stray.value, stray.error)
-    witnesses += others
+    others = _others(case, ensemble, stray.atom, stray.number, stray.value)
+    witnesses += others + _costly(case, stray.atom)
     if slip is not None:
         witnesses.append(f"slip: {slip.told} in {slip.word} gives {word}")
     agreed = bool(others) or (slip is not None and slip.told in TELLING)
-    is_sure = stray.others >= 3 and clear < inf and (agreed or stray.times >= clear)
+    enough = 0.5 * clear if agreed else clear
+    is_sure = stray.others >= 3 and clear < inf and stray.times >= enough
     return _at(
         case,
         stray.atom.block,
@@ -132,20 +134,54 @@ def _proposal(
     return word, None, rounded, f"{rounded:.10g} +- {size:.1g}"
 
 
-def _others(
-    ensemble: Ensemble, atom: Atom, number: Number, value: float, error: float
-) -> list[str]:
+def _others(case: Case, ensemble: Ensemble, atom: Atom, number: Number, value: float) -> list[str]:
     """Witnesses besides the energy that agree with it."""
-    found = []
+    printed = atom.value(number)
+    found = _found(case, atom.block, number, printed, value)
     steps = ensemble.steps(atom)
     if steps is not None:
         for each, suggested, far in by_row(steps, ensemble.others(atom)):
-            printed = atom.value(number)
             nearer = abs(suggested - value) < 0.5 * abs(suggested - printed)
             if each == number and far > 4.0 and nearer:
                 found.append(f"trend: the neighbours suggest about {suggested:.4g}")
     found += _norm(atom, number, value)
     return found
+
+
+# Rules that look at numbers without the atom, by what they are called as witnesses.
+_BESIDE = {
+    "primitive": "other primitives",
+    "contraction": "other contractions",
+    "drift": "another file",
+}
+
+
+def _found(case: Case, block: Block, number: Number, printed: float, value: float) -> list[str]:
+    """What other rules say of the same number, where they do not contradict."""
+    cells = block.shells[number.shell].cells
+    if cells is None:
+        return []
+    place = case.document.source.place(cells.span(number.row, number.column)[0])
+    told = []
+    for finding in (f for found in case.found.values() for f in found):
+        what = _BESIDE.get(finding.rule.partition(".")[0])
+        if what is None or (finding.line, finding.column) != (place.line, place.column):
+            continue
+        expected = finding.expected
+        if expected is None:
+            told.append(f"{what}: {finding.rule} points at this number")
+        elif not isinstance(expected, str) and abs(expected - value) < 0.5 * abs(printed - value):
+            told.append(f"{what}: {finding.rule} asks for {expected:.4g}")
+    return told
+
+
+def _costly(case: Case, atom: Atom) -> list[str]:
+    """What `energy.loss` says of the atom: no witness by itself, as it is the same energy."""
+    return [
+        f"energy loss: {finding.message.removeprefix('suspect: ')}"
+        for finding in case.found.get("energy.loss", ())
+        if finding.line == atom.block.line
+    ]
 
 
 def _norm(atom: Atom, number: Number, value: float) -> list[str]:

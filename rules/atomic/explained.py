@@ -12,16 +12,21 @@ import numpy as np
 
 from overlapse.grammar.model import Floats
 from overlapse.rules.atomic.atoms import Atom, Number
-from overlapse.rules.atomic.stationary import Steps, Usual, explanations
+from overlapse.rules.atomic.stationary import (
+    Explanation,
+    Steps,
+    Usual,
+    explanations,
+    significance,
+)
 
 
 @dataclass(frozen=True, eq=False)
 class Verdict:
     """A number that explains an atom's steps, worked out with the energy itself.
 
-    value: what it should be; error: standard error of ln|value|.  change: of ln|number|, or for a
-    change of sign of the number over itself.  significance, before, after: as in `Explanation`,
-    after at the new value.  count: numbers of the atom.  others: neighbours compared with.
+    value: what it should be; error: standard error of ln|value|.  before, after: chi squared at the
+    printed value and at the new one.  others: neighbours compared with.
     """
 
     own: Steps
@@ -43,7 +48,7 @@ class Verdict:
 
     @property
     def significance(self) -> float:
-        return float(max(self.before - self.after, 0.0) ** 0.5)
+        return significance(self.before, self.after, self.count)
 
 
 _FURTHEST = 0.4  # change of a logarithm in one step
@@ -103,7 +108,7 @@ def refined(own: Steps, expected: Usual, number: Number, start: float) -> Verdic
         elif after > 4.0 * best.after:
             break
         step = float(np.clip((pattern @ away) / length, -_FURTHEST, _FURTHEST))
-        if abs(step) < max(2e-5, 0.05 * error):
+        if abs(step) < max(2e-5, 0.1 * error):
             break
         value = path.further(value, step)
         moved = path.away(value)
@@ -142,32 +147,40 @@ def by_row(own: Steps, others: Sequence[Steps]) -> list[tuple[Number, float, flo
     return sorted(found, key=lambda each: -each[2])
 
 
-def explain(own: Steps, others: Sequence[Steps], expected: Usual) -> Verdict | None:
+def explain(own: Steps, others: Sequence[Steps], expected: Usual, enough: float) -> Verdict | None:
     """The single number that explains an atom's steps best, found with the energy itself.
 
-    A few candidates are tried at first, more where these leave much unexplained.
+    A few candidates are tried at first, more where these leave much unexplained.  enough: the
+    significance that is asked for; where second derivatives foretell much less, None.
     """
     best: Verdict | None = None
     tried: set[tuple[Number, float]] = set()
-    for most in (3, 9):
-        for number, start in _candidates(own, others, expected, most):
+    guesses = explanations(own, expected)
+    foretold = significance(guesses[0].before, guesses[0].after, len(own.numbers))
+    is_small = guesses[0].before < _LINEAR**2
+    if is_small and foretold < 0.7 * enough:
+        return None
+    for most in (3,) if is_small else (3, 9):
+        for number, start in _candidates(own, others, guesses, most):
             if (number, start) in tried:
                 continue
             tried.add((number, start))
             found = refined(own, expected, number, start)
             if found is not None and (best is None or found.after < best.after):
                 best = found
+            if is_small and best is not None and best.after < 0.7 * guesses[1].after:
+                return best  # the others explain less
         if best is not None and best.after < 20.0 * best.count:
             break
     return best
 
 
 def _candidates(
-    own: Steps, others: Sequence[Steps], expected: Usual, most: int
+    own: Steps, others: Sequence[Steps], guesses: Sequence[Explanation], most: int
 ) -> Iterator[tuple[Number, float]]:
     """Numbers with the values to begin from."""
     atom = own.atom
-    for guess in explanations(own, expected)[:most]:
+    for guess in guesses[:most]:
         if guess.before < _LINEAR**2 and guess.after > 0.6 * guess.before:
             break  # small departures follow the second derivatives; the rest explain still less
         step = float(np.clip(guess.change, -_FURTHEST, _FURTHEST))
@@ -188,11 +201,21 @@ def _cheapest_slips(own: Steps, most: int) -> Iterator[tuple[Number, float]]:
     found = []
     for number in own.numbers:
         value = own.atom.value(number)
-        factors = (0.1, 10.0) if number.column is None else (-1.0,)
-        for factor in factors:
-            changed = own.atom.changed(number, factor * value)
-            energy = changed.energy if changed is not None else None
+        for factor in (0.1, 10.0) if number.column is None else (-1.0,):
+            if number.column is None and not _falls(own.atom, number, factor * value):
+                continue
+            energy = own.atom.tried(number, factor * value)
             if energy is not None:
                 found.append((energy, number, factor * value))
     for _, number, value in sorted(found)[:most]:
         yield number, value
+
+
+def _falls(atom: Atom, number: Number, value: float) -> bool:
+    """Whether an exponent of this value would have its place in a shell that falls."""
+    exponents = atom.block.shells[number.shell].exponents
+    others = np.delete(exponents, number.row)
+    if (np.diff(others) > 0.0).any():
+        return True
+    above, below = others[: number.row], others[number.row :]
+    return bool((above > value).all() and (below < value).all())

@@ -20,13 +20,16 @@ import numpy as np
 
 from overlapse.grammar.model import Floats
 from overlapse.rules.atomic.atoms import Atom, Number
-from overlapse.rules.physics.trends import quantile
+from overlapse.rules.atomic.rows import by_both, by_medians
 from overlapse.rules.rowwise.norms import half_unit
 
 _FINEST = 3e-4  # steps of the best published numbers
 _NOISE = 1e-7  # of a derivative, hartree: what optimisations of sets leave at best
 _LONE = 1e-5  # the same for an element that has no neighbours to compare with
 _STRANGE = 4e-3  # added to the scatter of elements that are of the period, but not of the row
+# Of an element without neighbours: how large g / sqrt(H) may be, over the quantile of its role.
+_MOSTLY, _AMPLE, _ENOUGH, _UNKNOWN = 0.75, 3.0, 8, 0.05
+_TELLING = 20  # numbers of an atom that say something
 _SOFT = 1e-5  # second derivatives below it, hartree, tell nothing
 
 
@@ -48,6 +51,32 @@ class Steps:
         return np.asarray(np.abs(np.diagonal(self.curvature)))
 
     @cached_property
+    def effort(self) -> Floats:
+        """What is gained by each number: size of the gradient over the root of the stiffness,
+        by that of the atom's size, shape (n,).
+        """
+        stiffness = np.maximum(self.stiffness, _SOFT)
+        return np.asarray(np.abs(self.gradient) / np.sqrt(stiffness) / self.size)
+
+    @property
+    def size(self) -> float:
+        """The scale of efforts: they grow from atom to atom, but less than the energy."""
+        return float(abs(self.atom.shells.limit) ** 0.25)
+
+    def places_of(self, names: str) -> dict[tuple[object, ...], list[int]]:
+        """Where the numbers of each kind, or each role, are."""
+        if names not in self._sorted:
+            found: dict[tuple[object, ...], list[int]] = {}
+            for at, name in enumerate(getattr(self, names)):
+                found.setdefault(name, []).append(at)
+            self._sorted[names] = found
+        return self._sorted[names]
+
+    @cached_property
+    def _sorted(self) -> dict[str, dict[tuple[object, ...], list[int]]]:
+        return {}
+
+    @cached_property
     def blur(self) -> Floats:
         """What printed digits and an unfinished iteration add to the gradient, shape (n,)."""
         digits = np.array([_digits(self.atom, number) for number in self.numbers])
@@ -61,6 +90,32 @@ class Steps:
             (block.shells[n.shell].letters, block.names[n.shell], n.row, n.column)
             for n in self.numbers
         )
+
+    @cached_property
+    def roles(self) -> tuple[tuple[object, ...], ...]:
+        """For each number what decides how loose it may be: kind, and place counted from outside.
+
+        The outermost functions were made for molecules, or hold few electrons; the innermost are
+        the sharpest.
+        """
+        shells = self.atom.block.shells
+        found = []
+        for n in self.numbers:
+            letters, size = shells[n.shell].letters, len(shells[n.shell].exponents)
+            behind = self._behind[n.shell]
+            place = (min(behind, 2), 0) if size == 1 else (min(behind, 1), min(size - 1 - n.row, 2))
+            found.append((letters, n.column is None, size == 1, *place))
+        return tuple(found)
+
+    @cached_property
+    def _behind(self) -> dict[int, int]:
+        """How many shells of the same letters follow each shell that holds a number."""
+        shells = self.atom.block.shells
+        held = sorted({n.shell for n in self.numbers})
+        return {
+            at: sum(shells[other].letters == shells[at].letters for other in held if other > at)
+            for at in held
+        }
 
     @cached_property
     def kinds(self) -> tuple[tuple[int, bool], ...]:
@@ -132,20 +187,22 @@ def usual(
     alike = np.array([*(other.stiffness for other in others), own.stiffness])
     stiffness = np.maximum(np.median(alike, axis=0), _SOFT)
     blur = own.blur / stiffness
+    here = own.atom.block.atomic_number
     if len(others) >= 3:
         table = np.array([other.gradient for other in others])
-        centre, spread = _along_row(own, _charges(others), -table / stiffness)
+        centre, spread = by_both(here, _charges(others), -table / stiffness)
         for kind in set(own.kinds):
             places = [at for at, each in enumerate(own.kinds) if each == kind]
             # A few neighbours may agree by chance.
             spread[places] = np.hypot(spread[places], 0.5 * np.median(spread[places]))
     else:
-        centre, spread = np.zeros(len(own.numbers)), _of_kind(own, file, stiffness)
+        centre, spread = np.zeros(len(own.numbers)), _by_role(own, file, stiffness)
         for other in others:
             spread = np.maximum(spread, 2.0 * np.abs(other.gradient / stiffness))
+        spread = np.hypot(spread, np.hypot(blur, _LONE / stiffness))
         _by_period(own, mates, stiffness, centre, spread)
-        blur = np.hypot(blur, _LONE / stiffness)
-        spread[_spare(own)] += 1.0
+        blur = np.zeros(len(own.numbers))
+    spread[_spare(own)] += 1.0
     return Usual(centre, np.sqrt(spread**2 + blur**2 + _FINEST**2), stiffness, len(others))
 
 
@@ -157,6 +214,7 @@ def _by_period(
     own: Steps, mates: Sequence[Steps], stiffness: Floats, centre: Floats, spread: Floats
 ) -> None:
     """Put in what the period tells, letter by letter, where shells of a letter have one pattern."""
+    z = own.atom.block.atomic_number
     for letters in {place[0] for place in own.places}:
         here = [at for at, place in enumerate(own.places) if place[0] == letters]
         wanted = [own.places[at] for at in here]
@@ -167,7 +225,7 @@ def _by_period(
                 alike.append(mate)
                 rows.append(-mate.gradient[there] / stiffness[here])
         if len(alike) >= 3:
-            middle, away = _along_row(own, _charges(alike), np.array(rows))
+            middle, away = by_medians(z, _charges(alike), np.array(rows))
             away = 3.0 * away + _STRANGE
             better = away < spread[here]
             for at, value, size, is_better in zip(here, middle, away, better, strict=True):
@@ -175,47 +233,23 @@ def _by_period(
                     centre[at], spread[at] = value, size
 
 
-def _along_row(own: Steps, z: Floats, table: Floats) -> tuple[Floats, Floats]:
-    """Line through the steps of neighbours by medians, and their scatter about it.
+def _by_role(own: Steps, file: Sequence[Steps], stiffness: Floats) -> Floats:
+    """How large the steps of an element without neighbours can be, by the rest of the set.
 
-    z: nuclear charges, shape (m,).  table: their steps, shape (m, n).
-
-    Source: P. K. Sen, J. Am. Stat. Assoc. 63, 1379 (1968).
+    Whoever varies a number stops where nothing is gained any more, g**2 / 2H; so what numbers of
+    one role have in common from one element to the next is the size of g / sqrt(H).
     """
-    first, second = np.triu_indices(len(z), 1)
-    apart = z[first] != z[second]  # an element may be given twice
-    first, second = first[apart], second[apart]
-    slopes = (table[second] - table[first]) / (z[second] - z[first])[:, None]
-    slope = np.median(slopes, axis=0) if len(slopes) else np.zeros(table.shape[1])
-    level = np.median(table - slope * z[:, None], axis=0)
-    here = own.atom.block.atomic_number
-    away = np.sort(np.abs(table - slope * z[:, None] - level), axis=0)
-    # One of them may be wrong itself.
-    spread = 1.5 * away[-2 if len(z) > 3 else -1]
-    beyond = max(0.0, float(z.min()) - here, here - float(z.max()))
-    return level + slope * here, spread * (1.0 + beyond) + 0.5 * beyond * np.abs(slope)
-
-
-def _of_kind(own: Steps, file: Sequence[Steps], stiffness: Floats) -> Floats:
-    """How large the steps of the same kind of number can be by what the set shows elsewhere.
-
-    Either the steps or the gradients of other elements tell, whichever is the narrower: stiff
-    numbers have small steps, soft ones small gradients.
-    """
-    steps: dict[tuple[int, bool], list[float]] = {}
-    slopes: dict[tuple[int, bool], list[float]] = {}
-    for other in file:
-        sizes = np.abs(other.gradient)
-        ratios = sizes / np.maximum(other.stiffness, _SOFT)
-        for kind, size, ratio in zip(other.kinds, sizes.tolist(), ratios.tolist(), strict=True):
-            steps.setdefault(kind, []).append(ratio)
-            slopes.setdefault(kind, []).append(size)
-    spread = np.full(len(own.numbers), 0.05)
-    for at, kind in enumerate(own.kinds):
-        if len(steps.get(kind, ())) >= 8:
-            by_steps = 0.01 + 3.0 * quantile(steps[kind], 0.9)
-            by_slopes = 0.004 + 4.0 * quantile(slopes[kind], 0.9) / float(stiffness[at])
-            spread[at] = min(by_steps, by_slopes)
+    spread = np.full(len(own.numbers), _UNKNOWN)
+    for names in ("kinds", "roles"):
+        sizes: dict[tuple[object, ...], list[Floats]] = {}
+        for other in file:
+            for role, places in other.places_of(names).items():
+                sizes.setdefault(role, []).append(other.effort[places])
+        for role, places in own.places_of(names).items():
+            known = np.sort(np.concatenate(sizes.get(role, [np.zeros(0)])))
+            if len(known) >= _ENOUGH:
+                usual = float(known[int(_MOSTLY * len(known))])
+                spread[places] = _AMPLE * usual * own.size / np.sqrt(stiffness[places])
     return spread
 
 
@@ -237,13 +271,11 @@ def _spare(own: Steps) -> list[int]:
 class Explanation:
     """One number as the explanation of an atom's steps.
 
-    change: of ln|number|.  significance: of that change, in units of the scatter.  before, after:
-    chi squared without and with it.
+    change: of ln|number|.  before, after: chi squared without and with it.
     """
 
     number: Number
     change: float
-    significance: float
     before: float
     after: float
 
@@ -254,11 +286,21 @@ def explanations(own: Steps, expected: Usual) -> list[Explanation]:
     patterns = own.curvature / (expected.stiffness * expected.scatter)[None, :]
     lengths = np.sqrt((patterns**2).sum(axis=1))
     along = patterns @ away
-    significance = along / np.maximum(lengths, 1e-300)
+    gains = (along / np.maximum(lengths, 1e-300)) ** 2
     before = float(away @ away)
     found = [
-        Explanation(number, float(a / max(length * length, 1e-300)), float(abs(s)), before,
-                    float(max(before - s * s, 0.0)))
-        for number, a, length, s in zip(own.numbers, along, lengths, significance, strict=True)
-    ]  # fmt: skip
+        Explanation(
+            number, float(a / max(length * length, 1e-300)), before, max(before - float(gain), 0.0)
+        )
+        for number, a, length, gain in zip(own.numbers, along, lengths, gains, strict=True)
+    ]
     return sorted(found, key=lambda e: e.after)
+
+
+def significance(before: float, after: float, count: int) -> float:
+    """Of a change that takes chi squared from ``before`` to ``after``, in standard errors.
+
+    The scatter is that of the other elements, or that of what the change leaves unexplained in the
+    atom's own ``count`` numbers where that is larger; of many numbers most say nothing.
+    """
+    return float((max(before - after, 0.0) / (1.0 + after / min(count, _TELLING))) ** 0.5)

@@ -28,7 +28,7 @@ DEPENDENT = 1e-9
 _CONVERGED = 1e-8  # largest element of the gradient, hartree per electron
 _STUCK = 1e-5  # the same where the energy no longer moves
 _SETTLED = 1e-14  # relative movement of an energy that stands still
-_CYCLES = 80
+CYCLES = 80  # iterations at most
 _KEPT = 8  # matrices that DIIS combines
 
 
@@ -119,25 +119,27 @@ def solve(
     integrals: Integrals,
     functions: dict[int, Floats],
     start: dict[int, Floats] | None = None,
+    cycles: int = CYCLES,
 ) -> Solution:
     """Find the orbitals of an atom in given functions.
 
     functions: contraction coefficients over the primitives of ``integrals``, for each occupied l
     shape (nprim, ncontr), at least as many as shells (`too_few`).  start: occupied orbitals over
-    the functions to begin with.  What does not converge comes back so marked, with the best
-    orbitals found.  Raises ValueError where an l has too few functions, or too few that are
-    independent.
+    the functions to begin with.  cycles: iterations at most.  What does not converge comes back so
+    marked, with the best orbitals found.  Raises ValueError where an l has too few functions, or
+    too few that are independent.
     """
     lacking = too_few(functions, integrals.shells)
     if lacking is not None:
         raise ValueError(f"fewer functions than occupied shells for l = {lacking}")
     with np.errstate(all="ignore"):
-        return _Iteration(integrals, functions).run(start)
+        return _Iteration(integrals, functions, cycles).run(start)
 
 
 class _Iteration:
-    def __init__(self, integrals: Integrals, functions: dict[int, Floats]) -> None:
+    def __init__(self, integrals: Integrals, functions: dict[int, Floats], cycles: int) -> None:
         self.integrals = integrals
+        self.cycles = cycles
         self.shells = integrals.shells
         self.field = Field(integrals)
         self.functions = {l: functions[l] for l in self.shells.electrons}
@@ -175,7 +177,7 @@ class _Iteration:
         history: list[tuple[dict[int, Floats], Floats]] = []
         best = Solution(np.inf, False, {}, 0, np.inf)
         before = [np.inf, np.inf]
-        for cycle in range(1, _CYCLES + 1):
+        for cycle in range(1, self.cycles + 1):
             occupied = {l: v[:, : len(self.shells.electrons[l])] for l, v in vectors.items()}
             energy, closed, opened = self.field({l: self.over[l] @ v for l, v in occupied.items()})
             if not np.isfinite(energy):

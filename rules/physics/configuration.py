@@ -76,7 +76,20 @@ def known(z: int) -> bool:
 @cache
 def configuration(z: int, coupling: Coupling = "term") -> Configuration:
     """The ground configuration of a neutral atom, H to Kr.  Raises KeyError beyond."""
-    entry = _table()["atoms"][str(z)]
+    return _made(z, _table()["atoms"][str(z)], coupling)
+
+
+@cache
+def filled(z: int) -> Configuration | None:
+    """The configuration with two electrons in 4s, of atoms that have one of them in 3d instead.
+
+    Sets are often made for it, as it is that of the neighbours.
+    """
+    entry = _table()["filled"].get(str(z))
+    return None if entry is None else _made(z, entry, "term")
+
+
+def _made(z: int, entry: Any, coupling: Coupling) -> Configuration:
     text, term = entry["configuration"], entry["term"]
     shells: dict[int, list[int]] = {}
     opened: dict[int, int] = {}

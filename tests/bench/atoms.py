@@ -19,7 +19,7 @@ from pyscf.scf import atom_hf
 
 from overlapse.grammar.model import Block
 from overlapse.grammar.reading import read
-from overlapse.rules.atomic.atoms import _MEMORY, atom_of
+from overlapse.rules.atomic.atoms import MEMORY, atom_of
 from overlapse.rules.case import Case
 from overlapse.rules.physics.atom import solve
 from overlapse.rules.physics.configuration import Coupling, configuration
@@ -80,7 +80,7 @@ def main() -> None:
     print(f"largest difference: {max(agreeing):.1e} hartree")
     if apart:
         print(f"other occupations of 4s and 3d in PySCF, not compared: {', '.join(apart)}")
-    _MEMORY.clear()
+    MEMORY.clear()
     start = time.process_time()
     case = Case(document, energies=True)
     found = [f for n, r in rules().items() if n.startswith("energy.") for f in case.judge(r)]

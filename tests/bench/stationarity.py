@@ -104,9 +104,10 @@ class Judge:
             return Outcome(False, False, False, False)
         others = [wrong if each is atom else each for each in self.ensemble.atoms]
         ensemble = Ensemble(self.ensemble.members, others)
-        ensemble.__dict__["_steps"] = {
-            id(each): self.ensemble.steps(each) for each in others if each is not wrong
-        } | {id(wrong): own for own in [steps(wrong)] if own is not None}
+        known = self.ensemble.ground_steps
+        ensemble.__dict__["ground_steps"] = {
+            id(each.block): known[id(each.block)] for each in others if id(each.block) in known
+        } | {id(wrong.block): own for own in [steps(wrong)] if own is not None}
         return self.judged(ensemble, wrong, number, true)
 
     def judged(self, ensemble: Ensemble, wrong: Atom, number: Number, true: float) -> Outcome:

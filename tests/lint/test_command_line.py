@@ -211,6 +211,15 @@ def test_recast(folder: Path) -> None:
     assert "broken.basis:4:2:" in refused.stderr
 
 
+def test_it_is_told_that_energies_were_left_out(folder: Path) -> None:
+    large = folder / "large.basis"
+    large.write_text(SOUND + f"! {1000 * 'x'}\n" * 1200)
+    assert "energies are left out, as 1.2 MB of files" in run("audit", large).stderr
+    for arguments in (("--energies",), ("--no-energies",), ("--quiet",)):
+        assert "energies" not in run("audit", *arguments, large).stderr
+    assert "energies" not in run("audit", folder / "sound.basis").stderr
+
+
 def test_colour_is_for_terminals_only(folder: Path) -> None:
     from overlapse.lint.engine import Target, audit_file
     from overlapse.lint.reports import writer

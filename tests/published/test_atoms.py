@@ -19,7 +19,7 @@ from overlapse.grammar.reading import read
 from overlapse.rules.atomic.atoms import Atom, atom_of
 from overlapse.rules.physics.atom import solve
 from overlapse.rules.physics.boys import boys
-from overlapse.rules.physics.configuration import Configuration, configuration
+from overlapse.rules.physics.configuration import Configuration, configuration, filled
 from overlapse.rules.physics.extended import charges
 from overlapse.rules.physics.radial import Integrals, attraction, kinetic
 from overlapse.rules.physics.response import gradient, response
@@ -53,13 +53,33 @@ def atom(name: str, symbol: str) -> Atom:
 # Energies in hartree: computed with PySCF from determinants with spherical symmetry enforced, and
 # rounded to six decimals.  N, Mg and the others of S symmetry are recomputed below.
 TERMS = {
-    "3-21g": {"C": -37.480389, "N": -54.103658, "O": -74.391782, "Ne": -127.803825},
-    "6-31g": {"C": -37.676866, "O": -74.776886, "Mg": -199.595219, "Zn": -1777.481098},
-    "cc-pvdz": {"C": -37.682391, "O": -74.786188, "Ar": -526.799865, "Zn": -1777.846655},
-    "cc-pvtz": {"C": -37.686662, "N": -54.397358, "O": -74.803078, "Ne": -128.531862},
-    "def2-svp": {"C": -37.641143, "N": -54.332925, "O": -74.713746, "Mg": -199.534811},
+    "3-21g": {
+        "H": -0.496199, "He": -2.835680, "Be": -14.486820, "C": -37.480389, "N": -54.103658,
+        "O": -74.391782, "Ne": -127.803825, "Mg": -198.468103, "Ar": -524.342962,
+        "Zn": -1768.948470,
+    },
+    "6-31g": {
+        "H": -0.498233, "He": -2.855160, "Be": -14.566764, "C": -37.676866, "N": -54.382051,
+        "O": -74.776886, "Ne": -128.473877, "Mg": -199.595219, "Ar": -526.772151,
+        "Zn": -1777.481098,
+    },
+    "cc-pvdz": {
+        "H": -0.499278, "He": -2.855160, "Be": -14.572338, "C": -37.682391, "N": -54.388414,
+        "O": -74.786188, "Ne": -128.488776, "Mg": -199.608297, "Ar": -526.799865,
+        "Zn": -1777.846655,
+    },
+    "cc-pvtz": {
+        "H": -0.499810, "He": -2.861153, "Be": -14.572873, "C": -37.686662, "N": -54.397358,
+        "O": -74.803078, "Ne": -128.531862, "Mg": -199.613347, "Ar": -526.813134,
+        "Zn": -1777.846655,
+    },
+    "def2-svp": {
+        "H": -0.499278, "He": -2.855160, "Be": -14.553727, "C": -37.641143, "N": -54.332925,
+        "O": -74.713746, "Ne": -128.376407, "Mg": -199.534811, "Ar": -526.623385,
+        "Zn": -1777.561481,
+    },
     "sto-3g": {"C": -37.198393, "N": -53.719010, "O": -73.804150, "Mg": -197.007354},
-}
+}  # fmt: skip
 
 
 @pytest.mark.parametrize(
@@ -67,6 +87,20 @@ TERMS = {
 )
 def test_energies_of_ground_terms(name: str, symbol: str) -> None:
     assert atom(name, symbol).energy == pytest.approx(TERMS[name][symbol], abs=1e-6)
+
+
+def test_zinc_in_a_minimal_set_against_a_molecular_program() -> None:
+    # So few functions make other, less symmetric determinants lie lower than the ground term; the
+    # program is held to 3d10 4s2.
+    molecule = gto.M(atom="Zn 0 0 0", basis="sto-3g", symmetry="SO3", verbose=0)
+    calculation = scf.RHF(molecule)
+    calculation.conv_tol = 1e-10
+    calculation.irrep_nelec = {
+        "s+0": 8,
+        **dict.fromkeys(("p-1", "p+0", "p+1"), 4),
+        **dict.fromkeys(("d-2", "d-1", "d+0", "d+1", "d+2"), 2),
+    }
+    assert atom("sto-3g", "Zn").energy == pytest.approx(calculation.kernel(), abs=1e-6)
 
 
 CLOSED = [("6-31g*", "Ne"), ("cc-pvtz", "Ar"), ("def2-svp", "Ca"), ("cc-pvdz", "Kr")]
@@ -178,6 +212,36 @@ def test_limits_are_those_of_large_even_tempered_sets(z: int) -> None:
     found = solve(integrals, {l: np.eye(len(a)) for l, a in integrals.exponents.items()})
     assert found.converged
     assert -1.5e-6 < found.energy - shells.limit < 4e-5
+
+
+@pytest.mark.parametrize("z", [24, 29])
+def test_filled_configurations(z: int) -> None:
+    # The excited terms lie above the ground terms; their limits are our own.
+    shells = filled(z)
+    assert shells is not None and sum(map(sum, shells.electrons.values())) == z
+    integrals = Integrals(even_tempered(shells), shells)
+    found = solve(integrals, {l: np.eye(len(a)) for l, a in integrals.exponents.items()})
+    assert found.converged
+    assert found.energy == pytest.approx(shells.limit, abs=4e-5)
+    assert 0.01 < found.energy - configuration(z).limit < 0.1
+
+
+def test_a_filled_d_shell_with_one_hole_against_a_molecular_program() -> None:
+    # One hole in 3d: with spherical symmetry enforced the hole lies in one component.
+    shells = filled(29)
+    found = atom_of(block_of("def2-svp", "Cu"), shells)
+    assert found is not None
+    molecule = gto.M(atom="Cu 0 0 0", basis="def2-svp", spin=1, symmetry="SO3", verbose=0)
+    calculation = scf.ROHF(molecule)
+    calculation.conv_tol = 1e-10
+    calculation.irrep_nelec = {
+        "s+0": (4, 4),
+        **{f"d{m}": (1, 1) for m in ("-2", "-1", "+1", "+2")},
+        "d+0": (1, 0),
+    }
+    # The program lets each component have its own radial function, so it lies a little lower.
+    assert found.energy is not None
+    assert 0.0 <= found.energy - calculation.kernel() < 0.02
 
 
 # ---- derivatives

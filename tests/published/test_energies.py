@@ -15,8 +15,11 @@ import pytest
 pyscf = pytest.importorskip(
     "pyscf", reason="PySCF has no wheel here; install the extra 'oracle' to run this check"
 )
+from overlapse.grammar.elements import symbol_of  # noqa: E402
 from overlapse.grammar.model import Block, Shell  # noqa: E402
 from overlapse.grammar.reading import read_text  # noqa: E402
+from overlapse.lint.engine import judge  # noqa: E402
+from overlapse.lint.settings import Settings  # noqa: E402
 from overlapse.rules.atomic.atoms import atom_of  # noqa: E402
 from overlapse.rules.atomic.energies import ensembles  # noqa: E402
 from overlapse.rules.case import Case  # noqa: E402
@@ -25,6 +28,7 @@ from overlapse.rules.registry import rules  # noqa: E402
 
 FOLDER = Path(pyscf.__file__).parent / "gto" / "basis"
 SECOND_ROW = "B C N O F Ne".split()
+EVERY = tuple(symbol_of(z) for z in range(1, 37))
 
 
 @cache
@@ -94,6 +98,59 @@ def test_a_wrong_number_is_named_with_the_true_one(
     assert findings[0].severity == "warning"
     assert findings[0].expected == pytest.approx(true, rel=0.01)
     assert findings[0].witnesses[0].startswith(("stationarity", "orbital"))
+
+
+# Elements without neighbours of their pattern, at limits that the rest of the set gives.
+ALONE = [
+    ("def2-svp", "Li", 0, 1, None, 1.1),
+    ("def2-svp", "Ca", 0, 2, 0, 1.1),
+    ("cc-pvdz", "Na", 0, 3, None, 1.3),
+    ("pople-basis/6-31Gs", "Mg", 0, 2, None, 1.3),
+    ("pople-basis/6-31Gs", "Cu", 0, 2, 0, 1.03),
+    ("pople-basis/6-31Gs", "Cr", 1, 2, None, 1.1),
+    ("def2-svp", "Cu", 0, 2, 0, 1.03),
+    ("pc-1", "Cr", 0, 3, None, 1.3),
+]
+
+
+@pytest.mark.parametrize(("name", "symbol", "index", "row", "column", "factor"), ALONE)
+def test_a_wrong_number_of_an_element_that_goes_its_own_way(
+    name: str, symbol: str, index: int, row: int, column: int | None, factor: float
+) -> None:
+    text = cut(name, EVERY)
+    shell = block_of(text, symbol).shells[index]
+    true = float(shell.exponents[row] if column is None else shell.coefficients[row, column])
+    wrong = with_number(text, shell, row, column, f"{true * factor:.8g}")
+    findings = [f for f in found(wrong) if f.element == symbol and f.rule == "energy.stationary"]
+    assert [f.expected for f in findings] == [pytest.approx(true, rel=0.01)]
+    assert not [f for f in found(text) if f.element == symbol and f.rule == "energy.stationary"]
+
+
+@pytest.mark.parametrize(
+    ("name", "held"),
+    [("pople-basis/6-31G", "4s2"), ("pc-1", "4s2"), ("def2-svp", "4s1"), ("def2-tzvp", "4s1")],
+)
+def test_chromium_and_copper_in_the_configuration_of_their_set(name: str, held: str) -> None:
+    # Which one a set was made for shows in its gradient; no publication is needed.
+    (ensemble,) = ensembles(Case(read_text(cut(name, EVERY), "set.dat"), energies=True))
+    for atom in ensemble.atoms:
+        if atom.block.symbol in ("Cr", "Cu"):
+            steps = ensemble.steps(atom)
+            assert steps is not None and steps.atom.shells.text.endswith(held)
+            assert len(ensemble.others(atom)) > 5
+
+
+def test_witnesses_that_agree_make_a_warning() -> None:
+    # The norm and the energy ask for the same coefficient.
+    text = cut("pople-basis/6-31G", tuple(SECOND_ROW))
+    shell = block_of(text, "C").shells[0]
+    true = float(shell.coefficients[2, 0])
+    wrong = with_number(text, shell, 2, 0, f"{1.03 * true:.7f}")
+    audit = judge(read_text(wrong, "set.dat"), settings=Settings(), energies=True)
+    (finding,) = [f for f in audit.findings if f.rule == "energy.stationary" and f.element == "C"]
+    assert finding.severity == "warning"
+    kinds = {witness.partition(":")[0] for witness in finding.witnesses}
+    assert {"stationarity", "norm", "other contractions"} <= kinds
 
 
 def test_exchanged_digits_give_the_very_number_back() -> None:
