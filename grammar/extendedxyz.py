@@ -90,7 +90,11 @@ def _lattice(text: str, span: Span, faults: list[Fault]) -> tuple[float, ...] | 
         faults.append(_fault(message, span, "form.count", "give three vectors of three numbers"))
         return None
     table = np.array(numbers).reshape(3, 3)
-    lengths = np.linalg.norm(table, axis=1)
+    with np.errstate(over="ignore", invalid="ignore"):
+        lengths = np.linalg.norm(table, axis=1)
+    if not np.isfinite(lengths).all():
+        faults.append(_fault("the numbers of the Lattice are out of range", span))
+        return None
     if not lengths.all() or abs(np.linalg.det(table / lengths[:, None])) < 1e-6:
         faults.append(_fault("the vectors of the Lattice lie in one plane", span))
         return None

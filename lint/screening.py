@@ -4,7 +4,7 @@ Nothing here prints.
 """
 
 import os
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any, NamedTuple
@@ -12,18 +12,20 @@ from typing import Any, NamedTuple
 import numpy as np
 
 from overlapse.grammar import geometry as geometries
-from overlapse.grammar.geometry import Frame, Geometry, Unit
+from overlapse.grammar.geometry import Frame, Geometry, GeometryError, Unit
 from overlapse.grammar.model import Document, Fault
 from overlapse.grammar.reading import read_bytes
 from overlapse.lint import memory, tree
 from overlapse.lint.choices import Shelf, Use, shelf
 from overlapse.lint.engine import FileAudit, at_least, judge
+from overlapse.lint.geometries import read_all
 from overlapse.lint.settings import Settings, settings_for
 from overlapse.rules.finding import Finding
 from overlapse.rules.measured.closeness import doubt
 from overlapse.rules.measured.probe import Probe
 from overlapse.rules.measured.probing import Label, Wanted, probe
 from overlapse.rules.measured.site import Site, size
+from overlapse.rules.physics.integrals import TooLarge as TooLargeInAnyForm
 from overlapse.rules.registry import rules
 
 
@@ -74,16 +76,6 @@ def read_basis(path: Path, data: bytes, layout: str | None = None) -> Document:
         told = [fault.message for fault in document.faults if fault.severity == "error"]
         raise ScreenError(f"{path}: {(told or ['no element was found'])[0]}")
     return document
-
-
-def geometry_files(paths: Iterable[Path]) -> Iterator[Path]:
-    """Files named, and in named folders the XYZ files, by name."""
-    for path in paths:
-        if not path.is_dir():
-            yield path
-            continue
-        inside = sorted(entry for entry in path.rglob("*") if entry.is_file())
-        yield from (e for e in inside if e.suffix.lower() in (".xyz", ".extxyz"))
 
 
 # ---- from frames to tasks
@@ -138,7 +130,7 @@ def _lacks(
 
 def _doubts(geometry: Geometry, frame: Frame) -> Iterator[Fault]:
     """Distances that no atoms have; in a scan told once."""
-    found = doubt(frame.atoms)
+    found = doubt(frame.atoms, frame.cell, frame.periodic)
     if found is None:
         return
     at, message = found
@@ -200,11 +192,14 @@ def measure(task: Task, shelf: Shelf, wanted: Wanted, limit: int | None = None) 
 
         if not fits:
             raise _too_large(task, wide, limit or 0)
-        return probe_lattice(sites, frame.cell, frame.periodic, wanted, label)
+        try:
+            return probe_lattice(sites, frame.cell, frame.periodic, wanted, label)
+        except TooLargeInAnyForm as problem:
+            where = f"{task.geometry}, frame {frame.index}"
+            raise TooLarge(f"{where}: {problem}; is the cell right?") from problem
     if fits:
         return probe(sites, wanted, label)
     from overlapse.rules.measured.probing_large import probe_large
-    from overlapse.rules.physics.integrals import TooLarge as TooLargeInAnyForm
 
     try:
         return probe_large(sites, wanted, label, limit or 0)
@@ -268,20 +263,22 @@ def screen_files(
     """Screen basis files in one geometry, a file or a folder of XYZ files.
 
     uses: files for elements or atoms; label: of the set to take where a file has several;
-    spherical: kind of the functions, None to follow the files.  Raises OSError for files that
-    cannot be opened, ScreenError, `overlapse.lint.choices.ChoiceError` or
-    `overlapse.grammar.geometry.GeometryError` for what cannot be screened.
+    spherical: kind of the functions, None to follow the files.  Of several geometries those that
+    cannot be read are among the audits.  Raises OSError for basis files that cannot be opened,
+    ScreenError, `overlapse.lint.choices.ChoiceError` or `overlapse.grammar.geometry.GeometryError`
+    for what cannot be screened.
     """
     documents = [read_basis(path, tree.content(path)) for path in basis]
     chosen = [(use, read_basis(use.path, tree.content(use.path))) for use in uses]
     made = shelf(documents, chosen, wanted=label, spherical=spherical)
-    read = [
-        geometries.read_bytes(tree.content(path), os.fspath(path), unit=unit)
-        for path in geometry_files([geometry])
-    ]
+    read, unread = read_all([geometry], unit, {})
+    if not read:
+        told = "\n".join(audit.problem for audit in unread)
+        raise GeometryError(told or f"no geometry in {geometry}: folders hold .xyz files")
     found, audits = tasks(made, read)
     limit = memory.allowed()
-    return screened(made, [measure(task, made, wanted, limit) for task in found], audits)
+    probes = [measure(task, made, wanted, limit) for task in found]
+    return screened(made, probes, [*audits, *unread])
 
 
 def screen(*basis: str | os.PathLike[str], on: str | os.PathLike[str], **options: Any) -> Screening:

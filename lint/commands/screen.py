@@ -28,6 +28,7 @@ if TYPE_CHECKING:
     from overlapse.grammar.geometry import Geometry, Unit
     from overlapse.grammar.model import Document
     from overlapse.lint.choices import Shelf, Use
+    from overlapse.lint.engine import FileAudit
     from overlapse.lint.screening import Screening, Task
     from overlapse.rules.measured.probe import Probe
 
@@ -220,6 +221,7 @@ def screen(
       overlapse screen c.basis h.basis --on molecules/ --picture spectra.svg
       overlapse screen --use C=c.basis --use H=h.basis --on crystal.extxyz
     """
+    from overlapse.lint.geometries import impossible, unmet
     from overlapse.lint.scanning import measure_all
     from overlapse.lint.screening import ScreenError, screened, tasks
     from overlapse.rules.measured.probing import Wanted
@@ -229,16 +231,22 @@ def screen(
     if [*basis, *geometry].count(_STDIN) > 1:
         raise click.UsageError("standard input can stand for one file only")
     shelf = _shelf(basis, uses, layout, named, wanted, spherical)
-    read = list(_geometries(geometry, unit, named))
+    read, unread = _geometries(geometry, unit, named)
     try:
         found, audits = tasks(shelf, read)
+        unserved = unmet(shelf, read)
+        if unserved is not None:
+            raise click.UsageError(unserved)
+        for task in found:
+            if (reason := impossible(shelf, task.frame, charge, unpaired)) is not None:
+                raise click.UsageError(f"{task.geometry}, frame {task.frame.index}: {reason}")
         with _progress(found) as done:
             values = drawing is not None or report == "html"  # both draw all eigenvalues
             asked = Wanted(threshold, tolerance, not per_element, mesh, values, charge, unpaired)
             probes = measure_all(found, shelf, asked, jobs=jobs, limit=limit, done=done)
     except ScreenError as problem:
         raise Refused(str(problem)) from problem
-    screening = screened(shelf, probes, audits)
+    screening = screened(shelf, probes, [*audits, *unread])
     if drawing is not None:
         from overlapse.lint.spectra import spectra
 
@@ -254,6 +262,8 @@ def _status(screening: "Screening", fail_at: str | None) -> int:
     audits = screening.audits
     if fail_at is not None:
         audits = tuple(audit.failing_at(fail_at) for audit in audits)
+    if any(audit.problem for audit in audits):
+        return UNREADABLE
     if not screening.probes and not any(audit.fails for audit in audits):
         return UNREADABLE
     return FOUND if any(audit.fails for audit in audits) else CLEAN
@@ -306,23 +316,19 @@ def _document(path: Path, layout: str | None, named: str) -> "Document":
         raise Unreadable(str(problem)) from problem
 
 
-def _geometries(paths: Sequence[Path], unit: "Unit | None", named: str) -> "Iterator[Geometry]":
-    from overlapse.grammar.geometry import GeometryError, read, read_bytes
-    from overlapse.lint.screening import geometry_files
+def _geometries(
+    paths: Sequence[Path], unit: "Unit | None", named: str
+) -> "tuple[list[Geometry], list[FileAudit]]":
+    """The geometries, and of several files those that cannot be read."""
+    from overlapse.lint.geometries import read_all
 
-    found = list(geometry_files(paths))
+    texts = {_STDIN: (named, sys.stdin.buffer.read())} if _STDIN in paths else {}
+    found, unread = read_all(paths, unit, texts)
     if not found:
-        raise Unreadable(f"no geometry in {', '.join(map(str, paths))}: folders hold .xyz files")
-    for path in found:
-        try:
-            if path == _STDIN:
-                yield read_bytes(sys.stdin.buffer.read(), named, unit=unit)
-            else:
-                yield read(path, unit=unit)
-        except OSError as problem:
-            raise Unreadable(f"{path}: {problem.strerror or problem}") from problem
-        except GeometryError as problem:
-            raise Unreadable(str(problem)) from problem
+        told = "\n".join(audit.problem for audit in unread)
+        named_so = ", ".join(map(str, paths))
+        raise Unreadable(told or f"no geometry in {named_so}: folders hold .xyz files")
+    return found, unread
 
 
 @contextmanager

@@ -34,6 +34,7 @@ from overlapse.rules.physics.placed import Ints, Placed
 
 Complexes = npt.NDArray[np.complex128]
 IMAGES = 1_000_000  # pairs of an atom and an image that are looked at together
+MOST = 5_000_000  # images of a cell; even cells with edges of one bohr have fewer
 
 
 class Lattice(NamedTuple):
@@ -52,9 +53,14 @@ class Lattice(NamedTuple):
         return 0.5 * float(np.linalg.norm(self.vectors, axis=1).sum())
 
     def points(self, radius: float, offset: float) -> Ints:
-        """Whole-number coordinates of all lattice vectors up to ``radius + offset``, (m, D)."""
+        """Whole-number coordinates of all lattice vectors up to ``radius + offset``, (m, D).
+
+        Raises `TooLarge` where there are so many that the cell cannot be right.
+        """
         far = radius + offset
         steps = np.linalg.norm(np.linalg.pinv(self.vectors), axis=0) * far
+        if (count := float(np.prod(2.0 * steps + 1.0))) > MOST:
+            raise TooLarge(f"A lattice sum over {count:.0e} images", int(80 * count), 80 * MOST)
         ranges = [np.arange(-int(step), int(step) + 1) for step in steps]
         grid = np.stack(np.meshgrid(*ranges, indexing="ij"), axis=-1).reshape(-1, len(ranges))
         found: Ints = grid[np.linalg.norm(grid @ self.vectors, axis=1) <= far]

@@ -16,12 +16,12 @@ Source: S. Lehtola, J. Chem. Phys. 151, 241102 (2019); the ordering: S. Lehtola,
 032504 (2020).
 """
 
-from collections import Counter
 from collections.abc import Callable, Iterator, Sequence
 from typing import Literal, NamedTuple
 
 import numpy as np
 
+from overlapse.grammar.model import Floats
 from overlapse.rules.physics.inertia import Matrix, pivoted
 from overlapse.rules.physics.placed import Functions, Ints, Placed
 from overlapse.rules.physics.spectrum import SMALL, largest, lowest, smallest
@@ -29,7 +29,8 @@ from overlapse.rules.physics.spectrum import SMALL, largest, lowest, smallest
 SHARE = 0.1  # of the tolerance: what the smallest eigenvalue of the kept functions is held to
 PARTY = 0.02  # share in the vanishing combinations from which a function is tried
 TRIED = 10  # functions at most, those with the largest shares
-SWAPPED = 40  # functions of single atoms, for which one of their like is tried instead
+SWAPPED = 40  # functions of single atoms, for which a twin of theirs is tried instead
+TWINS = 0.99  # overlap of two functions of one atom from which they are called so
 
 
 class Drop(NamedTuple):
@@ -68,7 +69,7 @@ def chosen(matrix: Matrix, tolerance: float, among: Ints | None = None) -> Ints:
     among these functions only, shape (m,).
     """
     # Large matrices are not copied more often than they have to be: one copy at a time.
-    scale = 1.0 / np.sqrt(np.real(np.diagonal(matrix)))
+    scale = 1.0 / np.sqrt(_norms(matrix))
     given = np.arange(len(matrix)) if among is None else among
     sums = [scale[row] * (np.abs(matrix[row, given]) @ scale[given]) for row in given]
     first = given[np.argsort(sums, kind="stable")]
@@ -90,6 +91,16 @@ def chosen(matrix: Matrix, tolerance: float, among: Ints | None = None) -> Ints:
         else:
             bad = middle
     return np.sort(picked[:good])
+
+
+def _norms(matrix: Matrix) -> Floats:
+    """Squared norms of the functions; one where there is nothing but rounding.
+
+    That happens in crystals: where neighbours cancel, a function of no norm is the first to go.
+    """
+    norms: Floats = np.real(np.diagonal(matrix)).astype(float)
+    noise = len(norms) * float(np.finfo(float).eps) * norms.max(initial=0.0)
+    return np.where(norms > noise, norms, 1.0)
 
 
 def shells_to_drop(
@@ -129,7 +140,7 @@ def shells_to_drop(
         drops += _described(gone[np.argsort(-share[gone], kind="stable")], owner, functions, atoms)
         kept = kept[~np.isin(owner[kept], gone)]
     if per == "atom" and len(matrix) <= SMALL:
-        kept, drops = _alike(matrix, kept, drops, functions, atoms, tolerance)
+        kept, drops = _alike(matrix, kept, drops, functions, tolerance)
     if per == "element":
         drops = [drop._replace(atom=None) for drop in drops]
     low = smallest(matrix, kept)
@@ -164,42 +175,34 @@ def _cheapest(
 
 
 def _alike(
-    matrix: Matrix,
-    kept: Ints,
-    drops: list[Drop],
-    functions: Functions,
-    atoms: Sequence[Placed],
-    tolerance: float,
+    matrix: Matrix, kept: Ints, drops: list[Drop], functions: Functions, tolerance: float
 ) -> tuple[Ints, list[Drop]]:
-    """The same with one function dropped on like atoms instead of its twin on some of them.
+    """The same with the last of near-twins dropped, where that does as well.
 
-    So it is where that does as well: which of twins goes is a matter of chance.
+    Which of two goes is a matter of chance otherwise, on every atom and in every frame anew.
     """
-    contents = [_content(atom) for atom in atoms]
-    counts = Counter((contents[drop.like], drop.shell, drop.column) for drop in drops)
-    found = list(drops)
+    found, norms = list(drops), _norms(matrix)
     for place, drop in enumerate(drops[:SWAPPED]):
-        content = contents[drop.like]
-        if counts[content, drop.shell, drop.column] == contents.count(content):
-            continue  # it goes everywhere
-        on = functions.atom == drop.like
-        gone = on & (functions.shell == drop.shell) & (functions.column == drop.column)
-        for (other, shell, column), count in counts.most_common():
-            if other != content or count < counts[content, drop.shell, drop.column]:
-                continue
-            twin = on & (functions.shell == shell) & (functions.column == column)
-            if not np.isin(np.flatnonzero(twin), kept).all():
-                continue  # gone from this atom already
-            if functions.l[twin][0] != functions.l[gone][0]:
-                continue
-            rest = np.union1d(np.setdiff1d(kept, np.flatnonzero(twin)), np.flatnonzero(gone))
-            if len(chosen(matrix, tolerance, rest)) == len(rest):
-                exponent = float(functions.exponent[twin][0])
-                found[place] = drop._replace(shell=shell, column=column, exponent=exponent)
-                counts[content, drop.shell, drop.column] -= 1
-                counts[content, shell, column] += 1
-                kept = rest
-                break
+        own = np.flatnonzero(functions.atom == drop.like)
+        gone = own[(functions.shell[own] == drop.shell) & (functions.column[own] == drop.column)]
+        first = int(gone[0])
+        size = np.sqrt(norms[own] * norms[first])
+        near = own[(np.abs(matrix[first, own]) > TWINS * size) & np.isin(own, kept)]
+        if not len(near) or near[-1] < first:
+            continue
+        twin = own[
+            (functions.shell[own] == functions.shell[near[-1]])
+            & (functions.column[own] == functions.column[near[-1]])
+        ]
+        rest = np.union1d(np.setdiff1d(kept, twin), gone)
+        if len(twin) == len(gone) and len(chosen(matrix, tolerance, rest)) == len(rest):
+            last = int(near[-1])
+            found[place] = drop._replace(
+                shell=int(functions.shell[last]),
+                column=int(functions.column[last]),
+                exponent=float(functions.exponent[last]),
+            )
+            kept = rest
     return kept, found
 
 

@@ -332,3 +332,63 @@ def test_kinds_of_functions(folder: Path) -> None:
     assert spherical["counterpart"] is None
     assert cartesian["counterpart"]["functions"] == spherical["functions"]
     assert cartesian["counterpart"]["smallest"] == pytest.approx(spherical["smallest"])
+
+
+def test_a_geometry_that_cannot_be_read_does_not_stop_the_others(folder: Path) -> None:
+    (folder / "scan" / "2.xyz").write_text("")
+    done = run(folder / "sound.basis", "--on", folder / "scan", "--report", "json")
+    assert done.returncode == 3
+    found = json.loads(done.stdout)
+    assert len(found["screens"]) == 4
+    assert [file["problem"] for file in found["files"] if file["problem"]] == [
+        f"{folder / 'scan' / '2.xyz'}: the file is empty"
+    ]
+
+
+@pytest.mark.parametrize(
+    ("options", "told"),
+    [
+        (["--use", "4=sound.basis"], "--use for atom 4 (sound.basis): no frame has such an atom"),
+        (["--use", "C=sound.basis"], "--use for C (sound.basis): no frame has such an atom"),
+        (["--charge", "11"], "frame 1: 10 electrons cannot leave a charge of 11"),
+        (["--unpaired", "3"], "frame 1: 10 electrons cannot leave 3 unpaired"),
+        (["--unpaired", "12"], "frame 1: 10 electrons cannot leave 12 unpaired"),
+    ],
+)
+def test_options_that_do_not_fit_the_molecule(folder: Path, options: list[str], told: str) -> None:
+    done = run("sound.basis", "--on", "water.xyz", *options, cwd=folder)
+    assert done.returncode == 2
+    assert told in done.stderr
+
+
+def test_all_electrons_may_go_and_as_many_as_there_are_may_be_unpaired(folder: Path) -> None:
+    for options in (["--charge", "10"], ["--unpaired", "10"], ["--charge", "1", "--unpaired", "1"]):
+        assert run(folder / "sound.basis", "--on", folder / "water.xyz", *options).returncode == 0
+
+
+ODD = {
+    "nan": (WATER.replace("0.117300", "nan"), 1, "form.number"),
+    "infinite": (WATER.replace("0.117300", "1e999"), 1, "form.number"),
+    "none": ("0\nnothing\n", 1, "a frame of no atoms"),
+    "short": ("3\nx\nH 0 0 0\n", 1, "form.count"),
+    "far": (WATER.replace("0.757200", "1e300"), 0, ""),
+    "alone": ("1\nx\nH 0 0 0\n", 0, ""),
+    "element": ("1\nx\nQq 0 0 0\n", 1, "form.element"),
+    "flat": ('1\nLattice="2 0 0 4 0 0 0 0 2"\nH 0 0 0\n', 1, "lie in one plane"),
+    "wide": ('1\nLattice="1e200 0 0 0 1e200 0 0 0 1e200"\nH 0 0 0\n', 1, "out of range"),
+    "tiny": ('1\nLattice="0.01 0 0 0 0.01 0 0 0 0.01"\nH 0 0 0\n', 1, "is the cell right"),
+    "twice": (
+        '2\nLattice="2 0 0 0 2 0 0 0 2"\nH 0 0 0\nH 2 0 0\n', 1, "H 1 stands where an image of H 2"
+    ),
+    "small": ('1\nLattice="0.3 0 0 0 9 0 0 0 9"\nH 0 0 0\n', 1, "its own image are 0.3 angstrom"),
+}  # fmt: skip
+
+
+@pytest.mark.parametrize("name", ODD)
+def test_odd_geometries_give_findings_or_messages(folder: Path, name: str) -> None:
+    text, status, told = ODD[name]
+    (folder / "odd.xyz").write_text(text)
+    done = run(folder / "sound.basis", "--on", folder / "odd.xyz", "--report", "lines")
+    assert done.returncode == status, done.stdout + done.stderr
+    assert "Warning" not in done.stderr
+    assert told in done.stdout + done.stderr

@@ -1,0 +1,67 @@
+"""Geometry files of a run: which there are, what they hold, and whether options fit that."""
+
+from collections.abc import Iterable, Iterator, Mapping, Sequence
+from pathlib import Path
+
+from overlapse.grammar.elements import symbol_of
+from overlapse.grammar.geometry import Frame, Geometry, GeometryError, Unit, read_bytes
+from overlapse.lint import tree
+from overlapse.lint.choices import Shelf
+from overlapse.lint.engine import FileAudit
+
+
+def geometry_files(paths: Iterable[Path]) -> Iterator[Path]:
+    """Files named, and in named folders the XYZ files, by name."""
+    for path in paths:
+        if not path.is_dir():
+            yield path
+            continue
+        inside = sorted(entry for entry in path.rglob("*") if entry.is_file())
+        yield from (e for e in inside if e.suffix.lower() in (".xyz", ".extxyz"))
+
+
+def read_all(
+    paths: Iterable[Path], unit: Unit | None, texts: Mapping[Path, tuple[str, bytes]]
+) -> tuple[list[Geometry], list[FileAudit]]:
+    """All geometries that can be read, and the files that cannot, with the reason.
+
+    texts: name and content of paths that are no files.
+    """
+    found: list[Geometry] = []
+    unread: list[FileAudit] = []
+    for path in geometry_files(paths):
+        try:
+            name, data = texts[path] if path in texts else (str(path), tree.content(path))
+            found.append(read_bytes(data, name, unit=unit))
+        except OSError as problem:
+            unread.append(FileAudit(str(path), problem=f"{path}: {problem.strerror or problem}"))
+        except GeometryError as problem:
+            unread.append(FileAudit(str(path), problem=str(problem)))
+    return found, unread
+
+
+def unmet(shelf: Shelf, read: Sequence[Geometry]) -> str | None:
+    """Which choice by hand no atom of any frame meets, in words."""
+    frames = [frame for geometry in read for frame in geometry.frames]
+    for use, _ in shelf.uses:
+        if frames and not any(
+            use.meets(number, atom)
+            for frame in frames
+            for number, atom in enumerate(frame.atoms, 1)
+        ):
+            who = symbol_of(use.element) if use.element else f"atom {use.atoms.start}"
+            return f"--use for {who} ({use.path}): no frame has such an atom"
+    return None
+
+
+def impossible(shelf: Shelf, frame: Frame, charge: int, unpaired: int | None) -> str | None:
+    """Why a frame cannot have such a charge or so many unpaired electrons, in words."""
+    sites, _ = shelf.sites(frame)
+    cores = (site.block.potential for site in sites if not site.atom.ghost)
+    count = sum(site.atom.atomic_number for site in sites if not site.atom.ghost)
+    count -= charge + sum(core.electrons for core in cores if core is not None)
+    if count < 0:
+        return f"{count + charge} electrons cannot leave a charge of {charge} (--charge)"
+    if unpaired is not None and (unpaired > count or (count - unpaired) % 2):
+        return f"{count} electrons cannot leave {unpaired} unpaired (--unpaired)"
+    return None
