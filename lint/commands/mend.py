@@ -93,6 +93,8 @@ def mend(
                 if target.searched and not result.audit.layout:
                     continue
                 status = max(status, _told(result, target.path, name, data, write))
+            except BrokenPipeError:
+                raise  # who reads our output has gone
             except OSError as problem:
                 trouble(f"{name}: {problem.strerror or problem}")
     sys.exit(status)
