@@ -105,6 +105,7 @@ def test_a_label_given_by_hand(folder: Path) -> None:
         (["audit", "--report", "picture", "{}"], "'picture' is not one of"),
         (["rules", "contraction.nrom"], "did you mean contraction.norm?"),
         (["nonsense"], "No such command"),
+        (["audt", "{}"], "Did you mean audit?"),
     ],
 )
 def test_wrong_use_gives_status_2(folder: Path, arguments: list[str], told: str) -> None:
