@@ -10,6 +10,7 @@ from textwrap import fill
 from overlapse.lint.engine import FileAudit
 from overlapse.lint.ledger import Ledger
 from overlapse.lint.reports.lines import one_line
+from overlapse.lint.tree import shown as shown_path
 
 _LONGEST = 40  # characters of a command's paths that are spelt out
 
@@ -61,7 +62,7 @@ def closing(
 
 
 def _of_energies(ledger: Ledger, energies: bool, shown: Shown) -> str:
-    name = one_line(str(ledger.path))
+    name = one_line(shown_path(ledger.path))
     if not energies:
         return (
             f"atoms were not computed, as they were not when {name} was written; --energies "

@@ -14,6 +14,7 @@ from overlapse.lint.engine import FileAudit, audit_file, targets
 from overlapse.lint.reports import text
 from overlapse.lint.screening import screen_files
 from overlapse.lint.settings import Settings
+from overlapse.lint.terminal import width
 
 _STORY = (
     "The Tarn lab takes over the basis files of three finished projects, Fell, Beck and Moss: one "
@@ -33,12 +34,13 @@ def demonstrate(folder: Path | None, out: TextIO, colour: bool) -> None:
         raise click.UsageError(f"{folder} exists and is not an empty folder")
     copy_to(folder)
     audits = [audit_file(target, settings=Settings()) for target in targets([folder])]
-    out.write(fill(_STORY, 96) + "\n\n")
-    out.write(_table(folder, audits) + "\n")
+    columns = width(out)
+    out.write(fill(_STORY, columns) + "\n\n")
+    out.write(_table(folder, audits, columns) + "\n")
     shown = [audit for audit in audits if audit.findings][:2]
     out.write("Two of these files in full:\n\n")
     text.write(shown, out, colour)
-    out.write("\n" + _screens(folder) + "\n")
+    out.write("\n" + _screens(folder, columns) + "\n")
     out.write(f"The files are in {folder}. To go on:\n")
     steps = {
         f"overlapse audit {folder}": "the whole report",
@@ -46,8 +48,8 @@ def demonstrate(folder: Path | None, out: TextIO, colour: bool) -> None:
         "overlapse audit YOUR-FILES": "the same for your own files",
         "overlapse screen BASIS --on XYZ": "the same for your own molecules",
     }
-    width = max(map(len, steps))
-    out.writelines(f"  {step:<{width}}  {what}\n" for step, what in steps.items())
+    longest = max(map(len, steps))
+    out.writelines(f"  {step:<{longest}}  {what}\n" for step, what in steps.items())
 
 
 def copy_to(folder: Path) -> None:
@@ -77,7 +79,7 @@ def _data(name: str) -> list[dict[str, Any]]:
     return found
 
 
-def _screens(folder: Path) -> str:
+def _screens(folder: Path, columns: int) -> str:
     """What the basis files become in the scenario's geometries, one line each."""
     from overlapse.rules.measured.overlap_words import dropped, plain
 
@@ -88,11 +90,12 @@ def _screens(folder: Path) -> str:
             what = f"smallest eigenvalue {plain(probe.smallest)}, outlook {probe.outlook.level}"
             if probe.drop:
                 what += f"; to drop: {dropped(probe.drop)}"
-            told += f"{entry['geometry']}  {entry['basis']}  {what}\n"
+            line = f"{entry['geometry']}  {entry['basis']}  {what}"
+            told += fill(line, columns, subsequent_indent="  ") + "\n"
     return told
 
 
-def _table(folder: Path, audits: list[FileAudit]) -> str:
+def _table(folder: Path, audits: list[FileAudit], columns: int) -> str:
     by_path = {Path(audit.path): audit for audit in audits}
     rows = [("file", "layout", "planted", "found")]
     for entry in scenario():
@@ -102,8 +105,13 @@ def _table(folder: Path, audits: list[FileAudit]) -> str:
         found = f"{loud[0].rule}, line {loud[0].line}" if loud else "nothing"
         rows.append((entry["path"], entry["layout"], entry["planted"] or "nothing", found))
     widths = [max(len(row[k]) for row in rows) for k in range(3)]
-    return "".join(
-        "  ".join([*(cell.ljust(width) for cell, width in zip(row, widths, strict=False)), row[3]])
-        + "\n"
+    lines = [
+        "  ".join([*(cell.ljust(room) for cell, room in zip(row, widths, strict=False)), row[3]])
         for row in rows
-    )
+    ]
+    if max(map(len, lines)) > columns:
+        lines = [
+            f"{file} ({layout})\n  planted: {what}\n  found:   {found}"
+            for file, layout, what, found in rows[1:]
+        ]
+    return "".join(f"{line}\n" for line in lines)

@@ -128,21 +128,24 @@ def audit(*paths: str | os.PathLike[str], label: str | None = None, layout: str 
           settings: Settings | None = None, energies: bool = False) -> list[Finding]:  # fmt: skip
     """Judge files and folders; return all findings, in the order of the paths and of the text.
 
-    Last come acceptances of settings files that were of no use.
+    What probes of the settings find in geometries is among them; last come acceptances of settings
+    files that were of no use.
 
     label: what the sets are called, over what the files say.  layout: read as this layout instead
     of finding it by content.  settings: used for all files instead of those found above them.
     energies: also compute the atoms, which takes seconds for a file of many elements.
-    Raises OSError for a path that cannot be opened, ValueError for an unknown layout, SettingsError
-    for settings that cannot be used.
+    Raises OSError for a path or a geometry that cannot be opened, ValueError for an unknown layout,
+    SettingsError for settings that cannot be used.
     """
+    from overlapse.lint.underway import probed
     from overlapse.lint.unused import with_unused
 
     findings: list[Finding] = []
     found = list(targets(map(Path, paths)))
     options = Options(label, layout, settings, Beside([t.path for t in found]), energies)
     folders = [path for path in map(Path, paths) if path.is_dir()]
-    for result in with_unused((audited(target, options) for target in found), folders):
+    judged = probed(audited(target, options) for target in found)
+    for result in with_unused(judged, folders):
         if result.problem:
             raise OSError(result.problem)
         findings += result.findings

@@ -20,6 +20,7 @@ from overlapse.rules.finding import Finding
 NAME = "overlapse.ledger.json"
 VERSION = 1
 _KEPT = ("rule", "severity", "element", "shell", "message", "fingerprint")
+_NEEDED = ("rule", "severity", "message", "fingerprint")
 Entry = Mapping[str, Any]
 
 
@@ -96,7 +97,7 @@ def read(path: Path) -> Ledger:
         if table["version"] != VERSION:
             raise SettingsError(f"{path}: a ledger of version {table['version']}, not {VERSION}")
         files: dict[str, list[Entry]] = {
-            str(name): [{**entry, "fingerprint": str(entry["fingerprint"])} for entry in entries]
+            str(name): [{**entry, **{key: str(entry[key]) for key in _NEEDED}} for entry in entries]
             for name, entries in table["files"].items()
         }
         energies = table.get("energies", True)
@@ -109,7 +110,7 @@ def read(path: Path) -> Ledger:
             raise
         raise SettingsError(
             f"{path}: this is no ledger ({type(problem).__name__}: {problem}); "
-            "`overlapse audit --write-ledger` makes a new one"
+            "remove it, and `overlapse audit --write-ledger` makes a new one"
         ) from None
     return Ledger(path, files, energies)
 

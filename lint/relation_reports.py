@@ -2,16 +2,16 @@
 
 import json
 from collections.abc import Iterator, Sequence
-from textwrap import wrap
+from textwrap import fill
 from typing import Any, TextIO
 
 from overlapse.lint.describe import ranges
 from overlapse.lint.relating import LEVELS, Compared, FileRelation, SetRelation
 from overlapse.lint.reports.lines import one_line
+from overlapse.lint.terminal import width
 from overlapse.rules.compare.relation import Relation
 from overlapse.rules.compare.sides import Difference, Spot
 
-_WIDTH = 100
 _SHOWN = 5  # elements of one verdict that are told one by one
 _THING = {"row": "primitive", "function": "function"}
 
@@ -21,21 +21,22 @@ _THING = {"row": "primitive", "function": "function"}
 
 def write_text(found: Sequence[FileRelation], out: TextIO, level: str) -> None:
     """Each pair of files with its elements by verdict; then one line that sums up."""
-    several = len(found) > 1
+    several, columns = len(found) > 1, width(out)
     for pair in found:
-        lines = _brief(pair, level) if several and pair.is_equal(level) else None
-        out.write("\n".join(lines or [*_pair_lines(pair), ""]) + "\n")
+        brief = several and pair.is_equal(level)
+        for line in [_brief(pair, level)] if brief else [*_pair_lines(pair), ""]:
+            out.write(_wrapped(line, columns) + "\n")
     if several:
         out.write("\n")
     out.write(_summary(found) + "\n")
 
 
-def _brief(pair: FileRelation, level: str) -> list[str]:
+def _brief(pair: FileRelation, level: str) -> str:
     """A pair of files that are equal, among others, in few words."""
     assert pair.left is not None and pair.right is not None
     weakest = max((relation.verdict for relation in pair.elements), key=LEVELS[level].index)
     names = f"{one_line(pair.left.path)} and {one_line(pair.right.path)}"
-    return _wrapped("", f"{names}: {weakest}, {ranges(pair.left.elements)}")
+    return f"{names}: {weakest}, {ranges(pair.left.elements)}"
 
 
 def _pair_lines(pair: FileRelation) -> Iterator[str]:
@@ -66,7 +67,7 @@ def _set_lines(members: SetRelation, left: Compared, right: Compared) -> Iterato
         by_verdict.setdefault(relation.verdict, []).append(relation)
     for verdict, found in by_verdict.items():
         elements = ranges(sorted({relation.atomic_number for relation in found}))
-        yield from _wrapped(f"  {verdict}: ", elements)
+        yield f"  {verdict}: {elements}"
         if verdict not in ("equal text", "equal numbers") and not verdict.startswith("only"):
             for relation in found[:_SHOWN]:
                 yield from _element_lines(relation, left, right)
@@ -81,9 +82,9 @@ def _element_lines(relation: Relation, left: Compared, right: Compared) -> Itera
         told.append(f"largest principal angle {relation.angle:.2g} rad")
     if count:
         told.append(f"{count} difference{'s' * (count != 1)}")
-    yield from _wrapped(f"    {relation.symbol}: ", "; ".join(told))
+    yield f"    {relation.symbol}: {'; '.join(told)}"
     if relation.first is not None:
-        yield from _wrapped("      first: ", _difference(relation.first, left, right))
+        yield f"      first: {_difference(relation.first, left, right)}"
 
 
 def _difference(difference: Difference, left: Compared, right: Compared) -> str:
@@ -95,10 +96,11 @@ def _difference(difference: Difference, left: Compared, right: Compared) -> str:
         which = "first" if one is not None else "second"
         return f"a {thing} of {spot.shell} is only in the {which}: {_place(spot, document)}"
     apart = other.value - one.value
-    share = f" ({100 * apart / one.value:+.2g} %)" if one.value else ""
+    share = 100 * apart / one.value if one.value else 0.0
+    told = f" ({share:+{',.0f' if abs(share) >= 100 else '.2g'}} %)" if share else ""
     return (
         f"{difference.what} of {one.shell}: {_place(one, left)}; {_place(other, right)}; "
-        f"difference {apart:+.6g}{share}"
+        f"difference {apart:+.6g}{told}"
     )
 
 
@@ -106,12 +108,11 @@ def _place(spot: Spot, document: Compared) -> str:
     return f"{spot.spelling} at {one_line(document.path)}:{spot.line}:{spot.column}"
 
 
-def _wrapped(head: str, text: str) -> list[str]:
-    indent = " " * (len(head) - len(head.lstrip()) + 2)
-    return wrap(
-        head + text, _WIDTH, subsequent_indent=indent, initial_indent="",
-        break_long_words=False, break_on_hyphens=False,
-    )  # fmt: skip
+def _wrapped(line: str, columns: int) -> str:
+    indent = " " * (len(line) - len(line.lstrip()) + 2)
+    return fill(
+        line, columns, subsequent_indent=indent, break_long_words=False, break_on_hyphens=False
+    )
 
 
 def _summary(found: Sequence[FileRelation]) -> str:

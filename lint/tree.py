@@ -82,6 +82,13 @@ def is_file(path: Name) -> bool:
     return stamp(path) is not None
 
 
+def shown(path: Path) -> str:
+    """A path as people write it: from the current folder where it lies below."""
+    here = os.path.realpath(os.curdir)
+    resolved = Path(os.path.realpath(path))
+    return os.path.relpath(resolved, here) if resolved.is_relative_to(here) else str(path)
+
+
 def is_special(path: Name) -> bool:
     """Whether a name of the disk stands for a pipe, a device or a socket, which may never end."""
     try:

@@ -78,7 +78,7 @@ def _told(origin: Path, seen: _Uses, roots: list[Path]) -> FileAudit | None:
     ]
     if not findings:
         return None
-    path = _shown(origin)
+    path = tree.shown(origin)
     source = Source(tree.text(origin), path)
     leveled = (
         replace(finding, path=path, severity=level)  # type: ignore[arg-type]
@@ -129,9 +129,3 @@ def _fixed(pattern: str) -> str:
 def _is_below(place: Path, roots: list[Path]) -> bool:
     resolved = Path(os.path.realpath(place))
     return any(resolved == root or root in resolved.parents for root in roots)
-
-
-def _shown(path: Path) -> str:
-    """A path as people write it: from the current folder where it lies below."""
-    here = os.path.realpath(os.curdir)
-    return os.path.relpath(path, here) if path.is_relative_to(here) else str(path)

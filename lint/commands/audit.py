@@ -259,6 +259,8 @@ def _record(
 ) -> None:
     """Write ledgers of all findings and say so."""
     from overlapse.lint.ledger import write
+    from overlapse.lint.reports.lines import one_line
+    from overlapse.lint.tree import shown
 
     def seen() -> "Iterator[FileAudit]":
         for item in audits:
@@ -275,7 +277,7 @@ def _record(
     for each in ledgers:
         files = len(each.files)
         click.echo(
-            f"{each.path} holds {each.count} finding{'s' * (each.count != 1)} of "
+            f"{one_line(shown(each.path))} holds {each.count} finding{'s' * (each.count != 1)} of "
             f"{files} file{'s' * (files != 1)}; from now on only new ones count"
         )
     if not energies and ledgers:

@@ -26,6 +26,13 @@ def _rules(context: click.Context, parameter: click.Parameter, value: tuple[str,
     return found
 
 
+def _like_rules(context: click.Context, parameter: click.Parameter, begun: str) -> list[str]:
+    """Names of these rules, for the completion of a command line."""
+    from overlapse.lint.mending import NUMERIC
+
+    return [name for name in NUMERIC if name.startswith(begun)]
+
+
 @click.command()
 @click.argument("paths", nargs=-1, required=True, type=click.Path(allow_dash=True, path_type=Path))
 @click.option("--write", is_flag=True, help="Write the mended files instead of showing a diff.")
@@ -33,6 +40,7 @@ def _rules(context: click.Context, parameter: click.Parameter, value: tuple[str,
     "--also",
     multiple=True,
     callback=_rules,
+    shell_complete=_like_rules,
     metavar="RULE",
     help="Make repairs of this rule that change what the file says; may be given several times.",
 )
@@ -93,6 +101,8 @@ def mend(
                 if target.searched and not result.audit.layout:
                     continue
                 status = max(status, _told(result, target.path, name, data, write))
+            except BrokenPipeError:
+                raise  # who reads our output has gone
             except OSError as problem:
                 trouble(f"{name}: {problem.strerror or problem}")
     sys.exit(status)
@@ -119,7 +129,8 @@ def _told(result: "Mended", path: Path, name: str, data: bytes, write: bool) -> 
     if result.data == data:
         return status
     if not write:
-        click.echo(diff(data, result.data, name, sys.stdout.isatty()), nl=False)
+        shown = diff(data, result.data, name, sys.stdout.isatty())
+        click.echo(shown.encode("utf-8", "surrogateescape"), nl=False)
         return FOUND
     if path.read_bytes() != data:
         raise OSError("it was changed by someone else meanwhile; nothing was written")

@@ -41,10 +41,10 @@ def recast(path: Path, target: str, origin: str | None, out: Path | None) -> Non
     document = read_bytes(bytes_of(path), str(path), layout=origin)
     broken = [fault for fault in document.faults if fault.severity == "error"]
     if broken:
-        place = document.source.place(broken[0].span[0])
+        place, more = document.source.place(broken[0].span[0]), len(broken) != 1
         raise Refused(
             f"{path}:{place.line}:{place.column}: {broken[0].message}; "
-            f"mend the file first ({len(broken)} such faults)",
+            f"mend the file first ({len(broken)} such fault{'s' * more})",
         )
     written = layouts()[target].write(document)
     with output(out) as stream:

@@ -56,7 +56,7 @@ def seal(
         work.take(path)
     if not (work.checked or work.refused or work.unread):
         raise Unreadable("no file with an element was found there, nor was one sealed")
-    if write:
+    if write and (work.now or place.exists()):
         _write(seals, work)
     with output(out) as stream:
         (_write_json if report == "json" else _write_text)(stream, seals, work, write)
@@ -144,14 +144,27 @@ def _write(seals: "SealFile", work: _Work) -> None:
 
 
 def _write_text(out: TextIO, seals: "SealFile", work: _Work, write: bool) -> None:
+    from textwrap import fill
+
     from overlapse.lint.reports.lines import one_line
+    from overlapse.lint.terminal import width
+    from overlapse.lint.tree import shown
+
+    columns = width(out)
+
+    def say(words: str) -> None:
+        told = fill(
+            one_line(words), columns, subsequent_indent="  ",
+            break_long_words=False, break_on_hyphens=False,
+        )  # fmt: skip
+        out.write(f"{told}\n")
 
     for each in work.checked:
         if each.state != "as sealed" and not (write and each.state == "not sealed"):
-            told = f"{one_line(each.path)}: {each.element} {_told(each)}"
-            out.write(f"{told}; sealed anew\n" if write else f"{told}\n")
+            told = f"{each.path}: {each.element} {_told(each)}"
+            say(f"{told}; sealed anew" if write else told)
     for trouble in (*work.refused, *work.unread):
-        out.write(f"{one_line(trouble)}\n")
+        say(trouble)
     counts = {state: 0 for state in ("as sealed", "changed", "not sealed", "gone")}
     for each in work.checked:
         counts[each.state] += 1
@@ -159,10 +172,11 @@ def _write_text(out: TextIO, seals: "SealFile", work: _Work, write: bool) -> Non
         total = _count(len(work.checked) - counts["gone"], "element")
         files = _count(sum(bool(entries) for entries in work.now.values()), "file")
         new = f"{counts['not sealed']} new, {counts['changed']} changed, {counts['gone']} gone"
-        out.write(f"sealed {total} of {files} in {one_line(str(seals.path))}: {new}\n")
+        out.write(f"sealed {total} of {files} in {one_line(shown(seals.path))}: {new}\n")
     else:
         parts = [f"{count} {state}" for state, count in counts.items() if count]
-        out.write((", ".join(parts) or "nothing to check") + f" in {one_line(str(seals.path))}\n")
+        told = ", ".join(parts) or "nothing to check"
+        out.write(f"{told} in {one_line(shown(seals.path))}\n")
 
 
 def _count(count: int, noun: str) -> str:

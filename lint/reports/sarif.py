@@ -1,6 +1,7 @@
 """SARIF 2.1.0, the OASIS standard for results of static analysis."""
 
 import json
+import os
 from collections.abc import Iterable, Iterator, Sequence
 from pathlib import PurePath
 from typing import Any, TextIO
@@ -146,4 +147,5 @@ def _place_in_the_chemistry(finding: Finding) -> dict[str, Any]:
 
 def _uri(path: str) -> str:
     pure = PurePath(path)
-    return pure.as_uri() if pure.is_absolute() else quote(pure.as_posix())
+    # A name may hold bytes that are no text.
+    return pure.as_uri() if pure.is_absolute() else quote(os.fsencode(pure.as_posix()))

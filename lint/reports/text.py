@@ -28,7 +28,7 @@ def write(audits: Iterable[FileAudit], out: TextIO, colour: bool) -> None:
         if audit.problem:
             out.write(_headed("error", one_line(audit.problem), paint) + "\n\n")
         elif audit.findings or audit.accepted or audit.gone:
-            out.write(_heading(audit, paint) + "\n\n")
+            out.write(_heading(audit, paint, columns) + "\n\n")
             for finding in audit.findings:
                 out.write(_finding(finding, audit, paint, columns) + "\n")
             out.write("".join(f"{line}\n" for line in _set_apart(audit, columns)))
@@ -43,17 +43,21 @@ def _painted(text: str, kind: str) -> str:
     return f"\x1b[{_COLOURS.get(kind, '1')}m{text}\x1b[0m"
 
 
-def _heading(audit: FileAudit, paint: Paint) -> str:
+def _heading(audit: FileAudit, paint: Paint, columns: int) -> str:
+    name = one_line(audit.path)
     if audit.absent:
-        return f"{paint(one_line(audit.path), 'path')}  (in the ledger only)"
+        return f"{paint(name, 'path')}  (in the ledger only)"
     if not audit.is_basis:
-        return f"{paint(one_line(audit.path), 'path')}  (settings)"
+        return f"{paint(name, 'path')}  (settings)"
     facts = [f"layout {audit.layout}" if audit.layout else "no layout"]
     if audit.elements:
         facts.append(f"{audit.elements} element{'s' * (audit.elements != 1)}")
     if audit.label:
         facts.append(f"label {one_line(audit.label)} from {audit.label_from}")
-    return f"{paint(one_line(audit.path), 'path')}  ({'; '.join(facts)})"
+    told = f"({'; '.join(facts)})"
+    if len(name) + len(told) + 2 <= columns:
+        return f"{paint(name, 'path')}  {told}"
+    return f"{paint(name, 'path')}\n{_wrapped(told, '  ', columns)}"
 
 
 def _headed(level: str, words: str, paint: Paint) -> str:
@@ -61,9 +65,9 @@ def _headed(level: str, words: str, paint: Paint) -> str:
 
 
 def _finding(finding: Finding, audit: FileAudit, paint: Paint, columns: int) -> str:
-    where = " ".join(filter(None, (finding.element, finding.shell)))
-    place = f"line {finding.line}, column {finding.column}  {finding.rule}"
-    lines = [_headed(finding.severity, f"{where}  {place}" if where else place, paint)]
+    where = _place(finding.element, finding.shell)
+    place = f"line {finding.line}, column {finding.column}"
+    lines = [_headed(finding.severity, _spaced(where, place, finding.rule), paint)]
     lines += _excerpt(finding, audit, paint, columns - _GUTTER)
     lines.append(_wrapped(finding.message, "  ", columns))
     numbers = [
@@ -86,14 +90,22 @@ def _finding(finding: Finding, audit: FileAudit, paint: Paint, columns: int) -> 
 def _set_apart(audit: FileAudit, columns: int) -> Iterator[str]:
     """What does not count: accepted findings, and known ones that are gone."""
     for finding, reason, where in audit.accepted:
-        place = " ".join(filter(None, (finding.element, finding.shell)))
-        words = f"accepted  {place}  line {finding.line}  {finding.rule}: {reason} ({where})"
-        yield _wrapped(words, "", columns)
+        parts = ("accepted", _place(finding.element, finding.shell), f"line {finding.line}")
+        yield _wrapped(f"{_spaced(*parts, finding.rule)}: {reason} ({where})", "", columns)
     for entry in audit.gone:
-        place = " ".join(filter(None, (entry.get("element"), entry.get("shell"))))
-        yield _wrapped(f"gone  {place}  {entry['rule']}: {entry['message']}", "", columns)
+        place = _place(entry.get("element"), entry.get("shell"))
+        yield _wrapped(f"{_spaced('gone', place, entry['rule'])}: {entry['message']}", "", columns)
     if audit.accepted or audit.gone:
         yield ""
+
+
+def _place(element: str | None, shell: str | None) -> str:
+    return " ".join(filter(None, (element, shell)))
+
+
+def _spaced(*parts: str) -> str:
+    """Parts with two blanks between them, but for empty ones."""
+    return "  ".join(filter(None, parts))
 
 
 def _wrapped(text: str, indent: str, columns: int) -> str:

@@ -109,7 +109,7 @@ class Facts:
         self.files.append(
             FileFacts(
                 one_line(audit.path),
-                audit.layout,
+                audit.layout if audit.is_basis else "settings",
                 one_line(audit.label or ""),
                 audit.elements,
                 one_line(audit.problem),

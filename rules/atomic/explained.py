@@ -128,6 +128,10 @@ def by_row(own: Steps, others: Sequence[Steps]) -> list[tuple[Number, float, flo
     z = np.log([float(other.atom.block.atomic_number) for other in others])
     here = float(np.log(own.atom.block.atomic_number))
     first, second = np.triu_indices(len(z), 1)
+    apart = z[first] != z[second]  # an element may be there twice
+    first, second = first[apart], second[apart]
+    if not first.size:
+        return []
     found = []
     for number in own.numbers:
         values = np.array([other.atom.value(number) for other in others])

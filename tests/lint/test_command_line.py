@@ -105,6 +105,7 @@ def test_a_label_given_by_hand(folder: Path) -> None:
         (["audit", "--report", "picture", "{}"], "'picture' is not one of"),
         (["rules", "contraction.nrom"], "did you mean contraction.norm?"),
         (["nonsense"], "No such command"),
+        (["audt", "{}"], "Did you mean audit?"),
     ],
 )
 def test_wrong_use_gives_status_2(folder: Path, arguments: list[str], told: str) -> None:
@@ -230,3 +231,30 @@ def test_colour_is_for_terminals_only(folder: Path) -> None:
     writer("text")(audits, painted, True)
     assert "\x1b" not in plain.getvalue()
     assert "\x1b[31merror" in painted.getvalue()
+
+
+NARROW = [
+    ["demo"],
+    ["audit", "sets"],
+    ["seal", "--write", "sets"],
+    ["relate", "sets/a long name of a file.basis", "sets/another long name of a file.basis"],
+    ["rules", "contraction.norm"],
+    ["rules"],
+    ["mend", "--help"],
+    ["audit", "--help"],
+]
+
+
+@pytest.mark.parametrize("words", NARROW, ids=" ".join)
+def test_nothing_is_wider_than_a_terminal(
+    words: list[str], tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.chdir(tmp_path)
+    monkeypatch.setenv("COLUMNS", "80")
+    (tmp_path / "sets").mkdir()
+    text = "! 6-31G**, as a program of old times wrote it\n" + BROKEN
+    for name, content in (("a", text), ("another", text.replace("4.0", "4.1"))):
+        (tmp_path / "sets" / f"{name} long name of a file.basis").write_text(content)
+    done = run(*words)
+    assert done.stdout
+    assert [line for line in done.stdout.splitlines() if len(line) > 80] == []

@@ -122,7 +122,21 @@ def test_settings_say_where_it_is(tmp_path: Path, monkeypatch: pytest.MonkeyPatc
     assert _run("audit", "--ledger", other, "sets").exit_code == 1
 
 
-@pytest.mark.parametrize("text", ["", "[]", '{"version": 9, "files": {}}', '{"version": 1}', "{x"])
+DAMAGED = [
+    "",
+    "[]",
+    '{"version": 9, "files": {}}',
+    '{"version": 1}',
+    "{x",
+    '{"version": 1, "files": {"sets/a.basis": [{"fingerprint": "x"}]}}',
+    '{"version": 1, "files": {"sets/a.basis": [3]}}',
+    '{"version": 1, "files": []}',
+    "<<<<<<< ours\n{}\n=======\n{}\n>>>>>>> theirs\n",
+    "\x00",
+]
+
+
+@pytest.mark.parametrize("text", DAMAGED)
 def test_a_damaged_ledger_is_a_wrong_setting(library: Path, text: str) -> None:
     (library / NAME).write_text(text)
     with pytest.raises(SettingsError, match=NAME):

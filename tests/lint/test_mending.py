@@ -16,6 +16,7 @@ from overlapse.grammar.model import Document, Shell
 from overlapse.grammar.numbers import NUMBER, plain
 from overlapse.grammar.reading import read_bytes, read_text
 from overlapse.lint.cli import cli
+from overlapse.lint.diff import diff
 from overlapse.lint.engine import judge
 from overlapse.lint.mending import NUMERIC, SAFE, Mended, content, mend
 from overlapse.lint.settings import Settings
@@ -285,9 +286,19 @@ def test_the_diff_is_one_that_git_applies(tmp_path: Path, monkeypatch: pytest.Mo
     if shutil.which("git") is None:
         pytest.skip("git is not installed")
     monkeypatch.chdir(tmp_path)
-    broken = SOUND.replace("0.3", "O.3").replace("\n", "\r\n", 2).rstrip("\n")
+    # The comment's name is in Latin-1.
+    sound = b"! M\xfcller\n" + SOUND.rstrip("\n").encode()
+    broken = sound.replace(b"0.3", b"O.3").replace(b"\n", b"\r\n", 2)
     path = Path("own.basis")
-    path.write_bytes(broken.encode())
+    path.write_bytes(broken)
     shown = _run(path).stdout_bytes
     subprocess.run(["git", "apply", "-"], input=shown, check=True)
-    assert path.read_bytes() == SOUND.rstrip("\n").encode()
+    assert path.read_bytes() == sound
+
+
+def test_a_diff_on_a_terminal_shows_what_cannot_be_seen() -> None:
+    shown = diff(b"a\x0b \xfc\r\nb\x1b[0m\n", b"a\nb\n", "x", for_terminal=True)
+    assert "-a<0b> <fc><0d>" in shown
+    assert "-b<1b>[0m" in shown
+    assert shown.count("\n") == 7
+    assert diff(b"a", b"a", "x", for_terminal=True) == ""

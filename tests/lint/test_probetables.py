@@ -1,10 +1,13 @@
 """Probe tables of settings: files are measured together, each gets its own findings."""
 
+import json
 from pathlib import Path
 
 import pytest
+from click.testing import CliRunner
 
-from overlapse.lint.engine import FileAudit, Target, audit_file
+from overlapse.lint.cli import cli
+from overlapse.lint.engine import FileAudit, Target, audit, audit_file
 from overlapse.lint.probetables import Probing, Table
 from overlapse.lint.settings import Settings
 from overlapse.rules.measured.probing import Wanted
@@ -90,3 +93,19 @@ def test_the_same_as_a_call(folder: Path) -> None:
     assert not found[str(folder / "o.basis")]
     (probe,) = screening.probes
     assert probe.spectrum.functions == 11
+
+
+def test_the_library_call_finds_what_the_command_finds(folder: Path) -> None:
+    (folder / "overlapse.toml").write_text(
+        "[[probe]]\nbasis = '*.basis'\ngeometry = 'water.xyz'\n"
+        "[[accept]]\nrules = 'form.count'\npaths = '*.basis'\nbecause = 'of old'\n"
+    )
+    found = [(Path(f.path).name, f.rule) for f in audit(folder, energies=True)]
+    assert ("h.basis", "overlap.molecule") in found
+    assert found[-1] == ("overlapse.toml", "form.acceptance")
+    done = CliRunner().invoke(cli, ["audit", "--report", "json", "--no-cache", str(folder)])
+    files = json.loads(done.stdout)["files"]
+    assert [(Path(f["path"]).name, each["rule"]) for f in files for each in f["findings"]] == found
+    (folder / "water.xyz").unlink()
+    with pytest.raises(OSError, match="water"):
+        audit(folder)

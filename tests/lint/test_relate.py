@@ -147,7 +147,7 @@ def test_folders_are_paired_by_name_label_and_content(tmp_path: Path) -> None:
     assert all(f.is_equal("numbers") for f in found if f.left and f.right)
     status, out = run(left, right)
     assert status == 1
-    assert "lonely.txt  only in the first: F-Ne" in out
+    assert "lonely.txt only in the first: F-Ne" in " ".join(out.split())
     status, out = run(left, right, "--report", "json")
     assert [Path(path).name for path in json.loads(out)["only_in_first"]] == ["lonely.txt"]
 

@@ -192,3 +192,22 @@ def test_from_a_folder_inside_and_without_a_first_commit(repository: Path) -> No
     (repository / "sets" / "a.basis").unlink()
     found = json.loads(_run("audit", "--staged", "--report", "json", ".").stdout)
     assert [file["path"] for file in found["files"]] == ["a.basis"]
+
+
+def test_as_a_hook_it_judges_what_each_commit_will_hold(repository: Path) -> None:
+    other = repository / "sets" / "b.basis"
+    other.write_text(SOUND)
+    hook = repository / ".git" / "hooks" / "pre-commit"
+    hook.parent.mkdir(exist_ok=True)
+    program = f'"{sys.executable}" -c "from overlapse.lint.cli import main; main()"'
+    hook.write_text(f"#!/bin/sh\nexec {program} audit --staged --quiet sets\n")
+    hook.chmod(0o755)
+    _git("add", ".")
+    _git("commit", "-qm", "sound")
+    (repository / "sets" / "a.basis").write_text(BROKEN)
+    other.write_text(OTHER)
+    with pytest.raises(subprocess.CalledProcessError):
+        _git("commit", "-qam", "both")  # from an index of its own
+    _git("commit", "-qm", "the sound one alone", "sets/b.basis")
+    with pytest.raises(subprocess.CalledProcessError):
+        _git("commit", "-qm", "the broken one alone", "sets/a.basis")

@@ -9,7 +9,9 @@ import sys
 from pathlib import Path
 
 import pytest
+from click.testing import CliRunner
 
+from overlapse.lint.cli import cli
 from overlapse.lint.engine import audit_text
 from overlapse.lint.reports import writer
 from overlapse.lint.settings import Settings
@@ -121,3 +123,30 @@ def test_verbose_tells_how_each_file_was_taken(tmp_path: Path) -> None:
     assert "label 6-31G from the comment on line 1" in first
     assert f"settings of {tmp_path / 'overlapse.toml'}" in first
     assert second.startswith(f"{tmp_path / 'b.txt'}: passed over")
+
+
+def test_the_last_lines_say_how_to_go_on(tmp_path: Path) -> None:
+    text = "C 0\nS 2 1.00\n 4.0 0.6\n O.5 0.55505\nS 1 1.00\n 0.3 1.0\nP 1 1.0\n 0.5 1.0\n****\n"
+    path = tmp_path / "a b.basis"
+    path.write_text(text)
+
+    def last(*words: str) -> list[str]:
+        done = CliRunner().invoke(cli, ["audit", "--no-energies", *words], catch_exceptions=False)
+        return done.stdout.splitlines()
+
+    with pytest.MonkeyPatch.context() as patch:
+        patch.chdir(tmp_path)
+        patch.setenv("COLUMNS", "100")
+        assert [re.sub("  +", "  ", line) for line in last(path.name)[-5:]] == [
+            "1 file; 1 error",
+            "to go on:",
+            "  overlapse rules form.number  what a rule finds, and why",
+            "  overlapse mend 'a b.basis'  1 safe repair as a diff",
+            "  overlapse audit --write-ledger 'a b.basis'  from then on only what is new counts",
+        ]
+        assert last("--quiet", path.name)[-1] == "1 file; 1 error"
+        assert last("--recognised-only", path.name)[-1] == "1 file; 1 error"
+        told, *_ = last("--write-ledger", path.name)
+        assert told.startswith("overlapse.ledger.json holds 1 finding of 1 file; from now on only")
+        path.write_text(text.replace("O.5", "0.5"))
+        assert "1 file; nothing new found; 1 gone since" in last(path.name)
