@@ -5,25 +5,24 @@ f = v / sqrt(lambda).  Rounding of two-electron integrals, of relative size eps,
 lambda**-2 in the repulsion (ff|ff), but the field only notices as far as f is occupied.  If p
 electrons are in f, energy and gradient carry a noise (hartree) of about
 
-    E = sum over f of  k eps sqrt(T) (p / lambda)**2 / sqrt(g),
-    G = sum over f of  sqrt(k) eps sqrt(T) p**(3/2) / lambda**2 / sqrt(g).
+    E = sum over f of  k eps sqrt(T) (p / lambda)**2,
+    G = sum over f of  k eps sqrt(T) p**(3/2) / lambda**2.
 
-T = v' T v / lambda in hartree is the kinetic energy of f, whose root measures how compact f is.  g
-is the gap in hartree between occupied and empty levels: the smaller, the more the orbitals follow
-the noise.  k is 1 where f vanishes within the functions of each centre by itself (near-twins, whose
-integrals share their rounding), 10 where it vanishes between centres.  So the same small eigenvalue
-can be harmless (tight twins that hold little, combinations that no occupied orbital has the
-symmetry of) or fatal.
+T = v' T v / lambda in hartree is the kinetic energy of f, whose root measures how compact f is.  k
+is 1 where f vanishes within the functions of each centre by itself (near-twins, whose integrals
+share their rounding), 5 where it vanishes between centres.  So the same small eigenvalue can be
+harmless (tight twins that hold little, combinations that no occupied orbital has the symmetry of)
+or fatal.
 
 The electrons in f are those that the field of `molecule` puts there.  Its occupied spin orbitals i
 are found among all combinations above 1e-9, and
 
     p = sum over i of  <f|i>**2,   below 1e-9, for want of digits,  (F_fi / (F_ff - e_i))**2.
 
-Limits: a field is strained above E = 2e-8 and fails above G = 1e-4.  A program asks for an energy
+Limits: a field is strained above E = 1.5e-8 and fails above G = 1e-4.  A program asks for an energy
 to about 1e-9 hartree and for gradients to about its root, 3e-5, so noise begins to matter there.
 The powers of p, lambda and T are those of the formulas (a free fit gives 1.0 and 0.76 in place of
-1 and 3/4); the root of the gap, k and the two limits were chosen on some 240 fields.
+1 and 3/4); k and the two limits were chosen on some 290 fields.
 
 An eigenvalue below 1e-10 that is felt by no orbital, by the symmetry of the molecule as a rule, is
 called strained all the same: a slight distortion or another filling of the levels undoes that.  One
@@ -49,9 +48,9 @@ from overlapse.rules.physics.placed import Functions, Placed
 
 Level = Literal["safe", "strained", "fails"]
 
-STRAINED, FAILS = 2e-8, 1e-4  # hartree: noise of energy and of gradient, with a field
+STRAINED, FAILS = 1.5e-8, 1e-4  # hartree: noise of energy and of gradient, with a field
 GAS = 0.3  # times these limits, where exchange is that of the electron gas
-BETWEEN = 10.0  # factor k between centres, where integrals do not share their rounding
+BETWEEN = 5.0  # factor k between centres, where integrals do not share their rounding
 SMALL, TINY = 1e-7, 5e-10  # of the smallest eigenvalue, without a field
 UNPROTECTED = 1e-10  # eigenvalue below which symmetry alone is no comfort
 LOOKED_AT = 1e-6  # eigenvalues below are looked into
@@ -59,7 +58,6 @@ LARGE = 700  # functions, from which other algorithms than full diagonalisation 
 DIGITS = 1e-9  # eigenvalue from which a combination can be treated like any other
 GAP = 0.1  # hartree: smallest denominator, so that a degeneracy does not blow up the estimate
 APART = 10.0  # times the eigenvalue: norm of the parts on single centres, from which it is between
-NARROW, WIDE = 0.05, 1.0  # hartree: gaps beyond these count as these
 
 
 class Outlook(NamedTuple):
@@ -132,14 +130,15 @@ def outlook(
         return _by_eigenvalue(smallest, overlap, kinetic, functions)
     seen = _seen(overlap, kinetic, functions, field)
     energy, gradient = seen.noise
-    worst = int(np.argmax(gradient if gradient.sum() > FAILS else energy))
+    scale = 1.0 if field.exact else GAS
+    fails = float(gradient.sum()) > scale * FAILS
+    worst = int(np.argmax(gradient if fails else energy))
     reason = (
         f"a combination of eigenvalue {seen.values[worst]:.1e} and kinetic energy "
         f"{seen.height[worst]:.2g} hartree, {described(seen.vectors[:, worst], functions)} would "
         f"hold about {seen.held[worst]:.0e} electrons"
     )
-    scale = 1.0 if field.exact else GAS
-    if gradient.sum() > scale * FAILS:
+    if fails:
         reason = f"noise of about {gradient.sum():.0e} hartree in the gradient; {reason}"
         return Outlook("fails", float(gradient.sum()), scale * FAILS, reason)
     measure, limit = float(energy.sum()), scale * STRAINED
@@ -194,7 +193,7 @@ def _by_eigenvalue(
 
 
 class _Seen(NamedTuple):
-    """Combinations of small eigenvalues: vectors (n, low), electrons held, kinetic energies, gap.
+    """Combinations of small eigenvalues: vectors (n, low), electrons held, kinetic energies.
 
     between: whether they vanish between centres.  Energies in hartree.
     """
@@ -204,16 +203,13 @@ class _Seen(NamedTuple):
     between: npt.NDArray[np.bool_]
     held: Floats
     height: Floats
-    gap: float
 
     @property
     def noise(self) -> tuple[Floats, Floats]:
         """Noise that each brings into energy and gradient, hartree."""
         factor = np.where(self.between, BETWEEN, 1.0)
-        scale = np.finfo(float).eps * np.sqrt(self.height / np.clip(self.gap, NARROW, WIDE))
-        energy = factor * scale * (self.held / self.values) ** 2
-        gradient = np.sqrt(factor) * scale * self.held**1.5 / self.values**2
-        return energy, gradient
+        scale = factor * np.finfo(float).eps * np.sqrt(self.height)
+        return scale * (self.held / self.values) ** 2, scale * self.held**1.5 / self.values**2
 
 
 def _seen(overlap: Floats, kinetic: Floats, functions: Functions, field: Field) -> _Seen:
@@ -225,11 +221,9 @@ def _seen(overlap: Floats, kinetic: Floats, functions: Functions, field: Field) 
     combinations = vectors / np.sqrt(values)
     height = np.einsum("nf,nm,mf->f", combinations, kinetic, combinations)
     outside = combinations[:, :least]
-    held, gap = np.zeros(low), np.inf
+    held = np.zeros(low)
     for spin, (fock, count) in enumerate(zip(field.focks, field.electrons, strict=True)):
         energies, orbitals = field.orbitals(spin, x, kinetic)
-        if 0 < count < len(energies):
-            gap = min(gap, float(energies[count] - energies[count - 1]))
         energies, orbitals = energies[:count], orbitals[:, :count]
         levels = np.einsum("nf,nm,mf->f", outside, fock, outside)
         gaps = np.maximum(levels[:, None] - energies, GAP)
@@ -238,7 +232,7 @@ def _seen(overlap: Floats, kinetic: Floats, functions: Functions, field: Field) 
     centre = np.asarray(functions.atom)
     alone = np.where(centre[:, None] == centre, overlap, 0.0)
     between = np.einsum("nf,nm,mf->f", vectors, alone, vectors) > APART * values
-    return _Seen(values, vectors, between, held, np.maximum(height, 0.0), gap)
+    return _Seen(values, vectors, between, held, np.maximum(height, 0.0))
 
 
 DIFFUSE, TIGHT = 0.1, 30.0  # bohr**-2: below and above, exponents are called so

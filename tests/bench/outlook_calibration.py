@@ -22,12 +22,13 @@ from builders import (
     twins,
     water,
 )
+from outlook_drawn import drawn
 from outlook_irregular import irregular
 
 
 def calibration() -> list[System]:
     """All of them, each once."""
-    found = {s.name: s for s in [*_dense(), *_others(), *irregular(), *_misleading()]}
+    found = {s.name: s for s in [*_dense(), *_others(), *irregular(), *drawn(), *_misleading()]}
     return list(found.values())
 
 

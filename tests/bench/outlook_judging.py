@@ -1,8 +1,7 @@
 """Systems on which outlooks are judged; they took no part in any choice.
 
-Kinds of molecules and sets are listed here; what makes each system dependent (which exponent, how
-near its twin, how far squeezed) is drawn by chance from wide ranges, with a fixed seed, so that
-systems lie on either side of the limits, far from them and near.
+Drawn by chance like those of `outlook_drawn`, with another seed: other molecules, atoms and sets.
+Nothing is left out afterwards.
 """
 
 import random
@@ -10,7 +9,6 @@ from collections.abc import Iterator
 
 from builders import (
     Atoms,
-    Basis,
     System,
     centred,
     chain,
@@ -22,55 +20,57 @@ from builders import (
     squeezed,
     twins,
 )
+from outlook_drawn import Kind, chance, twinned
 from outlook_irregular import heap, shaken
 
-SEED = 611
+SEED = 20407
 
-PHOSPHINE: Atoms = [
-    ("P", (0.0, 0.0, 0.127)),
-    *[(s, (x, y, -0.635)) for s, (x, y, _) in ring("HHH", 2.06)],
-]
-METHYL: Atoms = [("C", (0.0, 0.0, 0.0)), *ring("HHH", 1.87)]
-FLUOROMETHANE: Atoms = [
-    ("C", (0.0, 0.0, 0.0)),
-    ("F", (0.0, 0.0, 1.383)),
-    *[(s, (x, y, -0.36)) for s, (x, y, _) in ring("HHH", 1.79)],
-]
-AMINO: Atoms = [("N", (0.0, 0.0, 0.0)), ("H", (0.0, 0.803, 0.635)), ("H", (0.0, -0.803, 0.635))]
-ETHYNE: Atoms = [("H", (0.0, 0.0, -1.06)), *chain("CC", 1.203), ("H", (0.0, 0.0, 2.263))]
-HYPOCHLOROUS: Atoms = [("O", (0.0, 0.0, 0.0)), ("Cl", (0.0, 0.0, 1.69)), ("H", (0.94, 0.0, -0.22))]
-
-# Name, atoms, published set, unpaired electrons; element, l and range of exponents of the twins.
-TWINS: list[tuple[str, Atoms, str, int, str, int, tuple[float, float]]] = [
-    ("LiF", chain(["Li", "F"], 1.56), "def2-svp", 0, "F", 0, (0.1, 2.0)),
-    ("LiF", chain(["Li", "F"], 1.56), "def2-svp", 0, "Li", 1, (0.03, 0.3)),
-    ("BeH2", chain(["H", "Be", "H"], 1.33), "cc-pvdz", 0, "Be", 0, (0.02, 1.0)),
-    ("BeH2", chain(["H", "Be", "H"], 1.33), "cc-pvdz", 0, "H", 1, (0.1, 1.5)),
-    ("phosphine", PHOSPHINE, "def2-svp", 0, "P", 1, (0.05, 20.0)),
-    ("phosphine", PHOSPHINE, "6-31g**", 0, "H", 0, (0.03, 1.0)),
-    ("methyl", METHYL, "cc-pvdz", 1, "C", 1, (0.03, 5.0)),
-    ("methyl", METHYL, "def2-svp", 1, "C", 0, (0.03, 50.0)),
-    ("fluoromethane", FLUOROMETHANE, "def2-svp", 0, "C F", 2, (0.3, 2.0)),
-    ("amino", AMINO, "6-31g*", 1, "N", 1, (0.05, 10.0)),
-    ("ethyne", ETHYNE, "def2-svp", 0, "C", 1, (0.05, 3.0)),
-    ("hypochlorous acid", HYPOCHLOROUS, "def2-svp", 0, "Cl", 0, (0.03, 3.0)),
-    ("Cl2", chain(["Cl", "Cl"], 1.99), "def2-svp", 0, "Cl", 2, (0.2, 1.5)),
-    ("SiO", chain(["Si", "O"], 1.51), "cc-pvdz", 0, "Si", 1, (0.05, 30.0)),
-    ("SO", chain(["S", "O"], 1.48), "def2-svp", 2, "S", 1, (0.05, 20.0)),
-    ("Ar", chain(["Ar"], 1.0), "cc-pvdz", 0, "Ar", 0, (20.0, 4000.0)),
-    ("Na", chain(["Na"], 1.0), "def2-svp", 1, "Na", 0, (5.0, 1000.0)),
-    ("MnH", chain(["Mn", "H"], 1.73), "def2-svp", 6, "Mn", 2, (0.1, 5.0)),
-    ("CrH", chain(["Cr", "H"], 1.66), "def2-svp", 5, "Cr", 1, (0.05, 10.0)),
-    ("ScF", chain(["Sc", "F"], 1.79), "def2-svp", 0, "Sc", 2, (0.05, 2.0)),
-    ("CuCl", chain(["Cu", "Cl"], 2.05), "def2-svp", 0, "Cu", 0, (0.03, 100.0)),
-    ("Zn", chain(["Zn"], 1.0), "def2-svp", 0, "Zn", 1, (1.0, 100.0)),
-    ("Cu", chain(["Cu"], 1.0), "def2-svp", 1, "Cu", 2, (0.2, 10.0)),
+SILYL: Atoms = [("Si", (0.0, 0.0, 0.0)), *[(s, (x, y, 0.45)) for s, (x, y, _) in ring("HHH", 2.42)]]
+ALANE: Atoms = [("Al", (0.0, 0.0, 0.0)), *ring("HHH", 2.73)]
+BORON_FLUORIDE: Atoms = [("B", (0.0, 0.0, 0.0)), *ring("FFF", 2.26)]
+PHOSPHINO: Atoms = [("P", (0.0, 0.0, 0.0)), ("H", (0.0, 1.02, 0.99)), ("H", (0.0, -1.02, 0.99))]
+NITROUS: Atoms = [*chain("NN", 1.13), ("O", (0.0, 0.0, 2.315))]
+CYANOGEN_CHLORIDE: Atoms = [*chain("NC", 1.16), ("Cl", (0.0, 0.0, 2.79))]
+DIMER: Atoms = [*chain("HF", 0.92), ("H", (0.0, 0.3, 3.6)), ("F", (0.0, 0.0, 2.73))]
+METHANOL: Atoms = [
+    ("C", (0.0, 0.0, 0.0)), ("O", (0.0, 0.0, 1.42)), ("H", (0.91, 0.0, 1.74)),
+    ("H", (1.03, 0.0, -0.36)), ("H", (-0.51, 0.89, -0.36)), ("H", (-0.51, -0.89, -0.36)),
 ]  # fmt: skip
-CARTESIAN: list[tuple[str, Atoms, str, int, str, int, tuple[float, float]]] = [
-    ("SiO", chain(["Si", "O"], 1.51), "6-31g*", 0, "Si", 2, (0.2, 2.0)),
-    ("amino", AMINO, "6-31g*", 1, "N", 2, (0.4, 2.0)),
-    ("hypochlorous acid", HYPOCHLOROUS, "6-31g*", 0, "O", 0, (0.1, 10.0)),
-    ("ScF", chain(["Sc", "F"], 1.79), "def2-svp", 0, "F", 2, (0.5, 2.5)),
+
+TWINS: list[Kind] = [
+    ("NaCl", chain(["Na", "Cl"], 2.36), "def2-svp", 0, "Na", 0, (0.01, 0.3)),
+    ("NaCl", chain(["Na", "Cl"], 2.36), "cc-pvdz", 0, "Cl", 1, (0.03, 10.0)),
+    ("alane", ALANE, "def2-svp", 0, "Al", 1, (0.03, 1.0)),
+    ("alane", ALANE, "6-31g*", 0, "H", 0, (0.02, 2.0)),
+    ("boron trifluoride", BORON_FLUORIDE, "6-31g", 0, "F", 1, (0.1, 5.0)),
+    ("N2O", NITROUS, "def2-svp", 0, "N O", 0, (0.08, 1.0)),
+    ("cyanogen chloride", CYANOGEN_CHLORIDE, "def2-svp", 0, "C N", 1, (0.05, 1.0)),
+    ("methanol", METHANOL, "6-31g*", 0, "O", 0, (0.05, 200.0)),
+    ("methanol", METHANOL, "def2-svp", 0, "H", 0, (0.02, 1.5)),
+    ("hydrogen fluoride dimer", DIMER, "cc-pvdz", 0, "F", 1, (0.02, 2.0)),
+    ("silyl", SILYL, "def2-svp", 1, "Si", 1, (0.03, 3.0)),
+    ("phosphino", PHOSPHINO, "cc-pvdz", 1, "P", 2, (0.1, 1.5)),
+    ("NF", chain("NF", 1.32), "def2-svp", 2, "F", 1, (0.1, 20.0)),
+    ("BO", chain("BO", 1.2), "cc-pvdz", 1, "B", 0, (0.03, 5.0)),
+    ("MgO", chain(["Mg", "O"], 1.75), "def2-svp", 0, "O", 1, (0.05, 3.0)),
+    ("HBr", chain(["H", "Br"], 1.41), "def2-svp", 0, "Br", 1, (0.05, 30.0)),
+    ("P", chain("P", 1.0), "cc-pvdz", 3, "P", 1, (1.0, 100.0)),
+    ("Kr", chain(["Kr"], 1.0), "def2-svp", 0, "Kr", 2, (1.0, 50.0)),
+    ("Ca", chain(["Ca"], 1.0), "def2-svp", 0, "Ca", 0, (0.01, 500.0)),
+    ("CaO", chain(["Ca", "O"], 1.82), "def2-svp", 0, "Ca", 1, (0.05, 2.0)),
+    ("ScH", chain(["Sc", "H"], 1.78), "def2-svp", 0, "Sc", 1, (0.03, 3.0)),
+    ("VO", chain(["V", "O"], 1.59), "def2-svp", 3, "V", 2, (0.1, 3.0)),
+    ("MnF", chain(["Mn", "F"], 1.84), "def2-svp", 6, "F", 0, (0.1, 10.0)),
+    ("ZnS", chain(["Zn", "S"], 2.05), "def2-svp", 0, "Zn", 2, (0.1, 5.0)),
+    ("CuH", chain(["Cu", "H"], 1.46), "def2-svp", 0, "H", 0, (0.03, 1.0)),
+    ("Mn", chain(["Mn"], 1.0), "def2-svp", 5, "Mn", 1, (0.5, 50.0)),
+]  # fmt: skip
+CARTESIAN: list[Kind] = [
+    ("methanol", METHANOL, "6-31g*", 0, "C O", 2, (0.3, 2.0)),
+    ("phosphino", PHOSPHINO, "6-31g*", 1, "P", 1, (0.05, 5.0)),
+    ("N2O", NITROUS, "6-31g*", 0, "O", 2, (0.3, 2.0)),
+    ("VO", chain(["V", "O"], 1.59), "def2-svp", 3, "O", 0, (0.1, 10.0)),
+    ("alane", ALANE, "6-31g*", 0, "Al", 2, (0.1, 1.0)),
 ]  # fmt: skip
 
 
@@ -78,8 +78,8 @@ def judging() -> list[System]:
     dice = random.Random(SEED)
     return [
         *_sound(),
-        *_twinned(dice, TWINS, cartesian=False),
-        *_twinned(dice, CARTESIAN, cartesian=True),
+        *twinned(dice, TWINS, cartesian=False),
+        *twinned(dice, CARTESIAN, cartesian=True),
         *_crowded(dice),
         *_series(dice),
         *_contracted(dice),
@@ -87,120 +87,107 @@ def judging() -> list[System]:
     ]
 
 
-def _even(dice: random.Random, low: float, high: float) -> float:
-    """By chance, all powers of ten alike; three digits."""
-    return float(f"{low * (high / low) ** dice.random():.3g}")
-
-
 def _sound() -> Iterator[System]:
     """Published sets at sound distances."""
-    yield System("LiF, aug-cc-pVDZ", chain(["Li", "F"], 1.56), published("aug-cc-pvdz", "Li", "F"))
-    yield System("phosphine, 6-31++G**", PHOSPHINE, published("6-31++g**", "P", "H"))
-    yield System(
-        "MnH, def2-TZVP", chain(["Mn", "H"], 1.73), published("def2-tzvp", "Mn", "H"), spin=6
-    )
+    yield System("methanol, def2-SVPD", METHANOL, published("def2-svpd", "C", "O", "H"))
+    yield System("NF, aug-cc-pVDZ", chain("NF", 1.32), published("aug-cc-pvdz", "N", "F"), spin=2)
+    yield System("ZnS, def2-TZVP", chain(["Zn", "S"], 2.05), published("def2-tzvp", "Zn", "S"))
 
 
-def _twinned(
-    dice: random.Random,
-    kinds: list[tuple[str, Atoms, str, int, str, int, tuple[float, float]]],
-    cartesian: bool,
-) -> Iterator[System]:
-    for name, atoms, family, spin, symbols, l, (low, high) in kinds:
-        exponent, apart = _even(dice, low, high), _even(dice, 3e-5, 5e-3)
-        base = published(family, *dict.fromkeys(s for s, _ in atoms))
+def _crowded(dice: random.Random) -> Iterator[System]:
+    """Squeezed molecules, heaps, chains and rings, with diffuse functions."""
+
+    def factor(low: float, high: float) -> float:
+        return round(dice.uniform(low, high), 2)
+
+    for symbol, count, family, low, high in (
+        ("H", 7, "aug-cc-pvdz", 0.7, 1.6),
+        ("He", 4, "aug-cc-pvdz", 0.5, 1.2),
+        ("Li", 4, "6-31+g", 1.0, 2.5),
+        ("C", 3, "6-31+g", 0.6, 1.5),
+    ):
+        edge = factor(low, high)
+        atoms = heap(symbol, count, edge, dice.randrange(1000))
+        base = diffuse(published(family, symbol), symbol, 1, 0.4)
+        spin = count % 2 if symbol == "H" else 0
+        yield System(f"heap of {count} {symbol}, a diffuse step, {edge}", atoms, base, spin=spin)
+    for count, low, high in ((5, 0.5, 0.9), (8, 0.65, 1.0)):
+        distance = factor(low, high)
+        atoms = shaken(ring("H" * count, distance), 0.03, dice.randrange(1000))
+        base = diffuse(published("aug-cc-pvdz", "H"), "H", count == 5, 0.4)
+        yield System(f"ring of {count} H, shaken, {distance}", atoms, base, spin=count % 2)
+    distance = factor(0.9, 1.8)
+    base = diffuse(published("6-31+g", "Be"), "Be", 2, 0.45)
+    yield System(f"chain of 4 Be, two steps, {distance}", chain(["Be"] * 4, distance), base)
+    distance = factor(0.9, 1.8)
+    base = diffuse(published("6-31+g", "Na", "F"), "Na F", 1, 0.4)
+    yield System(f"ring Na2F2, a step, {distance}", ring(["Na", "F"] * 2, distance), base)
+    for name, atoms, family, steps, spin, cartesian in (
+        ("methanol", METHANOL, "6-31++g", 2, 0, False),
+        ("N2O", NITROUS, "6-31+g*", 2, 0, True),
+        ("silyl", SILYL, "def2-svpd", 1, 1, False),
+        ("methane", centred("C", "H", 1.09), "aug-cc-pvdz", 1, 0, False),
+        ("ScH", chain(["Sc", "H"], 1.78), "def2-svpd", 2, 0, False),
+    ):
+        times = factor(0.45, 0.95)
+        symbols = " ".join(dict.fromkeys(s for s, _ in atoms))
+        base = diffuse(published(family, *symbols.split()), symbols, steps, 0.4)
+        kind = "Cartesian, " if cartesian else ""
         yield System(
-            f"{name}, {'Cartesian, ' if cartesian else ''}twins {'spdf'[l]} {exponent:g} on "
-            f"{symbols}, {1 + apart:.6g}",
-            atoms,
-            twins(base, symbols, l, exponent, 1.0 + apart),
+            f"{name}, {kind}{family} and {steps} steps, times {times}",
+            squeezed(atoms, times),
+            base,
             spin=spin,
             cartesian=cartesian,
         )
 
 
-def _crowded(dice: random.Random) -> Iterator[System]:
-    """Squeezed molecules and heaps, with diffuse functions."""
-    aug = published("aug-cc-pvdz", "H", "He", "C")
-    for symbol, count, low, high in (("H", 5, 0.6, 1.5), ("H", 6, 0.6, 1.5), ("He", 5, 0.7, 1.6)):
-        edge = round(dice.uniform(low, high), 2)
-        base: Basis = diffuse(aug, symbol, 1, 0.4)
-        name = f"heap of {count} {symbol}, doubly diffuse, {edge}"
-        yield System(
-            name,
-            heap(symbol, count, edge, dice.randrange(1000)),
-            base,
-            spin=count % 2 if symbol == "H" else 0,
-        )
-    for count in (6, 9):
-        distance = round(dice.uniform(0.6, 1.1), 2)
-        atoms = shaken(chain("H" * count, distance), 0.02, dice.randrange(1000))
-        yield System(f"chain of {count} H, shaken, {distance}", atoms, aug, spin=count % 2)
-    for steps in (1, 2):
-        factor = round(dice.uniform(0.4, 0.9), 2)
-        base = diffuse(published("6-31+g", "C", "H"), "C H", steps, 0.4)
-        name = f"ethyne, 6-31+G and {steps} diffuse steps, times {factor}"
-        yield System(name, squeezed(ETHYNE, factor), base)
-    factor = round(dice.uniform(0.45, 0.9), 2)
-    base = diffuse(published("def2-svpd", "C", "H"), "C H", 1, 0.4)
-    name = f"methyl, def2-SVPD and a diffuse step, times {factor}"
-    yield System(name, squeezed(METHYL, factor), base, spin=1)
-    factor = round(dice.uniform(0.45, 0.9), 2)
-    base = diffuse(published("6-31++g*", "C", "F", "H"), "C F", 2, 0.4)
-    name = f"fluoromethane, Cartesian 6-31++G* and two steps, times {factor}"
-    yield System(name, squeezed(FLUOROMETHANE, factor), base, cartesian=True)
-    factor = round(dice.uniform(0.55, 0.95), 2)
-    base = diffuse(published("def2-svpd", "Ti", "H"), "H", 2, 0.4)
-    name = f"TiH4, def2-SVPD and two steps on H, times {factor}"
-    yield System(name, squeezed(centred("Ti", "H", 1.7), factor), base)
-
-
 def _series(dice: random.Random) -> Iterator[System]:
-    """Long even-tempered series on one centre."""
-    for symbol, spin, s, p in (("N", 3, 15, 9), ("Li", 1, 16, 0), ("Mg", 0, 20, 9)):
+    """Long even-tempered series on one centre and on two."""
+    for symbol, count, spin, s, p in (
+        ("O", 1, 2, 14, 9),
+        ("Ar", 1, 0, 18, 12),
+        ("Li", 2, 0, 12, 4),
+    ):
         ratio = round(dice.uniform(1.4, 1.75), 3)
-        shells = [*even(0, s, 20.0 if symbol == "Mg" else 6.0, ratio), *even(1, p, 2.0, ratio)]
-        yield System(
-            f"{symbol}, {s} s and {p} p falling by {ratio}",
-            chain([symbol], 1.0),
-            {symbol: shells},
-            spin=spin,
-        )
+        middle = {"O": 8.0, "Ar": 30.0, "Li": 2.0}[symbol]
+        shells = [*even(0, s, middle, ratio), *even(1, p, 0.3 * middle, ratio)]
+        name = f"{symbol}{count if count > 1 else ''}, {s} s and {p} p falling by {ratio}"
+        yield System(name, chain([symbol] * count, 2.67), {symbol: shells}, spin=spin)
 
 
 def _contracted(dice: random.Random) -> Iterator[System]:
     """Second columns that hardly differ from the first."""
     for name, atoms, symbol, l, spin in (
-        ("methyl", METHYL, "C", 0, 1),
-        ("LiF", chain(["Li", "F"], 1.56), "F", 1, 0),
-        ("BeH2", chain(["H", "Be", "H"], 1.33), "Be", 0, 0),
+        ("NF", chain("NF", 1.32), "N", 1, 2),
+        ("alane", ALANE, "Al", 1, 0),
+        ("BO", chain("BO", 1.2), "O", 0, 1),
     ):
-        shift = _even(dice, 1e-4, 1e-2)
+        shift = chance(dice, 1e-4, 1e-2)
         base = doubled(published("cc-pvdz", *dict.fromkeys(s for s, _ in atoms)), symbol, l, shift)
         text = f"{name}, doubled {'sp'[l]} contraction of {symbol}, {shift:g}"
         yield System(text, atoms, base, spin=spin)
 
 
 def _mixed(dice: random.Random) -> Iterator[System]:
-    """Different sets on the atoms, and empty centres."""
-    for symbol, near in (("N", AMINO), ("Li", chain(["Li", "F"], 1.56))):
-        distance = _even(dice, 0.02, 0.5)
-        base = published("def2-svp", *dict.fromkeys(s for s, _ in near))
+    """Empty centres, and different sets on the atoms."""
+    for name, near, symbol in (
+        ("hydrogen fluoride dimer", DIMER, "F"),
+        ("BO", chain("BO", 1.2), "B"),
+    ):
+        distance = chance(dice, 0.01, 0.4)
+        base = published("6-31+g*", *dict.fromkeys(s for s, _ in near))
         base[f"X-{symbol}"] = base[symbol]
-        atoms = [*near, (f"X-{symbol}", (distance, 0.0, 0.0))]
-        name = f"{'amino' if symbol == 'N' else 'LiF'}, empty centre {distance:g} from {symbol}"
-        yield System(name, atoms, base, spin=int(symbol == "N"))
-    factor = round(dice.uniform(0.4, 0.9), 2)
-    base = diffuse(published(H="aug-cc-pvtz", C="6-31+g*"), "C", 2, 0.4)
-    yield System(
-        f"ethyne, aug-cc-pVTZ on H, 6-31+G* and two steps on C, times {factor}",
-        squeezed(ETHYNE, factor),
-        base,
-    )
-    factor = round(dice.uniform(0.5, 1.0), 2)
-    base = diffuse(published(Cu="def2-svp", Cl="aug-cc-pvdz"), "Cu Cl", 1, 0.4)
-    yield System(
-        f"CuCl, def2-SVP on Cu, aug-cc-pVDZ on Cl, a step, times {factor}",
-        chain(["Cu", "Cl"], factor * 2.05),
-        base,
-    )
+        x, y, z = next(place for s, place in near if s == symbol)
+        atoms = [*near, (f"X-{symbol}", (x + distance, y, z))]
+        yield System(
+            f"{name}, empty centre {distance:g} from {symbol}", atoms, base, spin=int(name == "BO")
+        )
+    exponent, apart = chance(dice, 0.05, 1.0), chance(dice, 3e-5, 5e-3)
+    base = twins(published(Zn="def2-svp", S="aug-cc-pvdz"), "S", 1, exponent, 1.0 + apart)
+    name = f"ZnS, def2-SVP on Zn, aug-cc-pVDZ on S, twins p {exponent:g}, {1.0 + apart:.6g}"
+    yield System(name, chain(["Zn", "S"], 2.05), base)
+    times = round(dice.uniform(0.45, 0.95), 2)
+    base = diffuse(published(C="cc-pvtz", O="6-31+g", H="aug-cc-pvdz"), "O H", 1, 0.4)
+    name = f"methanol, three sets and a diffuse step, times {times}"
+    yield System(name, squeezed(METHANOL, times), base)

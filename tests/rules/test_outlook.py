@@ -63,13 +63,13 @@ def test_large_matrices_are_judged_without_all_eigenvalues(monkeypatch: pytest.M
     assert "on one centre" in found.reason
 
 
-def three(gap: float, middle: float = -0.5) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+def three(gap: float) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """S, T and F of a function at -1 hartree, and of two twins whose difference couples to it."""
     s = np.eye(3)
     s[1:, 1:] = pair(gap)
     turn = np.array([[1.0, 0, 0], [0, 1, 1], [0, -1, 1]]) / np.sqrt([[1.0], [2.0], [2.0]])
     half = np.sqrt([[1.0], [2.0 - gap], [gap]]) * turn  # S = half' half
-    inside = np.array([[-1.0, 0.0, 0.004], [0.0, middle, 0.0], [0.004, 0.0, 3.0]])
+    inside = np.array([[-1.0, 0.0, 0.004], [0.0, -0.5, 0.0], [0.004, 0.0, 3.0]])
     return s, half.T @ np.diag([1.0, 2.0, 4.0]) @ half, half.T @ inside @ half
 
 
@@ -82,30 +82,21 @@ EPS = np.finfo(float).eps
 
 
 @pytest.mark.parametrize("gap", [2e-8, 3e-9, 4e-10, 1e-10])
-@pytest.mark.parametrize(("atoms", "factor"), [((0, 1, 1), 1.0), ((0, 0, 1), 10.0)])
+@pytest.mark.parametrize(("atoms", "factor"), [((0, 1, 1), 1.0), ((0, 0, 1), 5.0)])
 def test_noise_follows_the_formulas(gap: float, atoms: tuple[int, ...], factor: float) -> None:
     # Below 1e-9 the electrons held are those of perturbation, the same here to a part in 1e4.
     s, t, fock = three(gap)
     found = outlook(s, t, on(*atoms), field=Field((fock, fock), (1, 1)))
     held = 2.0 * (0.004 / 4.0) ** 2  # in a level 4 hartree above
-    scale = EPS * np.sqrt(4.0 / 0.5)  # the gap is 0.5 hartree
-    gradient = np.sqrt(factor) * scale * held**1.5 / gap**2
+    scale = factor * EPS * np.sqrt(4.0)
+    gradient = scale * held**1.5 / gap**2
     if gradient > 1e-4:
         assert found.level == "fails"
         assert found.measure == pytest.approx(gradient, rel=1e-3)
     else:
-        energy = factor * scale * (held / gap) ** 2
-        assert found.level == ("strained" if energy > 2e-8 else "safe")
+        energy = scale * (held / gap) ** 2
+        assert found.level == ("strained" if energy > 1.5e-8 else "safe")
         assert found.measure == pytest.approx(energy, rel=1e-3)
-
-
-@pytest.mark.parametrize("gap", [4e-9, 3e-10])
-def test_a_small_gap_between_levels_brings_more_noise(gap: float) -> None:
-    wide, narrow = (
-        outlook(s, t, on(0, 1, 1), field=Field((f, f), (1, 1)))
-        for s, t, f in (three(gap), three(gap, -0.9))
-    )
-    assert narrow.measure == pytest.approx(wide.measure * np.sqrt(0.5 / 0.1), rel=1e-3)
 
 
 def test_the_field_of_the_electron_gas_is_held_to_stricter_limits() -> None:
