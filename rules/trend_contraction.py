@@ -15,7 +15,7 @@ from overlapse.rules.slips import likeliest
 
 @rule("contraction.trend")
 def coefficients(
-    case: Case, *, surprise: float = 6.0, overlap: float = 9.0, loud: float = 12.0
+    case: Case, *, surprise: float = 7.0, overlap: float = 12.0, loud: float = 12.0
 ) -> Iterator[Finding]:
     """Suspect: a coefficient falls out of the progression of its row of the periodic table.
 

@@ -48,6 +48,8 @@ def predictions(
     companions: Sequence[tuple[Floats, float]],
     finest: float | Floats,
     stiffness: float,
+    *,
+    alike: bool = True,
 ) -> Predictions:
     """Compare each value with what the other elements suggest.
 
@@ -55,6 +57,7 @@ def predictions(
     companions: tables of the same shape (NaN in columns that have no companion), each with the
     slope that is taken for granted until the elements tell otherwise.  finest: scatter below which
     nothing is believed, for all places or shape (places,).  stiffness: how much is needed to tell.
+    alike: whether the places are of one kind, so that the scatter of one tells about the others'.
     """
     count = len(numbers)
     tables = np.array([np.zeros_like(values), *(table for table, _ in companions)])
@@ -81,8 +84,10 @@ def predictions(
     without = np.maximum(total - error * departure, 0.0) / degrees
     ranked = np.sort(without, axis=2)
     middle = ranked[:, :, count // 2]
-    usual = _usual(middle, ranked[:, :, 0], usable)
-    prior = np.maximum(usual[:, :, None, None], np.minimum(without, middle[:, :, None]))
+    prior = np.minimum(without, middle[:, :, None])
+    if alike:
+        usual = _usual(middle, ranked[:, :, 0], usable)
+        prior = np.maximum(usual[:, :, None, None], prior)
     variance = (_PRIOR * prior + degrees * without) / (_PRIOR + degrees) + finest**2
     shape = (-1, *values.shape)
     weight = (usable[:, :, None, :] * left / variance).reshape(shape)

@@ -239,9 +239,13 @@ def _legendre(count: int, order: int) -> tuple[Floats, Floats]:
     return hat, 1.0 - np.diagonal(hat)
 
 
+def _order(count: int) -> int:
+    return 3 if count > 5 else 2
+
+
 def _own(logs: Floats) -> Floats:
     """Departure of each from the polynomial through the others of its ladder."""
-    hat, free = _legendre(len(logs), 3 if len(logs) > 5 else 2)
+    hat, free = _legendre(len(logs), _order(len(logs)))
     return np.asarray((logs - hat @ logs) / free)
 
 
@@ -256,7 +260,9 @@ def _by_itself(ladder: Ladder) -> Iterator[Step]:
             continue
         departure = _own(logs)
         limit = _LEGENDRE[len(logs) > 6]
-        at = int(np.abs(departure).argmax())
+        # At an end little is left of a residual: it is the residuals in their own scale that tell.
+        free = _legendre(len(logs), _order(len(logs)))[1]
+        at = int((np.abs(departure) * np.sqrt(free)).argmax())
         mended = logs.copy()
         mended[at] -= departure[at]
         if abs(departure[at]) > limit and np.abs(_own(mended)).max() < 0.5 * limit:

@@ -25,7 +25,7 @@ from overlapse.rules.rowwise.rows import STRETCHES, stretch
 
 # Printed digits and rounding leave this much in an overlap.
 _FINEST = 2e-5
-_REST, _REST_SHARE = 3.0, 0.15
+_REST, _REST_SHARE = 2.0, 0.04
 _LEAST_CHANGE = 0.008
 # The norm of a single contraction is explained by any of its numbers, so it must be odder by this.
 _SINGLE = 2.5
@@ -108,7 +108,7 @@ def _of_group(
     values = np.array([member.overlap[upper] for member in members])
     if not np.isfinite(values).all():
         return
-    told = predictions(numbers, values, [], _FINEST, 1e-9)
+    told = predictions(numbers, values, [], _FINEST, 1e-9, alike=False)
     limit = least * (_SINGLE if len(reference) == 1 else 1.0)
     for at in np.flatnonzero(told.surprise.max(axis=1) >= limit).tolist():
         if (odd := _explained(members[at], told, at, upper, len(numbers) - 1)) is not None:

@@ -17,7 +17,7 @@ from overlapse.rules.physics.prediction import FEWEST
 from overlapse.rules.rowwise.rows import STRETCHES, nearest, stretch
 
 # Coefficients smaller than this part of the largest have signs by chance.
-_SMALL = 0.003
+_SMALL = 0.01
 # How far ln|c| may lie from what the rows beside it suggest; larger, it is another number.
 _ALIKE = 0.7
 
