@@ -31,7 +31,7 @@ def number_finding(case: Case, ensemble: Ensemble, verdict: Verdict, clear: floa
         f"{verdict.significance:.0f} standard errors from {against}"
     ]
     others = _others(case, ensemble, atom, number, verdict.value)
-    witnesses += others + _costly(case, atom)
+    witnesses += others + _of_block(case, atom.block)
     if slip is not None:
         witnesses.append(f"slip: {slip.told} in {slip.word} gives {word}")
     is_far = abs(verdict.change) >= _SMALL
@@ -69,6 +69,7 @@ def puzzle_finding(case: Case, verdict: Verdict) -> Finding:
         (
             f"stationarity: the gradient is {verdict.before**0.5:.0f} standard errors from what is "
             f"usual in the set, {verdict.after**0.5:.0f} with that number",
+            *_of_block(case, atom.block),
         ),
     )
 
@@ -80,7 +81,7 @@ def column_finding(case: Case, ensemble: Ensemble, stray: Stray, clear: float) -
         f"orbital: {stray.times:.0f} times the departure of its neighbours from the atom's orbital"
     ]
     others = _others(case, ensemble, stray.atom, stray.number, stray.value)
-    witnesses += others + _costly(case, stray.atom)
+    witnesses += others + _of_block(case, stray.atom.block)
     if slip is not None:
         witnesses.append(f"slip: {slip.told} in {slip.word} gives {word}")
     agreed = bool(others) or (slip is not None and slip.told in TELLING)
@@ -114,6 +115,7 @@ def charge_finding(case: Case, atom: Atom, charge: int) -> Finding:
         witnesses=(
             f"virial: the energy would be least with all exponents times "
             f"{(atom.scaling or 1.0) ** 2:.4f}",
+            *_of_block(case, block),
         ),
         remedy="compare the block with those of its neighbours and with the original publication",
     )
@@ -153,6 +155,7 @@ _BESIDE = {
     "primitive": "other primitives",
     "contraction": "other contractions",
     "drift": "another file",
+    "label.contains": "a related set",
 }
 
 
@@ -164,7 +167,7 @@ def _found(case: Case, block: Block, number: Number, printed: float, value: floa
     place = case.document.source.place(cells.span(number.row, number.column)[0])
     told = []
     for finding in (f for found in case.found.values() for f in found):
-        what = _BESIDE.get(finding.rule.partition(".")[0])
+        what = _BESIDE.get(finding.rule) or _BESIDE.get(finding.rule.partition(".")[0])
         if what is None or (finding.line, finding.column) != (place.line, place.column):
             continue
         expected = finding.expected
@@ -175,12 +178,24 @@ def _found(case: Case, block: Block, number: Number, printed: float, value: floa
     return told
 
 
-def _costly(case: Case, atom: Atom) -> list[str]:
-    """What `energy.loss` says of the atom: no witness by itself, as it is the same energy."""
+# Rules about whole blocks, by what they are called as witnesses.
+_WHOLE = {
+    "energy.loss": "energy loss",
+    "label.composition": "counts",
+    "label.split": "counts",
+    "label.family": "counts",
+    "shell.neighbour": "charge",
+}
+
+
+def _of_block(case: Case, block: Block) -> list[str]:
+    """What is said of the block as a whole; it does not single out a number, so it only adds."""
     return [
-        f"energy loss: {finding.message.removeprefix('suspect: ')}"
-        for finding in case.found.get("energy.loss", ())
-        if finding.line == atom.block.line
+        f"{what}: {finding.message.removeprefix('suspect: ')}"
+        for rule, what in _WHOLE.items()
+        for finding in case.found.get(rule, ())
+        if finding.element == block.symbol
+        and any(finding.line in (block.line, shell.line) for shell in block.shells)
     ]
 
 

@@ -153,6 +153,18 @@ def test_witnesses_that_agree_make_a_warning() -> None:
     assert {"stationarity", "norm", "other contractions"} <= kinds
 
 
+def test_what_is_said_of_the_block_is_a_witness_too() -> None:
+    # A lost row makes the atom look like one of another charge, and shows in the counts.
+    text = cut("def2-svp", tuple(SECOND_ROW))
+    lost = block_of(text, "O").shells[0].place(2).line
+    lines = text.split("\n")
+    document = read_text("\n".join(lines[: lost - 1] + lines[lost:]), "def2-SVP.dat")
+    audit = judge(document, settings=Settings(), energies=True)
+    told = [f for f in audit.findings if f.rule == "energy.stationary" and f.element == "O"]
+    kinds = {witness.partition(":")[0] for finding in told for witness in finding.witnesses}
+    assert kinds == {"virial", "counts"}
+
+
 def test_exchanged_digits_give_the_very_number_back() -> None:
     text = cut("def2-svp", tuple(SECOND_ROW))
     shell = block_of(text, "O").shells[0]
