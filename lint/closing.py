@@ -1,4 +1,4 @@
-"""What stands below a report for people: what was not looked for, and what to do next."""
+"""What stands below a report for people: why something counts as new, and what to do next."""
 
 import shlex
 from collections import Counter
@@ -35,16 +35,18 @@ class Shown:
 
 
 def closing(
-    shown: Shown, paths: Sequence[Path], ledgers: Iterable[Ledger], energies: bool, columns: int
+    shown: Shown, paths: Sequence[Path], ledgers: Iterable[Ledger], columns: int
 ) -> Iterator[str]:
     """The lines, none where there is nothing to say.
 
-    paths: what was audited.  ledgers: those that were used.  energies: whether the atoms were
-    computed.
+    paths: what was audited.  ledgers: those that were used.
     """
-    for ledger in ledgers:
-        if not ledger.energies:
-            yield from _wrapped(_of_energies(ledger, energies, shown), "", columns)
+    if any(rule.startswith("energy.") for rule in shown.rules):
+        for ledger in ledgers:
+            if not ledger.energies:
+                name = one_line(shown_path(ledger.path))
+                told = f"{name} was written without energies, so what energy.* found counts as new"
+                yield from _wrapped(told, columns)
     if not shown.rules:
         return
     yield "to go on:"
@@ -61,26 +63,17 @@ def closing(
         yield line if len(line) <= columns else f"  {step}"
 
 
-def _of_energies(ledger: Ledger, energies: bool, shown: Shown) -> str:
-    name = one_line(shown_path(ledger.path))
-    if not energies:
-        return (
-            f"atoms were not computed, as they were not when {name} was written; --energies "
-            "computes them"
-        )
-    found = any(rule.startswith("energy.") for rule in shown.rules)
-    told = "; so what energy.* found counts as new" if found else ""
-    return f"{name} was written without computing the atoms{told}"
-
-
 def _words(paths: Sequence[Path]) -> str:
     """The paths as a shell takes them; where they are many or odd, a word for them."""
-    words = " ".join(shlex.quote(str(path)) for path in paths)
+    names = [str(path) for path in paths]
+    # A name that looks like an option comes after a sign that none follows.
+    odd = any(name.startswith("-") and name != "-" for name in names)
+    words = shlex.join(["--", *names] if odd else names)
     return words if len(words) <= _LONGEST and words.isprintable() else "PATHS"
 
 
-def _wrapped(text: str, indent: str, columns: int) -> list[str]:
-    return fill(
-        text, columns, initial_indent=indent, subsequent_indent=indent + "  ",
-        break_long_words=False, break_on_hyphens=False,
-    ).split("\n")  # fmt: skip
+def _wrapped(text: str, columns: int) -> list[str]:
+    told = fill(
+        text, columns, subsequent_indent="  ", break_long_words=False, break_on_hyphens=False
+    )
+    return told.split("\n")

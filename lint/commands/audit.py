@@ -161,7 +161,7 @@ def audit(
             _record(stream(), ledger, energies, tally)
         else:
             shown = _sifted(stream(), sieve, fail_at, least, quiet, tally)
-            below = None if quiet or recognised_only else _Below(paths, sieve, energies)
+            below = None if quiet or recognised_only else _Below(paths, sieve)
             _write(shown, report, out, size > SERIAL_BYTES, quiet, below, tally)
     _tell_of_plugins()
     sys.exit(tally.status)
@@ -172,7 +172,6 @@ class _Below(NamedTuple):
 
     paths: Sequence[Path]
     sieve: "Sieve | None"
-    energies: bool
 
 
 def _write(
@@ -205,7 +204,7 @@ def _write(
         writer(report)(passing, written, out is None and coloured(written))
         if below is not None and report == "text":
             ledgers = below.sieve.ledgers if below.sieve is not None else ()
-            lines = closing(shown, below.paths, ledgers, below.energies, width(written))
+            lines = closing(shown, below.paths, ledgers, width(written))
             written.writelines(f"{line}\n" for line in lines)
 
 
@@ -281,7 +280,7 @@ def _record(
             f"{files} file{'s' * (files != 1)}; from now on only new ones count"
         )
     if not energies and ledgers:
-        click.echo("atoms were not computed, nor will later audits unless asked: see --energies")
+        click.echo("without energies, which later audits leave out as well unless --energies asks")
 
 
 def _tell_of_plugins() -> None:
