@@ -1,10 +1,13 @@
 """Slips of the pen and the keyboard that make one number of another."""
 
+import re
 from collections.abc import Iterable, Iterator
 from itertools import pairwise
 from typing import NamedTuple
 
 from overlapse.grammar.numbers import FORTRAN, NUMBER
+
+_PADDED = re.compile(r"[-+]?0\d")  # a zero before other digits, which nobody prints
 
 
 class Slip(NamedTuple):
@@ -20,7 +23,10 @@ def slips(word: str) -> Iterator[Slip]:
     if not NUMBER.fullmatch(word):
         return
     seen = {word}
+    is_padded = bool(_PADDED.match(word))
     for changed, told in _changes(word):
+        if _PADDED.match(changed) and not is_padded:
+            continue
         if changed not in seen and NUMBER.fullmatch(changed):
             seen.add(changed)
             value = float(changed.translate(FORTRAN))

@@ -142,17 +142,20 @@ class LeftOut(NamedTuple):
 def left_out(norm: Norm) -> LeftOut | None:
     """The lone primitive that restores the norm of a contraction, where one is near enough.
 
-    It follows on the loosest exponent of the contraction, in steps like those inside it, and its
-    coefficient is no larger than the largest.
+    It follows on the loosest exponent of the contraction, in steps like those inside it and with no
+    other primitive of the block between, and its coefficient is no larger than the largest.
     """
     function = norm.function
     loosest = float(function.exponents.min())
     ratio = (float(function.exponents.max()) / loosest) ** (1.0 / (len(function.exponents) - 1))
-    for index, other in norm.block.functions_of(function.l):
+    others = list(norm.block.functions_of(function.l))
+    looser = (float(a) for _, other in others for a in other.exponents if a < loosest)
+    following = max(looser, default=0.0)
+    for index, other in others:
         if len(other.exponents) > 1 or norm.overlap >= 1.0:
             continue
         exponent = float(other.exponents[0])
-        if not loosest / (ratio * ratio) < exponent < loosest:
+        if exponent != following or exponent < loosest / (ratio * ratio):
             continue
         lone = np.array([exponent])
         half = float((primitive_overlap(lone, function.exponents, function.l)

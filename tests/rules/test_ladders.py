@@ -125,6 +125,10 @@ def test_the_primitive_that_a_segmented_form_leaves_out() -> None:
     # A primitive far away, or none, is no explanation.
     far = Block(1, (HYDROGEN.shells[0], Shell((0,), [0.002], [[1.0]])))
     assert left_out(norms_of(BasisSet((far,)))[0]) is None
+    # Nor is one beyond a shell that lies between.
+    between = Shell((0,), [0.3, 0.15], [[0.5], [0.6]])
+    beyond = Block(1, (HYDROGEN.shells[0], between, HYDROGEN.shells[1]))
+    assert left_out(norms_of(BasisSet((beyond,)))[0]) is None
 
 
 def test_a_contraction_that_is_normalised_vouches_for_its_numbers() -> None:

@@ -71,3 +71,6 @@ def test_a_slip_is_recognised(wrong: str, meant: str, what: str) -> None:
 def test_no_slip_where_none_fits_and_none_of_a_word() -> None:
     assert likeliest("7.0", 1.9, 2.1, 2.0) is None
     assert not list(slips("nan"))
+    # Nobody prints a zero before other digits, unless the word is printed so already.
+    assert "0347.5" not in {slip.word for slip in slips("3047.5")}
+    assert "0034.5" in {slip.word for slip in slips("0043.5")}
