@@ -105,12 +105,16 @@ class Grid:
 
 
 class Potentials:
-    """Potentials of many densities on one grid."""
+    """Potentials of many densities on one grid.
 
-    def __init__(self, grid: Grid) -> None:
+    matters: the points, shape (p,), where all of a potential is wanted; elsewhere it lacks what
+    comes from other atoms.  That part is worked out in single precision.
+    """
+
+    def __init__(self, grid: Grid, matters: npt.NDArray[np.bool_]) -> None:
         self.grid = grid
         self._harmonics = np.concatenate(solid_harmonics(sphere(DEGREE)[0], TOP))
-        self._seen = [_seen(grid, centre) for centre in range(len(grid.positions))]
+        self._seen = [_seen(grid, centre, matters) for centre in range(len(grid.positions))]
 
     def __call__(self, densities: Floats) -> Floats:
         """Potentials, hartree, of densities (bohr**-3) at the points, both of shape (q, p)."""
@@ -129,8 +133,8 @@ class Potentials:
             )
             own = slice(centre * grid.each, (centre + 1) * grid.each)
             found[:, own] += (radial.transpose(0, 2, 1) @ self._harmonics).reshape(count, -1)
-            fine = radial @ _finer().T
-            outside = np.empty((count, len(seen.points)))
+            fine = (radial @ _finer().T).astype(np.float32)
+            outside = np.empty((count, len(seen.points)), dtype=np.float32)
             for step, (first, last) in zip(seen.steps, pairwise(seen.bounds), strict=True):
                 ends = np.concatenate([fine[:, :, step], fine[:, :, step + 1]], axis=1)
                 outside[:, first:last] = ends @ seen.table[:, first:last]
@@ -149,11 +153,11 @@ class _Seen(NamedTuple):
     points: npt.NDArray[np.intp]
     steps: list[int]
     bounds: list[int]
-    table: Floats
+    table: npt.NDArray[np.float32]
 
 
-def _seen(grid: Grid, centre: int) -> _Seen:
-    outside = np.ones(len(grid.points), dtype=bool)
+def _seen(grid: Grid, centre: int, matters: npt.NDArray[np.bool_]) -> _Seen:
+    outside = matters.copy()
     outside[centre * grid.each : (centre + 1) * grid.each] = False
     points = np.flatnonzero(outside)
     distance = np.maximum(grid.distances[centre][points], 1e-9)
@@ -172,7 +176,7 @@ def _seen(grid: Grid, centre: int) -> _Seen:
         points,
         held.tolist(),
         [*begins.tolist(), len(points)],
-        np.concatenate([harmonics * (1.0 - upper), harmonics * upper]),
+        np.concatenate([harmonics * (1.0 - upper), harmonics * upper]).astype(np.float32),
     )
 
 

@@ -27,8 +27,10 @@ from overlapse.rules.physics.superposed import in_order, superposed_field
 
 KEPT = 1e-6  # eigenvalue of S from which a direction takes part in the orbitals
 ENOUGH, CYCLES = 1e-3, 12  # largest element of the gradient, hartree; iterations at most
+NEGLIGIBLE = 1e-12  # weight of a point times the largest squared value of a function there
 HELD = 6  # matrices that are extrapolated from
 MOST_VALUES, MOST_WORK = 3e7, 1.5e10  # numbers held (240 MB), multiplications of a cycle
+MOST_PAIRED = 8e9  # multiplications of a cycle for the potentials of pairs
 
 
 class Field(NamedTuple):
@@ -58,7 +60,7 @@ def affordable(atoms: Sequence[Placed], size: int) -> bool:
 def _exchange_affordable(atoms: int, electrons: tuple[int, int]) -> bool:
     table = float(atoms * points_of(atoms) * 2 * (TOP + 1) ** 2)
     pairs = sum(n * (n + 1) / 2 for n in set(electrons))
-    return table <= MOST_VALUES and table * pairs <= MOST_WORK
+    return table <= MOST_VALUES and table * pairs <= MOST_PAIRED
 
 
 def molecular_field(
@@ -86,7 +88,7 @@ def molecular_field(
         return start
     occupied = [x @ start.orbitals(s, x, kinetic)[1][:, :n] for s, n in enumerate(electrons)]
     bare = kinetic + (values * (grid.weights * grid.attraction(nuclei))) @ values.T
-    potentials = Potentials(grid)
+    potentials = Potentials(grid, (values**2).max(axis=0) * grid.weights > NEGLIGIBLE)
     seen: list[tuple[tuple[Floats, Floats], Floats]] = []
     for _ in range(CYCLES):
         focks = _focks(bare, values, potentials, occupied)

@@ -64,7 +64,7 @@ def test_potentials_of_pairs_give_repulsion_and_exchange() -> None:
     phi = values[s]
     left, right = np.triu_indices(len(s))
     pairs = phi[left] * phi[right]
-    found = (pairs * grid.weights) @ Potentials(grid)(pairs).T
+    found = (pairs * grid.weights) @ Potentials(grid, np.ones(len(grid.points), dtype=bool))(pairs).T
     all_four = mole.intor("int2e")[np.ix_(s, s, s, s)]
     expected = all_four[left, right][:, left, right]
     assert found == pytest.approx(expected, rel=0.02, abs=0.01)
