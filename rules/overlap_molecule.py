@@ -119,7 +119,10 @@ def outlook(case: Case) -> Iterator[Finding]:
     eigenvalue comes near the rounding of the integrals, the field is decided by noise: it takes
     more cycles, or converges to a wrong energy, or runs away by thousands of hartree.
 
-    Formula: `overlapse.rules.physics.outlook` holds the measure and its limits.
+    Formula: noise of energy and gradient, eps sqrt(T) (p / lambda)**2 and eps sqrt(T) p**(3/2) /
+    lambda**2 for a combination of eigenvalue lambda and kinetic energy T that holds p electrons in
+    a rough Hartree-Fock field; strained above 1.5e-8 hartree of the first, failing above 1e-4 of
+    the second (`overlapse.rules.physics.outlook`).
 
     Source: calibrated on fields of small systems, computed without and with removal; see
     tests/bench/.

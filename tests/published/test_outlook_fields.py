@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 
 from overlapse.grammar.model import Block, Shell
+from overlapse.rules.physics import outlook
 from overlapse.rules.physics.grid import Grid, Potentials
 from overlapse.rules.physics.integrals import kinetic, overlap
 from overlapse.rules.physics.molecule import molecular_field
@@ -64,7 +65,9 @@ def test_potentials_of_pairs_give_repulsion_and_exchange() -> None:
     phi = values[s]
     left, right = np.triu_indices(len(s))
     pairs = phi[left] * phi[right]
-    found = (pairs * grid.weights) @ Potentials(grid, np.ones(len(grid.points), dtype=bool))(pairs).T
+    found = (pairs * grid.weights) @ Potentials(grid, np.ones(len(grid.points), dtype=bool))(
+        pairs
+    ).T
     all_four = mole.intor("int2e")[np.ix_(s, s, s, s)]
     expected = all_four[left, right][:, left, right]
     assert found == pytest.approx(expected, rel=0.02, abs=0.01)
@@ -142,3 +145,29 @@ def test_clear_cases_meet_what_is_foretold(name: str) -> None:
     # -112.65 hartree is what PySCF gives with removal; twins of 4e3 are worth some 4e-3 more.
     arrived = bool(field.converged) and abs(field.e_tot + 112.65) < 0.02
     assert arrived == (level == "safe")
+
+
+@pytest.mark.parametrize(
+    ("symbols", "apart", "family", "exponent", "ratio"),
+    [("Li H", 1.6, "def2-svp", 0.02, 1.02), ("C O", 1.13, "cc-pvdz", 0.3, 1.25)],
+)
+def test_vanishing_combinations_hold_what_they_hold_in_hartree_fock(
+    symbols: str, apart: float, family: str, exponent: float, ratio: float
+) -> None:
+    one, two = symbols.split()
+    atoms = [(one, 0.0), (two, apart)]
+    sets = {s: [*gto.basis.load(family, s), *twins(exponent, ratio)] for s in (one, two)}
+    ours = placed(atoms, sets)
+    s, t = overlap(ours), kinetic(ours)
+    count = sum(gto.charge(symbol) for symbol in (one, two)) // 2
+    field = molecular_field(ours, [gto.charge(one), gto.charge(two)], s, t, (count, count))
+    seen = outlook._seen(s, t, lay_out(ours), field)
+    exact = plain(atoms, sets)
+    theirs = exact.get_ovlp()
+    values, vectors = np.linalg.eigh(theirs)
+    combination = vectors[:, 0] / np.sqrt(values[0])
+    shares = (combination @ theirs @ exact.mo_coeff[:, :count]) ** 2
+    assert values[0] < 1e-7
+    # A factor of two; the electron gas has ten times as many in the diffuse ones of LiH.
+    assert seen.held[0] == pytest.approx(2.0 * shares.sum(), rel=1.0)
+    assert seen.held[0] > shares.sum()
