@@ -24,6 +24,10 @@ to about 1e-9 hartree and for gradients to about its root, 3e-5, so noise begins
 The powers of p, lambda and T are those of the formulas (a free fit gives 1.0 and 0.76 in place of
 1 and 3/4); k and the two limits were chosen on some 290 fields.
 
+On 56 systems that took no part the class was right for 89 %: for every "safe" and every "fails",
+and for half of the "strained", which lie between.  No failure was called safe, there or in the
+choice.
+
 An eigenvalue below 1e-10 that is felt by no orbital, by the symmetry of the molecule as a rule, is
 called strained all the same: a slight distortion or another filling of the levels undoes that.  One
 within rounding of zero always fails.
