@@ -20,6 +20,8 @@ Printed: a table, and counts of
 - strict agreement: the outlook is what happened;
 - agreement: where two or three of four hosts fail they disagree among themselves on whether the
   field fails or is strained, and either outlook is right;
+- failing or not: whether "fails" was foretold where, and only where, the plainest host (the
+  generalised eigenvalue problem as it stands) fails, which is what one program alone would show;
 - failures called safe: any host failed.
 
 The same is counted for the field of the electron gas, which is what large molecules get, and for
@@ -120,6 +122,7 @@ def counts(rows: list[Row], say: Callable[[Row], Level]) -> dict[str, int]:
     return {
         "strict agreement": sum(say(r) == r.happened for r in rows),
         "agreement": sum(say(r) in r.right for r in rows),
+        "failing or not": sum((say(r) == "fails") == r.truth.failures["general"] for r in rows),
         "failures called safe": sum(
             say(r) == "safe" and any(r.truth.failures.values()) for r in rows
         ),
@@ -183,7 +186,7 @@ def report(title: str, rows: list[Row]) -> str:
         ),
     )
     tallies = [(name, counts(sound, say)) for name, say in methods]
-    text += ["", "| judged by | " + " | ".join(tallies[0][1]) + " |", "|---" * 5 + "|"]
+    text += ["", "| judged by | " + " | ".join(tallies[0][1]) + " |", "|---" * 6 + "|"]
     for name, found in tallies:
         cells = [f"{v} ({100 * v / len(sound):.1f} %)" for v in found.values()]
         text.append(f"| {name} | " + " | ".join(cells) + " |")
