@@ -8,8 +8,11 @@ from overlapse.rules.registry import Rule
 
 _ACCEPT = (
     "a comment in the file that says overlapse: accept {name} for C s-1 because REASON; the place "
-    "may be a shell (C s-1), elements (C; C, N; Sc-Zn) or this file"
+    "may be a shell (C s-1), elements (C; C, N; Sc-Zn) or this file. Or, for files by their paths, "
+    "[[accept]] in the settings"
 )
+_MEND = "overlapse mend FILE shows what would change, and changes no number"
+_MEND_ALSO = "overlapse mend --also {name} FILE shows what would change"
 
 
 def page(rule: Rule, width: int) -> str:
@@ -89,10 +92,20 @@ def _facts(rule: Rule) -> Iterator[tuple[str, str]]:
         ("Values", values),
         ("Source", text.source),
         ("Remedy", text.remedy),
+        ("To mend it", _mend(rule.name)),
         ("To accept it", _ACCEPT.format(name=rule.name)),
     ):
         if words:
             yield name, words
+
+
+def _mend(name: str) -> str:
+    """How a rule's findings are mended, "" for those that only a person can mend."""
+    from overlapse.lint.mending import NUMERIC, SAFE
+
+    if name in SAFE:
+        return _MEND
+    return _MEND_ALSO.format(name=name) if name in NUMERIC else ""
 
 
 def _samples(rule: Rule) -> Iterator[tuple[str, str]]:

@@ -140,7 +140,8 @@ def acceptance(case: Case) -> Iterator[Finding]:
     A comment "overlapse: accept RULE for PLACE because REASON" takes findings of the named rule at
     that place out of the count; reports still list them, with the reason. One that is misspelt does
     nothing, while its author believes it does. One that fits no finding hides the next slip at that
-    place, which would then be taken for the accepted one.
+    place, which would then be taken for the accepted one. The same is said of an acceptance in the
+    settings, in audits of all files that it is for.
 
     Source: none is needed.
 

@@ -128,3 +128,13 @@ def test_every_command_tells_what_it_does_and_shows_examples() -> None:
         assert status == 0
         assert re.search(r"Examples?[^\n]*:\n\s+overlapse " + name, told), name
         assert max(map(len, told.split("\n"))) <= 90
+
+
+def test_a_page_says_how_to_mend_and_how_to_accept() -> None:
+    told = {name: page(rule, 1000) for name, rule in rules().items()}
+    assert "To mend it: overlapse mend FILE " in told["form.number"]
+    assert "To mend it: overlapse mend --also contraction.norm FILE " in told["contraction.norm"]
+    assert "To mend it" not in told["primitive.trend"]
+    for name, text in told.items():
+        assert f"overlapse: accept {name} for" in text
+        assert "[[accept]] in the settings" in text
