@@ -9,15 +9,16 @@ from overlapse.lint import tree
 from overlapse.lint.choices import Shelf
 from overlapse.lint.engine import FileAudit
 
+_SUFFIXES = (".xyz", ".extxyz")
+
 
 def geometry_files(paths: Iterable[Path]) -> Iterator[Path]:
     """Files named, and in named folders the XYZ files, by name."""
     for path in paths:
-        if not path.is_dir():
+        if not tree.is_folder(path):
             yield path
             continue
-        inside = sorted(entry for entry in path.rglob("*") if entry.is_file())
-        yield from (e for e in inside if e.suffix.lower() in (".xyz", ".extxyz"))
+        yield from (file for file in tree.below(path) if file.suffix.lower() in _SUFFIXES)
 
 
 def read_all(

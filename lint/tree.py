@@ -101,3 +101,11 @@ def is_special(path: Name) -> bool:
 def is_folder(path: Name) -> bool:
     """Whether there is a folder of this name."""
     return os.path.isdir(path) if _stage is None else _stage.is_folder(path)
+
+
+def below(folder: Name) -> Iterator[Path]:
+    """The regular files in a folder and in those in it, sorted."""
+    if _stage is not None:
+        yield from (Path(folder) / file for file in _stage.below(folder))
+        return
+    yield from sorted(path for path in Path(folder).rglob("*") if is_file(path))

@@ -145,9 +145,10 @@ def test_wrong_settings_are_told_as_staged(repository: Path) -> None:
     assert _run("audit", "--staged", "--write-ledger", "sets").returncode == 2
 
 
-def test_a_probe_measures_what_is_staged(repository: Path) -> None:
+@pytest.mark.parametrize("named", ["xyz/two.xyz", "xyz"])
+def test_a_probe_measures_what_is_staged(repository: Path, named: str) -> None:
     (repository / "overlapse.toml").write_text(
-        "[[probe]]\nbasis = ['sets/*.basis']\ngeometry = 'xyz/two.xyz'\n"
+        f"[[probe]]\nbasis = ['sets/*.basis']\ngeometry = '{named}'\n"
     )
     geometry = repository / "xyz" / "two.xyz"
     geometry.parent.mkdir()
@@ -156,7 +157,10 @@ def test_a_probe_measures_what_is_staged(repository: Path) -> None:
     (repository / "sets" / "a.basis").write_text(crowded)
     _git("add", ".")
     (repository / "sets" / "a.basis").write_text(SOUND)
-    geometry.write_text("no geometry\n")
+    if named == "xyz":
+        geometry.unlink()
+    else:
+        geometry.write_text("no geometry\n")
     assert [line for line in _found("sets") if "overlap.molecule" in line]
 
 
