@@ -15,7 +15,7 @@ from overlapse.rules.slips import likeliest
 
 @rule("primitive.trend")
 def trend(
-    case: Case, *, surprise: float = 5.5, step: float = 6.0, loud: float = 12.0
+    case: Case, *, surprise: float = 7.0, step: float = 6.0, loud: float = 12.0
 ) -> Iterator[Finding]:
     """Suspect: an exponent falls out of the progression of its row of the periodic table.
 

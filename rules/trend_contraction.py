@@ -114,7 +114,12 @@ def coefficients(
     integrals = {(id(odd.block), odd.shell): odd for odd in _overlaps(case, overlap)}
     for odd in oddities(case):
         key = id(odd.block), odd.shell
-        if key in silent or odd.column is None:
+        if odd.column is None:
+            # A wrong exponent moves overlaps as well.
+            if odd.surprise >= surprise * odd.strictness:
+                silent.add(key)
+            continue
+        if key in silent:
             continue
         other = integrals.get(key)
         is_confirmed = other is not None and (other.row, other.column) == (odd.row, odd.column)

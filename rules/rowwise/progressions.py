@@ -56,8 +56,8 @@ class Oddity(NamedTuple):
 
     @property
     def strictness(self) -> float:
-        """Factor by which limits rise with the disorder of the set."""
-        return 1.0 + _DISORDER * self.disorder
+        """Factor on limits: below one in a set without disorder, above it in one with much."""
+        return _ORDER + _DISORDER * self.disorder
 
     @property
     def is_alone(self) -> bool:
@@ -75,7 +75,7 @@ _TRIED = 5.0  # surprise from which on it is tried what a correction leaves
 
 # Published sets hold such numbers in none to a third of their elements; where they are many a
 # number must be odder to be noted.
-_DISORDER = 3.0
+_ORDER, _DISORDER = 0.65, 5.0
 _FEW = 20
 
 
