@@ -269,7 +269,10 @@ def judge(
     for rule in sorted(wanted, key=lambda rule: rule.last):
         if not settings.is_off(rule.name):
             case.found[rule.name] = list(_judged(case, rule, settings))
-    findings = [finding for found in case.found.values() for finding in found]
+    cleared = {id(finding) for finding in case.cleared}
+    findings = [
+        finding for found in case.found.values() for finding in found if id(finding) not in cleared
+    ]
     findings.sort(key=lambda f: (f.line, f.column, -LEVELS.index(f.severity), f.rule))
     findings = list(marked(findings, document.source))
     accepted = tuple(_accepted(case, findings, settings))

@@ -40,6 +40,8 @@ class Case:
         self.given_label = label
         self.energies = energies
         self.found: dict[str, list[Finding]] = {}  # by rule, for the rules that come last
+        # Of these, suspicions that a last rule knows better; they are not told.
+        self.cleared: list[Finding] = []
         # What lies beside the document, for rules that compare; put here by whoever has files.
         self.seals: tuple[SealedSet, ...] = ()
         self.reference: Document | None = None

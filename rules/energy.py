@@ -198,7 +198,9 @@ def stationary(
     show, and loose ones show little.  Sets recontracted for relativistic atoms are compared with
     their neighbours only.  Where all functions would have to shrink or grow as those of
     another element would, its block has come to stand here.  Of chromium and copper the
-    configuration is taken, 4s1 or 4s2, in which the block goes with its row.
+    configuration is taken, 4s1 or 4s2, in which the block goes with its row.  Notes of
+    `primitive.trend`, `primitive.gap` and `contraction.trend` on numbers that the energy finds in
+    order are taken back.
 
     Formula: step of a number x: -(dE/dx) / (d2E/dx2), orbitals relaxed, in units of the scatter of
     the same place in the neighbours; chi**2 is their sum of squares.  A correction's standard error

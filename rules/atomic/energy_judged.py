@@ -5,6 +5,7 @@ from dataclasses import replace
 from math import inf
 
 from overlapse.rules.atomic.atoms import Atom
+from overlapse.rules.atomic.cleared import cleared
 from overlapse.rules.atomic.energies import Ensemble, ensembles
 from overlapse.rules.atomic.energy_told import (
     charge_finding,
@@ -115,8 +116,9 @@ def _by_label(case: Case, ensemble: Ensemble, atom: Atom, clear: float) -> Itera
 def unsteady(
     case: Case, times: float, clear: float, alone: float, least: float, far: float
 ) -> Iterator[Finding]:
-    """Numbers that would lower an atom's energy if they were others."""
+    """Numbers that would lower an atom's energy if they were others; what it clears is noted."""
     for ensemble in ensembles(case):
+        case.cleared += cleared(case, ensemble)
         suspects = _suspects(ensemble, times, alone)
         for atom in ensemble.atoms:
             own = suspects.get(id(atom.block))

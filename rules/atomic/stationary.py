@@ -29,7 +29,7 @@ _LONE = 1e-5  # the same for an element that has no neighbours to compare with
 _STRANGE = 4e-3  # added to the scatter of elements that are of the period, but not of the row
 # Of an element without neighbours: how large g / sqrt(H) may be, over the quantile of its role.
 _MOSTLY, _AMPLE, _ENOUGH, _UNKNOWN = 0.75, 3.0, 8, 0.05
-_TELLING = 20  # numbers of an atom that say something
+TELLING = 20  # numbers of an atom that say something
 _SOFT = 1e-5  # second derivatives below it, hartree, tell nothing
 
 
@@ -303,4 +303,4 @@ def significance(before: float, after: float, count: int) -> float:
     The scatter is that of the other elements, or that of what the change leaves unexplained in the
     atom's own ``count`` numbers where that is larger; of many numbers most say nothing.
     """
-    return float((max(before - after, 0.0) / (1.0 + after / min(count, _TELLING))) ** 0.5)
+    return float((max(before - after, 0.0) / (1.0 + after / min(count, TELLING))) ** 0.5)
