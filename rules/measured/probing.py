@@ -113,7 +113,6 @@ def assembled(
     values = tuple(eigenvalues(matrix).tolist()) if wanted.values else ()
     if norms is not None:
         _scaled(matrix, 1.0 / norms)
-    known = found.smallest if norms is None else None
     molecule = lattice is None and len(matrix) == found.functions
     return Probe(
         geometry=label.geometry,
@@ -126,7 +125,7 @@ def assembled(
         threshold=step,
         kept=found.functions - found.below[step],
         near=found.below[high] - found.below[low],
-        outlook=_outlook(sites, wanted, matrix, known, molecule),
+        outlook=_outlook(sites, wanted, matrix, found.smallest, norms, molecule),
         tolerance=wanted.tolerance,
         blame=small,
         drop=pruned[0],
@@ -140,16 +139,27 @@ def assembled(
 
 
 def _outlook(
-    sites: Sequence[Site], wanted: Wanted, matrix: Matrix, lowest: float | None, molecule: bool
+    sites: Sequence[Site],
+    wanted: Wanted,
+    matrix: Matrix,
+    lowest: float,
+    norms: Floats | None,
+    molecule: bool,
 ) -> Outlook:
     """The outlook; by the eigenvalue alone where no field can be made of a whole molecule, and for
-    functions that are for fitting."""
-    placed = [site.placed for site in sites]
-    if not molecule or any(site.fitting for site in sites) or not affordable(placed, len(matrix)):
-        return outlook(matrix, smallest=lowest)
-    if lowest is None:
+    functions that are for fitting.
+
+    lowest: smallest eigenvalue of the matrix with the ``norms`` that it has no longer.
+    """
+    if norms is not None and lowest < LADDER[0]:  # above, norms do not matter
         lowest = smallest(matrix)
-    if lowest >= LOOKED_AT:
+    placed = [site.placed for site in sites]
+    if (
+        lowest >= LOOKED_AT
+        or not molecule
+        or any(site.fitting for site in sites)
+        or not affordable(placed, len(matrix))
+    ):
         return outlook(matrix, smallest=lowest)
     return foresee(
         placed,

@@ -1,6 +1,6 @@
 """Overlap matrices in sparse form, screened contraction by contraction.
 
-The matrix is held in blocks of some thousand rows and columns, one of each pair of mirror images.
+The matrix is held in blocks of some thousand rows, one of each pair of mirror images.
 Sorting elements into rows costs more the more rows there are to write to at a time; so the cost of
 an element does not grow with the matrix.
 """
@@ -31,56 +31,69 @@ from overlapse.rules.physics.placed import Ints, Placed
 
 DROP = 1e-12  # elements below are not stored
 BOUNDED = 1e-2  # of that: what a bound holds an element below is not even worked out
-ROWS = 3000  # functions of a block's side, about
+ROWS = 3000  # of a block, about
 
 
 Indices = npt.NDArray[np.int32]
 
 
-class Blocked:
-    """A symmetric matrix in blocks.
+class Block(NamedTuple):
+    """A part of a symmetric matrix: its first row and column, and `scipy.sparse.csr_array`.
 
-    starts: first row of each panel of rows, and the number of rows, rising.  blocks: by numbers
-    i <= j of two panels a `scipy.sparse.csr_array`; those of i < j stand for their mirror images
-    too.
+    A block away from the diagonal stands for its mirror image too.
     """
 
-    def __init__(self, starts: Sequence[int], blocks: dict[tuple[int, int], Any]) -> None:
-        self._starts, self._blocks = starts, blocks
+    row: int
+    column: int
+    matrix: Any
 
     @property
-    def shape(self) -> tuple[int, int]:
-        return self._starts[-1], self._starts[-1]
+    def rows(self) -> slice:
+        return slice(self.row, self.row + self.matrix.shape[0])
+
+    @property
+    def columns(self) -> slice:
+        return slice(self.column, self.column + self.matrix.shape[1])
+
+    @property
+    def mirrored(self) -> bool:
+        return self.row != self.column
+
+
+class Blocked:
+    """A symmetric matrix in blocks, shape (size, size)."""
+
+    def __init__(self, size: int, blocks: Sequence[Block]) -> None:
+        self.shape = size, size
+        self._blocks = blocks
 
     @property
     def nnz(self) -> int:
         """Number of elements, mirror images counted."""
-        return sum(block.nnz * (1 if i == j else 2) for (i, j), block in self._blocks.items())
+        return sum(block.matrix.nnz * (2 if block.mirrored else 1) for block in self._blocks)
 
     def __matmul__(self, vector: Floats) -> Floats:
         """The product with a vector, shape (n,)."""
         found = np.zeros(len(vector))
-        parts = [slice(first, stop) for first, stop in pairwise(self._starts)]
-        for (i, j), block in self._blocks.items():
-            found[parts[i]] += block @ vector[parts[j]]
-            if i != j:
-                found[parts[j]] += block.T @ vector[parts[i]]
+        for block in self._blocks:
+            found[block.rows] += block.matrix @ vector[block.columns]
+            if block.mirrored:
+                found[block.columns] += block.matrix.T @ vector[block.rows]
         return found
 
     def dense(self, among: Ints | None = None) -> Floats:
         """All of it, or the part with the given rows and columns, rising, as a full array."""
-        chosen = np.arange(self._starts[-1]) if among is None else among
-        limits = np.searchsorted(chosen, self._starts)
-        inside = [
-            chosen[first:stop] - start
-            for (first, stop), start in zip(pairwise(limits), self._starts, strict=False)
-        ]
+        chosen = np.arange(self.shape[0]) if among is None else among
         found = np.zeros((len(chosen), len(chosen)))
-        for (i, j), block in self._blocks.items():
-            part = block[inside[i]][:, inside[j]].toarray()
-            rows, columns = (slice(limits[k], limits[k + 1]) for k in (i, j))
-            found[rows, columns] = part
-            found[columns, rows] = part.T
+        for block in self._blocks:
+            sides = block.rows, block.columns
+            rows, columns = (
+                slice(*np.searchsorted(chosen, (side.start, side.stop))) for side in sides
+            )
+            part = block.matrix[chosen[rows] - block.row][:, chosen[columns] - block.column]
+            found[rows, columns] = part.toarray()
+            if block.mirrored:
+                found[columns, rows] = found[rows, columns].T
         return found
 
 
@@ -122,27 +135,25 @@ def sparse_overlap(
     """
     frame = Frame(atoms)
     missing = np.full(frame.size, BOUNDED * drop * frame.size)
-    panels = _panels(frame)
-    blocks: dict[tuple[int, int], Any] = {}
+    blocks: list[Block] = []
     pairs = _KindPairs(drop)
     done, stored = 0.0, 0
-    for i, one in enumerate(panels):
-        for j, two in enumerate(panels[i:], i):
-            lists: list[tuple[Floats, Indices, Indices]] = []
-            for some, parts in _parts(frame, one, two, pairs):
-                for part in parts:
-                    lists += _kept(part, drop, missing, (one, two), i == j)
-                done += some.share / float(frame.size) ** 2
-                if progress is not None:
-                    progress(min(1.0, done))
-            blocks[i, j] = _assembled(lists, (one.size, two.size))
-            stored += blocks[i, j].nnz
-            # Of the last block there are the lists as well.
-            needed = 12 * stored + 28 * blocks[i, j].nnz + WORKING
-            if memory is not None and needed > memory:
-                raise TooLarge("A sparse matrix (so far)", needed, memory)
-    starts = [panel.first for panel in panels] + [frame.size]
-    return Sparse(Blocked(starts, blocks), float(missing.max(initial=0.0)))
+    for one, two in _panels(frame):
+        lists: list[tuple[Floats, Indices, Indices]] = []
+        for some, parts in _parts(frame, one, two, pairs):
+            for part in parts:
+                lists += _kept(part, drop, missing, (one, two))
+            done += some.share / float(frame.size) ** 2
+            if progress is not None:
+                progress(min(1.0, done))
+        matrix = _assembled(lists, (one.size, two.size))
+        blocks.append(Block(one.first, two.first, matrix))
+        stored += matrix.nnz
+        # Of the last block there are the lists as well.
+        needed = 12 * stored + 28 * matrix.nnz + WORKING
+        if memory is not None and needed > memory:
+            raise TooLarge("A sparse matrix (so far)", needed, memory)
+    return Sparse(Blocked(frame.size, blocks), float(missing.max(initial=0.0)))
 
 
 class _Panel(NamedTuple):
@@ -153,20 +164,25 @@ class _Panel(NamedTuple):
     size: int
 
 
-def _panels(frame: Frame) -> list[_Panel]:
-    """The atoms in panels of about the same number of functions."""
+def _panels(frame: Frame) -> Iterator[tuple[_Panel, _Panel]]:
+    """Rows and columns of the blocks: some thousand atoms with themselves, and with all later."""
     count = max(1, round(frame.size / ROWS))
     limits = np.searchsorted(frame.starts, np.linspace(0, frame.size, count + 1)).tolist()
-    limits[-1] = len(frame.starts) - 1
-    found = []
+    last = limits[-1] = len(frame.starts) - 1
     for first, stop in pairwise(limits):
-        kinds = []
-        for kind in frame.kinds:
-            inside = kind.members[(kind.members >= first) & (kind.members < stop)]
-            kinds.append(kind._replace(members=inside))
-        start = int(frame.starts[first])
-        found.append(_Panel(tuple(kinds), start, int(frame.starts[stop]) - start))
-    return found
+        panel = _panel(frame, first, stop)
+        yield panel, panel
+        if stop < last:
+            yield panel, _panel(frame, stop, last)
+
+
+def _panel(frame: Frame, first: int, stop: int) -> _Panel:
+    kinds = []
+    for kind in frame.kinds:
+        inside = kind.members[(kind.members >= first) & (kind.members < stop)]
+        kinds.append(kind._replace(members=inside))
+    start = int(frame.starts[first])
+    return _Panel(tuple(kinds), start, int(frame.starts[stop]) - start)
 
 
 class _KindPairs:
@@ -209,12 +225,12 @@ def _parts(
 
 
 def _kept(
-    part: _Part, drop: float, missing: Floats, panels: tuple[_Panel, _Panel], mirrored: bool
+    part: _Part, drop: float, missing: Floats, panels: tuple[_Panel, _Panel]
 ) -> Iterator[tuple[Floats, Indices, Indices]]:
     """The elements that are stored: values, rows and columns within their block.
 
-    What is left out is added to ``missing``.  mirrored: elements of other atoms come with their
-    mirror images.
+    In a block on the diagonal those of two atoms come with their mirror images.  What is left out
+    is added to ``missing``.
     """
     size = np.abs(part.values)
     keep = size >= drop
@@ -227,7 +243,7 @@ def _kept(
     to = (columns - panels[1].first).astype(np.int32)[:, None, :, :]
     at, to = (np.broadcast_to(index, size.shape)[keep] for index in (at, to))
     yield values, at, to
-    if mirrored and not part.own:
+    if panels[0] is panels[1] and not part.own:
         yield values, to, at
     size[keep] = 0.0
     missing += np.bincount(rows.ravel(), size.sum(axis=2).ravel(), len(missing))

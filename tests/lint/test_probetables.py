@@ -109,3 +109,17 @@ def test_the_library_call_finds_what_the_command_finds(folder: Path) -> None:
     (folder / "water.xyz").unlink()
     with pytest.raises(OSError, match="water"):
         audit(folder)
+
+
+def test_of_a_folder_of_geometries_all_but_the_unreadable_are_measured(folder: Path) -> None:
+    (folder / "scan").mkdir()
+    (folder / "scan" / "a.xyz").write_text("")
+    (folder / "scan" / "b.xyz").write_text("2\nx\nH 0 0 0\nH 0 0 0.74\n")
+    table = _table(folder, "h.basis")._replace(geometry=folder / "scan")
+    first, told = with_probes(_audits(folder, "h.basis"), [table])
+    assert [probe.formula for probe in first.probes] == ["H2"]
+    assert told.problem == f"{folder / 'scan' / 'a.xyz'}: the file is empty"
+    (folder / "scan" / "b.xyz").unlink()
+    (folder / "scan" / "a.xyz").unlink()
+    (*_, told) = with_probes(_audits(folder, "h.basis"), [table])
+    assert "no geometry in" in told.problem

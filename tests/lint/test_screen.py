@@ -343,6 +343,8 @@ def test_a_geometry_that_cannot_be_read_does_not_stop_the_others(folder: Path) -
     assert [file["problem"] for file in found["files"] if file["problem"]] == [
         f"{folder / 'scan' / '2.xyz'}: the file is empty"
     ]
+    done = run(folder / "sound.basis", "--on", folder / "scan", "--report", "lines")
+    assert f"{folder / 'scan' / '2.xyz'}: error: the file is empty\n" in done.stdout
 
 
 @pytest.mark.parametrize(
