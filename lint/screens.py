@@ -74,7 +74,7 @@ def _frame(probe: Probe) -> Iterator[str]:
     if probe.after is not None:
         yield from _item("then", _left(probe.after))
         if probe.after.loss is not None:
-            yield from _item("worth", f"a field {worth(probe.after.loss)}")
+            yield from _item("cost", worth(probe.after.loss))
 
 
 def _left(left: Left) -> str:

@@ -150,9 +150,9 @@ def told(files: Sequence[Made], paths: Sequence[Path], probes: Sequence[Probe]) 
     if len(known) < len(losses):
         yield "what they are worth is not known: compare an energy before they are left out"
     elif max(known) > HARMLESS:
-        yield f"a field {worth(max(known))}: compare an energy before they are left out"
+        yield f"leaving them out costs {worth(max(known))}: compare an energy first"
     else:
-        yield f"a field {worth(max(known))}"
+        yield f"leaving them out costs {worth(max(known))}"
 
 
 def spans(atoms: Sequence[int]) -> str:

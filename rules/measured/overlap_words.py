@@ -97,7 +97,7 @@ def _remedies(probe: Probe) -> Iterator[str]:
         if probe.after is not None:
             left = probe.after
             told += f": {left.functions} functions stay, smallest eigenvalue {plain(left.smallest)}"
-            told += f"; a field {worth(left.loss)}" if left.loss is not None else ""
+            told += f"; that costs {worth(left.loss)}" if left.loss is not None else ""
         yield told
     kinds: Sequence[Function] = [
         share.function for small in probe.blame[:3] for share in small.kinds if share.weight > 0.1
@@ -107,10 +107,10 @@ def _remedies(probe: Probe) -> Iterator[str]:
 
 
 def worth(loss: float) -> str:
-    """What a field loses without the functions that are dropped."""
+    """The energy that is lost without the functions that are dropped."""
     if loss < 1e-6:
-        return "loses less than 1e-6 hartree, by an approximate one"
-    return f"loses about {loss:.0e} hartree, by an approximate one".replace("e-0", "e-")
+        return "less than 1e-6 hartree, as estimated"
+    return f"about {loss:.0e} hartree, as estimated".replace("e-0", "e-")
 
 
 def dropped(parts: Sequence[Dropped], most: int = 6) -> str:
