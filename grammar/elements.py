@@ -148,6 +148,13 @@ def core(z: int) -> dict[int, int]:
     return counts
 
 
+@cache
+def valence(z: int) -> dict[int, int]:
+    """As `occupied`, but only the subshells that are not of the `core`: carbon {0: 1, 1: 1}."""
+    inner = core(z)
+    return {l: n - inner.get(l, 0) for l, n in occupied(z).items() if n > inner.get(l, 0)}
+
+
 # Subshells that a potential for this many electrons replaces.
 _REPLACED = {
     0: {}, 2: {0: 1}, 10: {0: 2, 1: 1}, 18: {0: 3, 1: 2}, 28: {0: 3, 1: 2, 2: 1},

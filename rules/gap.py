@@ -5,10 +5,13 @@ from typing import NamedTuple
 
 import numpy as np
 
+from overlapse.grammar.elements import valence
 from overlapse.grammar.model import BasisSet, Block, Floats, letter_of
 from overlapse.rules.case import Case
 from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rule
+
+_LONE = 2  # the kind of ladder that lone functions make
 
 
 class _Ladder(NamedTuple):
@@ -128,7 +131,7 @@ def spacing_oddities(case: Case, margin: float = 1.2, fewest: int = 12) -> list[
 def _of_set(members: BasisSet, margin: float, fewest: int) -> list[Odd]:
     ladders = list(_ladders(members))
     found = []
-    # Contractions, matrices and series of lone functions each keep their own habits.
+    # Each kind keeps its own habits.
     for kind in range(3):
         alike = [ladder for ladder in ladders if ladder.kind == kind]
         broken = [ladder for ladder in alike if not _falls(ladder)]
@@ -136,7 +139,7 @@ def _of_set(members: BasisSet, margin: float, fewest: int) -> list[Odd]:
         is_habit = kept >= min(fewest, len(members.blocks) - 1) and kept >= 2
         # One is a slip; more are one only among very many.
         if is_habit and len(broken) <= max(1, 0.02 * kept):
-            loud = kind < 2 and len(broken) == 1
+            loud = kind < _LONE and len(broken) == 1
             found += [Odd(ladder, _misplaced(ladder), 0, True, kept, loud) for ladder in broken]
     told = {odd.shell for odd in found}
     return found + [odd for odd in _gaps(ladders, margin) if odd.shell not in told]
@@ -157,10 +160,14 @@ def _ladders(members: BasisSet) -> Iterator[_Ladder]:
             places = [(index, row) for row in range(len(shell.exponents))]
             kind = int(shell.columns_per_l > 1)
             yield _Ladder(block, l, kind, seen[l], places, np.log(shell.exponents))
+        # Lone p functions of alkali and alkaline-earth atoms serve the core and polarization, in an
+        # order and spacing of their own.
+        if set(valence(block.atomic_number)) == {0} and block.atomic_number > 2:
+            lone.pop(1, None)
         for l, places in lone.items():
             if len(places) > 1:
                 values = [float(block.shells[index].exponents[0]) for index, _ in places]
-                yield _Ladder(block, l, 2, 0, places, np.log(values))
+                yield _Ladder(block, l, _LONE, 0, places, np.log(values))
 
 
 def _falls(ladder: _Ladder) -> bool:
@@ -204,12 +211,12 @@ def _gaps(ladders: list[_Ladder], margin: float) -> Iterator[Odd]:
         gaps = -np.diff(np.array([ladder.logs for ladder in group]), axis=1)
         if len(group) >= 4:
             ranked = np.sort(gaps, axis=0)
-        elif group[0].kind == 2:
+        elif group[0].kind == _LONE:
             # Few series of this length: all gaps between lone functions of this l.
             every = [
                 -np.diff(other.logs)
                 for other in ladders
-                if other.kind == 2 and other.l == group[0].l
+                if other.kind == _LONE and other.l == group[0].l
             ]
             pool = np.sort(np.concatenate(every))
             if len(pool) < 8:
@@ -226,7 +233,7 @@ def _gaps(ladders: list[_Ladder], margin: float) -> Iterator[Odd]:
             if far[at] > margin:
                 place, is_wide = _at_fault(far, at, margin), gaps[row, at] > high[row, at]
                 bound = np.exp(high[row, at] + margin if is_wide else low[row, at] - margin)
-                others, loud = len(ranked) - 1, ladder.kind < 2
+                others, loud = len(ranked) - 1, ladder.kind < _LONE
                 yield Odd(ladder, place, at, False, others, loud, float(bound))
 
 

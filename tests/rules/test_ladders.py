@@ -184,3 +184,15 @@ def test_one_exponent_out_of_order_is_one_finding() -> None:
     assert not _judged(blocks, "primitive.order")
     # Where the set has no habit, the order speaks.
     assert [f.element for f in _judged(blocks[1:2], "primitive.order")] == ["Be"]
+
+
+@pytest.mark.parametrize(("z", "symbol"), [(3, None), (4, None), (6, "C"), (1, "H")])
+def test_lone_p_functions_of_the_s_block_keep_an_order_of_their_own(
+    z: int, symbol: str | None
+) -> None:
+    def lone(number: int, *exponents: float) -> Block:
+        return Block(number, tuple(Shell((1,), [a], [[1.0]]) for a in exponents))
+
+    row = [lone(number, 0.1 * number, 0.025 * number) for number in (5, 7, 8, 9, 13, 14, 15, 16)]
+    found = _judged([*row, lone(z, 0.06, 3.3)], "primitive.gap")
+    assert [finding.element for finding in found] == ([symbol] if symbol else [])
