@@ -5,10 +5,6 @@ the largest by Lanczos, the smallest by Lanczos on the inverse, applied through 
 functions below each step of the ladder are counted by inertia (`inertia`), and only where the
 smallest eigenvalue says that there are any.
 
-Formula: the smallest eigenvalue of any principal submatrix is an upper bound of that of the
-matrix (interlacing; R. A. Horn, C. R. Johnson, Matrix Analysis, chapter 4).  The submatrix of the
-diffuse functions comes close to it and is small.
-
 All functions take real symmetric and complex Hermitian matrices, shape (n, n).
 """
 
@@ -28,7 +24,6 @@ LADDER = (1e-4, 1e-5, 1e-6, 1e-7, 1e-8)
 SMALL = 700  # up to this size all eigenvalues are the cheapest way
 MIDDLE = 1800  # up to this size they are where some have to be counted (tests/bench/overlap.py)
 COPIES = 2.5  # of a dense matrix: what its spectrum takes at most, itself included
-DIFFUSE = (0.3, 0.6)  # bohr**-2: functions below are tried first
 
 
 class Spectrum(NamedTuple):
@@ -46,18 +41,11 @@ class Spectrum(NamedTuple):
     method: str
 
 
-class Verdict(NamedTuple):
-    """Whether all eigenvalues exceed a limit, and how that was found."""
-
-    exceeds: bool
-    method: str
-
-
 def spectrum(matrix: Matrix, ladder: Sequence[float] = LADDER) -> Spectrum:
     """Smallest and largest eigenvalue, condition number, and counts below each step."""
     n = len(matrix)
     # One Cholesky factor, which is cheap, says whether there is anything to count.
-    if n <= SMALL or (n <= MIDDLE and ladder and not _definite(matrix, max(ladder), None)):
+    if n <= SMALL or (n <= MIDDLE and ladder and not _definite(matrix, max(ladder))):
         return _from_all(eigvalsh(matrix), ladder)
     low, high = smallest(matrix), largest(matrix)
     needed = [step for step in ladder if step > low]
@@ -108,29 +96,9 @@ def _condition(low: float, high: float) -> float:
     return high / low if low > 0.0 else float("inf")
 
 
-def exceeds(matrix: Matrix, limit: float, exponents: Floats | None = None) -> Verdict:
-    """Whether the smallest eigenvalue is above a limit.
-
-    exponents: bohr**-2, shape (n,), one for each function (`placed.Functions.exponent`).  With
-    them the diffuse functions are tried alone first: where they fail, so does the whole matrix.
-    Otherwise one Cholesky factor of the matrix less the limit decides, diffuse functions first,
-    because a factorization that fails then stops early.
-    """
-    if exponents is None:
-        return Verdict(_definite(matrix, limit, None), "one Cholesky factor")
-    order = np.argsort(exponents, kind="stable")
-    tried = 0
-    for cut in DIFFUSE:
-        count = int(np.searchsorted(exponents[order], cut))
-        if tried < count <= 0.8 * len(order):
-            tried = count
-            if not _definite(matrix, limit, order[:count]):
-                return Verdict(False, f"bound from {count} functions of exponents below {cut:g}")
-    return Verdict(_definite(matrix, limit, order), "one Cholesky factor, diffuse functions first")
-
-
-def _definite(matrix: Matrix, limit: float, chosen: Part | None) -> bool:
-    return factored(shifted(matrix, limit, chosen)) is not None
+def _definite(matrix: Matrix, limit: float) -> bool:
+    """Whether all eigenvalues exceed a limit."""
+    return factored(shifted(matrix, limit)) is not None
 
 
 def largest(matrix: Matrix) -> float:

@@ -27,7 +27,7 @@ from overlapse.rules.physics.blocks import sparse_overlap
 from overlapse.rules.physics.inertia import counts_below
 from overlapse.rules.physics.integrals import memory_needed, overlap
 from overlapse.rules.physics.placed import Placed, lay_out
-from overlapse.rules.physics.spectrum import exceeds, largest, smallest, spectrum
+from overlapse.rules.physics.spectrum import largest, smallest, spectrum
 
 ANGSTROM = 1.0 / 0.529177210903
 
@@ -134,15 +134,13 @@ def condition(folder: Path, large: bool, repeats: int) -> None:
         f"flake of {2 * rings**2} carbon atoms, aug-cc-pVTZ": flake(rings, augmented["C"]),
     }
     for title, atoms in systems.items():
-        matrix, exponents = overlap(atoms), lay_out(atoms).exponent
+        matrix = overlap(atoms)
         found = spectrum(matrix)
         exact = np.linalg.eigvalsh(matrix)
         right = all(count == (exact < step).sum() for step, count in found.below.items())
         steps = [step for step in found.below if step > found.smallest]
         works: dict[str, Callable[[], object]] = {
             "smallest, largest, condition": lambda m=matrix: (smallest(m), largest(m)),
-            "above 1e-6?": lambda m=matrix, e=exponents: exceeds(m, 1e-6, e),
-            "above 1e-6? (without exponents)": lambda m=matrix: exceeds(m, 1e-6),
             "one count": lambda m=matrix: counts_below(m, [1e-6]),
             f"{len(steps)} counts": lambda m=matrix, s=steps: counts_below(m, s),
             "whole spectrum": lambda m=matrix: spectrum(m),

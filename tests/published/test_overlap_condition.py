@@ -18,7 +18,6 @@ from overlapse.rules.physics.integrals import overlap
 from overlapse.rules.physics.placed import Placed, lay_out
 from overlapse.rules.physics.pruning import chosen, shells_to_drop
 from overlapse.rules.physics.spectrum import (
-    exceeds,
     largest,
     lowest,
     smallest,
@@ -203,10 +202,6 @@ def test_large_matrices(
     under, vectors = lowest(matrix, 1e-4)
     assert under == pytest.approx(exact[exact < 1e-4], rel=1e-6, abs=1e-14)
     assert np.abs(matrix @ vectors - vectors * under).max(initial=0.0) < 1e-9
-    exponents = np.geomspace(0.01, 10.0, len(matrix))
-    for limit in (1e-8, 1e-6, 1e-3):
-        assert exceeds(matrix, limit).exceeds == (exact[0] > limit)
-        assert exceeds(matrix, limit, exponents).exceeds == (exact[0] > limit)
 
 
 def test_large_overlap_matrices(monkeypatch: pytest.MonkeyPatch) -> None:
@@ -221,9 +216,6 @@ def test_large_overlap_matrices(monkeypatch: pytest.MonkeyPatch) -> None:
         assert found.smallest == pytest.approx(exact[0], rel=1e-3, abs=1e-15)
         assert smallest(matrix) == found.smallest
         assert largest(matrix) == found.largest
-        verdict = exceeds(matrix, 1e-6, lay_out(atoms).exponent)
-        assert not verdict.exceeds
-        assert "bound from" in verdict.method
         monkeypatch.undo()
 
 
