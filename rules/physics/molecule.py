@@ -57,7 +57,8 @@ def affordable(atoms: Sequence[Placed], size: int) -> bool:
     return values <= MOST_VALUES and values * size <= MOST_WORK
 
 
-def _exchange_affordable(atoms: int, electrons: tuple[int, int]) -> bool:
+def exchange_affordable(atoms: int, electrons: tuple[int, int]) -> bool:
+    """Whether the exchange of so many electrons of either spin takes seconds."""
     table = float(atoms * points_of(atoms) * 2 * (TOP + 1) ** 2)
     pairs = sum(n * (n + 1) / 2 for n in set(electrons))
     return table <= MOST_VALUES and table * pairs <= MOST_PAIRED
@@ -84,7 +85,7 @@ def molecular_field(
     x = vectors[:, kept > KEPT] / np.sqrt(kept[kept > KEPT])
     gas = superposed_field(grid, values, nuclei, x, kinetic, electrons)
     start = Field((kinetic + gas,) * 2, electrons, exact=False)
-    if not exchange or not _exchange_affordable(len(atoms), electrons):
+    if not exchange or not exchange_affordable(len(atoms), electrons):
         return start
     occupied = [x @ start.orbitals(s, x, kinetic)[1][:, :n] for s, n in enumerate(electrons)]
     bare = kinetic + (values * (grid.weights * grid.attraction(nuclei))) @ values.T

@@ -32,8 +32,9 @@ An eigenvalue below 1e-10 that is felt by no orbital, by the symmetry of the mol
 called strained all the same: a slight distortion or another filling of the levels undoes that.  One
 within rounding of zero always fails.
 
-Where the field is that of the electron gas (many atoms and electrons), p comes out too high, in
-diffuse functions by a factor of ten.  Without a field (too many functions, a core potential) only
+Where the field is that of the electron gas (many atoms and electrons), p mostly comes out too high,
+in diffuse functions by a factor of ten.  It is made first: noise below a hundredth of the limit is
+looked into no further.  Without a field (too many functions, a core potential) only
 lambda is judged: fails below 5e-10, strained below 1e-7.  That is much coarser.
 
 Source: the perturbation formula is that of single excitations, A. Szabo, N. S. Ostlund, Modern
@@ -47,12 +48,18 @@ import numpy as np
 import numpy.typing as npt
 
 from overlapse.grammar.model import Floats, letter_of
-from overlapse.rules.physics.molecule import Field, affordable, molecular_field
+from overlapse.rules.physics.molecule import (
+    Field,
+    affordable,
+    exchange_affordable,
+    molecular_field,
+)
 from overlapse.rules.physics.placed import Functions, Placed
 
 Level = Literal["safe", "strained", "fails"]
 
 STRAINED, FAILS = 1.5e-8, 1e-4  # hartree: noise of energy and of gradient, with a field
+PLAIN = 0.01  # of the limit: so little noise with the electron gas is looked into no further
 GAS = 0.3  # times these limits, where exchange is that of the electron gas
 BETWEEN = 5.0  # factor k between centres, where integrals do not share their rounding
 SMALL, TINY = 1e-7, 5e-10  # of the smallest eigenvalue, without a field
@@ -96,19 +103,26 @@ def foresee(
     smallest: eigenvalue of the overlap, where it is known already.  exchange: as in
     `molecule.molecular_field`.
     """
-    field = None
     if smallest is None:
         smallest = _smallest(overlap)
     nuclei = [0 if k in set(empty) else a.block.atomic_number for k, a in enumerate(atoms)]
     electrons = sum(nuclei) - charge
     whole = all(atom.block.potential is None for atom in atoms) and electrons > 0
     doubtful = _rounding(overlap) <= smallest < LOOKED_AT
-    if kinetic is not None and doubtful and whole and affordable(atoms, len(overlap)):
-        up = min((electrons + (electrons % 2 if unpaired is None else unpaired)) // 2, electrons)
-        field = molecular_field(
-            atoms, nuclei, overlap, kinetic, (up, electrons - up), exchange=exchange
-        )
-    return outlook(overlap, kinetic, functions, field=field, smallest=smallest)
+    if kinetic is None or not (doubtful and whole and affordable(atoms, len(overlap))):
+        return outlook(overlap, kinetic, functions, smallest=smallest)
+    up = min((electrons + (electrons % 2 if unpaired is None else unpaired)) // 2, electrons)
+    pair = (up, electrons - up)
+
+    def seen(exchange: bool) -> Outlook:
+        field = molecular_field(atoms, nuclei, overlap, kinetic, pair, exchange=exchange)
+        return outlook(overlap, kinetic, functions, field=field, smallest=smallest)
+
+    found = seen(exchange=False)
+    is_plain = found.level == "safe" and found.measure < PLAIN * found.limit
+    if is_plain or not (exchange and exchange_affordable(len(atoms), pair)):
+        return found
+    return seen(exchange=True)
 
 
 def outlook(

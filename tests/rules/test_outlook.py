@@ -120,6 +120,25 @@ def test_twins_that_the_electrons_need_fail_and_tight_ones_do_not() -> None:
     assert tight.level != "fails"
 
 
+def test_exchange_is_made_only_where_the_electron_gas_leaves_a_doubt(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    asked = []
+    made = module.molecular_field
+
+    def counted(*given: object, exchange: bool) -> Field:
+        asked.append(exchange)
+        return made(*given, exchange=exchange)  # type: ignore[arg-type]
+
+    monkeypatch.setattr(module, "molecular_field", counted)
+    # Helium does without tight twins; without valence twins it is another atom.
+    shells = [(0, 10.0), (0, 2.0), (0, 0.4)]
+    assert seen(lone(2, *shells, (0, 3000.0), (0, 3001.0))).level == "safe"
+    assert asked == [False]
+    assert seen(lone(2, *shells, (0, 0.8), (0, 0.80001))).level == "fails"
+    assert asked == [False, False, True]
+
+
 def test_symmetry_protects_but_is_no_comfort_when_nothing_else_does() -> None:
     # No electron of helium has the symmetry of d functions.
     shells = ((0, 5.0), (0, 1.2), (0, 0.35), (2, 1.0))
