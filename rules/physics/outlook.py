@@ -33,7 +33,7 @@ called strained all the same: a slight distortion or another filling of the leve
 within rounding of zero always fails.
 
 Where the field is that of the electron gas (many atoms and electrons), p mostly comes out too high,
-in diffuse functions by a factor of ten.  It is made first: noise below a hundredth of the limit is
+in diffuse functions by a factor of ten.  It is made first: noise below a tenth of the limit is
 looked into no further.  Without a field (too many functions, a core potential) only
 lambda is judged: fails below 5e-10, strained below 1e-7.  That is much coarser.
 
@@ -59,7 +59,7 @@ from overlapse.rules.physics.placed import Functions, Placed
 Level = Literal["safe", "strained", "fails"]
 
 STRAINED, FAILS = 1.5e-8, 1e-4  # hartree: noise of energy and of gradient, with a field
-PLAIN = 0.01  # of the limit: so little noise with the electron gas is looked into no further
+PLAIN = 0.1  # of the limit: so little noise with the electron gas is looked into no further
 GAS = 0.3  # times these limits, where exchange is that of the electron gas
 BETWEEN = 5.0  # factor k between centres, where integrals do not share their rounding
 SMALL, TINY = 1e-7, 5e-10  # of the smallest eigenvalue, without a field
