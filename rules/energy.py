@@ -185,7 +185,7 @@ def stationary(
     times: float = 6.0,
     clear: float = 13.0,
     alone: float = 10.0,
-    least: float = 1e-3,
+    least: float = 2e-3,
     far: float = 40.0,
 ) -> Iterator[Finding]:
     """Suspect: the energy of an atom would fall if one number were another.

@@ -133,7 +133,9 @@ def by_row(own: Steps, others: Sequence[Steps]) -> list[tuple[Number, float, flo
     if not first.size:
         return []
     found = []
-    for number in own.numbers:
+    for at, number in enumerate(own.numbers):
+        if at in own.spare:
+            continue
         values = np.array([other.atom.value(number) for other in others])
         value = own.atom.value(number)
         logarithmic = bool((values > 0.0).all()) and value > 0.0

@@ -118,6 +118,20 @@ class Steps:
         }
 
     @cached_property
+    def spare(self) -> list[int]:
+        """Lone functions of an l that only closed inner shells have: made for molecules."""
+        atom = self.atom
+        if atom.shells.text.endswith("p6"):
+            return []
+        inner = {l for l, held in atom.shells.electrons.items() if l and held[-1] == 4 * l + 2}
+        return [
+            at
+            for at, number in enumerate(self.numbers)
+            if len(atom.block.shells[number.shell].exponents) == 1
+            and inner.issuperset(atom.block.shells[number.shell].angular)
+        ]
+
+    @cached_property
     def kinds(self) -> tuple[tuple[int, bool], ...]:
         """For each number its l and whether it is an exponent."""
         shells = self.atom.block.shells
@@ -202,7 +216,7 @@ def usual(
         spread = np.hypot(spread, np.hypot(blur, _LONE / stiffness))
         _by_period(own, mates, stiffness, centre, spread)
         blur = np.zeros(len(own.numbers))
-    spread[_spare(own)] += 1.0
+    spread[own.spare] += 1.0
     return Usual(centre, np.sqrt(spread**2 + blur**2 + _FINEST**2), stiffness, len(others))
 
 
@@ -253,20 +267,6 @@ def _by_role(own: Steps, file: Sequence[Steps], stiffness: Floats) -> Floats:
     return spread
 
 
-def _spare(own: Steps) -> list[int]:
-    """Lone functions of an l that only closed inner shells have: they were made for molecules."""
-    atom = own.atom
-    if atom.shells.text.endswith("p6"):
-        return []
-    inner = {l for l, held in atom.shells.electrons.items() if l and held[-1] == 4 * l + 2}
-    return [
-        at
-        for at, number in enumerate(own.numbers)
-        if len(atom.block.shells[number.shell].exponents) == 1
-        and inner.issuperset(atom.block.shells[number.shell].angular)
-    ]
-
-
 @dataclass(frozen=True, eq=False)
 class Explanation:
     """One number as the explanation of an atom's steps.
@@ -281,7 +281,7 @@ class Explanation:
 
 
 def explanations(own: Steps, expected: Usual) -> list[Explanation]:
-    """All numbers as explanations, the best first."""
+    """All numbers as explanations, but those that were not made for the atom; the best first."""
     away = expected.chi(own.gradient)
     patterns = own.curvature / (expected.stiffness * expected.scatter)[None, :]
     lengths = np.sqrt((patterns**2).sum(axis=1))
@@ -292,7 +292,10 @@ def explanations(own: Steps, expected: Usual) -> list[Explanation]:
         Explanation(
             number, float(a / max(length * length, 1e-300)), before, max(before - float(gain), 0.0)
         )
-        for number, a, length, gain in zip(own.numbers, along, lengths, gains, strict=True)
+        for at, (number, a, length, gain) in enumerate(
+            zip(own.numbers, along, lengths, gains, strict=True)
+        )
+        if at not in own.spare
     ]
     return sorted(found, key=lambda e: e.after)
 
