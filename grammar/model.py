@@ -250,6 +250,10 @@ class Shell:
         scaled[~np.isfinite(scaled)] = np.nan
         return read_only(scaled)
 
+    def number(self, row: int, column: int | None = None) -> float:
+        """An exponent, or a coefficient of a column (0-based)."""
+        return float(self.exponents[row] if column is None else self.coefficients[row, column])
+
     def place(self, row: int | None = None, column: int | None = None) -> Place:
         """Where the shell stands, or one of its numbers (0-based row and column)."""
         if row is None or self.cells is None:

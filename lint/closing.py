@@ -5,11 +5,11 @@ from collections import Counter
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
-from textwrap import fill
 
 from overlapse.lint.engine import FileAudit
 from overlapse.lint.ledger import Ledger
 from overlapse.lint.reports.lines import one_line
+from overlapse.lint.terminal import wrapped
 from overlapse.lint.tree import shown as shown_path
 
 _LONGEST = 40  # characters of a command's paths that are spelt out
@@ -46,7 +46,7 @@ def closing(
             if not ledger.energies:
                 name = one_line(shown_path(ledger.path))
                 told = f"{name} was written without energies, so what energy.* found counts as new"
-                yield from _wrapped(told, columns)
+                yield from wrapped(told, columns).split("\n")
     if not shown.rules:
         return
     yield "to go on:"
@@ -70,10 +70,3 @@ def _words(paths: Sequence[Path]) -> str:
     odd = any(name.startswith("-") and name != "-" for name in names)
     words = shlex.join(["--", *names] if odd else names)
     return words if len(words) <= _LONGEST and words.isprintable() else "PATHS"
-
-
-def _wrapped(text: str, columns: int) -> list[str]:
-    told = fill(
-        text, columns, subsequent_indent="  ", break_long_words=False, break_on_hyphens=False
-    )
-    return told.split("\n")

@@ -26,8 +26,10 @@ def read_all(
 ) -> tuple[list[Geometry], list[FileAudit]]:
     """All geometries that can be read, and the files that cannot, with the reason.
 
-    texts: name and content of paths that are no files.
+    texts: name and content of paths that are no files.  Raises GeometryError where nothing can be
+    read.
     """
+    paths = list(paths)
     found: list[Geometry] = []
     unread: list[FileAudit] = []
     for path in geometry_files(paths):
@@ -38,6 +40,10 @@ def read_all(
             unread.append(FileAudit(str(path), problem=f"{path}: {problem.strerror or problem}"))
         except GeometryError as problem:
             unread.append(FileAudit(str(path), problem=str(problem)))
+    if not found:
+        told = "\n".join(audit.problem for audit in unread)
+        named = ", ".join(map(str, paths))
+        raise GeometryError(told or f"no geometry in {named}: folders hold .xyz files")
     return found, unread
 
 

@@ -4,6 +4,7 @@ from collections.abc import Iterable, Iterator
 from itertools import groupby
 from textwrap import fill
 
+from overlapse.lint.terminal import wrapped
 from overlapse.rules.registry import Rule
 
 _ACCEPT = (
@@ -18,12 +19,12 @@ _MEND_ALSO = "overlapse mend --also {name} FILE shows what would change"
 def page(rule: Rule, width: int) -> str:
     """Everything a rule says of itself, wrapped to ``width`` columns."""
     text = rule.explanation
-    parts = [f"{rule.name}\n{'=' * len(rule.name)}", _filled(text.what, width)]
-    parts += [_filled(paragraph, width) for paragraph in _paragraphs(text.why)]
+    parts = [f"{rule.name}\n{'=' * len(rule.name)}", wrapped(text.what, width, below="")]
+    parts += [wrapped(paragraph, width, below="") for paragraph in _paragraphs(text.why)]
     for name, words in _facts(rule):
         first, *others = _paragraphs(words)
-        parts.append(_filled(f"{name}: {first}", width, "  "))
-        parts += [_filled(f"  {other}", width, "  ") for other in others]
+        parts.append(wrapped(f"{name}: {first}", width))
+        parts += [wrapped(f"  {other}", width) for other in others]
     parts += [f"{name}:\n\n{_indented(sample)}" for name, sample in _samples(rule)]
     return "\n\n".join(filter(None, parts))
 
@@ -122,12 +123,6 @@ def _samples(rule: Rule) -> Iterator[tuple[str, str]]:
 
 def _paragraphs(text: str) -> list[str]:
     return [" ".join(paragraph.split()) for paragraph in text.split("\n\n")]
-
-
-def _filled(text: str, width: int, indent: str = "") -> str:
-    return fill(
-        text, width, subsequent_indent=indent, break_on_hyphens=False, break_long_words=False
-    )
 
 
 def _escaped(text: str) -> str:

@@ -2,13 +2,12 @@
 
 import json
 from collections.abc import Iterator, Sequence
-from textwrap import fill
 from typing import Any, TextIO
 
 from overlapse.lint.describe import ranges
 from overlapse.lint.relating import LEVELS, Compared, FileRelation, SetRelation
 from overlapse.lint.reports.lines import one_line
-from overlapse.lint.terminal import width
+from overlapse.lint.terminal import width, wrapped
 from overlapse.rules.compare.relation import Relation
 from overlapse.rules.compare.sides import Difference, Spot
 
@@ -110,9 +109,7 @@ def _place(spot: Spot, document: Compared) -> str:
 
 def _wrapped(line: str, columns: int) -> str:
     indent = " " * (len(line) - len(line.lstrip()) + 2)
-    return fill(
-        line, columns, subsequent_indent=indent, break_long_words=False, break_on_hyphens=False
-    )
+    return wrapped(line, columns, below=indent)
 
 
 def _summary(found: Sequence[FileRelation]) -> str:

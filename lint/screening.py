@@ -12,7 +12,7 @@ from typing import Any, NamedTuple
 import numpy as np
 
 from overlapse.grammar import geometry as geometries
-from overlapse.grammar.geometry import Frame, Geometry, GeometryError, Unit
+from overlapse.grammar.geometry import Frame, Geometry, Unit
 from overlapse.grammar.model import Document, Fault
 from overlapse.grammar.reading import read_bytes
 from overlapse.lint import memory, tree
@@ -272,9 +272,6 @@ def screen_files(
     chosen = [(use, read_basis(use.path, tree.content(use.path))) for use in uses]
     made = shelf(documents, chosen, wanted=label, spherical=spherical)
     read, unread = read_all([geometry], unit, {})
-    if not read:
-        told = "\n".join(audit.problem for audit in unread)
-        raise GeometryError(told or f"no geometry in {geometry}: folders hold .xyz files")
     found, audits = tasks(made, read)
     limit = memory.allowed()
     probes = [measure(task, made, wanted, limit) for task in found]

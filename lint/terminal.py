@@ -2,6 +2,7 @@
 
 import os
 import shutil
+from textwrap import fill
 from typing import TextIO
 
 WIDTH = 96  # where nobody can tell
@@ -18,6 +19,21 @@ def width(out: TextIO) -> int:
     else:
         return WIDTH
     return min(max(columns, _NARROWEST), _WIDEST)
+
+
+def wrapped(text: str, columns: int, *, first: str = "", below: str = "  ") -> str:
+    """Text in lines of so many columns; words are never broken.
+
+    first, below: what the first line and those below it begin with.
+    """
+    return fill(
+        text,
+        columns,
+        initial_indent=first,
+        subsequent_indent=below,
+        break_long_words=False,
+        break_on_hyphens=False,
+    )
 
 
 def coloured(out: TextIO) -> bool:

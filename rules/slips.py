@@ -34,17 +34,22 @@ def slips(word: str) -> Iterator[Slip]:
                 yield Slip(changed, value, told)
 
 
+def turned(word: str) -> str:
+    """The number with the other sign, as it would be typed."""
+    return word[1:] if word.startswith("-") else f"-{word.lstrip('+')}"
+
+
 def _changes(word: str) -> Iterator[tuple[str, str]]:
     digits = [at for at, sign in enumerate(word) if sign.isdigit()]
     power = next((at for at, sign in enumerate(word) if sign in "EeDd"), len(word))
     mantissa, tail = word[:power], word[power:]
-    yield (word[1:] if word[0] == "-" else "-" + word.lstrip("+")), "sign lost or added"
+    yield turned(word), "sign lost or added"
     value = float(word.translate(FORTRAN))
     for factor in (10.0, 0.1, 100.0, 0.01):
         yield _moved(mantissa, factor) + tail, "decimal point moved"
     if tail:
-        turned = tail.replace("-", "+") if "-" in tail else tail[0] + "-" + tail[1:].lstrip("+")
-        yield mantissa + turned, "sign of the power of ten lost or added"
+        other = tail.replace("-", "+") if "-" in tail else tail[0] + "-" + tail[1:].lstrip("+")
+        yield mantissa + other, "sign of the power of ten lost or added"
     inside = [at for at in digits if at < power]
     for first, second in pairwise(inside):
         if word[first] != word[second]:

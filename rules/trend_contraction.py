@@ -7,10 +7,10 @@ from overlapse.rules.finding import Finding
 from overlapse.rules.normalisation import spoiled_shells
 from overlapse.rules.registry import rule
 from overlapse.rules.rowwise.norms import is_vouched
-from overlapse.rules.rowwise.odd_told import REMEDY, number_at, oddities, told, turned_word
+from overlapse.rules.rowwise.odd_told import REMEDY, oddities, told
 from overlapse.rules.rowwise.overlaps import OddOverlap, odd_overlaps
 from overlapse.rules.rowwise.signs import OddSign, odd_signs
-from overlapse.rules.slips import likeliest
+from overlapse.rules.slips import likeliest, turned
 
 
 @rule("contraction.trend")
@@ -125,7 +125,7 @@ def coefficients(
         is_confirmed = other is not None and (other.row, other.column) == (odd.row, odd.column)
         if odd.surprise < surprise * odd.strictness and not is_confirmed:
             continue
-        value = number_at(odd.block, odd.shell, odd.row, odd.column)
+        value = odd.value
         is_far = odd.surprise >= loud * odd.strictness and odd.low <= -value <= odd.high
         silent.add(key)
         # Two witnesses that agree make a warning.
@@ -138,7 +138,7 @@ def coefficients(
     for members, norms in zip(case.sets, case.norms, strict=True):
         for sign in odd_signs(members):
             key = id(sign.block), sign.shell
-            value = number_at(sign.block, sign.shell, sign.row, sign.column)
+            value = sign.block.shells[sign.shell].number(sign.row, sign.column)
             place = sign.block, sign.shell, sign.row, sign.column
             if key not in silent and not is_vouched(norms, *place, -value):
                 silent.add(key)
@@ -153,7 +153,7 @@ def _turned(case: Case, odd: OddSign, value: float) -> Finding:
         "warning" if len(odd.beside) > 1 else "note",
         f"suspect: coefficient {word} has another sign than in the same place of "
         f"{' and '.join(odd.beside)}, while all others of the contraction agree; "
-        f"sign lost or added: {turned_word(word)} would fit",
+        f"sign lost or added: {turned(word)} would fit",
         row=odd.row,
         column=odd.column,
         measured=value,

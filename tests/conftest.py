@@ -5,7 +5,7 @@ import os
 import pytest
 from hypothesis import settings
 
-pytest.register_assert_rewrite("broken")
+pytest.register_assert_rewrite("broken", "staging")
 
 # The same examples in every run: what fails here fails for everybody.  `HYPOTHESIS_PROFILE=wide`
 # looks for new ones.

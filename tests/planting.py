@@ -8,8 +8,9 @@ import random
 import re
 from collections.abc import Callable
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cache, cached_property
 from itertools import pairwise
+from pathlib import Path
 
 from overlapse.grammar.elements import number_of, row_of
 from overlapse.grammar.model import Block, Document, Shell, Span
@@ -414,3 +415,12 @@ def _key(finding: Finding, slip: Planted) -> tuple[object, ...]:
     # An edit of one number leaves all lines where they are; of others only the counts compare.
     line = finding.line if slip.shell else None
     return finding.rule, finding.severity, finding.element, finding.shell, line
+
+
+@cache
+def bundled(name: str) -> Published:
+    """A set of those bundled with PySCF, by its path below their folder without the ending."""
+    import pyscf  # not everywhere; whoever asks has made sure of it
+
+    folder = Path(pyscf.__file__).parent / "gto" / "basis"
+    return Published(name, (folder / f"{name}.dat").read_text("latin-1"))

@@ -320,15 +320,14 @@ def _geometries(
     paths: Sequence[Path], unit: "Unit | None", named: str
 ) -> "tuple[list[Geometry], list[FileAudit]]":
     """The geometries, and of several files those that cannot be read."""
+    from overlapse.grammar.geometry import GeometryError
     from overlapse.lint.geometries import read_all
 
     texts = {_STDIN: (named, sys.stdin.buffer.read())} if _STDIN in paths else {}
-    found, unread = read_all(paths, unit, texts)
-    if not found:
-        told = "\n".join(audit.problem for audit in unread)
-        named_so = ", ".join(map(str, paths))
-        raise Unreadable(told or f"no geometry in {named_so}: folders hold .xyz files")
-    return found, unread
+    try:
+        return read_all(paths, unit, texts)
+    except GeometryError as problem:
+        raise Unreadable(str(problem)) from problem
 
 
 @contextmanager

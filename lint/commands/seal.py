@@ -144,20 +144,15 @@ def _write(seals: "SealFile", work: _Work) -> None:
 
 
 def _write_text(out: TextIO, seals: "SealFile", work: _Work, write: bool) -> None:
-    from textwrap import fill
 
     from overlapse.lint.reports.lines import one_line
-    from overlapse.lint.terminal import width
+    from overlapse.lint.terminal import width, wrapped
     from overlapse.lint.tree import shown
 
     columns = width(out)
 
     def say(words: str) -> None:
-        told = fill(
-            one_line(words), columns, subsequent_indent="  ",
-            break_long_words=False, break_on_hyphens=False,
-        )  # fmt: skip
-        out.write(f"{told}\n")
+        out.write(f"{wrapped(one_line(words), columns)}\n")
 
     for each in work.checked:
         if each.state != "as sealed" and not (write and each.state == "not sealed"):

@@ -3,12 +3,11 @@
 from collections import Counter
 from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass, field
-from textwrap import fill
 from typing import TextIO
 
 from overlapse.lint.engine import FileAudit
 from overlapse.lint.reports.lines import one_line
-from overlapse.lint.terminal import width
+from overlapse.lint.terminal import width, wrapped
 from overlapse.rules.finding import Finding, Number
 
 Paint = Callable[[str, str], str]
@@ -109,14 +108,7 @@ def _spaced(*parts: str) -> str:
 
 
 def _wrapped(text: str, indent: str, columns: int) -> str:
-    return fill(
-        one_line(text),
-        columns,
-        initial_indent=indent,
-        subsequent_indent=indent + "  ",
-        break_long_words=False,
-        break_on_hyphens=False,
-    )
+    return wrapped(one_line(text), columns, first=indent, below=indent + "  ")
 
 
 def _number(value: Number) -> str:

@@ -200,7 +200,7 @@ def spot_of(block: Block, finding: Finding) -> Spot | None:
     if cell is None:
         return Spot(index, chosen)
     row, at = cell
-    read = shell.exponents[row] if at is None else shell.coefficients[row, at]
+    read = shell.number(row, at)
     proposed = finding.expected
     # A slip that the reader saw through is drawn with the likely number anyway.
     if not isinstance(proposed, float) or proposed == read or not isfinite(proposed):

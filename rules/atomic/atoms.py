@@ -80,10 +80,7 @@ class Atom:
 
     def value(self, number: Number) -> float:
         """A printed number's value in the model."""
-        shell = self.block.shells[number.shell]
-        if number.column is None:
-            return float(shell.exponents[number.row])
-        return float(shell.coefficients[number.row, number.column])
+        return self.block.shells[number.shell].number(number.row, number.column)
 
     def changed(self, number: Number, value: float) -> "Atom | None":
         """The same atom with another value for one number; None where none can be computed."""

@@ -42,20 +42,20 @@ def cleared(case: Case, ensemble: Ensemble) -> Iterator[Finding]:
         expected = ensemble.usual(own)
         if ensemble.relativistic and expected.others < 3:
             continue
-        places = _places(case, own)
+        places = _places(own)
         for finding in about:
             number = places.get((finding.line, finding.column))
             if number is not None and _contradicts(own, expected, number, finding):
                 yield finding
 
 
-def _places(case: Case, own: Steps) -> dict[tuple[int, int], Number]:
+def _places(own: Steps) -> dict[tuple[int, int], Number]:
     """The numbers that the energy feels, by line and column."""
     found = {}
     for number in own.numbers:
-        cells = own.atom.block.shells[number.shell].cells
-        if cells is not None:
-            place = case.document.source.place(cells.span(number.row, number.column)[0])
+        shell = own.atom.block.shells[number.shell]
+        if shell.cells is not None:
+            place = shell.place(number.row, number.column)
             found[place.line, place.column] = number
     return found
 

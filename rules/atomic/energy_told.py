@@ -161,10 +161,10 @@ _BESIDE = {
 
 def _found(case: Case, block: Block, number: Number, printed: float, value: float) -> list[str]:
     """What other rules say of the same number, where they do not contradict."""
-    cells = block.shells[number.shell].cells
-    if cells is None:
+    shell = block.shells[number.shell]
+    if shell.cells is None:
         return []
-    place = case.document.source.place(cells.span(number.row, number.column)[0])
+    place = shell.place(number.row, number.column)
     told = []
     for finding in (f for found in case.found.values() for f in found):
         what = _BESIDE.get(finding.rule) or _BESIDE.get(finding.rule.partition(".")[0])
@@ -231,11 +231,6 @@ def _at(
 ) -> Finding:
     shell = block.shells[number.shell]
     function = next((f for f in shell.functions() if f.column == number.column), None)
-    value = (
-        float(shell.exponents[number.row])
-        if number.column is None
-        else float(shell.coefficients[number.row, number.column])
-    )
     return case.at_shell(
         block,
         number.shell,
@@ -244,7 +239,7 @@ def _at(
         function=function,
         row=number.row,
         column=number.column,
-        measured=value,
+        measured=shell.number(number.row, number.column),
         expected=expected,
         witnesses=witnesses,
         remedy=_REMEDY,

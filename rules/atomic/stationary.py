@@ -140,13 +140,9 @@ class Steps:
 
 def _digits(atom: Atom, number: Number) -> float:
     """Standard error of ln|number| from rounding to its printed digits."""
-    shell = atom.block.shells[number.shell]
     exponents, coefficients = _spellings(atom)[number.shell]
-    if number.column is None:
-        word, value = exponents[number.row], float(shell.exponents[number.row])
-    else:
-        word = coefficients[number.row][number.column]
-        value = float(shell.coefficients[number.row, number.column])
+    column, value = number.column, atom.value(number)
+    word = exponents[number.row] if column is None else coefficients[number.row][column]
     return half_unit(word) / abs(value) / 3**0.5 if value else 0.0
 
 

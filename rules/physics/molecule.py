@@ -51,6 +51,27 @@ class Field(NamedTuple):
         return energies, orbitals
 
 
+def filled(
+    atoms: Sequence[Placed], empty: Sequence[int], charge: int, unpaired: int | None
+) -> tuple[list[int], tuple[int, int]]:
+    """Nuclear charges, 0 for an empty centre, and electrons of either spin (see `outlook.foresee`).
+
+    A charge above that of the nuclei leaves less than no electrons.
+    """
+    nuclei = [0 if k in set(empty) else a.block.atomic_number for k, a in enumerate(atoms)]
+    electrons = sum(nuclei) - charge
+    up = min((electrons + (electrons % 2 if unpaired is None else unpaired)) // 2, electrons)
+    return nuclei, (up, electrons - up)
+
+
+def independent(overlap: Floats, least: float) -> Floats:
+    """Orthonormal combinations, shape (n, m), from eigenvalues of S above ``least``."""
+    values, vectors = np.linalg.eigh(overlap)
+    enough = values > least
+    found: Floats = vectors[:, enough] / np.sqrt(values[enough])
+    return found
+
+
 def affordable(atoms: Sequence[Placed], size: int) -> bool:
     """Whether a field for ``size`` functions takes seconds and moderate memory."""
     values = float(points_of(len(atoms)) * size)
@@ -81,8 +102,7 @@ def molecular_field(
     """
     grid = Grid(np.array([atom.position for atom in atoms], dtype=float).reshape(-1, 3))
     values = grid.values(atoms)
-    kept, vectors = np.linalg.eigh(overlap)
-    x = vectors[:, kept > KEPT] / np.sqrt(kept[kept > KEPT])
+    x = independent(overlap, KEPT)
     gas = superposed_field(grid, values, nuclei, x, kinetic, electrons)
     start = Field((kinetic + gas,) * 2, electrons, exact=False)
     if not exchange or not exchange_affordable(len(atoms), electrons):

@@ -52,6 +52,7 @@ from overlapse.rules.physics.molecule import (
     Field,
     affordable,
     exchange_affordable,
+    filled,
     molecular_field,
 )
 from overlapse.rules.physics.placed import Functions, Placed
@@ -105,14 +106,11 @@ def foresee(
     """
     if smallest is None:
         smallest = _smallest(overlap)
-    nuclei = [0 if k in set(empty) else a.block.atomic_number for k, a in enumerate(atoms)]
-    electrons = sum(nuclei) - charge
-    whole = all(atom.block.potential is None for atom in atoms) and electrons > 0
+    nuclei, pair = filled(atoms, empty, charge, unpaired)
+    whole = all(atom.block.potential is None for atom in atoms) and sum(pair) > 0
     doubtful = _rounding(overlap) <= smallest < LOOKED_AT
     if kinetic is None or not (doubtful and whole and affordable(atoms, len(overlap))):
         return outlook(overlap, kinetic, functions, smallest=smallest)
-    up = min((electrons + (electrons % 2 if unpaired is None else unpaired)) // 2, electrons)
-    pair = (up, electrons - up)
 
     def seen(exchange: bool) -> Outlook:
         field = molecular_field(atoms, nuclei, overlap, kinetic, pair, exchange=exchange)

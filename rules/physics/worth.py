@@ -22,7 +22,13 @@ from collections.abc import Sequence
 import numpy as np
 
 from overlapse.grammar.model import Floats
-from overlapse.rules.physics.molecule import Field, affordable, molecular_field
+from overlapse.rules.physics.molecule import (
+    Field,
+    affordable,
+    filled,
+    independent,
+    molecular_field,
+)
 from overlapse.rules.physics.outlook import DIGITS, GAP
 from overlapse.rules.physics.placed import Ints, Placed
 
@@ -35,7 +41,7 @@ class Worth:
 
     def __init__(self, overlap: Floats, kinetic: Floats, field: Field) -> None:
         self._overlap = overlap
-        x = _independent(overlap)
+        x = independent(overlap, DIGITS)
         self._spins = []
         for spin, (fock, count) in enumerate(zip(field.focks, field.electrons, strict=True)):
             if count == 0:
@@ -53,21 +59,13 @@ class Worth:
         Infinite where they cannot hold the electrons.
         """
         part = np.ix_(kept, kept)
-        x = _independent(self._overlap[part])
+        x = independent(self._overlap[part], DIGITS)
         if x.shape[1] < max(count for _, count, _ in self._spins):
             return float("inf")
         return sum(
             max(0.0, float(np.linalg.eigvalsh(x.T @ fock[part] @ x)[:count].sum()) - total)
             for fock, count, total in self._spins
         )
-
-
-def _independent(overlap: Floats) -> Floats:
-    """Orthonormal combinations, but for those that digits do not suffice for."""
-    values, vectors = np.linalg.eigh(overlap)
-    enough = values > DIGITS
-    found: Floats = vectors[:, enough] / np.sqrt(values[enough])
-    return found
 
 
 def worth_of(
@@ -84,17 +82,14 @@ def worth_of(
     empty: indices of atoms that only carry functions.  charge: of the molecule.  unpaired:
     electrons, the fewest possible where None.
     """
-    nuclei = [0 if k in set(empty) else a.block.atomic_number for k, a in enumerate(atoms)]
-    electrons = sum(nuclei) - charge
+    nuclei, pair = filled(atoms, empty, charge, unpaired)
     if (
-        electrons <= 0
+        sum(pair) <= 0
         or any(atom.block.potential is not None for atom in atoms)
         or not affordable(atoms, len(overlap))
     ):
         return None
-    up = min((electrons + (electrons % 2 if unpaired is None else unpaired)) // 2, electrons)
-    pair = (up, electrons - up)
-    if (np.linalg.eigvalsh(overlap) > DIGITS).sum() < up:
+    if (np.linalg.eigvalsh(overlap) > DIGITS).sum() < pair[0]:
         return None
     field = molecular_field(atoms, nuclei, overlap, kinetic, pair, exchange=False)
     return Worth(overlap, kinetic, field)

@@ -13,7 +13,7 @@ from overlapse.rules.rowwise.progressions import (
     odd_exponents,
     oddest_of_shells,
 )
-from overlapse.rules.slips import Slip, copied, is_size_of_a_slip, likeliest
+from overlapse.rules.slips import Slip, copied, is_size_of_a_slip, likeliest, turned
 
 _LEAST = 4.0  # surprise below which a number is not looked at
 REMEDY = "compare with the original publication: digits, sign or point may have slipped"
@@ -31,7 +31,7 @@ def oddities(case: Case) -> list[Oddity]:
 def _oddities(case: Case) -> Iterator[Oddity]:
     for members, norms in zip(case.sets, case.norms, strict=True):
         for odd in (*odd_exponents(members, _LEAST), *odd_coefficients(members, _LEAST)):
-            value = number_at(odd.block, odd.shell, odd.row, odd.column)
+            value = odd.value
             if (
                 odd.is_alone
                 and is_size_of_a_slip(value, odd.expected)
@@ -55,12 +55,6 @@ def steps(case: Case, least: float) -> list[Step]:
     return case.shared(f"steps {least}", lambda: list(found()))
 
 
-def number_at(block: Block, shell: int, row: int, column: int | None) -> float:
-    """An exponent, or a coefficient of a column."""
-    table = block.shells[shell].exponents if column is None else block.shells[shell].coefficients
-    return float(table[row] if column is None else table[row, column])
-
-
 def told(
     case: Case,
     odd: Oddity,
@@ -81,7 +75,7 @@ def told(
         message += f"; it is the number of {place}"
     elif slip is not None:
         message += f"; {slip.told}: {slip.word} would fit"
-    value = number_at(odd.block, odd.shell, odd.row, odd.column)
+    value = odd.value
     return case.at_shell(
         odd.block,
         odd.shell,
@@ -106,16 +100,10 @@ def slip_of(odd: Oddity) -> Slip | None:
     word = odd.block.shells[odd.shell].spelling(odd.row, odd.column)
     number = likeliest(word, odd.low, odd.high, odd.expected)
     if odd.column is not None:
-        turned = turned_word(word)
-        value = -number_at(odd.block, odd.shell, odd.row, odd.column)
+        value = -odd.value
         if odd.low <= value <= odd.high:
-            return Slip(turned, value, "sign lost or added")
+            return Slip(turned(word), value, "sign lost or added")
     return number
-
-
-def turned_word(word: str) -> str:
-    """The number with the other sign, as it would be typed."""
-    return word[1:] if word.startswith("-") else f"-{word.lstrip('+')}"
 
 
 def borrowed(case: Case, block: Block, index: int, row: int, column: int | None) -> str:

@@ -21,7 +21,7 @@ import numpy.typing as npt
 from overlapse.grammar.model import BasisSet, Block, Floats, Function
 from overlapse.rules.physics.onecentre import primitive_overlap
 from overlapse.rules.physics.prediction import FEWEST, Predictions, predictions
-from overlapse.rules.rowwise.rows import STRETCHES, stretch
+from overlapse.rules.rowwise.rows import in_stretches
 
 # Printed digits and rounding leave this much in an overlap.
 _FINEST = 2e-5
@@ -57,7 +57,7 @@ class OddOverlap(NamedTuple):
     @property
     def is_alone(self) -> bool:
         """Whether the one number explains all departures, and one slip could have made it."""
-        value = float(self.block.shells[self.shell].coefficients[self.row, self.column])
+        value = self.block.shells[self.shell].number(self.row, self.column)
         ratio = value / self.expected if self.expected else 0.0
         is_slip = 0.5 < ratio < 2.0 or any(abs(ratio / r - 1.0) < 0.2 for r in (-1.0, 10.0, 0.1))
         # Sound numbers explain such departures too, by changes of less than this.
@@ -78,10 +78,8 @@ def odd_overlaps(members: BasisSet, least: float) -> list[OddOverlap]:
     """Coefficients that put an overlap off its row by at least ``least``; of an l one at most."""
     groups: dict[tuple[int, int, tuple[int, ...]], dict[int, list[tuple[int, Function]]]] = {}
     blocks: dict[int, Block] = {}
-    for block in members.blocks:
+    for at, block in in_stretches(members):
         z = block.atomic_number
-        if z in blocks or (at := stretch(z, STRETCHES)) < 0:
-            continue
         blocks[z] = block
         by_l: dict[int, list[tuple[int, Function]]] = {}
         for shell, function in block.contracted:

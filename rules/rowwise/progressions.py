@@ -13,7 +13,7 @@ import numpy.typing as npt
 
 from overlapse.grammar.model import BasisSet, Block, Floats, Shell
 from overlapse.rules.physics.prediction import FEWEST, Predictions, alone, beside, predictions
-from overlapse.rules.rowwise.rows import STRETCHES, stretch
+from overlapse.rules.rowwise.rows import STRETCHES, in_stretches, stretch
 
 # Exponents are believed to follow their companions to this, coefficients (in units of their size).
 _FINEST = 0.003
@@ -53,6 +53,11 @@ class Oddity(NamedTuple):
     high: float
     others: int
     disorder: float = 0.0
+
+    @property
+    def value(self) -> float:
+        """The number as it stands."""
+        return self.block.shells[self.shell].number(self.row, self.column)
 
     @property
     def strictness(self) -> float:
@@ -95,10 +100,8 @@ def odd_exponents(members: BasisSet, least: float) -> list[Oddity]:
     """Exponents whose surprise is at least ``least``; of each ladder of an element one."""
     groups: dict[Any, dict[int, list[tuple[int, Shell]]]] = {}
     blocks: dict[int, Block] = {}
-    for block in members.blocks:
+    for at, block in in_stretches(members):
         z = block.atomic_number
-        if z in blocks or (at := stretch(z, STRETCHES)) < 0:
-            continue
         blocks[z] = block
         ladders: dict[int, list[tuple[int, Shell]]] = {}
         for index, shell in enumerate(block.shells):

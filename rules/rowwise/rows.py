@@ -4,7 +4,7 @@ Functions correspond when they have the same l and the same place in blocks of o
 stretch of the periodic table whose functions of that l have the same contraction lengths.
 """
 
-from collections.abc import Container
+from collections.abc import Container, Iterator
 from typing import NamedTuple
 
 import numpy as np
@@ -45,6 +45,16 @@ class Row(NamedTuple):
 def stretch(z: int, stretches: tuple[tuple[int, int], ...]) -> int:
     """Index of the stretch that holds an element, -1 for none."""
     return next((at for at, (low, high) in enumerate(stretches) if low <= z <= high), -1)
+
+
+def in_stretches(members: BasisSet) -> Iterator[tuple[int, Block]]:
+    """The first block of each element of a stretch, with the index of the stretch."""
+    seen: set[int] = set()
+    for block in members.blocks:
+        at = stretch(block.atomic_number, STRETCHES)
+        if at >= 0 and block.atomic_number not in seen:
+            seen.add(block.atomic_number)
+            yield at, block
 
 
 def nearest(z: int, group: Container[int], farthest: int = 2) -> list[int]:

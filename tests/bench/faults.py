@@ -17,17 +17,14 @@ from collections import Counter, defaultdict
 from collections.abc import Iterable
 from concurrent.futures import ProcessPoolExecutor
 from functools import cache
-from pathlib import Path
 from typing import NamedTuple
 
-import pyscf
-from planting import SLIPS, Published, new_findings, planted
+from planting import SLIPS, Published, bundled, new_findings, planted
 
 from overlapse.lint.engine import FileAudit, judge
 from overlapse.rules.finding import Finding
 from overlapse.rules.registry import rules
 
-FOLDER = Path(pyscf.__file__).parent / "gto" / "basis"
 FAMILIES = {
     "Pople": "3-21G 4-31G 6-31G 6-31Gs 6-31+Gs 6-31++Gss 6-311G 6-311++Gss",
     "cc": "cc-pvdz cc-pvtz cc-pvqz aug-cc-pvdz aug-cc-pvtz",
@@ -72,10 +69,9 @@ class Job(NamedTuple):
     energies: bool
 
 
-@cache
 def published(name: str) -> Published:
-    folder = FOLDER / "pople-basis" if "-31" in name or name.startswith("3-21") else FOLDER
-    return Published(name, (folder / f"{name}.dat").read_text("latin-1"))
+    is_pople = "-31" in name or name.startswith("3-21")
+    return bundled(f"pople-basis/{name}" if is_pople else name)
 
 
 @cache

@@ -3,53 +3,36 @@
 import os
 import shutil
 import subprocess
-import sys
 from pathlib import Path
 
 import pytest
+from staging import BROKEN, SOUND, git, new_repository, run
 
 from overlapse.lint.staged import StagedError, staged
 
 pytestmark = pytest.mark.skipif(shutil.which("git") is None, reason="git is not installed")
 
-SOUND = "C 0\nS 2 1.00\n 4.0 0.6\n 0.5 0.55505\nS 1 1.00\n 0.3 1.0\nP 1 1.0\n 0.5 1.0\n****\n"
-BROKEN = SOUND.replace("0.5 0.55505", "O.5 0.55505")
-
-
-def _git(*arguments: str | Path) -> str:
-    identity = ["-c", "user.name=t", "-c", "user.email=t@example.org"]
-    done = subprocess.run(
-        ["git", *identity, *arguments], check=True, capture_output=True, text=True
-    )
-    return done.stdout
-
 
 @pytest.fixture
 def repository(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
-    for name in [name for name in os.environ if name.startswith("GIT_")]:
-        monkeypatch.delenv(name)
-    monkeypatch.chdir(tmp_path)
-    _git("init", "-q")
+    new_repository(tmp_path, monkeypatch)
     return tmp_path
 
 
 def _audit(*arguments: str | Path) -> "subprocess.CompletedProcess[str]":
-    command = [sys.executable, "-c", "from overlapse.lint.cli import main; main()", "audit"]
-    done = subprocess.run([*command, *arguments], capture_output=True, text=True, check=False)
-    assert "Traceback" not in done.stderr
-    return done
+    return run("audit", *arguments)
 
 
 def test_the_index_counts_and_not_the_working_file(repository: Path) -> None:
     file = repository / "a.basis"
     file.write_text(BROKEN)
-    _git("add", "a.basis")
+    git("add", "a.basis")
     file.write_text(SOUND)  # mended, but not staged
     assert _audit("--report", "lines", "a.basis").stdout == ""
     done = _audit("--staged", "--report", "lines", "a.basis")
     assert done.returncode == 1
     assert done.stdout.startswith("a.basis:4:2: error: form.number: C s-1: ")
-    _git("add", "a.basis")
+    git("add", "a.basis")
     file.write_text(BROKEN)
     assert _audit("--staged", "a.basis").returncode == 0
     file.unlink()
@@ -62,7 +45,7 @@ def test_a_folder_is_searched_in_the_index(repository: Path) -> None:
         path.parent.mkdir(parents=True, exist_ok=True)
         path.write_text(SOUND)
     (repository / "sets" / "link.basis").symlink_to("a.basis")
-    _git("add", ".")
+    git("add", ".")
     (repository / "sets" / "new.basis").write_text(SOUND)
     found = [each.target for each in staged([Path("sets")])]
     assert [str(target.path) for target in found] == [
@@ -92,7 +75,7 @@ ODD = [
 def test_odd_names_are_taken_as_they_are(repository: Path, name: str) -> None:
     (repository / name).write_text(SOUND)
     (repository / "other.basis").write_text(BROKEN)
-    _git("add", ".")
+    git("add", ".")
     (found,) = staged([Path(name)])
     assert found.target.path == Path(name)
     assert found.data == SOUND.encode()
@@ -106,7 +89,7 @@ def test_contents_of_any_bytes_come_back(repository: Path) -> None:
         path = Path(f"{k:03d}.basis")
         path.write_bytes(data + str(k).encode() * (k % 3))
         paths.append(path)
-    _git("-c", "core.autocrlf=false", "add", ".")
+    git("-c", "core.autocrlf=false", "add", ".")
     assert [each.data for each in staged(paths)] == [path.read_bytes() for path in paths]
 
 
@@ -123,14 +106,14 @@ def test_what_is_not_staged_is_wrong_use(repository: Path, tmp_path: Path) -> No
 def test_a_conflict_is_said(repository: Path) -> None:
     file = repository / "a.basis"
     file.write_text(SOUND)
-    _git("add", ".")
-    _git("commit", "-qm", "first")
-    _git("checkout", "-qb", "other")
+    git("add", ".")
+    git("commit", "-qm", "first")
+    git("checkout", "-qb", "other")
     file.write_text(SOUND.replace("4.0", "5.0"))
-    _git("commit", "-qam", "second")
-    _git("checkout", "-q", "-")
+    git("commit", "-qam", "second")
+    git("checkout", "-q", "-")
     file.write_text(SOUND.replace("4.0", "6.0"))
-    _git("commit", "-qam", "third")
+    git("commit", "-qam", "third")
     subprocess.run(["git", "merge", "-q", "other"], capture_output=True, check=False)
     with pytest.raises(StagedError, match="in conflict"):
         list(staged([Path("a.basis")]))

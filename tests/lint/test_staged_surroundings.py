@@ -8,6 +8,7 @@ import sys
 from pathlib import Path
 
 import pytest
+from staging import BROKEN, SOUND, git, new_repository, run
 
 from overlapse.lint import tree
 from overlapse.lint.engine import targets
@@ -15,35 +16,18 @@ from overlapse.lint.staged import Index
 
 pytestmark = pytest.mark.skipif(shutil.which("git") is None, reason="git is not installed")
 
-SOUND = "C 0\nS 2 1.00\n 4.0 0.6\n 0.5 0.55505\nS 1 1.00\n 0.3 1.0\nP 1 1.0\n 0.5 1.0\n****\n"
-BROKEN = SOUND.replace("0.5 0.55505", "O.5 0.55505")
 OTHER = SOUND.replace(" 0.3 1.0", " 0.31 1.0")
 
 
-def _git(*arguments: str | Path) -> None:
-    identity = ["-c", "user.name=t", "-c", "user.email=t@example.org"]
-    subprocess.run(["git", *identity, *arguments], check=True, capture_output=True)
-
-
-def _run(*arguments: str | Path) -> "subprocess.CompletedProcess[str]":
-    command = [sys.executable, "-c", "from overlapse.lint.cli import main; main()"]
-    done = subprocess.run([*command, *arguments], capture_output=True, text=True, check=False)
-    assert "Traceback" not in done.stderr
-    return done
-
-
 def _found(*arguments: str | Path) -> list[str]:
-    done = _run("audit", "--staged", "--report", "lines", *arguments)
+    done = run("audit", "--staged", "--report", "lines", *arguments)
     assert done.returncode in (0, 1), done.stderr
     return done.stdout.splitlines()
 
 
 @pytest.fixture
 def repository(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
-    for name in [name for name in os.environ if name.startswith("GIT_")]:
-        monkeypatch.delenv(name)
-    monkeypatch.chdir(tmp_path)
-    _git("init", "-q")
+    new_repository(tmp_path, monkeypatch)
     (tmp_path / "sets").mkdir()
     (tmp_path / "sets" / "a.basis").write_text(SOUND)
     return tmp_path
@@ -51,19 +35,19 @@ def repository(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
 
 def test_the_seal_that_is_staged_counts(repository: Path) -> None:
     file = repository / "sets" / "a.basis"
-    assert _run("seal", "--write", "sets").returncode == 0
-    _git("add", ".")
+    assert run("seal", "--write", "sets").returncode == 0
+    git("add", ".")
     file.write_text(OTHER)
     assert not _found("sets")  # the change is not staged
-    _git("add", "sets")
+    git("add", "sets")
     (line,) = _found("sets/a.basis")
     assert ": drift.seal: " in line
     # Sealed anew, but the seal is not staged yet.
-    assert _run("seal", "--write", "sets").returncode == 0
+    assert run("seal", "--write", "sets").returncode == 0
     assert len(_found("sets")) == 1
-    _git("add", ".")
+    git("add", ".")
     assert not _found("sets")
-    assert _run("audit", "--report", "lines", "sets").stdout == ""
+    assert run("audit", "--report", "lines", "sets").stdout == ""
 
 
 def test_the_reference_that_is_staged_counts(repository: Path) -> None:
@@ -71,18 +55,18 @@ def test_the_reference_that_is_staged_counts(repository: Path) -> None:
     published = repository / "published" / "a.basis"
     published.parent.mkdir()
     published.write_text(OTHER)
-    _git("add", ".")
+    git("add", ".")
     published.write_text(SOUND)
     (line,) = _found("sets")
     assert ": drift.reference: " in line
-    _git("add", ".")
+    git("add", ".")
     assert not _found("sets")
     # Its working file is gone, what is staged is not; then that is gone as well.
     published.unlink()
     (repository / "sets" / "a.basis").write_text(OTHER)
-    _git("add", "sets")
+    git("add", "sets")
     assert len(_found("sets")) == 1
-    _git("rm", "-q", "--cached", "published/a.basis")
+    git("rm", "-q", "--cached", "published/a.basis")
     assert not _found("sets/a.basis")
 
 
@@ -91,7 +75,7 @@ def test_a_reference_that_git_does_not_know_is_taken_from_the_disk(repository: P
     outside.mkdir()
     (outside / "a.basis").write_text(OTHER)
     (repository / "overlapse.toml").write_text(f"reference = '{outside}'\n")
-    _git("add", ".")
+    git("add", ".")
     assert len(_found("sets")) == 1
 
 
@@ -102,14 +86,14 @@ def test_a_parent_is_read_as_it_is_staged(repository: Path) -> None:
     small.write_text("! 6-31G\n" + plain)
     decorated = plain.replace("****", "D 1 1.00\n 0.8 1.0\n****")
     large.write_text("! 6-31G*\n" + decorated)
-    _git("add", ".")
+    git("add", ".")
     small.write_text("! 6-31G\n" + plain.replace("40.0", "41.0"))
 
     def contained() -> list[str]:
         return [line for line in _found("sets") if "label.contains" in line]
 
     assert not contained()
-    _git("add", ".")
+    git("add", ".")
     assert len(contained()) == 1
 
 
@@ -117,32 +101,32 @@ def test_settings_and_ledger_are_those_that_are_staged(repository: Path) -> None
     (repository / "sets" / "a.basis").write_text(BROKEN)
     settings = repository / "overlapse.toml"
     settings.write_text('severity."form.number" = "note"\n')
-    _git("add", ".")
+    git("add", ".")
     settings.write_text('severity."form.number" = "off"\n')
     (line,) = _found("sets")
     assert ": note: form.number: " in line
     settings.unlink()
     assert _found("sets") == [line]
-    _git("rm", "-q", "--cached", "overlapse.toml")
+    git("rm", "-q", "--cached", "overlapse.toml")
     assert ": error: form.number: " in _found("sets")[0]
-    assert _run("audit", "--write-ledger", "sets").returncode == 0
+    assert run("audit", "--write-ledger", "sets").returncode == 0
     assert not _found("sets")  # git does not know the ledger: it is taken from the disk
-    _git("add", ".")
+    git("add", ".")
     (repository / "overlapse.ledger.json").write_text("{}")
     assert not _found("sets")
-    assert _run("audit", "sets").returncode == 2
+    assert run("audit", "sets").returncode == 2
 
 
 def test_wrong_settings_are_told_as_staged(repository: Path) -> None:
     settings = repository / "overlapse.toml"
     settings.write_text("fail-att = 'note'\n")
-    _git("add", ".")
+    git("add", ".")
     settings.write_text("fail-at = 'note'\n")
-    done = _run("audit", "--staged", "sets")
+    done = run("audit", "--staged", "sets")
     assert done.returncode == 2
     assert "overlapse.toml:1:1: " in done.stderr
     assert "(as it is staged)" in done.stderr
-    assert _run("audit", "--staged", "--write-ledger", "sets").returncode == 2
+    assert run("audit", "--staged", "--write-ledger", "sets").returncode == 2
 
 
 @pytest.mark.parametrize("named", ["xyz/two.xyz", "xyz"])
@@ -155,7 +139,7 @@ def test_a_probe_measures_what_is_staged(repository: Path, named: str) -> None:
     geometry.write_text("2\ninvented\nC 0 0 0\nC 0 0 1.3\n")
     crowded = SOUND.replace("P 1", "S 1 1.00\n 0.3000001 1.0\nP 1")
     (repository / "sets" / "a.basis").write_text(crowded)
-    _git("add", ".")
+    git("add", ".")
     (repository / "sets" / "a.basis").write_text(SOUND)
     if named == "xyz":
         geometry.unlink()
@@ -167,8 +151,8 @@ def test_a_probe_measures_what_is_staged(repository: Path, named: str) -> None:
 def test_the_tree_is_the_index_over_the_disk(repository: Path) -> None:
     (repository / "notes").write_text("of the disk")
     (repository / "link.basis").symlink_to("sets/a.basis")
-    _git("add", "sets", "link.basis")
-    _git("commit", "-qm", "first")
+    git("add", "sets", "link.basis")
+    git("commit", "-qm", "first")
     (repository / "sets" / "a.basis").write_text(OTHER)
     (repository / "sets" / "b.basis").write_text(OTHER)
     with tree.staged(Index()):
@@ -178,23 +162,23 @@ def test_the_tree_is_the_index_over_the_disk(repository: Path) -> None:
         assert tree.is_folder("sets") and not tree.is_folder("sets/a.basis")
         assert [str(t.path) for t in targets([Path("sets")])] == ["sets/a.basis", "sets/b.basis"]
         before = tree.stamp("sets/a.basis")
-    _git("rm", "-q", "--cached", "sets/a.basis")
+    git("rm", "-q", "--cached", "sets/a.basis")
     with tree.staged(Index()):
         assert tree.stamp("sets/a.basis") is None
         with pytest.raises(FileNotFoundError, match="staged to be deleted"):
             tree.content("sets/a.basis")
         assert [str(t.path) for t in targets([Path("sets")])] == ["sets/b.basis"]
-    _git("add", ".")
+    git("add", ".")
     with tree.staged(Index()):
         assert tree.stamp("sets/a.basis") != before
     assert tree.content("sets/a.basis") == OTHER.encode()
 
 
 def test_from_a_folder_inside_and_without_a_first_commit(repository: Path) -> None:
-    _git("add", ".")
+    git("add", ".")
     os.chdir(repository / "sets")
     (repository / "sets" / "a.basis").unlink()
-    found = json.loads(_run("audit", "--staged", "--report", "json", ".").stdout)
+    found = json.loads(run("audit", "--staged", "--report", "json", ".").stdout)
     assert [file["path"] for file in found["files"]] == ["a.basis"]
 
 
@@ -206,12 +190,12 @@ def test_as_a_hook_it_judges_what_each_commit_will_hold(repository: Path) -> Non
     program = f'"{sys.executable}" -c "from overlapse.lint.cli import main; main()"'
     hook.write_text(f"#!/bin/sh\nexec {program} audit --staged --quiet sets\n")
     hook.chmod(0o755)
-    _git("add", ".")
-    _git("commit", "-qm", "sound")
+    git("add", ".")
+    git("commit", "-qm", "sound")
     (repository / "sets" / "a.basis").write_text(BROKEN)
     other.write_text(OTHER)
     with pytest.raises(subprocess.CalledProcessError):
-        _git("commit", "-qam", "both")  # from an index of its own
-    _git("commit", "-qm", "the sound one alone", "sets/b.basis")
+        git("commit", "-qam", "both")  # from an index of its own
+    git("commit", "-qm", "the sound one alone", "sets/b.basis")
     with pytest.raises(subprocess.CalledProcessError):
-        _git("commit", "-qm", "the broken one alone", "sets/a.basis")
+        git("commit", "-qm", "the broken one alone", "sets/a.basis")

@@ -1,32 +1,24 @@
 """Slips planted in published sets, bundled with PySCF: a short run of tests/bench/faults.py."""
 
 from functools import cache
-from pathlib import Path
 
 import pytest
-from planting import Published, new_findings, planted
+from planting import bundled, new_findings, planted
 
 pyscf = pytest.importorskip(
     "pyscf", reason="PySCF has no wheel here; install the extra 'oracle' to run this check"
 )
 from overlapse.lint.engine import FileAudit  # noqa: E402
 
-FOLDER = Path(pyscf.__file__).parent / "gto" / "basis"
-
-
-@cache
-def _published(name: str) -> Published:
-    return Published(name, (FOLDER / f"{name}.dat").read_text("latin-1"))
-
 
 @cache
 def _clean(name: str) -> FileAudit:
-    return _published(name).judged()
+    return bundled(name).judged()
 
 
 @cache
 def _is_found(name: str, kind: str, seed: str) -> bool | None:
-    published = _published(name)
+    published = bundled(name)
     clean = _clean(name)
     slip = planted(published, kind, seed)
     if slip is None:
@@ -62,7 +54,7 @@ def test_gross_slips_are_found(kind: str) -> None:
 
 @pytest.mark.parametrize("name", SETS)
 def test_sound_sets_carry_few_suspicions(name: str) -> None:
-    published = _published(name)
+    published = bundled(name)
     suspects = [f for f in published.judged().findings if "suspect" in f.message]
     assert len(suspects) <= 0.2 * len(published.blocks)
     assert not [f for f in suspects if f.severity != "note"]
@@ -72,7 +64,7 @@ def test_sound_sets_carry_few_suspicions(name: str) -> None:
 # the other elements of the row, not from a source.
 def test_a_known_oddity_is_noted_with_what_the_row_suggests() -> None:
     # 3-21G copper, outer sp exponent 0.000751, where Ni and Zn have about 0.04.
-    published = _published("pople-basis/3-21G")
+    published = bundled("pople-basis/3-21G")
     (finding,) = [f for f in published.judged().findings if f.rule == "primitive.trend"]
     assert (finding.element, finding.shell, finding.measured) == ("Cu", "sp-4", 0.000751)
     assert finding.expected == pytest.approx(0.041, rel=0.1)

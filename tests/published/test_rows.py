@@ -3,11 +3,8 @@
 What stood there before is what the sets print; the slips are planted here.
 """
 
-from functools import cache
-from pathlib import Path
-
 import pytest
-from planting import Published
+from planting import Published, bundled
 
 from overlapse.grammar.model import Block
 from overlapse.grammar.reading import read_text
@@ -19,13 +16,6 @@ from overlapse.rules.rowwise.norms import left_out, norms_of
 pyscf = pytest.importorskip(
     "pyscf", reason="PySCF has no wheel here; install the extra 'oracle' to run this check"
 )
-
-FOLDER = Path(pyscf.__file__).parent / "gto" / "basis"
-
-
-@cache
-def _published(name: str) -> Published:
-    return Published(name, (FOLDER / f"{name}.dat").read_text("latin-1"))
 
 
 def _found(published: Published, text: str, rule: str, symbol: str, shell: str) -> list[Finding]:
@@ -68,7 +58,7 @@ SLIPS = [
 def test_a_slip_in_a_published_set_is_named(
     name: str, z: int, shell: str, row: int, column: int | None, factor: float, rule: str
 ) -> None:
-    published = _published(name)
+    published = bundled(name)
     block = _block(published, z)
     at = block.shells[block.names.index(shell)]
     true = float(at.exponents[row] if column is None else at.coefficients[row, column])
@@ -80,7 +70,7 @@ def test_a_slip_in_a_published_set_is_named(
 
 
 def test_a_set_of_one_element_is_held_to_its_own_shell() -> None:
-    published = _published("cc-pvqz")
+    published = bundled("cc-pvqz")
     block = _block(published, 6)
     first = block.shells[0].line - 1
     last = block.shells[0].cells.last  # type: ignore[union-attr]
@@ -94,7 +84,7 @@ def test_a_set_of_one_element_is_held_to_its_own_shell() -> None:
 
 
 def test_hydrogen_of_a_correlation_consistent_set_leaves_its_lone_primitive_out() -> None:
-    members = _published("cc-pvdz").document.sets[0]
+    members = bundled("cc-pvdz").document.sets[0]
     (norm,) = [n for n in norms_of(members) if n.block.atomic_number == 1]
     found = left_out(norm)
     assert found is not None
@@ -109,7 +99,7 @@ SOUND = ["pople-basis/6-31Gs", "cc-pvtz", "def2-svp", "def2-qzvp", "pc-1", "pcse
 def test_sound_sets_carry_few_suspicions_and_hardly_a_warning() -> None:
     blocks = notes = warnings = 0
     for name in SOUND:
-        published = _published(name)
+        published = bundled(name)
         blocks += len(published.blocks)
         case = Case(published.document)
         for rule in ("primitive.trend", "contraction.trend", "shell.neighbour"):
